@@ -1,0 +1,1 @@
+"""The terminal dashboard and the command line."""
