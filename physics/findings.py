@@ -1,0 +1,218 @@
+"""What the engine says: rows, stations, alarm changes and the standing answer, as frozen records in SI units."""
+
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+Verdict = Literal["within", "over", "undecided"]
+Pass = Literal["down", "up"]
+
+ROW_FIELDS = (
+    "time",  # [s]
+    "depth",  # [m]
+    "speed",  # of the line [m/s], down positive
+    "passing",  # number of the pass, from 0; even down, odd up when the run starts downward
+    "direction",  # +1 down, -1 up
+    "measured_east",  # [m]
+    "measured_north",
+    "expected_east",
+    "expected_north",
+    "u_east",  # standard uncertainty of the residual [m]
+    "u_north",
+    "warning",  # limit in force at that depth [m]
+    "action",
+)
+_ROW = {name: row for row, name in enumerate(ROW_FIELDS)}
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Rows:
+    """Findings of single readings.
+
+    Parameters
+    ----------
+    data : ndarray, shape (len(ROW_FIELDS), n)
+        One row a field, in the order of `ROW_FIELDS`.
+    """
+
+    data: NDArray[np.float64]
+
+    @classmethod
+    def none(cls) -> "Rows":
+        """Return an empty block."""
+        return cls(np.empty((len(ROW_FIELDS), 0)))
+
+    def __len__(self) -> int:
+        return self.data.shape[1]
+
+    def column(self, name: str) -> NDArray[np.float64]:
+        """Return one field, shape (n,), in SI units."""
+        return self.data[_ROW[name]]
+
+    @property
+    def residual_east(self) -> NDArray[np.float64]:
+        """Measured less expected [m]."""
+        return self.column("measured_east") - self.column("expected_east")
+
+    @property
+    def residual_north(self) -> NDArray[np.float64]:
+        """Measured less expected [m]."""
+        return self.column("measured_north") - self.column("expected_north")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Share:
+    """One input's part of an uncertainty, as a standard uncertainty [m]."""
+
+    name: str
+    east: float
+    north: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Station:
+    """A closed station: measured, expected, and what follows; lengths in metres, offsets east and north."""
+
+    number: int
+    depth: float
+    passing: int
+    direction: Pass
+    time: float
+    measured_east: float
+    measured_north: float
+    expected_east: float
+    expected_north: float
+    u_east: float
+    u_north: float
+    warning: float
+    action: float
+    verdict: Verdict
+    readings: int
+    still: bool
+    """Closed from readings at rest (True) or taken in passing (False)."""
+    shares: tuple[Share, ...] = ()
+    """The budget of u_east and u_north, largest first."""
+
+    @property
+    def residual_east(self) -> float:
+        """Measured less expected [m]."""
+        return self.measured_east - self.expected_east
+
+    @property
+    def residual_north(self) -> float:
+        """Measured less expected [m]."""
+        return self.measured_north - self.expected_north
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AlarmChange:
+    """One transition of one alarm."""
+
+    time: float
+    depth: float
+    name: str
+    old: str
+    new: str
+    message: str = ""
+    """What it is about, in words with numbers and units."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Closure:
+    """What the sum shows where the up pass ends, against the down pass there."""
+
+    depth: float
+    east: float
+    north: float
+    expected_east: float
+    expected_north: float
+    """What the moving line alone would leave."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RestPoint:
+    """Where a swinging bob would come to rest, as the swing shows it."""
+
+    east: float
+    north: float
+    u_east: float
+    u_north: float
+    covariance_east_north: float
+    period: float
+    decay: float
+    """Time for the swing to fall to 1/e [s]."""
+    swings: float
+    """Single swings seen."""
+    fits: bool
+    message: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Standing:
+    """The answer as it stands now."""
+
+    time: float
+    depth: float
+    speed: float
+    passing: int
+    direction: Pass
+    measured_east: float
+    measured_north: float
+    expected_east: float
+    expected_north: float
+    u_east: float
+    u_north: float
+    warning: float
+    action: float
+    verdict: Verdict
+    rest_point: RestPoint | None
+    hold_still: float | None
+    """Seconds still to wait for a still station to close; None when moving or closed."""
+    wall_clearance: float | None
+    frames: int
+    """Readings used so far."""
+    notes: tuple[str, ...] = ()
+    """What a reader must know of the answer: outside the model, line touching, air."""
+
+    @property
+    def residual_east(self) -> float:
+        """Measured less expected [m]."""
+        return self.measured_east - self.expected_east
+
+    @property
+    def residual_north(self) -> float:
+        """Measured less expected [m]."""
+        return self.measured_north - self.expected_north
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AlarmView:
+    """One alarm as the screen lists it."""
+
+    name: str
+    state: str
+    since: float
+    depth: float
+    message: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Findings:
+    """What one block of readings, or the passing of time, brought."""
+
+    rows: Rows
+    stations: tuple[Station, ...] = ()
+    alarms: tuple[AlarmChange, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Result:
+    """The whole run."""
+
+    frames: int
+    stations: tuple[Station, ...]
+    alarms: tuple[AlarmChange, ...]
+    closure: Closure | None
+    rest_point: RestPoint | None
