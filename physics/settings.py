@@ -46,6 +46,8 @@ class Site(_Checked):
     """Geodetic latitude [rad], north positive."""
     longitude: float | None = None
     """Longitude [rad], east positive; only for declination and convergence."""
+    grid: str = ""
+    """The projection of grid north, as an EPSG code ("EPSG:25832"); only for convergence."""
     elevation: float = 0.0
     """Collar above the ellipsoid [m]."""
     gravity: float | None = None
@@ -190,6 +192,8 @@ class Instrument(_Checked):
 
     a_azimuth: float = 0.0
     azimuth_from: North = "true"
+    north_offset: float = 0.0
+    """From the stated north to true north [rad], clockwise; added to every azimuth; found at the edge."""
     zero_a: float = 0.0
     zero_b: float = 0.0
     scale_a: float = 1.0
@@ -234,7 +238,7 @@ class Limits(_Checked):
     def __post_init__(self) -> None:
         _Checked.__post_init__(self)
         _refuse_unless(
-            self.warning <= self.action, "warning", self.warning, "m", f"at most action, {self.action} m"
+            self.warning <= self.action, "warning", self.warning, "m", "at most the action limit"
         )
 
 

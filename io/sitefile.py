@@ -1,0 +1,304 @@
+"""The site file: TOML text in the units of its keys, checked key by key, into assumptions in SI units.
+
+The keys and what they mean stand in `io.sitekeys`; here they are read, refused with their place, and converted.
+"""
+
+import difflib
+import math
+import re
+import tomllib
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+from datetime import date
+from pathlib import Path
+from typing import Any
+
+import msgspec
+
+from eastfall.io import sitekeys
+from eastfall.io.errors import SiteFileError
+from eastfall.io.sitekeys import CheckSum, Form, SiteDocument
+from eastfall.physics.errors import ParameterError
+from eastfall.physics.settings import Assumptions
+
+_LARGEST = 1_000_000
+"""Bytes of a site file; a larger file is something else."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LinkSettings:
+    """One instrument link and the form of its lines."""
+
+    url: str
+    baud: int = 9600
+    form: Form = "columns"
+    columns: tuple[str, ...] = ("depth_m", "tilt_a_deg", "tilt_b_deg")
+    delimiter: str = ","
+    checksum: CheckSum = "none"
+    latency: float = 0.0
+    """How much older a reading is than its arrival [s]."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SiteFile:
+    """A site file as read: its text for the record, and what it says."""
+
+    path: str
+    text: str
+    assumptions: Assumptions
+    links: tuple[LinkSettings, ...]
+    given: frozenset[str]
+    """The keys that stand in the file, as "section.key"; all others are defaults."""
+
+
+def load_site(path: Path, *, on: date | None = None) -> SiteFile:
+    """Read and check a site file.
+
+    Parameters
+    ----------
+    path : Path
+        The file.
+    on : date, optional
+        The day of the run, for the magnetic declination; today by default.
+
+    Raises
+    ------
+    SiteFileError
+        With the file, the line and the key, what stands there and what was expected.
+    """
+    try:
+        raw = path.read_bytes()
+    except OSError as error:
+        raise SiteFileError(f"{path}: {error.strerror or error}; expected a site file (TOML)") from error
+    if len(raw) > _LARGEST:
+        raise SiteFileError(f"{path}: {len(raw)} bytes; expected a site file of at most {_LARGEST} bytes")
+    try:
+        text = raw.decode("utf-8")
+    except UnicodeDecodeError as error:
+        line = raw.count(b"\n", 0, error.start) + 1
+        raise SiteFileError(f"{path}, line {line}: not UTF-8 text; expected a site file (TOML)") from error
+    return parse_site(text, str(path), on=on)
+
+
+def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
+    """Check the text of a site file.
+
+    Parameters
+    ----------
+    text : str
+        TOML.
+    source : str
+        What to call it in messages.
+    on : date, optional
+        The day of the run, for the magnetic declination; today by default.
+
+    Raises
+    ------
+    SiteFileError
+        As `load_site`.
+    """
+    try:
+        tree = tomllib.loads(text)
+    except (tomllib.TOMLDecodeError, RecursionError) as error:
+        raise SiteFileError(
+            f"{source}: not TOML: {error}; expected lines such as latitude_deg = 57.3"
+        ) from error
+    place = _Place(source, text)
+    for path, value in _leaves(tree, ""):
+        if isinstance(value, float) and not math.isfinite(value):
+            raise place.error(path, value, "a finite number")
+    document = _converted(tree, place)
+    try:
+        assumptions = _assumptions(document)
+    except ParameterError as error:
+        path = _key_of(tree, error.name)
+        raise place.error(path, _at(tree, path), error.expected) from error
+    links = tuple(_link(one) for one in document.link)
+    _check_columns(assumptions, links, place)
+    return SiteFile(
+        path=source,
+        text=text,
+        assumptions=_with_true_north(assumptions, place, on),
+        links=links,
+        given=frozenset(
+            f"{section}.{key}" for section, keys in tree.items() if section != "link" for key in keys
+        ),
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class _Place:
+    """Where in the file a key stands, for messages."""
+
+    source: str
+    text: str
+
+    def line_of(self, path: str) -> int | None:
+        """Return the line of a dotted key path, as well as it can be found in the text."""
+        section, _, key = path.rpartition(".")
+        name = re.escape(re.sub(r"\[\d+\]", "", key))
+        inside = section == ""
+        for number, line in enumerate(self.text.splitlines(), start=1):
+            if heading := re.match(r"\s*\[+\s*([\w-]+)\s*\]+", line):
+                inside = heading[1] == re.sub(r"\[\d+\]", "", section)
+                if section == "" and heading[1] == key:
+                    return number
+            elif inside and re.match(rf"\s*\"?{name}\"?\s*=", line):
+                return number
+        return None
+
+    def error(self, path: str, value: object, expected: str) -> SiteFileError:
+        """Return the one clear line."""
+        line = self.line_of(path)
+        where = f"{self.source}, line {line}" if line else self.source
+        return SiteFileError(f"{where}: {path} is {_shown(value)}; expected {expected}")
+
+
+def _shown(value: object) -> str:
+    text = repr(value)
+    return text if len(text) <= 60 else text[:57] + "..."
+
+
+def _leaves(tree: object, path: str) -> Iterator[tuple[str, object]]:
+    if isinstance(tree, dict):
+        for key, value in tree.items():
+            yield from _leaves(value, f"{path}.{key}" if path else key)
+    elif isinstance(tree, list):
+        for number, value in enumerate(tree):
+            yield from _leaves(value, f"{path}[{number}]")
+    else:
+        yield path, tree
+
+
+def _at(tree: object, path: str) -> object:
+    for step in re.findall(r"[^.\[\]]+", path):
+        if isinstance(tree, list) and step.isdigit() and int(step) < len(tree):
+            tree = tree[int(step)]
+        elif isinstance(tree, dict):
+            tree = tree.get(step)
+        else:
+            return None
+    return tree
+
+
+def _converted(tree: dict[str, Any], place: _Place) -> SiteDocument:
+    try:
+        return msgspec.convert(tree, SiteDocument)
+    except msgspec.ValidationError as error:
+        what, _, at = str(error).partition(" - at `$")
+        path = at.removesuffix("`").lstrip(".")
+    unknown = re.match(r"Object contains unknown field `(.*)`", what, re.DOTALL)
+    missing = re.match(r"Object missing required field `(.*)`", what)
+    if unknown:
+        raise _unknown_key(unknown[1], path, place)
+    if missing:
+        full = f"{path}.{missing[1]}" if path else missing[1]
+        where = place.line_of(path) if path else None
+        head = f"{place.source}, line {where}" if where else place.source
+        raise SiteFileError(f"{head}: {full} is missing; expected {_expectation(full, '')}")
+    raise place.error(path, _at(tree, path), _expectation(path, what))
+
+
+def _unknown_key(key: str, section: str, place: _Place) -> SiteFileError:
+    known = sitekeys.names_in(section)
+    near = difflib.get_close_matches(key, known, n=1)
+    hint = f"did you mean {near[0]}? " if near else ""
+    path = f"{section}.{key}" if section else key
+    line = place.line_of(path)
+    where = f"{place.source}, line {line}" if line else place.source
+    shown = ascii(key)[1:-1]
+    listed = ", ".join(known)
+    inside = f"in [{section}]" if section else "at the top level"
+    return SiteFileError(f"{where}: unknown key {shown} {inside}; {hint}expected one of {listed}")
+
+
+def _expectation(path: str, what: str) -> str:
+    key = sitekeys.key(re.sub(r"\[\d+\]", "", path))
+    if key is not None:
+        return key.expectation
+    plain = what.replace("`", "").removeprefix("Expected ")
+    return f"a section ({plain})" if path in sitekeys.SECTIONS else plain
+
+
+def _key_of(tree: dict[str, Any], name: str) -> str:
+    """Return the dotted key whose SI name a parameter error speaks of."""
+    for section, keys in tree.items():
+        if isinstance(keys, dict):
+            for key in keys:
+                if sitekeys.si_name(key) == name:
+                    return f"{section}.{key}"
+    return name
+
+
+def _assumptions(document: SiteDocument) -> Assumptions:
+    records: dict[str, Any] = {}
+    for section, record in sitekeys.RECORDS.items():
+        given = getattr(document, section)
+        if given is not None:
+            records[section] = record(**_si_fields(given))
+    return Assumptions(**records)
+
+
+def _si_fields(section: msgspec.Struct) -> dict[str, Any]:
+    fields = {}
+    for name in section.__struct_fields__:
+        value = getattr(section, name)
+        if value is not msgspec.UNSET:
+            fields[sitekeys.si_name(name)] = sitekeys.to_si(name, value)
+    return fields
+
+
+def _link(section: sitekeys.LinkKeys) -> LinkSettings:
+    return LinkSettings(
+        url=section.url,
+        baud=section.baud,
+        form=section.form,
+        columns=section.columns,
+        delimiter=section.delimiter,
+        checksum=section.checksum,
+        latency=section.latency_s,
+    )
+
+
+_NEEDED = {
+    "guided": (("depth_m",), ("tilt_a_deg", "tilt_b_deg")),
+    "hung": (("depth_m",), ("tilt_a_deg", "tilt_b_deg", "east_mm", "north_mm")),
+    "drop": (("depth_m",), ("east_mm", "north_mm")),
+}
+"""Per kind of run: groups of columns, of each of which at least one must be read."""
+
+
+def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], place: _Place) -> None:
+    if not links or any(one.form == "iec61162" for one in links):
+        return
+    present = {column for one in links for column in one.columns}
+    for group in _NEEDED[assumptions.run.kind]:
+        if not present & set(group):
+            wanted = " or ".join(group)
+            kind = assumptions.run.kind
+            raise place.error("link.columns", sorted(present), f"{wanted} among them in a {kind} run")
+
+
+def _with_true_north(assumptions: Assumptions, place: _Place, on: date | None) -> Assumptions:
+    """Put the angle from the stated north to true north beside the instrument's azimuth."""
+    instrument, site = assumptions.instrument, assumptions.site
+    if instrument.azimuth_from == "true":
+        return assumptions
+    if site.longitude is None:
+        raise place.error(
+            "site.longitude_deg", None, f"a longitude, for azimuth_from = {instrument.azimuth_from!r}"
+        )
+    from eastfall.io import north  # noqa: PLC0415 (the magnetic model and the projection library only where used)
+
+    try:
+        offset = north.offset_to_true(
+            instrument.azimuth_from,
+            latitude=site.latitude,
+            longitude=site.longitude,
+            elevation=site.elevation,
+            on=on or date.today(),  # noqa: DTZ011 (a day, not an instant; declination moves 0.1° a year)
+            grid=site.grid,
+        )
+    except SiteFileError as error:
+        raise SiteFileError(f"{place.source}: {error}") from error
+    return replace(assumptions, instrument=replace(instrument, north_offset=offset))
