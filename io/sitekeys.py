@@ -38,7 +38,7 @@ class _Section(msgspec.Struct, forbid_unknown_fields=True, frozen=True, kw_only=
     """A section of the file; a key that is not given stays UNSET."""
 
 
-class SiteKeys(_Section, kw_only=True):
+class SiteKeys(_Section, frozen=True, kw_only=True):
     """[site]."""
 
     name: Annotated[str, Meta(max_length=200, description="What the shaft is called")] | UnsetType = UNSET
@@ -96,7 +96,7 @@ class SiteKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class ShaftKeys(_Section, kw_only=True):
+class ShaftKeys(_Section, frozen=True, kw_only=True):
     """[shaft]."""
 
     depth_m: Annotated[float, Meta(gt=0.0, le=12000.0, description="Collar to the deepest point of the run")]
@@ -114,7 +114,7 @@ class ShaftKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class RunKeys(_Section, kw_only=True):
+class RunKeys(_Section, frozen=True, kw_only=True):
     """[run]."""
 
     kind: Annotated[
@@ -128,7 +128,7 @@ class RunKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class GuideKeys(_Section, kw_only=True):
+class GuideKeys(_Section, frozen=True, kw_only=True):
     """[guide]."""
 
     line_speed_mps: (
@@ -151,7 +151,7 @@ class GuideKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class LineKeys(_Section, kw_only=True):
+class LineKeys(_Section, frozen=True, kw_only=True):
     """[line]."""
 
     bob_mass_kg: Annotated[float, Meta(gt=0.0, le=5000.0, description="Mass of the bob")] | UnsetType = UNSET
@@ -178,7 +178,7 @@ class LineKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class BodyKeys(_Section, kw_only=True):
+class BodyKeys(_Section, frozen=True, kw_only=True):
     """[body]."""
 
     mass_kg: Annotated[float, Meta(gt=0.0, le=10000.0, description="Mass of the falling body")]
@@ -223,7 +223,7 @@ class BodyKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class AirKeys(_Section, kw_only=True):
+class AirKeys(_Section, frozen=True, kw_only=True):
     """[air]."""
 
     density_kgm3: (
@@ -263,7 +263,7 @@ class AirKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class InstrumentKeys(_Section, kw_only=True):
+class InstrumentKeys(_Section, frozen=True, kw_only=True):
     """[instrument]."""
 
     a_azimuth_deg: (
@@ -325,7 +325,7 @@ class InstrumentKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class LimitKeys(_Section, kw_only=True):
+class LimitKeys(_Section, frozen=True, kw_only=True):
     """[limits]."""
 
     warning_mm: (
@@ -373,7 +373,7 @@ class LimitKeys(_Section, kw_only=True):
     ) = UNSET
 
 
-class LinkKeys(_Section, kw_only=True):
+class LinkKeys(_Section, frozen=True, kw_only=True):
     """[[link]]."""
 
     url: Annotated[
@@ -402,7 +402,7 @@ class LinkKeys(_Section, kw_only=True):
     latency_s: Annotated[float, Meta(ge=0.0, le=60.0, description="Age of a reading when it arrives")] = 0.0
 
 
-class SiteDocument(_Section, kw_only=True):
+class SiteDocument(_Section, frozen=True, kw_only=True):
     """The whole file."""
 
     site: SiteKeys
@@ -568,7 +568,7 @@ def _described(section: str, name: str, struct: type[_Section]) -> Key:
     if get_origin(annotation) is Annotated:
         inner = annotation
     base, meta = get_args(inner)[:2]
-    choices = get_args(base) if get_origin(base) is Literal else ()
+    choices = get_args(base) if str(get_origin(base)) == str(Literal) else ()
     low, high = _range(meta)
     return Key(
         section=section,

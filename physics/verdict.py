@@ -1,0 +1,67 @@
+"""The decision on a residual against a limit, by the guard-band rule; lengths in metres."""
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from eastfall.physics.findings import Verdict
+
+COVERAGE_FACTOR = 2.0
+"""U = 2u, about 95 % for a normal distribution (GUM, 6.3)."""
+
+
+def horizontal(
+    east: ArrayLike, north: ArrayLike, u_east: ArrayLike, u_north: ArrayLike
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return the length of a horizontal offset and the standard uncertainty of that length.
+
+    Parameters
+    ----------
+    east, north : array_like
+        Offset [m], broadcast.
+    u_east, u_north : array_like
+        Their standard uncertainties [m], taken as uncorrelated.
+
+    Returns
+    -------
+    length, u : ndarray
+        [m]. By the law of propagation (GUM, eq. 10) u² = (e·u_e/r)² + (n·u_n/r)²; where r is not larger than the
+        uncertainties themselves the derivative means nothing, and the larger of the two stands in.
+    """
+    east, north, u_east, u_north = np.broadcast_arrays(
+        *(np.asarray(x, float) for x in (east, north, u_east, u_north))
+    )
+    length = np.hypot(east, north)
+    largest = np.maximum(u_east, u_north)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        along = np.hypot(east * u_east, north * u_north) / length
+    return length, np.where(length > largest, along, largest)
+
+
+def verdict(length: float, u: float, limit: float) -> Verdict:
+    """Decide on one length against one limit.
+
+    Parameters
+    ----------
+    length : float
+        Of the horizontal residual [m], not negative.
+    u : float
+        Its standard uncertainty [m].
+    limit : float
+        [m].
+
+    Returns
+    -------
+    {"within", "over", "undecided"}
+        With the guard band w = U = 2u: within if length + w ≤ limit, over if length − w > limit, else undecided; a NaN
+        anywhere is undecided.
+
+    References
+    ----------
+    JCGM 106:2012, 8.3; ISO 14253-1:2017.
+    """
+    guard = COVERAGE_FACTOR * u
+    if length + guard <= limit:
+        return "within"
+    if length - guard > limit:
+        return "over"
+    return "undecided"
