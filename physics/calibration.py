@@ -269,4 +269,5 @@ def _stands_apart(values: Array, floor: float) -> npt.NDArray[np.bool_]:
     away = np.abs(values - np.median(values))
     # A few ulp of the median's rounding are no deviation, even where all the others agree exactly.
     rounding = 8.0 * np.finfo(np.float64).eps * float(np.abs(values).max())
-    return away > np.maximum(_SUSPECT * max(_MAD_TO_SIGMA * float(np.median(away)), floor), rounding)
+    limit = max(_SUSPECT * max(_MAD_TO_SIGMA * float(np.median(away)), floor), rounding)
+    return np.asarray(away > limit)
