@@ -1,0 +1,121 @@
+"""Drag coefficients of a smooth sphere by published correlations, and where they are doubtful.
+
+The program uses Morrison's, because it goes through the drag crisis; Haider and Levenspiel's stands beside it. How the
+coefficient acts on a moving body is in `motion`.
+"""
+
+from math import pi
+
+import numpy as np
+import numpy.typing as npt
+
+from eastfall.physics.earth import Array
+
+CRISIS_REYNOLDS = 1.0e5
+"""Above it the surface and the spin of a sphere matter: roughness brings the crisis from about 3e5 to below 1e5.
+
+Achenbach, E. (1974), The effects of surface roughness and tunnel blockage on the flow past spheres, J. Fluid Mech. 65,
+113-125 (from memory, unconfirmed).
+"""
+
+HIGHEST_REYNOLDS = 1.0e6
+"""End of the domain of Morrison's correlation."""
+
+_CRISIS = 2.63e5
+# Re = 0 has a drag force (none) but no coefficient; the floor keeps the logarithm finite and changes nothing above it.
+_LOWEST = 1.0e-30
+
+
+def haider_levenspiel(reynolds: npt.ArrayLike) -> Array:
+    """Drag coefficient of a smooth sphere below the drag crisis.
+
+    Parameters
+    ----------
+    reynolds : array_like
+        Re [1], more than 0 to 2e5.
+
+    Returns
+    -------
+    array
+        Cd = (24/Re)(1 + 0.1806 Re^0.6459) + 0.4251/(1 + 6880.95/Re) [1], on the cross-section.
+
+    References
+    ----------
+    Haider, A. & Levenspiel, O. (1989), Powder Technology 58, 63-70, doi:10.1016/0032-5910(89)80008-7.
+    """
+    re = np.asarray(reynolds, dtype=np.float64)
+    coefficient: Array = 24.0 / re * (1.0 + 0.1806 * re**0.6459) + 0.4251 / (1.0 + 6880.95 / re)
+    return coefficient
+
+
+def morrison(reynolds: npt.ArrayLike) -> Array:
+    """Drag coefficient of a smooth sphere from creeping flow through the drag crisis.
+
+    Parameters
+    ----------
+    reynolds : array_like
+        Re [1], more than 0 to 1e6.
+
+    Returns
+    -------
+    array
+        Cd = 24/Re + 2.6 (Re/5)/(1 + (Re/5)^1.52) + 0.411 q^-7.94/(1 + q^-8) + Re^0.8/461000 [1], q = Re/263000,
+        on the cross-section.
+
+    Notes
+    -----
+    Between Re 1e5 and 1e6 measured spheres differ from one another by far more than this curve's own error: the
+    place of the crisis depends on surface, spin and turbulence.
+
+    References
+    ----------
+    Morrison, F. A. (2013), An Introduction to Fluid Mechanics, Cambridge University Press; as compared by Barati, R.
+    et al. (2014), Powder Technology 257, 11-19, doi:10.1016/j.powtec.2014.02.045.
+    """
+    re = np.asarray(reynolds, dtype=np.float64)
+    coefficient: Array = scaled_morrison(re) / re
+    return coefficient
+
+
+def scaled_morrison(reynolds: Array) -> Array:
+    """Cd·Re of `morrison` [1], finite down to Re = 0, from one logarithm and three exponentials.
+
+    The crisis term is written q^0.06/(1 + q^8), which is the same number and does not overflow at small Re.
+    """
+    log_re = np.log(np.maximum(reynolds, _LOWEST))
+    fall = np.exp(1.52 * log_re - 1.52 * np.log(5.0))
+    squared = np.square(reynolds * (1.0 / _CRISIS))
+    fourth = np.square(squared)
+    crisis = np.exp(0.06 * log_re - 0.06 * np.log(_CRISIS)) / (1.0 + np.square(fourth))
+    tail = np.exp(0.8 * log_re)
+    scaled: Array = 24.0 + reynolds * (
+        0.52 * reynolds / (1.0 + fall) + 0.411 * crisis + tail * (1.0 / 461000.0)
+    )
+    return scaled
+
+
+def terminal_speed(
+    mass: float, diameter: float, drag_coefficient: float, density: float, gravity: float = 9.80665
+) -> float:
+    """Speed at which drag at a constant coefficient balances weight.
+
+    Parameters
+    ----------
+    mass : float
+        m [kg].
+    diameter : float
+        d [m]; the coefficient is on π d²/4.
+    drag_coefficient : float
+        Cd [1].
+    density : float
+        Of the air [kg/m³].
+    gravity : float
+        [m/s²]; the default is standard gravity.
+
+    Returns
+    -------
+    float
+        V = √(2 m g/(ρ Cd A)) [m/s].
+    """
+    area = 0.25 * pi * diameter**2
+    return float(np.sqrt(2.0 * mass * gravity / (density * drag_coefficient * area)))
