@@ -1,0 +1,183 @@
+r"""The columns form: one line, one reading, fields in the order that the site file names them.
+
+Conventions of this form:
+
+- Fields stand between single delimiters; blanks and tabs around a number are ignored. With a blank as the delimiter
+  any run of blanks and tabs is one delimiter, and blanks at either end of the line are ignored.
+- A number is an optional sign, decimal digits with at most one point, and an optional exponent. Words (nan, inf) are
+  no numbers.
+- An empty field means that the channel did not speak: NaN for azimuth, temperature, supply and face; a fault for time,
+  depth, tilts and offsets, which a reading is nothing without.
+- A line with a field too many or too few is refused whole: which of them is missing would be a guess. So is a line
+  with any number out of range.
+- An empty line is unused and no fault. A checksum, where the site file names one, is as `io.checksum` states.
+
+Blocks of many lines are read all at once by `io.decimals`; lines that it refuses, and small blocks, go through the
+careful reader here. Both give the same numbers to the last bit.
+"""
+
+import re
+from collections.abc import Sequence
+
+import numpy as np
+
+from eastfall.io import checksum, decimals
+from eastfall.io.arrivals import LineBlock
+from eastfall.io.decoded import (
+    CODE,
+    IGNORED,
+    QUANTITIES,
+    UNUSED,
+    Codes,
+    Decoded,
+    InstrumentClock,
+    Table,
+    assemble,
+    too_long,
+)
+from eastfall.physics.errors import ParameterError
+
+_MANY = 40
+"""From this many lines on, all at once is faster (measured: 10 lines 25 µs one by one, 150 µs at once; even at 50)."""
+
+_NUMBER = rb"[+-]?(?:\d++(?:\.\d*+)?|\.\d++)(?:[eE][+-]?\d++)?"
+_NOT_TEXT = re.compile(rb"[^\t -~]")
+_CANNOT_DELIMIT = frozenset(b"0123456789+-.eE*$\n\r\0")
+_CHECKSUM_CODES = np.array([CODE[one] for one in checksum.CHECKSUM_FAULTS], dtype=np.int8)
+
+
+class ColumnsDecoder:
+    """Decodes the columns form.
+
+    Parameters
+    ----------
+    columns : sequence of str
+        Names of the fields in order: keys of `io.decoded.QUANTITIES`, or "-" for a field to ignore.
+    delimiter : str
+        One ASCII character that no number holds.
+    kind : str
+        Of the checksum.
+
+    Raises
+    ------
+    ParameterError
+        An unknown or repeated column, nothing but ignored ones, or a delimiter that cannot be one.
+    """
+
+    pending = 0
+
+    def __init__(
+        self, columns: Sequence[str], delimiter: str = ",", kind: checksum.Checksum = "none"
+    ) -> None:
+        names = [name for name in columns if name != IGNORED]
+        if not names or len(set(names)) < len(names) or not set(names) <= QUANTITIES.keys():
+            raise ParameterError(
+                "columns", ", ".join(columns), "", f"each once, of {', '.join(QUANTITIES)}, or -"
+            )
+        if len(delimiter) != 1 or not delimiter.isascii() or ord(delimiter) in _CANNOT_DELIMIT:
+            raise ParameterError("delimiter", repr(delimiter), "", "one character that no number holds")
+        self._names = names
+        self._columns = tuple(columns)
+        self._kept = np.array([name != IGNORED for name in columns])
+        self._needed = [QUANTITIES[name].needed for name in names]
+        self._delimiter = delimiter.encode()
+        self._blank = delimiter == " "
+        self._kind = kind
+        self._clock = InstrumentClock()
+        self._line = re.compile(self._pattern())
+
+    def _pattern(self) -> bytes:
+        """Return what a good line looks like: one group for each kept column."""
+        pad = rb"[ \t]*+" if self._delimiter != b"\t" else rb" *+"
+        number = pad + b"(" + _NUMBER + b")" + pad
+        perhaps = pad + b"(" + _NUMBER + b")?+" + pad
+        anything = b"[^" + re.escape(self._delimiter) + b"]*+"
+        fields = [
+            anything if name == IGNORED else number if QUANTITIES[name].needed else perhaps
+            for name in self._columns
+        ]
+        return re.escape(self._delimiter).join(fields)
+
+    def decode(self, block: LineBlock) -> Decoded:
+        """Decode a block of lines."""
+        data, codes = block.data, too_long(block)
+        if self._kind != "none":
+            data, wrong = checksum.bodies(self._kind, data)
+            codes = np.where(codes == 0, _CHECKSUM_CODES[wrong], codes)
+        if self._blank:
+            data = _with_single_blanks(data)
+        table = np.full((len(block), len(self._names)), np.nan)
+        if len(block) < _MANY:
+            self._read_lines(data, range(len(block)), table, codes)
+        else:
+            self._read_pieces(data, table, codes)
+        return assemble(self._names, table, codes, block, self._clock)
+
+    def _read_pieces(self, data: bytes, table: Table, codes: Codes) -> None:
+        begin, line = 0, 0
+        while begin < len(data):
+            end = data.rfind(b"\n", begin, begin + decimals.PIECE) + 1
+            if end <= begin:
+                end = data.index(b"\n", begin) + 1
+            piece = data[begin:end]
+            count = piece.count(b"\n")
+            part = slice(line, line + count)
+            self._read_at_once(piece, table[part], codes[part])
+            begin, line = end, line + count
+
+    def _read_at_once(self, data: bytes, table: Table, codes: Codes) -> None:
+        """Read what is plain all at once, and the rest line by line."""
+        fields, ends = decimals.fields_of(data, self._delimiter[0])
+        counts = np.diff(ends, prepend=0)
+        fits = (counts == len(self._columns)) & (codes == 0)
+        if not fits.all():
+            fields = decimals.chosen(fields, np.repeat(fits, counts))
+        if not self._kept.all():
+            fields = decimals.chosen(fields, np.tile(self._kept, int(np.count_nonzero(fits))))
+        if b" " in data or b"\t" in data:
+            fields = decimals.trimmed(fields)
+        values, plain = decimals.plain_numbers(fields)
+        shape = (-1, len(self._names))
+        done = np.zeros(len(codes), dtype=bool)
+        done[fits] = plain.reshape(shape).all(axis=1)
+        if done.all():
+            table[:] = values.reshape(shape)
+        else:
+            table[fits] = values.reshape(shape)
+            self._read_lines(data, np.flatnonzero(~done).tolist(), table, codes)
+
+    def _read_lines(self, data: bytes, which: Sequence[int], table: Table, codes: Codes) -> None:
+        lines = data.split(b"\n")
+        for number in which:
+            if codes[number] == 0:
+                found = self._line.fullmatch(lines[number])
+                if found and any(found.groups()):
+                    table[number] = [float(one) if one else np.nan for one in found.groups()]
+                else:
+                    codes[number] = self._fault(lines[number])
+
+    def _fault(self, line: bytes) -> int:
+        """Return the code of what is wrong with a line that the pattern refuses."""
+        if not line.strip(b" \t"):
+            return UNUSED
+        if _NOT_TEXT.search(line):
+            return CODE["not plain text"]
+        fields = line.split(self._delimiter)
+        if len(fields) != len(self._columns):
+            return CODE["wrong number of fields"]
+        kept = [field.strip(b" \t") for field, keep in zip(fields, self._kept, strict=True) if keep]
+        if not any(kept) or any(need and not one for need, one in zip(self._needed, kept, strict=True)):
+            return CODE["empty field"]
+        return CODE["not a number"]
+
+
+def _with_single_blanks(data: bytes) -> bytes:
+    """Return lines with one blank between fields and none at either end."""
+    codes = np.frombuffer(data.replace(b"\t", b" "), np.uint8)
+    blank, line_end = codes == ord(" "), codes == ord("\n")
+    after = np.concatenate([[True], (blank | line_end)[:-1]])
+    before = np.concatenate([line_end[1:], [True]])
+    kept = ~(blank & after)
+    codes, before = codes[kept], before[kept]
+    trimmed: bytes = codes[~((codes == ord(" ")) & before)].tobytes()
+    return trimmed

@@ -1,0 +1,148 @@
+r"""Many short decimal numbers at once, read eight bytes at a time; single lines are for `io.columns`.
+
+A field of the plain kind (sign, up to eight digits, point, up to eight digits, fewer than 2**53 in all) is cut at its
+point. Each half is loaded as one 64-bit word that ends at its last digit, and three multiplications add the digits up
+in pairs, fours and eights. The two halves make one integer m below 2**53 and a power of ten below 10**23, both exact
+in float64, so their single division rounds correctly (Clinger 1990, How to read floating point numbers accurately,
+PLDI '90): the result is that of `float`, to the last bit. Every other field is refused, not guessed.
+
+Measured on 2,000,000 lines of four fields (58 MB) where numpy.loadtxt takes 2.0 s: this 0.52 s in pieces of 128 KB;
+msgspec reading the same numbers as one JSON list 1.0 s (and JSON knows no leading + or 0); numpy.fromstring 2.7 s, and
+it reads "1 , " as two numbers; float over a split list 2.9 s.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+_WORD = 8
+_ZEROS = np.uint64(0x3030303030303030)
+_SIXES = np.uint64(0x0606060606060606)
+_HIGH = np.uint64(0xF0F0F0F0F0F0F0F0)
+_POWERS = 10.0 ** np.arange(_WORD + 1)
+_WHOLE_POWERS = 10 ** np.arange(_WORD + 1)
+_EXACT = 1 << 53
+_BLANKS = 24
+"""Fields padded further than this are left to the careful reader: hostile padding must not cost a pass a blank."""
+PIECE = 1 << 17
+"""Bytes at a time: the work arrays of one piece stay in the cache (32 KB: 1.1 s, 128 KB: 0.52 s, 1 MB: 0.66 s)."""
+
+Places = NDArray[np.intp]
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Fields:
+    """Where fields lie in a buffer that begins with eight bytes of no meaning."""
+
+    buffer: bytes
+    codes: NDArray[np.uint8]
+    starts: Places
+    points: Places
+    """Of the decimal point; the stop where there is none."""
+    stops: Places
+
+
+def fields_of(data: bytes, delimiter: int) -> tuple[Fields, Places]:
+    """Find the fields of whole lines.
+
+    Parameters
+    ----------
+    data : bytes
+        Lines, each ending in one line feed.
+    delimiter : int
+        The byte between fields.
+
+    Returns
+    -------
+    fields : Fields
+        All of them, in order.
+    ends : ndarray, shape (n,)
+        For each line, how many fields there are up to its end, from the start of the data.
+    """
+    buffer = bytes(_WORD) + data
+    codes = np.frombuffer(buffer, np.uint8)
+    separates = (codes == delimiter) | (codes == ord("\n"))
+    separates[:_WORD] = False
+    marks = np.flatnonzero(separates | (codes == ord(".")))
+    order = np.flatnonzero(separates[marks])
+    stops = marks[order]
+    before = marks[order - 1]  # for the first field this is the last mark of all, a line feed
+    points = np.where(codes[before] == ord("."), before, stops)
+    starts = np.empty_like(stops)
+    starts[:1] = _WORD
+    starts[1:] = stops[:-1] + 1
+    points = np.where(points < starts, stops, points)
+    ends = np.flatnonzero(codes[stops] == ord("\n")) + 1
+    return Fields(buffer, codes, starts, points, stops), ends
+
+
+def chosen(fields: Fields, which: NDArray[np.bool_]) -> Fields:
+    """Return some of the fields."""
+    return Fields(
+        fields.buffer, fields.codes, fields.starts[which], fields.points[which], fields.stops[which]
+    )
+
+
+def trimmed(fields: Fields) -> Fields:
+    """Return the fields without the blanks and tabs around them, up to `_BLANKS` on each side."""
+    codes, starts, stops = fields.codes, fields.starts.copy(), fields.stops.copy()
+    for _ in range(_BLANKS):
+        leading = _is_blank(codes[starts]) & (starts < stops)
+        trailing = _is_blank(codes[stops - 1]) & (starts + leading < stops)
+        if not (leading.any() or trailing.any()):
+            break
+        starts += leading
+        stops -= trailing
+    points = np.where(fields.points == fields.stops, stops, np.clip(fields.points, starts, stops))
+    return Fields(fields.buffer, codes, starts, points, stops)
+
+
+def _is_blank(codes: NDArray[np.uint8]) -> NDArray[np.bool_]:
+    blank: NDArray[np.bool_] = (codes == ord(" ")) | (codes == ord("\t"))
+    return blank
+
+
+def plain_numbers(fields: Fields) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+    """Read fields of the plain kind.
+
+    Returns
+    -------
+    values : ndarray, shape (n,)
+        The numbers; anything where a field is not of the plain kind.
+    plain : ndarray, shape (n,)
+        Whether it is.
+    """
+    sign = fields.codes[fields.starts]
+    negative = sign == ord("-")
+    starts = fields.starts + (negative | (sign == ord("+")))
+    whole_digits = fields.points - starts
+    part_digits = np.maximum(fields.stops - fields.points - 1, 0)
+    words: NDArray[np.uint64] = np.ndarray(
+        (len(fields.buffer) - _WORD + 1,), "<u8", buffer=fields.buffer, strides=(1,)
+    )
+    whole, whole_good = _eight_digits(words, fields.points, whole_digits)
+    part, part_good = _eight_digits(words, fields.stops, part_digits)
+    plain = whole_good & part_good & (whole_digits >= 0) & (whole_digits + part_digits > 0)
+    scale = np.minimum(part_digits, _WORD)
+    digits = whole * _WHOLE_POWERS[scale] + part
+    plain &= digits < _EXACT
+    values = digits / _POWERS[scale]
+    np.negative(values, out=values, where=negative)
+    return values, plain
+
+
+def _eight_digits(
+    words: NDArray[np.uint64], stops: Places, counts: Places
+) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
+    """Read the `counts` digits that end before `stops`; good where they are digits, eight at most."""
+    unused = (np.maximum(_WORD - counts, 0) * 8).astype(np.uint64)
+    used = ~np.uint64(0) << np.minimum(unused, np.uint64(63))
+    used[counts <= 0] = 0
+    word = (words[stops - _WORD] ^ _ZEROS) & used
+    good = ((word | (word + _SIXES)) & _HIGH) == 0
+    good &= counts <= _WORD
+    word = (word * np.uint64(10) + (word >> np.uint64(8))) & np.uint64(0x00FF00FF00FF00FF)
+    word = (word * np.uint64(100) + (word >> np.uint64(16))) & np.uint64(0x0000FFFF0000FFFF)
+    word = (word * np.uint64(10000) + (word >> np.uint64(32))) & np.uint64(0xFFFFFFFF)
+    return word.astype(np.int64), good
