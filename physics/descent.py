@@ -21,12 +21,15 @@ from eastfall.physics.motion import Acceleration, Forces, Surroundings
 
 RULE = gauss_rule(20)
 
-SETTLED = 1e-10
-"""Newton's iteration ends when its last step is below this, in metres, seconds and as a share of the energy."""
+SETTLED = 1e-8
+"""Newton's iteration ends when its last step is below this, in metres and as a share of the energy.
+
+Its error after that step is the square of it, or a thousandth where only Coriolis couples.
+"""
 FOLLOWED = 1e-8
 """The same for the members of an ensemble."""
-TAIL = 2e-9
-"""A stretch is halved while the last terms of its series are above this, in the same units."""
+TAIL = 2e-8
+"""A stretch is halved while the last terms of its series are above this, in metres, seconds, share of energy."""
 SHORTEST = 1.0 / 256.0
 """No stretch is halved below this share of the whole range of σ."""
 ROUNDS = 30

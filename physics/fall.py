@@ -11,13 +11,13 @@ from numpy.polynomial import chebyshev
 
 from eastfall.physics.air import AirColumn
 from eastfall.physics.descent import RULE, State, Stretch, descend, follow
-from eastfall.physics.drag import CRISIS_REYNOLDS, HIGHEST_REYNOLDS
 from eastfall.physics.earth import Array
 from eastfall.physics.errors import ParameterError
+from eastfall.physics.fall_limits import path_warnings, refuse_impossible
 from eastfall.physics.field import LocalField
 from eastfall.physics.motion import UNCHANGED, Forces, Release, Variation
 from eastfall.physics.settings import Body
-from eastfall.physics.throw import reach
+from eastfall.physics.throw import Thrown, reach, rise
 
 __all__ = ["Falling", "Release", "Trajectory", "Variation", "fall", "fall_ensemble"]
 
@@ -125,32 +125,36 @@ class Trajectory:
         flat = z.ravel()
         known = (flat >= self.path.depth[0]) & (flat <= self.path.depth[-1])
         rows = np.full((6, flat.size), np.nan)
-        rows[:, known] = self._evaluate(np.sqrt(np.maximum(flat[known] - self.apex, 0.0)))
-        time, east, north, speed_east, speed_north, energy = rows.reshape(6, *z.shape)
-        return Falling(
-            depth=z,
-            time=time,
-            east=east,
-            north=north,
-            speed=np.sqrt(2.0 * np.maximum(energy, 0.0) + speed_east**2 + speed_north**2),
-            speed_east=speed_east,
-            speed_north=speed_north,
-        )
+        sigma = np.sqrt(np.maximum(flat[known] - self.apex, 0.0))
+        rows[:, known] = _evaluate(self.edges, self.series, sigma)
+        return _falling(z, rows.reshape(6, *z.shape))
 
-    def _evaluate(self, sigma: Array) -> Array:
-        """Evaluate the six quantities at σ inside the edges, shape (6, σ)."""
-        count = len(self.series)
-        index = np.clip(np.searchsorted(self.edges, sigma, side="right") - 1, 0, count - 1)
-        start, end = self.edges[index], self.edges[index + 1]
-        terms = chebyshev.chebvander((2.0 * sigma - start - end) / (end - start), self.series.shape[1] - 1)
-        if count == 1:
-            only: Array = (terms @ self.series[0]).T
-            return only
-        rows = np.empty((len(sigma), 6))
-        for i in np.unique(index):
-            chosen = index == i
-            rows[chosen] = terms[chosen] @ self.series[i]
-        return rows.T
+
+def _evaluate(edges: Array, series: Array, sigma: Array) -> Array:
+    """Evaluate the six quantities at σ inside the edges, shape (6, σ)."""
+    index = np.clip(np.searchsorted(edges, sigma, side="right") - 1, 0, len(series) - 1)
+    start, end = edges[index], edges[index + 1]
+    terms = chebyshev.chebvander((2.0 * sigma - start - end) / (end - start), series.shape[1] - 1)
+    rows = np.empty((len(sigma), 6))
+    for i in np.unique(index):
+        chosen = index == i
+        rows[chosen] = terms[chosen] @ series[i]
+    return rows.T
+
+
+def _falling(depth: Array, rows: Array) -> Falling:
+    """Six quantities, shape (6, ...), as a record with the speed in place of the energy."""
+    time, east, north, speed_east, speed_north, energy = rows
+    speed = np.sqrt(2.0 * np.maximum(energy, 0.0) + speed_east**2 + speed_north**2)
+    return Falling(
+        depth=depth,
+        time=time,
+        east=east,
+        north=north,
+        speed=speed,
+        speed_east=speed_east,
+        speed_north=speed_north,
+    )
 
 
 def fall(
@@ -186,22 +190,17 @@ def fall(
     """
     start = _release(body, release)
     forces = Forces(field, body, air, start, UNCHANGED)
-    _refuse_impossible(forces, start, to_depth)
+    refuse_impossible(forces, start, to_depth)
     apex, stretches = _nominal(forces, start, _edges(forces, start.depth, to_depth))
     edges = np.array([stretches[0].start, *(one.end for one in stretches)])
     series = np.stack([one.series[:, :, 0] for one in stretches])
-    bare = Trajectory(
-        path=_samples(start.depth, to_depth, apex, stretches),
-        warnings=(),
-        apex=apex,
-        edges=edges,
-        series=series,
-    )
-    for array in (edges, series, *(getattr(bare.path, name) for name in bare.path.__slots__)):
+    nodes = apex + np.concatenate([one.sigma[:, 0] for one in stretches]) ** 2
+    depth = np.concatenate([[start.depth], nodes[nodes > start.depth], [to_depth]])
+    path = _falling(depth, _evaluate(edges, series, np.sqrt(np.maximum(depth - apex, 0.0))))
+    for array in (edges, series, *(getattr(path, name) for name in path.__slots__)):
         array.setflags(write=False)
-    return Trajectory(
-        path=bare.path, warnings=_warnings(forces, bare.path), apex=apex, edges=edges, series=series
-    )
+    warnings = path_warnings(forces, depth=path.depth, time=path.time, speed=path.speed)
+    return Trajectory(path=path, warnings=warnings, apex=apex, edges=edges, series=series)
 
 
 def fall_ensemble(
@@ -241,7 +240,7 @@ def fall_ensemble(
         raise ParameterError("depths", depths, "m", f"rising depths from the release at {start.depth} m down")
     forces = Forces(field, body, air, start, UNCHANGED)
     bottom = max(float(z[-1]), start.depth + 1e-3)
-    _refuse_impossible(forces, start, bottom)
+    refuse_impossible(forces, start, bottom)
     thrown = bool(np.any(np.asarray(variation.speed_down) != 0.0)) or start.speed_down < 0.0
     edges = _edges(forces, start.depth, bottom, _first_metres(start, variation) if thrown else 0.0)
     apex, stretches = _nominal(forces, start, edges)
@@ -252,17 +251,7 @@ def fall_ensemble(
         rows[:, begin : begin + BLOCK] = _members(
             member, start, apex, stretches, depths=z, timed_to=edges[1] if thrown else None
         )
-    time, east, north, speed_east, speed_north, energy = rows
-    speed = np.sqrt(2.0 * np.maximum(energy, 0.0) + speed_east**2 + speed_north**2)
-    return Falling(
-        depth=z,
-        time=time,
-        east=east,
-        north=north,
-        speed=speed,
-        speed_east=speed_east,
-        speed_north=speed_north,
-    )
+    return _falling(z, rows)
 
 
 def _release(body: Body | None, release: Release | None) -> Release:
@@ -275,27 +264,6 @@ def _release(body: Body | None, release: Release | None) -> Release:
         speed_north=body.release_speed_north,
         speed_down=body.release_speed_down,
     )
-
-
-def _refuse_impossible(forces: Forces, start: Release, to_depth: float) -> None:
-    """Raise unless gravity and buoyancy outweigh the upcast at both ends of the way."""
-    if not (np.isfinite(to_depth) and to_depth > start.depth):
-        raise ParameterError("to_depth", to_depth, "m", f"a depth below the release at {start.depth} m")
-    if forces.air is None or forces.body is None:
-        return
-    if not (forces.body.mass > 0.0 and forces.body.diameter > 0.0):
-        raise ParameterError(
-            "body", (forces.body.mass, forces.body.diameter), "kg, m", "a mass and diameter above 0"
-        )
-    depth = np.array([[start.depth], [to_depth]])
-    around = forces.surroundings(depth)
-    if np.any(around.weight <= 0.0):
-        raise ParameterError("mass", forces.body.mass, "kg", "a body heavier than the air it displaces")
-    still = np.zeros_like(depth)
-    if np.any(
-        forces.acceleration(around, still, still, v_east=still, v_north=still, v_down=still).down <= 0.0
-    ):
-        raise ParameterError("vertical", forces.air.vertical, "m/s", "an upcast too slow to carry the body")
 
 
 def _edges(forces: Forces, start: float, end: float, first_metres: float = 0.0) -> list[float]:
@@ -312,27 +280,30 @@ def _first_metres(start: Release, variation: Variation) -> float:
     return float(max(0.5, fastest**2))
 
 
-def _at_release(start: Release, change: Variation, members: int) -> State:
-    """State of the members in the hand; the energy is that of a release from rest or downwards."""
-    zero = np.zeros(members)
-    return State(
+def _in_hand(start: Release, change: Variation) -> Thrown:
+    """Members at their release."""
+    zero = np.zeros(change.members)
+    v_down = zero + start.speed_down + change.speed_down
+    state = State(
         time=zero,
         east=zero + start.east + change.east,
         north=zero + start.north + change.north,
         v_east=zero + start.speed_east + change.speed_east,
         v_north=zero + start.speed_north + change.speed_north,
-        energy=zero + 0.5 * start.speed_down**2,
+        energy=0.5 * v_down**2,
     )
+    return Thrown(state=state, depth=zero + start.depth, v_down=v_down)
 
 
 def _nominal(forces: Forces, start: Release, edges: list[float]) -> tuple[float, list[Stretch]]:
-    """Apex and stretches of the nominal fall; of a throw upwards, from its return on."""
-    first = _at_release(start, UNCHANGED, 1)
+    """Apex and stretches of the nominal fall; of a throw upwards, from its top."""
+    first = rise(forces, _in_hand(start, UNCHANGED))
+    top = float(first.depth[0])
     if start.speed_down < 0.0:
-        first = reach(forces, first, np.array([start.speed_down]), start.depth, edges[0])
-    gravity = forces.field.gravity
-    apex = edges[0] - float(first.energy[0]) / gravity
-    return apex, list(descend(forces, apex, edges, first))
+        state = first.state._replace(energy=np.zeros(1))
+        return top, list(descend(forces, top, [top, *edges], state))
+    apex = top - float(first.state.energy[0]) / forces.field.gravity
+    return apex, list(descend(forces, apex, edges, first.state))
 
 
 def _members(
@@ -345,20 +316,17 @@ def _members(
     timed_to: float | None,
 ) -> Array:
     """Six quantities of a block of members at the depths, shape (6, members, depths)."""
-    change = forces.variation
-    state = _at_release(start, change, change.members)
-    rows = np.empty((6, change.members, len(depths)))
-    sigma = np.sqrt(np.maximum(depths - apex, 0.0))
+    hand = _in_hand(start, forces.variation)
+    state = hand.state
+    rows = np.empty((6, len(state.time), len(depths)))
     waiting = stretches
     if timed_to is not None:
-        down = start.speed_down + np.broadcast_to(
-            np.asarray(change.speed_down, dtype=np.float64), state.time.shape
-        )
-        release = state
+        top = rise(forces, hand)
         for i in np.flatnonzero(depths < timed_to):
-            rows[:, :, i] = np.stack(reach(forces, release, down, start.depth, float(depths[i])))
-        state = reach(forces, release, down, start.depth, timed_to)
+            rows[:, :, i] = np.stack(reach(forces, top, float(depths[i])))
+        state = reach(forces, top, timed_to)
         waiting = [one for one in stretches if one.start >= np.sqrt(timed_to - apex) * (1.0 - 1e-12)]
+    sigma = np.sqrt(np.maximum(depths - apex, 0.0))
     for stretch in waiting:
         rates, last = follow(forces, apex, stretch, state)
         inside = (sigma >= stretch.start) & (sigma <= stretch.end)
@@ -369,59 +337,3 @@ def _members(
                 row[:, inside] = (value + onto @ rate).T
         state = last
     return rows
-
-
-def _samples(start: float, to_depth: float, apex: float, stretches: list[Stretch]) -> Falling:
-    """Fall at the nodes of its stretches and at both ends."""
-    states = [stretches[0].first, *(one.nodes for one in stretches), stretches[-1].last]
-    columns = [np.concatenate([np.ravel(getattr(one, name)) for one in states]) for name in State._fields]
-    time, east, north, speed_east, speed_north, energy = columns
-    sigma = np.concatenate([one.sigma[:, 0] for one in stretches])
-    return Falling(
-        depth=np.concatenate([[start], apex + sigma**2, [to_depth]]),
-        time=time,
-        east=east,
-        north=north,
-        speed=np.sqrt(2.0 * energy + speed_east**2 + speed_north**2),
-        speed_east=speed_east,
-        speed_north=speed_north,
-    )
-
-
-def _warnings(forces: Forces, path: Falling) -> tuple[str, ...]:
-    """Sentences for what the model does not reach on this path."""
-    found = []
-    measured = forces.field.measured_to
-    if 0.0 < measured < path.depth[-1]:
-        found.append(f"deflections were measured down to {measured:g} m; below, the normal curvature goes on")
-    if forces.air is None or forces.body is None:
-        return tuple(found)
-    around = forces.surroundings(path.depth)
-    speed = np.sqrt(path.speed**2 - 2.0 * path.speed * around.air_down + around.air_down**2)
-    reynolds = float(np.max(around.density * speed * forces.body.diameter / around.viscosity))
-    if forces.body.drag_coefficient == "sphere" and reynolds > HIGHEST_REYNOLDS:
-        found.append(f"Reynolds number up to {reynolds:.2g}: beyond the drag curve's 1e6")
-    elif forces.body.drag_coefficient == "sphere" and reynolds > CRISIS_REYNOLDS:
-        found.append(
-            f"Reynolds number up to {reynolds:.2g}: near the drag crisis a rough or spinning sphere falls otherwise "
-            "than the smooth one assumed"
-        )
-    mach = float(np.max(speed / forces.air.sound_speed(path.depth)))
-    if mach > 0.3:
-        found.append(f"speed up to {mach:.2f} of sound: the drag of compressed air is not in the model")
-    if forces.spins:
-        found.append("the lift of a spinning body is an estimate of its size only")
-    return (*found, *_swamped(forces, path))
-
-
-def _swamped(forces: Forces, path: Falling) -> tuple[str, ...]:
-    """Sentence, if the cross-flow pushes harder than the turning Earth does."""
-    around = forces.surroundings(path.depth)
-    if forces.body is None:
-        return ()
-    rate = forces.drag_rate(forces.body, around, path.speed)
-    push = np.trapezoid(rate * np.hypot(around.air_east, around.air_north), path.time)
-    turn = np.trapezoid(np.abs(forces.coriolis_cosine) * path.speed, path.time)
-    if push <= turn:
-        return ()
-    return ("the cross-flow pushes harder than the turning Earth: the landing tells the air, not the Earth",)
