@@ -1,0 +1,353 @@
+"""What a perfectly plumb shaft would have shown: one curve over depth for a set of assumptions, with its uncertainty.
+
+The models are in `field`, `hung` and `fall`; here they are put together per kind of run and reference line, tabulated
+once and interpolated after that. The lean of a moving line depends on the journey and is added by the engine.
+"""
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+from math import tau
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from eastfall.physics.air import AirColumn, air_column
+from eastfall.physics.fall import Trajectory, Variation, fall, fall_ensemble
+from eastfall.physics.field import LocalField, local_field
+from eastfall.physics.findings import Share
+from eastfall.physics.hung import hang
+from eastfall.physics.moving import lean
+from eastfall.physics.settings import Assumptions, Body
+from eastfall.physics.spread import wall_contact
+
+Pair = NDArray[np.float64]
+"""East in row 0, north in row 1, shape (2, n) [m]."""
+
+_POINTS = 2049
+"""Of the table; spaced closer toward the collar, where a falling body's curve bends most. Linear interpolation is then
+within 0.4 µm for 4 km (checked in the tests against the models themselves)."""
+_COARSE = 65
+"""Depths at which uncertainty is worked out; it bends far less than the curve."""
+_ABOVE = -1.0
+"""Readings up to a metre above the collar are taken as at the collar, where every curve is zero [m]."""
+
+
+def reach(assumptions: Assumptions) -> float:
+    """Return the depth to which a curve is tabulated [m]: a little past the stated depth, for a stretched line."""
+    return 1.02 * assumptions.shaft.depth + 2.0
+
+
+def graded(to_depth: float, points: int) -> NDArray[np.float64]:
+    """Return depths from 0 to `to_depth` [m], shape (points,), spaced in proportion to the square root of depth."""
+    return to_depth * np.linspace(0.0, 1.0, points) ** 2
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Models:
+    """The local field and air of a site, and what falls and hangs in them, against the straight vertical."""
+
+    assumptions: Assumptions
+    field: LocalField
+    air: AirColumn | None
+    drag_factor: float = 1.0
+    """On the body's drag coefficient; for its uncertainty."""
+
+    @classmethod
+    def of(cls, assumptions: Assumptions) -> "Models":
+        """Build the models."""
+        field = local_field(assumptions.site)
+        air = None if assumptions.air.is_vacuum else air_column(assumptions.air, field)
+        return cls(assumptions=assumptions, field=field, air=air)
+
+    def field_line(self, depth: NDArray[np.float64]) -> Pair:
+        """Return the curved vertical through the collar at depths, shape (2, n) [m]."""
+        north, east = self.field.field_line(depth)
+        return np.stack([east, north])
+
+    def bob(self, depth: NDArray[np.float64]) -> Pair:
+        """Return where the bob hangs, at rest, when the line is as long as each depth, shape (2, n) [m]."""
+        still = replace(self.assumptions.line, line_speed=0.0)
+        found = hang(self.field, still, np.maximum(depth, 0.0), self.air)
+        return np.stack([found.bob_east, found.bob_north])
+
+    def body(self, to_depth: float) -> Trajectory:
+        """Return the path of the body; in vacuum where the site gives none."""
+        air = self.air if self.assumptions.body else None
+        return fall(self.field, to_depth=to_depth, body=self.assumptions.body, air=air)
+
+    def body_at(self, depth: NDArray[np.float64]) -> Pair:
+        """Return where the body is at rising depths, shape (2, n) [m]."""
+        if self.drag_factor == 1.0:
+            there = self.body(float(depth[-1])).at(depth)
+            return np.stack([there.east, there.north])
+        changed = Variation(drag_factor=np.array([self.drag_factor]))
+        body, air = self.assumptions.body, self.air
+        found = fall_ensemble(self.field, depths=depth, variation=changed, body=body, air=air)
+        return np.stack([found.east[0], found.north[0]])
+
+    def lowering(self, depth: NDArray[np.float64], speed: ArrayLike) -> Pair:
+        """Return how far east a bob rides while its line runs at `speed` [m/s], shape (2, n) [m]."""
+        angle = lean(speed, self.assumptions.site.latitude, self.field.gravity)
+        return np.stack([angle * depth, np.zeros_like(depth)])
+
+    def reference(self, depth: NDArray[np.float64]) -> Pair:
+        """Return the run's reference line against the straight vertical, shape (2, n) [m]."""
+        match self.assumptions.run.reference:
+            case "field-line":
+                return self.field_line(depth)
+            case "hung-line":
+                return self.bob(depth)
+            case _:
+                return np.zeros((2, depth.size))
+
+    def plumb(self, depth: NDArray[np.float64]) -> Pair:
+        """Return what the run's own measurement shows in a plumb shaft, line at rest, shape (2, n) [m].
+
+        Guided: tilt is summed from the felt vertical, that is from the field line, so a guide along the reference
+        line shows the reference less the field line. Hung and drop: the bob, or the body, against the reference.
+        """
+        match self.assumptions.run.kind:
+            case "guided":
+                return self.reference(depth) - self.field_line(depth)
+            case "hung":
+                return self.bob(depth) - self.reference(depth)
+            case _:
+                return self.body_at(depth) - self.reference(depth)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Budget:
+    """What each input contributes to the uncertainty of the expected offset, by depth.
+
+    Parameters
+    ----------
+    depth : ndarray, shape (m,)
+        [m].
+    names : tuple of str
+        The inputs.
+    parts : ndarray, shape (len(names), 2, m)
+        Standard uncertainty from each alone [m], east and north; the sign is that of the sensitivity.
+    """
+
+    depth: NDArray[np.float64]
+    names: tuple[str, ...]
+    parts: NDArray[np.float64]
+
+    def total(self) -> Pair:
+        """Return the combined standard uncertainty, shape (2, m) [m]; inputs taken as uncorrelated."""
+        return np.sqrt(np.sum(self.parts**2, axis=0))
+
+    def shares(self, depth: float) -> tuple[Share, ...]:
+        """Return the parts at one depth [m], in the order of `names`."""
+        at = [[float(np.interp(depth, self.depth, row)) for row in part] for part in self.parts]
+        return tuple(
+            Share(name=name, east=abs(east), north=abs(north))
+            for name, (east, north) in zip(self.names, at, strict=True)
+        )
+
+
+def varied(models: Models) -> Iterator[tuple[str, Models]]:
+    """Yield every input that has an uncertainty and matters for the kind, with the models shifted by it."""
+    given = models.assumptions
+    for name, changed in _site_varied(given, models.field):
+        yield name, Models.of(changed)
+    if given.run.kind != "guided" or given.run.reference == "hung-line":
+        for name, changed in _line_and_air_varied(given):
+            yield name, Models.of(changed)
+    if given.run.kind == "drop" and given.body is not None:
+        yield "drag", replace(models, drag_factor=1.0 + given.body.u_drag_fraction)
+        for name, changed in _release_varied(given, given.body):
+            yield name, Models.of(changed)
+
+
+def _site_varied(given: Assumptions, field: LocalField) -> Iterator[tuple[str, Assumptions]]:
+    site = given.site
+    yield "latitude", replace(given, site=replace(site, latitude=_shifted(site.latitude, site.u_latitude)))
+    yield "gravity", replace(given, site=replace(site, gravity=field.gravity + site.u_gravity))
+    rock = tuple(
+        (top, density + site.u_rock_density if density else 0.0) for top, density in site.rock_density
+    )
+    yield "rock density", replace(given, site=replace(site, rock_density=rock))
+    for name, row in (("vertical bent north", 1), ("vertical bent east", 2)):
+        yield name, replace(given, site=replace(site, deflections=_bent(given, field, row)))
+
+
+def _line_and_air_varied(given: Assumptions) -> Iterator[tuple[str, Assumptions]]:
+    air, line = given.air, given.line
+    if not air.is_vacuum:
+        yield "air density", replace(given, air=replace(air, density=air.density + air.u_density))
+        yield (
+            "air moving in the shaft",
+            replace(given, air=replace(air, vertical=air.vertical + air.u_vertical)),
+        )
+    stronger = tuple(
+        (top, end, v * (1.0 + air.u_cross_flow_fraction), to) for top, end, v, to in air.cross_flow
+    )
+    yield "cross-flow", replace(given, air=replace(air, cross_flow=stronger))
+    yield "bob mass", replace(given, line=replace(line, bob_mass=line.bob_mass + line.u_bob_mass))
+
+
+def _release_varied(given: Assumptions, body: Body) -> Iterator[tuple[str, Assumptions]]:
+    for axis in ("east", "north"):
+        point, speed = f"release_{axis}", f"release_speed_{axis}"
+        moved = replace(body, **{point: getattr(body, point) + body.u_release})
+        yield f"release point {axis}", replace(given, body=moved)
+        pushed = replace(body, **{speed: getattr(body, speed) + body.u_release_speed})
+        yield f"release speed {axis}", replace(given, body=pushed)
+
+
+def _shifted(latitude: float, by: float) -> float:
+    return latitude + by if latitude + by <= tau / 4 else latitude - by
+
+
+def _bent(assumptions: Assumptions, field: LocalField, row: int) -> tuple[tuple[float, float, float], ...]:
+    """Return the deflections with the unknown bending added on one axis, growing in proportion to depth."""
+    deepest = reach(assumptions)
+    depths = np.union1d([0.0, deepest], [one[0] for one in assumptions.site.deflections])
+    north, east = field.slope(depths)
+    bending = assumptions.site.u_deflection * depths / assumptions.shaft.depth
+    columns = [depths, north, east]
+    columns[row] = columns[row] + bending
+    return tuple((float(z), float(n), float(e)) for z, n, e in zip(*columns, strict=True))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class ExpectedCurve:
+    """The prediction by depth, against the run's reference line; build it with `expected_curve`.
+
+    Parameters
+    ----------
+    depth : ndarray, shape (n,)
+        Table [m], rising from 0.
+    plumb, bob, body, field_line, reference : ndarray, shape (2, n)
+        East and north [m]. `plumb` is what the run's own measurement shows in a plumb shaft with the line at rest;
+        `bob` and `body` the two classical answers and `field_line` the curved vertical, all three against the
+        run's reference line; `reference` is that line against the straight vertical.
+    u : ndarray, shape (2, n)
+        Standard uncertainty of `plumb` [m].
+    budget : Budget
+        What it is made of.
+    fall_time, fall_speed : ndarray, shape (n,)
+        [s], [m/s].
+    wall_contact_depth : float or None
+        Where the body meets the wall [m].
+    warnings : tuple of str
+        Where the answer is outside the model.
+    """
+
+    assumptions: Assumptions
+    models: Models
+    depth: NDArray[np.float64]
+    plumb: Pair
+    bob: Pair
+    body: Pair
+    field_line: Pair
+    reference: Pair
+    u: Pair
+    budget: Budget
+    fall_time: NDArray[np.float64]
+    fall_speed: NDArray[np.float64]
+    wall_contact_depth: float | None
+    warnings: tuple[str, ...]
+
+    def look_up(self, table: NDArray[np.float64], depth: ArrayLike) -> NDArray[np.float64]:
+        """Interpolate one of the curve's tables.
+
+        Parameters
+        ----------
+        table : ndarray, shape (n,) or (2, n)
+            A table of this curve.
+        depth : array_like, shape (m,)
+            [m].
+
+        Returns
+        -------
+        ndarray, shape (m,) or (2, m)
+            NaN below the table and more than a metre above the collar; nothing is extrapolated.
+        """
+        z = np.asarray(depth, dtype=float)
+        rows = [np.interp(z, self.depth, row, right=np.nan) for row in np.atleast_2d(table)]
+        for row in rows:
+            row[z < _ABOVE] = np.nan
+        return rows[0] if table.ndim == 1 else np.stack(rows)
+
+    def expected(self, depth: ArrayLike, speed: float = 0.0) -> Pair:
+        """Return what is expected at depths with the line at one constant speed all the way [m], shape (2, m)."""
+        z = np.asarray(depth, dtype=float)
+        still = self.look_up(self.plumb, z)
+        if speed == 0.0 or self.assumptions.run.kind == "drop":
+            return still
+        rides = self.models.lowering(np.maximum(z, 0.0), speed)
+        return still + rides if self.assumptions.run.kind == "hung" else still - rides
+
+
+def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
+    """Work out the prediction for a set of assumptions.
+
+    Parameters
+    ----------
+    assumptions : Assumptions
+        Site, shaft, run and whatever else matters for its kind.
+
+    Returns
+    -------
+    ExpectedCurve
+        From the collar to a little below the stated depth.
+
+    Raises
+    ------
+    ParameterError
+        From the models, for assumptions outside their domain.
+    """
+    models = Models.of(assumptions)
+    depth = graded(reach(assumptions), _POINTS)
+    path = models.body(float(depth[-1]))
+    there = path.at(depth)
+    reference = models.reference(depth)
+    bob = models.bob(depth)
+    field_line = models.field_line(depth)
+    body = np.stack([there.east, there.north])
+    plumb = {"guided": reference - field_line, "hung": bob - reference, "drop": body - reference}
+    budget = expected_budget(models)
+    return ExpectedCurve(
+        assumptions=assumptions,
+        models=models,
+        depth=depth,
+        plumb=plumb[assumptions.run.kind],
+        bob=bob - reference,
+        body=body - reference,
+        field_line=field_line - reference,
+        reference=reference,
+        u=np.stack([np.interp(depth, budget.depth, row) for row in budget.total()]),
+        budget=budget,
+        fall_time=there.time,
+        fall_speed=there.speed,
+        wall_contact_depth=_contact(assumptions, path),
+        warnings=tuple(path.warnings) if assumptions.run.kind == "drop" else (),
+    )
+
+
+def _contact(assumptions: Assumptions, path: Trajectory) -> float | None:
+    if assumptions.shaft.diameter is None:
+        return None
+    size = assumptions.body.diameter if assumptions.body else 0.0
+    depth = wall_contact(path, assumptions.shaft, size)
+    return depth if depth is not None and depth <= assumptions.shaft.depth else None
+
+
+def expected_budget(models: Models) -> Budget:
+    """Propagate the standard uncertainty of every input, one at a time, through the models.
+
+    References
+    ----------
+    JCGM 100:2008 (GUM), 5.1.3, note 2: numerical partial derivatives.
+    """
+    depth = graded(reach(models.assumptions), _COARSE)
+    base = models.plumb(depth)
+    names, parts = [], []
+    for name, shifted in varied(models):
+        part = shifted.plumb(depth) - base
+        if np.any(part):
+            names.append(name)
+            parts.append(part)
+    return Budget(depth=depth, names=tuple(names), parts=np.array(parts).reshape(len(names), 2, depth.size))

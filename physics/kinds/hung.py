@@ -1,0 +1,343 @@
+"""A plumb line or a probe hanging free: where its bob comes to rest, against where a bob hangs in a plumb shaft."""
+
+from collections import Counter
+
+import numpy as np
+
+from eastfall.physics import swing
+from eastfall.physics.calibration import corrected
+from eastfall.physics.expected import ExpectedCurve
+from eastfall.physics.findings import RestPoint, Rows, Share, Station
+from eastfall.physics.kinds.base import (
+    ROW,
+    Array,
+    Batch,
+    Judged,
+    StationFacts,
+    combined,
+    fill_limits,
+    inside_shaft,
+    root_sum,
+    rows_of,
+    station,
+    usable,
+)
+from eastfall.physics.moving import LineSpeed
+from eastfall.physics.readings import Readings
+from eastfall.physics.settings import Assumptions
+from eastfall.physics.tilt import increments
+
+_SAME_LEVEL = 0.25
+"""A bob this near the depth where it came to rest is still at that level [m]: a wire stretches and creeps."""
+_RUNNING = 0.02
+"""A line faster than this is running [m/s]; its readings belong to no level."""
+_FIRST_ESTIMATE = 1.0
+_LATER = 0.02
+"""The rest point is worked out anew after a second, later after a fiftieth of the time spent at the level: its
+uncertainty shrinks no faster, and the cost of an hour stays bounded."""
+_QUIET = 3.0
+"""Readings that scatter by less than this many times their own uncertainty show a bob at rest."""
+
+
+class _Level:
+    """The readings at one level."""
+
+    def __init__(self, depth: float, time: float, tracker: swing.RestPointTracker) -> None:
+        self.depth = depth
+        self.tracker = tracker
+        self.began = self.time = time
+        self.due = time + _FIRST_ESTIMATE
+        self.count = 0
+        self.origin: Array = np.zeros(2)
+        self.sums: Array = np.zeros((4, 1))
+        self.rest: swing.RestPoint | None = None
+        self.direct = True
+        self.expected: Array = np.zeros(2)
+
+    def mean(self) -> Array:
+        """Return the mean of the readings, shape (2,) [m]."""
+        return self.origin + self.sums[:2, 0] / max(self.count, 1)
+
+    def scatter(self) -> Array:
+        """Return their standard deviation, shape (2,) [m]; zero for one reading."""
+        if self.count < 2:
+            return np.zeros(2)
+        mean = self.sums[:2, 0] / self.count
+        return np.sqrt(
+            np.maximum(self.sums[2:, 0] / self.count - mean**2, 0.0) * self.count / (self.count - 1)
+        )
+
+
+class Hung:
+    """Findings of a hung run.
+
+    Parameters
+    ----------
+    assumptions : Assumptions
+        Its kind is hung.
+    curve : ExpectedCurve
+        For the same assumptions.
+    """
+
+    def __init__(self, assumptions: Assumptions, curve: ExpectedCurve) -> None:
+        self._assumptions = assumptions
+        self._curve = curve
+        self._speed = LineSpeed()
+        self._level: _Level | None = None
+        self._closed = 0
+        self._rest: RestPoint | None = None
+        self._last: Array | None = None
+        self.unused: Counter[str] = Counter()
+        self._messages: tuple[str, ...] = ()
+
+    def feed(self, readings: Readings) -> Batch:
+        """Take a block."""
+        readings = inside_shaft(readings, self._curve, self.unused)
+        offsets, direct = self._offsets(readings)
+        good = np.isfinite(offsets).all(axis=0)
+        readings = usable(readings, good, "no offset and no usable tilt", self.unused)
+        if not len(readings):
+            return Batch.none()
+        rows, speed = self._rows(readings, offsets[:, good])
+        judged, stations = self._by_level(rows, np.abs(speed) > _RUNNING, direct[good])
+        fill_limits(rows, self._assumptions.limits)
+        self._last = rows[:, -1].copy()
+        return Batch(rows=Rows(rows), judged=judged, stations=tuple(stations))
+
+    def _offsets(self, readings: Readings) -> tuple[Array, Array]:
+        """Return offsets, shape (2, n) [m], read directly or from the line's angle; and which were direct."""
+        direct = np.stack([readings.column("east"), readings.column("north")])
+        is_direct = np.isfinite(direct).all(axis=0)
+        if is_direct.all():
+            return direct, is_direct
+        instrument, depth = self._assumptions.instrument, readings.depth
+        a, b = corrected(
+            readings.column("tilt_a"), readings.column("tilt_b"), readings.column("temperature"), instrument
+        )
+        azimuth = np.where(
+            np.isfinite(readings.column("azimuth")), readings.column("azimuth"), instrument.a_azimuth
+        )
+        leaning = np.stack(increments(a, b, azimuth + instrument.north_offset)) * depth
+        # An angle is read against the vertical at the collar: bring it to the run's reference line.
+        leaning = leaning - self._curve.look_up(self._curve.reference, depth)
+        return np.where(is_direct, direct, leaning), is_direct
+
+    def _rows(self, readings: Readings, offsets: Array) -> tuple[Array, Array]:
+        rows = rows_of(len(readings))
+        depth = readings.depth
+        speed = np.nan_to_num(self._speed.update(readings.time, depth)[0])
+        rows[ROW["time"]], rows[ROW["depth"]], rows[ROW["speed"]] = readings.time, depth, speed
+        rows[ROW["passing"]], rows[ROW["direction"]] = 0, np.where(speed < -_RUNNING, -1, 1)
+        rows[ROW["measured_east"]], rows[ROW["measured_north"]] = offsets
+        running = np.where(np.abs(speed) > _RUNNING, speed, 0.0)
+        rides = self._curve.models.lowering(np.maximum(depth, 0.0), running)
+        expected = self._curve.look_up(self._curve.plumb, depth) + rides
+        rows[ROW["expected_east"]], rows[ROW["expected_north"]] = expected
+        single = self._single(depth, np.isfinite(readings.column("east")))
+        rows[ROW["u_east"]], rows[ROW["u_north"]] = np.hypot(
+            self._curve.look_up(self._curve.u, depth), single
+        )
+        return rows, speed
+
+    def _single(self, depth: Array, direct: Array) -> Array:
+        """Return the standard uncertainty of one reading, each axis [m]."""
+        instrument = self._assumptions.instrument
+        return np.where(direct, instrument.u_offset, np.hypot(instrument.u_tilt, instrument.u_zero) * depth)
+
+    def _by_level(self, rows: Array, running: Array, direct: Array) -> tuple[Array, list[Station]]:
+        """Send each reading to its level; return the residual to judge at each row, and the stations closed."""
+        judged = np.full((2, rows.shape[1]), np.nan)
+        stations: list[Station] = []
+        start = 0
+        while start < rows.shape[1]:
+            depth = rows[ROW["depth"], start:]
+            if running[start]:
+                stations += self._leave()
+                stay = _run_length(running[start:])
+                part = slice(start, start + stay)
+                judged[:, part] = rows[5:7, part] - rows[7:9, part]
+            else:
+                if self._level is None or abs(depth[0] - self._level.depth) > _SAME_LEVEL:
+                    stations += self._leave()
+                    self._level = self._new_level(rows[:, start])
+                stay = _run_length(~running[start:] & (np.abs(depth - self._level.depth) <= _SAME_LEVEL))
+                part = slice(start, start + stay)
+                self._dwell(self._level, rows[:, part], direct[part], judged[:, part])
+            start += stay
+        return judged, stations
+
+    def _new_level(self, row: Array) -> _Level:
+        depth, time = float(row[ROW["depth"]]), float(row[ROW["time"]])
+        field = self._curve.models.field
+        tracker = swing.RestPointTracker(
+            latitude=field.latitude, length=max(depth, 0.0), gravity=field.gravity
+        )
+        level = _Level(depth, time, tracker)
+        level.expected = row[[ROW["expected_east"], ROW["expected_north"]]]
+        level.origin = row[[ROW["measured_east"], ROW["measured_north"]]]
+        return level
+
+    def _dwell(self, level: _Level, rows: Array, direct: Array, judged: Array) -> None:
+        """Take readings at a level, and work out the rest point whenever it is due on the readings' own clock."""
+        level.direct = level.direct and bool(direct.all())
+        time = rows[ROW["time"]]
+        if not np.isfinite(time).all():
+            # Without a clock there is no swing to follow: the readings count by their mean alone.
+            self._take(level, rows, judged)
+            return
+        start = 0
+        while start < rows.shape[1]:
+            stop = start + int(np.searchsorted(time[start:], level.due, side="left"))
+            stop = min(max(stop, start), rows.shape[1])
+            self._take(level, rows[:, start:stop], judged[:, start:stop])
+            if stop < rows.shape[1]:
+                level.rest = level.tracker.estimate()
+                level.due = max(time[stop], level.due) + max(
+                    _FIRST_ESTIMATE, _LATER * (time[stop] - level.began)
+                )
+            start = stop
+
+    def _take(self, level: _Level, rows: Array, judged: Array) -> None:
+        if not rows.shape[1]:
+            return
+        offsets = rows[[ROW["measured_east"], ROW["measured_north"]]]
+        if np.isfinite(rows[ROW["time"]]).all():
+            level.tracker.update(rows[ROW["time"]], offsets[0], offsets[1])
+        away = offsets - level.origin[:, None]
+        terms = np.concatenate([level.sums, np.concatenate([away, away * away])], axis=1)
+        sums = np.cumsum(terms, axis=1)[:, 1:]
+        numbers = level.count + np.arange(1, rows.shape[1] + 1)
+        level.sums, level.count, level.time = (
+            sums[:, -1:].copy(),
+            int(numbers[-1]),
+            float(rows[ROW["time"], -1]),
+        )
+        if level.rest is not None and level.rest.fits:
+            judged[:] = (np.array([level.rest.east, level.rest.north]) - level.expected)[:, None]
+            return
+        mean = sums[:2] / numbers
+        spread = np.sqrt(np.maximum(sums[2:] / numbers - mean**2, 0.0))
+        quiet = (spread <= self._quiet(level)).all(axis=0)
+        judged[:] = np.where(quiet, level.origin[:, None] + mean - level.expected[:, None], np.nan)
+
+    def _quiet(self, level: _Level) -> float:
+        return _QUIET * self._random(level)
+
+    def _random(self, level: _Level) -> float:
+        instrument = self._assumptions.instrument
+        return instrument.u_offset if level.direct else instrument.u_tilt * level.depth
+
+    def _leave(self) -> list[Station]:
+        """Close the level that is being left."""
+        level, self._level = self._level, None
+        if level is None or not level.count:
+            return []
+        level.rest = level.tracker.estimate()
+        self._rest = self._told(level.rest)
+        found = self._station(level)
+        self._closed += 1
+        return [found]
+
+    def _position(self, level: _Level) -> tuple[Array, tuple[Share, ...]]:
+        """Return where the bob is taken to rest, and what makes the uncertainty of that."""
+        rest = level.rest
+        if rest is not None and rest.fits:
+            position = np.array([rest.east, rest.north])
+            own = [Share(name="rest point of the swing", east=rest.u_east, north=rest.u_north)]
+        else:
+            position = level.mean()
+            # A swing that does not fit the model leaves only its scatter, all of it, to say where the rest is.
+            scatter = level.scatter()
+            quiet = bool((scatter <= self._quiet(level)).all())
+            shrink = 1.0 / np.sqrt(level.count) if quiet else 1.0
+            u = np.maximum(scatter, self._random(level)) * shrink
+            name = "readings" if quiet else "swing not resolved"
+            own = [Share(name=name, east=float(u[0]), north=float(u[1]))]
+        return position, combined(
+            [*own, *self._systematic(level, position), *self._curve.budget.shares(level.depth)]
+        )
+
+    def _systematic(self, level: _Level, position: Array) -> list[Share]:
+        if level.direct:
+            return []
+        instrument = self._assumptions.instrument
+        zero = instrument.u_zero * level.depth
+        east, north = np.abs(position)
+        return [
+            Share(name="tilt, zero", east=zero, north=zero),
+            Share(name="tilt, scale", east=instrument.u_scale * east, north=instrument.u_scale * north),
+            Share(name="azimuth", east=instrument.u_azimuth * north, north=instrument.u_azimuth * east),
+        ]
+
+    def _station(self, level: _Level) -> Station:
+        position, shares = self._position(level)
+        facts = StationFacts(
+            number=self._closed,
+            depth=level.depth,
+            passing=0,
+            direction=1,
+            time=level.time,
+            measured=(float(position[0]), float(position[1])),
+            expected=(float(level.expected[0]), float(level.expected[1])),
+            readings=level.count,
+            still=True,
+            shares=shares,
+        )
+        return station(facts, self._assumptions.limits)
+
+    def _told(self, rest: swing.RestPoint | None) -> RestPoint | None:
+        if rest is None:
+            return None
+        return RestPoint(
+            east=rest.east,
+            north=rest.north,
+            u_east=rest.u_east,
+            u_north=rest.u_north,
+            covariance_east_north=float(rest.covariance[0, 1]),
+            period=rest.period_s,
+            decay=rest.decay_s,
+            swings=rest.swings,
+            fits=rest.fits,
+            message=rest.message,
+        )
+
+    def close(self) -> tuple[Station, ...]:
+        """Close the level that the run ends at."""
+        return tuple(self._leave())
+
+    def judged(self) -> Judged | None:
+        """Return the rest point at the level, or the newest reading of a running line."""
+        if self._last is None:
+            return None
+        if self._level is None:
+            row = dict(zip(ROW, self._last.tolist(), strict=True))
+            names = Judged.__slots__
+            return Judged(**{name: row[name] for name in names})
+        position, shares = self._position(self._level)
+        u_east, u_north = root_sum(shares)
+        return Judged(
+            depth=self._level.depth,
+            measured_east=float(position[0]),
+            measured_north=float(position[1]),
+            expected_east=float(self._level.expected[0]),
+            expected_north=float(self._level.expected[1]),
+            u_east=u_east,
+            u_north=u_north,
+        )
+
+    def rest_point(self) -> RestPoint | None:
+        """Return the newest rest point: at this level, else at the last one closed."""
+        if self._level is not None and self._level.rest is not None:
+            return self._told(self._level.rest)
+        return self._rest
+
+    def notes(self) -> tuple[str, ...]:
+        """Say what the swing says of itself, and where the model ends."""
+        rest = self.rest_point()
+        return (*self._curve.warnings, rest.message) if rest and rest.message else self._curve.warnings
+
+
+def _run_length(flags: Array) -> int:
+    """Return how many leading entries are true."""
+    first = np.flatnonzero(~flags)
+    return int(first[0]) if first.size else flags.size
