@@ -1,0 +1,252 @@
+"""The application: colours, glyphs, signals, and the entry points that the command line calls."""
+
+import asyncio
+import contextlib
+import os
+import signal
+import sys
+from typing import TYPE_CHECKING, ClassVar
+
+from textual.app import App
+from textual.binding import BindingType
+from textual.message import Message
+from textual.screen import Screen
+
+from eastfall.io.safetext import safe
+from eastfall.tui import keys
+from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.raster import BRAILLE, Glyphs
+from eastfall.tui.screens.dialogs import Confirm
+from eastfall.tui.screens.help import HelpScreen
+from eastfall.tui.screens.watch import WatchScreen
+from eastfall.tui.session import Session, curves_of
+from eastfall.tui.store import Mark, Snapshot
+from eastfall.tui.terminal import glyphs_for, refuse_unless_screen, wants_no_colour
+from eastfall.tui.themes import MONO, THEMES
+
+if TYPE_CHECKING:
+    from eastfall.io.replay import Replay
+    from eastfall.io.run import Run
+    from eastfall.io.sitefile import SiteFile
+    from eastfall.physics.expected import ExpectedCurve
+
+
+class Picture(Message):
+    """A newer snapshot is there."""
+
+
+class Dashboard(App[int]):
+    """What all screens share.
+
+    Parameters
+    ----------
+    first : Screen
+        The screen to begin with.
+    glyphs : Glyphs
+        How this terminal shows dots.
+    theme : str
+        Name of one of the program's themes.
+    no_colour : bool
+        Keep every colour code out of the output.
+    """
+
+    CSS_PATH = "app.tcss"
+    TITLE = "eastfall"
+    ENABLE_COMMAND_PALETTE = False
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("all"))
+
+    def __init__(
+        self,
+        first: Screen[None],
+        *,
+        glyphs: Glyphs = BRAILLE,
+        theme: str = THEMES[0].name,
+        no_colour: bool = False,
+    ) -> None:
+        # Textual picks its colour filter here, before a theme of ours can be set: ansi mode sends none of its own.
+        super().__init__(ansi_color=True if no_colour else None)
+        for one in THEMES:
+            self.register_theme(one)
+        self.theme = MONO.name if no_colour else theme
+        self.glyphs = glyphs
+        self.muted = False
+        self.first = first
+        self.feed: Feed | None = None
+        self._no_colour = no_colour
+        self._newest: Snapshot | None = None
+        self._told = False
+
+    def on_mount(self) -> None:
+        """Leave cleanly on the signals that Textual does not catch, then show the first screen."""
+        loop = asyncio.get_running_loop()
+        for name in ("SIGTERM", "SIGHUP"):
+            number = getattr(signal, name, None)
+            if number is not None:
+                with contextlib.suppress(NotImplementedError, RuntimeError, ValueError):
+                    loop.add_signal_handler(number, self.exit, 0)
+        self.push_screen(self.first)
+        if self.feed is not None:
+            self.feed.start()
+
+    def take(self, snapshot: Snapshot) -> None:
+        """Keep the newest snapshot and tell the screen, unless it is told already; called by the worker."""
+        self._newest = snapshot
+        if not self._told:
+            self._told = True
+            self.post_message(Picture())
+
+    def on_picture(self) -> None:
+        """Hand the newest snapshot to the watch screen."""
+        self._told = False
+        if self._newest is not None and isinstance(self.first, WatchScreen):
+            self.first.show(self._newest)
+
+    def action_theme(self) -> None:
+        """Take the next set of colours."""
+        if not self._no_colour:
+            names = [one.name for one in THEMES]
+            self.theme = names[(names.index(self.theme) + 1) % len(names)]
+
+    def action_mute(self) -> None:
+        """Turn the sound off or on."""
+        self.muted = not self.muted
+        self.notify("sound off" if self.muted else "sound on", markup=False, timeout=2)
+
+    def action_keys(self) -> None:
+        """Open the help page."""
+        self.push_screen(HelpScreen())
+
+    def action_leave(self) -> None:
+        """Leave; a run that is being recorded is asked about first."""
+        if isinstance(self.feed, LiveFeed) and self.feed.running:
+            self.push_screen(
+                Confirm("Stop recording and leave?", "The record so far is kept. The instrument is let go."),
+                self._left,
+            )
+        else:
+            self.exit(0)
+
+    def _left(self, sure: bool | None) -> None:
+        if sure:
+            self.exit(0)
+
+
+def watch_app(session: Session, **look: object) -> Dashboard:
+    """Return the application on a watch screen; its feed is set by the caller."""
+    return Dashboard(WatchScreen(session), **look)  # type: ignore[arg-type]  # the caller names Dashboard's arguments
+
+
+def terminal_look() -> dict[str, object]:
+    """Return glyphs and colours that fit this terminal, or refuse it.
+
+    Raises
+    ------
+    InputError
+        When there is no screen to draw on.
+    """
+    refuse_unless_screen(os.environ, is_terminal=sys.stdin.isatty() and sys.stdout.isatty())
+    return {
+        "glyphs": glyphs_for(os.environ, sys.stdout.encoding),
+        "no_colour": wants_no_colour(os.environ),
+    }
+
+
+def run_live(
+    site: "SiteFile", *, run: "Run", curve: "ExpectedCurve | None" = None, theme: str | None = None
+) -> int:
+    """Show a live run until the user leaves.
+
+    Parameters
+    ----------
+    site : SiteFile
+        What the run rests on.
+    run : Run
+        Not yet started; it is started, stepped and stopped here.
+    curve : ExpectedCurve, optional
+        For where a bob would hang and a dropped body would be.
+    theme : str, optional
+        Name of a theme.
+
+    Returns
+    -------
+    int
+        Exit status.
+
+    Raises
+    ------
+    InputError
+        When this terminal has no screen; or what stopped the run before its first reading.
+    """
+    look = terminal_look() | ({"theme": theme} if theme else {})
+    bob, fall = curves_of(curve)
+    session = Session(
+        assumptions=site.assumptions, mode="live", title=safe(site.assumptions.site.name), bob=bob, fall=fall
+    )
+    app = watch_app(session, **look)
+    armed = site.assumptions.run.kind != "drop"
+    return _shown(app, LiveFeed(run, app.take, armed=armed))
+
+
+def run_replay(
+    replay: "Replay", *, speed: float = 1.0, curve: "ExpectedCurve | None" = None, theme: str | None = None
+) -> int:
+    """Show a record until the user leaves.
+
+    Parameters
+    ----------
+    replay : Replay
+        At its beginning.
+    speed : float
+        Record seconds per second.
+    curve : ExpectedCurve, optional
+        For where a bob would hang and a dropped body would be.
+    theme : str, optional
+        Name of a theme.
+
+    Returns
+    -------
+    int
+        Exit status.
+
+    Raises
+    ------
+    InputError
+        When this terminal has no screen, or the record cannot be read.
+    """
+    look = terminal_look() | ({"theme": theme} if theme else {})
+    bob, fall = curves_of(curve)
+    session = Session(
+        assumptions=replay.site.assumptions,
+        mode="replay",
+        title=safe(replay.site.assumptions.site.name),
+        bob=bob,
+        fall=fall,
+        marks=marks_of(replay),
+        time_of_depth=replay.time_of_depth,
+    )
+    app = watch_app(session, **look)
+    return _shown(app, ReplayFeed(replay, app.take, speed=speed))
+
+
+def marks_of(replay: "Replay") -> tuple[Mark, ...]:
+    """Return the moments of a record to jump to, in order of time."""
+    return tuple(
+        sorted(
+            (Mark(time=one.time, depth=one.depth, what=safe(one.what)) for one in replay.index),
+            key=lambda one: one.time,
+        )
+    )
+
+
+def _shown(app: Dashboard, feed: Feed) -> int:
+    """Run the application over a feed, and let go of the source whatever happens."""
+    app.feed = feed
+    if isinstance(app.first, WatchScreen):
+        app.first.feed = feed
+    try:
+        status = app.run()
+    finally:
+        feed.close()
+    if feed.failure is not None:
+        raise feed.failure
+    return status if status is not None else app.return_code or 0

@@ -1,0 +1,334 @@
+"""The worker behind the screen: one thread steps a live run or a replay and publishes frozen snapshots at 10 Hz.
+
+The screen never touches the source: it asks by putting a command in the worker's queue, and reads snapshots.
+"""
+
+import queue
+import threading
+import time
+from abc import ABC, abstractmethod
+from collections.abc import Callable
+from typing import TYPE_CHECKING
+
+from eastfall.physics.errors import EastfallError
+from eastfall.tui.store import HealthView, History, LinkView, Snapshot
+
+if TYPE_CHECKING:
+    from eastfall.io.replay import Replay
+    from eastfall.io.run import Health, Run, RunUpdate
+
+Publish = Callable[[Snapshot], None]
+Command = Callable[[], None]
+
+PERIOD = 0.1
+"""Seconds between pictures."""
+SLOWEST, FASTEST = 0.25, 256.0
+_PATIENCE = 10.0  # s that closing waits for the source: sealing a record on a slow card
+
+
+class Feed(ABC):
+    """A source of snapshots in a thread of its own.
+
+    Parameters
+    ----------
+    history : History
+        Where findings gather; only the worker touches it after `start`.
+    publish : callable
+        Takes every snapshot, in the worker's thread.
+    clock : callable
+        Monotonic seconds.
+    """
+
+    def __init__(self, history: History, publish: Publish, clock: Callable[[], float]) -> None:
+        self._history = history
+        self._publish = publish
+        self._clock = clock
+        self._commands: queue.SimpleQueue[Command] = queue.SimpleQueue()
+        self._stopping = threading.Event()
+        self._thread = threading.Thread(target=self._run, name="eastfall feed", daemon=True)
+        self._published = float("-inf")
+        self._trouble = ""
+        self.failure: Exception | None = None
+
+    def start(self) -> None:
+        """Begin."""
+        self._thread.start()
+
+    def close(self) -> None:
+        """Stop the source and wait until it has let go of port and record."""
+        self._stopping.set()
+        self._commands.put(lambda: None)
+        if self._thread.is_alive():
+            self._thread.join(_PATIENCE)
+
+    @property
+    def running(self) -> bool:
+        """Whether the worker still works."""
+        return self._thread.is_alive()
+
+    def ask(self, command: Command) -> None:
+        """Have something done in the worker's thread, before its next step."""
+        self._commands.put(command)
+
+    def _run(self) -> None:
+        try:
+            try:
+                self._begin()
+                while not self._stopping.is_set():
+                    self._obey()
+                    self._work()
+                    self._show()
+            finally:
+                self._end()
+        except (EastfallError, OSError) as error:
+            self._fail(error, str(error))
+        except Exception as error:  # noqa: BLE001 (kept and raised by the caller of the screen, never swallowed)
+            self._fail(error, f"{type(error).__name__}: {error}")
+
+    def _fail(self, error: Exception, words: str) -> None:
+        self.failure = error
+        self._trouble = words
+        self._show(force=True)
+
+    def _obey(self) -> None:
+        while True:
+            try:
+                command = self._commands.get_nowait()
+            except queue.Empty:
+                return
+            command()
+            self._published = float("-inf")
+
+    def _show(self, *, force: bool = False) -> None:
+        now = self._clock()
+        if force or now - self._published >= PERIOD:
+            self._published = now
+            self._publish(self._snapshot())
+
+    @abstractmethod
+    def _begin(self) -> None:
+        """Open the source."""
+
+    @abstractmethod
+    def _work(self) -> None:
+        """Take one step, waiting a fraction of `PERIOD` at most."""
+
+    @abstractmethod
+    def _end(self) -> None:
+        """Close the source."""
+
+    @abstractmethod
+    def _snapshot(self) -> Snapshot:
+        """Freeze what stands."""
+
+
+class LiveFeed(Feed):
+    """Steps a live run; recording goes on whatever the screen does.
+
+    Parameters
+    ----------
+    run : Run
+        Not yet started.
+    publish : callable
+        Takes every snapshot, in the worker's thread.
+    armed : bool
+        False for a drop run that waits for the shaft to be declared clear.
+    clock : callable
+        Monotonic seconds.
+    """
+
+    def __init__(
+        self,
+        run: "Run",
+        publish: Publish,
+        *,
+        armed: bool = True,
+        clock: Callable[[], float] = time.monotonic,
+    ) -> None:
+        super().__init__(History("live"), publish, clock)
+        self._source = run
+        self._update: RunUpdate | None = None
+        self._armed = armed
+
+    def acknowledge(self, name: str) -> None:
+        """Acknowledge one alarm."""
+        self.ask(lambda: self._source.acknowledge(name, ""))
+
+    def note(self, text: str) -> None:
+        """Write a note into the record."""
+        self.ask(lambda: self._source.note(text, ""))
+
+    def arm(self, who: str) -> None:
+        """Write into the record who declared the shaft clear, and arm the run."""
+
+        def command() -> None:
+            self._source.arm(who)
+            self._armed = True
+
+        self.ask(command)
+
+    def _begin(self) -> None:
+        self._source.start()
+
+    def _work(self) -> None:
+        self._take(self._source.step(PERIOD / 2))
+
+    def _take(self, update: "RunUpdate") -> None:
+        self._update = update
+        self._history.add(update.findings)
+
+    def _end(self) -> None:
+        self._take(self._source.stop())
+        self._show(force=True)
+
+    def _snapshot(self) -> Snapshot:
+        update = self._update
+        if update is None:
+            return self._history.snapshot(armed=self._armed, trouble=self._trouble)
+        return self._history.snapshot(
+            time=update.time,
+            standing=update.standing,
+            alarms=update.alarms,
+            health=health_of(update.health),
+            armed=self._armed,
+            ended=all(one.state == "ended" for one in update.health.links) and bool(update.health.links),
+            trouble=self._trouble,
+        )
+
+
+class ReplayFeed(Feed):
+    """Moves through a record at a chosen speed.
+
+    Parameters
+    ----------
+    replay : Replay
+        At its beginning.
+    publish : callable
+        Takes every snapshot, in the worker's thread.
+    speed : float
+        Record seconds per second.
+    clock : callable
+        Monotonic seconds.
+    """
+
+    def __init__(
+        self,
+        replay: "Replay",
+        publish: Publish,
+        *,
+        speed: float = 1.0,
+        clock: Callable[[], float] = time.monotonic,
+    ) -> None:
+        super().__init__(History("replay"), publish, clock)
+        self._replay = replay
+        self._update: RunUpdate | None = None
+        self._playing = True
+        self._speed = min(max(speed, SLOWEST), FASTEST)
+        self._last = clock()
+
+    def play(self, *, on: bool | None = None) -> None:
+        """Go on, stop, or (None) change over; at the end of the record playing starts over."""
+
+        def command() -> None:
+            self._playing = not self._playing if on is None else on
+            if self._playing and self._replay.time >= self._replay.duration:
+                self._go(0.0)
+
+        self.ask(command)
+
+    def faster(self, factor: float) -> None:
+        """Change the speed by a factor, within its bounds."""
+
+        def command() -> None:
+            self._speed = min(max(self._speed * factor, SLOWEST), FASTEST)
+
+        self.ask(command)
+
+    def skip(self, seconds: float) -> None:
+        """Go on (or back, negative) in the record."""
+        self.ask(lambda: self._go(self._replay.time + seconds))
+
+    def seek(self, moment: float) -> None:
+        """Go to a time of the record [s]."""
+        self.ask(lambda: self._go(moment))
+
+    def step(self) -> None:
+        """Take the next block of lines and stand still."""
+
+        def command() -> None:
+            self._playing = False
+            self._take(self._replay.step())
+
+        self.ask(command)
+
+    def _go(self, moment: float) -> None:
+        """Move; backwards the record is read from its beginning, and the history with it."""
+        target = min(max(moment, 0.0), self._replay.duration)
+        if target < self._replay.time:
+            self._history.clear()
+        self._take(self._replay.seek(target))
+
+    def _begin(self) -> None:
+        self._last = self._clock()
+
+    def _work(self) -> None:
+        try:
+            command = self._commands.get(timeout=PERIOD if not self._playing else PERIOD / 2)
+        except queue.Empty:
+            pass
+        else:
+            command()
+            self._published = float("-inf")
+        now = self._clock()
+        passed, self._last = now - self._last, now
+        if self._playing:
+            self._take(
+                self._replay.advance(min(self._replay.time + passed * self._speed, self._replay.duration))
+            )
+            self._playing = self._replay.time < self._replay.duration
+
+    def _take(self, update: "RunUpdate") -> None:
+        self._update = update
+        self._history.add(update.findings)
+
+    def _end(self) -> None:
+        pass
+
+    def _snapshot(self) -> Snapshot:
+        update = self._update
+        return self._history.snapshot(
+            time=self._replay.time,
+            duration=self._replay.duration,
+            playing=self._playing,
+            speed=self._speed,
+            ended=self._replay.time >= self._replay.duration,
+            standing=update.standing if update else None,
+            alarms=update.alarms if update else (),
+            health=health_of(update.health) if update else HealthView(),
+            trouble=self._trouble,
+        )
+
+
+def health_of(health: "Health") -> HealthView:
+    """Return feed and record health as the screen keeps it."""
+    return HealthView(
+        links=tuple(
+            LinkView(
+                name=one.name,
+                state=one.state,
+                rate=one.rate,
+                lines=one.lines,
+                silent_for=one.silent_for,
+                retry_in=one.retry_in,
+                last_fault=one.last_fault,
+                dropped=one.queue_dropped,
+            )
+            for one in health.links
+        ),
+        frames=health.frames,
+        rejected=health.rejected,
+        faults=dict(health.faults),
+        log_path=health.log_path,
+        log_bytes=health.log_bytes,
+        log_state=health.log_state,
+    )

@@ -1,0 +1,357 @@
+"""Dots into character cells: numpy planes of dots, packed to braille, half-block or ASCII glyphs; knows no screen.
+
+A plane is a boolean array of dots, row 0 at the top. Curves come in dot coordinates as floats; NaN breaks them.
+"""
+
+import unicodedata
+from dataclasses import dataclass
+from typing import Literal, Self
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from eastfall.tui.roles import Role
+
+Floats = NDArray[np.float64]
+Plane = NDArray[np.bool_]
+
+_BLANK = ord(" ")
+_BRAILLE_WEIGHTS = np.array([[1, 8], [2, 16], [4, 32], [64, 128]], dtype=np.uint16)
+_HALF_WEIGHTS = np.array([[1], [2]], dtype=np.uint16)
+_LONE_WEIGHTS = np.array([[1]], dtype=np.uint16)
+_BRAILLE_TABLE = np.arange(0x2800, 0x2900, dtype=np.int32)
+_BRAILLE_TABLE[0] = _BLANK
+_HALF_TABLE = np.array([ord(c) for c in " ▀▄█"], dtype=np.int32)
+_ASCII_OF_ROLE = {
+    Role.MEASURED: "#",
+    Role.PAST: "-",
+    Role.EXPECTED: ":",
+    Role.BAND: ".",
+    Role.WARNING: "'",
+    Role.ACTION: "|",
+    Role.WALL: "%",
+    Role.BOB: "b",
+    Role.FALL: "d",
+    Role.DIM: ".",
+}
+FILLER = 0xE000
+"""Second column of a wide letter; left out when the row becomes text."""
+_UNPRINTABLE = ord("·")
+_FAR = 1e7  # dots; coordinates are cut here before they become integers, far outside any screen
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Glyphs:
+    """One way to show dots with characters."""
+
+    name: Literal["braille", "half", "ascii"]
+    across: int
+    down: int
+    weights: NDArray[np.uint16]
+    table: NDArray[np.int32]
+    measured: str
+    expected: str
+    here: str
+    rule: str
+    bar: str
+    """Marks for single points, the depth in view, and the rules between parts."""
+
+
+BRAILLE = Glyphs(
+    name="braille",
+    across=2,
+    down=4,
+    weights=_BRAILLE_WEIGHTS,
+    table=_BRAILLE_TABLE,
+    measured="●",
+    expected="○",
+    here="▶",
+    rule="─",
+    bar="│",
+)
+HALF = Glyphs(
+    name="half",
+    across=1,
+    down=2,
+    weights=_HALF_WEIGHTS,
+    table=_HALF_TABLE,
+    measured="@",
+    expected="o",
+    here=">",
+    rule="─",
+    bar="│",
+)
+ASCII = Glyphs(
+    name="ascii",
+    across=1,
+    down=1,
+    weights=_LONE_WEIGHTS,
+    table=np.array([_BLANK, ord("#")], dtype=np.int32),
+    measured="@",
+    expected="o",
+    here=">",
+    rule="-",
+    bar="|",
+)
+GLYPHS = {one.name: one for one in (BRAILLE, HALF, ASCII)}
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Cells:
+    """A finished picture: code points, style of the glyph and style of the ground, each of shape (height, width)."""
+
+    chars: NDArray[np.int32]
+    ink: NDArray[np.uint8]
+    ground: NDArray[np.uint8]
+
+    @classmethod
+    def blank(cls, width: int, height: int) -> Self:
+        """Return an empty picture."""
+        return cls(
+            chars=np.full((height, width), _BLANK, dtype=np.int32),
+            ink=np.zeros((height, width), dtype=np.uint8),
+            ground=np.zeros((height, width), dtype=np.uint8),
+        )
+
+    def rows_that_differ(self, other: "Cells") -> NDArray[np.intp]:
+        """Return the rows in which two pictures of one size differ."""
+        same = (self.chars == other.chars) & (self.ink == other.ink) & (self.ground == other.ground)
+        return np.flatnonzero(~same.all(axis=1))
+
+    def lines(self) -> list[str]:
+        """Return the characters as text, one string a row."""
+        return ["".join(map(chr, row)).replace(chr(FILLER), "") for row in self.chars]
+
+
+def columns(words: str) -> list[int]:
+    """Return one code point a column: a wide letter takes two, what has no width or is a control is made plain."""
+    if words.isascii() and words.isprintable():
+        return list(words.encode())
+    codes: list[int] = []
+    for one in words:
+        if unicodedata.category(one) in {"Mn", "Me"}:
+            continue
+        codes.append(ord(one) if one.isprintable() else _UNPRINTABLE)
+        if unicodedata.east_asian_width(one) in "WF":
+            codes.append(FILLER)
+    return codes
+
+
+class Raster:
+    """A sheet of cells that planes of dots and then texts are put on.
+
+    Parameters
+    ----------
+    width, height : int
+        Size in cells.
+    glyphs : Glyphs
+        How dots become characters.
+    """
+
+    def __init__(self, width: int, height: int, glyphs: Glyphs) -> None:
+        self.width, self.height, self.glyphs = width, height, glyphs
+        self._bits = np.zeros((height, width), dtype=np.uint16)
+        self._letters = np.zeros((height, width), dtype=np.int32)
+        self._cells = Cells.blank(width, height)
+
+    def plane(self) -> Plane:
+        """Return an empty plane of this sheet's dots."""
+        return np.zeros((self.height * self.glyphs.down, self.width * self.glyphs.across), dtype=np.bool_)
+
+    def stamp(self, plane: Plane, role: Role) -> None:
+        """Add a plane's dots: none that stand already vanish, the style of a shared cell is the later one's."""
+        down, across = self.glyphs.down, self.glyphs.across
+        blocks = plane.reshape(self.height, down, self.width, across)
+        bits = np.einsum("ijkl,jl->ik", blocks, self.glyphs.weights, dtype=np.uint16, casting="unsafe")
+        hit = bits > 0
+        self._bits |= bits
+        self._cells.ink[hit] = role
+        if self.glyphs.name == "ascii":
+            self._letters[hit] = ord(_ASCII_OF_ROLE.get(role, "#"))
+
+    def tint(self, plane: Plane, role: Role) -> None:
+        """Colour the ground of every cell in which the plane has a dot."""
+        blocks = plane.reshape(self.height, self.glyphs.down, self.width, self.glyphs.across)
+        self._cells.ground[blocks.any(axis=(1, 3))] = role
+
+    def text(self, column: int, row: int, words: str, role: Role) -> int:
+        """Write over whatever is there, leave out what falls outside, and return how many columns the words take."""
+        codes = columns(words)
+        shown = codes[max(0, -column) : max(0, self.width - column)]
+        if 0 <= row < self.height and shown:
+            start = max(column, 0)
+            self._letters[row, start : start + len(shown)] = shown
+            self._cells.ink[row, start : start + len(shown)] = role
+        return len(codes)
+
+    def ground(self, row: int, start: int, stop: int, role: Role) -> None:
+        """Colour the ground of part of a row."""
+        if 0 <= row < self.height:
+            self._cells.ground[row, max(start, 0) : max(stop, 0)] = role
+
+    def cells(self) -> Cells:
+        """Return the finished picture."""
+        glyphs = self.glyphs.table[self._bits]
+        chars = np.where(self._letters > 0, self._letters, glyphs).astype(np.int32)
+        return Cells(chars=chars, ink=self._cells.ink, ground=self._cells.ground)
+
+
+def _clip(start: Floats, stop: Floats, high: float) -> tuple[Floats, Floats]:
+    """Return the entering and leaving parameter of segments against 0 <= value <= high (Liang and Barsky 1984)."""
+    step = stop - start
+    with np.errstate(divide="ignore", invalid="ignore"):
+        first, second = -start / step, (high - start) / step
+    level = step == 0.0
+    outside = level & ((start < 0.0) | (start > high))
+    enter = np.where(level, 0.0, np.minimum(first, second))
+    leave = np.where(level, 1.0, np.maximum(first, second))
+    return np.where(outside, 2.0, enter), np.where(outside, -1.0, leave)
+
+
+def segments(plane: Plane, x0: ArrayLike, y0: ArrayLike, x1: ArrayLike, y1: ArrayLike) -> None:
+    """Draw straight lines, given in dots; one with a NaN or infinite end is left out, the rest is clipped.
+
+    Parameters
+    ----------
+    plane : ndarray of bool, shape (rows, columns)
+        Drawn on in place.
+    x0, y0, x1, y1 : array_like, shape (n,)
+        Ends: column and row, in dots; a dot with index i covers i to i + 1.
+    """
+    ends = np.array(np.broadcast_arrays(x0, y0, x1, y1), dtype=float).reshape(4, -1)
+    ends = np.clip(ends[:, np.isfinite(ends).all(axis=0)], -_FAR, _FAR)
+    rows, columns = plane.shape
+    if not ends.size or not plane.size:
+        return
+    enter_x, leave_x = _clip(ends[0], ends[2], columns - 1e-6)
+    enter_y, leave_y = _clip(ends[1], ends[3], rows - 1e-6)
+    enter = np.maximum(0.0, np.maximum(enter_x, enter_y))
+    leave = np.minimum(1.0, np.minimum(leave_x, leave_y))
+    seen = enter <= leave
+    _walk(plane, ends[:, seen], enter[seen], leave[seen])
+
+
+def _walk(plane: Plane, ends: Floats, enter: Floats, leave: Floats) -> None:
+    """Set the dots along clipped segments, one a dot of the longer axis."""
+    if not enter.size:
+        return
+    x0, y0, x1, y1 = ends
+    from_x, from_y = x0 + enter * (x1 - x0), y0 + enter * (y1 - y0)
+    step_x, step_y = (leave - enter) * (x1 - x0), (leave - enter) * (y1 - y0)
+    count = np.maximum(np.abs(step_x), np.abs(step_y)).astype(np.intp) + 2
+    index = np.repeat(np.arange(count.size), count)
+    along = np.arange(index.size) - np.repeat(np.cumsum(count) - count, count)
+    part = along / (count[index] - 1)
+    column = (from_x[index] + part * step_x[index]).astype(np.intp)
+    row = (from_y[index] + part * step_y[index]).astype(np.intp)
+    plane[np.clip(row, 0, plane.shape[0] - 1), np.clip(column, 0, plane.shape[1] - 1)] = True
+
+
+def polyline(plane: Plane, x: ArrayLike, y: ArrayLike) -> None:
+    """Draw a line through points, shape (n,), in dots; a NaN breaks it, a lone point is a dot."""
+    across, along = np.atleast_1d(np.asarray(x, dtype=float)), np.atleast_1d(np.asarray(y, dtype=float))
+    if across.size == 1:
+        segments(plane, across, along, across, along)
+        return
+    segments(plane, across[:-1], along[:-1], across[1:], along[1:])
+    known = np.isfinite(across) & np.isfinite(along)
+    before = np.r_[False, known[:-1]]
+    after = np.r_[known[1:], False]
+    alone = known & ~before & ~after
+    segments(plane, across[alone], along[alone], across[alone], along[alone])
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Runs:
+    """Neighbouring points that share one dot along the main axis, so that many points cost one mark a dot.
+
+    Parameters
+    ----------
+    starts : ndarray of int, shape (m,)
+        Where each run begins.
+    length : int
+        Number of points.
+    """
+
+    starts: NDArray[np.intp]
+    length: int
+
+    @classmethod
+    def of(cls, along: Floats, breaks: NDArray[np.intp] | None = None) -> "Runs":
+        """Group points by the dot that `along` (in dots, shape (n,)) falls in; NaN forms runs of its own."""
+        n = along.shape[0]
+        if not n:
+            return cls(np.empty(0, dtype=np.intp), 0)
+        with np.errstate(invalid="ignore"):
+            dots = np.where(np.isfinite(along), np.clip(np.floor(along), -_FAR, _FAR), -2 * _FAR)
+        edges = np.flatnonzero(np.diff(dots)) + 1
+        if breaks is not None and breaks.size:
+            edges = np.union1d(edges, breaks)
+        return cls(np.r_[0, edges].astype(np.intp), n)
+
+    def first(self, values: Floats) -> Floats:
+        """Return the first value of each run."""
+        return values[self.starts]
+
+    def last(self, values: Floats) -> Floats:
+        """Return the last value of each run."""
+        return values[np.r_[self.starts[1:], self.length] - 1] if self.length else values[:0]
+
+    def span(self, values: Floats) -> tuple[Floats, Floats]:
+        """Return the smallest and largest value of each run; NaN samples are left out, all NaN gives NaN."""
+        if not self.length:
+            return values[:0], values[:0]
+        return np.fmin.reduceat(values, self.starts), np.fmax.reduceat(values, self.starts)
+
+
+def trace(plane: Plane, runs: Runs, along: Floats, across: Floats, *, upright: bool) -> None:
+    """Draw many points as first, smallest, largest and last of each run, so that no spike is lost.
+
+    Parameters
+    ----------
+    plane : ndarray of bool
+        Drawn on in place.
+    runs : Runs
+        The grouping of `along`.
+    along, across : ndarray, shape (n,)
+        Position along the main axis and across it, in dots; NaN breaks the curve.
+    upright : bool
+        True when the main axis runs down the plane, False when it runs to the right.
+    """
+    if not runs.length:
+        return
+    low, high = runs.span(across)
+    first, last = runs.first(across), runs.last(across)
+    place = runs.first(along)
+    broken = np.isnan(first[1:]) | np.isnan(last[:-1])
+    joint = np.where(broken, np.nan, last[:-1])
+    near = np.concatenate([low, joint])
+    far = np.concatenate([high, first[1:]])
+    start, stop = np.concatenate([place, place[:-1]]), np.concatenate([place, place[1:]])
+    if upright:
+        segments(plane, near, start, far, stop)
+    else:
+        segments(plane, start, near, stop, far)
+
+
+def rhythm(plane: Plane, on: int, off: int, *, upright: bool) -> Plane:
+    """Return the plane with a dash of `on` dots and a gap of `off` dots along the main axis, fixed to the sheet."""
+    length = plane.shape[0] if upright else plane.shape[1]
+    keep = np.arange(length) % (on + off) < on
+    return plane & (keep[:, None] if upright else keep[None, :])
+
+
+def ring(plane: Plane, centre: tuple[float, float], radius: tuple[float, float], *, gaps: int = 0) -> None:
+    """Draw an ellipse with axes along the sheet, in dots; `gaps` > 0 leaves that many gaps as long as the dashes."""
+    x, y = _circle(radius, gaps)
+    polyline(plane, centre[0] + radius[0] * x, centre[1] + radius[1] * y)
+
+
+def _circle(radius: tuple[float, float], gaps: int) -> tuple[Floats, Floats]:
+    """Return points of the unit circle, closed, NaN in the gaps."""
+    count = int(np.clip(max(radius) * 3.0, 24, 720))
+    turn = np.linspace(0.0, 2.0 * np.pi, count + 1)
+    x, y = np.cos(turn), np.sin(turn)
+    if gaps:
+        x = np.where((turn * gaps / (2.0 * np.pi)) % 1.0 < 0.5, x, np.nan)
+    return x, y

@@ -1,0 +1,1 @@
+"""Whole screens and dialogs; each puts widgets together and hands them what to show."""

@@ -1,0 +1,112 @@
+"""Questions that stop the work for a moment: quit a recording, a text to type, the shaft declared clear, a station."""
+
+from collections.abc import Callable
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import Binding, BindingType
+from textual.containers import Vertical
+from textual.screen import ModalScreen
+from textual.widgets import Input, Static
+
+from eastfall.tui.words import CAUTIONS
+
+
+def plain(text: str, classes: str = "") -> Static:
+    """Return text that is shown letter by letter: brackets are no markup."""
+    return Static(text, markup=False, classes=classes)
+
+
+class Confirm(ModalScreen[bool]):
+    """A question with yes and no; anything but the one key is no."""
+
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("y", "answer(True)", "yes", show=False),
+        Binding("n,escape,q,enter,ctrl+c", "answer(False)", "no", show=False),
+    ]
+
+    def __init__(self, question: str, consequence: str) -> None:
+        super().__init__()
+        self._question, self._consequence = question, consequence
+
+    def compose(self) -> ComposeResult:
+        """Show question, consequence and the two keys."""
+        with Vertical(classes="dialog"):
+            yield plain(self._question, "title")
+            yield plain(self._consequence)
+            yield plain("y  yes        n  no")
+
+    def action_answer(self, answer: bool) -> None:
+        """Close with the answer."""
+        self.dismiss(answer)
+
+
+class AskText(ModalScreen[str | None]):
+    """One line to type; enter takes it when it is understood, escape leaves it."""
+
+    BINDINGS: ClassVar[list[BindingType]] = [Binding("escape,ctrl+c", "leave", "leave", show=False)]
+
+    def __init__(
+        self, question: str, hint: str, *, check: Callable[[str], object] | None = None, warning: str = ""
+    ) -> None:
+        super().__init__()
+        self._question, self._hint, self._check, self._warning = question, hint, check, warning
+
+    def compose(self) -> ComposeResult:
+        """Show the question over the line to type in."""
+        with Vertical(classes="dialog"):
+            yield plain(self._question, "title")
+            if self._warning:
+                yield plain(self._warning)
+            field = Input(id="field")
+            field.cursor_blink = False
+            yield field
+            yield plain(self._hint)
+            complaint = plain("", "complaint")
+            complaint.display = False
+            yield complaint
+
+    def on_mount(self) -> None:
+        """Take the keys."""
+        self.query_one(Input).focus()
+
+    def on_input_submitted(self, event: Input.Submitted) -> None:
+        """Close with the text, or say what is wrong with it."""
+        try:
+            if self._check is not None:
+                self._check(event.value)
+        except ValueError as error:
+            complaint = self.query_one(".complaint", Static)
+            complaint.update(str(error))
+            complaint.display = True
+            return
+        self.dismiss(event.value)
+
+    def action_leave(self) -> None:
+        """Close without a text."""
+        self.dismiss(None)
+
+
+def named(text: str) -> str:
+    """Return a person's name, or refuse an empty one.
+
+    Raises
+    ------
+    ValueError
+        When there is nothing but blanks.
+    """
+    if not text.strip():
+        raise ValueError("A name is needed: it is written into the record.")
+    return text.strip()
+
+
+class ClearShaft(AskText):
+    """Asks who declares the shaft clear before a drop run is armed."""
+
+    def __init__(self) -> None:
+        super().__init__(
+            "Is the shaft clear, from collar to bottom?",
+            "Name and enter: the shaft is clear, arm the run.   Escape: do not arm.",
+            check=named,
+            warning=f"{CAUTIONS[1]}\nYour name goes into the record as the one who declared it clear.",
+        )

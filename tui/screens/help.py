@@ -1,0 +1,54 @@
+"""The help page: the keys of the screen one came from, and how to read what is on it."""
+
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import BindingType
+from textual.containers import VerticalScroll
+from textual.screen import Screen
+
+from eastfall.tui import keys
+from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.words import CAUTIONS
+
+READING = """How to read the picture
+
+Depth goes down, in metres from the collar. Offsets are millimetres east (+) or west (-), north (+) or south (-) of the
+reference line named in the top row. A residual is measured less expected; its direction is a bearing from north.
+± is the expanded uncertainty (k = 2, about 95 %).
+
+WITHIN      the residual and all of its uncertainty are inside the limit
+OVER        the residual less all of its uncertainty is beyond the limit
+UNDECIDED   the limit lies inside the uncertainty: more readings, or a better instrument
+
+Depth picture: solid is measured, thin is an earlier pass, dashed is expected, dots beside it the uncertainty,
+broken lines the warning limit, unbroken lines the action limit.
+Plan, north up: inner ring the warning limit, outer ring the action limit, both about the expected point;
+b where a plumb bob would hang, d where a dropped body would be, x the rest point of a swing with its 95 % ellipse."""
+
+
+def key_table(*places: str) -> str:
+    """Return the keys of some places, one a line."""
+    rows = [(one.shown, one.help) for one in keys.TABLE if one.where in places]
+    return "\n".join(f"{shown:<10}{what}" for shown, what in rows)
+
+
+class HelpScreen(Screen[None]):
+    """Keys and reading of one screen."""
+
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
+
+    def __init__(self, *places: str) -> None:
+        super().__init__()
+        self._places = places
+
+    def compose(self) -> ComposeResult:
+        """Show the keys, how to read the picture, and the cautions."""
+        with VerticalScroll(classes="page"):
+            yield plain("Keys   (escape goes back, arrows scroll)\n\n" + key_table(*self._places, "all"))
+            yield plain("\n" + READING)
+            yield plain("\nCautions\n\n" + "\n".join(CAUTIONS))
+
+    def action_close(self) -> None:
+        """Go back."""
+        self.dismiss(None)

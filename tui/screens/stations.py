@@ -1,0 +1,169 @@
+"""The table of stations: every one that closed, ordered and filtered, one opened to its budget."""
+
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import BindingType
+from textual.containers import Vertical
+from textual.screen import ModalScreen, Screen
+
+from eastfall.physics.findings import Station
+from eastfall.tui import keys, words
+from eastfall.tui.roles import Role
+from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.store import Snapshot
+from eastfall.tui.widgets.line import TextLine
+from eastfall.tui.widgets.table import LongTable, fixed
+
+ORDERS = ("time", "depth", "residual")
+_WIDTHS = (8, 4, 15, 15, 8, 6, 6, 9, 5)
+HEAD = fixed(
+    tuple(
+        zip(
+            ("depth m", "pass", "measured E N", "expected E N", "resid mm", "toward", "± mm", "verdict", "n"),
+            _WIDTHS,
+            strict=True,
+        )
+    )
+)
+_ROLE = {"within": Role.TEXT, "over": Role.ACTION, "undecided": Role.WARNING}
+
+
+def row(one: Station) -> str:
+    """Return a station as a line of the table."""
+    cells = (
+        words.metres(one.depth),
+        one.direction,
+        f"{words.mm(one.measured_east)} {words.mm(one.measured_north)}",
+        f"{words.mm(one.expected_east)} {words.mm(one.expected_north)}",
+        words.mm(words.residual_length(one)),
+        words.bearing(one.residual_east, one.residual_north),
+        words.mm(words.expanded(one)),
+        words.VERDICT[one.verdict],
+        str(one.readings),
+    )
+    return fixed(tuple(zip(cells, _WIDTHS, strict=True)))
+
+
+def chosen(stations: tuple[Station, ...], order: str, only_open: bool) -> list[int]:
+    """Return indices in an order; `only_open` leaves out what is within."""
+    indices = [i for i, one in enumerate(stations) if not only_open or one.verdict != "within"]
+    if order == "depth":
+        indices.sort(key=lambda i: (stations[i].depth, i))
+    elif order == "residual":
+        indices.sort(key=lambda i: words.residual_length(stations[i]))
+    return indices
+
+
+class StationsScreen(Screen[int | None]):
+    """The table; closes with the index of a station to look back at, or None."""
+
+    BINDINGS: ClassVar[list[BindingType]] = [
+        *(one for one in keys.bindings("page")),
+        *(one for one in keys.bindings("stations")),
+    ]
+
+    def __init__(self, snapshot: Snapshot) -> None:
+        super().__init__()
+        self._snapshot = snapshot
+        self._order = ORDERS[0]
+        self._only_open = False
+        self._indices: list[int] = []
+
+    def compose(self) -> ComposeResult:
+        """Show a title line over the table."""
+        yield TextLine(id="station-title")
+        yield LongTable(HEAD, id="stations")
+        yield TextLine(id="station-keys")
+
+    def on_mount(self) -> None:
+        """Fill the table."""
+        self.query_one(LongTable).focus()
+        self.show(self._snapshot)
+        pieces = [(f"{shown} {name}  ", Role.DIM) for shown, name in keys.line(("stations", "page"), False)]
+        self.query_one("#station-keys", TextLine).show(("enter open  ", Role.DIM), *pieces)
+
+    def show(self, snapshot: Snapshot) -> None:
+        """Show a newer snapshot."""
+        self._snapshot = snapshot
+        self._indices = chosen(snapshot.stations, self._order, self._only_open)
+        what = "over or undecided" if self._only_open else "all"
+        self.query_one("#station-title", TextLine).show(
+            (
+                f"stations: {len(self._indices)} of {len(snapshot.stations)} ({what}), by {self._order}",
+                Role.STRONG,
+            )
+        )
+        stations = snapshot.stations
+        self.query_one(LongTable).show(
+            len(self._indices), lambda i: (row(one := stations[self._indices[i]]), _ROLE[one.verdict])
+        )
+
+    def action_sort(self) -> None:
+        """Take the next order."""
+        self._order = ORDERS[(ORDERS.index(self._order) + 1) % len(ORDERS)]
+        self.show(self._snapshot)
+
+    def action_filter(self) -> None:
+        """Show all, or what is not within."""
+        self._only_open = not self._only_open
+        self.show(self._snapshot)
+
+    def on_long_table_opened(self, event: LongTable.Opened) -> None:
+        """Open a station to its budget."""
+        index = self._indices[event.row]
+
+        def after(look: bool | None) -> None:
+            if look:
+                self.dismiss(index)
+
+        self.app.push_screen(StationPage(self._snapshot.stations[index]), after)
+
+    def action_close(self) -> None:
+        """Go back."""
+        self.dismiss(None)
+
+
+def budget(one: Station) -> str:
+    """Return a station's uncertainty budget as lines, largest first."""
+    if not one.shares:
+        return "no budget with this station"
+    lines = [f"{'standard uncertainty, mm':<34}{'east':>8}{'north':>8}"]
+    lines += [f"{s.name[:33]:<34}{words.mm(s.east, 3):>8}{words.mm(s.north, 3):>8}" for s in one.shares]
+    lines.append(f"{'together':<34}{words.mm(one.u_east, 3):>8}{words.mm(one.u_north, 3):>8}")
+    return "\n".join(lines)
+
+
+class StationPage(ModalScreen[bool]):
+    """One station; closes with True to look at it in the picture."""
+
+    BINDINGS: ClassVar[list[BindingType]] = [
+        *keys.bindings("page"),
+        ("enter", "look", "look at it"),
+    ]
+
+    def __init__(self, one: Station) -> None:
+        super().__init__()
+        self._one = one
+
+    def compose(self) -> ComposeResult:
+        """Show the answer, both offsets and the budget."""
+        one = self._one
+        with Vertical(classes="dialog"):
+            yield plain(
+                f"Station {one.number}, {one.direction}, {'at rest' if one.still else 'in passing'}", "title"
+            )
+            yield plain(words.answer(one))
+            yield plain(f"measured {words.pair(one.measured_east, one.measured_north)}")
+            yield plain(f"expected {words.pair(one.expected_east, one.expected_north)}")
+            yield plain(f"from {one.readings} readings, closed {words.clock(one.time)} after the start\n")
+            yield plain(budget(one))
+            yield plain("\nenter  look at it in the picture        esc  back")
+
+    def action_look(self) -> None:
+        """Close and look at it."""
+        self.dismiss(True)
+
+    def action_close(self) -> None:
+        """Close."""
+        self.dismiss(False)

@@ -1,0 +1,276 @@
+"""The watch screen, live and replay alike: hands snapshots to the widgets, and keys to the source."""
+
+from dataclasses import replace
+from typing import ClassVar, cast
+
+from textual.app import ComposeResult
+from textual.binding import BindingType
+from textual.containers import Horizontal
+from textual.screen import Screen
+
+from eastfall.io.safetext import safe
+from eastfall.tui import keys, views, words
+from eastfall.tui import sight as look
+from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.screens.dialogs import AskText, ClearShaft
+from eastfall.tui.screens.help import HelpScreen
+from eastfall.tui.screens.stations import StationsScreen
+from eastfall.tui.session import Session
+from eastfall.tui.sight import Sight
+from eastfall.tui.store import Snapshot
+from eastfall.tui.widgets.alarms import AlarmList, in_order
+from eastfall.tui.widgets.figures import Figures
+from eastfall.tui.widgets.health import HealthList, health_line
+from eastfall.tui.widgets.line import TextLine
+from eastfall.tui.widgets.plan import Plan
+from eastfall.tui.widgets.profile import Profile, ProfileView
+from eastfall.tui.widgets.strip import Strip
+
+_LAYOUTS: tuple[look.Layout, ...] = ("all", "depth", "plan", "time")
+
+
+class WatchScreen(Screen[None]):
+    """One run, live or replayed.
+
+    Parameters
+    ----------
+    session : Session
+        What is known before the first reading.
+    """
+
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("watch"))
+    HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (60, "-small"), (80, "-narrow"), (100, "-normal"), (160, "-wide")]  # noqa: RUF012
+    VERTICAL_BREAKPOINTS = [(0, "-tiny"), (10, "-low"), (17, "-mid"), (32, "-tall")]  # noqa: RUF012
+
+    def __init__(self, session: Session) -> None:
+        super().__init__()
+        self.session = session
+        self.feed: Feed | None = None
+        self.latest = Snapshot(mode=session.mode)
+        self.held: Snapshot | None = None
+        self.sight = Sight(layout="plan" if session.assumptions.run.kind == "hung" else "all")
+
+    def compose(self) -> ComposeResult:
+        """Put the parts together; the stylesheet decides which show at which size."""
+        for name in ("title", "answer", "steer"):
+            yield TextLine(id=name)
+        yield Figures(id="figures")
+        with Horizontal(id="evidence"):
+            yield Profile(id="profile")
+            yield Plan(id="plan")
+            yield Plan(id="shaft")
+            yield Strip(id="wide-strip")
+        with Horizontal(id="lower"):
+            yield Strip(id="strip")
+            yield AlarmList(id="alarms")
+            yield HealthList(id="feed")
+        for name in ("alarm", "health", "keys"):
+            yield TextLine(id=name)
+
+    def on_mount(self) -> None:
+        """Show the empty picture at once."""
+        self.paint()
+
+    def show(self, snapshot: Snapshot) -> None:
+        """Show a newer snapshot; a held picture stays, alarms and health do not wait for it."""
+        known = {one.name for one in self.latest.alarms if one.state in words.WANTS_ANSWER}
+        waiting = {one.name for one in snapshot.alarms if one.state in words.WANTS_ANSWER}
+        if waiting - known and not getattr(self.app, "muted", True):
+            self.app.bell()
+        if snapshot.trouble and snapshot.trouble != self.latest.trouble:
+            self.held = None
+        self.latest = snapshot
+        self.paint()
+        if isinstance(self.app.screen, StationsScreen):
+            self.app.screen.show(snapshot)
+
+    def paint(self) -> None:
+        """Hand every part what it shows."""
+        if not self.is_mounted:
+            return
+        shown = self.held or self.latest
+        one = look.subject(self.sight, shown)
+        with self.app.batch_update():
+            self._paint_lines(shown, one)
+            self._paint_evidence(shown, one)
+
+    def _paint_lines(self, shown: Snapshot, one: views.Subject) -> None:
+        latest = self.latest
+        line = lambda name: self.query_one(f"#{name}", TextLine)  # noqa: E731
+        state = views.state(latest, self.sight, held=self.held is not None)
+        line("title").show(*views.title(self.session), right=state)
+        under = views.answer_ground(one)
+        ink = views.Role.STRONG if under is None else views.Role.ON_GROUND
+        line("answer").show((words.answer(one), ink), under=under)
+        line("steer").show(*views.steer(self.session, latest, one))
+        pieces, ground = views.alarm_line(latest)
+        line("alarm").show(*pieces, under=ground)
+        line("health").show(*health_line(latest))
+        line("keys").show(*views.key_line(latest))
+        self.query_one(Figures).show(*views.figures(self.session, one))
+        self.query_one(AlarmList).show(latest.alarms)
+        self.query_one(HealthList).show(latest)
+
+    def _paint_evidence(self, shown: Snapshot, one: views.Subject) -> None:
+        session, sight = self.session, self.sight
+        for name in _LAYOUTS:
+            self.set_class(name == sight.layout, f"-view-{name}")
+        whole = session.assumptions.shaft.depth
+        self.query_one(Profile).show(
+            ProfileView(snapshot=shown, sight=sight, whole=whole, bob=session.bob, fall=session.fall)
+        )
+        plan = views.plan(session, shown, sight, one)
+        self.query_one("#plan", Plan).show(plan, "wall" if sight.wall else "close")
+        self.query_one("#shaft", Plan).show(plan, "close" if sight.wall else "wall")
+        for strip in self.query(Strip):
+            strip.show(shown)
+
+    def _look(self, sight: Sight) -> None:
+        self.sight = sight
+        self.paint()
+
+    # What the keys do: the picture.
+
+    def action_look(self, by: int) -> None:
+        """Look back station by station."""
+        self._look(look.stepped(self.sight, self.held or self.latest, by))
+
+    def action_follow(self) -> None:
+        """Follow the newest reading, and let go of a held picture."""
+        self.held = None
+        self._look(replace(self.sight, station=None))
+
+    def action_zoom(self, factor: float) -> None:
+        """Change how much depth is in view."""
+        self._look(look.zoomed(self.sight, self.session.assumptions.shaft.depth, factor))
+
+    def action_whole(self) -> None:
+        """Show the whole shaft."""
+        self._look(replace(self.sight, span=None))
+
+    def action_layout(self) -> None:
+        """Take the next view."""
+        following = _LAYOUTS[(_LAYOUTS.index(self.sight.layout) + 1) % len(_LAYOUTS)]
+        self._look(replace(self.sight, layout=following))
+        self.call_after_refresh(self.paint)
+
+    def action_residual(self) -> None:
+        """Change between residual and offsets."""
+        self._look(replace(self.sight, residual=not self.sight.residual))
+
+    def action_wall(self) -> None:
+        """Change the scale of the plan."""
+        self._look(replace(self.sight, wall=not self.sight.wall))
+
+    def action_extras(self) -> None:
+        """Show or hide bob and dropped body."""
+        self._look(replace(self.sight, extras=not self.sight.extras))
+
+    def action_pause(self) -> None:
+        """Hold the picture of a live run, or stop and play a replay."""
+        if isinstance(self.feed, ReplayFeed):
+            self.feed.play()
+            return
+        self.held = None if self.held is not None else self.latest
+        self.paint()
+
+    # What the keys do: the source.
+
+    def action_acknowledge(self) -> None:
+        """Acknowledge the alarm shown first."""
+        self._acknowledge(1)
+
+    def action_acknowledge_all(self) -> None:
+        """Acknowledge every alarm."""
+        self._acknowledge(len(self.latest.alarms))
+
+    def _acknowledge(self, most: int) -> None:
+        if isinstance(self.feed, LiveFeed):
+            waiting = [one for one in in_order(self.latest.alarms) if one.state in words.WANTS_ANSWER]
+            for one in waiting[:most]:
+                self.feed.acknowledge(one.name)
+
+    def action_note(self) -> None:
+        """Ask for a note and write it into the record."""
+        if isinstance(self.feed, LiveFeed):
+            self.app.push_screen(
+                AskText("Note for the record", "enter writes it, escape does not"), self._noted
+            )
+
+    def _noted(self, text: str | None) -> None:
+        if text and text.strip():
+            cast("LiveFeed", self.feed).note(safe(text.strip()))
+
+    def action_arm(self) -> None:
+        """Ask whether the shaft is clear, and arm the run."""
+        if isinstance(self.feed, LiveFeed) and not self.latest.armed:
+            self.app.push_screen(ClearShaft(), self._armed)
+
+    def _armed(self, who: str | None) -> None:
+        if who:
+            cast("LiveFeed", self.feed).arm(safe(who.strip()))
+
+    def action_stations(self) -> None:
+        """Open the table of stations."""
+        self.app.push_screen(StationsScreen(self.latest), self._chosen)
+
+    def _chosen(self, index: int | None) -> None:
+        self._look(replace(self.sight, station=index) if index is not None else self.sight)
+
+    def action_jump(self) -> None:
+        """Ask for a depth or, in a replay, a time."""
+        hint = "depth: 612.5 m" + ("     time: 12:30 or 90 s" if self.session.mode == "replay" else "")
+        self.app.push_screen(AskText("Jump to", hint, check=self._moment), self._jumped)
+
+    def _moment(self, text: str) -> tuple[str, float]:
+        """Read where to jump; a live run has no times to go to."""
+        what, value = words.read_moment(text)
+        if what == "time" and self.session.mode == "live":
+            raise ValueError("A live run goes by its own clock: give a depth, as 612.5 m.")
+        if what == "depth" and self._time_of(value) is None and self.session.mode == "replay":
+            raise ValueError(f"The record does not reach {value:g} m.")
+        return what, value
+
+    def _time_of(self, depth: float) -> float | None:
+        return self.session.time_of_depth(depth) if self.session.time_of_depth else None
+
+    def _jumped(self, text: str | None) -> None:
+        if text is None:
+            return
+        what, value = self._moment(text)
+        if isinstance(self.feed, ReplayFeed):
+            moment = value if what == "time" else self._time_of(value)
+            self.feed.seek(cast("float", moment))
+            self._look(replace(self.sight, station=None))
+        else:
+            self._look(look.at_depth(self.sight, self.latest, value))
+
+    def action_skip(self, seconds: float) -> None:
+        """Move in a replay."""
+        if isinstance(self.feed, ReplayFeed):
+            self.feed.skip(seconds)
+
+    def action_step(self) -> None:
+        """Take one block of a replay."""
+        if isinstance(self.feed, ReplayFeed):
+            self.feed.step()
+
+    def action_speed(self, factor: float) -> None:
+        """Change the speed of a replay."""
+        if isinstance(self.feed, ReplayFeed):
+            self.feed.faster(factor)
+
+    def action_event(self, way: int) -> None:
+        """Go to the next or previous event of a replay."""
+        if isinstance(self.feed, ReplayFeed):
+            times = [one.time for one in self.session.marks]
+            now = self.latest.time
+            ahead = (
+                [t for t in times if t > now + 1e-6] if way > 0 else [t for t in times if t < now - 1.0][::-1]
+            )
+            if ahead:
+                self.feed.seek(ahead[0])
+
+    def action_keys(self) -> None:
+        """Open the help page of this screen."""
+        self.app.push_screen(HelpScreen("watch"))

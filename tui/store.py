@@ -1,0 +1,201 @@
+"""What the screen shows, gathered from findings and frozen into snapshots; no screen library, no file, no clock.
+
+The worker thread owns the history and appends; a snapshot holds read-only views of what stood when it was taken.
+"""
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from eastfall.physics.findings import ROW_FIELDS, AlarmChange, AlarmView, Rows, Standing, Station
+
+if TYPE_CHECKING:
+    from eastfall.physics.findings import Findings
+
+Mode = Literal["live", "replay"]
+
+KEPT = 60_000
+"""Rows kept for the picture; older ones are thinned, the run log keeps all."""
+
+
+class GrowingRows:
+    """Columns that grow at the end, in one float64 array that doubles.
+
+    Parameters
+    ----------
+    keep : int
+        Above this many rows the older half is thinned: of each two neighbours the one with the larger residual
+        stays, so that what was over a limit is still seen.
+    """
+
+    def __init__(self, keep: int = KEPT) -> None:
+        self._keep = max(4, keep)
+        self._data = np.empty((len(ROW_FIELDS), 1024))
+        self._count = 0
+
+    def __len__(self) -> int:
+        return self._count
+
+    def extend(self, rows: Rows) -> None:
+        """Append a block of rows."""
+        added = len(rows)
+        if not added:
+            return
+        if self._count + added > self._data.shape[1]:
+            grown = np.empty((len(ROW_FIELDS), 2 * (self._count + added)))
+            grown[:, : self._count] = self._data[:, : self._count]
+            self._data = grown
+        self._data[:, self._count : self._count + added] = rows.data
+        self._count += added
+        while self._count > self._keep:
+            self._thin()
+
+    def _thin(self) -> None:
+        """Halve the older half, into a new array: snapshots taken earlier keep theirs."""
+        old = Rows(self._data[:, : self._count // 4 * 2])
+        size = np.hypot(old.residual_east, old.residual_north).reshape(-1, 2)
+        second = np.nan_to_num(size[:, 1], nan=-1.0) > np.nan_to_num(size[:, 0], nan=-1.0)
+        kept = old.data[:, 2 * np.arange(size.shape[0]) + second]
+        rest = self._data[:, old.data.shape[1] : self._count]
+        self._count = kept.shape[1] + rest.shape[1]
+        fresh = np.empty((len(ROW_FIELDS), max(1024, self._keep + self._keep // 4, self._count)))
+        fresh[:, : self._count] = np.concatenate([kept, rest], axis=1)
+        self._data = fresh
+
+    def view(self) -> Rows:
+        """Return all rows so far as a read-only view that later appending does not change."""
+        part = self._data[:, : self._count]
+        part.flags.writeable = False
+        return Rows(part)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LinkView:
+    """One link's health as the screen words it."""
+
+    name: str
+    state: str
+    rate: float
+    lines: int
+    silent_for: float
+    retry_in: float | None = None
+    last_fault: str = ""
+    dropped: int = 0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class HealthView:
+    """Feed and record health."""
+
+    links: tuple[LinkView, ...] = ()
+    frames: int = 0
+    rejected: int = 0
+    faults: Mapping[str, int] = field(default_factory=dict)
+    log_path: str = ""
+    log_bytes: int = 0
+    log_state: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Mark:
+    """A moment of a record that is worth jumping to."""
+
+    time: float
+    depth: float
+    what: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Snapshot:
+    """All that the screen needs at one moment."""
+
+    mode: Mode = "live"
+    time: float = 0.0
+    rows: Rows = field(default_factory=Rows.none)
+    stations: tuple[Station, ...] = ()
+    changes: tuple[AlarmChange, ...] = ()
+    alarms: tuple[AlarmView, ...] = ()
+    standing: Standing | None = None
+    health: HealthView = field(default_factory=HealthView)
+    playing: bool = True
+    """A replay that runs; a live run always does."""
+    speed: float = 1.0
+    duration: float | None = None
+    """Of a replayed record [s]."""
+    ended: bool = False
+    armed: bool = True
+    """False while a drop waits for the shaft to be declared clear."""
+    trouble: str = ""
+    """What stopped the source, in one line."""
+    serial: int = 0
+    """Rises with every snapshot of one source."""
+
+
+class History:
+    """Findings as they come, kept for the picture.
+
+    Parameters
+    ----------
+    mode : {"live", "replay"}
+        What the snapshots are labelled with.
+    keep : int
+        Rows kept at full detail and thinned beyond; see `GrowingRows`.
+    """
+
+    def __init__(self, mode: Mode, keep: int = KEPT) -> None:
+        self._mode: Mode = mode
+        self._keep = keep
+        self._serial = 0
+        self.clear()
+
+    def clear(self) -> None:
+        """Forget everything, as when a replay starts over."""
+        self._rows = GrowingRows(self._keep)
+        self._stations: list[Station] = []
+        self._changes: list[AlarmChange] = []
+        self._frozen: tuple[Station, ...] = ()
+        self._frozen_changes: tuple[AlarmChange, ...] = ()
+
+    def add(self, findings: "Sequence[Findings]") -> None:
+        """Take what one step brought."""
+        for one in findings:
+            self._rows.extend(one.rows)
+            self._stations.extend(one.stations)
+            self._changes.extend(one.alarms)
+
+    def snapshot(self, **state: object) -> Snapshot:
+        """Freeze what stands now; `state` are further fields of `Snapshot`."""
+        self._serial += 1
+        if len(self._frozen) != len(self._stations):
+            self._frozen = tuple(self._stations)
+        if len(self._frozen_changes) != len(self._changes):
+            self._frozen_changes = tuple(self._changes)
+        return Snapshot(
+            mode=self._mode,
+            rows=self._rows.view(),
+            stations=self._frozen,
+            changes=self._frozen_changes,
+            serial=self._serial,
+            **state,  # type: ignore[arg-type]  # the caller names fields of Snapshot; a wrong name raises
+        )
+
+
+def worst_alarm(alarms: Sequence[AlarmView]) -> AlarmView | None:
+    """Return the alarm to show first: one that waits for an answer, the newest among those; None without any."""
+    from eastfall.tui.words import WANTS_ANSWER  # noqa: PLC0415
+
+    ranked = sorted(alarms, key=lambda one: (one.state in WANTS_ANSWER, one.since))
+    return ranked[-1] if ranked else None
+
+
+def last_pass(rows: Rows) -> int:
+    """Return the index at which the newest pass begins."""
+    passing: NDArray[np.float64] = rows.column("passing")
+    if not passing.size:
+        return 0
+    return (
+        int(passing.size - np.argmax((passing != passing[-1])[::-1])) if (passing != passing[-1]).any() else 0
+    )

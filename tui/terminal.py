@@ -1,0 +1,44 @@
+"""What this terminal can show: whether there is a screen at all, which glyphs, whether colour; reads what it is given."""
+
+from collections.abc import Mapping
+
+from eastfall.io.errors import InputError
+from eastfall.tui.raster import ASCII, BRAILLE, GLYPHS, HALF, Glyphs
+
+
+def refuse_unless_screen(environment: Mapping[str, str], *, is_terminal: bool) -> None:
+    """Refuse to draw where no screen is.
+
+    Raises
+    ------
+    InputError
+        When input or output is no terminal, or TERM says that it cannot place text.
+    """
+    advice = "use `record` for a live run, `reduce` for a record, and `eastfall --help` for the rest"
+    if not is_terminal:
+        raise InputError(f"the screen needs a terminal for input and output; {advice}")
+    if environment.get("TERM", "") in {"dumb", "unknown"}:
+        raise InputError(f"TERM is {environment['TERM']}: this terminal cannot place text; {advice}")
+
+
+def glyphs_for(environment: Mapping[str, str], encoding: str | None) -> Glyphs:
+    """Return the finest glyphs that will show; EASTFALL_GLYPHS (braille, half, ascii) overrules."""
+    asked = GLYPHS.get(environment.get("EASTFALL_GLYPHS", ""))  # type: ignore[call-overload]  # any text may stand there
+    if asked is not None:
+        return asked
+    if not _can(encoding, "⣿"):
+        return ASCII if not _can(encoding, "▀") else HALF
+    return HALF if environment.get("TERM", "").startswith(("linux", "vt")) else BRAILLE
+
+
+def _can(encoding: str | None, letter: str) -> bool:
+    try:
+        letter.encode(encoding or "ascii")
+    except (UnicodeEncodeError, LookupError):
+        return False
+    return True
+
+
+def wants_no_colour(environment: Mapping[str, str]) -> bool:
+    """Tell whether NO_COLOR (https://no-color.org) is set and not empty."""
+    return bool(environment.get("NO_COLOR"))

@@ -1,0 +1,178 @@
+"""From a snapshot and a sight to what each part of the screen shows; decides words and places, draws nothing."""
+
+from math import isfinite
+
+import numpy as np
+
+from eastfall.physics.findings import Standing, Station
+from eastfall.tui import keys, words
+from eastfall.tui import sight as look
+from eastfall.tui.roles import Role
+from eastfall.tui.session import Curve, Session
+from eastfall.tui.store import Snapshot, worst_alarm
+from eastfall.tui.widgets.figures import Figure
+from eastfall.tui.widgets.line import Piece
+from eastfall.tui.widgets.plan import PlanView, Point
+
+Subject = Standing | Station | None
+
+_TRAIL_SECONDS = 60.0
+_LONGEST_TITLE = 28
+
+
+def title(session: Session) -> tuple[Piece, ...]:
+    """Return site, kind of run and reference line."""
+    run = session.assumptions.run
+    name = session.title or "unnamed site"
+    shown = name if len(name) <= _LONGEST_TITLE else name[: _LONGEST_TITLE - 3] + "..."
+    return (
+        (f"{shown}  ", Role.STRONG),
+        (f"{words.KIND[run.kind]}  ", Role.TEXT),
+        (f"from: {words.REFERENCE[run.reference]}", Role.STRONG),
+    )
+
+
+def state(snapshot: Snapshot, sight: look.Sight, *, held: bool) -> tuple[Piece, ...]:
+    """Return where in time the picture is, and whether it is the newest."""
+    if snapshot.mode == "replay":
+        position = f"{words.clock(snapshot.time)} of {words.clock(snapshot.duration or 0.0)}"
+        what = "END" if snapshot.ended else f"x{snapshot.speed:g}" if snapshot.playing else "PAUSED"
+        pieces = [(f"REPLAY {position} {what}", Role.STRONG)]
+    else:
+        what = "ENDED" if snapshot.ended else "LIVE"
+        pieces = [(f"{what} {words.clock(snapshot.time)}", Role.STRONG)]
+    if held:
+        pieces.insert(0, ("PICTURE HELD ", Role.WARNING))
+    if not sight.follows:
+        pieces.insert(0, ("LOOKING BACK ", Role.WARNING))
+    return tuple(pieces)
+
+
+def answer_ground(one: Subject) -> Role | None:
+    """Return the colour under the answer."""
+    if one is None or not isfinite(words.residual_length(one)):
+        return None
+    if one.verdict == "over":
+        return Role.GROUND_ACTION
+    return Role.GROUND_WARNING if one.verdict == "undecided" else Role.GROUND_OK
+
+
+def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ...]:
+    """Return what to do, or what hinders."""
+    if snapshot.trouble:
+        return ((f"STOPPED: {snapshot.trouble}", Role.ACTION),)
+    if not snapshot.armed:
+        return (("Not armed. Clear the shaft, then press g to say so.", Role.WARNING),)
+    if isinstance(one, Station):
+        rest = "at rest" if one.still else "in passing"
+        return ((f"Station {one.number}, {one.direction}, {rest}. Press f to follow the newest.", Role.TEXT),)
+    pieces: list[Piece] = [(words.steering(one, session.assumptions.run.kind), Role.STRONG)]
+    if one is not None and one.notes:
+        pieces.append((f"  {one.notes[0]}", Role.WARNING))
+    return tuple(pieces)
+
+
+def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
+    """Return the numbers that matter."""
+    if one is None:
+        return (Figure(name="depth", value="–", unit="m"),)
+    length = words.residual_length(one)
+    role = {"over": Role.ACTION, "undecided": Role.WARNING}.get(one.verdict, Role.STRONG)
+    shown = [
+        Figure(name="depth", value=words.metres(one.depth), unit="m", note=_motion(one)),
+        Figure(
+            name="residual", value=words.mm(length), unit=f"± {words.mm(words.expanded(one))} mm", role=role
+        ),
+        Figure(
+            name="toward",
+            value=words.bearing(one.residual_east, one.residual_north),
+            unit="from north",
+            role=role,
+        ),
+        Figure(
+            name="measured E",
+            value=_signed(one.measured_east),
+            unit="mm",
+            note=f"expect {_signed(one.expected_east)}",
+        ),
+        Figure(
+            name="measured N",
+            value=_signed(one.measured_north),
+            unit="mm",
+            note=f"expect {_signed(one.expected_north)}",
+        ),
+    ]
+    if isinstance(one, Standing) and session.assumptions.run.kind == "hung" and one.rest_point is not None:
+        rest = one.rest_point
+        shown.append(
+            Figure(name="period", value=f"{rest.period:.1f}", unit="s", note=f"{rest.swings:.1f} swings")
+        )
+    return tuple(shown)
+
+
+def _signed(value: float) -> str:
+    return f"{value * 1e3:+.1f}" if isfinite(value) else "–"
+
+
+def _motion(one: Standing | Station) -> str:
+    if isinstance(one, Station):
+        return one.direction
+    if not isfinite(one.speed):
+        return ""
+    if abs(one.speed) < 0.005:
+        return "at rest"
+    return f"{'down' if one.speed > 0.0 else 'up'} {abs(one.speed):.1f} m/s"
+
+
+def plan(session: Session, snapshot: Snapshot, sight: look.Sight, one: Subject) -> PlanView:
+    """Return what the plan shows at the depth in view."""
+    shaft = session.assumptions.shaft
+    live = isinstance(one, Standing)
+    trail = _trail(snapshot) if live and session.assumptions.run.kind == "hung" else None
+    return PlanView(
+        one=one,
+        trail=trail if trail is not None else (np.empty(0), np.empty(0)),
+        rest=one.rest_point if isinstance(one, Standing) else None,
+        bob=_at(session.bob, one) if sight.extras else None,
+        fall=_at(session.fall, one) if sight.extras else None,
+        centre=(shaft.centre_east, shaft.centre_north),
+        diameter=shaft.diameter,
+        clearance=one.wall_clearance if isinstance(one, Standing) else None,
+    )
+
+
+def _trail(snapshot: Snapshot) -> tuple[np.ndarray, np.ndarray]:
+    """Return where the line was in the last minute [m]."""
+    rows = snapshot.rows
+    time = rows.column("time")
+    begin = int(np.searchsorted(time, time[-1] - _TRAIL_SECONDS)) if time.size else 0
+    return rows.column("measured_east")[begin:], rows.column("measured_north")[begin:]
+
+
+def _at(curve: Curve | None, one: Subject) -> Point | None:
+    if curve is None or one is None or not isfinite(one.depth):
+        return None
+    east, north = curve(np.array([one.depth]))
+    return float(east[0]), float(north[0])
+
+
+def alarm_line(snapshot: Snapshot) -> tuple[tuple[Piece, ...], Role | None]:
+    """Return the alarm to show first and the colour under it."""
+    worst = worst_alarm(snapshot.alarms)
+    if worst is None:
+        return (("no alarms", Role.DIM),), None
+    waiting = sum(one.state in words.WANTS_ANSWER for one in snapshot.alarms)
+    text = words.alarm(worst)
+    if not waiting:
+        return ((f"{text}  ", Role.TEXT), (f"{len(snapshot.alarms)} seen", Role.DIM)), None
+    more = f", {waiting - 1} more" if waiting > 1 else ""
+    under = Role.GROUND_WARNING if "warning" in worst.name else Role.GROUND_ACTION
+    return ((f"a seen{more} | ", Role.ON_GROUND), (text, Role.ON_GROUND)), under
+
+
+def key_line(snapshot: Snapshot) -> tuple[Piece, ...]:
+    """Return the keys that fit under the picture."""
+    pieces: list[Piece] = []
+    for shown, name in keys.line(("watch", "all"), snapshot.mode == "replay"):
+        pieces += [(shown, Role.STRONG), (f" {name}  ", Role.DIM)]
+    return tuple(pieces)

@@ -1,0 +1,46 @@
+"""The alarm list: every alarm that is not normal, those that wait for an answer first; they stay until acknowledged."""
+
+from collections.abc import Sequence
+
+from eastfall.physics.findings import AlarmView
+from eastfall.tui import words
+from eastfall.tui.raster import Raster
+from eastfall.tui.roles import Role
+from eastfall.tui.widgets.cells import CellWidget
+
+
+def in_order(alarms: Sequence[AlarmView]) -> list[AlarmView]:
+    """Return those that wait for an answer first, newest first among equals."""
+    return sorted(alarms, key=lambda one: (one.state not in words.WANTS_ANSWER, -one.since))
+
+
+def role_of(one: AlarmView) -> Role:
+    """Return how an alarm's line is drawn."""
+    if one.state not in words.WANTS_ANSWER:
+        return Role.DIM if one.state == "shelved" else Role.TEXT
+    return Role.WARNING if "warning" in one.name else Role.ACTION
+
+
+class AlarmList(CellWidget):
+    """One line an alarm; what does not fit is counted in the last line."""
+
+    alarms: tuple[AlarmView, ...] = ()
+
+    def show(self, alarms: tuple[AlarmView, ...]) -> None:
+        """Draw another list."""
+        self.alarms = alarms
+        self.redraw()
+
+    def draw(self, sheet: Raster) -> None:
+        """Write the list under its title."""
+        waiting = sum(one.state in words.WANTS_ANSWER for one in self.alarms)
+        title = f"alarms: {waiting} to acknowledge (key a)" if waiting else "alarms: none to acknowledge"
+        sheet.text(0, 0, title, Role.STRONG)
+        lines = [(words.alarm(one), role_of(one)) for one in in_order(self.alarms)]
+        room = sheet.height - 1
+        for row, (text, role) in enumerate(lines[:room]):
+            sheet.text(0, 1 + row, text, role)
+        if len(lines) > room > 0:
+            sheet.text(
+                0, sheet.height - 1, f"and {len(lines) - room + 1} more".ljust(sheet.width), Role.STRONG
+            )

@@ -1,0 +1,99 @@
+"""The ground of all drawn widgets: a picture of cells, of which only the rows that changed are painted again."""
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+from rich.segment import Segment
+from rich.style import Style
+from textual.geometry import Region
+from textual.strip import Strip
+from textual.widget import Widget
+
+from eastfall.tui.raster import BRAILLE, FILLER, Cells, Glyphs, Raster
+from eastfall.tui.roles import CLASS_OF, COMPONENT_CLASSES, Role
+
+if TYPE_CHECKING:
+    from textual.events import Resize
+
+_GROUNDS = len(Role)
+_FILLER = chr(FILLER)
+
+
+class CellWidget(Widget):
+    """A widget that draws itself as cells; subclasses give `draw`."""
+
+    COMPONENT_CLASSES = set(COMPONENT_CLASSES)  # noqa: RUF012 (Textual merges it along the class tree)
+    can_focus = False
+
+    def __init__(self, *, id: str | None = None, classes: str | None = None) -> None:  # noqa: A002 (Textual's name)
+        super().__init__(id=id, classes=classes)
+        self._cells = Cells.blank(0, 0)
+        self._styles: dict[int, Style] = {}
+
+    @property
+    def glyphs(self) -> Glyphs:
+        """How this terminal shows dots."""
+        return getattr(self.app, "glyphs", BRAILLE)
+
+    def draw(self, sheet: Raster) -> None:
+        """Put the picture on a sheet of the widget's size."""
+        raise NotImplementedError
+
+    def redraw(self) -> None:
+        """Draw again and paint the rows that came out differently; a hidden widget draws nothing."""
+        width, height = self.size
+        if width == 0 or height == 0 or not self.is_attached:
+            return
+        sheet = Raster(width, height, self.glyphs)
+        self.draw(sheet)
+        fresh, old = sheet.cells(), self._cells
+        self._cells = fresh
+        if fresh.chars.shape != old.chars.shape:
+            self.refresh()
+            return
+        rows = fresh.rows_that_differ(old)
+        if rows.size:
+            self.refresh(*_bands(rows, width))
+
+    def on_resize(self, event: "Resize") -> None:
+        """Draw for the new size."""
+        del event
+        self.redraw()
+
+    def notify_style_update(self) -> None:
+        """Forget the styles of the theme before, and draw in the new ones."""
+        super().notify_style_update()
+        self._styles.clear()
+        self.refresh()
+
+    def render_line(self, y: int) -> Strip:
+        """Return one row as runs of equal style."""
+        cells = self._cells
+        height, width = cells.chars.shape
+        if y >= height or width != self.size.width:
+            return Strip.blank(self.size.width, self.rich_style)
+        code = cells.ink[y].astype(np.int32) * _GROUNDS + cells.ground[y]
+        edges = [0, *(np.flatnonzero(np.diff(code)) + 1).tolist(), width]
+        words = cells.chars[y].astype("<u4").tobytes().decode("utf-32-le")
+        runs = [
+            Segment(words[start:stop].replace(_FILLER, ""), self._style(int(code[start])))
+            for start, stop in zip(edges[:-1], edges[1:], strict=True)
+        ]
+        return Strip(runs, width)
+
+    def _style(self, code: int) -> Style:
+        found = self._styles.get(code)
+        if found is None:
+            ink, ground = divmod(code, _GROUNDS)
+            found = self.rich_style + self.get_component_rich_style(CLASS_OF[Role(ink)], partial=True)
+            if ground:
+                under = self.get_component_rich_style(CLASS_OF[Role(ground)], partial=True)
+                found += Style(bgcolor=under.bgcolor, reverse=under.reverse)
+            self._styles[code] = found
+        return found
+
+
+def _bands(rows: np.ndarray, width: int) -> list[Region]:
+    """Return rows as regions, neighbouring ones joined."""
+    edges = np.flatnonzero(np.diff(rows) > 1) + 1
+    return [Region(0, int(part[0]), width, int(part[-1] - part[0] + 1)) for part in np.split(rows, edges)]

@@ -1,0 +1,225 @@
+"""The plan at one depth, north up: measured, expected and limits close by, or the shaft wall; true in both ways."""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from math import hypot, isfinite
+from typing import Literal
+
+import numpy as np
+
+from eastfall.physics.findings import RestPoint, Standing, Station
+from eastfall.tui.axes import round_step
+from eastfall.tui.raster import Floats, Raster, polyline, ring
+from eastfall.tui.roles import Role
+from eastfall.tui.widgets.cells import CellWidget
+from eastfall.tui.words import mm
+
+CELL_ASPECT = 2.0
+"""Height of a character cell over its width; a setting, because terminals differ."""
+LEAST_WIDTH, LEAST_HEIGHT = 14, 6
+ELLIPSE = 2.4477
+"""Half-axes of the 95 % ellipse of two normal variables, in standard deviations: sqrt(-2 ln 0.05)."""
+
+Scope = Literal["close", "wall"]
+Point = tuple[float, float]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class PlanView:
+    """What the plan draws; offsets east and north of the reference line [m]."""
+
+    one: Standing | Station | None
+    trail: tuple[Floats, Floats] = (np.empty(0), np.empty(0))
+    """Where it was lately."""
+    rest: RestPoint | None = None
+    bob: Point | None = None
+    fall: Point | None = None
+    centre: Point = (0.0, 0.0)
+    diameter: float | None = None
+    """Of the shaft, round about its centre."""
+    clearance: float | None = None
+    """From the measured point to the wall."""
+
+
+class Plan(CellWidget):
+    """The plan at one scale: `close` fits measured, expected and limits; `wall` fits the shaft."""
+
+    view: PlanView | None = None
+    scope: Scope = "close"
+    aspect: float = CELL_ASPECT
+
+    def show(self, view: PlanView, scope: Scope) -> None:
+        """Draw another view."""
+        self.view, self.scope = view, scope
+        self.redraw()
+
+    def draw(self, sheet: Raster) -> None:
+        """Draw the plan, or say why there is none."""
+        if sheet.width < LEAST_WIDTH or sheet.height < LEAST_HEIGHT:
+            return
+        view = self.view
+        if self.scope == "wall" and view is not None and view.diameter is None:
+            sheet.text(0, 0, "shaft plan", Role.STRONG)
+            sheet.text(0, 1, "no diameter in the site file", Role.DIM)
+            return
+        _Sheet(view, self.scope, sheet, self.aspect).draw()
+
+
+class _Sheet:
+    """One drawing of a plan."""
+
+    def __init__(self, view: PlanView | None, scope: Scope, sheet: Raster, aspect: float) -> None:
+        self.view, self.scope, self.sheet = view, scope, sheet
+        self.rows = sheet.height - 2
+        self.size = (sheet.width * sheet.glyphs.across, self.rows * sheet.glyphs.down)
+        # Height of a dot over its width: one length must look the same both ways.
+        self.squash = aspect * sheet.glyphs.across / sheet.glyphs.down
+        self.middle, self.reach = self._fit()
+        half = min(self.size[0], self.size[1] * self.squash) / 2.0
+        self.per_metre = half / self.reach
+
+    def _fit(self) -> tuple[Point, float]:
+        """Return the point in the middle and the distance from it to the nearer edge [m]."""
+        view = self.view
+        if view is None or view.one is None:
+            return (0.0, 0.0), 0.03
+        if self.scope == "wall":
+            return view.centre, (view.diameter or 1.0) / 2.0 * 1.08
+        one = view.one
+        middle = (one.expected_east, one.expected_north)
+        if not all(map(isfinite, middle)):
+            middle = (0.0, 0.0)
+        points = [(one.measured_east, one.measured_north), *zip(*view.trail, strict=True)]
+        far = [hypot(east - middle[0], north - middle[1]) for east, north in points]
+        reach = max([one.action * 1.12, *(1.1 * value for value in far if isfinite(value))])
+        step = round_step(2.0 * reach, 40)
+        return middle, step * np.ceil(reach / step)
+
+    def at(self, east: Floats | float, north: Floats | float) -> tuple[Floats, Floats]:
+        """Return dots of offsets [m]."""
+        x = self.size[0] / 2.0 + (np.asarray(east, dtype=float) - self.middle[0]) * self.per_metre
+        y = (
+            self.size[1] / 2.0
+            - (np.asarray(north, dtype=float) - self.middle[1]) * self.per_metre / self.squash
+        )
+        return x, y
+
+    def draw(self) -> None:
+        """Draw axes, circles, curves and marks, then the words."""
+        self._cross()
+        view = self.view
+        if view is not None:
+            if view.diameter is not None:
+                self._circle(view.centre, view.diameter / 2.0, Role.WALL, 0)
+            if view.one is not None:
+                self._evidence(view, view.one)
+        self._words()
+
+    def _stamp(self, plane: np.ndarray, role: Role) -> None:
+        whole = self.sheet.plane()
+        down = self.sheet.glyphs.down
+        whole[down : down + plane.shape[0]] = plane
+        self.sheet.stamp(whole, role)
+
+    def _plane(self) -> np.ndarray:
+        return np.zeros((self.size[1], self.size[0]), dtype=np.bool_)
+
+    def _cross(self) -> None:
+        """Draw the lines north-south and east-west through the reference line."""
+        x, y = (float(one) for one in self.at(0.0, 0.0))
+        plane = self._plane()
+        polyline(plane, [x, x], [0.0, self.size[1]])
+        plane[1::2] = False
+        across = self._plane()
+        polyline(across, [0.0, self.size[0]], [y, y])
+        across[:, 1::3] = across[:, 2::3] = False
+        self._stamp(plane | across, Role.DIM)
+
+    def _circle(self, centre: Point, radius: float, role: Role, gaps: int) -> None:
+        x, y = (float(one) for one in self.at(*centre))
+        dots = radius * self.per_metre
+        if isfinite(dots) and isfinite(x) and isfinite(y):
+            plane = self._plane()
+            ring(plane, (x, y), (dots, dots / self.squash), gaps=gaps)
+            self._stamp(plane, role)
+
+    def _evidence(self, view: PlanView, one: Standing | Station) -> None:
+        expected = (one.expected_east, one.expected_north)
+        measured = (one.measured_east, one.measured_north)
+        if self.scope == "close":
+            self._circle(expected, one.warning, Role.WARNING, 28)
+            self._circle(expected, one.action, Role.ACTION, 0)
+            plane = self._plane()
+            polyline(plane, *self.at(*view.trail))
+            self._stamp(plane, Role.PAST)
+            self._residual(expected, measured)
+            if view.rest is not None:
+                self._ellipse(view.rest)
+        self._mark(view.bob, "b", Role.BOB)
+        self._mark(view.fall, "d", Role.FALL)
+        self._mark(expected, self.sheet.glyphs.expected, Role.EXPECTED)
+        self._mark(measured, self.sheet.glyphs.measured, Role.MEASURED)
+        if view.rest is not None:
+            self._mark((view.rest.east, view.rest.north), "x", Role.STRONG)
+
+    def _residual(self, expected: Point, measured: Point) -> None:
+        """Join expected and measured: the residual itself."""
+        plane = self._plane()
+        x, y = self.at(np.array([expected[0], measured[0]]), np.array([expected[1], measured[1]]))
+        polyline(plane, x, y)
+        self._stamp(plane, Role.MEASURED)
+
+    def _ellipse(self, rest: RestPoint) -> None:
+        """Draw the 95 % ellipse of the rest point from its covariance."""
+        covariance = np.array(
+            [
+                [rest.u_east**2, rest.covariance_east_north],
+                [rest.covariance_east_north, rest.u_north**2],
+            ]
+        )
+        if not np.isfinite(covariance).all():
+            return
+        sizes, axes = np.linalg.eigh(covariance)
+        turn = np.linspace(0.0, 2.0 * np.pi, 90)
+        unit = np.array([np.cos(turn), np.sin(turn)])
+        east, north = axes @ (ELLIPSE * np.sqrt(np.maximum(sizes, 0.0))[:, None] * unit)
+        plane = self._plane()
+        polyline(plane, *self.at(rest.east + east, rest.north + north))
+        self._stamp(plane, Role.OK)
+
+    def _mark(self, point: Point | None, mark: str, role: Role) -> None:
+        if point is None or not (isfinite(point[0]) and isfinite(point[1])):
+            return
+        x, y = (float(one) for one in self.at(*point))
+        if 0.0 <= x < self.size[0] and 0.0 <= y < self.size[1]:
+            column, row = int(x) // self.sheet.glyphs.across, int(y) // self.sheet.glyphs.down
+            self.sheet.text(column, 1 + row, mark, role)
+
+    def _words(self) -> None:
+        """Write the title with the scale at the top, north, and the legend at the bottom."""
+        width = self.sheet.width
+        across = 2.0 * self.reach
+        span = f"{across:.1f} m" if across >= 1.0 else f"{mm(across, 0)} mm"
+        title = "shaft" if self.scope == "wall" else "plan"
+        self.sheet.text(0, 0, f"{title}, {span} across", Role.STRONG)
+        self.sheet.text(width // 2, 1, "N", Role.STRONG)
+        place = 0
+        for words, role in self._legend():
+            if place + len(words) <= width:
+                self.sheet.text(place, self.sheet.height - 1, words, role)
+                place += len(words) + 1
+
+    def _legend(self) -> Iterable[tuple[str, Role]]:
+        view, glyphs = self.view, self.sheet.glyphs
+        yield f"{glyphs.measured}measured", Role.MEASURED
+        yield f"{glyphs.expected}expected", Role.EXPECTED
+        if view is None:
+            return
+        if view.clearance is not None and self.scope == "wall":
+            yield f"wall {view.clearance:.2f} m off", Role.WALL
+        if view.rest is not None:
+            yield "x rest", Role.STRONG
+        if view.bob is not None:
+            yield "b bob", Role.BOB
+        if view.fall is not None:
+            yield "d dropped", Role.FALL

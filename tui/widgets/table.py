@@ -1,0 +1,99 @@
+"""A table that formats only the rows in view, so that its length costs nothing; follows the newest until moved."""
+
+from collections.abc import Callable, Sequence
+from typing import ClassVar
+
+from rich.segment import Segment
+from textual.binding import Binding, BindingType
+from textual.geometry import Size
+from textual.message import Message
+from textual.scroll_view import ScrollView
+from textual.strip import Strip
+
+from eastfall.tui.roles import CLASS_OF, COMPONENT_CLASSES, Role
+
+Formatter = Callable[[int], tuple[str, Role]]
+"""From a row's number to its text and how it is drawn."""
+
+
+class LongTable(ScrollView, can_focus=True):
+    """Rows of text with a cursor.
+
+    Posts `Opened` when a row is chosen with enter.
+    """
+
+    COMPONENT_CLASSES: ClassVar[set[str]] = set(COMPONENT_CLASSES)
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("up,k", "move(-1)", show=False),
+        Binding("down", "move(1)", show=False),
+        Binding("pageup", "move(-20)", show=False),
+        Binding("pagedown", "move(20)", show=False),
+        Binding("home", "move(-1000000000)", show=False),
+        Binding("end", "move(1000000000)", show=False),
+        Binding("enter", "open", show=False),
+    ]
+
+    class Opened(Message):
+        """A row was chosen."""
+
+        def __init__(self, row: int) -> None:
+            super().__init__()
+            self.row = row
+
+    def __init__(self, head: str, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
+        super().__init__(id=id)
+        self._head = head
+        self._count = 0
+        self._format: Formatter = lambda _: ("", Role.TEXT)
+        self.cursor = 0
+        self.follows = True
+
+    def show(self, count: int, formatter: Formatter) -> None:
+        """Show `count` rows; the cursor stays on the last one until it is moved off."""
+        self._count, self._format = count, formatter
+        self.virtual_size = Size(max(len(self._head), 1), count + 1)
+        if self.follows:
+            self.cursor = max(0, count - 1)
+        self.cursor = min(self.cursor, max(0, count - 1))
+        self._into_view()
+        self.refresh()
+
+    def action_move(self, by: int) -> None:
+        """Move the cursor."""
+        self.cursor = min(max(self.cursor + by, 0), max(0, self._count - 1))
+        self.follows = self.cursor >= self._count - 1
+        self._into_view()
+        self.refresh()
+
+    def action_open(self) -> None:
+        """Tell that the row under the cursor was chosen."""
+        if self._count:
+            self.post_message(self.Opened(self.cursor))
+
+    def _into_view(self) -> None:
+        room = max(1, self.size.height - 1)
+        top = int(self.scroll_offset.y)
+        if self.cursor < top:
+            self.scroll_to(y=self.cursor, animate=False, force=True)
+        elif self.cursor >= top + room:
+            self.scroll_to(y=self.cursor - room + 1, animate=False, force=True)
+
+    def render_line(self, y: int) -> Strip:
+        """Return the head, or the row that is scrolled to this line."""
+        width = self.size.width
+        if y == 0:
+            return self._strip(self._head, Role.STRONG, width)
+        row = int(self.scroll_offset.y) + y - 1
+        if row >= self._count:
+            return Strip.blank(width, self.rich_style)
+        text, role = self._format(row)
+        return self._strip(text, Role.CURSOR if row == self.cursor else role, width)
+
+    def _strip(self, text: str, role: Role, width: int) -> Strip:
+        style = self.rich_style + self.get_component_rich_style(CLASS_OF[role], partial=True)
+        return Strip([Segment(text, style)]).adjust_cell_length(width, style)
+
+
+def fixed(parts: Sequence[tuple[str, int]]) -> str:
+    """Return texts set to the right in columns of given widths."""
+    return " ".join(f"{text:>{width}}" for text, width in parts)

@@ -1,0 +1,204 @@
+"""Findings as plain sentences: every number with its unit, its sign or direction, and the line it is reckoned from."""
+
+from math import atan2, degrees, hypot, isfinite
+from typing import TYPE_CHECKING, Protocol
+
+from eastfall.physics.findings import AlarmView, RestPoint, Standing
+from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+
+if TYPE_CHECKING:
+    from eastfall.physics.settings import Kind, Reference
+
+CAUTIONS = (
+    "An aid to judgement. Not a safety device, and no part of one.",
+    "Nobody below a suspended or a dropped load, whatever this screen says.",
+    "Local mining and hoisting regulations and a licensed surveyor's practice come first.",
+    "Check that electronics are allowed in this atmosphere before you switch anything on.",
+)
+
+REFERENCE: "dict[Reference, str]" = {
+    "straight": "straight vertical at the collar",
+    "field-line": "curved vertical (field line)",
+    "hung-line": "hung line",
+}
+KIND: "dict[Kind, str]" = {"guided": "guided run", "hung": "hung line", "drop": "drop"}
+VERDICT = {"within": "WITHIN", "over": "OVER", "undecided": "UNDECIDED"}
+
+
+class Judged(Protocol):
+    """What a standing answer and a closed station have in common."""
+
+    @property
+    def depth(self) -> float: ...  # noqa: D102
+    @property
+    def residual_east(self) -> float: ...  # noqa: D102
+    @property
+    def residual_north(self) -> float: ...  # noqa: D102
+    @property
+    def u_east(self) -> float: ...  # noqa: D102
+    @property
+    def u_north(self) -> float: ...  # noqa: D102
+    @property
+    def warning(self) -> float: ...  # noqa: D102
+    @property
+    def action(self) -> float: ...  # noqa: D102
+    @property
+    def verdict(self) -> str: ...  # noqa: D102
+
+
+def mm(value: float, places: int = 1) -> str:
+    """Return metres as millimetres without the unit; a dash where there is no number."""
+    return f"{value * 1e3:.{places}f}" if isfinite(value) else "–"
+
+
+def metres(value: float, places: int = 1) -> str:
+    """Return metres without the unit; a dash where there is no number."""
+    return f"{value:.{places}f}" if isfinite(value) else "–"
+
+
+def bearing(east: float, north: float) -> str:
+    """Return the direction of an offset, clockwise from north, as three digits and a degree sign."""
+    if not (isfinite(east) and isfinite(north)) or (east == 0.0 and north == 0.0):
+        return "–"
+    return f"{round(degrees(atan2(east, north))) % 360:03d}°"
+
+
+def residual_length(one: Judged) -> float:
+    """Return the length of the horizontal residual [m]."""
+    return hypot(one.residual_east, one.residual_north)
+
+
+def expanded(one: Judged) -> float:
+    """Return the expanded uncertainty (k = 2) of the length of the residual [m]."""
+    _, u = horizontal(one.residual_east, one.residual_north, one.u_east, one.u_north)
+    return COVERAGE_FACTOR * float(u)
+
+
+def limit_in_question(one: Judged) -> tuple[str, float]:
+    """Return the name and size [m] of the limit that the answer is measured by: action once past the warning."""
+    if residual_length(one) > one.warning:
+        return "action limit", one.action
+    return "warning limit", one.warning
+
+
+def answer(one: Judged | None) -> str:
+    """Return the answer as one line."""
+    if one is None:
+        return "NO ANSWER YET: waiting for the first reading"
+    length = residual_length(one)
+    if not isfinite(length):
+        return f"NO ANSWER {metres(one.depth)} m: no offset in the readings"
+    name, limit = limit_in_question(one)
+    return (
+        f"{VERDICT[one.verdict]} {metres(one.depth)} m: residual {mm(length)} ± {mm(expanded(one))} mm "
+        f"toward {bearing(one.residual_east, one.residual_north)}, {name} {mm(limit)} mm"
+    )
+
+
+def steering(one: Standing | None, kind: "Kind") -> str:
+    """Return what to do, as one line."""
+    if one is None:
+        return "Wait for the first reading."
+    if one.hold_still is not None:
+        return f"Hold still: {one.hold_still:.0f} s more closes this station."
+    if kind == "hung" and one.rest_point is not None and not one.rest_point.fits:
+        return f"Let it swing: {one.rest_point.message or 'the swing does not fit a free pendulum yet'}."
+    length = residual_length(one)
+    if not isfinite(length):
+        return "Nothing to steer by: the readings give no offset."
+    if kind == "drop":
+        return "Stand clear: nothing to move while bodies fall."
+    return _move(one, length)
+
+
+def _move(one: Judged, length: float) -> str:
+    """Return which way and how far to bring a residual to nothing."""
+    if length <= expanded(one):
+        return f"Leave it: {mm(length)} mm is less than its uncertainty, ± {mm(expanded(one))} mm."
+    back = bearing(-one.residual_east, -one.residual_north)
+    places = 0 if length >= 0.002 else 1
+    return f"Move {mm(length, places)} mm toward {back} to meet the expected line."
+
+
+def pair(east: float, north: float, places: int = 1) -> str:
+    """Return an offset as signed east and north millimetres with their letters."""
+    if not (isfinite(east) and isfinite(north)):
+        return "E – N – mm"
+    return f"E {east * 1e3:+.{places}f} N {north * 1e3:+.{places}f} mm"
+
+
+def swing(rest: RestPoint | None) -> str:
+    """Return what the swing says of the rest point, as one line."""
+    if rest is None:
+        return "rest point: not enough swing seen yet"
+    worst = COVERAGE_FACTOR * max(rest.u_east, rest.u_north)
+    return (
+        f"rest point {pair(rest.east, rest.north)} ± {mm(worst)} mm, "
+        f"period {rest.period:.2f} s, {rest.swings:.1f} swings seen"
+    )
+
+
+def clock(seconds: float) -> str:
+    """Return a time since the start as h:mm:ss, or m:ss below an hour."""
+    if not isfinite(seconds):
+        return "–"
+    whole = int(seconds)
+    hours, minutes = divmod(whole // 60, 60)
+    return f"{hours}:{minutes:02d}:{whole % 60:02d}" if hours else f"{minutes}:{whole % 60:02d}"
+
+
+def alarm(one: AlarmView) -> str:
+    """Return one alarm as a line: its state first, in words."""
+    depth = f" at {metres(one.depth)} m" if isfinite(one.depth) else ""
+    what = f": {one.message}" if one.message else ""
+    return f"{ALARM_STATE.get(one.state, one.state.upper())} {one.name}{depth}, {clock(one.since)}{what}"
+
+
+ALARM_STATE = {
+    "active": "NEW",
+    "acknowledged": "SEEN",
+    "returned": "WENT BACK, NOT SEEN",
+    "latched": "LATCHED",
+    "shelved": "SHELVED",
+}
+WANTS_ANSWER = frozenset({"active", "returned", "latched"})
+"""States that stay on the screen until somebody acknowledges them."""
+
+
+def size(count: int) -> str:
+    """Return a number of bytes in decimal units."""
+    if count < 1000:
+        return f"{count} B"
+    return f"{count / 1e3:.0f} kB" if count < 1_000_000 else f"{count / 1e6:.1f} MB"
+
+
+def read_moment(text: str) -> tuple[str, float]:
+    """Read where to jump: "612.5 m" or "612.5" is a depth [m], "12:30" or "1:02:30" or "90 s" a time [s].
+
+    Returns
+    -------
+    tuple of str and float
+        "depth" and metres, or "time" and seconds from the start of the run.
+
+    Raises
+    ------
+    ValueError
+        With one line that says what is understood.
+    """
+    plain = text.strip().lower().replace(",", ".")
+    try:
+        if ":" in plain:
+            parts = [float(one) for one in plain.split(":")]
+            seconds = sum(part * 60.0**power for power, part in enumerate(reversed(parts)))
+            return "time", _not_negative(seconds)
+        if plain.endswith("s"):
+            return "time", _not_negative(float(plain[:-1]))
+        return "depth", _not_negative(float(plain.removesuffix("m")))
+    except ValueError:
+        raise ValueError("Not understood. A depth: 612.5 m. A time: 12:30 or 90 s.") from None
+
+
+def _not_negative(value: float) -> float:
+    if not (isfinite(value) and value >= 0.0):
+        raise ValueError(value)
+    return value
