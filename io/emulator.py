@@ -39,6 +39,11 @@ class EmulatedLine:
     """The kind of damage; empty for a good line."""
 
 
+def _refuse_unless(ok: bool, name: str, value: object, unit: str, expected: str) -> None:
+    if not ok:
+        raise ParameterError(name, value, unit, expected)
+
+
 class Emulator:
     """The instruments of every link of a site, at one emulated shaft.
 
@@ -71,10 +76,9 @@ class Emulator:
         winch: Winch | None = None,
         until: float | None = None,
     ) -> None:
-        if not 0.0 < rate <= 1e5:
-            raise ParameterError("rate", rate, "1/s", "more than 0 to 100000")
-        if not 0.0 <= broken <= 1.0:
-            raise ParameterError("broken", broken, "", "0 to 1")
+        _refuse_unless(0.0 < rate <= 1e5, "rate", rate, "1/s", "more than 0, to 100000")
+        _refuse_unless(0.0 <= broken <= 1.0, "broken", broken, "", "0 to 1")
+        _refuse_unless(until is None or until >= 0.0, "until", until, "s", "0 or more")
         self.site = site
         self.seed = seed
         self.truth = truth or draw_truth(site.assumptions, seed)
@@ -211,8 +215,7 @@ class EmulatedLink:
         wait: Callable[[float], object] | None = None,
         name: str = "emulate:",
     ) -> None:
-        if not pace > 0.0:
-            raise ParameterError("pace", pace, "", "more than 0")
+        _refuse_unless(0.0 < pace < np.inf, "pace", pace, "", "more than 0")
         self.name = name
         self.emulator = emulator
         self._link = link
@@ -325,16 +328,26 @@ def emulated_link(
         do not carry their own time.
     """
     options = options_of(url)
-    settings = _settings(site, index, url)
-    timed = "time_s" in settings.columns and settings.form == "columns"
-    if options.pace != 1.0 and not timed and site.assumptions.run.kind != "drop":
-        raise LinkError(
-            f"{url}: pace is {options.pace:g}; expected 1, because the lines do not carry their own time"
-        )
+    refuse_pace(site, _settings(site, index, url), options.pace, url)
     try:
         return EmulatedLink(emulator_for(site, options), index, pace=options.pace, clock=clock, name=url)
     except ParameterError as error:
         raise LinkError(f"{url}: {error}") from error
+
+
+def refuse_pace(site: SiteFile, settings: LinkSettings, pace: float, where: str) -> None:
+    """Refuse a pace at which the lines of a link would tell of another speed than the true one.
+
+    Raises
+    ------
+    LinkError
+        If the pace is not 1 and the lines do not carry their own time; a drop has no speed to tell of.
+    """
+    timed = settings.form == "columns" and "time_s" in settings.columns
+    if pace != 1.0 and not timed and site.assumptions.run.kind != "drop":
+        raise LinkError(
+            f"{where}: pace is {pace:g}; expected 1, because the lines do not carry their own time"
+        )
 
 
 def _settings(site: SiteFile, index: int, url: str) -> LinkSettings:

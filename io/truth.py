@@ -181,7 +181,7 @@ def draw_truth(assumptions: Assumptions, seed: int, *, errors: bool = False) -> 
     assumptions : Assumptions
         The site as the program knows it.
     seed : int
-        The same seed gives the same truth.
+        The same seed gives the same truth; 0 or more.
     errors : bool
         Whether the instrument errs beyond what the site states, by draws from its standard uncertainties.
 
@@ -189,6 +189,7 @@ def draw_truth(assumptions: Assumptions, seed: int, *, errors: bool = False) -> 
     -------
     Truth
     """
+    _refuse_unless(seed >= 0, "seed", seed, "0 or more")
     rng = np.random.default_rng([seed, 1])
     truth = _with_swing(_drawn_shape(assumptions, rng), assumptions, rng)
     return _with_errors(truth, assumptions, rng) if errors else truth

@@ -23,6 +23,19 @@ _WORDS: dict[str, Callable[[Reading], str]] = {
     "-": lambda _one: "OK",
 }
 
+_GROUPS: dict[str, Callable[[Reading], str]] = {
+    "tilt_a_deg": lambda one: f"A,{degrees(one['tilt_a']):.5f},D,A",
+    "tilt_b_deg": lambda one: f"A,{degrees(one['tilt_b']):.5f},D,B",
+    "east_mm": lambda one: f"D,{one['east']:.5f},M,EAST",
+    "north_mm": lambda one: f"D,{one['north']:.5f},M,NORTH",
+    "azimuth_deg": lambda one: f"A,{degrees(one['azimuth']) % 360.0:.2f},D,AZ",
+    "face_deg": lambda one: f"A,{degrees(one['face']):.1f},D,FACE",
+    "temperature_c": lambda one: f"C,{one['temperature'] - 273.15:.2f},C,T",
+    "supply_v": lambda one: f"U,{one['supply']:.2f},V,U",
+}
+_ROOM = 75
+"""Characters of a sentence between the $ and the *; with both, the checksum and the line end, 82 at most."""
+
 
 class LineWriter:
     """Words readings as lines of one link.
@@ -45,12 +58,16 @@ class LineWriter:
         return (with_checksum(self._settings.checksum, body),)
 
     def _sentences(self, reading: Reading) -> tuple[bytes, ...]:
-        depth = f"SDDPT,{reading['depth']:.3f},0.0,"
-        tilts = ",".join(
-            f"A,{degrees(reading[channel]):.5f},D,{name}"
-            for channel, name in (("tilt_a", "PITCH"), ("tilt_b", "ROLL"))
-        )
-        return _sentence(depth), _sentence(f"WIXDR,{tilts}")
+        """Return a depth sentence and one with the rest, each where the link speaks of it."""
+        columns = self._settings.columns
+        depth = (_sentence(f"SDDPT,{reading['depth']:.3f},0.0,"),) if "depth_m" in columns else ()
+        groups = [_GROUPS[column](reading) for column in columns if column in _GROUPS]
+        rest = "WIXDR"
+        for group in groups:
+            # What does not fit into a sentence is left unsaid: needed quantities come first in any sensible link.
+            if len(rest) + len(group) <= _ROOM:
+                rest += "," + group
+        return (*depth, _sentence(rest)) if groups else depth
 
 
 def _sentence(text: str) -> bytes:
