@@ -14,7 +14,6 @@ from numpy.typing import ArrayLike, NDArray
 from eastfall.physics.air import AirColumn, air_column
 from eastfall.physics.fall import Trajectory, Variation, fall, fall_ensemble
 from eastfall.physics.field import LocalField, local_field
-from eastfall.physics.findings import Share
 from eastfall.physics.hung import hang
 from eastfall.physics.moving import lean
 from eastfall.physics.settings import Assumptions, Body
@@ -137,13 +136,11 @@ class Budget:
         """Return the combined standard uncertainty, shape (2, m) [m]; inputs taken as uncorrelated."""
         return np.sqrt(np.sum(self.parts**2, axis=0))
 
-    def shares(self, depth: float) -> tuple[Share, ...]:
-        """Return the parts at one depth [m], in the order of `names`."""
-        at = [[float(np.interp(depth, self.depth, row)) for row in part] for part in self.parts]
-        return tuple(
-            Share(name=name, east=abs(east), north=abs(north))
-            for name, (east, north) in zip(self.names, at, strict=True)
-        )
+    def at(self, depth: ArrayLike) -> NDArray[np.float64]:
+        """Return the parts at depths, shape (n,) [m]: shape (len(names), 2, n) [m]."""
+        z = np.atleast_1d(np.asarray(depth, dtype=float))
+        rows = [np.interp(z, self.depth, row) for part in self.parts for row in part]
+        return np.array(rows).reshape(len(self.names), 2, z.size)
 
 
 def varied(models: Models) -> Iterator[tuple[str, Models]]:

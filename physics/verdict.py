@@ -37,21 +37,21 @@ def horizontal(
     return length, np.where(length > largest, along, largest)
 
 
-def verdict(length: float, u: float, limit: float) -> Verdict:
-    """Decide on one length against one limit.
+def verdicts(length: ArrayLike, u: ArrayLike, limit: ArrayLike) -> list[Verdict]:
+    """Decide on lengths against limits.
 
     Parameters
     ----------
-    length : float
+    length : array_like, shape (n,)
         Of the horizontal residual [m], not negative.
-    u : float
+    u : array_like, shape (n,)
         Its standard uncertainty [m].
-    limit : float
+    limit : array_like, shape (n,)
         [m].
 
     Returns
     -------
-    {"within", "over", "undecided"}
+    list of {"within", "over", "undecided"}
         With the guard band w = U = 2u: within if length + w ≤ limit, over if length − w > limit, else undecided; a NaN
         anywhere is undecided.
 
@@ -59,9 +59,11 @@ def verdict(length: float, u: float, limit: float) -> Verdict:
     ----------
     JCGM 106:2012, 8.3; ISO 14253-1:2017.
     """
-    guard = COVERAGE_FACTOR * u
-    if length + guard <= limit:
-        return "within"
-    if length - guard > limit:
-        return "over"
-    return "undecided"
+    size, guard, bound = np.atleast_1d(length), COVERAGE_FACTOR * np.atleast_1d(u), np.atleast_1d(limit)
+    words: list[Verdict] = ["undecided", "within", "over"]
+    return [words[one] for one in ((size + guard <= bound) + 2 * (size - guard > bound)).tolist()]
+
+
+def verdict(length: float, u: float, limit: float) -> Verdict:
+    """Decide on one length against one limit; see `verdicts`."""
+    return verdicts(length, u, limit)[0]

@@ -1,7 +1,6 @@
 """What every kind of run gives the engine, and what they share; the kinds themselves stand beside this."""
 
 from collections import Counter
-from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -13,7 +12,7 @@ from eastfall.physics.findings import ROW_FIELDS, RestPoint, Rows, Share, Statio
 from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Limits
-from eastfall.physics.verdict import horizontal, verdict
+from eastfall.physics.verdict import horizontal, verdicts
 
 Array = NDArray[np.float64]
 ROW = {name: number for number, name in enumerate(ROW_FIELDS)}
@@ -105,58 +104,82 @@ def inside_shaft(readings: Readings, curve: ExpectedCurve, unused: Counter[str])
     return usable(readings, good, "depth outside the shaft", unused)
 
 
-def combined(shares: Iterable[Share]) -> tuple[Share, ...]:
-    """Return the shares that are not nil, largest first."""
-    kept = [one for one in shares if one.east or one.north]
-    return tuple(sorted(kept, key=lambda one: -(one.east**2 + one.north**2)))
-
-
-def root_sum(shares: Iterable[Share]) -> tuple[float, float]:
-    """Combine uncorrelated shares to standard uncertainties east and north [m] (GUM, eq. 10)."""
-    listed = list(shares)
-    return float(np.sqrt(sum(one.east**2 for one in listed))), float(
-        np.sqrt(sum(one.north**2 for one in listed))
-    )
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class StationFacts:
-    """What a kind knows when it closes a station; `station` adds what follows from it."""
+    """What a kind knows when it closes stations; `stations_of` adds what follows from it.
+
+    Parameters
+    ----------
+    number : int
+        Of the first; the others count on from it.
+    depth, time : ndarray, shape (n,)
+        [m], [s].
+    passing, direction : int
+        Pass, and +1 for down or -1 for up.
+    measured, expected : ndarray, shape (2, n)
+        East and north [m].
+    readings : list of int, length n
+        That went into each.
+    still : bool
+        Whether they were taken at rest.
+    names : tuple of str
+        Of the inputs of the uncertainty.
+    parts : ndarray, shape (len(names), 2, n)
+        Standard uncertainty from each input, taken as uncorrelated [m].
+    """
 
     number: int
-    depth: float
+    depth: Array
+    time: Array
     passing: int
     direction: int
-    time: float
-    measured: tuple[float, float]
-    expected: tuple[float, float]
-    readings: int
+    measured: Array
+    expected: Array
+    readings: list[int]
     still: bool
-    shares: tuple[Share, ...]
+    names: tuple[str, ...]
+    parts: Array
 
 
-def station(facts: StationFacts, limits: Limits) -> Station:
-    """Judge a station."""
-    u_east, u_north = root_sum(facts.shares)
-    east, north = facts.measured[0] - facts.expected[0], facts.measured[1] - facts.expected[1]
-    length, u = horizontal(east, north, u_east, u_north)
-    warning, action = (float(one[0]) for one in limits_at(limits, np.array([facts.depth])))
-    return Station(
-        number=facts.number,
-        depth=facts.depth,
-        passing=facts.passing,
-        direction="down" if facts.direction > 0 else "up",
-        time=facts.time,
-        measured_east=facts.measured[0],
-        measured_north=facts.measured[1],
-        expected_east=facts.expected[0],
-        expected_north=facts.expected[1],
-        u_east=u_east,
-        u_north=u_north,
-        warning=warning,
-        action=action,
-        verdict=verdict(float(length), float(u), action),
-        readings=facts.readings,
-        still=facts.still,
-        shares=facts.shares,
-    )
+def one_station(facts: StationFacts, limits: Limits) -> Station:
+    """Judge a single station."""
+    return stations_of(facts, limits)[0]
+
+
+def stations_of(facts: StationFacts, limits: Limits) -> list[Station]:
+    """Judge stations: uncertainty of the residual by the root sum of squares (GUM, eq. 10), and the verdict on it."""
+    u = np.sqrt(np.sum(facts.parts**2, axis=0))
+    residual = facts.measured - facts.expected
+    length, u_length = horizontal(residual[0], residual[1], u[0], u[1])
+    warning, action = limits_at(limits, facts.depth)
+    words = verdicts(length, u_length, action)
+    columns = np.stack([facts.depth, facts.time, *facts.measured, *facts.expected, *u, warning, action])
+    shares = np.abs(facts.parts).transpose(2, 0, 1).tolist()
+    return [
+        Station(
+            number=facts.number + at,
+            depth=row[0],
+            passing=facts.passing,
+            direction="down" if facts.direction > 0 else "up",
+            time=row[1],
+            measured_east=row[2],
+            measured_north=row[3],
+            expected_east=row[4],
+            expected_north=row[5],
+            u_east=row[6],
+            u_north=row[7],
+            warning=row[8],
+            action=row[9],
+            verdict=words[at],
+            readings=facts.readings[at],
+            still=facts.still,
+            shares=_largest_first(facts.names, shares[at]),
+        )
+        for at, row in enumerate(columns.T.tolist())
+    ]
+
+
+def _largest_first(names: tuple[str, ...], parts: list[list[float]]) -> tuple[Share, ...]:
+    kept = [(e * e + n * n, name, e, n) for name, (e, n) in zip(names, parts, strict=True) if e or n]
+    kept.sort(reverse=True)
+    return tuple(Share(name=name, east=e, north=n) for _, name, e, n in kept)

@@ -7,19 +7,17 @@ from dataclasses import dataclass
 import numpy as np
 
 from eastfall.physics.expected import ExpectedCurve
-from eastfall.physics.findings import RestPoint, Rows, Share, Station
+from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
     Batch,
     Judged,
     StationFacts,
-    combined,
     fill_limits,
     inside_shaft,
-    root_sum,
+    one_station,
     rows_of,
-    station,
     usable,
 )
 from eastfall.physics.readings import Readings
@@ -110,49 +108,45 @@ class Drop:
         self._levels.insert(at, level)
         return level
 
-    def _shares(self, level: _Level) -> tuple[Share, ...]:
-        """Return the budget of a level's mean.
+    def _parts(self, level: _Level) -> tuple[tuple[str, ...], Array]:
+        """Return the budget of a level's mean: names, and parts of shape (len(names), 2, 1).
 
         The scatter of the marks, once there are enough of them to tell, stands in for what was assumed of release
         and reading, if it is the larger.
         """
-        count = level.count
-        systematic, single = (
-            [],
-            [Share(name="reading of the mark", east=self._u_offset, north=self._u_offset)],
-        )
-        for one in self._curve.budget.shares(level.depth):
-            (single if one.name in _OF_A_RELEASE else systematic).append(one)
-        assumed = np.array(root_sum(single))
+        count, budget = level.count, self._curve.budget
+        parts = np.concatenate([budget.at(level.depth), np.full((1, 2, 1), self._u_offset)])
+        names = (*budget.names, "reading of the mark")
+        single = np.array([name in _OF_A_RELEASE or name == names[-1] for name in names])
+        assumed = np.sqrt(np.sum(parts[single] ** 2, axis=0))[:, 0]
         seen = np.sqrt(level.squares / (count - 1)) if count > 1 else np.zeros(2)
-        shrink = 1.0 / np.sqrt(count)
         if np.any(seen > assumed):
-            spread = np.maximum(seen, assumed) * shrink
-            return combined(
-                [*systematic, Share(name="scatter of the marks", east=spread[0], north=spread[1])]
-            )
-        means = [Share(name=one.name, east=one.east * shrink, north=one.north * shrink) for one in single]
-        return combined([*systematic, *means])
+            scatter = (np.maximum(seen, assumed) / np.sqrt(count)).reshape(1, 2, 1)
+            kept = tuple(name for name, one in zip(names, single, strict=True) if not one)
+            return (*kept, "scatter of the marks"), np.concatenate([parts[~single], scatter])
+        parts[single] /= np.sqrt(count)
+        return names, parts
 
     @property
     def _u_offset(self) -> float:
         return self._assumptions.instrument.u_offset
 
     def _station(self, level: _Level) -> Station:
-        expected = self._curve.look_up(self._curve.plumb, [level.depth])[:, 0]
+        names, parts = self._parts(level)
         facts = StationFacts(
             number=level.number,
-            depth=level.depth,
+            depth=np.array([level.depth]),
+            time=np.array([level.time]),
             passing=0,
             direction=1,
-            time=level.time,
-            measured=(float(level.mean[0]), float(level.mean[1])),
-            expected=(float(expected[0]), float(expected[1])),
-            readings=level.count,
+            measured=level.mean[:, None],
+            expected=self._curve.look_up(self._curve.plumb, [level.depth]),
+            readings=[level.count],
             still=True,
-            shares=self._shares(level),
+            names=names,
+            parts=parts,
         )
-        return station(facts, self._assumptions.limits)
+        return one_station(facts, self._assumptions.limits)
 
     def close(self) -> tuple[Station, ...]:
         """Return nothing: every mark has given its station already."""

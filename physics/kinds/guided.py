@@ -7,18 +7,17 @@ from numpy.typing import NDArray
 
 from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve, reach
-from eastfall.physics.findings import RestPoint, Rows, Share, Station
+from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
     Batch,
     Judged,
     StationFacts,
-    combined,
     fill_limits,
     inside_shaft,
     rows_of,
-    station,
+    stations_of,
     usable,
 )
 from eastfall.physics.moving import LineSpeed, lean
@@ -34,6 +33,9 @@ _REACHED = 0.05
 
 # What is remembered of a row between blocks; the weight of the random part comes after these.
 _KEPT = ("time", "depth", "measured_east", "measured_north", "expected_east", "expected_north")
+
+_OWN = ("tilt, random", "tilt, zero", "tilt, scale", "azimuth", "depth")
+"""The inputs of the measured offset's uncertainty."""
 
 
 class Guided:
@@ -136,31 +138,25 @@ class Guided:
         self._ridden = float(ridden[-1])
         return ridden
 
-    def _parts(
-        self, depth: Array, east: Array, north: Array, weight: Array
-    ) -> list[tuple[str, Array, Array]]:
-        """Return what each input contributes to the measured offset: name, east, north [m]."""
+    def _parts(self, depth: Array, east: Array, north: Array, weight: Array) -> Array:
+        """Return what each input of `_OWN` contributes to the measured offset, shape (len(_OWN), 2, n) [m]."""
         instrument, guide = self._assumptions.instrument, self._assumptions.guide
         start = self._start[0] if self._start else 0.0
+        parts = np.empty((len(_OWN), 2, depth.size))
         gone_east, gone_north = np.abs(east - guide.start_east), np.abs(north - guide.start_north)
-        random = instrument.u_tilt * np.sqrt(weight)
-        zero = instrument.u_zero * np.abs(depth - start)
-        return [
-            ("tilt, random", random, random),
-            ("tilt, zero", zero, zero),
-            ("tilt, scale", instrument.u_scale * gone_east, instrument.u_scale * gone_north),
-            ("azimuth", instrument.u_azimuth * gone_north, instrument.u_azimuth * gone_east),
-            ("depth", instrument.u_depth_fraction * gone_east, instrument.u_depth_fraction * gone_north),
-        ]
+        parts[0] = instrument.u_tilt * np.sqrt(weight)
+        parts[1] = instrument.u_zero * np.abs(depth - start)
+        parts[2] = instrument.u_scale * gone_east, instrument.u_scale * gone_north
+        parts[3] = instrument.u_azimuth * gone_north, instrument.u_azimuth * gone_east
+        parts[4] = instrument.u_depth_fraction * gone_east, instrument.u_depth_fraction * gone_north
+        return parts
 
     def _uncertainty(self, rows: Array, weight: Array) -> Array:
         depth = rows[ROW["depth"]]
-        squares = self._curve.look_up(self._curve.u, depth) ** 2
-        east, north = rows[ROW["measured_east"]], rows[ROW["measured_north"]]
-        for _, part_east, part_north in self._parts(depth, east, north, weight):
-            squares[0] += part_east * part_east
-            squares[1] += part_north * part_north
-        return np.sqrt(squares)
+        expected = self._curve.look_up(self._curve.u, depth)
+        own = self._parts(depth, rows[ROW["measured_east"]], rows[ROW["measured_north"]], weight)
+        np.multiply(own, own, out=own)
+        return np.sqrt(own.sum(axis=0) + expected * expected)
 
     def _pass_through(self, rows: Array, weight: Array) -> tuple[Station, ...]:
         depth = rows[ROW["depth"]]
@@ -177,18 +173,17 @@ class Guided:
         return tuple(stations)
 
     def _crossed(self, stretch: Stretch, part: Array) -> list[Station]:
-        found = []
+        depths, rows, readings = [], [], []
         done = 0
         for depth, row in crossings(stretch, self._assumptions.run.station_every, reach(self._assumptions)):
-            after = part[:, row]
             before = part[:, row - 1] if row else self._last
-            self._taken += row + 1 - done
+            depths.append(depth)
+            rows.append(_between(before, part[:, row], depth))
+            readings.append(self._taken + row + 1 - done)
+            self._taken = 0
             done = row + 1
-            found.append(
-                self._station(stretch.passing, stretch.direction, depth, _between(before, after, depth))
-            )
         self._taken += part.shape[1] - done
-        return found
+        return self._stations(stretch.passing, stretch.direction, depths, rows, readings)
 
     def _remember(self, stretch: Stretch, part: Array) -> None:
         if not part.shape[1]:
@@ -211,28 +206,32 @@ class Guided:
         short_of = direction * (np.floor(direction * depth / every) + 1.0) * every + 0.0
         near = direction * (short_of - depth) <= min(_REACHED, every / 10.0)
         if near and 0.0 <= short_of <= reach(self._assumptions):
-            return [self._station(passing, direction, float(short_of), self._extreme)]
+            readings, self._taken = [self._taken], 0
+            return self._stations(passing, direction, [float(short_of)], [self._extreme], readings)
         return []
 
-    def _station(self, passing: int, direction: int, depth: float, row: Array) -> Station:
-        time, at, east, north, expected_east, expected_north, weight = (float(one) for one in row)
-        parts = self._parts(np.array([at]), np.array([east]), np.array([north]), np.array([weight]))
-        shares = [Share(name=name, east=float(e[0]), north=float(n[0])) for name, e, n in parts]
+    def _stations(
+        self, passing: int, direction: int, depths: list[float], rows: list[Array], readings: list[int]
+    ) -> list[Station]:
+        if not depths:
+            return []
+        time, at, east, north, expected_east, expected_north, weight = np.stack(rows, axis=1)
+        own = self._parts(at, east, north, weight)
         facts = StationFacts(
             number=self._closed,
-            depth=depth,
+            depth=np.array(depths),
+            time=time,
             passing=passing,
             direction=direction,
-            time=time,
-            measured=(east, north),
-            expected=(expected_east, expected_north),
-            readings=self._taken,
+            measured=np.stack([east, north]),
+            expected=np.stack([expected_east, expected_north]),
+            readings=readings,
             still=False,
-            shares=combined([*shares, *self._curve.budget.shares(at)]),
+            names=(*_OWN, *self._curve.budget.names),
+            parts=np.concatenate([own, self._curve.budget.at(at)]),
         )
-        self._closed += 1
-        self._taken = 0
-        return station(facts, self._assumptions.limits)
+        self._closed += len(depths)
+        return stations_of(facts, self._assumptions.limits)
 
     def close(self) -> tuple[Station, ...]:
         """Close the station that the last pass stopped just short of."""

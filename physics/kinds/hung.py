@@ -7,19 +7,17 @@ import numpy as np
 from eastfall.physics import swing
 from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve
-from eastfall.physics.findings import RestPoint, Rows, Share, Station
+from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
     Batch,
     Judged,
     StationFacts,
-    combined,
     fill_limits,
     inside_shaft,
-    root_sum,
+    one_station,
     rows_of,
-    station,
     usable,
 )
 from eastfall.physics.moving import LineSpeed
@@ -238,52 +236,58 @@ class Hung:
         self._closed += 1
         return [found]
 
-    def _position(self, level: _Level) -> tuple[Array, tuple[Share, ...]]:
-        """Return where the bob is taken to rest, and what makes the uncertainty of that."""
+    def _position(self, level: _Level) -> tuple[Array, tuple[str, ...], Array]:
+        """Return where the bob is taken to rest, shape (2,), and the budget: names, parts of shape (n, 2, 1)."""
         rest = level.rest
         if rest is not None and rest.fits:
-            position = np.array([rest.east, rest.north])
-            own = [Share(name="rest point of the swing", east=rest.u_east, north=rest.u_north)]
+            position, u, name = (
+                np.array([rest.east, rest.north]),
+                np.array([rest.u_east, rest.u_north]),
+                "rest point",
+            )
         else:
-            position = level.mean()
-            # A swing that does not fit the model leaves only its scatter, all of it, to say where the rest is.
-            scatter = level.scatter()
+            position, scatter = level.mean(), level.scatter()
             quiet = bool((scatter <= self._quiet(level)).all())
-            shrink = 1.0 / np.sqrt(level.count) if quiet else 1.0
-            u = np.maximum(scatter, self._random(level)) * shrink
+            # A swing that does not fit the model leaves only its scatter, all of it, to say where the rest is.
+            u = np.maximum(scatter, self._random(level)) / (np.sqrt(level.count) if quiet else 1.0)
             name = "readings" if quiet else "swing not resolved"
-            own = [Share(name=name, east=float(u[0]), north=float(u[1]))]
-        return position, combined(
-            [*own, *self._systematic(level, position), *self._curve.budget.shares(level.depth)]
+        names, parts = self._systematic(level, position)
+        budget = self._curve.budget
+        return (
+            position,
+            (name, *names, *budget.names),
+            np.concatenate([u.reshape(1, 2, 1), parts, budget.at(level.depth)]),
         )
 
-    def _systematic(self, level: _Level, position: Array) -> list[Share]:
+    def _systematic(self, level: _Level, position: Array) -> tuple[tuple[str, ...], Array]:
+        """Return what does not average out of an angle: names, parts of shape (n, 2, 1) [m]."""
         if level.direct:
-            return []
+            return (), np.empty((0, 2, 1))
         instrument = self._assumptions.instrument
-        zero = instrument.u_zero * level.depth
-        east, north = np.abs(position)
-        return [
-            Share(name="tilt, zero", east=zero, north=zero),
-            Share(name="tilt, scale", east=instrument.u_scale * east, north=instrument.u_scale * north),
-            Share(name="azimuth", east=instrument.u_azimuth * north, north=instrument.u_azimuth * east),
+        away = np.abs(position)
+        parts = [
+            np.full(2, instrument.u_zero * level.depth),
+            instrument.u_scale * away,
+            instrument.u_azimuth * away[::-1],
         ]
+        return ("tilt, zero", "tilt, scale", "azimuth"), np.array(parts)[:, :, None]
 
     def _station(self, level: _Level) -> Station:
-        position, shares = self._position(level)
+        position, names, parts = self._position(level)
         facts = StationFacts(
             number=self._closed,
-            depth=level.depth,
+            depth=np.array([level.depth]),
+            time=np.array([level.time]),
             passing=0,
             direction=1,
-            time=level.time,
-            measured=(float(position[0]), float(position[1])),
-            expected=(float(level.expected[0]), float(level.expected[1])),
-            readings=level.count,
+            measured=position[:, None],
+            expected=level.expected[:, None],
+            readings=[level.count],
             still=True,
-            shares=shares,
+            names=names,
+            parts=parts,
         )
-        return station(facts, self._assumptions.limits)
+        return one_station(facts, self._assumptions.limits)
 
     def _told(self, rest: swing.RestPoint | None) -> RestPoint | None:
         if rest is None:
@@ -313,16 +317,16 @@ class Hung:
             row = dict(zip(ROW, self._last.tolist(), strict=True))
             names = Judged.__slots__
             return Judged(**{name: row[name] for name in names})
-        position, shares = self._position(self._level)
-        u_east, u_north = root_sum(shares)
+        position, _, parts = self._position(self._level)
+        u_east, u_north = np.sqrt(np.sum(parts**2, axis=0))[:, 0]
         return Judged(
             depth=self._level.depth,
             measured_east=float(position[0]),
             measured_north=float(position[1]),
             expected_east=float(self._level.expected[0]),
             expected_north=float(self._level.expected[1]),
-            u_east=u_east,
-            u_north=u_north,
+            u_east=float(u_east),
+            u_north=float(u_north),
         )
 
     def rest_point(self) -> RestPoint | None:
