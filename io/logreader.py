@@ -162,6 +162,11 @@ class LogReader:
 
     def _whole_lines_behind(self) -> None:
         """Bring what stands behind the final seal before the check."""
+        if self._file.closed:
+            self._file = opened(self.path)
+            with self._file:
+                self._whole_lines_behind()
+            return
         while data := self._whole_lines():
             self._scan.feed(data)
 

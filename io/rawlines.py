@@ -9,11 +9,15 @@ import numpy as np
 from numpy.lib.stride_tricks import sliding_window_view
 from numpy.typing import NDArray
 
-_QUOTE, _FEED, _COMMA = 34, 10, 44
+from eastfall.io.decimals import Fields, plain_numbers
+
+_QUOTE, _FEED, _COMMA, _POINT = 34, 10, 44, 46
 _HEAD = np.frombuffer(b'{"t":', dtype=np.uint8)
 _RAW = np.frombuffer(b',"raw":["', dtype=np.uint8)
 _TAIL = np.frombuffer(b'"],"crc":"', dtype=np.uint8)
 _TAIL_AT = 20  # from the line feed back to the quote that closes the last line
+_LEAD = 8  # bytes of no meaning that `decimals` wants before the first number
+_DECIMALS = 6  # times are rounded to 1 µs
 _FRAME = 8  # quotes of a record that are not a line's: t, raw, crc and the check itself
 
 Bytes = NDArray[np.uint8]
@@ -36,6 +40,7 @@ def plain_lines(data: bytes) -> tuple[bytes, NDArray[np.float64]] | None:
     """
     if b"\\" in data or not data.isascii():
         return None
+    data = bytes(_LEAD) + data
     text = np.frombuffer(data, dtype=np.uint8)
     feeds = np.flatnonzero(text == _FEED)
     quotes = np.flatnonzero(text == _QUOTE)
@@ -46,11 +51,11 @@ def plain_lines(data: bytes) -> tuple[bytes, NDArray[np.float64]] | None:
     count = last - first
     if np.any(count < _FRAME + 2) or np.any(count % 2) or not _framed(text, feeds, quotes, first):
         return None
-    return _cut_out(text, quotes, first, count)
+    return _cut_out(data, text, quotes, first, count)
 
 
 def _framed(text: Bytes, feeds: Places, quotes: Places, first: Places) -> bool:
-    starts = np.concatenate(([0], feeds[:-1] + 1))
+    starts = np.concatenate(([_LEAD], feeds[:-1] + 1))
     return (
         _stands(text, starts, _HEAD)
         and _stands(text, quotes[first + 2] - 1, _RAW)
@@ -71,9 +76,9 @@ def _stands(text: Bytes, places: Places, word: Bytes) -> bool:
 
 
 def _cut_out(
-    text: Bytes, quotes: Places, first: Places, count: Places
+    data: bytes, text: Bytes, quotes: Places, first: Places, count: Places
 ) -> tuple[bytes, NDArray[np.float64]] | None:
-    times = _times(text, quotes[first + 1] + 2, quotes[first + 2] - 1)
+    times = _times(data, text, quotes[first + 1] + 2, quotes[first + 2] - 1)
     framing = np.zeros(quotes.size, dtype=bool)
     for place in range(4):
         framing[first + place] = True
@@ -98,16 +103,18 @@ def _separated(text: Bytes, opens: Places, closes: Places, lines: Places) -> boo
 
 def _between(size: int, begins: Places, ends: Places) -> NDArray[np.bool_]:
     """Return a mask that is True from each begin up to, not with, its end."""
-    steps = np.zeros(size + 1, dtype=np.int8)
-    steps[begins] += 1
-    steps[ends] -= 1
-    return np.cumsum(steps[:-1], dtype=np.int8).view(np.bool_)
+    edges = np.empty(2 * begins.size + 2, dtype=np.intp)
+    edges[0], edges[-1] = 0, size
+    edges[1:-1:2], edges[2:-1:2] = begins, ends
+    inside = np.zeros(edges.size - 1, dtype=bool)
+    inside[1::2] = True
+    return np.repeat(inside, np.diff(edges))
 
 
-def _times(text: Bytes, begins: Places, commas: Places) -> NDArray[np.float64] | None:
-    numbers = text[_between(text.size, begins, commas + 1)].tobytes()
-    try:
-        times = np.array(numbers[:-1].split(b","), dtype=np.float64)
-    except ValueError:
-        return None
-    return times if times.size == begins.size else None
+def _times(data: bytes, text: Bytes, starts: Places, stops: Places) -> NDArray[np.float64] | None:
+    """Return the numbers that stand between the places, or None if one is not of the plain kind."""
+    points = stops.copy()
+    for decimals in range(1, _DECIMALS + 1):
+        points -= np.where(text[stops - decimals - 1] == _POINT, decimals + 1, 0)
+    times, plain = plain_numbers(Fields(data, text, starts, np.maximum(points, starts), stops))
+    return times if bool(plain.all()) else None

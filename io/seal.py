@@ -225,7 +225,7 @@ def _finding(path: Path, scan: SealScan, stretch: _Stretch, walk: _Walk) -> tupl
     if scan.bad is not None and walk.bad is None:
         first = stretch.line
         return "changed", first, f"something in lines {first} to {line - 1} is not as it was written"
-    if scan.bad is None and scan.last is not None and scan.last.end is not None:
+    if scan.bad is None and walk.good and scan.last is not None and scan.last.end is not None:
         if behind or walk.bad is not None:
             return "changed", stretch.line + 1, "something stands behind the final seal"
         if scan.last.next is not None and not beside(path, scan.last.next).exists():
