@@ -91,16 +91,20 @@ def _block(number: int, lines: int = 1) -> LineBlock:
 
 
 def _record_until_refused(log: RunLogWriter, start: int = 0) -> int:
-    """Record lines until one is refused; return its number."""
-    for number in range(start, start + 100_000):
+    """Record lines until one is refused, check how it is refused, and return its number."""
+    number = start
+    refused: OutputError | None = None
+    while refused is None and number < start + 100_000:
         try:
             log.raw(_block(number))
+            number += 1
         except OutputError as error:
-            assert str(log.path) in str(error)
-            assert error.errno in {errno.ENOSPC, errno.EFBIG}
-            assert log.state.startswith("not recording: ")
-            return number
-    pytest.fail("no write was refused")
+            refused = error
+    assert refused is not None
+    assert str(log.path) in str(refused)
+    assert refused.errno in {errno.ENOSPC, errno.EFBIG}
+    assert log.state.startswith("not recording: ")
+    return number
 
 
 @pytest.mark.skipif(sys.platform == "win32", reason="POSIX limits")
