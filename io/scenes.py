@@ -90,13 +90,12 @@ class GuidedScene:
         felt = felt_tilt(self._truth, self._field, depth, speed, pull)
         tilt_a, tilt_b = indicated_tilt(self._probe, felt, face, temperature, rng)
         east, north = self._truth.offset(depth) + self._probe.u_offset * rng.standard_normal(felt.shape)
-        return _slow_channels(self._site.instrument, time, temperature, rng) | {
+        return _slow_channels(self._site.instrument, time, temperature, face, rng) | {
             "depth": depth * (1.0 + self._truth.depth_scale),
             "tilt_a": tilt_a,
             "tilt_b": tilt_b,
             "east": east,
             "north": north,
-            "face": face,
         }
 
 
@@ -183,12 +182,13 @@ def _temperature(air: Air, depth: Column) -> Column:
 
 
 def _slow_channels(
-    instrument: Instrument, time: Column, temperature: Column, rng: np.random.Generator
+    instrument: Instrument, time: Column, temperature: Column, face: Column, rng: np.random.Generator
 ) -> Columns:
     noise = rng.standard_normal((3, time.shape[0]))
     return {
         "time": time,
-        "azimuth": instrument.a_azimuth + np.radians(0.1) * noise[0],
+        "azimuth": instrument.a_azimuth + face + np.radians(0.1) * noise[0],
+        "face": face,
         "temperature": temperature + 0.05 * noise[1],
         "supply": 12.6 - 2e-5 * time + 0.01 * noise[2],
     }
@@ -223,13 +223,12 @@ class HungScene:
         temperature = _temperature(self._site.air, still)
         tilt_a, tilt_b = indicated_tilt(self._probe, bob / self.length, still, temperature, rng)
         east, north = bob - self._reference + self._site.instrument.u_offset * rng.standard_normal(bob.shape)
-        return _slow_channels(self._site.instrument, time, temperature, rng) | {
+        return _slow_channels(self._site.instrument, time, temperature, still, rng) | {
             "depth": still + self.length * (1.0 + self._truth.depth_scale),
             "tilt_a": tilt_a,
             "tilt_b": tilt_b,
             "east": east,
             "north": north,
-            "face": still,
         }
 
     def swing(self, time: Column) -> Vector:
@@ -301,12 +300,11 @@ class DropScene:
         spread = at_release[0] * noise[0] + at_release[1] * self._fall_time[level] * noise[1]
         east, north = self.middle[:, level] + spread + self._site.instrument.u_offset * noise[2]
         temperature = _temperature(self._site.air, self.levels[level])
-        return _slow_channels(self._site.instrument, time, temperature, rng) | {
+        return _slow_channels(self._site.instrument, time, temperature, np.zeros_like(time), rng) | {
             "depth": self.levels[level] * (1.0 + self._truth.depth_scale),
             "east": east,
             "north": north,
             # A falling body feels no vertical: what its level shows is only how it tumbles.
             "tilt_a": np.radians(2.0) * noise[3, 0],
             "tilt_b": np.radians(2.0) * noise[3, 1],
-            "face": np.zeros_like(time),
         }
