@@ -62,6 +62,12 @@ class Splitter:
             data = data.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
         return self._split(data)
 
+    def cut_off(self) -> bytes:
+        """Return the line whose end will not come, and start afresh: what comes next is no part of it."""
+        rest, self.pending = self.pending, b""
+        self._skipping = self._after_return = False
+        return rest
+
     def _split(self, data: bytes) -> bytes:
         if self._skipping:
             data = self._skip(data)

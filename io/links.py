@@ -1,0 +1,401 @@
+"""Where bytes come from: one interface over serial ports, TCP device servers, files, pipes and the emulator.
+
+A URL picks one. Serial devices and the `rfc2217`, `loop` and `hwgrep` schemes are pyserial's; what to do when a link
+is lost is for `io.reader`.
+"""
+
+import contextlib
+import errno
+import os
+import re
+import select
+import socket
+import stat
+import sys
+import time
+from collections.abc import Callable, Iterator
+from pathlib import Path
+from typing import Any, Protocol
+from urllib.parse import urlsplit
+
+from eastfall.io.errors import LinkError, LogError
+from eastfall.io.safetext import safe
+from eastfall.io.sitefile import LinkSettings, SiteFile
+
+CHUNK = 1 << 16
+"""Bytes taken at a time."""
+CONNECT_WITHIN = 5.0
+"""Seconds that a TCP device server may take to accept."""
+_LOG_BEGINS = b'{"eastfall":"run log"'
+_BY_PYSERIAL = ("rfc2217", "loop", "hwgrep")
+_DEVICE = re.compile(r"/dev/|COM\d+\Z|\\\\\.\\", re.IGNORECASE)
+_SCHEMES = "a serial device, COM port, socket://host:port, rfc2217://host:port, emulate:, - or a file"
+
+Cancelled = Callable[[], bool]
+
+
+class Link(Protocol):
+    """A source of bytes; one thread reads and closes it."""
+
+    @property
+    def name(self) -> str:
+        """What to call it: its URL."""
+        ...
+
+    def read(self, timeout: float) -> bytes | None:
+        """Return what has come after at most `timeout` [s]: b"" for nothing yet, None for the end of the input.
+
+        Raises
+        ------
+        LinkError
+            The link is lost.
+        """
+        ...
+
+    def close(self) -> None:
+        """Let go of it; a second call does nothing."""
+        ...
+
+
+def open_link(
+    settings: LinkSettings,
+    site: SiteFile | None = None,
+    index: int = 0,
+    *,
+    clock: Callable[[], float] = time.monotonic,
+    cancelled: Cancelled = lambda: False,
+) -> Link:
+    """Open a link.
+
+    Parameters
+    ----------
+    settings : LinkSettings
+        Its URL says what it is.
+    site : SiteFile, optional
+        What an `emulate:` link emulates.
+    index : int
+        The link's place in the site file.
+    clock : callable
+        Monotonic time [s], for the emulator.
+    cancelled : callable
+        Asked now and then while a connection is being made; True gives up.
+
+    Raises
+    ------
+    LinkError
+        With the URL, what is wrong and what to do.
+    """
+    url = settings.url
+    scheme = urlsplit(url).scheme if re.match(r"[a-z][a-z0-9]+:", url) else ""
+    if url == "-":
+        return StreamLink(sys.stdin.fileno(), "-")
+    if scheme == "emulate":
+        from eastfall.io.emulator import emulated_link  # noqa: PLC0415 (the emulator only where it is used)
+
+        if site is None:
+            raise LinkError(f"{url}: there is no site to emulate; expected a site file")
+        return emulated_link(url, site, index, clock)
+    if scheme == "socket":
+        return SocketLink(url, cancelled=cancelled)
+    if scheme in _BY_PYSERIAL:
+        return SerialLink(settings)
+    if "://" in url:
+        raise LinkError(f"{safe(url, 80)}: unknown kind of link; expected {_SCHEMES}")
+    return _open_path(settings, index)
+
+
+def _open_path(settings: LinkSettings, index: int) -> Link:
+    """Open what a plain path names: a device, a pipe, a run log or a capture."""
+    url = settings.url
+    try:
+        mode = Path(url).stat().st_mode
+    except (OSError, ValueError) as error:
+        if _DEVICE.match(url):
+            return SerialLink(settings)
+        raise _link_error(url, error) from error
+    if stat.S_ISREG(mode):
+        return FileLink(url, index)
+    if stat.S_ISFIFO(mode):
+        return StreamLink(_opened(url, os.O_RDONLY), url, own=True)
+    if stat.S_ISCHR(mode):
+        return SerialLink(settings)
+    raise LinkError(f"{safe(url, 80)}: neither a device nor a file; expected {_SCHEMES}")
+
+
+def _opened(path: str, flags: int) -> int:
+    try:
+        return os.open(path, flags)
+    except OSError as error:
+        raise _link_error(path, error) from error
+
+
+class SerialLink:
+    """A serial device, or what pyserial makes look like one; eight data bits, no parity, one stop bit.
+
+    Parameters
+    ----------
+    settings : LinkSettings
+        URL and speed.
+    """
+
+    patient = False
+
+    def __init__(self, settings: LinkSettings) -> None:
+        import serial  # noqa: PLC0415 (only where a port is opened)
+
+        self.name = settings.url
+        # What a driver raises at a port that vanished is not always an OSError.
+        self._troubles: tuple[type[Exception], ...] = (
+            OSError,
+            ValueError,
+            TypeError,
+            AttributeError,
+            *_terminal_errors(),
+        )
+        options: dict[str, Any] = {"baudrate": settings.baud, "timeout": 0.1}
+        if os.name == "posix" and "://" not in settings.url:
+            options["exclusive"] = True
+        try:
+            self._port: Any = serial.serial_for_url(settings.url, **options)
+        except self._troubles as error:
+            raise _link_error(settings.url, error) from error
+
+    def read(self, timeout: float) -> bytes | None:
+        """Return what has come."""
+        try:
+            if self._port.timeout != timeout:
+                self._port.timeout = timeout
+            return bytes(self._port.read(min(max(1, self._port.in_waiting), CHUNK)))
+        except self._troubles as error:
+            raise LinkError(f"{safe(self.name, 80)}: lost: {safe(str(error), 120)}") from error
+
+    def close(self) -> None:
+        """Let go of the port."""
+        with contextlib.suppress(*self._troubles):
+            self._port.close()
+
+
+def _terminal_errors() -> tuple[type[Exception], ...]:
+    """Return what `termios` raises, where there is one; it is no OSError."""
+    try:
+        import termios  # noqa: PLC0415 (POSIX only)
+    except ImportError:
+        return ()
+    return (termios.error,)
+
+
+class SocketLink:
+    """A TCP device server; it is only listened to.
+
+    pyserial's own `socket://` reads one byte at a time without waiting for more, 8 µs each, and when asked for more at
+    once it throws away what it has when the server closes: so lines sent just before were lost.
+
+    Parameters
+    ----------
+    url : str
+        socket://host:port
+    within : float
+        Longest wait for the server to accept [s].
+    cancelled : callable
+        Asked while waiting; True gives up.
+    """
+
+    patient = False
+
+    def __init__(
+        self, url: str, *, within: float = CONNECT_WITHIN, cancelled: Cancelled = lambda: False
+    ) -> None:
+        self.name = url
+        host, port = _address(url)
+        try:
+            self._socket = _connected(host, port, within, cancelled)
+        except OSError as error:
+            raise _link_error(url, error) from error
+        self._socket.setsockopt(socket.SOL_SOCKET, socket.SO_KEEPALIVE, 1)
+        for option, seconds in (("TCP_KEEPIDLE", 10), ("TCP_KEEPINTVL", 5), ("TCP_KEEPCNT", 3)):
+            if hasattr(socket, option):  # a server that lost its power sends no farewell: found out in 25 s
+                self._socket.setsockopt(socket.IPPROTO_TCP, getattr(socket, option), seconds)
+
+    def read(self, timeout: float) -> bytes | None:
+        """Return what has come."""
+        try:
+            ready, _, _ = select.select([self._socket], [], [], timeout)
+            if not ready:
+                return b""
+            data = self._socket.recv(CHUNK)
+        except (OSError, ValueError) as error:
+            raise LinkError(f"{self.name}: lost: {safe(str(error), 120)}") from error
+        if not data:
+            raise LinkError(f"{self.name}: lost: the device server closed the connection")
+        return data
+
+    def close(self) -> None:
+        """Let go of the connection."""
+        self._socket.close()
+
+
+def _address(url: str) -> tuple[str, int]:
+    try:
+        parts = urlsplit(url)
+        host, port = parts.hostname, parts.port
+    except ValueError:
+        host, port = None, None
+    if not host or not port:
+        raise LinkError(f"{safe(url, 80)}: no host and port in it; expected socket://host:port")
+    return host, port
+
+
+def _connected(host: str, port: int, within: float, cancelled: Cancelled) -> socket.socket:
+    """Connect to the first address that accepts."""
+    last: OSError = OSError(errno.EHOSTUNREACH, "no address")
+    for family, kind, protocol, _, address in socket.getaddrinfo(host, port, type=socket.SOCK_STREAM):
+        one = socket.socket(family, kind, protocol)
+        try:
+            _connect(one, address, within, cancelled)
+        except OSError as error:
+            one.close()
+            last = error
+        else:
+            return one
+    raise last
+
+
+def _connect(one: socket.socket, address: Any, within: float, cancelled: Cancelled) -> None:
+    """Connect without blocking for longer than a tenth of a second at a time."""
+    one.setblocking(False)
+    code = one.connect_ex(address)
+    deadline = time.monotonic() + within
+    while code in (errno.EINPROGRESS, errno.EWOULDBLOCK, errno.EALREADY):
+        if cancelled():
+            raise OSError(errno.ECANCELED, "given up")
+        if time.monotonic() > deadline:
+            raise OSError(errno.ETIMEDOUT, "no answer")
+        _, writable, failed = select.select([], [one], [one], 0.1)
+        if writable or failed:
+            code = one.getsockopt(socket.SOL_SOCKET, socket.SO_ERROR)
+    if code:
+        raise OSError(code, os.strerror(code))
+
+
+class StreamLink:
+    """Standard input or a named pipe; it ends where the writer ends it.
+
+    Parameters
+    ----------
+    descriptor : int
+        An open file descriptor.
+    name : str
+        What to call it.
+    own : bool
+        Whether closing the link closes the descriptor.
+    """
+
+    patient = True
+    """Whoever writes can wait: nothing need be dropped when the program is busy."""
+
+    def __init__(self, descriptor: int, name: str, *, own: bool = False) -> None:
+        self.name = name
+        self._descriptor = descriptor
+        self._own = own
+
+    def read(self, timeout: float) -> bytes | None:
+        """Return what has come."""
+        try:
+            # Only sockets can be waited for on Windows: there a read of standard input waits as long as it takes.
+            if os.name == "posix" and not select.select([self._descriptor], [], [], timeout)[0]:
+                return b""
+            return os.read(self._descriptor, CHUNK) or None
+        except (OSError, ValueError) as error:
+            raise LinkError(f"{safe(self.name, 80)}: lost: {safe(str(error), 120)}") from error
+
+    def close(self) -> None:
+        """Let go of the descriptor."""
+        if self._own:
+            self._own = False
+            os.close(self._descriptor)
+
+
+class FileLink:
+    """A capture, or the raw lines of a run log, read as fast as they are wanted.
+
+    The lines arrive now: their host times are those of this reading. `replay` keeps the recorded ones.
+
+    Parameters
+    ----------
+    path : str
+        The file.
+    index : int
+        Which link's lines to take from a run log.
+    """
+
+    patient = True
+
+    def __init__(self, path: str, index: int = 0) -> None:
+        self.name = path
+        try:
+            self._file = Path(path).open("rb")  # noqa: SIM115 (closed by `close`)
+            begin = self._file.read(len(_LOG_BEGINS))
+            self._file.seek(0)
+        except (OSError, ValueError) as error:
+            raise _link_error(path, error) from error
+        self._pieces = self._log_lines(index) if begin == _LOG_BEGINS else self._capture()
+
+    def _capture(self) -> Iterator[bytes]:
+        while data := self._file.read(CHUNK):
+            yield data
+
+    def _log_lines(self, index: int) -> Iterator[bytes]:
+        from eastfall.io.arrivals import LineBlock  # noqa: PLC0415 (a run log as a link is rare)
+        from eastfall.io.runlog import read_log  # noqa: PLC0415 (as above)
+
+        with read_log(Path(self.name)) as log:
+            for one in log:
+                if isinstance(one, LineBlock) and one.link == index:
+                    yield one.data
+
+    def read(self, timeout: float) -> bytes | None:
+        """Return the next piece at once."""
+        del timeout
+        try:
+            return next(self._pieces, None)
+        except (OSError, LogError) as error:
+            raise LinkError(f"{safe(self.name, 80)}: lost: {safe(str(error), 120)}") from error
+
+    def close(self) -> None:
+        """Let go of the file."""
+        self._pieces = iter(())
+        self._file.close()
+
+
+_WHAT = {
+    errno.ENOENT: "no such device or file; `eastfall ports` lists the serial ports",
+    errno.ENXIO: "no such device; `eastfall ports` lists the serial ports",
+    errno.ENODEV: "no such device; `eastfall ports` lists the serial ports",
+    errno.EACCES: "permission denied; may this user read it? (on Linux often: the group dialout)",
+    errno.EPERM: "permission denied; may this user read it? (on Linux often: the group dialout)",
+    errno.EBUSY: "busy: another program holds it; close that one first",
+    errno.EAGAIN: "busy: another program holds it; close that one first",
+    errno.EISDIR: "a folder; expected a device or a file",
+    errno.ECONNREFUSED: "connection refused: nothing listens there; is the device server on, is the port right?",
+    errno.ETIMEDOUT: "no answer; is the device server on, is the address right?",
+    errno.EHOSTUNREACH: "host not reachable; is the network up, is the address right?",
+    errno.ENETUNREACH: "network not reachable; is the network up, is the address right?",
+}
+
+
+def _link_error(url: str, error: BaseException) -> LinkError:
+    """Return the one clear line for a link that cannot be opened."""
+    text = str(error)
+    number = getattr(error, "errno", None)
+    if number is None and (found := re.search(r"\[Errno (\d+)\]", text)):
+        number = int(found[1])
+    if isinstance(error, socket.gaierror):
+        return LinkError(
+            f"{safe(url, 80)}: the host's name cannot be resolved; expected a name or an address"
+        )
+    if "FileNotFoundError" in text:  # as pyserial words it on Windows
+        number = errno.ENOENT
+    elif "PermissionError" in text:  # there, this is a port that is open elsewhere
+        number = errno.EBUSY
+    what = _WHAT.get(number, "") if number is not None else ""
+    return LinkError(f"{safe(url, 80)}: {what or 'cannot be opened: ' + safe(text, 160)}")

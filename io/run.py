@@ -1,0 +1,393 @@
+"""A live run: links, run log and pipeline held together, one step at a time; the screen and `record` drive it.
+
+The order for every arrival: into the log, through the pipeline, then its alarm changes into the log. Whatever changes
+the engine's state besides lines (a person's word, a lost link, a failing record) is an event that takes the same way,
+so a replay of the log repeats the run to the last bit.
+"""
+
+import threading
+import time
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from functools import partial
+from types import MappingProxyType
+from typing import Protocol, Self
+
+from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
+from eastfall.io.errors import LinkError
+from eastfall.io.links import Cancelled, Link, open_link
+from eastfall.io.pipeline import Pipeline
+from eastfall.io.reader import Clock, Inbox, Item, LinkNews, Reader
+from eastfall.io.recorder import Recorder
+from eastfall.io.runlog import RunLogWriter
+from eastfall.io.safetext import safe
+from eastfall.io.sitefile import LinkSettings, SiteFile
+from eastfall.physics.findings import AlarmView, Findings, Standing
+
+RECORD_FAILING = "record failing"
+LINK_LOST = "link lost"
+STOP_WITHIN = 0.3
+"""Longest wait for a reader thread to leave [s]."""
+_MOST = 256
+"""Arrivals taken in one step."""
+
+
+class Opener(Protocol):
+    """Opens a link; `io.links.open_link` by default."""
+
+    def __call__(
+        self,
+        settings: LinkSettings,
+        site: SiteFile | None,
+        index: int,
+        *,
+        clock: Callable[[], float],
+        cancelled: Cancelled,
+    ) -> Link:
+        """Open the link that the settings describe."""
+        ...
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LinkHealth:
+    """How one link does."""
+
+    name: str
+    url: str
+    state: str
+    """open, lost or ended."""
+    retry_in: float | None
+    """Seconds until the next try; None while it is not lost, or is being tried."""
+    lines: int
+    rate: float
+    """Lines per second over the last few seconds."""
+    silent_for: float
+    """Seconds since the last line, or since the start."""
+    last_fault: str
+    """The latest bad line and what was expected, or why the link is lost; safe to show."""
+    queue_dropped: int
+    """Lines that found no room in the queue and are lost."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Health:
+    """How the feed and the record do."""
+
+    links: tuple[LinkHealth, ...]
+    frames: int
+    rejected: int
+    faults: Mapping[str, int]
+    log_path: str
+    log_bytes: int
+    log_state: str
+    log_lost: int = 0
+    """Lines and events missing from the record."""
+    set_aside: int = 0
+    """Readings that came before the run was armed."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class RunUpdate:
+    """What one step brought, and how things stand."""
+
+    findings: tuple[Findings, ...]
+    standing: Standing | None
+    alarms: tuple[AlarmView, ...]
+    health: Health
+    time: float
+    """Host time [s] since the start of the run."""
+    armed: bool = True
+
+
+class Run:
+    """A live run.
+
+    `step`, and what a person says, may be called from different threads; each call is whole.
+
+    Parameters
+    ----------
+    site : SiteFile
+        Links and assumptions.
+    links : sequence of str, optional
+        URLs in place of the site's, in its order.
+    log : RunLogWriter, optional
+        Where everything is recorded; None records nothing.
+    clock : callable
+        Monotonic seconds.
+    armed : bool, optional
+        True lets the readings of a `drop` run count from the start instead of from `arm` on; other runs always do.
+    opener : callable
+        Opens a link.
+    wait : callable, optional
+        How a reader waits before it tries a lost link again; for tests.
+
+    Raises
+    ------
+    LinkError
+        The site has no link.
+    """
+
+    def __init__(
+        self,
+        site: SiteFile,
+        *,
+        links: Sequence[str] | None = None,
+        log: RunLogWriter | None = None,
+        clock: Clock = time.monotonic,
+        armed: bool | None = None,
+        opener: Opener = open_link,
+        wait: Callable[[float], bool] | None = None,
+    ) -> None:
+        self.site = _with_urls(site, links)
+        self.pipeline = Pipeline(self.site)
+        self._armed_at_start = bool(armed) and not self.pipeline.armed
+        self._recorder = Recorder(log)
+        self._clock = clock
+        self._opener = opener
+        self._wait = wait
+        self._inbox = Inbox(clock)
+        self._readers: list[Reader] = []
+        self._findings: list[Findings] = []
+        self._engine = threading.RLock()
+        self._record_failing = False
+        self._stopped = False
+
+    # -- start and stop --------------------------------------------------------------------------------------------
+
+    def start(self) -> None:
+        """Open every link and start reading.
+
+        Raises
+        ------
+        LinkError
+            A link cannot be opened; those that were are closed again.
+        """
+        opened: list[Link] = []
+        try:
+            for index in range(len(self.site.links)):
+                opened.append(self._open(index, lambda: False))  # noqa: PERF401 (kept when the next one fails)
+        except LinkError:
+            for link in opened:
+                link.close()
+            raise
+        self._inbox = Inbox(self._clock)
+        if self._armed_at_start:
+            self.arm("")
+        for index, link in enumerate(opened):
+            reader = Reader(link, partial(self._reopen, index), self._inbox, index, wait=self._wait)
+            self._readers.append(reader)
+        for reader in self._readers:
+            reader.start()
+
+    def _open(self, index: int, cancelled: Cancelled) -> Link:
+        settings = self.site.links[index]
+        return self._opener(settings, self.site, index, clock=self._clock, cancelled=cancelled)
+
+    def _reopen(self, index: int) -> Link:
+        reader = self._readers[index]
+        return self._open(index, lambda: reader.stopping)
+
+    @property
+    def ended(self) -> bool:
+        """Whether every link has come to its end and everything has been taken."""
+        return all(one.state == "ended" for one in self._readers) and self._inbox.empty
+
+    def stop(self) -> RunUpdate:
+        """Stop reading, take what has come, end the run and close the log; a second call changes nothing."""
+        with self._engine:
+            if not self._stopped:
+                self._stopped = True
+                self._shut_down()
+            return self._update(self._inbox.now())
+
+    def _shut_down(self) -> None:
+        cuts = [reader.stop(0.0) for reader in self._readers]
+        cuts = [cut or reader.stop(STOP_WITHIN) for cut, reader in zip(cuts, self._readers, strict=True)]
+        now = self._take_all()
+        for index, cut in enumerate(cuts):
+            if cut:
+                self._event(RunEvent(time=now, name="link", fields=_link_fields(index, "closed", "", cut)))
+        self._event(RunEvent(time=now, name="end"))
+        self._recorder.close(now)
+
+    def __enter__(self) -> Self:
+        self.start()
+        return self
+
+    def __exit__(self, *_: object) -> None:
+        self.stop()
+
+    # -- steps -----------------------------------------------------------------------------------------------------
+
+    def step(self, timeout: float) -> RunUpdate:
+        """Wait for arrivals, take them, and let time pass.
+
+        Parameters
+        ----------
+        timeout : float
+            Longest wait [s].
+
+        Returns
+        -------
+        RunUpdate
+            With everything found since the last one.
+        """
+        self._inbox.wait(timeout)
+        with self._engine:
+            if not self._stopped:
+                self._take_some()
+            return self._update(self._inbox.now())
+
+    def _take_some(self) -> float | None:
+        """Take what has come, up to a bound, and tick; return the time if that was all that was stamped before it."""
+        items, now, all_of_it = self._inbox.take(_MOST)
+        for item in items:
+            self._item(item)
+        if all_of_it:  # else something still in the queue was stamped before `now`
+            self._found(self.pipeline.tick(now))
+        self._recorder.tick(now)
+        self._watch_record(now)
+        return now if all_of_it else None
+
+    def _take_all(self) -> float:
+        now = None
+        while now is None:
+            now = self._take_some()
+        return now
+
+    def _item(self, item: Item) -> None:
+        if isinstance(item, LineBlock):
+            self._arrived(item)
+            return
+        fields = _link_fields(item.link, item.state, item.message, item.cut)
+        self._event(RunEvent(time=item.time, name="link", fields=fields))
+        if item.state in ("open", "lost"):
+            self._condition(item.time, self._lost_name(item), on=item.state == "lost", message=item.message)
+
+    def _lost_name(self, news: LinkNews) -> str:
+        return LINK_LOST if len(self._readers) == 1 else f"{LINK_LOST} {news.link + 1}"
+
+    def _arrived(self, arrival: Arrival) -> None:
+        self._recorder.put(arrival)
+        self._found(self.pipeline.take(arrival))
+
+    _event = _arrived
+
+    def _found(self, findings: Findings) -> None:
+        for one in findings.alarms:
+            fields: dict[str, object] = {
+                "name": one.name,
+                "from": one.old,
+                "to": one.new,
+                "depth": one.depth,
+                "message": one.message,
+            }
+            self._recorder.put(RunEvent(time=one.time, name="alarm", fields=fields))
+        if len(findings.rows) or findings.stations or findings.alarms:
+            self._findings.append(findings)
+
+    def _condition(self, now: float, name: str, *, on: bool, message: str) -> None:
+        fields: dict[str, object] = {"name": name, "on": on, "message": message}
+        self._event(RunEvent(time=now, name="condition", fields=fields))
+
+    def _watch_record(self, now: float) -> None:
+        failing = bool(self._recorder.trouble)
+        if failing != self._record_failing:
+            self._record_failing = failing
+            self._condition(now, RECORD_FAILING, on=failing, message=self._recorder.trouble)
+
+    # -- what a person says ----------------------------------------------------------------------------------------
+
+    def acknowledge(self, name: str, who: str = "") -> None:
+        """Acknowledge an alarm by its name."""
+        self._said("acknowledge", name=name, who=who)
+
+    def shelve(self, name: str, seconds: float, reason: str, who: str = "") -> None:
+        """Put an alarm aside for some seconds, with a reason."""
+        self._said("shelve", name=name, seconds=seconds, reason=reason, who=who)
+
+    def note(self, text: str, who: str = "") -> None:
+        """Write a note into the record."""
+        self._said("note", text=text, who=who)
+
+    def arm(self, who: str = "") -> None:
+        """Say that the shaft is clear: from now on the readings of a `drop` run count."""
+        self._said("armed", who=who)
+
+    def _said(self, event: str, **fields: object) -> None:
+        """Let the word take effect after everything that was stamped before it."""
+        with self._engine:
+            if not self._stopped:
+                self._event(RunEvent(time=self._take_all(), name=event, fields=fields))
+
+    # -- how things stand ------------------------------------------------------------------------------------------
+
+    def _update(self, now: float) -> RunUpdate:
+        findings, self._findings = tuple(self._findings), []
+        survey = self.pipeline.survey
+        return RunUpdate(
+            findings=findings,
+            standing=survey.standing(),
+            alarms=survey.alarms(),
+            health=self._health(now),
+            time=now,
+            armed=self.pipeline.armed,
+        )
+
+    def _health(self, now: float) -> Health:
+        log = self._recorder.log
+        return Health(
+            links=tuple(self._link_health(index, now) for index in range(len(self._readers))),
+            frames=self.pipeline.frames,
+            rejected=self.pipeline.rejected,
+            faults=MappingProxyType(dict(self.pipeline.faults)),
+            log_path=str(log.path) if log else "",
+            log_bytes=log.bytes_written if log else 0,
+            log_state=self._recorder.trouble or (log.state if log else "not recording"),
+            log_lost=self._recorder.lost,
+            set_aside=self.pipeline.set_aside,
+        )
+
+    def _link_health(self, index: int, now: float) -> LinkHealth:
+        reader = self._readers[index]
+        url = safe(self.site.links[index].url, 80)
+        retry_at = reader.retry_at
+        return LinkHealth(
+            name=url,
+            url=url,
+            state=reader.state,
+            retry_in=None if retry_at is None else max(retry_at - now, 0.0),
+            lines=reader.lines,
+            rate=reader.rate(now),
+            silent_for=max(now - reader.latest, 0.0),
+            last_fault=reader.message if reader.state == "lost" else self._last_fault(index),
+            queue_dropped=reader.dropped,
+        )
+
+    def _last_fault(self, index: int) -> str:
+        last = self.pipeline.last_faults.get(index)
+        if last is None:
+            return ""
+        number, kind, text, expected = last
+        return f"line {number}: {kind}: {text}; expected {expected}"
+
+
+def _link_fields(link: int, state: str, message: str, cut: bytes) -> dict[str, object]:
+    fields: dict[str, object] = {"link": link, "state": state, "message": message}
+    if cut:
+        fields["cut"] = cut.decode("latin-1")
+    return fields
+
+
+def _with_urls(site: SiteFile, urls: Sequence[str] | None) -> SiteFile:
+    """Return the site with other URLs for its links."""
+    if urls is None:
+        if not site.links:
+            raise LinkError(f"{site.path}: no [[link]] in it; expected one, or --link URL")
+        return site
+    links = site.links or (LinkSettings(url="-"),)
+    if len(urls) != len(links):
+        raise LinkError(
+            f"{len(urls)} link URLs given; expected {len(links)}, one for each [[link]] of the site file"
+        )
+    return replace(site, links=tuple(replace(one, url=url) for one, url in zip(links, urls, strict=True)))
