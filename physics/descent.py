@@ -1,6 +1,6 @@
-"""Integration of a fall over depth by collocation, for one body and from there for a whole ensemble at once.
+"""Integration of one body's fall over depth, by collocation.
 
-The forces are stated in `motion`; what a caller wants to know of a fall is in `fall`.
+The forces are stated in `motion`; many bodies near this one are `ensemble`; what a caller wants to know is in `fall`.
 
 Depth is taken as z = z* + σ², z* the point where the body was or would have been at rest. In σ a fall from rest is
 smooth (speed ∝ σ, time ∝ σ, east ∝ σ³) although in z it is not, every change of rock or air lies at a known place, and
@@ -26,8 +26,6 @@ SETTLED = 1e-8
 
 Its error after that step is the square of it, or a thousandth where only Coriolis couples.
 """
-FOLLOWED = 1e-8
-"""The same for the members of an ensemble."""
 TAIL = 2e-8
 """A stretch is halved while the last terms of its series are above this, in metres, seconds, share of energy."""
 SHORTEST = 1.0 / 256.0
@@ -56,7 +54,7 @@ class Inverses(NamedTuple):
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Stretch:
-    """A solved stretch of a nominal fall, σ from `start` to `end`, and what an ensemble reuses of it."""
+    """A solved stretch of a fall, σ from `start` to `end`."""
 
     start: float
     end: float
@@ -66,7 +64,6 @@ class Stretch:
     last: State
     series: Array
     """Chebyshev coefficients (terms, quantities, members) of the State over the stretch."""
-    inverses: Inverses
 
 
 def solve_stretch(forces: Forces, apex: float, start: float, end: float, first: State) -> Stretch | None:
@@ -77,13 +74,13 @@ def solve_stretch(forces: Forces, apex: float, start: float, end: float, first: 
     around = forces.surroundings(apex + sigma**2)
     nodes = _first_guess(forces, around, sigma**2 - start**2, first)
     for _ in range(ROUNDS):
-        now = _acting(forces, around, nodes)
-        inverses = _invert(_energy_slope(forces, around, nodes, now), step, nodes, now)
+        now = acting(forces, around, nodes)
+        inverses = _invert(energy_slope(forces, around, nodes, now), step, nodes, now)
         nodes, moved = _advance(nodes, first, step, now, inverses)
         if not moved < np.inf:
             return None
         if moved < SETTLED:
-            rates = _rates(_acting(forces, around, nodes), nodes, step)
+            rates = state_rates(acting(forces, around, nodes), nodes, step)
             series = np.stack([RULE.to_series @ rate for rate in rates], axis=1)
             series[0] += np.stack(first)
             return Stretch(
@@ -94,14 +91,13 @@ def solve_stretch(forces: Forces, apex: float, start: float, end: float, first: 
                 nodes=nodes._replace(time=first.time + RULE.to_nodes @ rates.time),
                 last=_at_end(first, rates),
                 series=series,
-                inverses=inverses,
             )
     return None
 
 
 def _first_guess(forces: Forces, around: Surroundings, fallen: Array, first: State) -> State:
     """Straight down under the drag of a constant coefficient, taken at the speed where it balances weight."""
-    pull = around.gravity_down * around.weight
+    pull = around.gravity_down
     energy = first.energy + pull * fallen
     if forces.air is not None and forces.body is not None:
         speed = np.sqrt(2.0 * energy)
@@ -114,7 +110,7 @@ def _first_guess(forces: Forces, around: Surroundings, fallen: Array, first: Sta
     return State(*(still + one for one in first))._replace(energy=energy)
 
 
-def _acting(forces: Forces, around: Surroundings, nodes: State, faster: float = 0.0) -> Acceleration:
+def acting(forces: Forces, around: Surroundings, nodes: State, faster: float = 0.0) -> Acceleration:
     """Acceleration at the nodes, with the downward speed larger by the share `faster`."""
     return forces.acceleration(
         around,
@@ -126,12 +122,12 @@ def _acting(forces: Forces, around: Surroundings, nodes: State, faster: float = 
     )
 
 
-def _energy_slope(forces: Forces, around: Surroundings, nodes: State, now: Acceleration) -> Array:
+def energy_slope(forces: Forces, around: Surroundings, nodes: State, now: Acceleration) -> Array:
     """∂(downward acceleration)/∂(energy) [1/m], by a difference; zero without air."""
     if forces.air is None:
         return np.zeros_like(nodes.energy)
     faster = 1e-6
-    other = _acting(forces, around, nodes, faster)
+    other = acting(forces, around, nodes, faster)
     slope: Array = (other.down - now.down) / (faster * 2.0 * nodes.energy)
     return slope
 
@@ -163,7 +159,7 @@ def _advance(
     return State(nodes.time, east, north, v_east, v_north, energy), moved
 
 
-def _rates(now: Acceleration, nodes: State, step: Array) -> State:
+def state_rates(now: Acceleration, nodes: State, step: Array) -> State:
     """Rates of the State by the stretch's own variable, which runs from -1 to 1."""
     pace = step / np.sqrt(2.0 * nodes.energy)
     return State(
@@ -219,44 +215,3 @@ def descend(forces: Forces, apex: float, edges: list[float], first: State) -> It
             continue
         yield stretch
         first = stretch.last
-
-
-def follow(forces: Forces, apex: float, stretch: Stretch, first: State) -> tuple[State, State]:
-    """Solve a nominal fall's stretch for an ensemble near it.
-
-    Parameters
-    ----------
-    forces : Forces
-        With the ensemble's variation.
-    apex : float
-        z* of the nominal fall [m].
-    stretch : Stretch
-        Of the nominal fall: its matrices serve every member.
-    first : State
-        Of the members at the start, arrays of shape (members,).
-
-    Returns
-    -------
-    tuple of State
-        Rates at the nodes, shape (nodes, members), by the stretch's own variable; and the state at its end.
-
-    Raises
-    ------
-    ParameterError
-        If the members are so far from the nominal fall that the iteration does not settle.
-    """
-    around = forces.surroundings(apex + stretch.sigma**2)
-    step = (stretch.end - stretch.start) * stretch.sigma
-    nodes = State(
-        *(node + (new - old) for node, new, old in zip(stretch.nodes, first, stretch.first, strict=True))
-    )
-    nodes = nodes._replace(energy=np.maximum(nodes.energy, 0.1 * stretch.nodes.energy))
-    for _ in range(ROUNDS):
-        now = _acting(forces, around, nodes)
-        nodes, moved = _advance(nodes, first, step, now, stretch.inverses)
-        if moved < FOLLOWED:
-            rates = _rates(now, nodes, step)
-            return rates, _at_end(first, rates)
-    raise ParameterError(
-        "variation", "an ensemble", "", "members close enough to the nominal fall to be followed"
-    )

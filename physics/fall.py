@@ -10,8 +10,9 @@ import numpy.typing as npt
 from numpy.polynomial import chebyshev
 
 from eastfall.physics.air import AirColumn
-from eastfall.physics.descent import RULE, State, Stretch, descend, follow
+from eastfall.physics.descent import State, Stretch, descend
 from eastfall.physics.earth import Array
+from eastfall.physics.ensemble import FOLLOWED, RULE, Lead, follow, lead
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.fall_limits import path_warnings, refuse_impossible
 from eastfall.physics.field import LocalField
@@ -211,6 +212,7 @@ def fall_ensemble(
     body: Body | None = None,
     air: AirColumn | None = None,
     release: Release | None = None,
+    tolerance: float = FOLLOWED,
 ) -> Falling:
     """Where many bodies are at given depths, each under its own change of circumstances.
 
@@ -223,6 +225,8 @@ def fall_ensemble(
         The members' changes against the nominal fall; they may be small or large, as long as every member falls.
     body, air, release
         Of the nominal fall, as for `fall`.
+    tolerance : float
+        To which the departures from the nominal fall are iterated [m].
 
     Returns
     -------
@@ -245,11 +249,12 @@ def fall_ensemble(
     edges = _edges(forces, start.depth, bottom, _first_metres(start, variation) if thrown else 0.0)
     apex, stretches = _nominal(forces, start, edges)
     rows = np.empty((6, variation.members, len(z)))
+    leads = [lead(forces, apex, one) for one in stretches]
     for begin in range(0, variation.members, BLOCK):
         part = variation.part(slice(begin, begin + BLOCK))
         member = Forces(field, body, air, start, part)
         rows[:, begin : begin + BLOCK] = _members(
-            member, start, apex, stretches, depths=z, timed_to=edges[1] if thrown else None
+            member, start, apex, leads, depths=z, tolerance=tolerance, timed_to=edges[1] if thrown else None
         )
     return _falling(z, rows)
 
@@ -310,30 +315,39 @@ def _members(
     forces: Forces,
     start: Release,
     apex: float,
-    stretches: list[Stretch],
+    leads: list[Lead],
     *,
     depths: Array,
+    tolerance: float,
     timed_to: float | None,
 ) -> Array:
     """Six quantities of a block of members at the depths, shape (6, members, depths)."""
     hand = _in_hand(start, forces.variation)
     state = hand.state
     rows = np.empty((6, len(state.time), len(depths)))
-    waiting = stretches
+    waiting = leads
     if timed_to is not None:
         top = rise(forces, hand)
         for i in np.flatnonzero(depths < timed_to):
             rows[:, :, i] = np.stack(reach(forces, top, float(depths[i])))
         state = reach(forces, top, timed_to)
-        waiting = [one for one in stretches if one.start >= np.sqrt(timed_to - apex) * (1.0 - 1e-12)]
+        waiting = [one for one in leads if one.stretch.start >= np.sqrt(timed_to - apex) * (1.0 - 1e-12)]
     sigma = np.sqrt(np.maximum(depths - apex, 0.0))
-    for stretch in waiting:
-        rates, last = follow(forces, apex, stretch, state)
-        inside = (sigma >= stretch.start) & (sigma <= stretch.end)
+    for ahead in waiting:
+        rates, last = follow(forces, ahead, state, tolerance)
+        inside = (sigma >= ahead.stretch.start) & (sigma <= ahead.stretch.end)
         if np.any(inside):
-            x = (2.0 * sigma[inside] - stretch.start - stretch.end) / (stretch.end - stretch.start)
-            onto = chebyshev.chebvander(x, len(RULE.nodes)) @ RULE.to_series
-            for row, value, rate in zip(rows, state, rates, strict=True):
-                row[:, inside] = (value + onto @ rate).T
+            rows[:, :, inside] = _beside(ahead, state, rates, sigma[inside])
         state = last
+    return rows
+
+
+def _beside(ahead: Lead, first: State, rates: State, sigma: Array) -> Array:
+    """Six quantities of members within a stretch at σ, shape (6, members, σ)."""
+    stretch = ahead.stretch
+    x = (2.0 * sigma - stretch.start - stretch.end) / (stretch.end - stretch.start)
+    nominal = chebyshev.chebvander(x, len(stretch.series) - 1) @ stretch.series[:, :, 0]
+    onto = chebyshev.chebvander(x, len(RULE.nodes)) @ RULE.to_series
+    begin = np.stack(first) - np.stack(stretch.first)
+    rows: Array = nominal.T[:, None, :] + begin[:, :, None] + np.swapaxes(onto @ np.stack(rates), 1, 2)
     return rows

@@ -5,7 +5,7 @@ import numpy as np
 from eastfall.physics.drag import CRISIS_REYNOLDS, HIGHEST_REYNOLDS
 from eastfall.physics.earth import Array
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.motion import Forces, Release
+from eastfall.physics.motion import Forces, Release, Surroundings
 
 HIGHEST_MACH = 0.3
 """Share of the speed of sound up to which air counts as incompressible (common practice, no source)."""
@@ -69,7 +69,7 @@ def path_warnings(forces: Forces, *, depth: Array, time: Array, speed: Array) ->
     if forces.spins:
         found.append("the lift of a spinning body is an estimate of its size only")
     around = forces.surroundings(depth)
-    against_air = np.abs(speed - around.air_down)
+    against_air = speed if around.air_down is None else np.abs(speed - around.air_down)
     if forces.body.drag_coefficient == "sphere":
         found += _reynolds_doubt(
             float(np.max(around.density * against_air * forces.body.diameter / around.viscosity))
@@ -77,13 +77,20 @@ def path_warnings(forces: Forces, *, depth: Array, time: Array, speed: Array) ->
     mach = float(np.max(against_air / forces.air.sound_speed(depth)))
     if mach > HIGHEST_MACH:
         found.append(f"speed up to {mach:.2f} of sound: the drag of compressed air is not in the model")
-    push = forces.drag_rate(forces.body, around, against_air) * np.hypot(around.air_east, around.air_north)
-    turn = np.abs(forces.coriolis_cosine) * speed
-    if np.trapezoid(push, time) > np.trapezoid(turn, time):
+    if _swamped(forces, around, time, speed):
         found.append(
             "the cross-flow pushes harder than the turning Earth: the landing tells the air, not the Earth"
         )
     return tuple(found)
+
+
+def _swamped(forces: Forces, around: Surroundings, time: Array, speed: Array) -> bool:
+    """Whether the cross-flow gives the body more sideways speed than Coriolis does."""
+    if forces.body is None or around.air_east is None or around.air_north is None:
+        return False
+    push = forces.drag_rate(forces.body, around, speed) * np.hypot(around.air_east, around.air_north)
+    turn = np.abs(forces.coriolis_cosine) * speed
+    return bool(np.trapezoid(push, time) > np.trapezoid(turn, time))
 
 
 def _reynolds_doubt(reynolds: float) -> list[str]:

@@ -10,7 +10,7 @@ from typing import NamedTuple
 import numpy as np
 
 from eastfall.physics.air import AirColumn
-from eastfall.physics.drag import scaled_morrison
+from eastfall.physics.drag import scaled_morrison_rows
 from eastfall.physics.earth import EARTH_ROTATION, Array
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.field import LocalField
@@ -101,6 +101,12 @@ class Variation:
             raise ParameterError("variation", shape, "", "numbers or arrays of one dimension")
         return int(shape[0]) if shape else 1
 
+    @property
+    def only_release(self) -> bool:
+        """Whether the members differ in their release alone, spin not included, and feel the nominal forces."""
+        forced = (one.name for one in fields(self) if one.name not in _OF_RELEASE)
+        return all(np.array_equal(getattr(self, name), getattr(UNCHANGED, name)) for name in forced)
+
     def part(self, chosen: slice) -> "Variation":
         """Take the members of a slice; single numbers stay."""
         rows = {one.name: np.asarray(getattr(self, one.name), dtype=np.float64) for one in fields(self)}
@@ -108,23 +114,31 @@ class Variation:
 
 
 UNCHANGED = Variation()
+_OF_RELEASE = ("east", "north", "speed_east", "speed_north", "speed_down")
 
 
 class Surroundings(NamedTuple):
-    """What the forces need to know about the depths of the bodies; each broadcasts to (nodes, members)."""
+    """What the forces need to know about the depths of the bodies; each broadcasts to (nodes, members).
+
+    Gravity, its restoring and its turning part are net of buoyancy. No wind is None, which saves its subtraction.
+    """
 
     gravity_north: Array
     gravity_east: Array
     gravity_down: Array
+    restore_north: Array
+    restore_east: Array
+    """Horizontal gravity lost per metre of offset [1/s²]."""
     turn_north: Array
-    turn_east: Array
+    turn_east: Array | None
+    """Vertical gravity gained per metre of offset [1/s²]."""
     weight: Array
     """Share of gravity left by buoyancy."""
     density: Array
     viscosity: Array
-    air_east: Array
-    air_north: Array
-    air_down: Array | float
+    air_east: Array | None = None
+    air_north: Array | None = None
+    air_down: Array | None = None
 
 
 class Acceleration(NamedTuple):
@@ -179,8 +193,6 @@ class Forces:
         latitude = field.latitude + np.asarray(variation.latitude, dtype=np.float64)
         self.coriolis_sine = 2.0 * EARTH_ROTATION * np.sin(latitude)
         self.coriolis_cosine = 2.0 * EARTH_ROTATION * np.cos(latitude)
-        self.pull_north = field.gravity / field.meridian_radius
-        self.pull_east = field.gravity / field.prime_vertical_radius
         self.spin = (
             release.spin_east + np.asarray(variation.spin_east, dtype=np.float64),
             release.spin_north + np.asarray(variation.spin_north, dtype=np.float64),
@@ -194,57 +206,53 @@ class Forces:
         gravity = field.gravity_at(depth) * change.gravity_factor + change.gravity_gradient * depth
         lean_north, lean_east = field.slope(depth)
         turn_north, turn_east = field.slope_rate(depth)
-        still = np.zeros(())
+        turn_east = turn_east + change.curvature_east
+        density, weight = self._buoyancy(depth)
         sunk = Surroundings(
-            gravity_north=gravity * (lean_north + change.curvature_north * depth),
-            gravity_east=gravity * (lean_east + change.curvature_east * depth),
-            gravity_down=gravity,
-            turn_north=field.gravity * (turn_north + change.curvature_north),
-            turn_east=field.gravity * (turn_east + change.curvature_east),
-            weight=np.ones(()),
-            density=still,
-            viscosity=still,
-            air_east=still,
-            air_north=still,
-            air_down=still,
-        )
-        return (
-            sunk
-            if self.air is None or self.body is None
-            else self._with_air(sunk, depth, self.body, self.air)
-        )
-
-    def _with_air(self, sunk: Surroundings, depth: Array, body: Body, air: AirColumn) -> Surroundings:
-        change = self.variation
-        density = air.density(depth) * change.air_density_factor
-        east, north = air.cross_flow(depth)
-        return sunk._replace(
-            weight=1.0 - density / (body.mass / (pi * body.diameter**3 / 6.0)),
+            gravity_north=gravity * weight * (lean_north + change.curvature_north * depth),
+            gravity_east=gravity * weight * (lean_east + change.curvature_east * depth),
+            gravity_down=gravity * weight,
+            restore_north=weight * (field.gravity / field.meridian_radius),
+            restore_east=weight * (field.gravity / field.prime_vertical_radius),
+            turn_north=weight * field.gravity * (turn_north + change.curvature_north),
+            turn_east=weight * field.gravity * turn_east if np.any(turn_east) else None,
+            weight=weight,
             density=density,
-            viscosity=air.viscosity(depth),
-            air_east=east * change.cross_flow_factor,
-            air_north=north * change.cross_flow_factor,
-            air_down=air.vertical + change.air_vertical,
+            viscosity=np.ones(()) if self.air is None else self.air.viscosity(depth),
         )
+        return sunk if self.air is None else self._with_wind(sunk, depth, self.air)
+
+    def _buoyancy(self, depth: Array) -> tuple[Array, Array]:
+        """Density of the air, and the share of gravity that it leaves."""
+        if self.air is None or self.body is None:
+            return np.zeros(()), np.ones(())
+        density: Array = self.air.density(depth) * self.variation.air_density_factor
+        return density, 1.0 - density / (self.body.mass / (pi * self.body.diameter**3 / 6.0))
+
+    def _with_wind(self, sunk: Surroundings, depth: Array, air: AirColumn) -> Surroundings:
+        change = self.variation
+        if air.settings.cross_flow:
+            east, north = air.cross_flow(depth)
+            sunk = sunk._replace(
+                air_east=east * change.cross_flow_factor, air_north=north * change.cross_flow_factor
+            )
+        down = air.vertical + np.asarray(change.air_vertical, dtype=np.float64)
+        return sunk._replace(air_down=down) if np.any(down) else sunk
 
     def acceleration(
         self, around: Surroundings, east: Array, north: Array, *, v_east: Array, v_north: Array, v_down: Array
     ) -> Acceleration:
         """Acceleration of bodies at their offsets [m] and velocities [m/s], shape (nodes, members)."""
         sine, cosine = self.coriolis_sine, self.coriolis_cosine
-        a_north = (around.gravity_north - self.pull_north * north) * around.weight - sine * v_east
-        a_east = (
-            (around.gravity_east - self.pull_east * east) * around.weight + sine * v_north + cosine * v_down
-        )
-        turned = around.turn_north * north + around.turn_east * east
-        a_down = (around.gravity_down + turned) * around.weight - cosine * v_east
+        a_north = around.gravity_north - around.restore_north * north - sine * v_east
+        a_east = around.gravity_east - around.restore_east * east + sine * v_north + cosine * v_down
+        a_down = around.gravity_down + around.turn_north * north - cosine * v_east
+        if around.turn_east is not None:
+            a_down = a_down + around.turn_east * east
         if self.air is None or self.body is None:
             return Acceleration(a_east, a_north, a_down, 0.0)
-        u_east, u_north, u_down = (
-            v_east - around.air_east,
-            v_north - around.air_north,
-            v_down - around.air_down,
-        )
+        u_east, u_north = _against(v_east, around.air_east), _against(v_north, around.air_north)
+        u_down = _against(v_down, around.air_down)
         speed = np.sqrt(u_east * u_east + u_north * u_north + u_down * u_down)
         rate = self.drag_rate(self.body, around, speed)
         a_east, a_north, a_down = a_east - rate * u_east, a_north - rate * u_north, a_down - rate * u_down
@@ -262,7 +270,12 @@ class Forces:
         factor = (0.5 * area / body.mass) * self.variation.drag_factor
         if body.drag_coefficient == "sphere":
             reynolds = speed * (around.density * body.diameter / around.viscosity)
-            scaled: Array = scaled_morrison(reynolds) * (factor * around.viscosity / body.diameter)
+            scaled: Array = scaled_morrison_rows(reynolds) * (factor * around.viscosity / body.diameter)
             return scaled
         rate: Array = speed * (factor * body.drag_coefficient * around.density)
         return rate
+
+
+def _against(velocity: Array, air: Array | None) -> Array:
+    """Velocity against the air, which is still where it is None."""
+    return velocity if air is None else velocity - air
