@@ -25,7 +25,10 @@ class Stretch:
     direction : int
         +1 down, -1 up.
     before : float
-        The extreme depth of the pass before these rows [m]; NaN at the first row of a pass.
+        The extreme depth of the pass before these rows [m]: at its first row where the pass before turned; NaN at the
+        first row of the run.
+    first : bool
+        Whether the pass begins with these rows.
     extreme : ndarray, shape (n,)
         The extreme depth so far at each row [m].
     ended : bool
@@ -36,6 +39,7 @@ class Stretch:
     passing: int
     direction: int
     before: float
+    first: bool
     extreme: Array
     ended: bool
 
@@ -60,6 +64,7 @@ class Passes:
         self.passing = 0
         self.direction = 0
         self._extreme = np.nan
+        self._fresh = True
 
     def stretches(self, depth: Array) -> Iterator[Stretch]:
         """Cut a block of finite depths, shape (n,) [m], into stretches."""
@@ -72,28 +77,20 @@ class Passes:
             ended = end < depth.size
             if end > start:
                 self._extreme = float(extreme[-1])
-                yield Stretch(
-                    rows=slice(start, end),
-                    passing=self.passing,
-                    direction=self.direction,
-                    before=before,
-                    extreme=extreme,
-                    ended=ended,
-                )
-            elif ended:
-                # The turn falls on a block's first row: the pass is told of its end all the same.
-                yield Stretch(
-                    rows=slice(start, start),
-                    passing=self.passing,
-                    direction=self.direction,
-                    before=before,
-                    extreme=np.empty(0),
-                    ended=True,
-                )
+            # Without rows where a turn falls on a block's first row: the pass is told of its end all the same.
+            yield Stretch(
+                rows=slice(start, end),
+                passing=self.passing,
+                direction=self.direction,
+                before=before,
+                first=self._fresh,
+                extreme=extreme,
+                ended=ended,
+            )
+            self._fresh = ended
             if ended:
                 self.passing += 1
                 self.direction = -self.direction
-                self._extreme = np.nan
             start = end
 
     def _until_turn(self, depth: Array, start: int) -> tuple[int, Array]:
@@ -144,7 +141,7 @@ def crossings(stretch: Stretch, every: float, last: float) -> Iterator[tuple[flo
     along = sign * stretch.extreme
     at_start = np.isnan(stretch.before)
     begin = along[0] if at_start else sign * stretch.before
-    # A station exactly at the first row of a pass belongs to it; later on one exactly at the last extreme was taken.
+    # A station exactly at the first row of a run belongs to it; later on one exactly at the last extreme was taken.
     first = int(np.ceil(begin / every)) if at_start else int(np.floor(begin / every)) + 1
     for number in range(first, int(np.floor(along[-1] / every)) + 1):
         depth = sign * number * every + 0.0

@@ -190,7 +190,7 @@ class Guided:
             return
         at = int(np.argmax(stretch.direction * part[1]))
         if (
-            np.isnan(stretch.before)
+            stretch.first
             or self._extreme is None
             or stretch.direction * (part[1, at] - self._extreme[1]) > 0.0
         ):

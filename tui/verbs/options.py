@@ -1,0 +1,68 @@
+"""Options and small helpers that several verbs share."""
+
+import csv
+import json
+import sys
+from collections.abc import Callable, Sequence
+from pathlib import Path
+from typing import Any
+
+import click
+
+RUNS_FOLDER = Path("eastfall-runs")
+"""Where runs are recorded unless told otherwise: beside the person's work, in plain sight."""
+
+Table = tuple[Sequence[str], Sequence[Sequence[Any]]]
+"""Column names with units, and rows."""
+
+an_input = click.Path(path_type=Path, dir_okay=False)
+a_folder = click.Path(path_type=Path, file_okay=False)
+
+as_format = click.option(
+    "--format",
+    "form",
+    type=click.Choice(["table", "csv", "json"]),
+    default="table",
+    show_default=True,
+    help="How to print.",
+)
+into = click.option(
+    "--into", type=a_folder, default=RUNS_FOLDER, show_default=True, help="Folder for the run log."
+)
+
+
+def with_options(*options: Callable[[Any], Any]) -> Callable[[Any], Any]:
+    """Return a decorator that adds options in the order given."""
+
+    def add(command: Any) -> Any:
+        for one in reversed(options):
+            command = one(command)
+        return command
+
+    return add
+
+
+def print_json(value: object) -> None:
+    """Write JSON, with a null for what is absent, to standard output alone."""
+    click.echo(json.dumps(value, ensure_ascii=False, allow_nan=False, indent=1))
+
+
+def print_rows(table: Table, form: str) -> None:
+    """Write rows as CSV or as an aligned table."""
+    if form == "csv":
+        writer = csv.writer(sys.stdout, lineterminator="\n")
+        writer.writerow(table[0])
+        writer.writerows([["" if one is None else one for one in row] for row in table[1]])
+        return
+    head, rows = list(table[0]), [[_cell(one) for one in row] for row in table[1]]
+    widths = [max([len(name), *(len(row[at]) for row in rows)]) for at, name in enumerate(head)]
+    for row in [head, *rows]:
+        click.echo("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
+
+
+def _cell(value: object) -> str:
+    if value is None:
+        return "-"
+    if isinstance(value, float):
+        return f"{value:.3f}"
+    return str(value)
