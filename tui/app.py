@@ -5,6 +5,8 @@ import contextlib
 import os
 import signal
 import sys
+from collections.abc import Callable
+from pathlib import Path
 from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import App
@@ -12,12 +14,14 @@ from textual.binding import BindingType
 from textual.message import Message
 from textual.screen import Screen
 
+from eastfall.io.logformat import SUFFIX
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
 from eastfall.tui.raster import BRAILLE, Glyphs
 from eastfall.tui.screens.dialogs import Confirm
 from eastfall.tui.screens.help import HelpScreen
+from eastfall.tui.screens.start import Choice, Ports, StartScreen
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session, curves_of
 from eastfall.tui.store import Mark, Snapshot
@@ -57,7 +61,7 @@ class Dashboard(App[int]):
 
     def __init__(
         self,
-        first: Screen[None],
+        first: Screen[Choice | None],
         *,
         glyphs: Glyphs = BRAILLE,
         theme: str = THEMES[0].name,
@@ -71,6 +75,7 @@ class Dashboard(App[int]):
         self.glyphs = glyphs
         self.muted = False
         self.first = first
+        self.choice: Choice | None = None
         self.feed: Feed | None = None
         self._no_colour = no_colour
         self._newest: Snapshot | None = None
@@ -84,9 +89,14 @@ class Dashboard(App[int]):
             if number is not None:
                 with contextlib.suppress(NotImplementedError, RuntimeError, ValueError):
                     loop.add_signal_handler(number, self.exit, 0)
-        self.push_screen(self.first)
+        self.push_screen(self.first, self._chosen)
         if self.feed is not None:
             self.feed.start()
+
+    def _chosen(self, choice: Choice | None) -> None:
+        """Leave with what the start screen was closed with."""
+        self.choice = choice
+        self.exit(0)
 
     def take(self, snapshot: Snapshot) -> None:
         """Keep the newest snapshot and tell the screen, unless it is told already; called by the worker."""
@@ -178,13 +188,12 @@ def run_live(
         When this terminal has no screen; or what stopped the run before its first reading.
     """
     look = terminal_look() | ({"theme": theme} if theme else {})
-    bob, fall = curves_of(curve)
+    bob, fall = curves_of(curve or run.pipeline.survey.curve)
     session = Session(
         assumptions=site.assumptions, mode="live", title=safe(site.assumptions.site.name), bob=bob, fall=fall
     )
     app = watch_app(session, **look)
-    armed = site.assumptions.run.kind != "drop"
-    return _shown(app, LiveFeed(run, app.take, armed=armed))
+    return _shown(app, LiveFeed(run, app.take))
 
 
 def run_replay(
@@ -250,3 +259,61 @@ def _shown(app: Dashboard, feed: Feed) -> int:
     if feed.failure is not None:
         raise feed.failure
     return status if status is not None else app.return_code or 0
+
+
+def run_start(
+    act: Callable[[Choice], int] | None = None,
+    *,
+    folder: Path | None = None,
+    ports: Ports | None = None,
+    theme: str | None = None,
+) -> int:
+    """Show the start screen, do what is chosen, and come back to it until the user leaves.
+
+    Parameters
+    ----------
+    act : callable, optional
+        Does what was chosen (demo, watch, replay) with the terminal free for it, and returns an exit status; the verb
+        of that name by default.
+    folder : Path, optional
+        Where sites and runs are looked for; the current folder.
+    ports : callable, optional
+        Names the serial ports of this machine, one line each; as pyserial lists them by default.
+    theme : str, optional
+        Name of a theme.
+
+    Returns
+    -------
+    int
+        Exit status of what was done last; 0 when nothing was.
+
+    Raises
+    ------
+    InputError
+        When this terminal has no screen; or what `act` raises.
+    """
+    look = terminal_look() | ({"theme": theme} if theme else {})
+    status, act = 0, act or by_verb
+    while True:
+        screen = StartScreen(folder or Path.cwd(), log_suffix=SUFFIX, ports=ports or port_names)
+        app = Dashboard(screen, **look)  # type: ignore[arg-type]  # as in watch_app
+        app.run()
+        if app.choice is None:
+            return status
+        status = act(app.choice)
+
+
+def by_verb(choice: Choice) -> int:
+    """Do what was chosen as the command line would."""
+    from eastfall.tui.main import cli  # noqa: PLC0415 (the command line imports this module)
+
+    arguments = ["demo", "--kind", choice.kind] if choice.what == "demo" else [choice.what, str(choice.path)]
+    status = cli.main(arguments, standalone_mode=False)
+    return status if isinstance(status, int) else 0
+
+
+def port_names() -> list[str]:
+    """Return the serial ports of this machine, each with what is known of it."""
+    from serial.tools.list_ports import comports  # noqa: PLC0415 (only when asked)
+
+    return [f"{one.device}  {one.description}" for one in sorted(comports())]

@@ -11,11 +11,11 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 from eastfall.physics.errors import EastfallError
-from eastfall.tui.store import HealthView, History, LinkView, Snapshot
+from eastfall.tui.store import History, Snapshot
 
 if TYPE_CHECKING:
     from eastfall.io.replay import Replay
-    from eastfall.io.run import Health, Run, RunUpdate
+    from eastfall.io.run import Run, RunUpdate
 
 Publish = Callable[[Snapshot], None]
 Command = Callable[[], None]
@@ -131,8 +131,6 @@ class LiveFeed(Feed):
         Not yet started.
     publish : callable
         Takes every snapshot, in the worker's thread.
-    armed : bool
-        False for a drop run that waits for the shaft to be declared clear.
     clock : callable
         Monotonic seconds.
     """
@@ -142,30 +140,23 @@ class LiveFeed(Feed):
         run: "Run",
         publish: Publish,
         *,
-        armed: bool = True,
         clock: Callable[[], float] = time.monotonic,
     ) -> None:
         super().__init__(History("live"), publish, clock)
         self._source = run
         self._update: RunUpdate | None = None
-        self._armed = armed
 
     def acknowledge(self, name: str) -> None:
         """Acknowledge one alarm."""
-        self.ask(lambda: self._source.acknowledge(name, ""))
+        self.ask(lambda: self._source.acknowledge(name))
 
     def note(self, text: str) -> None:
         """Write a note into the record."""
-        self.ask(lambda: self._source.note(text, ""))
+        self.ask(lambda: self._source.note(text))
 
     def arm(self, who: str) -> None:
         """Write into the record who declared the shaft clear, and arm the run."""
-
-        def command() -> None:
-            self._source.arm(who)
-            self._armed = True
-
-        self.ask(command)
+        self.ask(lambda: self._source.arm(who))
 
     def _begin(self) -> None:
         self._source.start()
@@ -184,13 +175,13 @@ class LiveFeed(Feed):
     def _snapshot(self) -> Snapshot:
         update = self._update
         if update is None:
-            return self._history.snapshot(armed=self._armed, trouble=self._trouble)
+            return self._history.snapshot(trouble=self._trouble)
         return self._history.snapshot(
             time=update.time,
             standing=update.standing,
             alarms=update.alarms,
-            health=health_of(update.health),
-            armed=self._armed,
+            health=update.health,
+            armed=update.armed,
             ended=all(one.state == "ended" for one in update.health.links) and bool(update.health.links),
             trouble=self._trouble,
         )
@@ -304,31 +295,6 @@ class ReplayFeed(Feed):
             ended=self._replay.time >= self._replay.duration,
             standing=update.standing if update else None,
             alarms=update.alarms if update else (),
-            health=health_of(update.health) if update else HealthView(),
+            health=update.health if update else None,
             trouble=self._trouble,
         )
-
-
-def health_of(health: "Health") -> HealthView:
-    """Return feed and record health as the screen keeps it."""
-    return HealthView(
-        links=tuple(
-            LinkView(
-                name=one.name,
-                state=one.state,
-                rate=one.rate,
-                lines=one.lines,
-                silent_for=one.silent_for,
-                retry_in=one.retry_in,
-                last_fault=one.last_fault,
-                dropped=one.queue_dropped,
-            )
-            for one in health.links
-        ),
-        frames=health.frames,
-        rejected=health.rejected,
-        faults=dict(health.faults),
-        log_path=health.log_path,
-        log_bytes=health.log_bytes,
-        log_state=health.log_state,
-    )

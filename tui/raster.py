@@ -34,6 +34,9 @@ _ASCII_OF_ROLE = {
     Role.FALL: "d",
     Role.DIM: ".",
 }
+_IN_ASCII = str.maketrans(
+    {"±": "+-", "°": " deg", "–": "-", "↑": "up", "↓": "down", "←": "left", "→": "right", "²": "2", "³": "3"}
+)
 FILLER = 0xE000
 """Second column of a wide letter; left out when the row becomes text."""
 _UNPRINTABLE = ord("·")
@@ -55,6 +58,8 @@ class Glyphs:
     rule: str
     bar: str
     """Marks for single points, the depth in view, and the rules between parts."""
+    samples: tuple[str, str, str, str, str]
+    """What a solid, a dashed, a dotted, a broken and a heavy line look like, for legends."""
 
 
 BRAILLE = Glyphs(
@@ -68,6 +73,7 @@ BRAILLE = Glyphs(
     here="▶",
     rule="─",
     bar="│",
+    samples=("─", "╌", "┈", "╎", "┃"),
 )
 HALF = Glyphs(
     name="half",
@@ -80,6 +86,7 @@ HALF = Glyphs(
     here=">",
     rule="─",
     bar="│",
+    samples=("─", "╌", "┈", "╎", "┃"),
 )
 ASCII = Glyphs(
     name="ascii",
@@ -92,8 +99,9 @@ ASCII = Glyphs(
     here=">",
     rule="-",
     bar="|",
+    samples=("#", ":", ".", "'", "|"),
 )
-GLYPHS = {one.name: one for one in (BRAILLE, HALF, ASCII)}
+GLYPHS: dict[str, Glyphs] = {one.name: one for one in (BRAILLE, HALF, ASCII)}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -176,7 +184,7 @@ class Raster:
 
     def text(self, column: int, row: int, words: str, role: Role) -> int:
         """Write over whatever is there, leave out what falls outside, and return how many columns the words take."""
-        codes = columns(words)
+        codes = columns(words.translate(_IN_ASCII) if self.glyphs.name == "ascii" else words)
         shown = codes[max(0, -column) : max(0, self.width - column)]
         if 0 <= row < self.height and shown:
             start = max(column, 0)

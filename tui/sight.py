@@ -1,6 +1,7 @@
 """Where the eye is: following the newest or looking back at a station, how much depth is in view; knows no screen."""
 
 from dataclasses import dataclass, replace
+from math import isnan
 from typing import TYPE_CHECKING, Literal
 
 from eastfall.physics.findings import Standing, Station
@@ -87,7 +88,7 @@ def zoomed(sight: Sight, whole: float, factor: float) -> Sight:
 
 def window(sight: Sight, whole: float, focus: float) -> tuple[float, float]:
     """Return the top and bottom depth [m] in view, `focus` well inside and no view past the collar or bottom."""
-    if sight.span is None or not focus == focus:  # noqa: PLR0124 (NaN)
+    if sight.span is None or isnan(focus):
         return 0.0, whole
     top = min(max(0.0, focus - 0.6 * sight.span), max(0.0, whole - sight.span))
     return top, top + sight.span

@@ -3,16 +3,18 @@
 The worker thread owns the history and appends; a snapshot holds read-only views of what stood when it was taken.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
-from numpy.typing import NDArray
 
 from eastfall.physics.findings import ROW_FIELDS, AlarmChange, AlarmView, Rows, Standing, Station
 
 if TYPE_CHECKING:
+    from numpy.typing import NDArray
+
+    from eastfall.io.run import Health
     from eastfall.physics.findings import Findings
 
 Mode = Literal["live", "replay"]
@@ -73,33 +75,6 @@ class GrowingRows:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class LinkView:
-    """One link's health as the screen words it."""
-
-    name: str
-    state: str
-    rate: float
-    lines: int
-    silent_for: float
-    retry_in: float | None = None
-    last_fault: str = ""
-    dropped: int = 0
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class HealthView:
-    """Feed and record health."""
-
-    links: tuple[LinkView, ...] = ()
-    frames: int = 0
-    rejected: int = 0
-    faults: Mapping[str, int] = field(default_factory=dict)
-    log_path: str = ""
-    log_bytes: int = 0
-    log_state: str = ""
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
 class Mark:
     """A moment of a record that is worth jumping to."""
 
@@ -119,7 +94,7 @@ class Snapshot:
     changes: tuple[AlarmChange, ...] = ()
     alarms: tuple[AlarmView, ...] = ()
     standing: Standing | None = None
-    health: HealthView = field(default_factory=HealthView)
+    health: "Health | None" = None
     playing: bool = True
     """A replay that runs; a live run always does."""
     speed: float = 1.0
@@ -154,23 +129,25 @@ class History:
     def clear(self) -> None:
         """Forget everything, as when a replay starts over."""
         self._rows = GrowingRows(self._keep)
-        self._stations: list[Station] = []
+        self._stations: dict[int, Station] = {}
         self._changes: list[AlarmChange] = []
-        self._frozen: tuple[Station, ...] = ()
+        self._frozen: tuple[Station, ...] | None = ()
         self._frozen_changes: tuple[AlarmChange, ...] = ()
 
     def add(self, findings: "Sequence[Findings]") -> None:
         """Take what one step brought."""
         for one in findings:
             self._rows.extend(one.rows)
-            self._stations.extend(one.stations)
+            for station in one.stations:  # a station that is worked out anew comes with its old number
+                self._stations[station.number] = station
+                self._frozen = None
             self._changes.extend(one.alarms)
 
     def snapshot(self, **state: object) -> Snapshot:
         """Freeze what stands now; `state` are further fields of `Snapshot`."""
         self._serial += 1
-        if len(self._frozen) != len(self._stations):
-            self._frozen = tuple(self._stations)
+        if self._frozen is None:
+            self._frozen = tuple(self._stations[number] for number in sorted(self._stations))
         if len(self._frozen_changes) != len(self._changes):
             self._frozen_changes = tuple(self._changes)
         return Snapshot(

@@ -1,4 +1,4 @@
-"""What this terminal can show: whether there is a screen at all, which glyphs, whether colour; reads what it is given."""
+"""What this terminal can show: whether there is a screen at all, which glyphs, whether colour."""
 
 from collections.abc import Mapping
 
@@ -23,9 +23,9 @@ def refuse_unless_screen(environment: Mapping[str, str], *, is_terminal: bool) -
 
 def glyphs_for(environment: Mapping[str, str], encoding: str | None) -> Glyphs:
     """Return the finest glyphs that will show; EASTFALL_GLYPHS (braille, half, ascii) overrules."""
-    asked = GLYPHS.get(environment.get("EASTFALL_GLYPHS", ""))  # type: ignore[call-overload]  # any text may stand there
-    if asked is not None:
-        return asked
+    asked = environment.get("EASTFALL_GLYPHS")
+    if asked in GLYPHS:
+        return GLYPHS[asked]
     if not _can(encoding, "⣿"):
         return ASCII if not _can(encoding, "▀") else HALF
     return HALF if environment.get("TERM", "").startswith(("linux", "vt")) else BRAILLE

@@ -75,6 +75,6 @@ MONO = Theme(
     panel=_PLAIN,
     boost=_PLAIN,
     ansi=True,
-    variables={name: _PLAIN for name in DARK.variables} | {"border": _PLAIN, "border-blurred": _PLAIN},
+    variables=dict.fromkeys(DARK.variables, _PLAIN) | {"border": _PLAIN, "border-blurred": _PLAIN},
 )
 THEMES = (DARK, LIGHT, MONO)

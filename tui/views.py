@@ -5,8 +5,8 @@ from math import isfinite
 import numpy as np
 
 from eastfall.physics.findings import Standing, Station
-from eastfall.tui import keys, words
 from eastfall.tui import sight as look
+from eastfall.tui import words
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve, Session
 from eastfall.tui.store import Snapshot, worst_alarm
@@ -54,7 +54,8 @@ def answer_ground(one: Subject) -> Role | None:
         return None
     if one.verdict == "over":
         return Role.GROUND_ACTION
-    return Role.GROUND_WARNING if one.verdict == "undecided" else Role.GROUND_OK
+    calm = one.verdict == "within" and words.residual_length(one) <= one.warning
+    return Role.GROUND_OK if calm else Role.GROUND_WARNING
 
 
 def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ...]:
@@ -127,11 +128,12 @@ def _motion(one: Standing | Station) -> str:
 def plan(session: Session, snapshot: Snapshot, sight: look.Sight, one: Subject) -> PlanView:
     """Return what the plan shows at the depth in view."""
     shaft = session.assumptions.shaft
-    live = isinstance(one, Standing)
-    trail = _trail(snapshot) if live and session.assumptions.run.kind == "hung" else None
+    kind = session.assumptions.run.kind
+    swings = isinstance(one, Standing) and kind == "hung"
     return PlanView(
         one=one,
-        trail=trail if trail is not None else (np.empty(0), np.empty(0)),
+        leans=kind == "guided",
+        trail=_trail(snapshot) if swings else (np.empty(0), np.empty(0)),
         rest=one.rest_point if isinstance(one, Standing) else None,
         bob=_at(session.bob, one) if sight.extras else None,
         fall=_at(session.fall, one) if sight.extras else None,
@@ -167,12 +169,4 @@ def alarm_line(snapshot: Snapshot) -> tuple[tuple[Piece, ...], Role | None]:
         return ((f"{text}  ", Role.TEXT), (f"{len(snapshot.alarms)} seen", Role.DIM)), None
     more = f", {waiting - 1} more" if waiting > 1 else ""
     under = Role.GROUND_WARNING if "warning" in worst.name else Role.GROUND_ACTION
-    return ((f"a seen{more} | ", Role.ON_GROUND), (text, Role.ON_GROUND)), under
-
-
-def key_line(snapshot: Snapshot) -> tuple[Piece, ...]:
-    """Return the keys that fit under the picture."""
-    pieces: list[Piece] = []
-    for shown, name in keys.line(("watch", "all"), snapshot.mode == "replay"):
-        pieces += [(shown, Role.STRONG), (f" {name}  ", Role.DIM)]
-    return tuple(pieces)
+    return ((f"{text}{more}   (a: seen)", Role.ON_GROUND),), under

@@ -10,10 +10,10 @@ if TYPE_CHECKING:
     from eastfall.physics.settings import Kind, Reference
 
 CAUTIONS = (
-    "An aid to judgement. Not a safety device, and no part of one.",
-    "Nobody below a suspended or a dropped load, whatever this screen says.",
+    "An aid to judgement: not a safety device, and no part of one.",
+    "Nobody below a suspended or dropped load, whatever this screen says.",
     "Local mining and hoisting regulations and a licensed surveyor's practice come first.",
-    "Check that electronics are allowed in this atmosphere before you switch anything on.",
+    "Check that electronics are allowed in this atmosphere.",
 )
 
 REFERENCE: "dict[Reference, str]" = {
@@ -74,11 +74,10 @@ def expanded(one: Judged) -> float:
     return COVERAGE_FACTOR * float(u)
 
 
-def limit_in_question(one: Judged) -> tuple[str, float]:
-    """Return the name and size [m] of the limit that the answer is measured by: action once past the warning."""
-    if residual_length(one) > one.warning:
-        return "action limit", one.action
-    return "warning limit", one.warning
+def limits_in_question(one: Judged) -> str:
+    """Return the action limit, which the verdict is held against, and before it a warning limit that is passed."""
+    past = f"beyond warning {mm(one.warning)}, " if residual_length(one) > one.warning else ""
+    return f"{past}action limit {mm(one.action)} mm"
 
 
 def answer(one: Judged | None) -> str:
@@ -88,10 +87,9 @@ def answer(one: Judged | None) -> str:
     length = residual_length(one)
     if not isfinite(length):
         return f"NO ANSWER {metres(one.depth)} m: no offset in the readings"
-    name, limit = limit_in_question(one)
     return (
         f"{VERDICT[one.verdict]} {metres(one.depth)} m: residual {mm(length)} ± {mm(expanded(one))} mm "
-        f"toward {bearing(one.residual_east, one.residual_north)}, {name} {mm(limit)} mm"
+        f"toward {bearing(one.residual_east, one.residual_north)}, {limits_in_question(one)}"
     )
 
 
@@ -148,10 +146,11 @@ def clock(seconds: float) -> str:
 
 
 def alarm(one: AlarmView) -> str:
-    """Return one alarm as a line: its state first, in words."""
-    depth = f" at {metres(one.depth)} m" if isfinite(one.depth) else ""
-    what = f": {one.message}" if one.message else ""
-    return f"{ALARM_STATE.get(one.state, one.state.upper())} {one.name}{depth}, {clock(one.since)}{what}"
+    """Return one alarm as a line: its state first, in words, then since when and what it is about."""
+    what = (
+        one.message if one.message.startswith(one.name) else f"{one.name}: {one.message}".removesuffix(": ")
+    )
+    return f"{ALARM_STATE.get(one.state, one.state.upper())} {clock(one.since)} {what}"
 
 
 ALARM_STATE = {

@@ -12,7 +12,7 @@ from eastfall.tui import keys, words
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
 from eastfall.tui.store import Snapshot
-from eastfall.tui.widgets.line import TextLine
+from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.table import LongTable, fixed
 
 ORDERS = ("time", "depth", "residual")
@@ -74,14 +74,13 @@ class StationsScreen(Screen[int | None]):
         """Show a title line over the table."""
         yield TextLine(id="station-title")
         yield LongTable(HEAD, id="stations")
-        yield TextLine(id="station-keys")
+        yield KeyLine(id="station-keys")
 
     def on_mount(self) -> None:
         """Fill the table."""
         self.query_one(LongTable).focus()
         self.show(self._snapshot)
-        pieces = [(f"{shown} {name}  ", Role.DIM) for shown, name in keys.line(("stations", "page"), False)]
-        self.query_one("#station-keys", TextLine).show(("enter open  ", Role.DIM), *pieces)
+        self.query_one(KeyLine).show(("enter", "open"), *keys.line(("stations", "page"), replay=False))
 
     def show(self, snapshot: Snapshot) -> None:
         """Show a newer snapshot."""

@@ -12,8 +12,10 @@ from eastfall.io.safetext import safe
 from eastfall.tui import keys, views, words
 from eastfall.tui import sight as look
 from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText, ClearShaft
 from eastfall.tui.screens.help import HelpScreen
+from eastfall.tui.screens.start import Choice
 from eastfall.tui.screens.stations import StationsScreen
 from eastfall.tui.session import Session
 from eastfall.tui.sight import Sight
@@ -21,7 +23,7 @@ from eastfall.tui.store import Snapshot
 from eastfall.tui.widgets.alarms import AlarmList, in_order
 from eastfall.tui.widgets.figures import Figures
 from eastfall.tui.widgets.health import HealthList, health_line
-from eastfall.tui.widgets.line import TextLine
+from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.plan import Plan
 from eastfall.tui.widgets.profile import Profile, ProfileView
 from eastfall.tui.widgets.strip import Strip
@@ -29,7 +31,7 @@ from eastfall.tui.widgets.strip import Strip
 _LAYOUTS: tuple[look.Layout, ...] = ("all", "depth", "plan", "time")
 
 
-class WatchScreen(Screen[None]):
+class WatchScreen(Screen[Choice | None]):
     """One run, live or replayed.
 
     Parameters
@@ -64,8 +66,9 @@ class WatchScreen(Screen[None]):
             yield Strip(id="strip")
             yield AlarmList(id="alarms")
             yield HealthList(id="feed")
-        for name in ("alarm", "health", "keys"):
-            yield TextLine(id=name)
+        yield TextLine(id="alarm")
+        yield TextLine(id="health")
+        yield KeyLine(id="keys")
 
     def on_mount(self) -> None:
         """Show the empty picture at once."""
@@ -91,22 +94,24 @@ class WatchScreen(Screen[None]):
         shown = self.held or self.latest
         one = look.subject(self.sight, shown)
         with self.app.batch_update():
-            self._paint_lines(shown, one)
+            self._paint_lines(one)
             self._paint_evidence(shown, one)
 
-    def _paint_lines(self, shown: Snapshot, one: views.Subject) -> None:
+    def _line(self, name: str) -> TextLine:
+        return self.query_one(f"#{name}", TextLine)
+
+    def _paint_lines(self, one: views.Subject) -> None:
         latest = self.latest
-        line = lambda name: self.query_one(f"#{name}", TextLine)  # noqa: E731
         state = views.state(latest, self.sight, held=self.held is not None)
-        line("title").show(*views.title(self.session), right=state)
+        self._line("title").show(*views.title(self.session), right=state)
         under = views.answer_ground(one)
-        ink = views.Role.STRONG if under is None else views.Role.ON_GROUND
-        line("answer").show((words.answer(one), ink), under=under)
-        line("steer").show(*views.steer(self.session, latest, one))
+        ink = Role.STRONG if under is None else Role.ON_GROUND
+        self._line("answer").show((words.answer(one), ink), under=under)
+        self._line("steer").show(*views.steer(self.session, latest, one))
         pieces, ground = views.alarm_line(latest)
-        line("alarm").show(*pieces, under=ground)
-        line("health").show(*health_line(latest))
-        line("keys").show(*views.key_line(latest))
+        self._line("alarm").show(*pieces, under=ground)
+        self._line("health").show(*health_line(latest))
+        self.query_one(KeyLine).show(*keys.line(("watch", "all"), replay=latest.mode == "replay"))
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms)
         self.query_one(HealthList).show(latest)

@@ -7,6 +7,7 @@ from eastfall.tui import words
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
+from eastfall.tui.widgets.line import wrapped
 
 
 def in_order(alarms: Sequence[AlarmView]) -> list[AlarmView]:
@@ -22,7 +23,7 @@ def role_of(one: AlarmView) -> Role:
 
 
 class AlarmList(CellWidget):
-    """One line an alarm; what does not fit is counted in the last line."""
+    """The alarms under a title, long ones on several lines; the last line says when there are more."""
 
     alarms: tuple[AlarmView, ...] = ()
 
@@ -36,11 +37,12 @@ class AlarmList(CellWidget):
         waiting = sum(one.state in words.WANTS_ANSWER for one in self.alarms)
         title = f"alarms: {waiting} to acknowledge (key a)" if waiting else "alarms: none to acknowledge"
         sheet.text(0, 0, title, Role.STRONG)
-        lines = [(words.alarm(one), role_of(one)) for one in in_order(self.alarms)]
-        room = sheet.height - 1
-        for row, (text, role) in enumerate(lines[:room]):
-            sheet.text(0, 1 + row, text, role)
-        if len(lines) > room > 0:
+        row = 1
+        for one in in_order(self.alarms):
+            for index, part in enumerate(wrapped(words.alarm(one), sheet.width, sheet.width - 2)):
+                sheet.text(2 if index else 0, row, part, role_of(one))
+                row += 1
+        if row > sheet.height:
             sheet.text(
-                0, sheet.height - 1, f"and {len(lines) - room + 1} more".ljust(sheet.width), Role.STRONG
+                0, sheet.height - 1, "more below: acknowledge these first".ljust(sheet.width), Role.STRONG
             )

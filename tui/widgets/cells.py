@@ -1,5 +1,6 @@
 """The ground of all drawn widgets: a picture of cells, of which only the rows that changed are painted again."""
 
+from itertools import pairwise
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -77,7 +78,7 @@ class CellWidget(Widget):
         words = cells.chars[y].astype("<u4").tobytes().decode("utf-32-le")
         runs = [
             Segment(words[start:stop].replace(_FILLER, ""), self._style(int(code[start])))
-            for start, stop in zip(edges[:-1], edges[1:], strict=True)
+            for start, stop in pairwise(edges)
         ]
         return Strip(runs, width)
 

@@ -34,7 +34,7 @@ class TextLine(CellWidget):
                 sheet.ground(row, 0, sheet.width, self.under)
         column = row = 0
         for text, role in self.pieces:
-            for index, part in enumerate(_cut(text, sheet.width - column, sheet.width)):
+            for index, part in enumerate(wrapped(text, sheet.width - column, sheet.width)):
                 column, row = (0, row + 1) if index else (column, row)
                 column += sheet.text(column, row, part, role)
         start = sheet.width - sum(len(text) for text, _ in self.right)
@@ -44,7 +44,28 @@ class TextLine(CellWidget):
                 start += len(text)
 
 
-def _cut(text: str, room: int, width: int) -> list[str]:
+class KeyLine(CellWidget):
+    """Keys and what they do, in one line; a pair that does not fit whole is left out with all after it."""
+
+    pairs: tuple[tuple[str, str], ...] = ()
+
+    def show(self, *pairs: tuple[str, str]) -> None:
+        """Set the pairs of key and name."""
+        if pairs != self.pairs:
+            self.pairs = pairs
+            self.redraw()
+
+    def draw(self, sheet: Raster) -> None:
+        """Write the pairs."""
+        column = 0
+        for shown, name in self.pairs:
+            if column + len(shown) + 1 + len(name) > sheet.width:
+                return
+            column += sheet.text(column, 0, shown, Role.STRONG) + 1
+            column += sheet.text(column, 0, name, Role.DIM) + 2
+
+
+def wrapped(text: str, room: int, width: int) -> list[str]:
     """Return the text cut at blanks: a first part for the room that is left, further ones for whole lines."""
     parts = []
     while len(text) > room:

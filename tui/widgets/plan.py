@@ -31,6 +31,8 @@ class PlanView:
     one: Standing | Station | None
     trail: tuple[Floats, Floats] = (np.empty(0), np.empty(0))
     """Where it was lately."""
+    leans: bool = False
+    """A guided run: the sum of tilts holds the lean of the moving line, so the guide itself stands at the residual."""
     rest: RestPoint | None = None
     bob: Point | None = None
     fall: Point | None = None
@@ -110,10 +112,16 @@ class _Sheet:
         view = self.view
         if view is not None:
             if view.diameter is not None:
-                self._circle(view.centre, view.diameter / 2.0, Role.WALL, 0)
+                self._circle(self._shaft_centre(view), view.diameter / 2.0, Role.WALL, 0)
             if view.one is not None:
                 self._evidence(view, view.one)
         self._words()
+
+    def _shaft_centre(self, view: PlanView) -> Point:
+        """Return the shaft's centre as it lies to what is marked: close by, that is the sum with its lean."""
+        if view.leans and view.one is not None and self.scope == "close":
+            return view.centre[0] + view.one.expected_east, view.centre[1] + view.one.expected_north
+        return view.centre
 
     def _stamp(self, plane: np.ndarray, role: Role) -> None:
         whole = self.sheet.plane()
@@ -157,6 +165,8 @@ class _Sheet:
                 self._ellipse(view.rest)
         self._mark(view.bob, "b", Role.BOB)
         self._mark(view.fall, "d", Role.FALL)
+        if self.scope == "wall" and view.leans:
+            measured, expected = (one.residual_east, one.residual_north), (0.0, 0.0)
         self._mark(expected, self.sheet.glyphs.expected, Role.EXPECTED)
         self._mark(measured, self.sheet.glyphs.measured, Role.MEASURED)
         if view.rest is not None:
@@ -211,12 +221,12 @@ class _Sheet:
 
     def _legend(self) -> Iterable[tuple[str, Role]]:
         view, glyphs = self.view, self.sheet.glyphs
+        if view is not None and view.clearance is not None and self.scope == "wall":
+            yield f"wall {view.clearance:.2f} m off", Role.WALL
         yield f"{glyphs.measured}measured", Role.MEASURED
         yield f"{glyphs.expected}expected", Role.EXPECTED
         if view is None:
             return
-        if view.clearance is not None and self.scope == "wall":
-            yield f"wall {view.clearance:.2f} m off", Role.WALL
         if view.rest is not None:
             yield "x rest", Role.STRONG
         if view.bob is not None:

@@ -1,7 +1,6 @@
 """The depth profile: measured and expected, east and north side by side, with limits and the uncertainty band."""
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -11,17 +10,20 @@ from eastfall.tui import sight as look
 from eastfall.tui.axes import Axis, around, label, symmetric
 from eastfall.tui.raster import Floats, Raster, Runs, polyline, rhythm, trace
 from eastfall.tui.roles import Role
+from eastfall.tui.session import Curve
 from eastfall.tui.store import Snapshot, last_pass
 from eastfall.tui.widgets.cells import CellWidget
-
-if TYPE_CHECKING:
-    from collections.abc import Callable
-
-    Curve = Callable[[Floats], tuple[Floats, Floats]]
 
 LEAST_WIDTH, LEAST_HEIGHT = 26, 6
 _GUTTER = 6
 _SIDES = (("west", "east"), ("south", "north"))
+_DASH = {  # dots drawn and left out, down the panel: told apart without colour
+    Role.EXPECTED: (3, 2),
+    Role.BAND: (1, 2),
+    Role.WARNING: (4, 4),
+    Role.BOB: (1, 5),
+    Role.FALL: (2, 8),
+}
 _LEAST_REACH = 0.002  # m; below two millimetres to each side the picture would show only noise
 
 
@@ -73,8 +75,8 @@ class Profile(CellWidget):
         _depth_labels(sheet, depth, focus)
         left = (sheet.width - _GUTTER - 1) // 2
         places = ((_GUTTER, left), (_GUTTER + left + 1, sheet.width - _GUTTER - left - 1))
-        for which, (column, width) in enumerate(places):
-            _Panel(self.view, which, depth, sheet, column, width).draw()
+        for which, place in enumerate(places):
+            _Panel(self.view, which, depth, sheet, place).draw()
         _legend(sheet, self.view)
 
 
@@ -100,33 +102,39 @@ def _depth_labels(sheet: Raster, depth: Axis, focus: float) -> None:
 
 def _legend(sheet: Raster, view: ProfileView) -> None:
     """Say in the bottom row what the lines mean, as far as there is room."""
-    parts = [("measured", Role.MEASURED), ("expected -", Role.EXPECTED)]
+    solid, dashed, dotted, broken, heavy = sheet.glyphs.samples
+    parts = [(f"{solid}measured", Role.MEASURED), (f"{dashed}expected", Role.EXPECTED)]
     if view.sight.residual:
-        parts = [("measured less expected", Role.MEASURED)]
-    parts += [("± U ::", Role.BAND), ("warning ' action |", Role.ACTION)]
-    if view.sight.extras and view.bob is not None:
-        parts.append(("bob", Role.BOB))
-    if view.sight.extras and view.fall is not None:
-        parts.append(("dropped", Role.FALL))
+        parts = [(f"{solid}measured less expected", Role.MEASURED)]
+    parts += [(f"{dotted}±U", Role.BAND), (f"{broken}warning", Role.WARNING), (f"{heavy}action", Role.ACTION)]
+    if _extras(view):
+        parts += [("b bob", Role.BOB), ("d dropped", Role.FALL)]
     column = _GUTTER
     for words, role in parts:
         if column + len(words) > sheet.width:
             break
-        sheet.text(column, sheet.height - 1, words, role)
-        column += len(words) + 2
+        column += sheet.text(column, sheet.height - 1, words, role) + 1
+
+
+def _extras(view: ProfileView) -> list[tuple[str, Role, Curve]]:
+    """Return the classical curves to draw, with their letters."""
+    if view.sight.residual or not view.sight.extras:
+        return []
+    both = (("b", Role.BOB, view.bob), ("d", Role.FALL, view.fall))
+    return [(letter, role, curve) for letter, role, curve in both if curve is not None]
 
 
 class _Panel:
     """One of the two panels, drawn on part of the sheet."""
 
     def __init__(
-        self, view: ProfileView, which: int, depth: Axis, sheet: Raster, column: int, width: int
+        self, view: ProfileView, which: int, depth: Axis, sheet: Raster, place: tuple[int, int]
     ) -> None:
         self.view, self.which, self.depth, self.sheet = view, which, depth, sheet
-        self.column, self.width = column, width
+        self.column, self.width = place
         self.rows = view.snapshot.rows
         self.begin = last_pass(self.rows)
-        self.axis = Axis(low=-1.0, high=1.0, dots=width * sheet.glyphs.across)
+        self.axis = Axis(low=-1.0, high=1.0, dots=self.width * sheet.glyphs.across)
 
     def draw(self) -> None:
         """Draw grid, band, limits, curves and labels, the important ones last."""
@@ -199,11 +207,13 @@ class _Panel:
         kept = Rows(rows.data[:, np.r_[runs.starts, len(rows) - 1]])
         place, part = self._along(kept), self._columns(kept)
         wide = COVERAGE_FACTOR * part.u
-        self._line(place, [part.expected - wide, part.expected + wide], Role.BAND, (1, 2))
+        self._line(place, [part.expected - wide, part.expected + wide], Role.BAND, _DASH[Role.BAND])
         warning, action = kept.column("warning"), kept.column("action")
-        self._line(place, [part.expected - warning, part.expected + warning], Role.WARNING, (2, 6))
+        self._line(
+            place, [part.expected - warning, part.expected + warning], Role.WARNING, _DASH[Role.WARNING]
+        )
         self._line(place, [part.expected - action, part.expected + action], Role.ACTION, None)
-        self._line(place, [part.expected], Role.EXPECTED, (2, 2))
+        self._line(place, [part.expected], Role.EXPECTED, _DASH[Role.EXPECTED])
 
     def _line(self, place: Floats, curves: list[Floats], role: Role, dash: tuple[int, int] | None) -> None:
         plane = self._plane()
@@ -212,20 +222,23 @@ class _Panel:
         self._put(rhythm(plane, *dash, upright=True) if dash else plane, role)
 
     def _extras(self) -> None:
-        """Draw where a bob would hang and a dropped body would be, the whole way down."""
-        if self.view.sight.residual or not self.view.sight.extras:
-            return
-        for curve, role, dash in ((self.view.bob, Role.BOB, (1, 5)), (self.view.fall, Role.FALL, (3, 5))):
-            if curve is not None:
-                depths = np.linspace(self.depth.low, self.depth.high, 64)
-                self._line(self.depth.dot(depths), [curve(depths)[self.which]], role, dash)
+        """Draw where a bob would hang and a dropped body would be, the whole way down, with a letter at the end."""
+        depths = np.linspace(self.depth.low, self.depth.high, 64)
+        for letter, role, curve in _extras(self.view):
+            values = curve(depths)[self.which]
+            self._line(self.depth.dot(depths), [values], role, _DASH[role])
+            known = np.flatnonzero(np.isfinite(values))
+            place = float(self.axis.dot(values[known[-1]])) if known.size else -1.0
+            if 0.0 <= place < self.axis.dots:
+                column = self.column + int(place) // self.sheet.glyphs.across
+                self.sheet.text(column, self.sheet.height - 3, letter, role)
 
     def _labels(self) -> None:
         """Name the panel's directions at the top and write the scale below."""
         left, right = _SIDES[self.which]
         title = f"{left} – {right}  mm"
         self.sheet.text(self.column + (self.width - len(title)) // 2, 0, title, Role.STRONG)
-        ticks = self.axis.ticks(max(2, self.width // 8))
+        ticks = self.axis.ticks(max(4, self.width // 5))
         step = (ticks[1] - ticks[0]) if len(ticks) > 1 else 1e-3
         row = self.sheet.height - 2
         self.sheet.text(self.column, row, self.sheet.glyphs.rule * self.width, Role.DIM)

@@ -1,0 +1,158 @@
+"""The start screen: the cautions, then what can be done from this folder; says what was chosen and starts nothing."""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, ClassVar, Literal
+
+from rich.text import Text
+from textual import work
+from textual.app import ComposeResult
+from textual.binding import BindingType
+from textual.containers import Vertical
+from textual.screen import Screen
+from textual.widgets import OptionList
+from textual.widgets.option_list import Option
+
+from eastfall.io.safetext import safe
+from eastfall.tui import keys
+from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.screens.help import HelpScreen
+from eastfall.tui.widgets.line import KeyLine
+from eastfall.tui.words import CAUTIONS, size
+
+if TYPE_CHECKING:
+    from eastfall.physics.settings import Kind
+
+RECENT = 8
+"""Sites and runs listed, the newest first."""
+_DEMO: "tuple[tuple[Kind, str], ...]" = (
+    ("guided", "a probe run down guides and back up"),
+    ("hung", "a plumb line swinging to rest"),
+    ("drop", "bodies dropped from the collar"),
+)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Choice:
+    """What the user wants to do."""
+
+    what: Literal["demo", "watch", "replay"]
+    path: Path | None = None
+    kind: "Kind" = "guided"
+
+
+Ports = Callable[[], Sequence[str]]
+
+
+def recent(folder: Path, suffixes: tuple[str, ...]) -> list[Path]:
+    """Return files of a folder and the folders right below it, the newest first, at most `RECENT`."""
+    seen = (path for pattern in ("*", "*/*") for path in folder.glob(pattern))
+    found = [one for one in seen if one.name.endswith(suffixes) and one.name[0] != "." and one.is_file()]
+    return sorted(found, key=lambda one: (-one.stat().st_mtime, one.name))[:RECENT]
+
+
+def looks_like_site(path: Path) -> bool:
+    """Tell whether a TOML file has the section that every site file has; others are not listed."""
+    try:
+        with path.open("rb") as file:
+            return b"[site]" in file.read(65536)
+    except OSError:
+        return False
+
+
+class StartScreen(Screen[Choice | None]):
+    """Cautions and a list of what to do.
+
+    Parameters
+    ----------
+    folder : Path
+        Where sites and runs are looked for.
+    log_suffix : str
+        How a run log's name ends.
+    ports : callable, optional
+        Names the serial ports of this machine, one line each.
+    """
+
+    BINDINGS: ClassVar[list[BindingType]] = []
+
+    def __init__(self, folder: Path, *, log_suffix: str, ports: Ports | None = None) -> None:
+        super().__init__()
+        self._folder, self._suffix, self._ports = folder, log_suffix, ports
+        self._choices: dict[str, Choice] = {}
+
+    def compose(self) -> ComposeResult:
+        """Show name, cautions, list and keys."""
+        yield plain("eastfall   measured against expected in a deep shaft, on a turning Earth", "title")
+        with Vertical(id="cautions"):
+            yield plain("\n".join(CAUTIONS))
+        yield OptionList(*self._options(), id="start-list")
+        yield KeyLine(id="keys")
+
+    def on_mount(self) -> None:
+        """Take the keys."""
+        self.query_one(OptionList).focus()
+        self.query_one(KeyLine).show(("↑ ↓", "move"), ("enter", "choose"), *keys.line(("all",), replay=False))
+
+    def _options(self) -> list[Option | None]:
+        options: list[Option | None] = [_head("Try it without an instrument")]
+        options += [
+            self._option(f"demo {kind}", f"demo, {what}", Choice(what="demo", kind=kind))
+            for kind, what in _DEMO
+        ]
+        sites = [path for path in recent(self._folder, (".toml",)) if looks_like_site(path)]
+        options.append(
+            _head("Watch live: site files here" if sites else "Watch live: no site file in this folder")
+        )
+        options += [
+            self._option(f"watch {path}", self._shown(path), Choice(what="watch", path=path))
+            for path in sites
+        ]
+        logs = recent(self._folder, (self._suffix,))
+        options.append(_head("Replay: run logs here" if logs else "Replay: no run log in this folder"))
+        options += [
+            self._option(
+                f"replay {path}",
+                f"{self._shown(path)}  {size(path.stat().st_size)}",
+                Choice(what="replay", path=path),
+            )
+            for path in logs
+        ]
+        if self._ports is not None:
+            options += [_head("Instruments"), Option("check the serial ports of this machine", id="ports")]
+        return options
+
+    def _shown(self, path: Path) -> str:
+        return safe(str(path.relative_to(self._folder)), 60)
+
+    def _option(self, name: str, words: str, choice: Choice) -> Option:
+        self._choices[name] = choice
+        return Option(Text(f"  {words}"), id=name)
+
+    def on_option_list_option_selected(self, event: OptionList.OptionSelected) -> None:
+        """Close with the choice, or look for ports."""
+        if event.option_id == "ports":
+            event.option_list.replace_option_prompt("ports", Text("  looking ..."))
+            self._look_for_ports()
+        elif event.option_id in self._choices:
+            self.dismiss(self._choices[event.option_id])
+
+    @work(thread=True, exclusive=True, exit_on_error=False)
+    def _look_for_ports(self) -> None:
+        try:
+            found = [safe(one, 76) for one in self._ports()] if self._ports is not None else []
+        except OSError as error:
+            found = [f"cannot list ports: {safe(str(error), 60)}"]
+        words = "\n".join(f"  {one}" for one in found) or "  no serial port on this machine"
+        self.app.call_from_thread(self._show_ports, words)
+
+    def _show_ports(self, words: str) -> None:
+        self.query_one(OptionList).replace_option_prompt("ports", Text(f"{words}\n  (enter looks again)"))
+
+    def action_keys(self) -> None:
+        """Open the help page."""
+        self.app.push_screen(HelpScreen())
+
+
+def _head(words: str) -> Option:
+    return Option(Text(words, style="bold"), disabled=True)
