@@ -132,7 +132,7 @@ def _many_bodies(kind: Checksum, data: bytes) -> tuple[bytes, NDArray[np.int8]]:
     ends = np.flatnonzero(codes == ord("\n"))
     starts = np.concatenate([[0], ends[:-1] + 1])
     stars = ends - WIDTH[kind] - 1
-    usual = stars >= starts
+    usual = stars > starts
     usual &= codes[stars] == ord("*")
     right = usual.copy()
     right[usual] = _stated(kind, codes, stars[usual]) == _summed(kind, codes, starts[usual], stars[usual])
@@ -171,13 +171,17 @@ def _stated(kind: Checksum, codes: NDArray[np.uint8], stars: NDArray[np.intp]) -
 def _summed(
     kind: Checksum, codes: NDArray[np.uint8], starts: NDArray[np.intp], stops: NDArray[np.intp]
 ) -> NDArray[np.int64]:
-    sums = np.full(starts.size, 0xFFFF if kind == "crc16-modbus" else 0, dtype=np.int64)
-    at = starts + (codes[starts] == ord("$")) if kind == "xor" else starts.copy()
-    live = np.flatnonzero(at < stops)
+    """Return the checksum of each span, none of them empty."""
+    if not starts.size:
+        return np.empty(0, dtype=np.int64)
+    if kind == "xor":
+        sums = np.bitwise_xor.reduceat(codes, np.column_stack([starts, stops]).ravel())[::2].astype(np.int64)
+        return np.where(codes[starts] == ord("$"), sums ^ ord("$"), sums)
+    crc, at = np.full(starts.size, 0xFFFF, dtype=np.int64), starts.copy()
+    live = np.arange(starts.size)
     while live.size:
-        byte = codes[at[live]].astype(np.int64)
-        now = sums[live]
-        sums[live] = now ^ byte if kind == "xor" else (now >> 8) ^ _CRC_ARRAY[(now ^ byte) & 0xFF]
+        now = crc[live]
+        crc[live] = (now >> 8) ^ _CRC_ARRAY[(now ^ codes[at[live]]) & 0xFF]
         at[live] += 1
         live = live[at[live] < stops[live]]
-    return sums
+    return crc

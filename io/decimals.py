@@ -20,6 +20,13 @@ _WORD = 8
 _ZEROS = np.uint64(0x3030303030303030)
 _SIXES = np.uint64(0x0606060606060606)
 _HIGH = np.uint64(0xF0F0F0F0F0F0F0F0)
+_ALL = ~np.uint64(0)
+_STEPS = (
+    (np.uint64(10), np.uint64(8), np.uint64(0x00FF00FF00FF00FF)),
+    (np.uint64(100), np.uint64(16), np.uint64(0x0000FFFF0000FFFF)),
+    (np.uint64(10000), np.uint64(32), np.uint64(0x00000000FFFFFFFF)),
+)
+"""Pairs, fours, eights: factor of the digits before, where those behind stand, and what remains."""
 _POWERS = 10.0 ** np.arange(_WORD + 1)
 _WHOLE_POWERS = 10 ** np.arange(_WORD + 1)
 _EXACT = 1 << 53
@@ -121,9 +128,10 @@ def plain_numbers(fields: Fields) -> tuple[NDArray[np.float64], NDArray[np.bool_
     words: NDArray[np.uint64] = np.ndarray(
         (len(fields.buffer) - _WORD + 1,), "<u8", buffer=fields.buffer, strides=(1,)
     )
-    whole, whole_good = _eight_digits(words, fields.points, whole_digits)
-    part, part_good = _eight_digits(words, fields.stops, part_digits)
-    plain = whole_good & part_good & (whole_digits >= 0) & (whole_digits + part_digits > 0)
+    whole, whole_wrong = _eight_digits(words, fields.points, whole_digits)
+    part, part_wrong = _eight_digits(words, fields.stops, part_digits)
+    most = np.maximum(whole_digits, part_digits)
+    plain = ((whole_wrong | part_wrong) == 0) & (most > 0) & (most <= _WORD) & (whole_digits >= 0)
     scale = np.minimum(part_digits, _WORD)
     digits = whole * _WHOLE_POWERS[scale] + part
     plain &= digits < _EXACT
@@ -134,15 +142,15 @@ def plain_numbers(fields: Fields) -> tuple[NDArray[np.float64], NDArray[np.bool_
 
 def _eight_digits(
     words: NDArray[np.uint64], stops: Places, counts: Places
-) -> tuple[NDArray[np.int64], NDArray[np.bool_]]:
-    """Read the `counts` digits that end before `stops`; good where they are digits, eight at most."""
-    unused = (np.maximum(_WORD - counts, 0) * 8).astype(np.uint64)
-    used = ~np.uint64(0) << np.minimum(unused, np.uint64(63))
-    used[counts <= 0] = 0
-    word = (words[stops - _WORD] ^ _ZEROS) & used
-    good = ((word | (word + _SIXES)) & _HIGH) == 0
-    good &= counts <= _WORD
-    word = (word * np.uint64(10) + (word >> np.uint64(8))) & np.uint64(0x00FF00FF00FF00FF)
-    word = (word * np.uint64(100) + (word >> np.uint64(16))) & np.uint64(0x0000FFFF0000FFFF)
-    word = (word * np.uint64(10000) + (word >> np.uint64(32))) & np.uint64(0xFFFFFFFF)
-    return word.astype(np.int64), good
+) -> tuple[NDArray[np.int64], NDArray[np.uint64]]:
+    """Read the `counts` digits, eight at most, that end before `stops`; not 0 in the second where one is no digit."""
+    # A shift by 64 bits or more leaves 0 in numpy: no digits, nothing kept.
+    kept = _ALL << ((_WORD - counts) << 3).astype(np.uint64)
+    word = words[stops - _WORD]
+    word ^= _ZEROS
+    word &= kept
+    wrong = (word | (word + _SIXES)) & _HIGH
+    for factor, shift, mask in _STEPS:
+        word = word * factor + (word >> shift)
+        word &= mask
+    return word.astype(np.int64), wrong

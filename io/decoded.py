@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.io.arrivals import LineBlock
-from eastfall.io.framing import LINE_LIMIT
+from eastfall.io.framing import LINE_LIMIT, has_long_line
 from eastfall.io.safetext import safe
 from eastfall.physics.readings import CHANNELS, Readings
 from eastfall.physics.settings import DEGREE
@@ -183,70 +183,73 @@ class InstrumentClock:
 def too_long(block: LineBlock) -> Codes:
     """Return the codes that a block of lines begins with: 0, or that of a line too long."""
     codes = np.zeros(len(block), dtype=np.int8)
-    if len(block.data) > LINE_LIMIT:
+    if len(block.data) > LINE_LIMIT and has_long_line(block.data):
         ends = np.flatnonzero(np.frombuffer(block.data, np.uint8) == ord("\n"))
         codes[np.diff(ends, prepend=-1) > LINE_LIMIT] = CODE["line too long"]
     return codes
 
 
-def assemble(
-    names: Sequence[str],
-    table: Table,
-    codes: Codes,
-    block: LineBlock,
-    clock: InstrumentClock,
-    *,
-    numbers: NDArray[np.int_] | None = None,
-) -> Decoded:
-    """Judge rows of numbers and turn them into readings.
+class Assembler:
+    """Judges rows of numbers and turns them into readings.
 
     Parameters
     ----------
     names : sequence of str, length k
-        Keys of `QUANTITIES`, one a column.
-    table : ndarray, shape (n, k)
-        Numbers in the unit of their key, NaN where a field is empty; rows of lines that give no reading hold anything.
-    codes : ndarray, shape (n,)
-        For each line 0, an index into `KINDS`, `UNUSED` or `PARTNER`; range faults are entered here.
-    block : LineBlock
-        The lines.
-    clock : InstrumentClock
-        Of this link.
-    numbers : ndarray, shape (n,), optional
-        Line numbers, where they do not simply count on from the block's first.
+        Keys of `QUANTITIES`, one for each column of the rows.
     """
-    for place, name in enumerate(names):
-        _judge(QUANTITIES[name], table[:, place], codes)
-    good = codes == 0
-    whole = bool(good.all())
-    kept = table if whole else table[good]
-    data = np.full((len(CHANNELS), kept.shape[0]), np.nan)
-    data[0] = data[1] = block.times if whole else block.times[good]
-    faults: dict[str, int] = {}
-    for place, name in enumerate(names):
-        quantity = QUANTITIES[name]
-        row = data[CHANNELS.index(quantity.channel)]
-        np.multiply(kept[:, place], quantity.factor, out=row)
-        if quantity.shift:
-            row += quantity.shift
-    if "time_s" in names:
-        data[0], faults = clock.forward(data[0])
-    if whole:
-        return Decoded(readings=Readings(data), faults=faults)
-    if numbers is None:
-        numbers = np.arange(block.first_line, block.first_line + len(block))
-    return _with_faults(Readings(data), faults, codes, block, numbers)
 
+    def __init__(self, names: Sequence[str]) -> None:
+        self._quantities = [QUANTITIES[name] for name in names]
+        self._lowest = np.array([one.lowest for one in self._quantities])
+        self._highest = np.array([one.highest for one in self._quantities])
+        self._factors = np.array([one.factor for one in self._quantities])
+        self._shifts = np.array([one.shift for one in self._quantities])
+        self._channels = np.array([CHANNELS.index(one.channel) for one in self._quantities])
+        self._clock = InstrumentClock() if "time_s" in names else None
 
-def _judge(quantity: Quantity, values: NDArray[np.float64], codes: Codes) -> None:
-    inside = (values >= quantity.lowest) & (values <= quantity.highest)
-    if quantity.channel == "face":
-        inside &= (values == 0.0) | (values == 180.0)
-    if inside.all():
-        return
-    bad = ~inside & (codes == 0)
-    bad &= ~np.isnan(values)  # an empty field that may be empty; needed ones were refused before
-    codes[bad] = CODE[quantity.fault]
+    def decoded(
+        self, table: Table, codes: Codes, block: LineBlock, numbers: NDArray[np.int_] | None = None
+    ) -> Decoded:
+        """Return what a block of lines said.
+
+        Parameters
+        ----------
+        table : ndarray, shape (n, k)
+            Numbers in the unit of their key, NaN where a field is empty; anything in rows that give no reading.
+        codes : ndarray, shape (n,)
+            For each line 0, an index into `KINDS`, `UNUSED` or `PARTNER`; range faults are entered here.
+        block : LineBlock
+            The lines.
+        numbers : ndarray, shape (n,), optional
+            Line numbers, where they do not simply count on from the block's first.
+        """
+        self._judge(table, codes)
+        good = codes == 0
+        whole = bool(good.all())
+        kept = table if whole else table[good]
+        data = np.full((len(CHANNELS), kept.shape[0]), np.nan)
+        data[0] = data[1] = block.times if whole else block.times[good]
+        data[self._channels] = (kept * self._factors + self._shifts).T
+        faults: dict[str, int] = {}
+        if self._clock is not None:
+            data[0], faults = self._clock.forward(data[0])
+        if whole:
+            return Decoded(readings=Readings(data), faults=faults)
+        if numbers is None:
+            numbers = np.arange(block.first_line, block.first_line + len(block))
+        return _with_faults(Readings(data), faults, codes, block, numbers)
+
+    def _judge(self, table: Table, codes: Codes) -> None:
+        inside = (table >= self._lowest) & (table <= self._highest)
+        for place, one in enumerate(self._quantities):
+            if one.channel == "face":
+                inside[:, place] &= (table[:, place] == 0.0) | (table[:, place] == 180.0)
+        if inside.all():
+            return
+        # What is NaN is an empty field that may be empty; needed ones were refused before.
+        outside = ~inside & ~np.isnan(table)
+        for place, one in enumerate(self._quantities):
+            codes[outside[:, place] & (codes == 0)] = CODE[one.fault]
 
 
 def _with_faults(

@@ -40,11 +40,10 @@ from eastfall.io.decoded import (
     PARTNER,
     QUANTITIES,
     UNUSED,
+    Assembler,
     Codes,
     Decoded,
-    InstrumentClock,
     Table,
-    assemble,
     too_long,
 )
 from eastfall.physics.errors import ParameterError
@@ -114,6 +113,7 @@ class SentenceDecoder:
         self._side = self._needed & _SIDEWAYS
         self._pairs = bool(self._side) and "depth_m" in self._needed
         self._held: _Held | None = None
+        self._assembler = Assembler(names)
 
     @property
     def pending(self) -> int:
@@ -133,7 +133,7 @@ class SentenceDecoder:
                     waiting = self._place(number, values, waiting, table, codes)
         if waiting is not None:
             block, table, codes, numbers = self._hold(waiting[0], block, table, codes, numbers)
-        return assemble(self._names, table, codes, block, InstrumentClock(), numbers=numbers)
+        return self._assembler.decoded(table, codes, block, numbers)
 
     def _with_held(self, block: LineBlock) -> tuple[LineBlock, Places]:
         numbers = np.arange(block.first_line, block.first_line + len(block))
