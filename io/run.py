@@ -188,6 +188,11 @@ class Run:
         return self._open(index, lambda: reader.stopping)
 
     @property
+    def log_path(self) -> str:
+        """Where the run is recorded; empty if it is not."""
+        return str(self._recorder.log.path) if self._recorder.log else ""
+
+    @property
     def ended(self) -> bool:
         """Whether every link has come to its end and everything has been taken."""
         return all(one.state == "ended" for one in self._readers) and self._inbox.empty

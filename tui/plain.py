@@ -1,0 +1,57 @@
+"""The plain text mode: one line a station, an alarm or a few seconds; for screen readers, pipes, dumb terminals."""
+
+from collections.abc import Callable
+from typing import TYPE_CHECKING
+
+from eastfall.tui import words
+
+if TYPE_CHECKING:
+    from eastfall.io.run import RunUpdate
+    from eastfall.physics.findings import AlarmChange, Station
+    from eastfall.physics.settings import Kind
+
+
+class PlainLines:
+    """Turn updates into lines of text.
+
+    Parameters
+    ----------
+    write : callable
+        Takes a line without its end.
+    kind : {"guided", "hung", "drop"}
+        Of the run.
+    every : float
+        Seconds of the run between two lines on how things stand.
+    """
+
+    def __init__(self, write: Callable[[str], None], kind: "Kind", every: float = 5.0) -> None:
+        self._write = write
+        self._kind = kind
+        self._every = every
+        self._next = 0.0
+
+    def take(self, update: "RunUpdate") -> None:
+        """Write what an update brought."""
+        for one in update.findings:
+            for station in one.stations:
+                self._write(_station(station))
+            for change in one.alarms:
+                self._write(_alarm(change))
+        if update.time >= self._next:
+            self._next = update.time + self._every
+            self._write(f"{words.clock(update.time)} {words.answer(update.standing)}")
+
+    def end(self, update: "RunUpdate") -> None:
+        """Write how things stand at the end."""
+        health = update.health
+        self._write(f"{words.clock(update.time)} {words.answer(update.standing)}")
+        self._write(words.steering(update.standing, self._kind))
+        self._write(f"{health.frames} readings used, {health.rejected} lines refused")
+
+
+def _station(one: "Station") -> str:
+    return f"station {words.metres(one.depth)} m {one.direction}: {words.answer(one)}"
+
+
+def _alarm(one: "AlarmChange") -> str:
+    return f"alarm {words.clock(one.time)} {one.name}: {one.old} -> {one.new}; {one.message}"

@@ -1,0 +1,41 @@
+"""The verb that shows a recorded run again: `replay`."""
+
+from pathlib import Path
+
+import click
+
+from eastfall.tui.verbs.options import an_input
+
+
+@click.command()
+@click.argument("log", type=an_input)
+@click.option("--site", type=an_input, help="Another site file: what if? The log is not changed.")
+@click.option(
+    "--speed", type=click.FloatRange(min=0.1), default=1.0, show_default=True, help="Run seconds a second."
+)
+@click.option("--follow", is_flag=True, help="Go on with what another process is recording.")
+@click.option("--plain", is_flag=True, help="Lines of text, at once, instead of the dashboard.")
+def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool) -> None:
+    """See a recorded run as it happened: pause, step, speed, jump to a depth, a time or an event."""
+    from eastfall.io.replay import Replay  # noqa: PLC0415 (the engine only where it runs)
+    from eastfall.io.sitefile import load_site  # noqa: PLC0415
+
+    found = Replay(log, site=load_site(site) if site else None, follow=follow)
+    if plain:
+        _plainly(found)
+        return
+    from eastfall.tui.app import run_replay  # noqa: PLC0415
+
+    click.get_current_context().exit(run_replay(found, speed=speed, curve=found.curve))
+
+
+def _plainly(found: object) -> None:
+    from eastfall.io.replay import Replay  # noqa: PLC0415
+    from eastfall.tui.plain import PlainLines  # noqa: PLC0415
+
+    assert isinstance(found, Replay)  # noqa: S101 (for the type checker; the caller has just made it)
+    lines = PlainLines(click.echo, found.site.assumptions.run.kind)
+    while found.time < found.duration:
+        update = found.step()
+        lines.take(update)
+    lines.end(update)

@@ -1,0 +1,187 @@
+"""The verbs of a live run: `demo`, `watch` and `record`."""
+
+import getpass
+import signal
+import sys
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager, suppress
+from datetime import UTC, datetime
+from pathlib import Path
+from types import FrameType
+from typing import TYPE_CHECKING
+
+import click
+
+from eastfall.tui.verbs.options import an_input, into
+
+if TYPE_CHECKING:
+    from eastfall.io.run import Run
+    from eastfall.io.sitefile import SiteFile
+
+_STEP = 0.1
+"""Longest wait for a line before looking whether to stop [s]."""
+
+link = click.option(
+    "--link", "links", metavar="URL", multiple=True, help="Instead of the site's links, in its order."
+)
+plain = click.option("--plain", is_flag=True, help="Lines of text instead of the dashboard.")
+shaft_clear = click.option(
+    "--shaft-clear", metavar="NAME", help="Who has checked that the shaft is clear; a drop needs it."
+)
+a_while = click.option(
+    "--for",
+    "seconds",
+    type=click.FloatRange(min=0.0, min_open=True),
+    metavar="SECONDS",
+    help="End after so long.",
+)
+
+
+@click.command()
+@click.option("--kind", type=click.Choice(["guided", "hung", "drop"]), default="guided", show_default=True)
+@into
+@plain
+@a_while
+def demo(kind: str, into: Path, plain: bool, seconds: float | None) -> None:
+    """Run the whole job on a built-in emulated instrument: no hardware, an invented shaft, everything else real."""
+    from eastfall.io.emulator import demo_site  # noqa: PLC0415 (the engine only where it runs)
+
+    site = demo_site(kind)  # type: ignore[arg-type]  # click has checked the choice
+    if plain or not _screen_there():
+        _plainly(site, (), into, seconds or 150.0, "nobody: it is an emulated shaft")
+        return
+    watch_live(site, (), into)
+
+
+@click.command()
+@click.argument("site", type=an_input)
+@link
+@into
+@plain
+@shaft_clear
+def watch(site: Path, links: tuple[str, ...], into: Path, plain: bool, shaft_clear: str | None) -> None:
+    """Watch measured against expected live; everything is recorded.
+
+    The path of the run log is printed when the run ends.
+    """
+    from eastfall.io.sitefile import load_site  # noqa: PLC0415
+
+    loaded = load_site(site)
+    if plain:
+        _plainly(loaded, links, into, None, shaft_clear)
+    else:
+        watch_live(loaded, links, into)
+
+
+@click.command()
+@click.argument("site", type=an_input)
+@link
+@into
+@shaft_clear
+@a_while
+def record(
+    site: Path, links: tuple[str, ...], into: Path, shaft_clear: str | None, seconds: float | None
+) -> None:
+    """Record without a screen, until SIGINT, SIGTERM or --for.
+
+    The path of the run log is the one line on standard output.
+    """
+    from eastfall.io.sitefile import load_site  # noqa: PLC0415
+
+    run = _open_run(load_site(site), links, into, _cleared(load_site(site), shaft_clear))
+    click.echo(run.log_path)
+    sys.stdout.flush()
+    with _signals() as stopped, run:
+        end = _end_of(seconds)
+        while not (stopped() or run.ended or time.monotonic() >= end):
+            _tell(run.step(_STEP))
+        last = run.stop()
+    click.echo(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
+
+
+def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
+    """Open the dashboard on a new run, and print the log's path when it has ended."""
+    from eastfall.tui.app import run_live  # noqa: PLC0415 (the screen library only where a screen opens)
+
+    run = _open_run(site, links, folder, None)
+    status = run_live(site, run=run, curve=run.pipeline.survey.curve)
+    click.echo(run.log_path)
+    click.get_current_context().exit(status)
+
+
+def _screen_there() -> bool:
+    return sys.stdin.isatty() and sys.stdout.isatty()
+
+
+def _end_of(seconds: float | None) -> float:
+    return time.monotonic() + seconds if seconds is not None else float("inf")
+
+
+def _plainly(
+    site: "SiteFile", links: tuple[str, ...], folder: Path, seconds: float | None, shaft_clear: str | None
+) -> None:
+    from eastfall.tui.plain import PlainLines  # noqa: PLC0415
+
+    run = _open_run(site, links, folder, _cleared(site, shaft_clear))
+    lines = PlainLines(click.echo, site.assumptions.run.kind)
+    with _signals() as stopped, run:
+        end = _end_of(seconds)
+        while not (stopped() or run.ended or time.monotonic() >= end):
+            lines.take(run.step(_STEP))
+            sys.stdout.flush()
+        lines.end(run.stop())
+    click.echo(run.log_path)
+
+
+def _open_run(site: "SiteFile", links: tuple[str, ...], folder: Path, cleared_by: str | None) -> "Run":
+    """Start a log and a run over it; nothing is opened yet but the log."""
+    from eastfall.io.run import Run  # noqa: PLC0415
+    from eastfall.io.runlog import RunLogWriter  # noqa: PLC0415
+
+    log = RunLogWriter.create(folder, site, started_at=datetime.now(UTC))
+    try:
+        run = Run(site, links=links or None, log=log)
+    except Exception:
+        # A run that never began leaves no empty log behind.
+        log.close(0.0)
+        with suppress(OSError):
+            log.path.unlink()
+        raise
+    if cleared_by:
+        run.arm(cleared_by)
+    return run
+
+
+def _cleared(site: "SiteFile", name: str | None) -> str | None:
+    """Return who has checked that the shaft is clear, asking if need be; only a drop needs it."""
+    if site.assumptions.run.kind != "drop" or name:
+        return name
+    if not sys.stdin.isatty():
+        raise click.UsageError("a drop is armed by a person: give --shaft-clear NAME once the shaft is clear")
+    click.confirm("A body will fall. Is the shaft clear, and nobody below?", abort=True, err=True)
+    return getpass.getuser()
+
+
+def _tell(update: object) -> None:
+    """Write alarm changes to standard error as they come."""
+    for one in getattr(update, "findings", ()):
+        for change in one.alarms:
+            click.echo(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
+
+
+@contextmanager
+def _signals() -> Iterator[object]:
+    """Turn SIGINT and SIGTERM into a flag while a run is on, so that the log is closed and the port released."""
+    asked: list[int] = []
+
+    def ask(number: int, _frame: FrameType | None) -> None:
+        asked.append(number)
+
+    numbers = [signal.SIGINT, signal.SIGTERM, *([signal.SIGHUP] if hasattr(signal, "SIGHUP") else [])]
+    before = {number: signal.signal(number, ask) for number in numbers}
+    try:
+        yield lambda: bool(asked)
+    finally:
+        for number, handler in before.items():
+            signal.signal(number, handler)
