@@ -553,7 +553,7 @@ def key(path: str) -> Key | None:
     return _described(section, name, struct)
 
 
-def keys() -> list[Key]:
+def all_keys() -> list[Key]:
     """Return every key in the order of the file."""
     return [
         _described(section, name, struct)
