@@ -5,7 +5,7 @@ once and interpolated after that. The lean of a moving line depends on the journ
 """
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
 from math import tau
 
 import numpy as np
@@ -48,8 +48,6 @@ class Models:
     assumptions: Assumptions
     field: LocalField
     air: AirColumn | None
-    drag_factor: float = 1.0
-    """On the body's drag coefficient; for its uncertainty."""
 
     @classmethod
     def of(cls, assumptions: Assumptions) -> "Models":
@@ -76,13 +74,8 @@ class Models:
 
     def body_at(self, depth: NDArray[np.float64]) -> Pair:
         """Return where the body is at rising depths, shape (2, n) [m]."""
-        if self.drag_factor == 1.0:
-            there = self.body(float(depth[-1])).at(depth)
-            return np.stack([there.east, there.north])
-        changed = Variation(drag_factor=np.array([self.drag_factor]))
-        body, air = self.assumptions.body, self.air
-        found = fall_ensemble(self.field, depths=depth, variation=changed, body=body, air=air)
-        return np.stack([found.east[0], found.north[0]])
+        there = self.body(float(depth[-1])).at(depth)
+        return np.stack([there.east, there.north])
 
     def lowering(self, depth: NDArray[np.float64], speed: ArrayLike) -> Pair:
         """Return how far east a bob rides while its line runs at `speed` [m/s], shape (2, n) [m]."""
@@ -143,54 +136,80 @@ class Budget:
         return np.array(rows).reshape(len(self.names), 2, z.size)
 
 
-def varied(models: Models) -> Iterator[tuple[str, Models]]:
-    """Yield every input that has an uncertainty and matters for the kind, with the models shifted by it."""
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Shift:
+    """One input moved by its standard uncertainty.
+
+    Parameters
+    ----------
+    name : str
+        The input.
+    assumptions : Assumptions
+        With that input moved.
+    of_fall : dict
+        The same for a falling body, as fields of `fall.Variation`; what the site itself does to it is added.
+    """
+
+    name: str
+    assumptions: Assumptions
+    of_fall: dict[str, float]
+
+
+def shifts(models: Models) -> Iterator[Shift]:
+    """Yield every input that has an uncertainty and matters for the kind of run, moved by it."""
     given = models.assumptions
-    for name, changed in _site_varied(given, models.field):
-        yield name, Models.of(changed)
+    yield from _site_shifts(given, models.field)
     if given.run.kind != "guided" or given.run.reference == "hung-line":
-        for name, changed in _line_and_air_varied(given):
-            yield name, Models.of(changed)
+        yield from _line_and_air_shifts(given)
     if given.run.kind == "drop" and given.body is not None:
-        yield "drag", replace(models, drag_factor=1.0 + given.body.u_drag_fraction)
-        for name, changed in _release_varied(given, given.body):
-            yield name, Models.of(changed)
+        yield from _body_shifts(given, given.body)
 
 
-def _site_varied(given: Assumptions, field: LocalField) -> Iterator[tuple[str, Assumptions]]:
+def _site_shifts(given: Assumptions, field: LocalField) -> Iterator[Shift]:
     site = given.site
-    yield "latitude", replace(given, site=replace(site, latitude=_shifted(site.latitude, site.u_latitude)))
-    yield "gravity", replace(given, site=replace(site, gravity=field.gravity + site.u_gravity))
     rock = tuple(
         (top, density + site.u_rock_density if density else 0.0) for top, density in site.rock_density
     )
-    yield "rock density", replace(given, site=replace(site, rock_density=rock))
-    for name, row in (("vertical bent north", 1), ("vertical bent east", 2)):
-        yield name, replace(given, site=replace(site, deflections=_bent(given, field, row)))
+    moved = {
+        "latitude": replace(site, latitude=_shifted(site.latitude, site.u_latitude)),
+        "gravity": replace(site, gravity=field.gravity + site.u_gravity),
+        "rock density": replace(site, rock_density=rock),
+        "vertical bent north": replace(site, deflections=_bent(given, field, 1)),
+        "vertical bent east": replace(site, deflections=_bent(given, field, 2)),
+    }
+    for name, one in moved.items():
+        yield Shift(name=name, assumptions=replace(given, site=one), of_fall={})
 
 
-def _line_and_air_varied(given: Assumptions) -> Iterator[tuple[str, Assumptions]]:
+def _line_and_air_shifts(given: Assumptions) -> Iterator[Shift]:
     air, line = given.air, given.line
     if not air.is_vacuum:
-        yield "air density", replace(given, air=replace(air, density=air.density + air.u_density))
-        yield (
-            "air moving in the shaft",
-            replace(given, air=replace(air, vertical=air.vertical + air.u_vertical)),
+        denser, faster = replace(air, density=air.density + air.u_density), air.vertical + air.u_vertical
+        factor = {"air_density_factor": 1.0 + air.u_density / air.density}
+        yield Shift(name="air density", assumptions=replace(given, air=denser), of_fall=factor)
+        moving = replace(given, air=replace(air, vertical=faster))
+        yield Shift(
+            name="air moving in the shaft", assumptions=moving, of_fall={"air_vertical": air.u_vertical}
         )
-    stronger = tuple(
-        (top, end, v * (1.0 + air.u_cross_flow_fraction), to) for top, end, v, to in air.cross_flow
-    )
-    yield "cross-flow", replace(given, air=replace(air, cross_flow=stronger))
-    yield "bob mass", replace(given, line=replace(line, bob_mass=line.bob_mass + line.u_bob_mass))
+    stronger = 1.0 + air.u_cross_flow_fraction
+    flow = tuple((top, end, speed * stronger, toward) for top, end, speed, toward in air.cross_flow)
+    blown = replace(given, air=replace(air, cross_flow=flow))
+    yield Shift(name="cross-flow", assumptions=blown, of_fall={"cross_flow_factor": stronger})
+    heavier = replace(given, line=replace(line, bob_mass=line.bob_mass + line.u_bob_mass))
+    yield Shift(name="bob mass", assumptions=heavier, of_fall={})
 
 
-def _release_varied(given: Assumptions, body: Body) -> Iterator[tuple[str, Assumptions]]:
-    for axis in ("east", "north"):
-        point, speed = f"release_{axis}", f"release_speed_{axis}"
-        moved = replace(body, **{point: getattr(body, point) + body.u_release})
-        yield f"release point {axis}", replace(given, body=moved)
-        pushed = replace(body, **{speed: getattr(body, speed) + body.u_release_speed})
-        yield f"release speed {axis}", replace(given, body=pushed)
+def _body_shifts(given: Assumptions, body: Body) -> Iterator[Shift]:
+    """Yield what only a falling body feels; nothing of it moves a line."""
+    moved = {
+        "drag": {"drag_factor": 1.0 + body.u_drag_fraction},
+        "release point east": {"east": body.u_release},
+        "release point north": {"north": body.u_release},
+        "release speed east": {"speed_east": body.u_release_speed},
+        "release speed north": {"speed_north": body.u_release_speed},
+    }
+    for name, of_fall in moved.items():
+        yield Shift(name=name, assumptions=given, of_fall=of_fall)
 
 
 def _shifted(latitude: float, by: float) -> float:
@@ -340,11 +359,45 @@ def expected_budget(models: Models) -> Budget:
     JCGM 100:2008 (GUM), 5.1.3, note 2: numerical partial derivatives.
     """
     depth = graded(reach(models.assumptions), _COARSE)
-    base = models.plumb(depth)
-    names, parts = [], []
-    for name, shifted in varied(models):
-        part = shifted.plumb(depth) - base
-        if np.any(part):
-            names.append(name)
-            parts.append(part)
-    return Budget(depth=depth, names=tuple(names), parts=np.array(parts).reshape(len(names), 2, depth.size))
+    moved = list(shifts(models))
+    others = [Models.of(one.assumptions) for one in moved]
+    if models.assumptions.run.kind == "drop":
+        lines = np.array([one.reference(depth) for one in others]) - models.reference(depth)
+        parts = _fall_parts(models, others, moved, depth) - lines
+    else:
+        parts = np.array([one.plumb(depth) for one in others]) - models.plumb(depth)
+    matter = np.flatnonzero(np.any(parts, axis=(1, 2)))
+    return Budget(depth=depth, names=tuple(moved[one].name for one in matter), parts=parts[matter])
+
+
+def _fall_parts(
+    models: Models, others: list[Models], moved: list[Shift], depth: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """Return how far each shift moves the falling body, shape (shifts, 2, n) [m]; all fall in one ensemble."""
+    neutral = {one.name: one.default for one in fields(Variation)}
+    members = [neutral]
+    members += [
+        {**neutral, **_of_field(models, other), **one.of_fall}
+        for one, other in zip(moved, others, strict=True)
+    ]
+    variation = Variation(**{name: np.array([one[name] for one in members]) for name in neutral})
+    body, air = models.assumptions.body, models.air if models.assumptions.body else None
+    found = fall_ensemble(models.field, depths=depth, variation=variation, body=body, air=air)
+    there = np.stack([found.east, found.north], axis=1)
+    return there[1:] - there[0]
+
+
+def _of_field(models: Models, other: Models) -> dict[str, float]:
+    """Put the difference of two fields as what a fall feels of it: linear in depth, which is what the inputs change."""
+    deepest = np.array([0.0, reach(models.assumptions)])
+    gravity = other.field.gravity_at(deepest) - models.field.gravity_at(deepest)
+    north, east = (
+        new - old for new, old in zip(other.field.slope(deepest), models.field.slope(deepest), strict=True)
+    )
+    return {
+        "latitude": other.field.latitude - models.field.latitude,
+        "gravity_factor": other.field.gravity / models.field.gravity,
+        "gravity_gradient": float(gravity[1] - gravity[0]) / float(deepest[1]),
+        "curvature_north": float(north[1]) / float(deepest[1]),
+        "curvature_east": float(east[1]) / float(deepest[1]),
+    }
