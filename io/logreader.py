@@ -26,6 +26,8 @@ from eastfall.io.rawlines import plain_lines
 from eastfall.io.seal import CHUNK, SealScan, Verification, beside, combined, first_part, judge, opened
 from eastfall.io.sitefile import SiteFile, parse_site
 
+_TAIL = 64 << 10
+
 
 class LogReader:
     """A run log, read from its first part on.
@@ -36,6 +38,9 @@ class LogReader:
         Any part of the log.
     merge : bool
         Put lines that follow one another on one link into large blocks; else one block for each record.
+    by_link : bool
+        With `merge`: put the lines between events into one block for each link, though links then overtake one
+        another. What follows from the lines in the end does not depend on it.
 
     Raises
     ------
@@ -56,8 +61,9 @@ class LogReader:
         The latest time read so far [s].
     """
 
-    def __init__(self, path: Path, *, merge: bool = True) -> None:
+    def __init__(self, path: Path, *, merge: bool = True, by_link: bool = False) -> None:
         self._merge = merge
+        self._by_link = by_link
         self._numbers: dict[int, int] = {}
         self._parts: list[Verification] = []
         self.bad_lines = 0
@@ -242,22 +248,24 @@ class LogReader:
         return records
 
     def _joined(self, records: list[Record]) -> list[Arrival]:
+        """Return events in their places, and blocks of the lines between them."""
         arrivals: list[Arrival] = []
-        waiting: list[Record] = []
+        waiting: dict[int, list[Record]] = {}
         for one in records:
-            if waiting and (one.raw is None or not self._merge or one.link != waiting[0].link):
-                arrivals.append(self._one_block(waiting))
-                waiting = []
+            if waiting and not self._may_join(one, waiting):
+                arrivals += [self._one_block(some) for some in waiting.values()]
+                waiting = {}
             if one.raw is not None:
-                waiting.append(one)
+                waiting.setdefault(one.link, []).append(one)
             elif one.event is not None:
                 self.last_time = max(self.last_time, one.t)
                 arrivals.append(RunEvent(time=one.t, name=one.event, fields=one.fields or {}))
             else:
                 self.bad_lines += 1
-        if waiting:
-            arrivals.append(self._one_block(waiting))
-        return arrivals
+        return [*arrivals, *(self._one_block(some) for some in waiting.values())]
+
+    def _may_join(self, record: Record, waiting: dict[int, list[Record]]) -> bool:
+        return self._merge and record.raw is not None and (self._by_link or record.link in waiting)
 
     def _one_block(self, records: list[Record]) -> LineBlock:
         lines = [line.replace("\n", " ") for one in records for line in one.raw or ()]
@@ -273,6 +281,42 @@ class LogReader:
         return LineBlock(data=data, times=times, first_line=first, link=link)
 
 
-def read_log(path: Path, *, merge: bool = True) -> LogReader:
+def read_log(path: Path, *, merge: bool = True, by_link: bool = False) -> LogReader:
     """Open a run log for reading; see `LogReader`."""
-    return LogReader(path, merge=merge)
+    return LogReader(path, merge=merge, by_link=by_link)
+
+
+def last_time(path: Path) -> float:
+    """Return the last time that a log states, from the end of its last part [s]; 0 if it holds nothing yet.
+
+    Raises
+    ------
+    LogError
+        The file cannot be opened or is no run log.
+    """
+    part, time = first_part(path), 0.0
+    while True:
+        records = _tail(part)
+        time = max([time, *(one.t for one in records)])
+        name = records[-1].next if records else None
+        if name is None or not beside(part, name).exists():
+            return time
+        part = beside(part, name)
+
+
+def _tail(path: Path) -> list[Record]:
+    """Return the last records of a part that can be read."""
+    with opened(path) as file:
+        size = file.seek(0, os.SEEK_END)
+        reach = _TAIL
+        while True:
+            file.seek(max(size - reach, 0))
+            lines = file.read(reach).split(b"\n")[1:-1]
+            if lines or reach >= size:
+                break
+            reach *= 8
+    records = []
+    for line in lines:
+        with contextlib.suppress(msgspec.DecodeError, UnicodeDecodeError):
+            records.append(RECORDS.decode(line))
+    return records

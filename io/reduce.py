@@ -1,0 +1,125 @@
+"""A whole recording through the engine, headless: stations, verdicts and alarms out; streamed, in flat memory."""
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from datetime import datetime
+from math import nan
+from pathlib import Path
+from types import MappingProxyType
+
+from eastfall.io.arrivals import LineBlock, RunEvent
+from eastfall.io.capture import CaptureReader, refuse
+from eastfall.io.logreader import LogReader
+from eastfall.io.pipeline import Pipeline
+from eastfall.io.recording import Recording, Source, open_recording
+from eastfall.io.seal import Verification
+from eastfall.io.sitefile import SiteFile
+from eastfall.io.whatif import Difference
+from eastfall.physics.findings import Result, Standing, Verdict
+
+_MOST_EVENTS = 10_000
+_KEPT = frozenset({"note", "acknowledge", "shelve", "armed", "setting", "condition", "start", "end"})
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Reduction:
+    """Everything that a recording comes to."""
+
+    path: Path
+    site: SiteFile
+    """The settings used."""
+    differences: tuple[Difference, ...]
+    """Where they are not those that were recorded."""
+    started_at: datetime | None
+    kind: str
+    frames: int
+    rejected: int
+    faults: Mapping[str, int]
+    unused: Mapping[str, int]
+    """Readings that were read well and left aside, by reason."""
+    result: Result
+    standing: Standing | None
+    """The answer as it stood at the end."""
+    events: tuple[RunEvent, ...]
+    """What people said and did, in order; the first ten thousand."""
+    duration: float
+    """Last time recorded [s]."""
+    verification: Verification | None
+    """What the seals say; None for a capture."""
+
+    @property
+    def seal_state(self) -> str:
+        """Intact, cut short or changed; empty for a capture, which has no seals."""
+        return self.verification.state if self.verification is not None else ""
+
+    @property
+    def verdict(self) -> Verdict | None:
+        """The worst verdict of any station; None without stations."""
+        found = {one.verdict for one in self.result.stations}
+        worst: tuple[Verdict, ...] = ("over", "undecided", "within")
+        return next((one for one in worst if one in found), None)
+
+
+def reduce_file(path: Path, *, site: SiteFile | None = None, interval: float | None = None) -> Reduction:
+    """Reduce a run log or a capture.
+
+    Parameters
+    ----------
+    path : Path
+        Any part of a run log, or a plain-text capture.
+    site : SiteFile, optional
+        Settings to use instead of the recorded ones; needed for a capture.
+    interval : float, optional
+        Time between the lines of a capture without a clock [s].
+
+    Returns
+    -------
+    Reduction
+        The same findings, to the last bit, as the live run had, if no other settings are given.
+
+    Raises
+    ------
+    LogError, CaptureError, SiteFileError
+        The file cannot be used; for a capture that does not fit its line form, with its first lines.
+    """
+    recording = open_recording(path, site, interval)
+    pipeline = recording.pipeline()
+    source = recording.source(by_link=True)
+    try:
+        events = run_through(source, pipeline, is_log=recording.is_log)
+        if isinstance(source, CaptureReader) and not pipeline.survey.result().frames:
+            raise refuse(path, recording.site, source.lines)
+        return _reduction(recording, source, pipeline, events)
+    finally:
+        source.close()
+
+
+def run_through(source: Source, pipeline: Pipeline, *, is_log: bool) -> list[RunEvent]:
+    """Take every arrival and close the run; return what people said and did."""
+    events: list[RunEvent] = []
+    for arrival in source:
+        pipeline.take(arrival)
+        if not isinstance(arrival, LineBlock) and arrival.name in _KEPT and len(events) < _MOST_EVENTS:
+            events.append(arrival)
+    pipeline.close(source.last_time if is_log else nan)
+    return events
+
+
+def _reduction(recording: Recording, source: Source, pipeline: Pipeline, events: list[RunEvent]) -> Reduction:
+    survey = pipeline.survey
+    return Reduction(
+        path=recording.path,
+        site=recording.site,
+        differences=recording.differences,
+        started_at=recording.started_at,
+        kind=recording.site.assumptions.run.kind,
+        frames=pipeline.frames,
+        rejected=pipeline.rejected,
+        faults=MappingProxyType(dict(pipeline.faults)),
+        unused=MappingProxyType(dict(survey.unused)),
+        result=survey.result(),
+        standing=survey.standing(),
+        events=tuple(events),
+        duration=source.last_time,
+        verification=source.verification() if isinstance(source, LogReader) else None,
+    )

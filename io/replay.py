@@ -1,0 +1,282 @@
+"""A recorded run played again at any pace, also while another process records it; what it shows is the live run's.
+
+Arrivals go through the same pipeline in the order of the file. `advance` cuts them at an instant of the recording and
+lets time pass to it, so what stands on the screen is what stood there live; the pace is the caller's.
+"""
+
+from collections import Counter, deque
+from math import inf, nan
+from pathlib import Path
+from types import MappingProxyType
+
+import numpy as np
+
+from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
+from eastfall.io.logreader import LogReader, last_time
+from eastfall.io.recording import Recording, open_recording
+from eastfall.io.replayindex import Index, Mark, build_index, split
+from eastfall.io.run import Health, LinkHealth, RunUpdate
+from eastfall.io.safetext import safe
+from eastfall.io.sitefile import SiteFile
+from eastfall.io.whatif import Difference
+from eastfall.physics.findings import Findings
+
+__all__ = ["Index", "Mark", "Replay"]
+
+_RATE_OVER = 5.0
+"""The rate of a link is that of the last few seconds [s]."""
+
+
+class Replay:
+    """One recording, from its start.
+
+    Parameters
+    ----------
+    path : Path
+        A run log (any part of it), or a capture.
+    site : SiteFile, optional
+        Other settings than the recorded ones: what if. The recording itself is only ever read.
+    interval : float, optional
+        Time between the lines of a capture without a clock [s].
+    follow : bool
+        Whether another process may still be writing the log: then its end is not the end of the run until the log
+        says so.
+
+    Raises
+    ------
+    LogError, CaptureError, SiteFileError
+        The file cannot be used.
+
+    Attributes
+    ----------
+    time : float
+        Where the replay stands, from the start of the run [s].
+    restarts : int
+        How often it went back. After that, findings are those from the start of the run: a picture starts anew.
+    """
+
+    def __init__(
+        self,
+        path: Path,
+        site: SiteFile | None = None,
+        *,
+        interval: float | None = None,
+        follow: bool = False,
+    ) -> None:
+        self.recording: Recording = open_recording(path, site, interval)
+        self.follow = follow and self.recording.is_log
+        self.restarts = -1
+        self._index: Index | None = None
+        self._duration = last_time(path) if self.recording.is_log else self._length_of_capture()
+        self._source = self.recording.source()
+        self._restart()
+
+    def _length_of_capture(self) -> float:
+        source = self.recording.source()
+        for _ in source:
+            pass
+        source.close()
+        return source.last_time
+
+    def _restart(self) -> None:
+        self._source.close()
+        self._source = self.recording.source()
+        self.pipeline = self.recording.pipeline()
+        self._waiting: deque[Arrival] = deque()
+        self._lines: Counter[int] = Counter()
+        self._recent: dict[int, deque[tuple[float, int]]] = {}
+        self._closed = False
+        self.time = 0.0
+        self.restarts += 1
+
+    @property
+    def site(self) -> SiteFile:
+        """The settings in use."""
+        return self.recording.site
+
+    @property
+    def differences(self) -> tuple[Difference, ...]:
+        """Where they are not the recorded ones."""
+        return self.recording.differences
+
+    @property
+    def duration(self) -> float:
+        """Last time of the recording so far [s]."""
+        return max(self._duration, self._source.last_time)
+
+    @property
+    def ended(self) -> bool:
+        """Whether everything was played and the run is closed."""
+        return self._closed
+
+    @property
+    def index(self) -> Index:
+        """What can be jumped to; made at the first call by a pass over the whole recording."""
+        if self._index is None:
+            self._index = build_index(self.recording)
+        return self._index
+
+    def advance(self, to_time: float) -> RunUpdate:
+        """Play up to an instant.
+
+        Parameters
+        ----------
+        to_time : float
+            [s]; an instant before `time` plays nothing.
+
+        Returns
+        -------
+        RunUpdate
+            What it brought; at the end of the recording the run is closed.
+        """
+        to_time = max(to_time, self.time)
+        found = []
+        while (arrival := self._next(to_time)) is not None:
+            found.append(self._take(arrival))
+        if not self._closed and self._all_played() and to_time >= self.duration:
+            self._closed = True
+            found.append(self.pipeline.close(self._source.last_time if self.recording.is_log else nan))
+            to_time = self.duration
+        elif not self._closed and self.recording.is_log:
+            found.append(self.pipeline.tick(to_time))
+        self.time = min(to_time, self.duration) if self._closed or not self.follow else to_time
+        return self._update(found)
+
+    def catch_up(self, now: float) -> RunUpdate:
+        """Play everything that is there, for a log that is being written.
+
+        Parameters
+        ----------
+        now : float
+            Time since the start of the run by this machine's clock [s]; what is already due by then (a silent feed)
+            is found even where no line tells of it.
+        """
+        found = []
+        while (arrival := self._next(inf)) is not None:
+            found.append(self._take(arrival))
+        if self._all_played() and not self._closed:
+            self._closed = True
+            found.append(self.pipeline.close(self._source.last_time if self.recording.is_log else nan))
+        self.time = self.duration
+        if not self._closed:
+            self.time = max(self.time, now)
+            found.append(self.pipeline.tick(self.time))
+        return self._update(found)
+
+    def step(self) -> RunUpdate:
+        """Play what arrived at the next instant of the recording."""
+        first = self._peek()
+        if first is None:
+            return self.advance(self.duration)
+        begins = float(first.times[0]) if isinstance(first, LineBlock) else first.time
+        return self.advance(max(begins, self.time))
+
+    def seek(self, time: float) -> RunUpdate:
+        """Go to an instant; backwards means from the start again, as fast as it goes.
+
+        Parameters
+        ----------
+        time : float
+            [s]; held inside the recording.
+        """
+        time = min(max(time, 0.0), self.duration)
+        if time < self.time or self._closed:
+            self._restart()
+        return self.advance(time)
+
+    def close(self) -> None:
+        """Let go of the file."""
+        self._source.close()
+
+    # -- arrivals --------------------------------------------------------------------------------------------------
+
+    def _peek(self) -> Arrival | None:
+        while not self._waiting:
+            more = self._source.more()
+            if more is None:
+                return None
+            self._waiting += more
+        return self._waiting[0]
+
+    def _next(self, until: float) -> Arrival | None:
+        """Return the next arrival, or the part of it that came by `until`."""
+        first = self._peek()
+        if isinstance(first, RunEvent):
+            return self._waiting.popleft() if first.time <= until else None
+        if first is None:
+            return None
+        late = np.flatnonzero(first.times > until)
+        count = int(late[0]) if late.size else len(first)
+        if count == len(first):
+            self._waiting.popleft()
+            return first
+        if count == 0:
+            return None
+        ready, self._waiting[0] = split(first, count)
+        return ready
+
+    def _take(self, arrival: Arrival) -> Findings:
+        if isinstance(arrival, LineBlock):
+            if len(arrival):
+                self._count(arrival)
+        elif arrival.name == "end":
+            self._closed = True
+        return self.pipeline.take(arrival)
+
+    def _all_played(self) -> bool:
+        if self._waiting:
+            return False
+        if isinstance(self._source, LogReader) and self.follow:
+            return self._source.ended
+        return True
+
+    # -- how things stand ------------------------------------------------------------------------------------------
+
+    def _count(self, block: LineBlock) -> None:
+        self._lines[block.link] += len(block)
+        recent = self._recent.setdefault(block.link, deque(maxlen=10_000))
+        after = block.times[-1] - _RATE_OVER
+        times, counts = np.unique(block.times[block.times >= after], return_counts=True)
+        recent.extend(zip(times.tolist(), counts.tolist(), strict=True))
+
+    def _update(self, found: list[Findings]) -> RunUpdate:
+        survey = self.pipeline.survey
+        return RunUpdate(
+            findings=tuple(one for one in found if len(one.rows) or one.stations or one.alarms),
+            standing=survey.standing(),
+            alarms=survey.alarms(),
+            health=self._health(),
+            time=self.time,
+            armed=self.pipeline.armed,
+        )
+
+    def _health(self) -> Health:
+        links = max(len(self.site.links), 1)
+        return Health(
+            links=tuple(self._link(number) for number in range(links)),
+            frames=self.pipeline.frames,
+            rejected=self.pipeline.rejected,
+            faults=MappingProxyType(dict(self.pipeline.faults)),
+            log_path=str(self.recording.path),
+            log_bytes=0,
+            log_state="following" if self.follow else "replay",
+            set_aside=self.pipeline.set_aside,
+        )
+
+    def _link(self, number: int) -> LinkHealth:
+        recent = self._recent.get(number, deque())
+        while recent and recent[0][0] < self.time - _RATE_OVER:
+            recent.popleft()
+        url = safe(self.site.links[number].url, 80) if self.site.links else ""
+        fault = self.pipeline.last_faults.get(number)
+        return LinkHealth(
+            name=url,
+            url=url,
+            state="ended" if self._closed else "open",
+            retry_in=None,
+            lines=self._lines[number],
+            rate=sum(count for _, count in recent) / _RATE_OVER,
+            silent_for=max(self.time - recent[-1][0], 0.0) if recent else self.time,
+            last_fault=f"line {fault[0]}: {fault[1]}: {fault[2]}; expected {fault[3]}" if fault else "",
+            queue_dropped=0,
+        )

@@ -1,0 +1,121 @@
+"""The shapes that other programs rely on: plain dicts with units in their keys, millimetres, and null for absent."""
+
+from collections.abc import Mapping
+from math import isfinite
+from typing import Any
+
+from eastfall.io.reduce import Reduction
+from eastfall.physics.findings import AlarmChange, Closure, RestPoint, Station
+
+STATION_KEYS = (
+    "depth_m",
+    "pass",
+    "measured_east_mm",
+    "measured_north_mm",
+    "expected_east_mm",
+    "expected_north_mm",
+    "residual_east_mm",
+    "residual_north_mm",
+    "u_east_mm",
+    "u_north_mm",
+    "verdict",
+)
+_DIGITS = 6
+
+
+def number(value: float | None, scale: float = 1.0) -> float | None:
+    """Return a number at the edge, to a millionth of its unit; None for what is absent or not finite."""
+    if value is None or not isfinite(value):
+        return None
+    return round(value * scale, _DIGITS) + 0.0  # plus zero: no -0.0
+
+
+def millimetres(value: float | None) -> float | None:
+    """Return a length in millimetres."""
+    return number(value, 1000.0)
+
+
+def station_row(station: Station) -> dict[str, Any]:
+    """Return one station."""
+    names = ("measured", "expected", "residual", "u")
+    lengths = {
+        f"{name}_{side}_mm": millimetres(getattr(station, f"{name}_{side}"))
+        for name in names
+        for side in ("east", "north")
+    }
+    return {
+        "depth_m": number(station.depth),
+        "pass": station.direction,
+        **lengths,
+        "verdict": station.verdict,
+    }
+
+
+def alarm_row(change: AlarmChange) -> dict[str, Any]:
+    """Return one transition of an alarm."""
+    return {
+        "time_s": number(change.time),
+        "depth_m": number(change.depth),
+        "name": change.name,
+        "from": change.old,
+        "to": change.new,
+    }
+
+
+def closure_row(closure: Closure | None) -> dict[str, Any] | None:
+    """Return the misclosure between passes."""
+    if closure is None:
+        return None
+    return {
+        "depth_m": number(closure.depth),
+        "east_mm": millimetres(closure.east),
+        "north_mm": millimetres(closure.north),
+        "expected_east_mm": millimetres(closure.expected_east),
+        "expected_north_mm": millimetres(closure.expected_north),
+    }
+
+
+def rest_point_row(rest: RestPoint | None) -> dict[str, Any] | None:
+    """Return the rest point of a swing."""
+    if rest is None:
+        return None
+    return {
+        "east_mm": millimetres(rest.east),
+        "north_mm": millimetres(rest.north),
+        "u_east_mm": millimetres(rest.u_east),
+        "u_north_mm": millimetres(rest.u_north),
+        "period_s": number(rest.period),
+        "decay_s": number(rest.decay),
+        "swings": number(rest.swings),
+    }
+
+
+def reduce_table(reduction: Reduction) -> dict[str, Any]:
+    """Return what `reduce` prints as JSON."""
+    result = reduction.result
+    return {
+        "kind": reduction.kind,
+        "site": reduction.site.assumptions.site.name,
+        "frames": reduction.frames,
+        "rejected": reduction.rejected,
+        "stations": [station_row(one) for one in result.stations],
+        "alarms": [alarm_row(one) for one in result.alarms],
+        "closure": closure_row(result.closure),
+        "rest_point": rest_point_row(result.rest_point),
+    }
+
+
+def verification_row(reduction: Reduction) -> Mapping[str, Any] | None:
+    """Return what the seals say, as `verify` prints it."""
+    found = reduction.verification
+    if found is None:
+        return None
+    return {
+        "state": found.state,
+        "good_lines": found.good_lines,
+        "good_until_time_s": number(found.good_until_time),
+        "first_bad_line": found.first_bad_line,
+        "sealed": found.sealed,
+        "seal": found.seal,
+        "reason": found.reason,
+    }
