@@ -5,7 +5,7 @@ from typing import Any, NamedTuple
 
 from eastfall.io import sitekeys
 from eastfall.io.sitefile import LinkSettings, SiteFile
-from eastfall.io.sitekeys import keys as known_keys
+from eastfall.io.sitekeys import all_keys
 
 
 class Difference(NamedTuple):
@@ -32,7 +32,7 @@ class Setting:
 def settings_of(site: SiteFile) -> tuple[Setting, ...]:
     """Return every setting of a run in the order of the site file, links apart."""
     found = []
-    for one in known_keys():
+    for one in all_keys():
         record = getattr(site.assumptions, one.section, None)
         field = sitekeys.si_name(one.name)
         if record is None or not hasattr(record, field):
