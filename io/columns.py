@@ -88,7 +88,7 @@ class ColumnsDecoder:
 
     def _pattern(self) -> bytes:
         """Return what a good line looks like: one group for each kept column."""
-        pad = rb"[ \t]*+" if self._delimiter != b"\t" else rb" *+"
+        pad = {b" ": b"", b"\t": b" *+"}.get(self._delimiter, rb"[ \t]*+")
         number = pad + b"(" + _NUMBER + b")" + pad
         perhaps = pad + b"(" + _NUMBER + b")?+" + pad
         anything = b"[^" + re.escape(self._delimiter) + b"]*+"
