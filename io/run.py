@@ -113,7 +113,7 @@ class Run:
     log : RunLogWriter, optional
         Where everything is recorded; None records nothing.
     clock : callable
-        Monotonic seconds.
+        Monotonic seconds; the run's time is 0 now.
     armed : bool, optional
         True lets the readings of a `drop` run count from the start instead of from `arm` on; other runs always do.
     opener : callable
@@ -170,7 +170,6 @@ class Run:
             for link in opened:
                 link.close()
             raise
-        self._inbox = Inbox(self._clock)
         if self._armed_at_start:
             self.arm("")
         for index, link in enumerate(opened):
@@ -193,9 +192,16 @@ class Run:
         return str(self._recorder.log.path) if self._recorder.log else ""
 
     @property
+    def log_path(self) -> str:
+        """Where the record goes now; empty without one."""
+        return str(self._recorder.log.path) if self._recorder.log else ""
+
+    @property
     def ended(self) -> bool:
         """Whether every link has come to its end and everything has been taken."""
-        return all(one.state == "ended" for one in self._readers) and self._inbox.empty
+        return (
+            bool(self._readers) and all(one.state == "ended" for one in self._readers) and self._inbox.empty
+        )
 
     def stop(self) -> RunUpdate:
         """Stop reading, take what has come, end the run and close the log; a second call changes nothing."""
@@ -346,7 +352,7 @@ class Run:
             frames=self.pipeline.frames,
             rejected=self.pipeline.rejected,
             faults=MappingProxyType(dict(self.pipeline.faults)),
-            log_path=str(log.path) if log else "",
+            log_path=self.log_path,
             log_bytes=log.bytes_written if log else 0,
             log_state=self._recorder.trouble or (log.state if log else "not recording"),
             log_lost=self._recorder.lost,
