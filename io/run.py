@@ -192,11 +192,6 @@ class Run:
         return str(self._recorder.log.path) if self._recorder.log else ""
 
     @property
-    def log_path(self) -> str:
-        """Where the record goes now; empty without one."""
-        return str(self._recorder.log.path) if self._recorder.log else ""
-
-    @property
     def ended(self) -> bool:
         """Whether every link has come to its end and everything has been taken."""
         return (
