@@ -1,0 +1,422 @@
+"""The rest point of a swinging bob, from readings as they come, with an honest covariance and the limits of the fit.
+
+The least squares are in `pendulum`, the covariance under irregular air in `scatter`; where the bob ought to hang is
+`hung`.
+"""
+
+from dataclasses import dataclass
+from math import inf, log2, nan, pi, sqrt
+
+import numpy as np
+import numpy.typing as npt
+
+from eastfall.physics.binning import Bins, TimeBins
+from eastfall.physics.earth import EARTH_ROTATION
+from eastfall.physics.errors import ParameterError
+from eastfall.physics.pendulum import Fit, Samples, refine, search
+from eastfall.physics.scatter import Scatter, rest_point_scatter
+from eastfall.physics.swing_checks import airy_precession, axes, harmonic, schuler_rest, swing_stands_out
+
+Array = npt.NDArray[np.float64]
+
+FEWEST_SWINGS = 1.5
+LARGE_ANGLE = 0.1
+"""Swing to each side [rad] above which the sine is no longer its angle to a thousandth."""
+_CAPACITY = 1024  # bins kept
+_PER_SWING = (32, 16)  # bins in a swing: of the newest, and the fewest when old ones are joined
+_UNKNOWN_WIDTH = 0.1  # of a bin [s] while the period is not known
+_POOR = 0.35  # residuals with a memory, against the swing, rms: above it this is no pendulum
+_BENT = 0.03  # of a harmonic against the swing
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class RestPoint:
+    """Where the bob would come to rest.
+
+    Parameters
+    ----------
+    fits : bool
+        Whether the readings look like a free swing (or a bob at rest). If not, every number here that rests on the
+        model is NaN and `message` says what was seen.
+    message : str
+        What the crew should know; empty if nothing.
+    east, north : float
+        Rest point [m].
+    covariance : array, shape (2, 2)
+        Of it, east first [m²]; twice the standard uncertainty holds the truth in about 95 % of cases.
+    period, u_period : float
+        Of a full swing and its standard uncertainty [s]; NaN without a swing.
+    decay : float
+        Time in which the swing falls to 1/e [s]; NaN where it does not fall.
+    amplitude, width : float
+        Half axes of the ellipse at the newest reading [m]; `width` is negative for a clockwise bob.
+    swings : float
+        Full swings seen.
+    widening : float
+        Factor on the uncertainty for irregular air.
+    schuler_east, schuler_north : float
+        Schuler mean of the turning points, the check on paper [m]; NaN from fewer than three.
+    """
+
+    fits: bool
+    message: str = ""
+    east: float = nan
+    north: float = nan
+    covariance: Array
+    period: float = nan
+    u_period: float = nan
+    decay: float = nan
+    amplitude: float = nan
+    width: float = nan
+    swings: float = 0.0
+    widening: float = nan
+    schuler_east: float = nan
+    schuler_north: float = nan
+
+    @property
+    def u_east(self) -> float:
+        """Standard uncertainty of `east` [m]."""
+        return sqrt(float(self.covariance[0, 0]))
+
+    @property
+    def u_north(self) -> float:
+        """Standard uncertainty of `north` [m]."""
+        return sqrt(float(self.covariance[1, 1]))
+
+    @property
+    def period_s(self) -> float:
+        """`period` [s]."""
+        return self.period
+
+    @property
+    def decay_s(self) -> float:
+        """`decay` [s]."""
+        return self.decay
+
+    def swings_needed(self, for_uncertainty: float) -> float:
+        """Full swings after which both standard uncertainties should be under a value.
+
+        Parameters
+        ----------
+        for_uncertainty : float
+            [m], more than 0.
+
+        Returns
+        -------
+        float
+            Counted from the first reading; what has been seen where it is good enough already. NaN if the model
+            does not fit.
+
+        Raises
+        ------
+        ParameterError
+            If `for_uncertainty` is not positive.
+
+        Notes
+        -----
+        u falls with one over the root of the time once 1.5 swings are seen.
+        """
+        if not for_uncertainty > 0.0:
+            raise ParameterError("for_uncertainty", for_uncertainty, "m", "more than 0 m")
+        worst = max(self.u_east, self.u_north)
+        return self.swings * max(1.0, (worst / for_uncertainty) ** 2)
+
+
+class RestPointTracker:
+    """Rest point from a stream of positions.
+
+    Rows are averaged over fixed stretches of time, at least 16 in a swing, of which 1024 are kept: an hour or more
+    of a long line. When they are full, neighbours are joined as far as that allows, then the oldest are dropped; so
+    cost and memory are bounded. An estimate rests on the rows alone, not on how they were cut into blocks; two
+    trackers asked at the same rows give the same answers. Rows with a missing or earlier time or a missing
+    position are left out. Copy it with `copy.deepcopy`.
+
+    Parameters
+    ----------
+    latitude : float
+        φ [rad].
+    length : float, optional
+        Of the line [m]: gives the period to expect, and the finding that the line may be touching.
+    gravity : float
+        g [m/s²].
+    period : float, optional
+        Of the free line [s], where it is known better than 2π√(L/g): see `hung.free_period`.
+    u_period : float
+        Relative standard uncertainty of that [1].
+
+    Raises
+    ------
+    ParameterError
+        If a number is outside its range.
+    """
+
+    def __init__(
+        self,
+        latitude: float,
+        length: float | None = None,
+        gravity: float = 9.80665,
+        period: float | None = None,
+        u_period: float = 0.005,
+    ) -> None:
+        _check("latitude", abs(latitude) <= pi / 2, latitude, "rad", "-pi/2 to pi/2")
+        _check("length", length is None or 0.0 < length < inf, length, "m", "more than 0 m")
+        _check("gravity", gravity > 0.0, gravity, "m/s²", "more than 0 m/s²")
+        _check("period", period is None or 0.0 < period < inf, period, "s", "more than 0 s")
+        self.turn = EARTH_ROTATION * float(np.sin(latitude))
+        self.length = length
+        self.period = 2.0 * pi * sqrt(length / gravity) if period is None and length is not None else period
+        self.u_period = u_period
+        width = _UNKNOWN_WIDTH if self.period is None else self.period / _PER_SWING[0]
+        self._bins = TimeBins(width, 2)
+        self._widest = None if self.period is None else int(log2(_PER_SWING[0] / _PER_SWING[1]))
+        self._store = np.empty((7, 0))  # number, level, count, time, spread, east, north
+        self._latest = -inf
+        self._last: Fit | None = None
+        self._rows = self._searched = 0.0  # readings behind the last fit and the last search
+
+    def update(self, time: npt.ArrayLike, east: npt.ArrayLike, north: npt.ArrayLike) -> None:
+        """Take rows.
+
+        Parameters
+        ----------
+        time : array_like, shape (n,)
+            [s].
+        east, north : array_like, shape (n,)
+            Position of the bob [m].
+
+        Raises
+        ------
+        ParameterError
+            If the three differ in length.
+        """
+        rows = [np.atleast_1d(np.asarray(one, dtype=np.float64)) for one in (time, east, north)]
+        if len({one.shape for one in rows}) != 1:
+            raise ParameterError(
+                "east, north", (rows[1].shape, rows[2].shape), "", f"the shape of time, {rows[0].shape}"
+            )
+        block = np.stack(rows)
+        good = np.isfinite(block).all(axis=0)
+        highest = np.maximum.accumulate(np.where(good, block[0], -inf))
+        good &= block[0] >= np.maximum(highest, self._latest)
+        if good.any():
+            block = block[:, good]
+            self._latest = float(block[0, -1])
+            self._append(self._bins.add(block[0], block[1:])[1])
+
+    def _append(self, closed: Bins) -> None:
+        fresh = np.stack(
+            [
+                closed.number,
+                np.zeros_like(closed.time),
+                closed.count,
+                closed.time,
+                closed.spread,
+                *closed.means,
+            ]
+        )
+        while fresh.shape[1]:
+            room = _CAPACITY - self._store.shape[1]
+            self._store = np.concatenate([self._store, fresh[:, :room]], axis=1)
+            fresh = fresh[:, room:]
+            if self._store.shape[1] == _CAPACITY:
+                self._make_room()
+
+    def _make_room(self) -> None:
+        """Join neighbours, the lowest level first, and drop the oldest where that does not help."""
+        if self._widest is None:
+            self._widest = self._widest_level()
+        for level in range(self._widest):
+            if self._store.shape[1] > 0.875 * _CAPACITY:
+                self._store = _joined(self._store, level)
+        if self._store.shape[1] > 0.875 * _CAPACITY:
+            self._store = self._store[:, _CAPACITY // 4 :].copy()
+
+    def _widest_level(self) -> int:
+        """How often bins may be doubled when only the readings tell the period."""
+        fit, _ = search(self.samples(), self.turn, None)
+        return max(int(log2(2.0 * pi / fit.omega / _PER_SWING[1] / self._bins.width)), 0)
+
+    def samples(self) -> Samples:
+        """Return the kept stretches and the open one, time counting from near the first row."""
+        held = self._bins.open_bin()
+        last = np.stack([held.number, held.number, held.count, held.time, held.spread, *held.means])
+        _, _, count, time, spread, east, north = np.concatenate([self._store, last], axis=1)
+        return Samples(time=time, spread=spread, weight=count, value=east + 1j * north)
+
+    def estimate(self) -> RestPoint | None:
+        """Give the rest point as it stands.
+
+        Returns
+        -------
+        RestPoint or None
+            None before 1.5 swings, or where there are too few readings for the model; from then on a result
+            whose `fits` says whether it holds.
+
+        Notes
+        -----
+        The model is a damped spherical pendulum on the turning Earth,
+        ζ(t) = c + e^(-γt) e^(-iΩt) (A e^(iωt) + B e^(-iωt)), ζ = east + i north, Ω = ω_E sin φ, with the turning
+        of the ellipse by its own width (`airy_precession`) taken off Ω where the length is known.
+
+        References
+        ----------
+        Sommerville, W. B. (1972), Quarterly Journal of the Royal Astronomical Society 13, 40-62 (the pendulum of
+        Foucault and its ellipse).
+        """
+        samples = self.samples()
+        enough = FEWEST_SWINGS * (self.period or 0.0)
+        if samples.time.size < 12 or samples.duration < enough * (1.0 - 1.0 / _PER_SWING[0]):
+            return None
+        fit, settled = self._fit(samples)
+        swings = samples.duration * fit.omega / (2.0 * pi)
+        if not swing_stands_out(samples, fit):
+            return _at_rest(samples)
+        if self.period is None and swings < FEWEST_SWINGS * 0.97:
+            return None
+        scatter = rest_point_scatter(samples, fit)
+        trouble = self._trouble(samples, fit, settled, scatter)
+        if trouble:
+            return RestPoint(fits=False, message=trouble, covariance=np.full((2, 2), nan), swings=swings)
+        return self._result(samples, fit, scatter, swings)
+
+    def _fit(self, samples: Samples) -> tuple[Fit, bool]:
+        """Go on from the last fit; search afresh where that is poor, but not again before the record has grown."""
+        rows = float(samples.weight.sum())
+        if self._last is not None and rows < 2.0 * self._rows:
+            fit, settled = refine(
+                samples, self.turn - self._airy(self._last), self._last.omega, self._last.gamma
+            )
+            as_good = settled and fit.cost / rows <= 2.0 * self._last.cost / self._rows
+            if as_good or rows < 1.25 * self._searched:
+                return self._remember(fit, rows), settled
+        self._searched = rows
+        fit, settled = search(samples, self.turn, None if self.period is None else 2.0 * pi / self.period)
+        if self._airy(fit):
+            fit, settled = refine(samples, self.turn - self._airy(fit), fit.omega, fit.gamma)
+        return self._remember(fit, rows), settled
+
+    def _remember(self, fit: Fit, rows: float) -> Fit:
+        self._last, self._rows = fit, rows
+        return fit
+
+    def _airy(self, fit: Fit) -> float:
+        """Return the turn of the ellipse by its own width, mid record [rad/s], anticlockwise positive."""
+        if self.length is None:
+            return 0.0
+        major, minor = axes(fit.forward, fit.backward)
+        return float(airy_precession(self.length, major, minor, 2.0 * pi / fit.omega))
+
+    def _trouble(self, samples: Samples, fit: Fit, settled: bool, scatter: Scatter) -> str:
+        """Say why the readings are not a free swing; empty if they may be one."""
+        swing = np.sqrt(
+            np.average(np.abs(samples.value - fit.residual - fit.centre) ** 2, weights=samples.weight)
+        )
+        left = sqrt(fit.cost / samples.weight.sum())
+        period = 2.0 * pi / fit.omega
+        if not settled:
+            return "no free swing fits the readings: the search found no best period"
+        if scatter.colour > 0.5 and left > _POOR * swing:
+            sizes = f"{1e3 * left:.1f} mm are left over of a swing of {1e3 * swing:.1f} mm rms"
+            return f"no free swing fits the readings: {sizes}"
+        if self.period is not None and not 0.6 < period / self.period < 1.6:
+            return f"the period of {period:.1f} s is not that of the free line, {self.period:.1f} s"
+        if harmonic(samples, fit) > _BENT:
+            return "the swing is bent as if the line met something on the way: no rest point from it"
+        return ""
+
+    def _result(self, samples: Samples, fit: Fit, scatter: Scatter, swings: float) -> RestPoint:
+        age = float(samples.time[-1]) - fit.middle
+        shrunk = np.exp(-fit.gamma * age)
+        major, minor = axes(fit.forward * shrunk, fit.backward * shrunk)
+        u_omega = self._u_omega(samples, fit, scatter)
+        period = 2.0 * pi / fit.omega
+        u_period = period * u_omega / fit.omega
+        schuler = schuler_rest(samples, fit)
+        return RestPoint(
+            fits=True,
+            message="; ".join(self._notes(period, u_period, major, scatter)),
+            east=fit.centre.real,
+            north=fit.centre.imag,
+            covariance=scatter.covariance,
+            period=period,
+            u_period=u_period,
+            decay=1.0 / fit.gamma if fit.gamma > 0.0 else nan,
+            amplitude=major,
+            width=minor,
+            swings=swings,
+            widening=scatter.widening,
+            schuler_east=schuler.real,
+            schuler_north=schuler.imag,
+        )
+
+    @staticmethod
+    def _u_omega(samples: Samples, fit: Fit, scatter: Scatter) -> float:
+        """Return the standard uncertainty of ω [rad/s], widened as that of the rest point."""
+        freedom = max(2.0 * samples.time.size - 8.0, 1.0)
+        return float(scatter.widening * sqrt(fit.cost / freedom * max(fit.inverse[0, 0], 0.0)))
+
+    def _notes(self, period: float, u_period: float, amplitude: float, scatter: Scatter) -> list[str]:
+        notes = []
+        if self.period is not None and period < self.period * (1.0 - 2.0 * self.u_period) - 2.0 * u_period:
+            notes.append(
+                f"the line may be touching: it swings in {0.5 * period:.2f} s from side to side, "
+                f"free it would take {0.5 * self.period:.2f} s"
+            )
+        if self.length is not None and amplitude > LARGE_ANGLE * self.length:
+            notes.append(
+                f"large swing: {amplitude / self.length:.2f} rad to each side, the model is for small ones"
+            )
+        if scatter.colour > 0.5:
+            notes.append(
+                f"irregular air or a moving rest point: uncertainty widened {scatter.widening:.1f} times"
+            )
+        return notes
+
+
+def _check(name: str, ok: bool, value: object, unit: str, expected: str) -> None:
+    if not ok:
+        raise ParameterError(name, value, unit, expected)
+
+
+def _joined(store: Array, level: int) -> Array:
+    """Join bins of one level that are halves of the same wider one."""
+    number, levels = store[0], store[1]
+    wide = np.where(levels == level, np.floor(number / 2.0), np.nan)
+    starts = np.flatnonzero(np.concatenate([[True], wide[1:] != wide[:-1]]))  # NaN differs from itself
+    count = np.add.reduceat(store[2], starts)
+    means = np.add.reduceat(store[2] * store[3:], starts, axis=1) / count
+    parent = np.repeat(np.arange(starts.size), np.diff(np.append(starts, number.size)))
+    about = store[2] * (store[3] - means[0, parent]) ** 2
+    means[1] += np.add.reduceat(about, starts) / count
+    risen = levels[starts] + (levels[starts] == level)
+    kept = np.where(levels[starts] == level, wide[starts], number[starts])
+    return np.concatenate([[kept, risen, count], means])
+
+
+def _at_rest(samples: Samples) -> RestPoint:
+    """Mean of readings in which no swing can be seen."""
+    mean = complex(np.average(samples.value, weights=samples.weight))
+    residual = samples.value - mean
+    fit = Fit(
+        middle=float(samples.time[0]),
+        centre=mean,
+        forward=0j,
+        backward=0j,
+        omega=0.0,
+        gamma=0.0,
+        turn=0.0,
+        residual=residual,
+        cost=float(np.sum(samples.weight * np.abs(residual) ** 2)),
+        basis=np.ones((1, samples.time.size), dtype=np.complex128),
+        slopes=np.empty((0, samples.time.size), dtype=np.complex128),
+        normal=np.empty((0, 0)),
+    )
+    scatter = rest_point_scatter(samples, fit)
+    return RestPoint(
+        fits=True,
+        message="no swing stands out of the readings: the rest point is their mean",
+        east=mean.real,
+        north=mean.imag,
+        covariance=scatter.covariance,
+        widening=scatter.widening,
+    )
