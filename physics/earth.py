@@ -197,14 +197,18 @@ def prime_vertical_radius(latitude: npt.ArrayLike, ellipsoid: Ellipsoid = WGS84)
     return radius
 
 
-def plumbline_curvature(latitude: npt.ArrayLike, ellipsoid: Ellipsoid = WGS84) -> Array:
-    """Curvature of the plumb line of normal gravity at the ellipsoid.
+def plumbline_curvature(
+    latitude: npt.ArrayLike, ellipsoid: Ellipsoid = WGS84, height: npt.ArrayLike = 0.0
+) -> Array:
+    """Curvature of the plumb line of normal gravity on and near the ellipsoid.
 
     Parameters
     ----------
     latitude : array_like
         φ [rad].
     ellipsoid : Ellipsoid
+    height : array_like
+        h above the ellipsoid [m]; broadcasts with `latitude`.
 
     Returns
     -------
@@ -219,18 +223,23 @@ def plumbline_curvature(latitude: npt.ArrayLike, ellipsoid: Ellipsoid = WGS84) -
 
     Notes
     -----
-    κ = (1/γ)(1/M) dγ/dφ with dγ/dφ taken along the level surface, here the ellipsoid itself; Somigliana's
-    formula differentiated gives κ = (s c/M) [2k/(1 + k s²) + e²/(1 - e² s²)], s = sin φ, c = cos φ.
+    κ = (1/γ)(1/M) dγ/dφ with dγ/dφ taken along the level surface. On the ellipsoid Somigliana's formula gives
+    γ'/γ = s c [2k/(1 + k s²) + e²/(1 - e² s²)], s = sin φ, c = cos φ. At height h the level surface falls by
+    h γ'/γ per radian toward the pole, to first order in h, and γ there is that of `normal_gravity`.
 
     References
     ----------
     Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, section 2-1 (curvature of the plumb line).
     """
     phi = _checked_latitude(latitude)
+    h, a, f = np.asarray(height, dtype=np.float64), ellipsoid.semimajor_axis, ellipsoid.flattening
     s, c = np.sin(phi), np.cos(phi)
     k, e2 = ellipsoid.somigliana, ellipsoid.eccentricity_squared
-    bracket = 2.0 * k / (1.0 + k * s**2) + e2 / (1.0 - e2 * s**2)
-    curvature: Array = s * c * bracket / meridian_radius(phi, ellipsoid)
+    growth = s * c * (2.0 * k / (1.0 + k * s**2) + e2 / (1.0 - e2 * s**2))
+    lapse = 2.0 * (1.0 + f + ellipsoid.gravity_ratio - 2.0 * f * s**2) / a - 6.0 * h / a**2
+    shrunk = normal_gravity(phi, h, ellipsoid) / normal_gravity(phi, 0.0, ellipsoid)
+    along_level = growth * (shrunk + lapse * h) + 8.0 * f * s * c * h / a
+    curvature: Array = along_level / (shrunk * (meridian_radius(phi, ellipsoid) + h))
     return curvature
 
 

@@ -40,6 +40,9 @@ class LocalField:
     ----------
     latitude : float
         Geodetic [rad], north positive.
+    plumb_latitude : float
+        Angle of the plumb line at the collar against the plane of the equator [rad]; above the ellipsoid its
+        curvature makes it larger than `latitude`.
     gravity : float
         |g| at the collar [m/s²].
     curvature : float
@@ -59,6 +62,7 @@ class LocalField:
     """
 
     latitude: float
+    plumb_latitude: float
     gravity: float
     curvature: float
     meridian_radius: float
@@ -221,11 +225,13 @@ def local_field(site: Site, *, ellipsoid: Ellipsoid = WGS84) -> LocalField:
         If a layer or a deflection is unusable: see `assemble_field`.
     """
     phi = site.latitude
+    curvature = float(plumbline_curvature(phi, ellipsoid, site.elevation))
     normal = float(normal_gravity(phi, site.elevation, ellipsoid))
     return assemble_field(
         latitude=phi,
         gravity=normal if site.gravity is None else site.gravity,
-        curvature=float(plumbline_curvature(phi, ellipsoid)),
+        plumb_latitude=phi + curvature * site.elevation,
+        curvature=curvature,
         meridian_radius=float(meridian_radius(phi, ellipsoid)) + site.elevation,
         prime_vertical_radius=float(prime_vertical_radius(phi, ellipsoid)) + site.elevation,
         rock_density=site.rock_density,
@@ -242,6 +248,7 @@ def assemble_field(
     prime_vertical_radius: float,
     rock_density: Layers = ((0.0, 2670.0),),
     deflections: Deflections = (),
+    plumb_latitude: float | None = None,
 ) -> LocalField:
     """Field of gravity from its parts, for an Earth that need not be an ellipsoid.
 
@@ -259,6 +266,8 @@ def assemble_field(
         (from depth [m], density [kg/m³]), rising; open air above the first.
     deflections : sequence of (float, float, float)
         (depth [m], north [rad], east [rad]) of the lower vertical against that at the collar, rising.
+    plumb_latitude : float, optional
+        [rad]; by default `latitude`.
 
     Returns
     -------
@@ -279,6 +288,7 @@ def assemble_field(
         array.setflags(write=False)
     return LocalField(
         latitude=latitude,
+        plumb_latitude=latitude if plumb_latitude is None else plumb_latitude,
         gravity=gravity,
         curvature=curvature,
         meridian_radius=meridian_radius,

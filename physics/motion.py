@@ -190,7 +190,7 @@ class Forces:
         self.variation = variation
         self.air = None if body is None or air is None or air.is_vacuum else air
         self.body = body
-        latitude = field.latitude + np.asarray(variation.latitude, dtype=np.float64)
+        latitude = field.plumb_latitude + np.asarray(variation.latitude, dtype=np.float64)
         self.coriolis_sine = 2.0 * EARTH_ROTATION * np.sin(latitude)
         self.coriolis_cosine = 2.0 * EARTH_ROTATION * np.cos(latitude)
         self.spin = (
