@@ -58,7 +58,8 @@ def rest_point_scatter(samples: Samples, fit: Fit) -> Scatter:
     The residuals are averaged over 24 equal stretches, 40 for less than four swings. Their covariance is taken as
     s² [(1 - r) I + r e^(-|Δt|/τ)], the part r of the variance having a memory τ of one stretch to the whole record.
     Every pair (r, τ) of a grid is weighed by its restricted likelihood, which allows for what the fit has absorbed;
-    s² is found for east and north apart. The covariance is the weighted mean of those of the least-squares estimate under each pair.
+    s² is found for east and north apart. The covariance is the weighted mean of those of the least-squares estimate
+    under each pair.
 
     References
     ----------

@@ -136,7 +136,8 @@ class RestPointTracker:
     latitude : float
         φ [rad].
     length : float, optional
-        Of the line [m]: gives the period to expect, and the finding that the line may be touching.
+        Of the line [m]: gives the period to expect, and the finding that the line may be touching. 0, a bob at the
+        suspension, counts as unknown.
     gravity : float
         g [m/s²].
     period : float, optional
@@ -159,10 +160,11 @@ class RestPointTracker:
         u_period: float = 0.005,
     ) -> None:
         _check("latitude", abs(latitude) <= pi / 2, latitude, "rad", "-pi/2 to pi/2")
-        _check("length", length is None or 0.0 < length < inf, length, "m", "more than 0 m")
+        _check("length", length is None or 0.0 <= length < inf, length, "m", "0 m or more")
         _check("gravity", gravity > 0.0, gravity, "m/s²", "more than 0 m/s²")
         _check("period", period is None or 0.0 < period < inf, period, "s", "more than 0 s")
         self.turn = EARTH_ROTATION * float(np.sin(latitude))
+        length = length or None
         self.length = length
         self.period = 2.0 * pi * sqrt(length / gravity) if period is None and length is not None else period
         self.u_period = u_period
