@@ -66,8 +66,8 @@ class AirColumn:
 
         Notes
         -----
-        dp/dz = ρ g with p = ρ R T: p = p₀ (T/T₀)^(ḡ/(R β)), or p₀ exp(ḡ z/(R T₀)) where β = 0, ḡ the mean of g
-        at the collar and at z (over 4 km g changes by a thousandth, so its curvature is not felt).
+        dp/dz = ρ g with p = ρ R T and g = g₀ + (g(z) - g₀) z'/z along the way:
+        p = p₀ exp[(g₀ A + (g(z) - g₀) B) z/(R T₀)] with A = ln(1 + x)/x, B = (1 - A)/x, x = β z/T₀; for constant g that is p₀ (T/T₀)^(g/(R β)).
 
         References
         ----------
@@ -75,11 +75,13 @@ class AirColumn:
         """
         z = np.asarray(depth, dtype=np.float64)
         top = self.settings.density * GAS_CONSTANT * self.settings.temperature
-        mean_gravity = 0.5 * (self.field.gravity + self.field.gravity_at(z))
-        ratio = self.settings.temperature_gradient * z / self.settings.temperature
-        # log1p(x)/x is 1 at 0, so that one expression serves with and without a gradient.
-        bent = np.divide(np.log1p(ratio), ratio, out=np.ones_like(ratio), where=ratio != 0.0)
-        value: Array = top * np.exp(mean_gravity * z / (GAS_CONSTANT * self.settings.temperature) * bent)
+        x = self.settings.temperature_gradient * z / self.settings.temperature
+        level = np.divide(np.log1p(x), x, out=np.ones_like(x), where=x != 0.0)
+        # Near x = 0 the difference 1 - A loses its digits; there B is its series.
+        small = np.abs(x) < 1e-4
+        growing = np.where(small, 0.5 - x / 3.0, (1.0 - level) / np.where(small, 1.0, x))
+        pull = self.field.gravity * level + (self.field.gravity_at(z) - self.field.gravity) * growing
+        value: Array = top * np.exp(pull * z / (GAS_CONSTANT * self.settings.temperature))
         return value
 
     def density(self, depth: npt.ArrayLike) -> Array:

@@ -70,7 +70,8 @@ def morrison(reynolds: npt.ArrayLike) -> Array:
     Notes
     -----
     Between Re 1e5 and 1e6 measured spheres differ from one another by far more than this curve's own error: the
-    place of the crisis depends on surface, spin and turbulence.
+    place of the crisis depends on surface, spin and turbulence. Below it the curve lies up to 13 % under measured
+    spheres (Re 6e4) and 15 % at Re 3; the tests hold it to that.
 
     References
     ----------
