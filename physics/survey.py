@@ -5,7 +5,7 @@ and cleared, and the whole run is kept. Time comes in with the readings, so a re
 """
 
 from collections import Counter
-from math import inf, isfinite
+from math import isfinite
 
 import numpy as np
 from numpy.typing import NDArray
@@ -72,9 +72,10 @@ class Survey:
         self._stations: dict[int, Station] = {}
         self._changes: list[AlarmChange] = []
         self._frames = 0
-        self._time = -inf
-        self._host_time = -inf
+        # Time, host time and depth of the newest reading, used or not.
+        self._newest: Array = np.full(3, np.nan)
         self._row: Array | None = None
+        self._values: dict[str, float] = {}
         self._closed = False
 
     @property
@@ -99,8 +100,9 @@ class Survey:
         """
         if not len(readings):
             return Findings(rows=Rows.none())
-        silence = self._silences(readings)
         readings = self._on_one_clock(readings)
+        silence = self._silences(readings)
+        self._newest = readings.data[:3, -1].copy()
         batch = self._kind.feed(readings)
         self._frames += len(batch.rows)
         changes = [*silence, *self._judge(batch)]
@@ -108,15 +110,11 @@ class Survey:
         return Findings(rows=batch.rows, stations=batch.stations, alarms=tuple(changes))
 
     def _on_one_clock(self, readings: Readings) -> Readings:
-        """Let time never fall, and remember how the two clocks stand."""
+        """Let time never fall."""
         time = readings.time
         if np.isnan(time).all():
             return readings
-        held = np.maximum(np.fmax.accumulate(time), self._time)
-        self._time = float(held[-1])
-        host = readings.host_time[-1]
-        if isfinite(host):
-            self._host_time = float(host)
+        held = np.fmax(np.fmax.accumulate(time), self._newest[0])
         if np.array_equal(held, time):
             return readings
         data = readings.data.copy()
@@ -125,18 +123,25 @@ class Survey:
 
     def _silences(self, readings: Readings) -> list[AlarmChange]:
         """Raise and return the silent-feed alarm for every gap before and inside a block."""
-        host = readings.host_time
-        if not self._feed_watched or not np.isfinite(host).all():
+        rows = np.concatenate([self._newest[:, None], readings.data[:3]], axis=1)
+        if not self._feed_watched or not np.isfinite(rows[1, 1:]).all():
             return []
+        if np.isnan(rows[1, 0]):
+            # Before the first reading the feed is reckoned from the start of the run, on the host's clock alone.
+            rows[:2, 0] = 0.0
         limit = self.assumptions.limits.feed_silent
-        before = max(self._host_time, 0.0)
-        gaps = np.flatnonzero(np.diff(host, prepend=before) > limit)
         changes: list[AlarmChange] = []
-        for gap in gaps.tolist():
-            since = float(host[gap - 1]) if gap else before
-            changes += self._edge(SILENT, since + limit, on=True, message=f"no reading for {limit:g} s")
-            changes += self._edge(SILENT, float(host[gap]), on=False, message="readings again")
+        for gap in np.flatnonzero(np.diff(rows[1]) > limit).tolist():
+            for row, host, on in (
+                (rows[:, gap], rows[1, gap] + limit, True),
+                (rows[:, gap + 1], rows[1, gap + 1], False),
+            ):
+                changes += self._silence(row, float(host), on=on)
         return changes
+
+    def _silence(self, row: Array, host_time: float, *, on: bool) -> list[AlarmChange]:
+        message = f"no reading for {self.assumptions.limits.feed_silent:g} s" if on else "readings again"
+        return self._edge(SILENT, host_time, on=on, message=message, row=row)
 
     def _judge(self, batch: Batch) -> list[AlarmChange]:
         """Hold the rows of a block against the limits."""
@@ -145,7 +150,7 @@ class Survey:
         rows, limits = batch.rows.data, self.assumptions.limits
         time = rows[ROW["time"]]
         if np.isnan(time).any():
-            time = np.full(time.shape, self._time if self._time > -inf else 0.0)
+            time = np.full(time.shape, np.nan_to_num(self._newest[0]))
         length = np.hypot(batch.judged[0], batch.judged[1])
         changes: list[AlarmChange] = []
         for name, row in ((ACTION, "action"), (WARNING, "warning")):
@@ -184,27 +189,30 @@ class Survey:
         for one in changes:
             at = int(np.searchsorted(time, one.time, side="right")) - 1
             row = rows[:, at] if at >= 0 or self._row is None else self._row
-            shown = f", {value[at] * _MM:.1f} mm" if at >= 0 and isfinite(value[at]) else ""
+            held = float(value[at]) if at >= 0 else self._values.get(name, float("nan"))
+            shown = f", {held * _MM:.1f} mm" if isfinite(held) else ""
             depth = float(row[ROW["depth"]])
             message = f"{name} at {depth:.1f} m{shown}"
             self._messages[name] = message
             told.append(
                 AlarmChange(time=one.time, depth=depth, name=name, old=one.old, new=one.new, message=message)
             )
+        self._values[name] = float(value[-1])
         return told
 
-    def _edge(self, name: str, host_time: float, *, on: bool, message: str) -> list[AlarmChange]:
+    def _edge(
+        self, name: str, host_time: float, *, on: bool, message: str, row: Array | None = None
+    ) -> list[AlarmChange]:
         alarm = self._edge_alarms.setdefault(name, Alarm(Rule(name=name)))
         if alarm.standing == on:
             return []
         self._messages[name] = message
-        return self._dated(alarm.set(host_time, on=on), name)
+        return self._dated(alarm.set(host_time, on=on), name, row)
 
-    def _dated(self, changes: list[Change], name: str) -> list[AlarmChange]:
-        """Move transitions on the host's clock to the readings' clock."""
-        apart = self._host_time - self._time
-        apart = apart if isfinite(apart) else 0.0
-        depth = float(self._row[ROW["depth"]]) if self._row is not None else float("nan")
+    def _dated(self, changes: list[Change], name: str, row: Array | None = None) -> list[AlarmChange]:
+        """Move transitions on the host's clock to the readings' clock, by a reading's time, host time and depth."""
+        time, host, depth = (self._newest if row is None else row).tolist()
+        apart = host - time if isfinite(host - time) else 0.0
         message = self._messages.get(name, "")
         return [
             AlarmChange(
@@ -234,9 +242,10 @@ class Survey:
         """
         changes: list[AlarmChange] = []
         limit = self.assumptions.limits.feed_silent
-        silent_from = max(self._host_time, 0.0) + limit
-        if self._feed_watched and host_time > silent_from:
-            changes += self._edge(SILENT, silent_from, on=True, message=f"no reading for {limit:g} s")
+        before = float(np.nan_to_num(self._newest[1]))
+        if self._feed_watched and host_time - before > limit:
+            row = self._newest if isfinite(self._newest[1]) else np.array([0.0, 0.0, np.nan])
+            changes += self._silence(row, before + limit, on=True)
         for name, alarm in self._edge_alarms.items():
             changes += self._dated(alarm.tick(host_time), name)
         return self._keep((), changes)
@@ -297,7 +306,7 @@ class Survey:
     def _named(self, name: str, host_time: float) -> tuple[Alarm, float]:
         """Return an alarm and the instant on its own clock."""
         if name in self._limit_alarms:
-            return self._limit_alarms[name], self._time if self._time > -inf else 0.0
+            return self._limit_alarms[name], float(np.nan_to_num(self._newest[0]))
         if name in self._edge_alarms:
             return self._edge_alarms[name], host_time
         raise ParameterError(
@@ -345,7 +354,7 @@ class Survey:
         length, u = horizontal(east, north, now.u_east, now.u_north)
         direction = self._row[ROW["direction"]]
         return Standing(
-            time=self._time if self._time > -inf else float("nan"),
+            time=float(self._newest[0]),
             depth=float(self._row[ROW["depth"]]),
             speed=float(self._row[ROW["speed"]]),
             passing=int(self._row[ROW["passing"]]),

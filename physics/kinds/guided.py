@@ -59,6 +59,7 @@ class Guided:
         self._passes = Passes(turn, assumptions.shaft.depth / 2.0)
         self._start: tuple[float, Array] | None = None
         self._ridden = 0.0
+        self._ridden_to: float | None = None
         self._last: Array | None = None
         self._extreme: Array | None = None
         self._taken = 0
@@ -124,18 +125,20 @@ class Guided:
     def _ride(self, depth: Array, speed: Array, acceleration: Array) -> Array:
         """Return ∫ ε dz so far at each row [m]: how far west a plumb guide seems to have gone.
 
-        The speed of a row is that of the step that led to it. Where it is not known yet (the first fractions of a
-        second of a run) the line is taken as standing.
+        The speed of a row is that of the step that led to it. While it is not known yet (the first fractions of a
+        second of a run) steps are kept waiting for the first speed that is.
         """
         site, gravity = self._assumptions.site, self._curve.models.field.gravity
         felt = gravity - np.clip(np.nan_to_num(acceleration), -0.5 * gravity, 0.5 * gravity)
-        angle = lean(np.nan_to_num(speed), site.latitude, felt)
-        before = depth[0] if self._last is None else self._last[1]
-        terms = np.empty(depth.size + 1)
+        known = np.isfinite(speed)
+        angle = lean(speed[known], site.latitude, felt[known])
+        before = self._ridden_to if self._ridden_to is not None else depth[0]
+        terms = np.zeros(depth.size + 1)
         terms[0] = self._ridden
-        np.multiply(angle, np.diff(depth, prepend=before), out=terms[1:])
+        terms[1:][known] = angle * np.diff(depth[known], prepend=before)
         ridden = np.cumsum(terms)[1:]
         self._ridden = float(ridden[-1])
+        self._ridden_to = float(depth[known][-1]) if known.any() else float(before)
         return ridden
 
     def _parts(self, depth: Array, east: Array, north: Array, weight: Array) -> Array:

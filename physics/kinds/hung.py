@@ -33,6 +33,8 @@ _FIRST_ESTIMATE = 1.0
 _LATER = 0.02
 """The rest point is worked out anew after a second, later after a fiftieth of the time spent at the level: its
 uncertainty shrinks no faster, and the cost of an hour stays bounded."""
+_SETTLED = 2.0
+"""A line that runs on sooner than this has made no halt [s]."""
 _QUIET = 3.0
 """Readings that scatter by less than this many times their own uncertainty show a bob at rest."""
 
@@ -150,6 +152,8 @@ class Hung:
         while start < rows.shape[1]:
             depth = rows[ROW["depth"], start:]
             if running[start]:
+                if self._level is not None and self._level.time - self._level.began < _SETTLED:
+                    self._level = None
                 stations += self._leave()
                 stay = _run_length(running[start:])
                 part = slice(start, start + stay)
@@ -293,14 +297,14 @@ class Hung:
         if rest is None:
             return None
         return RestPoint(
-            east=rest.east,
-            north=rest.north,
-            u_east=rest.u_east,
-            u_north=rest.u_north,
+            east=float(rest.east),
+            north=float(rest.north),
+            u_east=float(rest.u_east),
+            u_north=float(rest.u_north),
             covariance_east_north=float(rest.covariance[0, 1]),
-            period=rest.period_s,
-            decay=rest.decay_s,
-            swings=rest.swings,
+            period=float(rest.period_s),
+            decay=float(rest.decay_s),
+            swings=float(rest.swings),
             fits=rest.fits,
             message=rest.message,
         )

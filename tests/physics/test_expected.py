@@ -1,0 +1,157 @@
+"""The expected curve: against hand formulas, its own models, and perturbation by another road."""
+
+from dataclasses import replace
+from math import cos, radians
+
+import numpy as np
+import pytest
+
+from eastfall.physics.expected import Models, expected_curve, reach
+from eastfall.physics.settings import Air, Line, Run, Site
+
+OMEGA = 7.292115e-5  # GRS80, Moritz (1980)
+DEPTHS = np.array([0.0, 3.7, 50.0, 123.4, 299.0, 300.0])
+
+
+@pytest.mark.published
+def test_a_probe_at_ten_metres_a_second_at_sixty_degrees_seems_to_lean_west_by_74_mm_per_km(shaft):
+    """ε = 2ωv cos φ/g: 74 µrad at 10 m/s and 60°, so 74 mm west at 1000 m going down and 149 mm between the passes.
+
+    The formula is the Coriolis acceleration over gravity (any mechanics text); the numbers are a calculation.
+    """
+    curve = expected_curve(shaft(latitude=60.0, depth=1000.0))
+    down = curve.expected([1000.0], 10.0)[0, 0]
+    up = curve.expected([1000.0], -10.0)[0, 0]
+    assert down * 1e3 == pytest.approx(-74.3, abs=0.05)
+    assert (up - down) * 1e3 == pytest.approx(148.6, abs=0.1)
+
+
+def test_a_plumb_guide_shows_the_curved_vertical_with_the_opposite_sign(shaft):
+    """Tilt is summed from the field line: at 1 km and 45° a plumb guide shows -½κz², 0.415 mm toward the equator.
+
+    κ = 0.1713"/km from GRS80 (calculation; Heiskanen & Moritz print -0.17"/km, from memory).
+    """
+    curve = expected_curve(shaft(latitude=45.0, depth=1000.0))
+    east, north = curve.expected([1000.0])[:, 0]
+    assert north * 1e3 == pytest.approx(-0.415, abs=0.001)
+    assert east == 0.0
+
+
+@pytest.mark.parametrize("hemisphere", [1.0, -1.0])
+def test_the_reference_lines_convert_into_each_other_exactly(shaft, hemisphere):
+    """Against the field line a bob and a body are where they are against the straight vertical, less the field line."""
+    base = shaft("hung", latitude=hemisphere * 57.3)
+    curves = {
+        name: expected_curve(replace(base, run=Run(kind="hung", reference=name)))
+        for name in ("straight", "field-line", "hung-line")
+    }
+    straight = curves["straight"]
+    for name in ("field-line", "hung-line"):
+        other = curves[name]
+        for table in ("bob", "body", "field_line"):
+            moved = getattr(straight, table) - other.reference
+            np.testing.assert_allclose(getattr(other, table), moved, atol=1e-15)
+    assert np.all(curves["hung-line"].plumb == 0.0)
+    assert np.all(curves["field-line"].field_line == 0.0)
+
+
+@pytest.mark.parametrize("kind", ["guided", "hung", "drop"])
+def test_interpolation_is_within_a_micrometre_of_the_models_to_four_kilometres(shaft, kind):
+    """Looking a depth up in the table gives what the models give there, to 1 µm."""
+    base = shaft(kind, depth=4000.0)
+    curve, models = expected_curve(base), Models.of(base)
+    depth = np.concatenate([np.linspace(0.0, 3.0, 301), np.linspace(3.0, 4000.0, 1777)])
+    np.testing.assert_allclose(curve.look_up(curve.plumb, depth), models.plumb(depth), atol=1e-6)
+    np.testing.assert_allclose(curve.look_up(curve.body, depth), models.body_at(depth), atol=1e-6)
+    np.testing.assert_allclose(curve.look_up(curve.bob, depth), models.bob(depth), atol=1e-6)
+
+
+@pytest.mark.independent
+def test_the_fall_in_vacuum_keeps_to_the_first_order_formula_within_its_own_error(shaft):
+    """Vacuum, 300 m: E = ⅓ω cos φ √(8h³/g) to a few parts in 1e5, the size of the terms it leaves out."""
+    curve = expected_curve(shaft("drop", body=None))
+    depth = np.array([50.0, 150.0, 300.0])
+    formula = OMEGA * cos(radians(57.3)) * np.sqrt(8.0 * depth**3 / 9.8167) / 3.0
+    np.testing.assert_allclose(curve.look_up(curve.body, depth)[0], formula, rtol=5e-5)
+
+
+def test_a_light_wire_in_vacuum_hangs_at_kappa_l_squared(shaft):
+    """A weightless wire without air: κL² toward the pole, κ from the field at the collar."""
+    base = shaft("hung", latitude=-33.0, line=Line(), air=Air(density=0.0))
+    curve, field = expected_curve(base), Models.of(base).field
+    np.testing.assert_allclose(
+        curve.look_up(curve.plumb, DEPTHS)[1], field.curvature * DEPTHS**2, rtol=2e-4, atol=1e-9
+    )
+    assert field.curvature < 0.0, "in the southern hemisphere the vertical bends south"
+
+
+def test_nothing_is_extrapolated(shaft):
+    """Below the table and well above the collar there is no answer; a little above it is the collar."""
+    base = shaft()
+    curve = expected_curve(base)
+    found = curve.look_up(curve.plumb, [-5.0, -0.5, reach(base) + 0.1])
+    assert np.isnan(found[:, 0]).all()
+    assert (found[:, 1] == 0.0).all()
+    assert np.isnan(found[:, 2]).all()
+
+
+@pytest.mark.independent
+def test_the_budget_of_a_drop_agrees_with_a_whole_new_prediction_for_each_input(shaft):
+    """Latitude, air and release each moved by their uncertainty in the site: the body moves by the stated part."""
+    base = shaft("drop")
+    curve = expected_curve(base)
+    site, body, air = base.site, base.body, base.air
+    moved = {
+        "latitude": replace(base, site=replace(site, latitude=site.latitude + site.u_latitude)),
+        "air density": replace(base, air=replace(air, density=air.density + air.u_density)),
+        "release speed east": replace(base, body=replace(body, release_speed_east=body.u_release_speed)),
+        "release point north": replace(base, body=replace(body, release_north=body.u_release)),
+    }
+    depth = [300.0]
+    parts = dict(zip(curve.budget.names, curve.budget.at(depth)[:, :, 0], strict=True))
+    for name, changed in moved.items():
+        other = expected_curve(changed)
+        step = (other.look_up(other.plumb, depth) - curve.look_up(curve.plumb, depth))[:, 0]
+        # The two are the same derivative by two roads; second order in the step is far below a hundredth of it.
+        np.testing.assert_allclose(parts[name], step, rtol=0.01, atol=2e-8, err_msg=name)
+
+
+def test_unknown_bending_of_the_vertical_is_in_every_kind(shaft):
+    """1" over 300 m moves a guided sum by ½·1"·300 m = 0.727 mm, and a light wire's bob by twice that."""
+    guided = expected_curve(shaft())
+    hung = expected_curve(shaft("hung", line=Line(), air=Air(density=0.0)))
+    names = guided.budget.names
+    part = guided.budget.at([300.0])[names.index("vertical bent east"), 0, 0]
+    bob = hung.budget.at([300.0])[hung.budget.names.index("vertical bent east"), 0, 0]
+    assert abs(part) == pytest.approx(0.5 * 300.0 * radians(1 / 3600), rel=1e-3)
+    assert bob == pytest.approx(300.0 * radians(1 / 3600), rel=1e-3)
+
+
+def test_measured_deflections_replace_the_normal_curvature(shaft):
+    """A vertical that turns 5" north and 3" west over 300 m bends the field line by half of that times the depth."""
+    arcsecond = radians(1 / 3600)
+    site = Site(latitude=radians(57.3), deflections=((0.0, 0.0, 0.0), (300.0, 5 * arcsecond, -3 * arcsecond)))
+    curve = expected_curve(shaft(site=site))
+    east, north = curve.look_up(curve.field_line, [300.0])[:, 0]
+    # A nanometre is what the table's linear interpolation leaves of a parabola here.
+    assert north == pytest.approx(0.5 * 300.0 * 5 * arcsecond, abs=1e-9)
+    assert east == pytest.approx(-0.5 * 300.0 * 3 * arcsecond, abs=1e-9)
+
+
+def test_a_narrow_shaft_is_met_by_a_falling_body_where_the_room_is_used_up(shaft):
+    """In a shaft with 20 mm of room the body touches where it has gone 20 mm east, and not below the bottom."""
+    base = shaft("drop", depth=300.0)
+    narrow = replace(base, shaft=replace(base.shaft, diameter=0.05 + 0.04))
+    curve = expected_curve(narrow)
+    assert curve.wall_contact_depth is not None
+    east, north = curve.look_up(curve.body, [curve.wall_contact_depth])[:, 0]
+    assert np.hypot(east, north) == pytest.approx(0.020, abs=1e-6)
+    assert expected_curve(base).wall_contact_depth is None
+
+
+@pytest.mark.invariant
+def test_north_and_south_of_the_equator_mirror_each_other(shaft):
+    """East offsets are the same at ±φ and north offsets change sign."""
+    north, south = (expected_curve(shaft("drop", latitude=sign * 40.0)) for sign in (1.0, -1.0))
+    np.testing.assert_allclose(south.body[0], north.body[0], rtol=1e-12, atol=1e-13)
+    np.testing.assert_allclose(south.body[1], -north.body[1], rtol=1e-9, atol=1e-13)
