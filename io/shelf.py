@@ -1,0 +1,171 @@
+"""The runs in a folder as a list of cards: where, when, what kind, how deep, the verdict, and whether intact."""
+
+import os
+from collections.abc import Callable, Iterator
+from concurrent.futures import ProcessPoolExecutor
+from dataclasses import dataclass
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from eastfall.io.logformat import SUFFIX
+from eastfall.io.reduce import reduce_file
+from eastfall.io.safetext import safe
+from eastfall.io.seal import header_of, verify_log
+from eastfall.io.tables import number
+from eastfall.physics.errors import EastfallError
+
+CARD_KEYS = ("path", "site", "started_at", "kind", "depth_m", "verdict", "state", "error")
+_WORTH_A_POOL = 64
+"""Files from which on other processes are worth their start."""
+_BATCH = 8
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RunCard:
+    """One run, at a glance; all text is safe to show."""
+
+    path: Path
+    site: str
+    started_at: datetime | None
+    kind: str
+    depth: float | None
+    """Deepest station [m]."""
+    verdict: str
+    """The worst of any station; empty without stations or where it was not asked for."""
+    state: str
+    """intact, cut short, or changed."""
+    error: str
+    """Why the file cannot be read; empty if it can."""
+
+
+def log_files(folder: Path) -> list[Path]:
+    """Return the first part of every run log in a folder, by name."""
+    with os.scandir(folder) as entries:
+        names = [one.name for one in entries if one.name.endswith(SUFFIX) and ".part-" not in one.name]
+    return [folder / name for name in sorted(names)]
+
+
+def card(path: Path, *, judged: bool = True) -> RunCard:
+    """Return the card of one run.
+
+    Parameters
+    ----------
+    path : Path
+        The first part of a log.
+    judged : bool
+        Whether to reduce it for depth and verdict; else only the header and the seals are read.
+    """
+    site, started, kind = "", None, ""
+    depth, verdict = None, ""
+    try:
+        header = header_of(path)
+        kind, started = safe(header.kind, 20), _instant(header.started_at)
+        if not judged:
+            return _card(path, "", started, kind, None, "", verify_log(path).state, "")
+        reduction = reduce_file(path)
+    except (EastfallError, OSError) as error:
+        return _card(path, site, started, kind, depth, verdict, "", safe(str(error), 300))
+    stations = reduction.result.stations
+    return _card(
+        path,
+        safe(reduction.site.assumptions.site.name, 200),
+        started,
+        kind,
+        max((one.depth for one in stations), default=None),
+        reduction.verdict or "",
+        reduction.seal_state,
+        "",
+    )
+
+
+def _card(
+    path: Path,
+    site: str,
+    started: datetime | None,
+    kind: str,
+    depth: float | None,
+    verdict: str,
+    state: str,
+    error: str,
+) -> RunCard:
+    return RunCard(
+        path=path,
+        site=site,
+        started_at=started,
+        kind=kind,
+        depth=depth,
+        verdict=verdict,
+        state=state,
+        error=error,
+    )
+
+
+def _instant(text: str) -> datetime | None:
+    try:
+        return datetime.fromisoformat(text)
+    except ValueError:
+        return None
+
+
+def list_runs(
+    folder: Path,
+    progress: Callable[[int, int], None] | None = None,
+    workers: int | None = None,
+) -> tuple[RunCard, ...]:
+    """List the runs in a folder.
+
+    Parameters
+    ----------
+    folder : Path
+        Where run logs stand; folders inside it are not entered.
+    progress : callable, optional
+        Called with the number done and the number there is.
+    workers : int, optional
+        Processes; by default as many as there are cores if there are many files. 1 stays in this process.
+
+    Returns
+    -------
+    tuple of RunCard
+        The newest first; a file that cannot be read has its error on its card.
+
+    Raises
+    ------
+    OSError
+        The folder cannot be read.
+    """
+    files = log_files(folder)
+    found = []
+    for one in _cards(files, workers):
+        found.append(one)
+        if progress is not None:
+            progress(len(found), len(files))
+    oldest = datetime.min
+    return tuple(sorted(found, key=lambda one: (one.started_at or oldest).replace(tzinfo=None), reverse=True))
+
+
+def _cards(files: list[Path], workers: int | None) -> Iterator[RunCard]:
+    count = workers or ((os.cpu_count() or 1) if len(files) >= _WORTH_A_POOL else 1)
+    if count == 1:
+        yield from map(card, files)
+        return
+    import multiprocessing  # noqa: PLC0415 - only where other processes are started
+
+    # A fork would carry over a screen's threads and locks; a fresh interpreter takes nothing along.
+    context = multiprocessing.get_context("spawn")
+    with ProcessPoolExecutor(max_workers=count, mp_context=context) as pool:
+        yield from pool.map(card, files, chunksize=_BATCH)
+
+
+def card_row(one: RunCard) -> dict[str, Any]:
+    """Return a card as a plain dict by `CARD_KEYS`."""
+    return {
+        "path": str(one.path),
+        "site": one.site,
+        "started_at": one.started_at.isoformat() if one.started_at else None,
+        "kind": one.kind,
+        "depth_m": number(one.depth),
+        "verdict": one.verdict or None,
+        "state": one.state or None,
+        "error": one.error or None,
+    }
