@@ -2,11 +2,15 @@
 
 import re
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
 
+from eastfall.tui import words
 from eastfall.tui.verbs.options import an_input, as_format, print_json, print_rows
+
+if TYPE_CHECKING:
+    from eastfall.io.reduce import Reduction
 
 
 class _Depths(click.ParamType):
@@ -74,18 +78,69 @@ def reduce(log: Path, site: Path | None, interval: float | None, form: str) -> N
 
     LOG is a run log, or a plain-text capture (with --site). Exit status 1 if a limit is exceeded.
     """
-    from eastfall.io import tables  # noqa: PLC0415
     from eastfall.io.reduce import reduce_file  # noqa: PLC0415
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
+    from eastfall.io.tables import reduce_table  # noqa: PLC0415
 
     found = reduce_file(log, site=load_site(site) if site else None, interval=interval)
-    shape = tables.reduction(found)
+    shape = reduce_table(found)
     if form == "json":
         print_json(shape)
     else:
         if form == "table":
-            click.echo(tables.heading(found))
-        print_rows(tables.station_rows(shape), form)
-        for line in tables.footing(found) if form == "table" else ():
+            click.echo(_heading(found))
+        print_rows(_stations(shape), form)
+        for line in _footing(found, shape) if form == "table" else ():
             click.echo(line)
-    click.get_current_context().exit(1 if tables.exceeded(found.result) else 0)
+    click.get_current_context().exit(1 if exceeded(found) else 0)
+
+
+def exceeded(found: "Reduction") -> bool:
+    """Tell whether a limit was exceeded: a station over, or an action alarm."""
+    from eastfall.physics.survey import ACTION  # noqa: PLC0415
+
+    return found.verdict == "over" or any(
+        one.name == ACTION and one.new == "active" for one in found.result.alarms
+    )
+
+
+def _stations(shape: dict[str, Any]) -> tuple[list[str], list[list[Any]]]:
+    from eastfall.io.tables import STATION_KEYS  # noqa: PLC0415
+
+    return list(STATION_KEYS), [[one[name] for name in STATION_KEYS] for one in shape["stations"]]
+
+
+def _heading(found: "Reduction") -> str:
+    from eastfall.io.prediction import REFERENCE_LINES  # noqa: PLC0415
+    from eastfall.io.safetext import safe  # noqa: PLC0415
+
+    name = safe(found.site.assumptions.site.name) or "unnamed site"
+    reference = REFERENCE_LINES[found.site.assumptions.run.reference]
+    return f"{name}: {found.kind} run; offsets in mm from {reference}; u is the standard uncertainty of the residual"
+
+
+def _footing(found: "Reduction", shape: dict[str, Any]) -> list[str]:
+    """Return what stands below the table of stations."""
+    faults = "".join(f", {count} {name}" for name, count in sorted(found.faults.items()))
+    aside = "".join(f", {count} {name}" for name, count in sorted(found.unused.items()))
+    lines = [
+        f"readings used {found.frames}, lines refused {found.rejected}{faults}"
+        + (f"; readings left aside{aside}" if aside else "")
+    ]
+    if closure := shape["closure"]:
+        lines.append(
+            f"closure at {closure['depth_m']:.1f} m: east {closure['east_mm']:+.2f} mm (moving line "
+            f"{closure['expected_east_mm']:+.2f}), north {closure['north_mm']:+.2f} mm "
+            f"({closure['expected_north_mm']:+.2f})"
+        )
+    if rest := found.result.rest_point:
+        lines.append(words.swing(rest))
+    lines += [
+        f"alarm {words.clock(one.time)} {one.name}: {one.old} -> {one.new}; {one.message}"
+        for one in found.result.alarms
+    ]
+    lines += [f"note: {one}" for one in (found.standing.notes if found.standing else ())]
+    lines += [f"not as recorded: {one.key} {one.recorded} -> {one.used}" for one in found.differences]
+    if found.verification is not None:
+        lines.append(f"log {found.seal_state}")
+    return lines
