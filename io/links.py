@@ -28,6 +28,7 @@ CONNECT_WITHIN = 5.0
 """Seconds that a TCP device server may take to accept."""
 _LOG_BEGINS = b'{"eastfall":"run log"'
 _BY_PYSERIAL = ("rfc2217", "loop", "hwgrep")
+_HAS_SCHEME = re.compile(r"emulate:|[A-Za-z][A-Za-z0-9]+://")
 _DEVICE = re.compile(r"/dev/|COM\d+\Z|\\\\\.\\", re.IGNORECASE)
 _SCHEMES = "a serial device, COM port, socket://host:port, rfc2217://host:port, emulate:, - or a file"
 
@@ -86,7 +87,7 @@ def open_link(
         With the URL, what is wrong and what to do.
     """
     url = settings.url
-    scheme = urlsplit(url).scheme if re.match(r"[a-z][a-z0-9]+:", url) else ""
+    scheme = url.partition(":")[0].lower() if _HAS_SCHEME.match(url) else ""
     if url == "-":
         return StreamLink(sys.stdin.fileno(), "-")
     if scheme == "emulate":
@@ -99,7 +100,7 @@ def open_link(
         return SocketLink(url, cancelled=cancelled)
     if scheme in _BY_PYSERIAL:
         return SerialLink(settings)
-    if "://" in url:
+    if scheme:
         raise LinkError(f"{safe(url, 80)}: unknown kind of link; expected {_SCHEMES}")
     return _open_path(settings, index)
 
