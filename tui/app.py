@@ -6,6 +6,7 @@ import os
 import signal
 import sys
 from collections.abc import Callable
+from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, ClassVar
 
@@ -24,7 +25,7 @@ from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.start import Choice, Ports, StartScreen
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session, curves_of
-from eastfall.tui.store import Mark, Snapshot
+from eastfall.tui.store import Snapshot
 from eastfall.tui.terminal import glyphs_for, refuse_unless_screen, wants_no_colour
 from eastfall.tui.themes import MONO, THEMES
 
@@ -123,8 +124,9 @@ class Dashboard(App[int]):
         self.notify("sound off" if self.muted else "sound on", markup=False, timeout=2)
 
     def action_keys(self) -> None:
-        """Open the help page."""
-        self.push_screen(HelpScreen())
+        """Open the help page of the screen in front; a dialog or the help page itself has none."""
+        if not self.screen.is_modal and not isinstance(self.screen, HelpScreen):
+            self.push_screen(HelpScreen(*getattr(self.screen, "HELP", ())))
 
     def action_leave(self) -> None:
         """Leave; a run that is being recorded is asked about first."""
@@ -223,28 +225,29 @@ def run_replay(
         When this terminal has no screen, or the record cannot be read.
     """
     look = terminal_look() | ({"theme": theme} if theme else {})
-    bob, fall = curves_of(curve)
+    bob, fall = curves_of(curve or replay.pipeline.survey.curve)
     session = Session(
         assumptions=replay.site.assumptions,
         mode="replay",
         title=safe(replay.site.assumptions.site.name),
         bob=bob,
         fall=fall,
-        marks=marks_of(replay),
-        time_of_depth=replay.time_of_depth,
+        differences=tuple(f"{one.key} {one.used} (recorded {one.recorded})" for one in replay.differences),
     )
     app = watch_app(session, **look)
-    return _shown(app, ReplayFeed(replay, app.take, speed=speed))
+    return _shown(app, ReplayFeed(replay, app.take, speed=speed, now=_since_start(replay)))
 
 
-def marks_of(replay: "Replay") -> tuple[Mark, ...]:
-    """Return the moments of a record to jump to, in order of time."""
-    return tuple(
-        sorted(
-            (Mark(time=one.time, depth=one.depth, what=safe(one.what)) for one in replay.index),
-            key=lambda one: one.time,
-        )
-    )
+def _since_start(replay: "Replay") -> Callable[[], float] | None:
+    """Return a clock that tells the seconds since a run that is still being recorded started; None for any other."""
+    started = replay.recording.started_at
+    if not replay.follow or started is None:
+        return None
+
+    def seconds() -> float:
+        return (datetime.now(UTC) - started).total_seconds()
+
+    return seconds
 
 
 def _shown(app: Dashboard, feed: Feed) -> int:

@@ -8,13 +8,14 @@ import threading
 import time
 from abc import ABC, abstractmethod
 from collections.abc import Callable
+from contextlib import suppress
 from typing import TYPE_CHECKING
 
 from eastfall.physics.errors import EastfallError
 from eastfall.tui.store import History, Snapshot
 
 if TYPE_CHECKING:
-    from eastfall.io.replay import Replay
+    from eastfall.io.replay import Index, Replay
     from eastfall.io.run import Run, RunUpdate
 
 Publish = Callable[[Snapshot], None]
@@ -166,7 +167,7 @@ class LiveFeed(Feed):
 
     def _take(self, update: "RunUpdate") -> None:
         self._update = update
-        self._history.add(update.findings)
+        self._history.add(update.findings, update.time)
 
     def _end(self) -> None:
         self._take(self._source.stop())
@@ -188,7 +189,7 @@ class LiveFeed(Feed):
 
 
 class ReplayFeed(Feed):
-    """Moves through a record at a chosen speed.
+    """Moves through a record at a chosen speed, or keeps up with one that is being written.
 
     Parameters
     ----------
@@ -200,6 +201,8 @@ class ReplayFeed(Feed):
         Record seconds per second.
     clock : callable
         Monotonic seconds.
+    now : callable, optional
+        For a record that is being written: seconds since its run started.
     """
 
     def __init__(
@@ -209,21 +212,37 @@ class ReplayFeed(Feed):
         *,
         speed: float = 1.0,
         clock: Callable[[], float] = time.monotonic,
+        now: Callable[[], float] | None = None,
     ) -> None:
         super().__init__(History("replay"), publish, clock)
         self._replay = replay
+        self._restarts = replay.restarts
         self._update: RunUpdate | None = None
         self._playing = True
         self._speed = min(max(speed, SLOWEST), FASTEST)
         self._last = clock()
+        self._now = now
+        self._keeping_up = now is not None
+        self.index: Index | None = None
+        """What can be jumped to; None while the record is still being read through for it."""
 
     def play(self, *, on: bool | None = None) -> None:
         """Go on, stop, or (None) change over; at the end of the record playing starts over."""
 
         def command() -> None:
             self._playing = not self._playing if on is None else on
-            if self._playing and self._replay.time >= self._replay.duration:
+            self._keeping_up = False
+            if self._playing and self._at_end():
                 self._go(0.0)
+
+        self.ask(command)
+
+    def newest(self) -> None:
+        """Keep up with the end of a record that is being written; without effect on one that is complete."""
+
+        def command() -> None:
+            self._keeping_up = self._now is not None
+            self._playing = self._playing or self._keeping_up
 
         self.ask(command)
 
@@ -247,20 +266,26 @@ class ReplayFeed(Feed):
         """Take the next block of lines and stand still."""
 
         def command() -> None:
-            self._playing = False
+            self._playing = self._keeping_up = False
             self._take(self._replay.step())
 
         self.ask(command)
 
     def _go(self, moment: float) -> None:
-        """Move; backwards the record is read from its beginning, and the history with it."""
-        target = min(max(moment, 0.0), self._replay.duration)
-        if target < self._replay.time:
-            self._history.clear()
-        self._take(self._replay.seek(target))
+        self._keeping_up = False
+        self._take(self._replay.seek(min(max(moment, 0.0), self._replay.duration)))
+
+    def _at_end(self) -> bool:
+        return self._replay.time >= self._replay.duration
 
     def _begin(self) -> None:
         self._last = self._clock()
+        threading.Thread(target=self._read_through, name="eastfall index", daemon=True).start()
+
+    def _read_through(self) -> None:
+        # A record that cannot be read through is told of by the worker that plays it.
+        with suppress(EastfallError, OSError):
+            self.index = self._replay.index
 
     def _work(self) -> None:
         try:
@@ -272,18 +297,23 @@ class ReplayFeed(Feed):
             self._published = float("-inf")
         now = self._clock()
         passed, self._last = now - self._last, now
-        if self._playing:
-            self._take(
-                self._replay.advance(min(self._replay.time + passed * self._speed, self._replay.duration))
-            )
-            self._playing = self._replay.time < self._replay.duration
+        if self._keeping_up and self._now is not None:
+            self._take(self._replay.catch_up(self._now()))
+        elif self._playing:
+            target = min(self._replay.time + passed * self._speed, self._replay.duration)
+            self._take(self._replay.advance(target))
+            self._playing = not self._at_end()
 
     def _take(self, update: "RunUpdate") -> None:
+        """Gather what an update brought; after the record started over, so does the picture."""
+        if self._replay.restarts != self._restarts:
+            self._restarts = self._replay.restarts
+            self._history.clear()
         self._update = update
-        self._history.add(update.findings)
+        self._history.add(update.findings, update.time)
 
     def _end(self) -> None:
-        pass
+        self._replay.close()
 
     def _snapshot(self) -> Snapshot:
         update = self._update
@@ -292,7 +322,8 @@ class ReplayFeed(Feed):
             duration=self._replay.duration,
             playing=self._playing,
             speed=self._speed,
-            ended=self._replay.time >= self._replay.duration,
+            ended=self._at_end() and not self._keeping_up,
+            keeping_up=self._keeping_up,
             standing=update.standing if update else None,
             alarms=update.alarms if update else (),
             health=update.health if update else None,

@@ -2,24 +2,18 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Protocol
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from eastfall.tui.raster import Floats
-from eastfall.tui.store import Mark, Mode
+from eastfall.tui.store import Mode
 
 if TYPE_CHECKING:
     from eastfall.physics.expected import ExpectedCurve
     from eastfall.physics.settings import Assumptions
 
 Curve = Callable[[Floats], tuple[Floats, Floats]]
-
-
-class Controls(Protocol):
-    """What a source can be asked for; a live run and a replay each answer to a part of it."""
-
-    def close(self) -> None: ...  # noqa: D102
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -36,10 +30,8 @@ class Session:
         Name of the site, safe to show.
     bob, fall : callable, optional
         East and north [m] of a hanging bob and of a dropped body, by depth [m].
-    marks : tuple of Mark
-        Moments of a record to jump to.
-    time_of_depth : callable, optional
-        For a replay: when the record first reached a depth [s].
+    differences : tuple of str
+        For a replay: the settings that are not as recorded, each as a line; "what if" is on the screen then.
     """
 
     assumptions: "Assumptions"
@@ -47,8 +39,7 @@ class Session:
     title: str
     bob: Curve | None = None
     fall: Curve | None = None
-    marks: tuple[Mark, ...] = ()
-    time_of_depth: Callable[[float], float | None] | None = None
+    differences: tuple[str, ...] = ()
 
 
 def curves_of(curve: "ExpectedCurve | None") -> tuple[Curve | None, Curve | None]:

@@ -4,12 +4,12 @@ The worker thread owns the history and appends; a snapshot holds read-only views
 """
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
-from eastfall.physics.findings import ROW_FIELDS, AlarmChange, AlarmView, Rows, Standing, Station
+from eastfall.physics.findings import ROW_FIELDS, AlarmView, Rows, Standing, Station
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -74,15 +74,6 @@ class GrowingRows:
         return Rows(part)
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Mark:
-    """A moment of a record that is worth jumping to."""
-
-    time: float
-    depth: float
-    what: str
-
-
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Snapshot:
     """All that the screen needs at one moment."""
@@ -91,7 +82,6 @@ class Snapshot:
     time: float = 0.0
     rows: Rows = field(default_factory=Rows.none)
     stations: tuple[Station, ...] = ()
-    changes: tuple[AlarmChange, ...] = ()
     alarms: tuple[AlarmView, ...] = ()
     standing: Standing | None = None
     health: "Health | None" = None
@@ -101,6 +91,8 @@ class Snapshot:
     duration: float | None = None
     """Of a replayed record [s]."""
     ended: bool = False
+    keeping_up: bool = False
+    """A replay at the newest end of a record that is being written."""
     armed: bool = True
     """False while a drop waits for the shaft to be declared clear."""
     trouble: str = ""
@@ -130,31 +122,46 @@ class History:
         """Forget everything, as when a replay starts over."""
         self._rows = GrowingRows(self._keep)
         self._stations: dict[int, Station] = {}
-        self._changes: list[AlarmChange] = []
+        self._since: dict[str, float] = {}
+        self._until = 0.0
         self._frozen: tuple[Station, ...] | None = ()
-        self._frozen_changes: tuple[AlarmChange, ...] = ()
 
-    def add(self, findings: "Sequence[Findings]") -> None:
-        """Take what one step brought."""
+    def add(self, findings: "Sequence[Findings]", until: float = 0.0) -> None:
+        """Take what one step brought; `until` is the time on the run's clock [s] that it came by."""
         for one in findings:
             self._rows.extend(one.rows)
             for station in one.stations:  # a station that is worked out anew comes with its old number
                 self._stations[station.number] = station
                 self._frozen = None
-            self._changes.extend(one.alarms)
+        self._date(findings, until)
+        self._until = until
 
-    def snapshot(self, **state: object) -> Snapshot:
+    def _date(self, findings: "Sequence[Findings]", until: float) -> None:
+        """Put alarm changes, which are told on the instrument's clock, on the clock that the screen shows.
+
+        Within one step the two clocks are taken to run evenly.
+        """
+        times = np.concatenate([np.empty(0), *(one.rows.column("time") for one in findings)])
+        times = times[np.isfinite(times)]
+        for change in (change for one in findings for change in one.alarms):
+            part = 1.0
+            if times.size and times[-1] > times[0]:
+                part = min(max((change.time - times[0]) / (times[-1] - times[0]), 0.0), 1.0)
+            self._since[change.name] = self._until + float(part) * (until - self._until)
+
+    def _on_our_clock(self, alarms: tuple[AlarmView, ...]) -> tuple[AlarmView, ...]:
+        return tuple(replace(one, since=self._since.get(one.name, one.since)) for one in alarms)
+
+    def snapshot(self, *, alarms: tuple[AlarmView, ...] = (), **state: object) -> Snapshot:
         """Freeze what stands now; `state` are further fields of `Snapshot`."""
         self._serial += 1
         if self._frozen is None:
             self._frozen = tuple(self._stations[number] for number in sorted(self._stations))
-        if len(self._frozen_changes) != len(self._changes):
-            self._frozen_changes = tuple(self._changes)
         return Snapshot(
             mode=self._mode,
             rows=self._rows.view(),
             stations=self._frozen,
-            changes=self._frozen_changes,
+            alarms=self._on_our_clock(alarms),
             serial=self._serial,
             **state,  # type: ignore[arg-type]  # the caller names fields of Snapshot; a wrong name raises
         )

@@ -4,7 +4,7 @@ Dark and light sets were searched so that any two differ by 17 or more (CIE 1976
 and tritan vision, with a contrast of 4.7 or more on their ground. No meaning rests on colour alone.
 """
 
-from textual.theme import Theme
+from textual.theme import BUILTIN_THEMES, Theme
 
 DARK = Theme(
     name="eastfall-dark",
@@ -75,6 +75,7 @@ MONO = Theme(
     panel=_PLAIN,
     boost=_PLAIN,
     ansi=True,
-    variables=dict.fromkeys(DARK.variables, _PLAIN) | {"border": _PLAIN, "border-blurred": _PLAIN},
+    # Textual's own stylesheets want the variables of its ansi themes.
+    variables=BUILTIN_THEMES["ansi-dark"].variables | dict.fromkeys(DARK.variables, _PLAIN),
 )
 THEMES = (DARK, LIGHT, MONO)

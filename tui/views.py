@@ -16,19 +16,17 @@ from eastfall.tui.widgets.plan import PlanView, Point
 
 Subject = Standing | Station | None
 
+_DEEP = 1000.0  # m, from where the large figure leaves the tenth to the answer line
 _TRAIL_SECONDS = 60.0
-_LONGEST_TITLE = 28
 
 
 def title(session: Session) -> tuple[Piece, ...]:
-    """Return site, kind of run and reference line."""
+    """Return kind of run and reference line, then the site: its name may be cut, the reference line never."""
     run = session.assumptions.run
-    name = session.title or "unnamed site"
-    shown = name if len(name) <= _LONGEST_TITLE else name[: _LONGEST_TITLE - 3] + "..."
     return (
-        (f"{shown}  ", Role.STRONG),
-        (f"{words.KIND[run.kind]}  ", Role.TEXT),
-        (f"from: {words.REFERENCE[run.reference]}", Role.STRONG),
+        (f"{words.KIND[run.kind]} from ", Role.TEXT),
+        (words.REFERENCE[run.reference], Role.STRONG),
+        (f"  {session.title or 'unnamed site'}", Role.STRONG),
     )
 
 
@@ -36,8 +34,7 @@ def state(snapshot: Snapshot, sight: look.Sight, *, held: bool) -> tuple[Piece, 
     """Return where in time the picture is, and whether it is the newest."""
     if snapshot.mode == "replay":
         position = f"{words.clock(snapshot.time)} of {words.clock(snapshot.duration or 0.0)}"
-        what = "END" if snapshot.ended else f"x{snapshot.speed:g}" if snapshot.playing else "PAUSED"
-        pieces = [(f"REPLAY {position} {what}", Role.STRONG)]
+        pieces = [(f"REPLAY {position} {_pace(snapshot)}", Role.STRONG)]
     else:
         what = "ENDED" if snapshot.ended else "LIVE"
         pieces = [(f"{what} {words.clock(snapshot.time)}", Role.STRONG)]
@@ -46,6 +43,15 @@ def state(snapshot: Snapshot, sight: look.Sight, *, held: bool) -> tuple[Piece, 
     if not sight.follows:
         pieces.insert(0, ("LOOKING BACK ", Role.WARNING))
     return tuple(pieces)
+
+
+def _pace(snapshot: Snapshot) -> str:
+    """Return how a replay moves."""
+    if snapshot.keeping_up:
+        return "NEWEST"
+    if snapshot.ended:
+        return "END"
+    return f"x{snapshot.speed:g}" if snapshot.playing else "PAUSED"
 
 
 def answer_ground(one: Subject) -> Role | None:
@@ -67,10 +73,22 @@ def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ..
     if isinstance(one, Station):
         rest = "at rest" if one.still else "in passing"
         return ((f"Station {one.number}, {one.direction}, {rest}. Press f to follow the newest.", Role.TEXT),)
-    pieces: list[Piece] = [(words.steering(one, session.assumptions.run.kind), Role.STRONG)]
-    if one is not None and one.notes:
-        pieces.append((f"  {one.notes[0]}", Role.WARNING))
-    return tuple(pieces)
+    return ((words.steering(one, session.assumptions.run.kind), Role.STRONG),)
+
+
+def swing(session: Session, one: Subject) -> tuple[Piece, ...]:
+    """Return what the swing of a hung line says; nothing for other runs."""
+    if session.assumptions.run.kind != "hung" or not isinstance(one, Standing):
+        return ()
+    return ((words.swing(one.rest_point), Role.TEXT),)
+
+
+def notes(session: Session, one: Subject) -> tuple[Piece, ...]:
+    """Return what a reader must know of the answer besides: other settings than recorded, what the model leaves out."""
+    found = list(one.notes) if isinstance(one, Standing) else []
+    if session.differences:
+        found.insert(0, f"WHAT IF: {', '.join(session.differences)}")
+    return tuple((f"! {note}  ", Role.WARNING) for note in found)
 
 
 def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
@@ -80,14 +98,16 @@ def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
     length = words.residual_length(one)
     role = {"over": Role.ACTION, "undecided": Role.WARNING}.get(one.verdict, Role.STRONG)
     shown = [
-        Figure(name="depth", value=words.metres(one.depth), unit="m", note=_motion(one)),
+        Figure(
+            name="depth", value=words.metres(one.depth, int(one.depth < _DEEP)), unit="m", note=_motion(one)
+        ),
         Figure(
             name="residual", value=words.mm(length), unit=f"± {words.mm(words.expanded(one))} mm", role=role
         ),
         Figure(
             name="toward",
             value=words.bearing(one.residual_east, one.residual_north),
-            unit="from north",
+            unit="",
             role=role,
         ),
         Figure(

@@ -17,8 +17,8 @@ CAUTIONS = (
 )
 
 REFERENCE: "dict[Reference, str]" = {
-    "straight": "straight vertical at the collar",
-    "field-line": "curved vertical (field line)",
+    "straight": "straight vertical",
+    "field-line": "curved vertical",
     "hung-line": "hung line",
 }
 KIND: "dict[Kind, str]" = {"guided": "guided run", "hung": "hung line", "drop": "drop"}
@@ -74,10 +74,10 @@ def expanded(one: Judged) -> float:
     return COVERAGE_FACTOR * float(u)
 
 
-def limits_in_question(one: Judged) -> str:
-    """Return the action limit, which the verdict is held against, and before it a warning limit that is passed."""
-    past = f"beyond warning {mm(one.warning)}, " if residual_length(one) > one.warning else ""
-    return f"{past}action limit {mm(one.action)} mm"
+def decision(one: Judged) -> str:
+    """Return the verdict against the action limit in capitals; past the warning limit it says so besides."""
+    warned = one.verdict == "within" and residual_length(one) > one.warning
+    return VERDICT[one.verdict] + (", PAST WARNING" if warned else "")
 
 
 def answer(one: Judged | None) -> str:
@@ -88,8 +88,8 @@ def answer(one: Judged | None) -> str:
     if not isfinite(length):
         return f"NO ANSWER {metres(one.depth)} m: no offset in the readings"
     return (
-        f"{VERDICT[one.verdict]} {metres(one.depth)} m: residual {mm(length)} ± {mm(expanded(one))} mm "
-        f"toward {bearing(one.residual_east, one.residual_north)}, {limits_in_question(one)}"
+        f"{decision(one)} {metres(one.depth)} m: residual {mm(length)} ± {mm(expanded(one))} mm "
+        f"toward {bearing(one.residual_east, one.residual_north)}, limit {mm(one.action)} mm"
     )
 
 
@@ -187,9 +187,8 @@ def read_moment(text: str) -> tuple[str, float]:
     plain = text.strip().lower().replace(",", ".")
     try:
         if ":" in plain:
-            parts = [float(one) for one in plain.split(":")]
-            seconds = sum(part * 60.0**power for power, part in enumerate(reversed(parts)))
-            return "time", _not_negative(seconds)
+            parts = [_not_negative(float(one)) for one in plain.split(":")]
+            return "time", sum(part * 60.0**power for power, part in enumerate(reversed(parts)))
         if plain.endswith("s"):
             return "time", _not_negative(float(plain[:-1]))
         return "depth", _not_negative(float(plain.removesuffix("m")))

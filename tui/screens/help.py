@@ -13,18 +13,26 @@ from eastfall.tui.words import CAUTIONS
 
 READING = """How to read the picture
 
-Depth goes down, in metres from the collar. Offsets are millimetres east (+) or west (-), north (+) or south (-) of the
-reference line named in the top row. A residual is measured less expected; its direction is a bearing from north.
+Depth goes down, in metres from the collar.
+Offsets are millimetres east (+) or west (-), north (+) or south (-) of the
+reference line named in the top row.
+A residual is measured less expected; its direction is a bearing from north.
 ± is the expanded uncertainty (k = 2, about 95 %).
 
-WITHIN      the residual and all of its uncertainty are inside the limit
-OVER        the residual less all of its uncertainty is beyond the limit
-UNDECIDED   the limit lies inside the uncertainty: more readings, or a better instrument
+WITHIN     residual and all of its uncertainty are inside the action limit
+OVER       residual less all of its uncertainty is beyond the action limit
+UNDECIDED  the limit lies inside the uncertainty: measure again, or better
 
-Depth picture: solid is measured, thin is an earlier pass, dashed is expected, dots beside it the uncertainty,
-broken lines the warning limit, unbroken lines the action limit.
-Plan, north up: inner ring the warning limit, outer ring the action limit, both about the expected point;
-b where a plumb bob would hang, d where a dropped body would be, x the rest point of a swing with its 95 % ellipse."""
+Depth picture, east-west on the left and north-south on the right
+  solid     measured; thin: an earlier pass
+  dashed    expected; dots to both sides: the uncertainty about it
+  broken    warning limit
+  unbroken  action limit
+  b, d      where a plumb bob would hang, where a dropped body would be
+
+Plan, north up
+  rings     warning limit inside, action limit outside, about the expected
+  x         rest point of a swing, in its 95 % ellipse"""
 
 
 def key_table(*places: str) -> str:

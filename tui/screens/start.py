@@ -17,7 +17,6 @@ from textual.widgets.option_list import Option
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain
-from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.widgets.line import KeyLine
 from eastfall.tui.words import CAUTIONS, size
 
@@ -148,10 +147,6 @@ class StartScreen(Screen[Choice | None]):
 
     def _show_ports(self, words: str) -> None:
         self.query_one(OptionList).replace_option_prompt("ports", Text(f"{words}\n  (enter looks again)"))
-
-    def action_keys(self) -> None:
-        """Open the help page."""
-        self.app.push_screen(HelpScreen())
 
 
 def _head(words: str) -> Option:

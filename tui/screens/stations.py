@@ -58,10 +58,8 @@ def chosen(stations: tuple[Station, ...], order: str, only_open: bool) -> list[i
 class StationsScreen(Screen[int | None]):
     """The table; closes with the index of a station to look back at, or None."""
 
-    BINDINGS: ClassVar[list[BindingType]] = [
-        *(one for one in keys.bindings("page")),
-        *(one for one in keys.bindings("stations")),
-    ]
+    HELP = ("stations", "page")
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page", "stations"))
 
     def __init__(self, snapshot: Snapshot) -> None:
         super().__init__()

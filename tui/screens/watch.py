@@ -14,7 +14,6 @@ from eastfall.tui import sight as look
 from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText, ClearShaft
-from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.start import Choice
 from eastfall.tui.screens.stations import StationsScreen
 from eastfall.tui.session import Session
@@ -40,6 +39,7 @@ class WatchScreen(Screen[Choice | None]):
         What is known before the first reading.
     """
 
+    HELP = ("watch",)
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("watch"))
     HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (60, "-small"), (80, "-narrow"), (100, "-normal"), (160, "-wide")]  # noqa: RUF012
     VERTICAL_BREAKPOINTS = [(0, "-tiny"), (10, "-low"), (17, "-mid"), (32, "-tall")]  # noqa: RUF012
@@ -54,7 +54,7 @@ class WatchScreen(Screen[Choice | None]):
 
     def compose(self) -> ComposeResult:
         """Put the parts together; the stylesheet decides which show at which size."""
-        for name in ("title", "answer", "steer"):
+        for name in ("title", "answer", "steer", "swing", "notes"):
             yield TextLine(id=name)
         yield Figures(id="figures")
         with Horizontal(id="evidence"):
@@ -108,6 +108,12 @@ class WatchScreen(Screen[Choice | None]):
         ink = Role.STRONG if under is None else Role.ON_GROUND
         self._line("answer").show((words.answer(one), ink), under=under)
         self._line("steer").show(*views.steer(self.session, latest, one))
+        for name, pieces in (
+            ("swing", views.swing(self.session, one)),
+            ("notes", views.notes(self.session, one)),
+        ):
+            self._line(name).show(*pieces)
+            self._line(name).display = bool(pieces)
         pieces, ground = views.alarm_line(latest)
         self._line("alarm").show(*pieces, under=ground)
         self._line("health").show(*health_line(latest))
@@ -143,6 +149,8 @@ class WatchScreen(Screen[Choice | None]):
     def action_follow(self) -> None:
         """Follow the newest reading, and let go of a held picture."""
         self.held = None
+        if isinstance(self.feed, ReplayFeed):
+            self.feed.newest()
         self._look(replace(self.sight, station=None))
 
     def action_zoom(self, factor: float) -> None:
@@ -232,20 +240,26 @@ class WatchScreen(Screen[Choice | None]):
         what, value = words.read_moment(text)
         if what == "time" and self.session.mode == "live":
             raise ValueError("A live run goes by its own clock: give a depth, as 612.5 m.")
-        if what == "depth" and self._time_of(value) is None and self.session.mode == "replay":
-            raise ValueError(f"The record does not reach {value:g} m.")
+        if what == "depth" and isinstance(self.feed, ReplayFeed):
+            return "time", self._time_of(self.feed, value)
         return what, value
 
-    def _time_of(self, depth: float) -> float | None:
-        return self.session.time_of_depth(depth) if self.session.time_of_depth else None
+    def _time_of(self, feed: ReplayFeed, depth: float) -> float:
+        """Return when a record next reaches a depth after where it stands, or else first reaches it [s]."""
+        if feed.index is None:
+            raise ValueError("The record is still being read through: a moment, please.")
+        moment = feed.index.time_of_depth(depth, after=self.latest.time + 1.0)
+        moment = feed.index.time_of_depth(depth) if moment is None else moment
+        if moment is None:
+            raise ValueError(f"The record does not reach {depth:g} m.")
+        return moment
 
     def _jumped(self, text: str | None) -> None:
         if text is None:
             return
-        what, value = self._moment(text)
+        _, value = self._moment(text)
         if isinstance(self.feed, ReplayFeed):
-            moment = value if what == "time" else self._time_of(value)
-            self.feed.seek(cast("float", moment))
+            self.feed.seek(value)
             self._look(replace(self.sight, station=None))
         else:
             self._look(look.at_depth(self.sight, self.latest, value))
@@ -267,15 +281,11 @@ class WatchScreen(Screen[Choice | None]):
 
     def action_event(self, way: int) -> None:
         """Go to the next or previous event of a replay."""
-        if isinstance(self.feed, ReplayFeed):
-            times = [one.time for one in self.session.marks]
+        if isinstance(self.feed, ReplayFeed) and self.feed.index is not None:
+            times = [one.time for one in self.feed.index.marks if one.what != "station"]
             now = self.latest.time
             ahead = (
                 [t for t in times if t > now + 1e-6] if way > 0 else [t for t in times if t < now - 1.0][::-1]
             )
             if ahead:
                 self.feed.seek(ahead[0])
-
-    def action_keys(self) -> None:
-        """Open the help page of this screen."""
-        self.app.push_screen(HelpScreen("watch"))

@@ -64,9 +64,13 @@ class Figures(CellWidget):
 
     def draw(self, sheet: Raster) -> None:
         """Write every figure with its name above its unit at its right."""
-        column = 1
+        column = 0
         for one in self.figures:
-            rows = large(one.value) if sheet.glyphs.name != "ascii" else ("", one.value + " ", "")
+            rows = (
+                large(one.value)
+                if sheet.glyphs.name != "ascii"
+                else ("", one.value.removesuffix("°") + " ", "")
+            )
             width = max(map(len, rows))
             beside = max(len(one.name), len(one.unit), len(one.note))
             if column + width + beside > sheet.width:
@@ -77,4 +81,4 @@ class Figures(CellWidget):
                 ((one.name, Role.DIM), (one.unit, Role.STRONG), (one.note, Role.TEXT))
             ):
                 sheet.text(column + width, row, words, role)
-            column += width + beside + 3
+            column += width + beside + 2

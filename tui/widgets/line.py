@@ -17,7 +17,7 @@ class TextLine(CellWidget):
         self.under: Role | None = None
 
     def show(self, *pieces: Piece, right: tuple[Piece, ...] = (), under: Role | None = None) -> None:
-        """Set the pieces from the left and those at the right end; `right` gives way when room is short."""
+        """Set the pieces from the left and those at the right end, for which the left ones give way."""
         if (pieces, right, under) != (self.pieces, self.right, self.under):
             self.pieces, self.right, self.under = pieces, right, under
             self.redraw()
@@ -32,16 +32,20 @@ class TextLine(CellWidget):
         if self.under is not None:
             for row in range(sheet.height):
                 sheet.ground(row, 0, sheet.width, self.under)
+        ending = sum(len(text) for text, _ in self.right)
+        room = sheet.width - ending - 1 if 0 < ending < sheet.width else sheet.width
         column = row = 0
         for text, role in self.pieces:
-            for index, part in enumerate(wrapped(text, sheet.width - column, sheet.width)):
+            if ending:
+                column += sheet.text(column, 0, text[: max(room - column, 0)], role)
+                continue
+            for index, part in enumerate(wrapped(text, room - column, sheet.width)):
                 column, row = (0, row + 1) if index else (column, row)
                 column += sheet.text(column, row, part, role)
-        start = sheet.width - sum(len(text) for text, _ in self.right)
-        if row == 0 and start > column:
+        if ending < sheet.width:
+            start = sheet.width - ending
             for text, role in self.right:
-                sheet.text(start, 0, text, role)
-                start += len(text)
+                start += sheet.text(start, 0, text, role)
 
 
 class KeyLine(CellWidget):
