@@ -7,7 +7,7 @@ form and the messages read unit, range, default and help from here.
 import math
 import re
 from dataclasses import MISSING, dataclass, fields
-from typing import Annotated, Any, Literal, get_args, get_origin
+from typing import Annotated, Any, Literal, get_args
 
 import msgspec
 from msgspec import UNSET, Meta, UnsetType
@@ -564,11 +564,9 @@ def all_keys() -> list[Key]:
 
 def _described(section: str, name: str, struct: type[_Section]) -> Key:
     annotation = struct.__annotations__[name]
-    inner = next((one for one in get_args(annotation) if get_origin(one) is Annotated), annotation)
-    if get_origin(annotation) is Annotated:
-        inner = annotation
-    base, meta = get_args(inner)[:2]
-    choices = get_args(base) if str(get_origin(base)) == str(Literal) else ()
+    candidates = (annotation, *get_args(annotation))
+    base, meta = get_args(next(one for one in candidates if hasattr(one, "__metadata__")))[:2]
+    choices = get_args(base) if _is_choice(base) else ()
     low, high = _range(meta)
     return Key(
         section=section,
@@ -582,6 +580,10 @@ def _described(section: str, name: str, struct: type[_Section]) -> Key:
         default=_default(section, name),
         expectation=_in_words(base, meta, tuple(choices), unit(name)),
     )
+
+
+def _is_choice(annotation: Any) -> bool:
+    return getattr(annotation, "__origin__", None) is Literal
 
 
 def _is_required(struct: type[_Section], name: str) -> bool:

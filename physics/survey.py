@@ -64,8 +64,10 @@ class Survey:
         self.curve = curve or expected_curve(assumptions)
         self._kind: KindTracker = _KINDS[assumptions.run.kind](assumptions, self.curve)
         limits = assumptions.limits
-        delays = {"on_delay": limits.on_delay, "off_delay": limits.off_delay}
-        self._limit_alarms = {name: Alarm(Rule(name=name, **delays)) for name in (ACTION, WARNING, WALL)}
+        self._limit_alarms = {
+            name: Alarm(Rule(name=name, on_delay=limits.on_delay, off_delay=limits.off_delay))
+            for name in (ACTION, WARNING, WALL)
+        }
         self._edge_alarms: dict[str, Alarm] = {SILENT: Alarm(Rule(name=SILENT))}
         self._messages: dict[str, str] = {}
         self._feed_watched = feed_watched

@@ -3,6 +3,7 @@
 from collections import Counter
 
 import numpy as np
+from numpy.typing import NDArray
 
 from eastfall.physics import swing
 from eastfall.physics.calibration import corrected
@@ -24,6 +25,8 @@ from eastfall.physics.moving import LineSpeed
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
 from eastfall.physics.tilt import increments
+
+Flags = NDArray[np.bool_]
 
 _SAME_LEVEL = 0.25
 """A bob this near the depth where it came to rest is still at that level [m]: a wire stretches and creeps."""
@@ -94,7 +97,7 @@ class Hung:
         """Take a block."""
         readings = inside_shaft(readings, self._curve, self.unused)
         offsets, direct = self._offsets(readings)
-        good = np.isfinite(offsets).all(axis=0)
+        good = _whole(offsets)
         readings = usable(readings, good, "no offset and no usable tilt", self.unused)
         if not len(readings):
             return Batch.none()
@@ -104,10 +107,10 @@ class Hung:
         self._last = rows[:, -1].copy()
         return Batch(rows=Rows(rows), judged=judged, stations=tuple(stations))
 
-    def _offsets(self, readings: Readings) -> tuple[Array, Array]:
+    def _offsets(self, readings: Readings) -> tuple[Array, Flags]:
         """Return offsets, shape (2, n) [m], read directly or from the line's angle; and which were direct."""
         direct = np.stack([readings.column("east"), readings.column("north")])
-        is_direct = np.isfinite(direct).all(axis=0)
+        is_direct = _whole(direct)
         if is_direct.all():
             return direct, is_direct
         instrument, depth = self._assumptions.instrument, readings.depth
@@ -139,12 +142,12 @@ class Hung:
         )
         return rows, speed
 
-    def _single(self, depth: Array, direct: Array) -> Array:
+    def _single(self, depth: Array, direct: Flags) -> Array:
         """Return the standard uncertainty of one reading, each axis [m]."""
         instrument = self._assumptions.instrument
         return np.where(direct, instrument.u_offset, np.hypot(instrument.u_tilt, instrument.u_zero) * depth)
 
-    def _by_level(self, rows: Array, running: Array, direct: Array) -> tuple[Array, list[Station]]:
+    def _by_level(self, rows: Array, running: Flags, direct: Flags) -> tuple[Array, list[Station]]:
         """Send each reading to its level; return the residual to judge at each row, and the stations closed."""
         judged = np.full((2, rows.shape[1]), np.nan)
         stations: list[Station] = []
@@ -179,7 +182,7 @@ class Hung:
         level.origin = row[[ROW["measured_east"], ROW["measured_north"]]]
         return level
 
-    def _dwell(self, level: _Level, rows: Array, direct: Array, judged: Array) -> None:
+    def _dwell(self, level: _Level, rows: Array, direct: Flags, judged: Array) -> None:
         """Take readings at a level, and work out the rest point whenever it is due on the readings' own clock."""
         level.direct = level.direct and bool(direct.all())
         time = rows[ROW["time"]]
@@ -345,7 +348,12 @@ class Hung:
         return (*self._curve.warnings, rest.message) if rest and rest.message else self._curve.warnings
 
 
-def _run_length(flags: Array) -> int:
+def _whole(pairs: Array) -> Flags:
+    """Return which columns have no missing value."""
+    return np.asarray(np.isfinite(pairs).all(axis=0))
+
+
+def _run_length(flags: Flags) -> int:
     """Return how many leading entries are true."""
     first = np.flatnonzero(~flags)
     return int(first[0]) if first.size else flags.size

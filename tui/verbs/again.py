@@ -1,10 +1,14 @@
 """The verb that shows a recorded run again: `replay`."""
 
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import click
 
 from eastfall.tui.verbs.options import an_input
+
+if TYPE_CHECKING:
+    from eastfall.io.replay import Replay
 
 
 @click.command()
@@ -26,16 +30,16 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
         return
     from eastfall.tui.app import run_replay  # noqa: PLC0415
 
-    click.get_current_context().exit(run_replay(found, speed=speed, curve=found.curve))
+    click.get_current_context().exit(run_replay(found, speed=speed, curve=found.pipeline.survey.curve))
 
 
-def _plainly(found: object) -> None:
-    from eastfall.io.replay import Replay  # noqa: PLC0415
+def _plainly(found: "Replay") -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    assert isinstance(found, Replay)  # noqa: S101 (for the type checker; the caller has just made it)
     lines = PlainLines(click.echo, found.site.assumptions.run.kind)
-    while found.time < found.duration:
-        update = found.step()
+    update = found.step()
+    while not found.ended:
         lines.take(update)
+        update = found.step()
+    lines.take(update)
     lines.end(update)

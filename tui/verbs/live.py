@@ -4,7 +4,7 @@ import getpass
 import signal
 import sys
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager, suppress
 from datetime import UTC, datetime
 from pathlib import Path
@@ -16,7 +16,7 @@ import click
 from eastfall.tui.verbs.options import an_input, into
 
 if TYPE_CHECKING:
-    from eastfall.io.run import Run
+    from eastfall.io.run import Run, RunUpdate
     from eastfall.io.sitefile import SiteFile
 
 _STEP = 0.1
@@ -163,15 +163,15 @@ def _cleared(site: "SiteFile", name: str | None) -> str | None:
     return getpass.getuser()
 
 
-def _tell(update: object) -> None:
+def _tell(update: "RunUpdate") -> None:
     """Write alarm changes to standard error as they come."""
-    for one in getattr(update, "findings", ()):
+    for one in update.findings:
         for change in one.alarms:
             click.echo(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
 
 
 @contextmanager
-def _signals() -> Iterator[object]:
+def _signals() -> Iterator[Callable[[], bool]]:
     """Turn SIGINT and SIGTERM into a flag while a run is on, so that the log is closed and the port released."""
     asked: list[int] = []
 

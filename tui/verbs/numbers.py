@@ -13,7 +13,7 @@ if TYPE_CHECKING:
     from eastfall.io.reduce import Reduction
 
 
-class _Depths(click.ParamType):
+class _Depths(click.ParamType[tuple[float, ...]]):
     """Depths in metres, separated by commas."""
 
     name = "m,m,…"

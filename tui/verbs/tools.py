@@ -1,6 +1,7 @@
 """The verbs beside the job: `emulate`, `ports` and `selfcheck`."""
 
 from pathlib import Path
+from typing import Any
 
 import click
 
@@ -113,7 +114,7 @@ def selfcheck(form: str) -> None:
     """Compute the published check values now, each with its source; exit status 1 if one is off."""
     from eastfall.physics.published import published_checks  # noqa: PLC0415 (computes with the whole physics)
 
-    rows = []
+    rows: list[list[Any]] = []
     for one in published_checks():
         value = one.compute()
         off = abs(value - one.expected)
