@@ -247,8 +247,11 @@ class Run:
     def _take_some(self) -> float | None:
         """Take what has come, up to a bound, and tick; return the time if that was all that was stamped before it."""
         items, now, all_of_it = self._inbox.take(_MOST)
-        for item in items:
-            self._item(item)
+        arrivals = [arrival for item in items for arrival in self._arrivals(item)]
+        for one in arrivals:  # all of them first: whatever happens below, what has come is in the log
+            self._recorder.put(one)
+        for one in arrivals:
+            self._found(self.pipeline.take(one))
         if all_of_it:  # else something still in the queue was stamped before `now`
             self._found(self.pipeline.tick(now))
         self._recorder.tick(now)
@@ -261,23 +264,22 @@ class Run:
             now = self._take_some()
         return now
 
-    def _item(self, item: Item) -> None:
+    def _arrivals(self, item: Item) -> list[Arrival]:
         if isinstance(item, LineBlock):
-            self._arrived(item)
-            return
+            return [item]
         fields = _link_fields(item.link, item.state, item.message, item.cut)
-        self._event(RunEvent(time=item.time, name="link", fields=fields))
+        news: list[Arrival] = [RunEvent(time=item.time, name="link", fields=fields)]
         if item.state in ("open", "lost"):
-            self._condition(item.time, self._lost_name(item), on=item.state == "lost", message=item.message)
+            lost = item.state == "lost"
+            news.append(_condition(item.time, self._lost_name(item), on=lost, message=item.message))
+        return news
 
     def _lost_name(self, news: LinkNews) -> str:
         return LINK_LOST if len(self._readers) == 1 else f"{LINK_LOST} {news.link + 1}"
 
-    def _arrived(self, arrival: Arrival) -> None:
-        self._recorder.put(arrival)
-        self._found(self.pipeline.take(arrival))
-
-    _event = _arrived
+    def _event(self, event: RunEvent) -> None:
+        self._recorder.put(event)
+        self._found(self.pipeline.take(event))
 
     def _found(self, findings: Findings) -> None:
         for one in findings.alarms:
@@ -292,15 +294,11 @@ class Run:
         if len(findings.rows) or findings.stations or findings.alarms:
             self._findings.append(findings)
 
-    def _condition(self, now: float, name: str, *, on: bool, message: str) -> None:
-        fields: dict[str, object] = {"name": name, "on": on, "message": message}
-        self._event(RunEvent(time=now, name="condition", fields=fields))
-
     def _watch_record(self, now: float) -> None:
         failing = bool(self._recorder.trouble)
         if failing != self._record_failing:
             self._record_failing = failing
-            self._condition(now, RECORD_FAILING, on=failing, message=self._recorder.trouble)
+            self._event(_condition(now, RECORD_FAILING, on=failing, message=self._recorder.trouble))
 
     # -- what a person says ----------------------------------------------------------------------------------------
 
@@ -376,6 +374,10 @@ class Run:
             return ""
         number, kind, text, expected = last
         return f"line {number}: {kind}: {text}; expected {expected}"
+
+
+def _condition(now: float, name: str, *, on: bool, message: str) -> RunEvent:
+    return RunEvent(time=now, name="condition", fields={"name": name, "on": on, "message": message})
 
 
 def _link_fields(link: int, state: str, message: str, cut: bytes) -> dict[str, object]:
