@@ -67,7 +67,8 @@ class AirColumn:
         Notes
         -----
         dp/dz = ρ g with p = ρ R T and g = g₀ + (g(z) - g₀) z'/z along the way:
-        p = p₀ exp[(g₀ A + (g(z) - g₀) B) z/(R T₀)] with A = ln(1 + x)/x, B = (1 - A)/x, x = β z/T₀; for constant g that is p₀ (T/T₀)^(g/(R β)).
+        p = p₀ exp[(g₀ A + (g(z) - g₀) B) z/(R T₀)] with A = ln(1 + x)/x, B = (1 - A)/x, x = β z/T₀; for constant g that
+        is p₀ (T/T₀)^(g/(R β)).
 
         References
         ----------

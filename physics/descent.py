@@ -112,13 +112,16 @@ def _first_guess(forces: Forces, around: Surroundings, fallen: Array, first: Sta
 
 def acting(forces: Forces, around: Surroundings, nodes: State, faster: float = 0.0) -> Acceleration:
     """Acceleration at the nodes, with the downward speed larger by the share `faster`."""
+    v_down = np.sqrt(2.0 * nodes.energy)
+    if faster:
+        v_down = v_down * (1.0 + faster)
     return forces.acceleration(
         around,
         nodes.east,
         nodes.north,
         v_east=nodes.v_east,
         v_north=nodes.v_north,
-        v_down=np.sqrt(2.0 * nodes.energy) * (1.0 + faster),
+        v_down=v_down,
     )
 
 

@@ -9,13 +9,15 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.polynomial import chebyshev
 
-from eastfall.physics.collocation import gauss_rule
+from eastfall.physics.collocation import Rule, gauss_rule
 from eastfall.physics.descent import State, Stretch, acting, energy_slope, state_rates
 from eastfall.physics.earth import Array
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.motion import Forces, Surroundings
 
 RULE = gauss_rule(12)
+COARSE = gauss_rule(8)
+"""Enough for departures of centimetres to be within 0.1 µm, where they are as smooth as those of release errors."""
 FOLLOWED = 1e-9
 _RESPONDED = 4
 """Rounds for the linear response; each shrinks its error by a thousand or more."""
@@ -29,6 +31,8 @@ class Lead:
     Parameters
     ----------
     stretch : Stretch
+    rule : Rule
+        Its nodes and matrices.
     depth, step : array, shape (nodes, 1)
         Depth of the nodes [m]; metres of depth per unit of the stretch's own variable there.
     around : Surroundings
@@ -47,6 +51,7 @@ class Lead:
     """
 
     stretch: Stretch
+    rule: Rule
     depth: Array
     around: Surroundings
     step: Array
@@ -61,7 +66,7 @@ class Lead:
     response: tuple[Array, ...]
 
 
-def lead(forces: Forces, apex: float, stretch: Stretch) -> Lead:
+def lead(forces: Forces, apex: float, stretch: Stretch, rule: Rule = RULE) -> Lead:
     """Prepare a stretch of the nominal fall for its followers.
 
     Parameters
@@ -71,33 +76,36 @@ def lead(forces: Forces, apex: float, stretch: Stretch) -> Lead:
     apex : float
         z* [m].
     stretch : Stretch
+    rule : Rule
+        How finely the departures are followed.
 
     Returns
     -------
     Lead
     """
     half = 0.5 * (stretch.end - stretch.start)
-    sigma = (0.5 * (stretch.start + stretch.end) + half * RULE.nodes)[:, None]
+    sigma = (0.5 * (stretch.start + stretch.end) + half * rule.nodes)[:, None]
     step = 2.0 * half * sigma
     depth = apex + sigma**2
     series = stretch.series[:, :, 0]
-    nodes = State(*(chebyshev.chebvander(RULE.nodes, len(series) - 1) @ series).T[:, :, None])
+    nodes = State(*(chebyshev.chebvander(rule.nodes, len(series) - 1) @ series).T[:, :, None])
     around = forces.surroundings(depth)
     now = acting(forces, around, nodes)
     rates = state_rates(now, nodes, step)
     vertical_slope: Array = step * energy_slope(forces, around, nodes, now)
     sideways_slope: Array = -rates.time * now.drag_rate
-    vertical = _inverse(vertical_slope)
-    sideways = _inverse(sideways_slope)
+    vertical = _inverse(rule, vertical_slope)
+    sideways = _inverse(rule, sideways_slope)
     ahead = Lead(
         stretch=stretch,
+        rule=rule,
         depth=depth,
         around=around,
         step=step,
         nodes=nodes,
         rates=rates,
-        vertical=vertical @ RULE.to_nodes,
-        sideways=sideways @ RULE.to_nodes,
+        vertical=vertical @ rule.to_nodes,
+        sideways=sideways @ rule.to_nodes,
         vertical_slope=vertical_slope,
         sideways_slope=sideways_slope,
         vertical_start=vertical.sum(axis=1, keepdims=True),
@@ -117,8 +125,8 @@ def _responses(forces: Forces, around: Surroundings, ahead: Lead) -> tuple[Array
     return tuple(one / sizes for one in apart[1:])
 
 
-def _inverse(slope: Array) -> Array:
-    matrix: Array = np.eye(len(slope)) - RULE.to_nodes * slope[:, 0]
+def _inverse(rule: Rule, slope: Array) -> Array:
+    matrix: Array = np.eye(len(slope)) - rule.to_nodes * slope[:, 0]
     return np.linalg.inv(matrix).astype(np.float64, copy=False)
 
 
@@ -161,7 +169,7 @@ def follow(forces: Forces, ahead: Lead, first: State, tolerance: float = FOLLOWE
         apart, rates, moved = _refine(forces, around, ahead, begin, apart)
         # The moves shrink by about the same factor every round, so the next one is foreseen.
         if moved < tolerance or (moved < 0.5 * before and moved * moved < tolerance * before):
-            ends = (RULE.weights @ rate for rate in rates)
+            ends = (ahead.rule.weights @ rate for rate in rates)
             last = (old + new + end for old, new, end in zip(ahead.stretch.last, begin, ends, strict=True))
             return rates, State(*last)
         before = moved
@@ -214,8 +222,8 @@ def _refine(
         rest[1] + ahead.sideways_slope * v_north,
         rest[2] + ahead.vertical_slope * energy,
     )
-    east = begin.east + RULE.to_nodes @ rates.east
-    north = begin.north + RULE.to_nodes @ rates.north
+    east = begin.east + ahead.rule.to_nodes @ rates.east
+    north = begin.north + ahead.rule.to_nodes @ rates.north
     moves = ((energy - apart.energy) / ahead.nodes.energy, east - apart.east, north - apart.north)
     moved = max(_size(one) for one in moves)
     return State(apart.time, east, north, v_east, v_north, energy), rates, moved

@@ -10,6 +10,7 @@ import numpy.typing as npt
 from numpy.polynomial import chebyshev
 
 from eastfall.physics.air import AirColumn
+from eastfall.physics.collocation import Rule
 from eastfall.physics.descent import State, Stretch, descend
 from eastfall.physics.earth import Array
 from eastfall.physics.ensemble import FOLLOWED, RULE, Lead, follow, lead
@@ -22,7 +23,7 @@ from eastfall.physics.throw import Thrown, reach, rise
 
 __all__ = ["Falling", "Release", "Trajectory", "Variation", "fall", "fall_ensemble"]
 
-BLOCK = 512
+BLOCK = 1024
 """Members of an ensemble that are integrated together; their arrays fit in the processor's cache."""
 
 
@@ -213,6 +214,7 @@ def fall_ensemble(
     air: AirColumn | None = None,
     release: Release | None = None,
     tolerance: float = FOLLOWED,
+    rule: Rule = RULE,
 ) -> Falling:
     """Where many bodies are at given depths, each under its own change of circumstances.
 
@@ -227,6 +229,8 @@ def fall_ensemble(
         Of the nominal fall, as for `fall`.
     tolerance : float
         To which the departures from the nominal fall are iterated [m].
+    rule : Rule
+        How finely the departures are followed; the default is for any variation.
 
     Returns
     -------
@@ -249,7 +253,7 @@ def fall_ensemble(
     edges = _edges(forces, start.depth, bottom, _first_metres(start, variation) if thrown else 0.0)
     apex, stretches = _nominal(forces, start, edges)
     rows = np.empty((6, variation.members, len(z)))
-    leads = [lead(forces, apex, one) for one in stretches]
+    leads = [lead(forces, apex, one, rule) for one in stretches]
     for begin in range(0, variation.members, BLOCK):
         part = variation.part(slice(begin, begin + BLOCK))
         member = Forces(field, body, air, start, part)
@@ -272,11 +276,19 @@ def _release(body: Body | None, release: Release | None) -> Release:
 
 
 def _edges(forces: Forces, start: float, end: float, first_metres: float = 0.0) -> list[float]:
-    """Depths where a stretch must end: kinks of rock and air, and the end of the first metres."""
+    """Depths where a stretch must end: kinks of rock and air, and where members of different speeds set in.
+
+    A member's own start is a branch point of its speed; it is felt less the farther below, so that the stretches may
+    grow with the distance from it.
+    """
     breaks = set(forces.field.breaks) | set(forces.air.breaks if forces.air is not None else ())
-    top = start + first_metres
-    inner = sorted(one for one in breaks if top < one < end)
-    return [start, *((top,) if start < top < end else ()), *inner, end]
+    reach_down, timed = first_metres, []
+    while reach_down > 0.0 and start + reach_down < end:
+        timed.append(start + reach_down)
+        reach_down *= 8.0
+    top = timed[0] if timed else start
+    inner = {one for one in (*breaks, *timed[1:]) if top < one < end}
+    return [start, *timed[:1], *sorted(inner), end]
 
 
 def _first_metres(start: Release, variation: Variation) -> float:
@@ -324,11 +336,11 @@ def _members(
     """Six quantities of a block of members at the depths, shape (6, members, depths)."""
     hand = _in_hand(start, forces.variation)
     state = hand.state
-    rows = np.empty((6, len(state.time), len(depths)))
+    rows = np.full((6, len(state.time), len(depths)), np.nan)
     waiting = leads
     if timed_to is not None:
         top = rise(forces, hand)
-        for i in np.flatnonzero(depths < timed_to):
+        for i in np.flatnonzero(depths <= timed_to):
             rows[:, :, i] = np.stack(reach(forces, top, float(depths[i])))
         state = reach(forces, top, timed_to)
         waiting = [one for one in leads if one.stretch.start >= np.sqrt(timed_to - apex) * (1.0 - 1e-12)]
@@ -347,7 +359,7 @@ def _beside(ahead: Lead, first: State, rates: State, sigma: Array) -> Array:
     stretch = ahead.stretch
     x = (2.0 * sigma - stretch.start - stretch.end) / (stretch.end - stretch.start)
     nominal = chebyshev.chebvander(x, len(stretch.series) - 1) @ stretch.series[:, :, 0]
-    onto = chebyshev.chebvander(x, len(RULE.nodes)) @ RULE.to_series
+    onto = chebyshev.chebvander(x, len(ahead.rule.nodes)) @ ahead.rule.to_series
     begin = np.stack(first) - np.stack(stretch.first)
     rows: Array = nominal.T[:, None, :] + begin[:, :, None] + np.swapaxes(onto @ np.stack(rates), 1, 2)
     return rows

@@ -11,6 +11,7 @@ import numpy.typing as npt
 
 from eastfall.physics.air import AirColumn
 from eastfall.physics.earth import Array
+from eastfall.physics.ensemble import COARSE
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.fall import Release, Trajectory, Variation, fall_ensemble
 from eastfall.physics.field import LocalField
@@ -211,7 +212,14 @@ def monte_carlo(
         spin_down=spin[2],
     )
     falls = fall_ensemble(
-        field, depths=depths, variation=variation, body=body, air=air, release=release, tolerance=SAMPLING
+        field,
+        depths=depths,
+        variation=variation,
+        body=body,
+        air=air,
+        release=release,
+        tolerance=SAMPLING,
+        rule=COARSE,
     )
     return Landings(depth=falls.depth, east=falls.east, north=falls.north)
 
