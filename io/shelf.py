@@ -5,6 +5,7 @@ from collections.abc import Callable, Iterator
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 from datetime import datetime
+from math import inf
 from pathlib import Path
 from typing import Any
 
@@ -140,8 +141,14 @@ def list_runs(
         found.append(one)
         if progress is not None:
             progress(len(found), len(files))
-    oldest = datetime.min
-    return tuple(sorted(found, key=lambda one: (one.started_at or oldest).replace(tzinfo=None), reverse=True))
+    return tuple(sorted(found, key=_age, reverse=True))
+
+
+def _age(one: RunCard) -> float:
+    try:
+        return one.started_at.timestamp() if one.started_at else -inf
+    except (OverflowError, ValueError):  # a date that no clock of this machine reaches
+        return -inf
 
 
 def _cards(files: list[Path], workers: int | None) -> Iterator[RunCard]:
