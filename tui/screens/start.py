@@ -10,13 +10,13 @@ from textual import work
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Vertical
-from textual.screen import Screen
 from textual.widgets import OptionList
 from textual.widgets.option_list import Option
 
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine
 from eastfall.tui.words import CAUTIONS, size
 
@@ -60,7 +60,7 @@ def looks_like_site(path: Path) -> bool:
         return False
 
 
-class StartScreen(Screen[Choice | None]):
+class StartScreen(PaintedScreen[Choice | None]):
     """Cautions and a list of what to do.
 
     Parameters

@@ -5,13 +5,14 @@ from typing import ClassVar
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Vertical
-from textual.screen import ModalScreen, Screen
+from textual.screen import ModalScreen
 
 from eastfall.physics.findings import Station
 from eastfall.tui import keys, words
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
 from eastfall.tui.store import Snapshot
+from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.table import LongTable, fixed
 
@@ -55,7 +56,7 @@ def chosen(stations: tuple[Station, ...], order: str, only_open: bool) -> list[i
     return indices
 
 
-class StationsScreen(Screen[int | None]):
+class StationsScreen(PaintedScreen[int | None]):
     """The table; closes with the index of a station to look back at, or None."""
 
     HELP = ("stations", "page")

@@ -6,7 +6,6 @@ from typing import ClassVar, cast
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Horizontal
-from textual.screen import Screen
 
 from eastfall.io.safetext import safe
 from eastfall.tui import keys, views, words
@@ -20,6 +19,7 @@ from eastfall.tui.session import Session
 from eastfall.tui.sight import Sight
 from eastfall.tui.store import Snapshot
 from eastfall.tui.widgets.alarms import AlarmList, in_order
+from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.figures import Figures
 from eastfall.tui.widgets.health import HealthList, health_line
 from eastfall.tui.widgets.line import KeyLine, TextLine
@@ -30,7 +30,7 @@ from eastfall.tui.widgets.strip import Strip
 _LAYOUTS: tuple[look.Layout, ...] = ("all", "depth", "plan", "time")
 
 
-class WatchScreen(Screen[Choice | None]):
+class WatchScreen(PaintedScreen[Choice | None]):
     """One run, live or replayed.
 
     Parameters
@@ -124,8 +124,9 @@ class WatchScreen(Screen[Choice | None]):
 
     def _paint_evidence(self, shown: Snapshot, one: views.Subject) -> None:
         session, sight = self.session, self.sight
+        evidence = self.query_one("#evidence")
         for name in _LAYOUTS:
-            self.set_class(name == sight.layout, f"-view-{name}")
+            evidence.set_class(name == sight.layout, f"-view-{name}")
         whole = session.assumptions.shaft.depth
         self.query_one(Profile).show(
             ProfileView(snapshot=shown, sight=sight, whole=whole, bob=session.bob, fall=session.fall)

@@ -1,12 +1,13 @@
 """The ground of all drawn widgets: a picture of cells, of which only the rows that changed are painted again."""
 
 from itertools import pairwise
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, ClassVar
 
 import numpy as np
 from rich.segment import Segment
 from rich.style import Style
 from textual.geometry import Region
+from textual.screen import Screen, ScreenResultType
 from textual.strip import Strip
 from textual.widget import Widget
 
@@ -20,10 +21,24 @@ _GROUNDS = len(Role)
 _FILLER = chr(FILLER)
 
 
+class PaintedScreen(Screen[ScreenResultType]):
+    """A screen that holds the styles of all roles for what is on it.
+
+    With component classes on every widget, each change of a class on the screen would style some hundred nodes anew:
+    measured, a quarter of a second.
+    """
+
+    COMPONENT_CLASSES: ClassVar[set[str]] = set(COMPONENT_CLASSES)
+
+
+def role_style(widget: Widget, role: Role) -> Style:
+    """Return how a role looks on the widget's screen."""
+    return widget.screen.get_component_rich_style(CLASS_OF[role], partial=True)
+
+
 class CellWidget(Widget):
     """A widget that draws itself as cells; subclasses give `draw`."""
 
-    COMPONENT_CLASSES = set(COMPONENT_CLASSES)  # noqa: RUF012 (Textual merges it along the class tree)
     can_focus = False
 
     def __init__(self, *, id: str | None = None, classes: str | None = None) -> None:  # noqa: A002 (Textual's name)
@@ -86,9 +101,9 @@ class CellWidget(Widget):
         found = self._styles.get(code)
         if found is None:
             ink, ground = divmod(code, _GROUNDS)
-            found = self.rich_style + self.get_component_rich_style(CLASS_OF[Role(ink)], partial=True)
+            found = self.rich_style + role_style(self, Role(ink))
             if ground:
-                under = self.get_component_rich_style(CLASS_OF[Role(ground)], partial=True)
+                under = role_style(self, Role(ground))
                 found += Style(bgcolor=under.bgcolor, reverse=under.reverse)
             self._styles[code] = found
         return found

@@ -248,6 +248,7 @@ class _Panel:
             middle = self.column + int(self.axis.dot(value)) // self.sheet.glyphs.across
             start = min(max(middle - len(words) // 2, self.column), self.column + self.width - len(words))
             if start >= free:
+                self.sheet.text(max(start - 1, self.column), row, " " * (len(words) + 2), Role.DIM)
                 self.sheet.text(start, row, words, Role.DIM)
                 free = start + len(words) + 1
 

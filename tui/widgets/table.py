@@ -10,7 +10,8 @@ from textual.message import Message
 from textual.scroll_view import ScrollView
 from textual.strip import Strip
 
-from eastfall.tui.roles import CLASS_OF, COMPONENT_CLASSES, Role
+from eastfall.tui.roles import Role
+from eastfall.tui.widgets.cells import role_style
 
 Formatter = Callable[[int], tuple[str, Role]]
 """From a row's number to its text and how it is drawn."""
@@ -22,7 +23,6 @@ class LongTable(ScrollView, can_focus=True):
     Posts `Opened` when a row is chosen with enter.
     """
 
-    COMPONENT_CLASSES: ClassVar[set[str]] = set(COMPONENT_CLASSES)
     BINDINGS: ClassVar[list[BindingType]] = [
         Binding("up,k", "move(-1)", show=False),
         Binding("down", "move(1)", show=False),
@@ -90,7 +90,7 @@ class LongTable(ScrollView, can_focus=True):
         return self._strip(text, Role.CURSOR if row == self.cursor else role, width)
 
     def _strip(self, text: str, role: Role, width: int) -> Strip:
-        style = self.rich_style + self.get_component_rich_style(CLASS_OF[role], partial=True)
+        style = self.rich_style + role_style(self, role)
         return Strip([Segment(text, style)]).adjust_cell_length(width, style)
 
 
