@@ -50,7 +50,7 @@ class Emulator:
     Parameters
     ----------
     site : SiteFile
-        What stands in the shaft and how each link words its lines.
+        What stands in the shaft and how each link words its lines; without a link, one with the usual columns.
     seed : int
         Everything random follows from it.
     rate : float
@@ -79,16 +79,17 @@ class Emulator:
         _refuse_unless(0.0 < rate <= 1e5, "rate", rate, "1/s", "more than 0, to 100000")
         _refuse_unless(0.0 <= broken <= 1.0, "broken", broken, "", "0 to 1")
         _refuse_unless(until is None or until >= 0.0, "until", until, "s", "0 or more")
-        self.site = site
+        links = site.links or (LinkSettings(url="emulate:"),)
+        self.site = replace(site, links=links)
         self.seed = seed
         self.truth = truth or draw_truth(site.assumptions, seed)
-        faces = any("face_deg" in one.columns for one in site.links)
+        faces = any("face_deg" in one.columns for one in links)
         self.scene: Scene = scene_for(
             site.assumptions, self.truth, rate=rate, seed=seed, winch=winch, faces=faces
         )
         self._streams = [
             _Stream(self.scene, one, seed=(seed, 2, number), broken=broken, until=until)
-            for number, one in enumerate(site.links)
+            for number, one in enumerate(links)
         ]
 
     @property

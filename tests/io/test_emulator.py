@@ -295,6 +295,17 @@ def test_drop_marks_scatter_around_the_trajectory_by_release_and_reading() -> No
 
 
 @pytest.mark.invariant
+def test_a_site_without_a_link_speaks_the_usual_columns() -> None:
+    """Depth and two tilts, as a `[[link]]` with nothing but a URL would."""
+    site = demo_site("guided")
+    usual = Emulator(with_link(site, LinkSettings(url="x"))).lines(0, 10.0)
+    bare = Emulator(replace(site, links=()))
+    assert bare.links == 1
+    assert bare.lines(0, 10.0) == usual
+    assert usual[0][1].count(b",") == 2
+
+
+@pytest.mark.invariant
 def test_latency_delays_the_arrival_and_not_the_reading() -> None:
     """A line arrives late by the link's latency, with the time and the depth of its sampling."""
     link = LinkSettings(url="x", columns=("time_s", "depth_m"), latency=0.25)

@@ -71,10 +71,10 @@ def read_lines(client: socket.socket, count: int) -> list[bytes]:
 def test_a_serial_client_of_the_pseudo_terminal_gets_every_byte_from_the_start(tmp_path: Path) -> None:
     """Opened late through its symbolic link, the device gives the emulator's lines, broken bytes untouched."""
     name, report = tmp_path / "instrument", tmp_path / "report.json"
-    expected = Emulator(demo_site(), rate=100.0, broken=0.3, until=2.0)
-    wanted = b"".join(data for _, data in expected.lines(0, 2.0))
+    expected = Emulator(demo_site(), rate=100.0, broken=0.3, until=1.0)
+    wanted = b"".join(data for _, data in expected.lines(0, 1.0))
     with serving(
-        serve_pty, Emulator(demo_site(), rate=100.0, broken=0.3, until=2.0), link_path=name, report=report
+        serve_pty, Emulator(demo_site(), rate=100.0, broken=0.3, until=1.0), link_path=name, report=report
     ) as addresses:
         assert addresses == [str(name)]
         with serial.Serial(addresses[0], timeout=0.1) as port:
@@ -245,8 +245,7 @@ serve_tcp(emulator, report=report) if sys.argv[1] == "tcp" else serve_pty(emulat
 """
 
 
-@pytest.mark.parametrize("way", ["tcp", "pty"])
-@pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM])
+@pytest.mark.parametrize(("way", "number"), [("tcp", signal.SIGINT), ("pty", signal.SIGTERM)])
 def test_a_signal_ends_the_server_within_half_a_second_and_frees_the_port(
     way: str, number: signal.Signals, tmp_path: Path
 ) -> None:
