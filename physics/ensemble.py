@@ -130,7 +130,7 @@ def _inverse(rule: Rule, slope: Array) -> Array:
     return np.linalg.inv(matrix).astype(np.float64, copy=False)
 
 
-def follow(forces: Forces, ahead: Lead, first: State, tolerance: float = FOLLOWED) -> tuple[State, State]:
+def follow(forces: Forces, ahead: Lead, begin: State, tolerance: float = FOLLOWED) -> State:
     """Solve a stretch for members near the nominal fall.
 
     Parameters
@@ -138,15 +138,15 @@ def follow(forces: Forces, ahead: Lead, first: State, tolerance: float = FOLLOWE
     forces : Forces
         Of the members.
     ahead : Lead
-    first : State
-        Of the members at its start, arrays of shape (members,).
+    begin : State
+        Departure of the members from the nominal fall at its start, arrays of shape (members,).
     tolerance : float
         Rounds end when what further ones would add is below this, in metres and as a share of the energy.
 
     Returns
     -------
-    tuple of State
-        Rates of the departure at the nodes, shape (nodes, members); and the members' state at the end.
+    State
+        Rates of the departure at the nodes by the stretch's own variable, shape (nodes, members).
 
     Raises
     ------
@@ -160,7 +160,6 @@ def follow(forces: Forces, ahead: Lead, first: State, tolerance: float = FOLLOWE
     """
     linear = forces.variation.only_release
     around = ahead.around if linear else forces.surroundings(ahead.depth)
-    begin = State(*(new - old for new, old in zip(first, ahead.stretch.first, strict=True)))
     starts = np.stack(np.broadcast_arrays(*begin[1:]))
     apart = State(np.zeros(()), *(one @ starts for one in ahead.response))
     # The linear response leaves only what is of second order, so the first round shows how the next would shrink.
@@ -169,13 +168,16 @@ def follow(forces: Forces, ahead: Lead, first: State, tolerance: float = FOLLOWE
         apart, rates, moved = _refine(forces, around, ahead, begin, apart)
         # The moves shrink by about the same factor every round, so the next one is foreseen.
         if moved < tolerance or (moved < 0.5 * before and moved * moved < tolerance * before):
-            ends = (ahead.rule.weights @ rate for rate in rates)
-            last = (old + new + end for old, new, end in zip(ahead.stretch.last, begin, ends, strict=True))
-            return rates, State(*last)
+            return rates
         before = moved
     raise ParameterError(
         "variation", "an ensemble", "", "members close enough to the nominal fall to be followed"
     )
+
+
+def at_end(ahead: Lead, begin: State, rates: State) -> State:
+    """Departure at the end of a stretch, which is that at the start of the next; arrays of shape (members,)."""
+    return State(*(old + ahead.rule.weights @ rate for old, rate in zip(begin, rates, strict=True)))
 
 
 def _members_at_nodes(ahead: Lead, apart: State) -> State:
@@ -224,7 +226,13 @@ def _refine(
     )
     east = begin.east + ahead.rule.to_nodes @ rates.east
     north = begin.north + ahead.rule.to_nodes @ rates.north
-    moves = ((energy - apart.energy) / ahead.nodes.energy, east - apart.east, north - apart.north)
+    # Departures are smooth along the nodes: every third of them shows how far a round moved.
+    some = slice(None, None, -3)
+    moves = (
+        (energy[some] - apart.energy[some]) / ahead.nodes.energy[some],
+        east[some] - apart.east[some],
+        north[some] - apart.north[some],
+    )
     moved = max(_size(one) for one in moves)
     return State(apart.time, east, north, v_east, v_north, energy), rates, moved
 

@@ -13,7 +13,7 @@ from eastfall.physics.air import AirColumn
 from eastfall.physics.collocation import Rule
 from eastfall.physics.descent import State, Stretch, descend
 from eastfall.physics.earth import Array
-from eastfall.physics.ensemble import FOLLOWED, RULE, Lead, follow, lead
+from eastfall.physics.ensemble import FOLLOWED, RULE, Lead, at_end, follow, lead
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.fall_limits import path_warnings, refuse_impossible
 from eastfall.physics.field import LocalField
@@ -23,7 +23,7 @@ from eastfall.physics.throw import Thrown, reach, rise
 
 __all__ = ["Falling", "Release", "Trajectory", "Variation", "fall", "fall_ensemble"]
 
-BLOCK = 1024
+BLOCK = 2048
 """Members of an ensemble that are integrated together; their arrays fit in the processor's cache."""
 
 
@@ -345,21 +345,24 @@ def _members(
         state = reach(forces, top, timed_to)
         waiting = [one for one in leads if one.stretch.start >= np.sqrt(timed_to - apex) * (1.0 - 1e-12)]
     sigma = np.sqrt(np.maximum(depths - apex, 0.0))
-    for ahead in waiting:
-        rates, last = follow(forces, ahead, state, tolerance)
+    for k, ahead in enumerate(waiting):
+        if k == 0:
+            begin = State(*(new - old for new, old in zip(state, ahead.stretch.first, strict=True)))
+        rates = follow(forces, ahead, begin, tolerance)
         inside = (sigma >= ahead.stretch.start) & (sigma <= ahead.stretch.end)
         if np.any(inside):
-            rows[:, :, inside] = _beside(ahead, state, rates, sigma[inside])
-        state = last
+            _set_beside(rows, inside, ahead, begin, rates, sigma[inside])
+        begin = at_end(ahead, begin, rates)
     return rows
 
 
-def _beside(ahead: Lead, first: State, rates: State, sigma: Array) -> Array:
-    """Six quantities of members within a stretch at σ, shape (6, members, σ)."""
+def _set_beside(
+    rows: Array, inside: npt.NDArray[np.bool_], ahead: Lead, begin: State, rates: State, sigma: Array
+) -> None:
+    """Write the six quantities of members within a stretch at σ into their columns."""
     stretch = ahead.stretch
     x = (2.0 * sigma - stretch.start - stretch.end) / (stretch.end - stretch.start)
     nominal = chebyshev.chebvander(x, len(stretch.series) - 1) @ stretch.series[:, :, 0]
     onto = chebyshev.chebvander(x, len(ahead.rule.nodes)) @ ahead.rule.to_series
-    begin = np.stack(first) - np.stack(stretch.first)
-    rows: Array = nominal.T[:, None, :] + begin[:, :, None] + np.swapaxes(onto @ np.stack(rates), 1, 2)
-    return rows
+    for row, at, departure, rate in zip(rows, nominal.T, begin, rates, strict=True):
+        row[:, inside] = (departure + onto @ rate).T + at
