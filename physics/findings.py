@@ -92,8 +92,10 @@ class Station:
     readings: int
     still: bool
     """Closed from readings at rest (True) or taken in passing (False)."""
-    shares: tuple[Share, ...] = ()
-    """The budget of u_east and u_north, largest first."""
+    inputs: tuple[str, ...] = ()
+    """What the uncertainty comes from."""
+    parts: tuple[tuple[float, float], ...] = ()
+    """Standard uncertainty from each input alone, east and north [m]."""
 
     @property
     def residual_east(self) -> float:
@@ -104,6 +106,13 @@ class Station:
     def residual_north(self) -> float:
         """Measured less expected [m]."""
         return self.measured_north - self.expected_north
+
+    @property
+    def shares(self) -> tuple[Share, ...]:
+        """The budget of `u_east` and `u_north`: inputs that matter, largest first."""
+        named = zip(self.inputs, self.parts, strict=True)
+        found = [Share(name=name, east=east, north=north) for name, (east, north) in named if east or north]
+        return tuple(sorted(found, key=lambda one: -(one.east**2 + one.north**2)))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.expected import ExpectedCurve
-from eastfall.physics.findings import ROW_FIELDS, RestPoint, Rows, Share, Station
+from eastfall.physics.findings import ROW_FIELDS, RestPoint, Rows, Station
 from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Limits
@@ -154,7 +154,7 @@ def stations_of(facts: StationFacts, limits: Limits) -> list[Station]:
     warning, action = limits_at(limits, facts.depth)
     words = verdicts(length, u_length, action)
     columns = np.stack([facts.depth, facts.time, *facts.measured, *facts.expected, *u, warning, action])
-    shares = np.abs(facts.parts).transpose(2, 0, 1).tolist()
+    parts = np.abs(facts.parts).transpose(2, 0, 1).tolist()
     return [
         Station(
             number=facts.number + at,
@@ -173,13 +173,8 @@ def stations_of(facts: StationFacts, limits: Limits) -> list[Station]:
             verdict=words[at],
             readings=facts.readings[at],
             still=facts.still,
-            shares=_largest_first(facts.names, shares[at]),
+            inputs=facts.names,
+            parts=tuple((east, north) for east, north in parts[at]),
         )
         for at, row in enumerate(columns.T.tolist())
     ]
-
-
-def _largest_first(names: tuple[str, ...], parts: list[list[float]]) -> tuple[Share, ...]:
-    kept = [(e * e + n * n, name, e, n) for name, (e, n) in zip(names, parts, strict=True) if e or n]
-    kept.sort(reverse=True)
-    return tuple(Share(name=name, east=e, north=n) for _, name, e, n in kept)

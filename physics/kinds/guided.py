@@ -34,6 +34,7 @@ _REACHED = 0.05
 # What is remembered of a row between blocks; the weight of the random part comes after these.
 _KEPT = ("time", "depth", "measured_east", "measured_north", "expected_east", "expected_north")
 
+_PIECE = 4096
 _OWN = ("tilt, random", "tilt, zero", "tilt, scale", "azimuth", "depth")
 """The inputs of the measured offset's uncertainty."""
 
@@ -155,11 +156,18 @@ class Guided:
         return parts
 
     def _uncertainty(self, rows: Array, weight: Array) -> Array:
-        depth = rows[ROW["depth"]]
-        expected = self._curve.look_up(self._curve.u, depth)
-        own = self._parts(depth, rows[ROW["measured_east"]], rows[ROW["measured_north"]], weight)
-        np.multiply(own, own, out=own)
-        return np.sqrt(own.sum(axis=0) + expected * expected)
+        u = self._curve.look_up(self._curve.u, rows[ROW["depth"]])
+        u *= u
+        # In pieces that stay in the processor's cache: the parts of a long block would not.
+        for start in range(0, weight.size, _PIECE):
+            piece = slice(start, start + _PIECE)
+            depth, east, north = (
+                rows[ROW[name], piece] for name in ("depth", "measured_east", "measured_north")
+            )
+            own = self._parts(depth, east, north, weight[piece])
+            np.multiply(own, own, out=own)
+            u[:, piece] += own.sum(axis=0)
+        return np.sqrt(u, out=u)
 
     def _pass_through(self, rows: Array, weight: Array) -> tuple[Station, ...]:
         depth = rows[ROW["depth"]]

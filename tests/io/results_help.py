@@ -9,7 +9,7 @@ from record_help import site
 from eastfall.io.arrivals import RunEvent
 from eastfall.io.reduce import Reduction
 from eastfall.io.seal import Verification
-from eastfall.physics.findings import AlarmChange, Closure, RestPoint, Result, Share, Station
+from eastfall.physics.findings import AlarmChange, Closure, RestPoint, Result, Station
 
 
 def station(depth: float, east: float, north: float = 0.0, *, passing: int = 0, **changes: object) -> Station:
@@ -31,10 +31,8 @@ def station(depth: float, east: float, north: float = 0.0, *, passing: int = 0, 
         verdict="within",
         readings=4,
         still=False,
-        shares=(
-            Share(name="tilt, zero", east=0.0009, north=0.001),
-            Share(name="azimuth", east=4e-4, north=6e-4),
-        ),
+        inputs=("tilt, zero", "azimuth"),
+        parts=((0.0009, 0.001), (4e-4, 6e-4)),
     )
     return replace(one, **changes)  # type: ignore[arg-type]
 
