@@ -21,7 +21,7 @@ from eastfall.physics.earth import (
     shell_gravity,
 )
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.published.earth_and_fall import prem_shells
+from eastfall.physics.published.model_fields import prem_shells
 
 LATITUDES = np.radians(np.linspace(-90.0, 90.0, 37))
 

@@ -1,6 +1,8 @@
 """Many falls at once against one fall each."""
 
+import importlib.util
 from dataclasses import fields, replace
+from pathlib import Path
 
 import numpy as np
 import pytest
@@ -169,3 +171,24 @@ def test_unusable_ensembles_are_refused() -> None:
         fall_ensemble(FIELD, depths=[1.0], variation=Variation(), release=Release(depth=2.0))
     with pytest.raises(ParameterError, match="arrays of one dimension"):
         fall_ensemble(FIELD, depths=[1.0], variation=Variation(east=np.zeros((2, 2))))
+
+
+@pytest.mark.independent
+def test_drops_agree_with_scalar_forces_written_apart() -> None:
+    """Twelve releases through the drag crisis agree within 1 µm with solve_ivp over forces in plain floats."""
+    path = Path(__file__).parents[1] / "bench" / "bench_fall.py"
+    spec = importlib.util.spec_from_file_location("bench_fall", path)
+    assert spec is not None
+    assert spec.loader is not None
+    bench = importlib.util.module_from_spec(spec)
+    spec.loader.exec_module(bench)
+    releases = np.random.default_rng(7).standard_normal((4, 12)) * np.array([[5e-4], [5e-4], [2e-3], [2e-3]])
+    variation = Variation(
+        east=releases[0], north=releases[1], speed_east=releases[2], speed_north=releases[3]
+    )
+    many = fall_ensemble(
+        bench.FIELD, depths=[bench.DEPTH], variation=variation, body=bench.BODY, air=bench.AIR
+    )
+    assert np.stack([many.east[:, 0], many.north[:, 0]]) == pytest.approx(
+        bench.looped_drops(releases), abs=1e-6
+    )

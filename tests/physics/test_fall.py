@@ -14,7 +14,7 @@ from eastfall.physics.errors import ParameterError
 from eastfall.physics.fall import Falling, Release, Trajectory, fall
 from eastfall.physics.field import LocalField, local_field
 from eastfall.physics.motion import UNCHANGED, Forces
-from eastfall.physics.published.earth_and_fall import constant_field, turning_sphere
+from eastfall.physics.published.model_fields import constant_field, turning_sphere
 from eastfall.physics.settings import Air, Body, Site
 
 SITE = Site(latitude=np.radians(57.3), rock_density=((0.0, 2670.0), (410.0, 2810.0)))

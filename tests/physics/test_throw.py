@@ -7,7 +7,7 @@ import pytest
 
 from eastfall.physics.descent import State
 from eastfall.physics.motion import UNCHANGED, Forces, Release
-from eastfall.physics.published.earth_and_fall import constant_field
+from eastfall.physics.published.model_fields import constant_field
 from eastfall.physics.throw import Thrown, reach, rise
 
 FORCES = Forces(constant_field(pi / 4, 9.8), None, None, Release(), UNCHANGED)
