@@ -3,7 +3,7 @@
 What the bins are good for (a speed, a rest point) is the business of `moving` and `swing`.
 """
 
-from dataclasses import dataclass
+from typing import NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -15,15 +15,14 @@ _FIRST_ROW = 0.37
 """Where the first row lies in its cell [widths]: for 1 to 200 rows a second, none falls on a border later."""
 
 
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Bins:
+class Bins(NamedTuple):
     """Closed bins, oldest first.
 
     Parameters
     ----------
     number : array, shape (n,)
         Place on the time grid [widths from the origin], rising.
-    count : array, shape (n,)
+    rows : array, shape (n,)
         Rows in each bin.
     time : array, shape (n,)
         Mean time from the origin [s].
@@ -34,7 +33,7 @@ class Bins:
     """
 
     number: Array
-    count: Array
+    rows: Array
     time: Array
     spread: Array
     means: Array
@@ -105,7 +104,7 @@ class TimeBins:
         opens = np.empty(cell.size, dtype=bool)
         opens[0] = cell[0] != self._cell
         np.not_equal(cell[1:], cell[:-1], out=opens[1:])
-        starts = np.flatnonzero(opens)
+        starts = opens.nonzero()[0]
         if not starts.size:
             return np.zeros(cell.size, dtype=np.intp), self._none
         numbers = cell[starts - 1]
@@ -132,7 +131,7 @@ def _averaged(numbers: Array, counts: Array, sums: Array, width: float) -> Bins:
     means = sums / counts
     return Bins(
         number=numbers,
-        count=counts,
+        rows=counts,
         time=numbers * width + means[0],
         # Rounding may leave a spread of a few ulp below zero where all rows share one time.
         spread=np.maximum(means[1] - means[0] * means[0], 0.0),

@@ -136,13 +136,14 @@ class LineSpeed:
 
     def _rows(self, time: Array, depth: Array, steps: Array, out: Array) -> None:
         index, closed = self._bins.add(time, depth[None])
-        pauses = steps > LONGEST_GAP
-        runs = self._run + np.cumsum(pauses) if pauses.any() else np.full(1, self._run)
-        fits = self._fits(closed, self._runs_of(closed, index, runs)) if closed.count.size else self._fit
+        runs = None
+        if steps.max() > LONGEST_GAP:
+            runs = self._run + np.cumsum(steps > LONGEST_GAP)
+        fits = self._fits(closed, self._runs_of(closed, index, runs)) if closed.rows.size else self._fit
         self._latest = float(time[-1])
-        self._run = int(runs[-1])
+        self._run = self._run if runs is None else int(runs[-1])
         run, at, speed, acceleration = fits
-        if runs.size > 1:
+        if runs is not None:
             rate = np.where(run[index] == runs, acceleration[index], np.nan)
         elif run[0] == run[-1] == self._run:
             rate = acceleration[index]
@@ -152,19 +153,28 @@ class LineSpeed:
         rate *= time - (at + self._bins.origin)[index]
         np.add(speed[index], rate, out=out[0])
 
-    def _runs_of(self, closed: Bins, index: npt.NDArray[np.intp], runs: npt.NDArray[np.intp]) -> Array:
+    def _runs_of(
+        self, closed: Bins, index: npt.NDArray[np.intp], runs: npt.NDArray[np.intp] | None
+    ) -> Array | float:
         """Run of each closed knot: that of its last row, the row before the one that closed it."""
-        if runs.size == 1:
-            return np.full(closed.count.size, float(self._run))
-        closers = np.searchsorted(index, np.arange(1, closed.count.size + 1))
+        if runs is None:
+            return float(self._run)
+        closers = np.searchsorted(index, np.arange(1, closed.rows.size + 1))
         before = np.concatenate([[self._run], runs])
         return before[closers].astype(np.float64)
 
-    def _fits(self, closed: Bins, runs: Array) -> Array:
+    def _fits(self, closed: Bins, runs: Array | float) -> Array:
         """Fits at the newest knot before this block, then at each closed knot: run, time, speed, acceleration."""
-        fresh = np.stack([runs, closed.time, closed.spread, closed.means[0]])
-        knots = np.concatenate([self._knots, fresh], axis=1)
-        fits = np.concatenate([self._fit, _parabolas(knots, fresh.shape[1])], axis=1)
+        old = self._knots.shape[1]
+        knots = np.empty((4, old + closed.time.size))
+        knots[:, :old] = self._knots
+        knots[0, old:], knots[1, old:], knots[2, old:], knots[3, old:] = (
+            runs,
+            closed.time,
+            closed.spread,
+            closed.means[0],
+        )
+        fits = np.concatenate([self._fit, _parabolas(knots, closed.time.size)], axis=1)
         self._knots = knots[:, -_MEMORY:].copy()
         self._fit = fits[:, -1:].copy()
         return fits
@@ -182,7 +192,9 @@ def _parabolas(knots: Array, wanted: int) -> Array:
     """Run, time, speed and acceleration at each of the last `wanted` knots, by the largest groups there are."""
     total = knots.shape[1]
     if total == _MEMORY + wanted and knots[0, 0] == knots[0, -1]:
-        return np.concatenate([knots[:2, _MEMORY:], _grouped(knots[1:], GROUP)])
+        result = np.empty((4, wanted))
+        result[:2], result[2:] = knots[:2, _MEMORY:], _grouped(knots[1:], GROUP)
+        return result
     result = np.full((4, wanted), np.nan)
     result[:2] = knots[:2, total - wanted :]
     open_ones = np.ones(wanted, dtype=bool)
@@ -210,10 +222,15 @@ def _chords(knots: Array) -> Array:
 
 
 def _running_mean(values: Array, size: int) -> Array:
-    total = values[: values.size - size + 1]
-    for shift in range(1, size):
-        total = total + values[shift : values.size - size + 1 + shift]
-    return total / size if size > 1 else total
+    """Mean of every `size` neighbours along the last axis."""
+    if size == 1:
+        return values
+    last = values.shape[-1] - size + 1
+    total = values[..., :last] + values[..., 1 : last + 1]
+    for shift in range(2, size):
+        total += values[..., shift : last + shift]
+    total /= size
+    return total
 
 
 def _grouped(knots: Array, size: int) -> Array:
@@ -222,17 +239,20 @@ def _grouped(knots: Array, size: int) -> Array:
     The mean of z = z0 + v τ + ½ a τ² over a group is z0 + v T + ½ a (T² + q), T and q the mean and the
     variance of τ in it; the differences of three groups give v and a.
     """
-    time, spread, depth = knots
-    mean = _running_mean(time, size)
-    scatter = _running_mean(spread, size)
+    time = knots[0]
+    means = _running_mean(knots, size)
     if size > 1:
+        centre = means[0]
         for shift in range(size):
-            away = time[shift : shift + mean.size] - mean
-            scatter = scatter + away * away / size
-    height = _running_mean(depth, size)
-    step = mean[size:] - mean[:-size]
-    chord = (height[size:] - height[:-size]) / step
-    lever = (scatter[size:] - scatter[:-size]) / step + (mean[size:] + mean[:-size])
+            away = time[shift : shift + centre.size] - centre
+            away *= away
+            away /= size
+            means[1] += away
+    step, spread, height = means[:, size:] - means[:, :-size]
+    chord = height / step
+    lever = spread / step + (means[0, size:] + means[0, :-size])
     half = (chord[size:] - chord[:-size]) / (lever[size:] - lever[:-size])
-    newest = time[3 * size - 1 :]
-    return np.stack([chord[size:] - half * (lever[size:] - 2.0 * newest), 2.0 * half])
+    out = np.empty((2, half.size))
+    out[0] = chord[size:] - half * (lever[size:] - 2.0 * time[3 * size - 1 :])
+    np.multiply(half, 2.0, out=out[1])
+    return out

@@ -12,6 +12,7 @@ Array = npt.NDArray[np.float64]
 Complex = npt.NDArray[np.complex128]
 
 _STEPS = 15
+_LOOK = 64  # samples in a first look at the frequency
 _SETTLED = 1e-9
 """A step that lowers the sum of squares by less than this part of it ends the search: of 2000 samples, a
 thousandth of the standard uncertainty."""
@@ -131,6 +132,12 @@ class _Model:
         basis[2] = damped * swung.conj() * (1.0 + (-gamma - 1j * (self.turn + omega)) ** 2 * half)
         return basis
 
+    def cost(self, omega: float) -> float:
+        """Return the weighted sum of squares left by a swing without damping [m²]."""
+        basis = self.basis(omega, 0.0)
+        left = self.samples.value - Projection(basis, self.weight).onto(self.samples.value) @ basis
+        return float(np.sum(self.weight * (left.real**2 + left.imag**2)))
+
     def fit(self, omega: float, gamma: float) -> Fit:
         """Solve for c, A and B, and linearise in ω and γ."""
         basis = self.basis(omega, gamma)
@@ -228,7 +235,8 @@ def refine(samples: Samples, turn: float, omega: float, gamma: float) -> tuple[F
 
 def _descend(model: _Model, fit: Fit, step: Array) -> Fit | None:
     for _ in range(8):
-        trial = model.fit(fit.omega + step[0], fit.gamma + step[1])
+        # A negative frequency is the same swing with its two circles exchanged.
+        trial = model.fit(abs(fit.omega + step[0]), fit.gamma + step[1])
         if trial.cost < fit.cost:
             return trial
         step = 0.5 * step
@@ -244,11 +252,49 @@ def _step(fit: Fit, weight: Array) -> tuple[Array, float]:
     return step, float(step @ right)
 
 
-def scan(samples: Samples, turn: float, omegas: Array) -> float:
-    """Best of several trial values of ω without damping [rad/s]."""
+def scan(samples: Samples, turn: float, omegas: Array) -> tuple[float, float]:
+    """Return the best of several trial values of ω without damping [rad/s], and its sum of squares [m²]."""
     model = _Model(samples, turn)
-    costs = [model.fit(float(one), 0.0).cost for one in omegas]
-    return float(omegas[int(np.argmin(costs))])
+    costs = [model.cost(float(one)) for one in omegas]
+    best = int(np.argmin(costs))
+    return float(omegas[best]), costs[best]
+
+
+def rough_omega(samples: Samples, turn: float) -> float:
+    """Find ω of samples of which nothing is known.
+
+    Parameters
+    ----------
+    samples : Samples
+        1.5 swings or more.
+    turn : float
+        Ω [rad/s].
+
+    Returns
+    -------
+    float
+        [rad/s], of the stretch at the start that a swing explains best.
+
+    Notes
+    -----
+    Stretches of 64 samples, then of twice the length joined to 64 again, and so on to the whole; each is searched
+    from 1.5 to 16 swings, so that four samples or more fall into a swing.
+    """
+    best, explained = 2.0 * np.pi / samples.duration, 0.0
+    size = _LOOK
+    while True:
+        n = min(size, samples.time.size)
+        part = coarse(samples.until(float(samples.time[n - 1])), _LOOK)
+        turns = np.arange(1.4, 0.25 * part.time.size, 0.15)
+        omega, cost = scan(part, turn, 2.0 * np.pi * turns / part.duration)
+        still = float(
+            np.sum(part.weight * np.abs(part.value - np.average(part.value, weights=part.weight)) ** 2)
+        )
+        if still > 0.0 and 1.0 - cost / still > explained:
+            best, explained = omega, 1.0 - cost / still
+        if n == samples.time.size:
+            return best
+        size *= 2
 
 
 def search(samples: Samples, turn: float, expected: float | None) -> tuple[Fit, bool]:
@@ -271,17 +317,12 @@ def search(samples: Samples, turn: float, expected: float | None) -> tuple[Fit, 
     Notes
     -----
     ω is found on the first two swings, then on stretches twice as long each time, so that the start value is
-    always close enough. Without an expectation the first scan uses the whole record.
+    always close enough.
     """
-    if expected is None:
-        thin = coarse(samples, 256)
-        highest = 0.25 * np.pi * thin.time.size / thin.duration
-        lowest = 2.0 * np.pi / thin.duration
-        omega = scan(thin, turn, np.arange(lowest, highest, 1.0 / thin.duration))
-        return refine(samples, turn, omega, 0.0)
-    end = min(samples.duration, 2.0 * 2.0 * np.pi / expected)
+    about = rough_omega(samples, turn) if expected is None else expected
+    end = min(samples.duration, 2.0 * 2.0 * np.pi / about)
     start = samples.until(float(samples.time[0]) + end)
-    omega = scan(coarse(start, 64), turn, expected * np.geomspace(0.5, 2.0, 29))
+    omega, _ = scan(coarse(start, _LOOK), turn, about * np.geomspace(0.5, 2.0, 29))
     gamma = 0.0
     while end < samples.duration:
         fit, _ = refine(samples.until(float(samples.time[0]) + end), turn, omega, gamma)

@@ -82,7 +82,9 @@ def rest_point_scatter(samples: Samples, fit: Fit) -> Scatter:
     return Scatter(
         covariance=covariance,
         colour=float(chance[shares > 0.2].sum()),
-        widening=float(np.sqrt(np.trace(covariance) / np.trace(white))),
+        widening=float(
+            np.sqrt(np.trace(covariance) / max(float(np.trace(white)), np.finfo(np.float64).tiny))
+        ),
     )
 
 

@@ -13,9 +13,16 @@ import numpy.typing as npt
 from eastfall.physics.binning import Bins, TimeBins
 from eastfall.physics.earth import EARTH_ROTATION
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.pendulum import Fit, Samples, refine, search
+from eastfall.physics.pendulum import Fit, Samples, refine, rough_omega, search
 from eastfall.physics.scatter import Scatter, rest_point_scatter
-from eastfall.physics.swing_checks import airy_precession, axes, harmonic, schuler_rest, swing_stands_out
+from eastfall.physics.swing_checks import (
+    airy_precession,
+    axes,
+    harmonic,
+    is_smooth,
+    schuler_rest,
+    swing_stands_out,
+)
 
 Array = npt.NDArray[np.float64]
 
@@ -23,9 +30,9 @@ FEWEST_SWINGS = 1.5
 LARGE_ANGLE = 0.1
 """Swing to each side [rad] above which the sine is no longer its angle to a thousandth."""
 _CAPACITY = 1024  # bins kept
-_PER_SWING = (32, 16)  # bins in a swing: of the newest, and the fewest when old ones are joined
+_PER_SWING = (24, 12)  # bins in a swing: of the newest, and the fewest when old ones are joined
 _UNKNOWN_WIDTH = 0.1  # of a bin [s] while the period is not known
-_POOR = 0.35  # residuals with a memory, against the swing, rms: above it this is no pendulum
+_POOR = 0.35  # smooth residuals against the swing, rms: above it this is no pendulum
 _BENT = 0.03  # of a harmonic against the swing
 
 
@@ -125,7 +132,7 @@ class RestPoint:
 class RestPointTracker:
     """Rest point from a stream of positions.
 
-    Rows are averaged over fixed stretches of time, at least 16 in a swing, of which 1024 are kept: an hour or more
+    Rows are averaged over fixed stretches of time, at least 12 in a swing, of which 1024 are kept: an hour or more
     of a long line. When they are full, neighbours are joined as far as that allows, then the oldest are dropped; so
     cost and memory are bounded. An estimate rests on the rows alone, not on how they were cut into blocks; two
     trackers asked at the same rows give the same answers. Rows with a missing or earlier time or a missing
@@ -210,7 +217,7 @@ class RestPointTracker:
             [
                 closed.number,
                 np.zeros_like(closed.time),
-                closed.count,
+                closed.rows,
                 closed.time,
                 closed.spread,
                 *closed.means,
@@ -235,13 +242,13 @@ class RestPointTracker:
 
     def _widest_level(self) -> int:
         """How often bins may be doubled when only the readings tell the period."""
-        fit, _ = search(self.samples(), self.turn, None)
-        return max(int(log2(2.0 * pi / fit.omega / _PER_SWING[1] / self._bins.width)), 0)
+        swing = 2.0 * pi / rough_omega(self.samples(), self.turn)
+        return max(int(log2(swing / _PER_SWING[1] / self._bins.width)), 0)
 
     def samples(self) -> Samples:
         """Return the kept stretches and the open one, time counting from near the first row."""
         held = self._bins.open_bin()
-        last = np.stack([held.number, held.number, held.count, held.time, held.spread, *held.means])
+        last = np.stack([held.number, held.number, held.rows, held.time, held.spread, *held.means])
         _, _, count, time, spread, east, north = np.concatenate([self._store, last], axis=1)
         return Samples(time=time, spread=spread, weight=count, value=east + 1j * north)
 
@@ -276,7 +283,7 @@ class RestPointTracker:
         if self.period is None and swings < FEWEST_SWINGS * 0.97:
             return None
         scatter = rest_point_scatter(samples, fit)
-        trouble = self._trouble(samples, fit, settled, scatter)
+        trouble = self._trouble(samples, fit, settled)
         if trouble:
             return RestPoint(fits=False, message=trouble, covariance=np.full((2, 2), nan), swings=swings)
         return self._result(samples, fit, scatter, swings)
@@ -308,7 +315,7 @@ class RestPointTracker:
         major, minor = axes(fit.forward, fit.backward)
         return float(airy_precession(self.length, major, minor, 2.0 * pi / fit.omega))
 
-    def _trouble(self, samples: Samples, fit: Fit, settled: bool, scatter: Scatter) -> str:
+    def _trouble(self, samples: Samples, fit: Fit, settled: bool) -> str:
         """Say why the readings are not a free swing; empty if they may be one."""
         swing = np.sqrt(
             np.average(np.abs(samples.value - fit.residual - fit.centre) ** 2, weights=samples.weight)
@@ -317,7 +324,7 @@ class RestPointTracker:
         period = 2.0 * pi / fit.omega
         if not settled:
             return "no free swing fits the readings: the search found no best period"
-        if scatter.colour > 0.5 and left > _POOR * swing:
+        if left > _POOR * swing and is_smooth(fit):
             sizes = f"{1e3 * left:.1f} mm are left over of a swing of {1e3 * swing:.1f} mm rms"
             return f"no free swing fits the readings: {sizes}"
         if self.period is not None and not 0.6 < period / self.period < 1.6:

@@ -29,6 +29,16 @@ def swing_stands_out(samples: Samples, fit: Fit) -> bool:
     return (still - fit.cost) / 6.0 > _PRESENT * fit.cost / freedom
 
 
+def is_smooth(fit: Fit) -> bool:
+    """Whether the residuals go on from sample to sample as something that was left out of the model would.
+
+    Von Neumann's ratio of the mean square step to the mean square is 2 for white noise and near 0 for a slow or
+    swinging misfit.
+    """
+    left = fit.residual
+    return float(np.mean(np.abs(np.diff(left)) ** 2)) < float(np.mean(np.abs(left) ** 2))
+
+
 def harmonic(samples: Samples, fit: Fit) -> float:
     """Second and third harmonic of the residuals against the swing [1]; 0 where they do not stand out."""
     total = samples.weight.sum()
