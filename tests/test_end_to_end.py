@@ -14,11 +14,14 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from eastfall.io.emulator import Emulator
+from eastfall.io.journey import Winch, down_and_up
 from eastfall.io.pipeline import merged
 from eastfall.io.reduce import Reduction, reduce_file
 from eastfall.io.replay import Replay
 from eastfall.io.run import Run, RunUpdate
 from eastfall.io.runlog import RunLogWriter
+from eastfall.io.serve import serve_pty
 from eastfall.io.sitefile import SiteFile, load_site
 from eastfall.io.truth import Bend, Truth
 from eastfall.physics.earth import EARTH_ROTATION
@@ -28,8 +31,8 @@ PATIENCE = 30.0
 """How long a condition may take on a busy machine, beyond the length of the run [s]."""
 RATE = 50.0
 SPEED, PULL, DEPTH = 1.6, 1.6, 4.0
-TRUTH = {"lean_east": 1e-4, "lean_north": -5e-5}
-BEND = {"depth": 2.0, "width": 0.3, "east": -2e-5, "north": 1e-5}
+BEND = Bend(depth=2.0, width=0.3, east=-2e-5, north=1e-5)
+TRUTH = Truth(lean_east=1e-4, lean_north=-5e-5, bends=(BEND,))
 
 SITE = """
 [site]
@@ -56,23 +59,17 @@ url = "set by the test"
 columns = ["time_s", "depth_m", "tilt_a_deg", "tilt_b_deg"]
 """
 
-SERVER = """
-import json, sys
-from pathlib import Path
-from eastfall.io.emulator import Emulator
-from eastfall.io.journey import Winch, down_and_up
-from eastfall.io.serve import serve_pty
-from eastfall.io.sitefile import load_site
-from eastfall.io.truth import Bend, Truth
-folder, asked = Path(sys.argv[1]), json.loads(sys.argv[2])
-site = load_site(folder / "site.toml")
-winch = Winch(creep_length=0.0, collar_time=1.0, bottom_time=0.5, **asked["winch"])
-emulator = Emulator(
-    site, seed=6, rate=asked["rate"], broken=0.2, truth=Truth(**asked["truth"], bends=(Bend(**asked["bend"]),)),
-    winch=winch, until=down_and_up(site.assumptions.shaft.depth, winch).duration,
-)
-serve_pty(emulator, link_path=folder / "probe", report=folder / "sent.json")
-"""
+
+def emulator_of(site: SiteFile) -> Emulator:
+    """Return the instrument that the other process serves: down and up once, one broken line to five good ones."""
+    winch = Winch(speed=SPEED, acceleration=PULL, creep_length=0.0, collar_time=1.0, bottom_time=0.5)
+    until = down_and_up(site.assumptions.shaft.depth, winch).duration
+    return Emulator(site, seed=6, rate=RATE, broken=0.2, truth=TRUTH, winch=winch, until=until)
+
+
+def lines_of(site: SiteFile) -> int:
+    """Return how many lines will come, good and broken."""
+    return len(emulator_of(site).take(0, np.inf))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -102,15 +99,13 @@ def running(command: list[str]) -> Iterator[subprocess.Popen[str]]:
 @contextmanager
 def serving(folder: Path) -> Iterator[tuple[subprocess.Popen[str], str]]:
     """Emulate the folder's site in another process; yield it and the device that it serves."""
-    asked = {"rate": RATE, "truth": TRUTH, "bend": BEND, "winch": {"speed": SPEED, "acceleration": PULL}}
-    with running([sys.executable, "-c", SERVER, str(folder), json.dumps(asked)]) as server:
+    with running([sys.executable, __file__, str(folder)]) as server:
         assert server.stdout is not None
         yield server, server.stdout.readline().strip()
 
 
 def end(server: subprocess.Popen[str]) -> None:
-    """End the server as a person would; it has nothing to complain of."""
-    server.send_signal(signal.SIGTERM)
+    """Let the server end of itself, as it does when everything is sent and nobody listens; it has no complaint."""
     assert server.communicate(timeout=PATIENCE) == ("", "")
     assert server.returncode == 0
 
@@ -122,7 +117,7 @@ def ride(folder: Path, depth: float) -> Ridden:
     with serving(folder) as (server, device):
         log = RunLogWriter.create(folder / "logs", site, started_at=datetime.now(UTC))
         run = Run(site, links=[device], log=log)
-        updates = list(driven(run, 2.0 * depth / SPEED + PATIENCE))
+        updates = list(driven(run, lines_of(site), 3.0 * depth / SPEED + PATIENCE))
         end(server)
     return Ridden(
         sent=json.loads((folder / "sent.json").read_text())["links"][0],
@@ -134,18 +129,18 @@ def ride(folder: Path, depth: float) -> Ridden:
     )
 
 
-def driven(run: Run, longest: float) -> Iterator[RunUpdate]:
-    """Step a run until lines have come and then none for a second and a half."""
+def driven(run: Run, lines: int, longest: float) -> Iterator[RunUpdate]:
+    """Step a run until all lines have come, and half a second more for what should not come."""
     deadline = time.monotonic() + longest
     run.start()
     try:
-        silent = False
-        while not silent:
+        done = False
+        while not done:
             update = run.step(0.1)
             yield update
             link = update.health.links[0]
-            silent = link.lines > 0 and link.silent_for > 1.5
-            assert time.monotonic() < deadline, "the ride did not end"
+            done = link.lines >= lines and link.silent_for > 0.5
+            assert time.monotonic() < deadline, f"{link.lines} of {lines} lines have come"
     finally:
         last = run.stop()
     yield last
@@ -175,7 +170,7 @@ def test_no_good_line_is_lost_and_every_bad_one_is_counted(ridden: Ridden) -> No
 
 def test_the_log_holds_every_line_as_it_was_sent(ridden: Ridden) -> None:
     """Read back from the log, the lines are as many as were sent, and the good ones hold the sampled times in order."""
-    raw = [json.loads(line) for line in ridden.log.read_text(encoding="utf-8").splitlines()]
+    raw = [json.loads(line) for line in ridden.log.read_text(encoding="utf-8").split("\n")[:-1]]
     lines = [line for record in raw for line in record.get("raw", ())]
     good = ridden.sent["good"]
     assert isinstance(good, int)
@@ -183,11 +178,6 @@ def test_the_log_holds_every_line_as_it_was_sent(ridden: Ridden) -> None:
     wanted = [f"{number / RATE:.3f}" for number in range(good)]
     times = iter(line.split(",")[0] for line in lines)
     assert all(time in times for time in wanted)
-
-
-def truth_at(depth: float) -> np.ndarray:
-    """Return the hidden offset of the guide, east and north [m]."""
-    return Truth(**TRUTH, bends=(Bend(**BEND),)).offset(depth)[:, 0]
 
 
 def noise_at(ridden: Ridden, depth: float, direction: str) -> float:
@@ -209,9 +199,11 @@ def test_the_measured_offset_is_the_hidden_truth_within_the_noise(ridden: Ridden
         np.arange(0.0, DEPTH + 0.01, 0.5)
     )
     assert sum(one.direction == "up" for one in ridden.result.stations) >= 8
-    inertia = SPEED**2 / 9.8 * (np.hypot(*TRUTH.values()) / 2.0 + np.hypot(BEND["east"], BEND["north"]))
+    inertia = (
+        SPEED**2 / 9.8 * (np.hypot(TRUTH.lean_east, TRUTH.lean_north) / 2.0 + np.hypot(BEND.east, BEND.north))
+    )
     for station in ridden.result.stations:
-        away = np.array([station.residual_east, station.residual_north]) - truth_at(station.depth)
+        away = np.array([station.residual_east, station.residual_north]) - TRUTH.offset(station.depth)[:, 0]
         bound = 4.0 * noise_at(ridden, station.depth, station.direction) + inertia + 1e-6
         assert np.abs(away).max() < bound, f"{station.depth} m {station.direction}"
     # What the moving line shows in a plumb guide is beyond that bound at the bottom: uncorrected, it would be seen.
@@ -272,7 +264,7 @@ def test_the_program_s_own_record_verb_counts_the_same(tmp_path: Path) -> None:
         with running([*program, *options]) as recorder:
             assert recorder.stdout is not None
             log = Path(recorder.stdout.readline().strip())
-            wait_for_silence(log)
+            wait_for_lines(log, lines_of(load_site(tmp_path / "site.toml")))
             recorder.send_signal(signal.SIGTERM)
             assert recorder.wait(PATIENCE) == 0
         end(server)
@@ -282,16 +274,20 @@ def test_the_program_s_own_record_verb_counts_the_same(tmp_path: Path) -> None:
     assert sent["good"] > 100
 
 
-def wait_for_silence(log: Path) -> None:
-    """Wait until lines have been recorded and none for more than a second."""
+def wait_for_lines(log: Path, count: int) -> None:
+    """Wait until so many lines have been recorded."""
     deadline = time.monotonic() + PATIENCE
-    count, since = 0, time.monotonic()
-    while not count or time.monotonic() - since < 1.2:
-        assert time.monotonic() < deadline, "the recording did not end"
+    while recorded_lines(log) < count:
+        assert time.monotonic() < deadline, f"{recorded_lines(log)} of {count} lines were recorded"
         time.sleep(0.05)
-        now = log.read_bytes().count(b'"raw"') if log.is_file() else 0
-        if now != count:
-            count, since = now, time.monotonic()
+
+
+def recorded_lines(log: Path) -> int:
+    """Return how many instrument lines a log holds so far; its last record may still be half written."""
+    if not log.is_file():
+        return 0
+    whole = log.read_text(encoding="utf-8").split("\n")[:-1]
+    return sum(len(json.loads(record).get("raw", ())) for record in whole)
 
 
 @pytest.mark.soak
@@ -302,3 +298,10 @@ def test_a_deep_ride_in_real_time_loses_nothing(tmp_path: Path) -> None:
     assert broken_sent(deep) == deep.last.health.rejected
     again = replayed(deep.log, 50)
     assert same_bits(again.rows.data, deep.live.rows.data)
+
+
+if __name__ == "__main__":  # the other process
+    there = Path(sys.argv[1])
+    serve_pty(
+        emulator_of(load_site(there / "site.toml")), link_path=there / "probe", report=there / "sent.json"
+    )
