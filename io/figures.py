@@ -236,7 +236,10 @@ def _near(axes: Axes, stations: Sequence[Station]) -> None:
 
 def _named(stations: Sequence[Station]) -> list[Station]:
     """Return the stations whose depth is written into the plan: first, last, and farthest out."""
-    farthest = max(stations, key=lambda one: one.residual_east**2 + one.residual_north**2)
+    known = [one for one in stations if np.isfinite(one.residual_east + one.residual_north)]
+    farthest = max(
+        known, key=lambda one: np.hypot(one.residual_east, one.residual_north), default=stations[0]
+    )
     named = {one.depth: one for one in (min(stations, key=lambda one: one.depth), stations[-1], farthest)}
     return list(named.values())
 

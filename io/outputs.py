@@ -33,6 +33,12 @@ def write_text(path: Path, text: str, *, force: bool = False) -> None:
         raise OutputError(f"{path}: cannot be written: {cause.strerror or cause}") from cause
 
 
+def refuse_existing(path: Path) -> None:
+    """Raise `OutputError` if something stands at `path`."""
+    if path.exists() or path.is_symlink():
+        raise OutputError(f"{path}: stands already; expected a new name, or --force to replace it")
+
+
 def _create(path: Path, data: bytes) -> None:
     with path.open("xb") as file:
         try:

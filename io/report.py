@@ -10,14 +10,19 @@ from importlib.metadata import version
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+
 from eastfall.io import reportview
-from eastfall.io.outputs import write_text
+from eastfall.io.compare import Comparison, in_words
+from eastfall.io.outputs import refuse_existing, write_text
 from eastfall.io.prediction import REFERENCE_LINES
 from eastfall.io.reduce import Reduction
 from eastfall.io.reportview import Table
+from eastfall.io.safetext import safe
 from eastfall.io.sources import formulas
 
 _MARKDOWN_STATIONS = 60
+_DIFFERENCE = ("depth", "east", "north", "u_east", "u_north")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -28,6 +33,36 @@ class Compared:
     figure: str
     """SVG."""
     table: Table
+
+
+def compared(comparison: Comparison) -> Compared:
+    """Return a comparison ready for the report."""
+    from eastfall.io import figures  # noqa: PLC0415 - matplotlib is heavy, and only for reports
+
+    rows = comparison.rows
+    columns = {name: np.array([getattr(one, name) for one in rows]) for name in _DIFFERENCE}
+    table = Table(
+        heads=("depth m", "first E", "N", "second E", "N", "difference E", "N", "U E", "U N", "moved"),
+        rows=tuple(
+            (
+                f"{one.depth:.2f}",
+                *(
+                    reportview.mm(x)
+                    for x in (one.first_east, one.first_north, one.second_east, one.second_north)
+                ),
+                *(reportview.mm(x) for x in (one.east, one.north)),
+                *(reportview.plain_mm(2.0 * x) for x in (one.u_east, one.u_north)),
+                one.moved,
+            )
+            for one in rows
+        ),
+    )
+    words = [
+        f"First: {safe(comparison.first, 200)}. Second: {safe(comparison.second, 200)}.",
+        in_words(comparison),
+        *(f"Note: {one}." for one in comparison.notes),
+    ]
+    return Compared(words=" ".join(words), figure=figures.difference_figure(**columns), table=table)
 
 
 def write_report(
@@ -58,6 +93,8 @@ def write_report(
     OutputError
         Something stands there, or the file cannot be written.
     """
+    if not force:
+        refuse_existing(out)  # before the figures are drawn
     write_text(out, report_html(reduction, compared=compared, made_at=made_at), force=force)
 
 

@@ -50,7 +50,8 @@ def mm(value: float | None, digits: int = 2) -> str:
     return "–" if value is None or not isfinite(value) else f"{_MM * value:+.{digits}f}"
 
 
-def _plain_mm(value: float) -> str:
+def plain_mm(value: float) -> str:
+    """Return a length [m] in millimetres without a sign."""
     return "–" if not isfinite(value) else f"{_MM * value:.2f}"
 
 
@@ -66,7 +67,7 @@ def residual(station: Station) -> float:
 
 def worst(stations: tuple[Station, ...]) -> Station:
     """Return the station whose residual is largest against its action limit."""
-    return max(stations, key=lambda one: residual(one) / one.action)
+    return max(stations, key=lambda one: residual(one) / one.action if isfinite(residual(one)) else -1.0)
 
 
 def answer(reduction: Reduction) -> str:
@@ -84,9 +85,7 @@ def answer(reduction: Reduction) -> str:
     if count["over"]:
         return f"OVER the action limit at {count['over']} of {len(stations)} station(s); farthest out {size}."
     if count["undecided"]:
-        return (
-            f"UNDECIDED at {count['undecided']} of {len(stations)} stations, none over; farthest out {size}."
-        )
+        return f"UNDECIDED at {count['undecided']} of {len(stations)} station(s), none over; farthest out {size}."
     beyond = sum(residual(s) > s.warning for s in stations)
     warned = f"; {beyond} beyond the warning limit" if beyond else ""
     return f"WITHIN the action limit at {every}{warned}; farthest out {size}."
@@ -181,9 +180,9 @@ def stations(reduction: Reduction) -> Table:
             mm(one.expected_north),
             mm(one.residual_east),
             mm(one.residual_north),
-            _plain_mm(2.0 * one.u_east),
-            _plain_mm(2.0 * one.u_north),
-            _plain_mm(one.action),
+            plain_mm(2.0 * one.u_east),
+            plain_mm(2.0 * one.u_north),
+            plain_mm(one.action),
             one.verdict,
         )
         for one in reduction.result.stations
@@ -212,7 +211,7 @@ def rest_point(reduction: Reduction) -> str | None:
     fit = "" if one.fits else " The swing does not follow the model: " + safe(one.message, 200)
     return (
         f"The bob comes to rest {mm(one.east)} mm east and {mm(one.north)} mm north of the reference line, "
-        f"U {_plain_mm(2 * one.u_east)} and {_plain_mm(2 * one.u_north)} mm, from {float(one.swings):.1f} single "
+        f"U {plain_mm(2 * one.u_east)} and {plain_mm(2 * one.u_north)} mm, from {float(one.swings):.1f} single "
         f"swings of period {float(one.period):.2f} s, falling to 1/e in {float(one.decay):.0f} s.{fit}"
     )
 
@@ -275,10 +274,10 @@ def budget(reduction: Reduction) -> Table:
         cells = []
         for one in chosen:
             part = {share.name: share for share in one.shares}.get(name)
-            cells += [_plain_mm(part.east), _plain_mm(part.north)] if part else ["–", "–"]
+            cells += [plain_mm(part.east), plain_mm(part.north)] if part else ["–", "–"]
         if any(cell not in {"–", "0.00"} for cell in cells):
             rows.append((safe(name, 80), *cells))
-    total = [cell for one in chosen for cell in (_plain_mm(one.u_east), _plain_mm(one.u_north))]
+    total = [cell for one in chosen for cell in (plain_mm(one.u_east), plain_mm(one.u_north))]
     heads = [f"{one.depth:.1f} m {one.direction}, {side}" for one in chosen for side in ("E", "N")]
     return Table(heads=("standard uncertainty, mm", *heads), rows=(*rows, ("combined", *total)))
 

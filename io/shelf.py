@@ -1,6 +1,7 @@
 """The runs in a folder as a list of cards: where, when, what kind, how deep, the verdict, and whether intact."""
 
 import os
+import tomllib
 from collections.abc import Callable, Iterator
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
@@ -63,7 +64,7 @@ def card(path: Path, *, judged: bool = True) -> RunCard:
         header = header_of(path)
         kind, started = safe(header.kind, 20), _instant(header.started_at)
         if not judged:
-            return _card(path, "", started, kind, None, "", verify_log(path).state, "")
+            return _card(path, _site_name(header.site), started, kind, None, "", verify_log(path).state, "")
         reduction = reduce_file(path)
     except (EastfallError, OSError) as error:
         return _card(path, site, started, kind, depth, verdict, "", safe(str(error), 300))
@@ -100,6 +101,14 @@ def _card(
         state=state,
         error=error,
     )
+
+
+def _site_name(text: str) -> str:
+    """Return the shaft's name from a site file without checking the rest of it."""
+    try:
+        return safe(str(tomllib.loads(text)["site"].get("name", "")), 200)
+    except (tomllib.TOMLDecodeError, KeyError, AttributeError, TypeError):
+        return ""
 
 
 def _instant(text: str) -> datetime | None:

@@ -170,7 +170,8 @@ def test_files_that_are_not_there_or_need_a_site_are_one_clear_line(tmp_path: Pa
 def test_memory_is_flat_over_ten_times_the_file(tmp_path: Path) -> None:
     """The peak of a process that reduces a capture of ten times the size grows by less than 12 MB."""
     script = (
-        f"import sys;from pathlib import Path;sys.path.insert(0,{str(Path(__file__).parent)!r});from record_help import site;"
+        f"import sys;from pathlib import Path;sys.path.insert(0,{str(Path(__file__).parent)!r});"
+        "from record_help import site;"
         "from eastfall.io.reduce import reduce_file;reduce_file(Path(sys.argv[1]),site=site(),interval=0.01);"
         "print(next(l for l in open('/proc/self/status') if l.startswith('VmHWM')).split()[1])"
     )

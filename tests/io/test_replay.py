@@ -209,7 +209,7 @@ def test_the_last_time_is_read_from_the_end(tmp_path: Path) -> None:
     log.raw(block(*[b"y" * 4000] * 40, time=11.0))
     assert last_time(log.path) == 11.0
     log.close(12.5)
-    assert last_time(sorted(tmp_path.iterdir())[0]) == 12.5
+    assert last_time(min(tmp_path.iterdir())) == 12.5
 
 
 def test_depth_is_found_between_samples() -> None:

@@ -1,0 +1,81 @@
+"""Comparing surveys: known movements are found, chance is not, and nothing is extrapolated."""
+
+from pathlib import Path
+
+import numpy as np
+import pytest
+from results_help import RESULT, numbered, reduction, station
+
+from eastfall.io.compare import (
+    DIFFERENCE_KEYS,
+    compare_passes,
+    compare_runs,
+    comparison_table,
+    difference_rows,
+    in_words,
+)
+from eastfall.io.errors import InputError
+from eastfall.io.reduce import Reduction, reduce_file
+from eastfall.physics.findings import Result, Station
+
+GUIDED = next((Path(__file__).parents[2] / "replay_logs").glob("sandrigg*.jsonl"))
+
+
+def _run(*stations: Station) -> Reduction:
+    result = Result(frames=1, stations=numbered(*stations), alarms=(), closure=None, rest_point=None)
+    return reduction(result)
+
+
+def test_a_moved_lining_is_found_where_it_moved() -> None:
+    """A bulge of 8 mm between 20 and 40 m shows there, with both uncertainties combined, and nowhere else."""
+    depths = np.arange(0.0, 60.0, 10.0)
+    first = _run(*(station(z, 0.002, 0.001) for z in depths))
+    second = _run(*(station(z, 0.002 + (0.008 if 20 <= z <= 40 else 0.0), 0.001) for z in depths))
+    found = compare_runs(first, second)
+    assert [one.depth for one in found.moved] == [20.0, 30.0, 40.0]
+    assert found.moved[0].east == pytest.approx(0.008, abs=1e-12)
+    assert found.moved[0].u_east == pytest.approx(0.001 * 2**0.5, rel=1e-12)
+    assert "at 3 of 6 depths; most at 20.0 m: +8.0 mm east" in in_words(found)
+    assert "at any of 6 depths" in in_words(compare_runs(first, first))
+
+
+def test_stations_between_are_interpolated_and_beyond_are_left_out() -> None:
+    """The second survey is read linearly between its stations; depths beyond its reach are counted, not guessed."""
+    first = _run(*(station(z, 0.0) for z in (5.0, 15.0, 25.0, 35.0)))
+    second = _run(station(10.0, 0.001), station(20.0, 0.003, u_east=0.003), station(30.0, 0.003))
+    found = compare_runs(first, second)
+    assert [one.depth for one in found.rows] == [15.0, 25.0]
+    assert found.left_out == 2
+    assert found.rows[0].east == pytest.approx(0.002, abs=1e-12)
+    assert found.rows[0].u_east == pytest.approx(np.hypot(0.001, 0.002), rel=1e-12)
+
+
+def test_two_passes_of_one_run_are_compared_by_depth() -> None:
+    """Pass 2 against pass 1 of the demo run differs by no more than chance makes likely."""
+    run = reduce_file(GUIDED)
+    found = compare_passes(run)
+    assert len(found.rows) == 19
+    assert len(found.moved) <= 3  # of 19 at one in twenty each, 3 or fewer are 98 % likely (binomial)
+    row = next(one for one in found.rows if one.depth == 240.0)
+    down, up = (next(s for s in run.result.stations if (s.depth, s.passing) == (240.0, n)) for n in (0, 1))
+    assert row.east == up.residual_east - down.residual_east
+
+
+def test_surveys_without_a_common_depth_are_refused() -> None:
+    """Nothing in common, or a pass that is not there, is one clear line."""
+    with pytest.raises(InputError, match="no depth in common"):
+        compare_runs(_run(station(10.0, 0.0)), _run(station(20.0, 0.0)))
+    with pytest.raises(InputError, match="passes 1 and 3 have no depth in common"):
+        compare_passes(reduction(), 0, 2)
+    with pytest.raises(InputError):
+        compare_runs(_run(), _run(station(20.0, 0.0)))
+
+
+def test_the_table_has_fixed_keys_and_millimetres() -> None:
+    """Each row is a plain dict in millimetres; an absent value is None."""
+    found = compare_runs(reduction(RESULT), _run(*(station(z, 0.001) for z in (10.0, 40.0))))
+    rows = difference_rows(found)
+    assert all(tuple(one) == DIFFERENCE_KEYS for one in rows)
+    assert rows[0]["difference_east_mm"] == -2.0
+    assert any(one["first_north_mm"] is None for one in rows)
+    assert comparison_table(found)["left_out"] == 0
