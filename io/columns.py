@@ -20,7 +20,6 @@ import re
 from collections.abc import Iterator, Sequence
 
 import numpy as np
-from numpy.typing import NDArray
 
 from eastfall.io import checksum, decimals
 from eastfall.io.arrivals import LineBlock
@@ -116,13 +115,16 @@ class ColumnsDecoder:
         if self._blank:
             data = _with_single_blanks(data)
         if len(codes) < _MANY:
-            self._read_lines(data, np.flatnonzero(codes == 0), table, codes)
+            which = np.flatnonzero(codes == 0).tolist()
+            lines = data.split(b"\n")
+            self._read_lines([lines[one] for one in which], which, table, codes)
         else:
             self._read_at_once(data, table, codes)
 
     def _read_at_once(self, data: bytes, table: Table, codes: Codes) -> None:
         """Read what is plain all at once, and the rest line by line."""
         fields, ends = decimals.fields_of(data, self._delimiter[0])
+        stops = fields.stops[ends - 1] - decimals.LEAD
         counts = np.diff(ends, prepend=0)
         fits = (counts == len(self._columns)) & (codes == 0)
         if not fits.all():
@@ -139,20 +141,23 @@ class ColumnsDecoder:
             table[:] = values.reshape(shape)
         else:
             table[fits] = values.reshape(shape)
-            self._read_lines(data, np.flatnonzero(~done & (codes == 0)), table, codes)
+            which = np.flatnonzero(~done & (codes == 0)).tolist()
+            begins = np.concatenate([[0], stops[:-1] + 1])
+            lines = [data[begins[one] : stops[one]] for one in which]
+            self._read_lines(lines, which, table, codes)
 
-    def _read_lines(self, data: bytes, which: NDArray[np.intp], table: Table, codes: Codes) -> None:
-        """Read lines one by one."""
-        lines, fullmatch = data.split(b"\n"), self._line.fullmatch
+    def _read_lines(self, lines: list[bytes], which: list[int], table: Table, codes: Codes) -> None:
+        """Read lines one by one; `which` are their rows in the table."""
+        fullmatch = self._line.fullmatch
         read, rows = [], []
-        for number in which.tolist():
-            found = fullmatch(lines[number])
+        for number, line in zip(which, lines, strict=True):
+            found = fullmatch(line)
             words = found.groups() if found else ()
             if any(words):
                 read.append(number)
                 rows.append([float(one) if one else np.nan for one in words])
             else:
-                codes[number] = self._fault(lines[number])
+                codes[number] = self._fault(line)
         if rows:
             table[read] = rows
 

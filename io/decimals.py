@@ -17,6 +17,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 _WORD = 8
+LEAD = _WORD
+"""Bytes of no meaning before the first field, so that a word can end at the first digit."""
 _ZEROS = np.uint64(0x3030303030303030)
 _SIXES = np.uint64(0x0606060606060606)
 _HIGH = np.uint64(0xF0F0F0F0F0F0F0F0)
@@ -67,17 +69,17 @@ def fields_of(data: bytes, delimiter: int) -> tuple[Fields, Places]:
     ends : ndarray, shape (n,)
         For each line, how many fields there are up to its end, from the start of the data.
     """
-    buffer = bytes(_WORD) + data
+    buffer = bytes(LEAD) + data
     codes = np.frombuffer(buffer, np.uint8)
     separates = (codes == delimiter) | (codes == ord("\n"))
-    separates[:_WORD] = False
+    separates[:LEAD] = False
     marks = np.flatnonzero(separates | (codes == ord(".")))
     order = np.flatnonzero(separates[marks])
     stops = marks[order]
     before = marks[order - 1]  # for the first field this is the last mark of all, a line feed
     points = np.where(codes[before] == ord("."), before, stops)
     starts = np.empty_like(stops)
-    starts[:1] = _WORD
+    starts[:1] = LEAD
     starts[1:] = stops[:-1] + 1
     points = np.where(points < starts, stops, points)
     ends = np.flatnonzero(codes[stops] == ord("\n")) + 1
