@@ -17,6 +17,7 @@ from eastfall.tui.widgets.plan import PlanView, Point
 Subject = Standing | Station | None
 
 _DEEP = 1000.0  # m, from where the large figure leaves the tenth to the answer line
+_NOTHING = (np.empty(0), np.empty(0))
 _TRAIL_SECONDS = 60.0
 
 
@@ -149,11 +150,12 @@ def plan(session: Session, snapshot: Snapshot, sight: look.Sight, one: Subject) 
     """Return what the plan shows at the depth in view."""
     shaft = session.assumptions.shaft
     kind = session.assumptions.run.kind
-    swings = isinstance(one, Standing) and kind == "hung"
+    live = isinstance(one, Standing)
     return PlanView(
         one=one,
         leans=kind == "guided",
-        trail=_trail(snapshot) if swings else (np.empty(0), np.empty(0)),
+        trail=_trail(snapshot) if live and kind == "hung" else _NOTHING,
+        landings=_landings(snapshot) if live and kind == "drop" else _NOTHING,
         rest=one.rest_point if isinstance(one, Standing) else None,
         bob=_at(session.bob, one) if sight.extras else None,
         fall=_at(session.fall, one) if sight.extras else None,
@@ -169,6 +171,12 @@ def _trail(snapshot: Snapshot) -> tuple[np.ndarray, np.ndarray]:
     time = rows.column("time")
     begin = int(np.searchsorted(time, time[-1] - _TRAIL_SECONDS)) if time.size else 0
     return rows.column("measured_east")[begin:], rows.column("measured_north")[begin:]
+
+
+def _landings(snapshot: Snapshot) -> tuple[np.ndarray, np.ndarray]:
+    """Return where the bodies were so far [m]."""
+    rows = snapshot.rows
+    return rows.column("measured_east"), rows.column("measured_north")
 
 
 def _at(curve: Curve | None, one: Subject) -> Point | None:

@@ -354,7 +354,12 @@ async def test_help_lists_every_key_of_the_screen(session: Make) -> None:
         await pilot.pause()
         assert isinstance(app.screen, HelpScreen)
         text = "\n".join(lines(app))
-        for words in ("Acknowledge the alarm shown first", "Hold the picture", "Colours: dark", "UNDECIDED"):
+        for words in (
+            "Acknowledge the alarm that is shown first",
+            "Hold the picture while recording",
+            "Colours: dark",
+            "UNDECIDED",
+        ):
             assert words in text
         await pilot.press("escape")
         assert isinstance(app.screen, WatchScreen)

@@ -35,10 +35,9 @@ Plan, north up
   x         rest point of a swing, in its 95 % ellipse"""
 
 
-def key_table(*places: str) -> str:
+def key_table(places: tuple[str, ...], *, replay: bool) -> str:
     """Return the keys of some places, one a line."""
-    rows = [(one.shown, one.help) for one in keys.TABLE if one.where in places]
-    return "\n".join(f"{shown:<10}{what}" for shown, what in rows)
+    return "\n".join(f"{shown:<10}{what}" for shown, what in keys.page(places, replay=replay))
 
 
 class HelpScreen(Screen[None]):
@@ -46,14 +45,14 @@ class HelpScreen(Screen[None]):
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
 
-    def __init__(self, *places: str) -> None:
+    def __init__(self, *places: str, replay: bool = False) -> None:
         super().__init__()
-        self._places = places
+        self._table = key_table((*places, "all"), replay=replay)
 
     def compose(self) -> ComposeResult:
         """Show the keys, how to read the picture, and the cautions."""
         with VerticalScroll(classes="page"):
-            yield plain("Keys   (escape goes back, arrows scroll)\n\n" + key_table(*self._places, "all"))
+            yield plain("Keys   (escape goes back, arrows scroll)\n\n" + self._table)
             yield plain("\n" + READING)
             yield plain("\nCautions\n\n" + "\n".join(CAUTIONS))
 

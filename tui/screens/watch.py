@@ -22,7 +22,7 @@ from eastfall.tui.widgets.alarms import AlarmList, in_order
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.figures import Figures
 from eastfall.tui.widgets.health import HealthList, health_line
-from eastfall.tui.widgets.line import KeyLine, TextLine
+from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
 from eastfall.tui.widgets.plan import Plan
 from eastfall.tui.widgets.profile import Profile, ProfileView
 from eastfall.tui.widgets.strip import Strip
@@ -112,8 +112,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
             ("swing", views.swing(self.session, one)),
             ("notes", views.notes(self.session, one)),
         ):
-            self._line(name).show(*pieces)
-            self._line(name).display = bool(pieces)
+            self._show_if_any(self._line(name), pieces)
         pieces, ground = views.alarm_line(latest)
         self._line("alarm").show(*pieces, under=ground)
         self._line("health").show(*health_line(latest))
@@ -121,6 +120,14 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms)
         self.query_one(HealthList).show(latest)
+
+    def _show_if_any(self, line: TextLine, pieces: tuple[Piece, ...]) -> None:
+        """Give a line the rows that its words need, two at most, and none without words."""
+        line.display = bool(pieces)
+        rows = 1 if sum(len(text) for text, _ in pieces) <= self.size.width else 2
+        if line.styles.height is None or line.styles.height.value != rows:
+            line.styles.height = rows
+        line.show(*pieces)
 
     def _paint_evidence(self, shown: Snapshot, one: views.Subject) -> None:
         session, sight = self.session, self.sight

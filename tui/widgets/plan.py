@@ -9,7 +9,7 @@ import numpy as np
 
 from eastfall.physics.findings import RestPoint, Standing, Station
 from eastfall.tui.axes import round_step
-from eastfall.tui.raster import Floats, Raster, polyline, ring
+from eastfall.tui.raster import Floats, Raster, polyline, ring, segments
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.words import mm
@@ -31,6 +31,8 @@ class PlanView:
     one: Standing | Station | None
     trail: tuple[Floats, Floats] = (np.empty(0), np.empty(0))
     """Where it was lately."""
+    landings: tuple[Floats, Floats] = (np.empty(0), np.empty(0))
+    """Single points of which none leads to the next: where bodies landed."""
     leans: bool = False
     """A guided run: the sum of tilts holds the lean of the moving line, so the guide itself stands at the residual."""
     rest: RestPoint | None = None
@@ -91,7 +93,11 @@ class _Sheet:
         middle = (one.expected_east, one.expected_north)
         if not all(map(isfinite, middle)):
             middle = (0.0, 0.0)
-        points = [(one.measured_east, one.measured_north), *zip(*view.trail, strict=True)]
+        points = [
+            (one.measured_east, one.measured_north),
+            *zip(*view.trail, strict=True),
+            *zip(*view.landings, strict=True),
+        ]
         far = [hypot(east - middle[0], north - middle[1]) for east, north in points]
         reach = max([one.action * 1.12, *(1.1 * value for value in far if isfinite(value))])
         step = round_step(2.0 * reach, 40)
@@ -159,6 +165,8 @@ class _Sheet:
             self._circle(expected, one.action, Role.ACTION, 0)
             plane = self._plane()
             polyline(plane, *self.at(*view.trail))
+            landed = self.at(*view.landings)
+            segments(plane, *landed, *landed)
             self._stamp(plane, Role.PAST)
             self._residual(expected, measured)
             if view.rest is not None:
