@@ -41,9 +41,11 @@ class Samples:
 
     def until(self, time: float) -> "Samples":
         """Return the part up to a time [s]."""
-        n = int(np.searchsorted(self.time, time, side="right"))
+        return self[: int(np.searchsorted(self.time, time, side="right"))]
+
+    def __getitem__(self, part: slice | npt.NDArray[np.bool_]) -> "Samples":
         return Samples(
-            time=self.time[:n], spread=self.spread[:n], weight=self.weight[:n], value=self.value[:n]
+            time=self.time[part], spread=self.spread[part], weight=self.weight[part], value=self.value[part]
         )
 
     @property

@@ -21,6 +21,7 @@ from eastfall.physics.swing_checks import (
     harmonic,
     is_smooth,
     schuler_rest,
+    spoiled,
     swing_stands_out,
 )
 
@@ -32,6 +33,7 @@ LARGE_ANGLE = 0.1
 _CAPACITY = 1024  # bins kept
 _PER_SWING = (24, 12)  # bins in a swing: of the newest, and the fewest when old ones are joined
 _UNKNOWN_WIDTH = 0.1  # of a bin [s] while the period is not known
+_CLEANINGS = 3
 _POOR = 0.35  # smooth residuals against the swing, rms: above it this is no pendulum
 _BENT = 0.03  # of a harmonic against the swing
 
@@ -276,7 +278,8 @@ class RestPointTracker:
         enough = FEWEST_SWINGS * (self.period or 0.0)
         if samples.time.size < 12 or samples.duration < enough * (1.0 - 1.0 / _PER_SWING[0]):
             return None
-        fit, settled = self._fit(samples)
+        every = samples.time.size
+        samples, fit, settled = self._clean_fit(samples)
         swings = samples.duration * fit.omega / (2.0 * pi)
         if not swing_stands_out(samples, fit):
             return _at_rest(samples)
@@ -286,7 +289,19 @@ class RestPointTracker:
         trouble = self._trouble(samples, fit, settled)
         if trouble:
             return RestPoint(fits=False, message=trouble, covariance=np.full((2, 2), nan), swings=swings)
-        return self._result(samples, fit, scatter, swings)
+        return self._result(samples, fit, scatter, swings, every - samples.time.size)
+
+    def _clean_fit(self, samples: Samples) -> tuple[Samples, Fit, bool]:
+        """Fit, leaving out stretches that a spike has thrown off."""
+        fit, settled = self._fit(samples)
+        for _ in range(_CLEANINGS):
+            off = spoiled(samples, fit)
+            if not off.any():
+                break
+            samples = samples[~off]
+            fit, settled = refine(samples, fit.turn, fit.omega, fit.gamma)
+            self._last = fit
+        return samples, fit, settled
 
     def _fit(self, samples: Samples) -> tuple[Fit, bool]:
         """Go on from the last fit; search afresh where that is poor, but not again before the record has grown."""
@@ -333,7 +348,9 @@ class RestPointTracker:
             return "the swing is bent as if the line met something on the way: no rest point from it"
         return ""
 
-    def _result(self, samples: Samples, fit: Fit, scatter: Scatter, swings: float) -> RestPoint:
+    def _result(
+        self, samples: Samples, fit: Fit, scatter: Scatter, swings: float, left_out: int
+    ) -> RestPoint:
         age = float(samples.time[-1]) - fit.middle
         shrunk = np.exp(-fit.gamma * age)
         major, minor = axes(fit.forward * shrunk, fit.backward * shrunk)
@@ -343,7 +360,7 @@ class RestPointTracker:
         schuler = schuler_rest(samples, fit)
         return RestPoint(
             fits=True,
-            message="; ".join(self._notes(period, u_period, major, scatter)),
+            message="; ".join(self._notes(period, u_period, major, scatter, left_out)),
             east=fit.centre.real,
             north=fit.centre.imag,
             covariance=scatter.covariance,
@@ -364,7 +381,9 @@ class RestPointTracker:
         freedom = max(2.0 * samples.time.size - 8.0, 1.0)
         return float(scatter.widening * sqrt(fit.cost / freedom * max(fit.inverse[0, 0], 0.0)))
 
-    def _notes(self, period: float, u_period: float, amplitude: float, scatter: Scatter) -> list[str]:
+    def _notes(
+        self, period: float, u_period: float, amplitude: float, scatter: Scatter, left_out: int
+    ) -> list[str]:
         notes = []
         if self.period is not None and period < self.period * (1.0 - 2.0 * self.u_period) - 2.0 * u_period:
             notes.append(
@@ -379,6 +398,8 @@ class RestPointTracker:
             notes.append(
                 f"irregular air or a moving rest point: uncertainty widened {scatter.widening:.1f} times"
             )
+        if left_out:
+            notes.append(f"{left_out} of the averaged stretches left out: spikes")
         return notes
 
 

@@ -3,7 +3,7 @@
 The tracker that asks is `swing`.
 """
 
-from math import nan, pi, sqrt
+from math import log, nan, pi, sqrt
 
 import numpy as np
 import numpy.typing as npt
@@ -14,6 +14,8 @@ from eastfall.physics.pendulum import Fit, Samples
 Array = npt.NDArray[np.float64]
 
 _PRESENT = 5.0  # F of the swing against the residuals, below which no swing is seen (p about 1e-5)
+_FAR_OFF = 7.0
+_MOST_SPOILED = 0.1
 
 
 def axes(forward: complex, backward: complex) -> tuple[float, float]:
@@ -27,6 +29,21 @@ def swing_stands_out(samples: Samples, fit: Fit) -> bool:
     still = float(np.sum(samples.weight * np.abs(samples.value - mean) ** 2))
     freedom = max(2.0 * samples.time.size - 8.0, 1.0)
     return (still - fit.cost) / 6.0 > _PRESENT * fit.cost / freedom
+
+
+def spoiled(samples: Samples, fit: Fit) -> npt.NDArray[np.bool_]:
+    """Mark samples that a spike among their readings has thrown off the fit; none where many stand apart.
+
+    Off means seven robust standard deviations, met by chance once in 10¹⁰ samples. Where more than a tenth of the
+    samples is that far off it is the model that fails, not the readings.
+    """
+    away = np.abs(fit.residual) * np.sqrt(samples.weight)
+    # The median of the length of two normal deviates is √(2 ln 2) of their deviation.
+    limit = _FAR_OFF * float(np.median(away)) / sqrt(2.0 * log(2.0))
+    apart = np.asarray(
+        away > max(limit, _FAR_OFF * float(np.finfo(np.float64).eps * np.abs(samples.value).max()))
+    )
+    return apart if apart.mean() <= _MOST_SPOILED else np.zeros_like(apart)
 
 
 def is_smooth(fit: Fit) -> bool:

@@ -313,6 +313,21 @@ def test_what_is_no_free_swing_gets_no_number(case):
     assert found.message
 
 
+@pytest.mark.parametrize("swings", [1.6, 12.0])
+def test_spikes_are_left_out_and_said(swings):
+    """A few readings half a metre off move the rest point by no more than its uncertainty, and are reported."""
+    time = np.arange(0.0, swings * PERIOD, 0.2)
+    clean = swing(time) + white(np.random.default_rng(15), time.size)
+    value = clean.copy()
+    value[[40, 200, 201]] += [0.5, -0.4j, 0.5j]
+    found, wanted = tracked(time, value), tracked(time, clean)
+    assert found.fits
+    assert "left out: spikes" in found.message
+    assert found.east == pytest.approx(wanted.east, abs=2.0 * wanted.u_east)
+    assert found.north == pytest.approx(wanted.north, abs=2.0 * wanted.u_north)
+    assert wanted.message == ""
+
+
 def test_a_bob_at_rest_gives_the_mean_of_its_readings():
     """Where no swing stands out of the noise the rest point is the mean, and the message says so."""
     time = np.arange(0.0, 3.0 * PERIOD, 0.5)
