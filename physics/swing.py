@@ -5,15 +5,14 @@ The least squares are in `pendulum`, the covariance under irregular air in `scat
 """
 
 from dataclasses import dataclass
-from math import inf, log2, nan, pi, sqrt
+from math import inf, nan, pi, sqrt
 
 import numpy as np
 import numpy.typing as npt
 
-from eastfall.physics.binning import Bins, TimeBins
 from eastfall.physics.earth import EARTH_ROTATION
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.pendulum import Fit, Samples, refine, rough_omega, search
+from eastfall.physics.pendulum import Fit, Samples, refine, search
 from eastfall.physics.scatter import Scatter, rest_point_scatter
 from eastfall.physics.swing_checks import (
     airy_precession,
@@ -24,15 +23,13 @@ from eastfall.physics.swing_checks import (
     spoiled,
     swing_stands_out,
 )
+from eastfall.physics.swing_store import PER_SWING, SwingStore
 
 Array = npt.NDArray[np.float64]
 
 FEWEST_SWINGS = 1.5
 LARGE_ANGLE = 0.1
 """Swing to each side [rad] above which the sine is no longer its angle to a thousandth."""
-_CAPACITY = 1024  # bins kept
-_PER_SWING = (24, 12)  # bins in a swing: of the newest, and the fewest when old ones are joined
-_UNKNOWN_WIDTH = 0.1  # of a bin [s] while the period is not known
 _CLEANINGS = 3
 _POOR = 0.35  # smooth residuals against the swing, rms: above it this is no pendulum
 _BENT = 0.03  # of a harmonic against the swing
@@ -177,11 +174,7 @@ class RestPointTracker:
         self.length = length
         self.period = 2.0 * pi * sqrt(length / gravity) if period is None and length is not None else period
         self.u_period = u_period
-        width = _UNKNOWN_WIDTH if self.period is None else self.period / _PER_SWING[0]
-        self._bins = TimeBins(width, 2)
-        self._widest = None if self.period is None else int(log2(_PER_SWING[0] / _PER_SWING[1]))
-        self._store = np.empty((7, 0))  # number, level, count, time, spread, east, north
-        self._latest = -inf
+        self._store = SwingStore(self.period, self.turn)
         self._last: Fit | None = None
         self._rows = self._searched = 0.0  # readings behind the last fit and the last search
 
@@ -205,54 +198,11 @@ class RestPointTracker:
             raise ParameterError(
                 "east, north", (rows[1].shape, rows[2].shape), "", f"the shape of time, {rows[0].shape}"
             )
-        block = np.stack(rows)
-        good = np.isfinite(block).all(axis=0)
-        highest = np.maximum.accumulate(np.where(good, block[0], -inf))
-        good &= block[0] >= np.maximum(highest, self._latest)
-        if good.any():
-            block = block[:, good]
-            self._latest = float(block[0, -1])
-            self._append(self._bins.add(block[0], block[1:])[1])
-
-    def _append(self, closed: Bins) -> None:
-        fresh = np.stack(
-            [
-                closed.number,
-                np.zeros_like(closed.time),
-                closed.rows,
-                closed.time,
-                closed.spread,
-                *closed.means,
-            ]
-        )
-        while fresh.shape[1]:
-            room = _CAPACITY - self._store.shape[1]
-            self._store = np.concatenate([self._store, fresh[:, :room]], axis=1)
-            fresh = fresh[:, room:]
-            if self._store.shape[1] == _CAPACITY:
-                self._make_room()
-
-    def _make_room(self) -> None:
-        """Join neighbours, the lowest level first, and drop the oldest where that does not help."""
-        if self._widest is None:
-            self._widest = self._widest_level()
-        for level in range(self._widest):
-            if self._store.shape[1] > 0.875 * _CAPACITY:
-                self._store = _joined(self._store, level)
-        if self._store.shape[1] > 0.875 * _CAPACITY:
-            self._store = self._store[:, _CAPACITY // 4 :].copy()
-
-    def _widest_level(self) -> int:
-        """How often bins may be doubled when only the readings tell the period."""
-        swing = 2.0 * pi / rough_omega(self.samples(), self.turn)
-        return max(int(log2(swing / _PER_SWING[1] / self._bins.width)), 0)
+        self._store.add(np.stack(rows))
 
     def samples(self) -> Samples:
         """Return the kept stretches and the open one, time counting from near the first row."""
-        held = self._bins.open_bin()
-        last = np.stack([held.number, held.number, held.rows, held.time, held.spread, *held.means])
-        _, _, count, time, spread, east, north = np.concatenate([self._store, last], axis=1)
-        return Samples(time=time, spread=spread, weight=count, value=east + 1j * north)
+        return self._store.samples()
 
     def estimate(self) -> RestPoint | None:
         """Give the rest point as it stands.
@@ -276,7 +226,7 @@ class RestPointTracker:
         """
         samples = self.samples()
         enough = FEWEST_SWINGS * (self.period or 0.0)
-        if samples.time.size < 12 or samples.duration < enough * (1.0 - 1.0 / _PER_SWING[0]):
+        if samples.time.size < 12 or samples.duration < enough * (1.0 - 1.0 / PER_SWING[0]):
             return None
         every = samples.time.size
         samples, fit, settled = self._clean_fit(samples)
@@ -406,21 +356,6 @@ class RestPointTracker:
 def _check(name: str, ok: bool, value: object, unit: str, expected: str) -> None:
     if not ok:
         raise ParameterError(name, value, unit, expected)
-
-
-def _joined(store: Array, level: int) -> Array:
-    """Join bins of one level that are halves of the same wider one."""
-    number, levels = store[0], store[1]
-    wide = np.where(levels == level, np.floor(number / 2.0), np.nan)
-    starts = np.flatnonzero(np.concatenate([[True], wide[1:] != wide[:-1]]))  # NaN differs from itself
-    count = np.add.reduceat(store[2], starts)
-    means = np.add.reduceat(store[2] * store[3:], starts, axis=1) / count
-    parent = np.repeat(np.arange(starts.size), np.diff(np.append(starts, number.size)))
-    about = store[2] * (store[3] - means[0, parent]) ** 2
-    means[1] += np.add.reduceat(about, starts) / count
-    risen = levels[starts] + (levels[starts] == level)
-    kept = np.where(levels[starts] == level, wide[starts], number[starts])
-    return np.concatenate([[kept, risen, count], means])
 
 
 def _at_rest(samples: Samples) -> RestPoint:
