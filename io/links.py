@@ -5,34 +5,29 @@ is lost is for `io.reader`.
 """
 
 import contextlib
-import errno
 import os
 import re
 import select
-import socket
 import stat
 import sys
 import time
 from collections.abc import Callable, Iterator
 from pathlib import Path
 from typing import Any, Protocol
-from urllib.parse import urlsplit
 
 from eastfall.io.errors import LinkError, LogError
+from eastfall.io.linkerror import link_error
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import LinkSettings, SiteFile
+from eastfall.io.sockets import CHUNK, Cancelled, SocketLink
 
-CHUNK = 1 << 16
-"""Bytes taken at a time."""
-CONNECT_WITHIN = 5.0
-"""Seconds that a TCP device server may take to accept."""
+__all__ = ["Cancelled", "FileLink", "Link", "SerialLink", "SocketLink", "StreamLink", "open_link"]
+
 _LOG_BEGINS = b'{"eastfall":"run log"'
 _BY_PYSERIAL = ("rfc2217", "loop", "hwgrep")
 _HAS_SCHEME = re.compile(r"emulate:|[A-Za-z][A-Za-z0-9]+://")
 _DEVICE = re.compile(r"/dev/|COM\d+\Z|\\\\\.\\", re.IGNORECASE)
 _SCHEMES = "a serial device, COM port, socket://host:port, rfc2217://host:port, emulate:, - or a file"
-
-Cancelled = Callable[[], bool]
 
 
 class Link(Protocol):
@@ -113,7 +108,7 @@ def _open_path(settings: LinkSettings, index: int) -> Link:
     except (OSError, ValueError) as error:
         if _DEVICE.match(url):
             return SerialLink(settings)
-        raise _link_error(url, error) from error
+        raise link_error(url, error) from error
     if stat.S_ISREG(mode):
         return FileLink(url, index)
     if stat.S_ISFIFO(mode):
@@ -127,7 +122,7 @@ def _opened(path: str, flags: int) -> int:
     try:
         return os.open(path, flags)
     except OSError as error:
-        raise _link_error(path, error) from error
+        raise link_error(path, error) from error
 
 
 class SerialLink:
@@ -154,12 +149,12 @@ class SerialLink:
             *_terminal_errors(),
         )
         options: dict[str, Any] = {"baudrate": settings.baud, "timeout": 0.1}
-        if os.name == "posix" and "://" not in settings.url:
+        if os.name == "posix" and ("://" not in settings.url or settings.url.startswith("hwgrep:")):
             options["exclusive"] = True
         try:
             self._port: Any = serial.serial_for_url(settings.url, **options)
         except self._troubles as error:
-            raise _link_error(settings.url, error) from error
+            raise link_error(settings.url, error) from error
 
     def read(self, timeout: float) -> bytes | None:
         """Return what has come."""
@@ -183,99 +178,6 @@ def _terminal_errors() -> tuple[type[Exception], ...]:
     except ImportError:
         return ()
     return (termios.error,)
-
-
-class SocketLink:
-    """A TCP device server; it is only listened to.
-
-    pyserial's own `socket://` reads one byte at a time without waiting for more, 8 µs each, and when asked for more at
-    once it throws away what it has when the server closes: so lines sent just before were lost.
-
-    Parameters
-    ----------
-    url : str
-        socket://host:port
-    within : float
-        Longest wait for the server to accept [s].
-    cancelled : callable
-        Asked while waiting; True gives up.
-    """
-
-    patient = False
-
-    def __init__(
-        self, url: str, *, within: float = CONNECT_WITHIN, cancelled: Cancelled = lambda: False
-    ) -> None:
-        self.name = url
-        host, port = _address(url)
-        try:
-            self._socket = _connected(host, port, within, cancelled)
-        except OSError as error:
-            raise _link_error(url, error) from error
-        self._socket.setsockopt(socket.SOL_SOCKET, socket.SO_KEEPALIVE, 1)
-        for option, seconds in (("TCP_KEEPIDLE", 10), ("TCP_KEEPINTVL", 5), ("TCP_KEEPCNT", 3)):
-            if hasattr(socket, option):  # a server that lost its power sends no farewell: found out in 25 s
-                self._socket.setsockopt(socket.IPPROTO_TCP, getattr(socket, option), seconds)
-
-    def read(self, timeout: float) -> bytes | None:
-        """Return what has come."""
-        try:
-            ready, _, _ = select.select([self._socket], [], [], timeout)
-            if not ready:
-                return b""
-            data = self._socket.recv(CHUNK)
-        except (OSError, ValueError) as error:
-            raise LinkError(f"{self.name}: lost: {safe(str(error), 120)}") from error
-        if not data:
-            raise LinkError(f"{self.name}: lost: the device server closed the connection")
-        return data
-
-    def close(self) -> None:
-        """Let go of the connection."""
-        self._socket.close()
-
-
-def _address(url: str) -> tuple[str, int]:
-    try:
-        parts = urlsplit(url)
-        host, port = parts.hostname, parts.port
-    except ValueError:
-        host, port = None, None
-    if not host or not port:
-        raise LinkError(f"{safe(url, 80)}: no host and port in it; expected socket://host:port")
-    return host, port
-
-
-def _connected(host: str, port: int, within: float, cancelled: Cancelled) -> socket.socket:
-    """Connect to the first address that accepts."""
-    last: OSError = OSError(errno.EHOSTUNREACH, "no address")
-    for family, kind, protocol, _, address in socket.getaddrinfo(host, port, type=socket.SOCK_STREAM):
-        one = socket.socket(family, kind, protocol)
-        try:
-            _connect(one, address, within, cancelled)
-        except OSError as error:
-            one.close()
-            last = error
-        else:
-            return one
-    raise last
-
-
-def _connect(one: socket.socket, address: Any, within: float, cancelled: Cancelled) -> None:
-    """Connect without blocking for longer than a tenth of a second at a time."""
-    one.setblocking(False)
-    code = one.connect_ex(address)
-    deadline = time.monotonic() + within
-    while code in (errno.EINPROGRESS, errno.EWOULDBLOCK, errno.EALREADY):
-        if cancelled():
-            raise OSError(errno.ECANCELED, "given up")
-        if time.monotonic() > deadline:
-            raise OSError(errno.ETIMEDOUT, "no answer")
-        _, writable, failed = select.select([], [one], [one], 0.1)
-        if writable or failed:
-            code = one.getsockopt(socket.SOL_SOCKET, socket.SO_ERROR)
-    if code:
-        raise OSError(code, os.strerror(code))
 
 
 class StreamLink:
@@ -338,7 +240,7 @@ class FileLink:
             begin = self._file.read(len(_LOG_BEGINS))
             self._file.seek(0)
         except (OSError, ValueError) as error:
-            raise _link_error(path, error) from error
+            raise link_error(path, error) from error
         self._pieces = self._log_lines(index) if begin == _LOG_BEGINS else self._capture()
 
     def _capture(self) -> Iterator[bytes]:
@@ -366,37 +268,3 @@ class FileLink:
         """Let go of the file."""
         self._pieces = iter(())
         self._file.close()
-
-
-_WHAT = {
-    errno.ENOENT: "no such device or file; `eastfall ports` lists the serial ports",
-    errno.ENXIO: "no such device; `eastfall ports` lists the serial ports",
-    errno.ENODEV: "no such device; `eastfall ports` lists the serial ports",
-    errno.EACCES: "permission denied; may this user read it? (on Linux often: the group dialout)",
-    errno.EPERM: "permission denied; may this user read it? (on Linux often: the group dialout)",
-    errno.EBUSY: "busy: another program holds it; close that one first",
-    errno.EAGAIN: "busy: another program holds it; close that one first",
-    errno.EISDIR: "a folder; expected a device or a file",
-    errno.ECONNREFUSED: "connection refused: nothing listens there; is the device server on, is the port right?",
-    errno.ETIMEDOUT: "no answer; is the device server on, is the address right?",
-    errno.EHOSTUNREACH: "host not reachable; is the network up, is the address right?",
-    errno.ENETUNREACH: "network not reachable; is the network up, is the address right?",
-}
-
-
-def _link_error(url: str, error: BaseException) -> LinkError:
-    """Return the one clear line for a link that cannot be opened."""
-    text = str(error)
-    number = getattr(error, "errno", None)
-    if number is None and (found := re.search(r"\[Errno (\d+)\]", text)):
-        number = int(found[1])
-    if isinstance(error, socket.gaierror):
-        return LinkError(
-            f"{safe(url, 80)}: the host's name cannot be resolved; expected a name or an address"
-        )
-    if "FileNotFoundError" in text:  # as pyserial words it on Windows
-        number = errno.ENOENT
-    elif "PermissionError" in text:  # there, this is a port that is open elsewhere
-        number = errno.EBUSY
-    what = _WHAT.get(number, "") if number is not None else ""
-    return LinkError(f"{safe(url, 80)}: {what or 'cannot be opened: ' + safe(text, 160)}")

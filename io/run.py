@@ -7,14 +7,15 @@ so a replay of the log repeats the run to the last bit.
 
 import threading
 import time
-from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Callable, Sequence
+from dataclasses import replace
 from functools import partial
 from types import MappingProxyType
 from typing import Protocol, Self
 
 from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
 from eastfall.io.errors import LinkError
+from eastfall.io.health import Health, LinkHealth, RunUpdate
 from eastfall.io.links import Cancelled, Link, open_link
 from eastfall.io.pipeline import Pipeline
 from eastfall.io.reader import Clock, Inbox, Item, LinkNews, Reader
@@ -22,7 +23,9 @@ from eastfall.io.recorder import Recorder
 from eastfall.io.runlog import RunLogWriter
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import LinkSettings, SiteFile
-from eastfall.physics.findings import AlarmView, Findings, Standing
+from eastfall.physics.findings import Findings
+
+__all__ = ["Health", "LinkHealth", "Run", "RunUpdate"]
 
 RECORD_FAILING = "record failing"
 LINK_LOST = "link lost"
@@ -46,57 +49,6 @@ class Opener(Protocol):
     ) -> Link:
         """Open the link that the settings describe."""
         ...
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class LinkHealth:
-    """How one link does."""
-
-    name: str
-    url: str
-    state: str
-    """open, lost or ended."""
-    retry_in: float | None
-    """Seconds until the next try; None while it is not lost, or is being tried."""
-    lines: int
-    rate: float
-    """Lines per second over the last few seconds."""
-    silent_for: float
-    """Seconds since the last line, or since the start."""
-    last_fault: str
-    """The latest bad line and what was expected, or why the link is lost; safe to show."""
-    queue_dropped: int
-    """Lines that found no room in the queue and are lost."""
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Health:
-    """How the feed and the record do."""
-
-    links: tuple[LinkHealth, ...]
-    frames: int
-    rejected: int
-    faults: Mapping[str, int]
-    log_path: str
-    log_bytes: int
-    log_state: str
-    log_lost: int = 0
-    """Lines and events missing from the record."""
-    set_aside: int = 0
-    """Readings that came before the run was armed."""
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class RunUpdate:
-    """What one step brought, and how things stand."""
-
-    findings: tuple[Findings, ...]
-    standing: Standing | None
-    alarms: tuple[AlarmView, ...]
-    health: Health
-    time: float
-    """Host time [s] since the start of the run."""
-    armed: bool = True
 
 
 class Run:

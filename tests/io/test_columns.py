@@ -214,7 +214,7 @@ STREAM = st.lists(LINE, max_size=12).map(lambda lines: b"".join(one + b"\n" for 
 
 
 @pytest.mark.invariant
-@settings(max_examples=200)
+@settings(max_examples=100)
 @given(STREAM, st.sampled_from(["depth_m", "time_s", "-"]))
 def test_many_at_once_and_one_by_one_agree_to_the_last_bit(stream: bytes, first: str) -> None:
     """A block read at once gives the readings and faults of its lines read singly, bit for bit."""
@@ -233,7 +233,7 @@ def test_many_at_once_and_one_by_one_agree_to_the_last_bit(stream: bytes, first:
 
 
 @pytest.mark.invariant
-@settings(max_examples=200)
+@settings(max_examples=100)
 @given(
     st.binary(max_size=400),
     STREAM,

@@ -200,7 +200,7 @@ LINES = st.lists(
 
 
 @pytest.mark.invariant
-@settings(max_examples=200)
+@settings(max_examples=100)
 @given(
     LINES, st.lists(st.integers(0, 30), max_size=8), st.sampled_from([BOTH, ("depth_m",), ("tilt_a_deg",)])
 )

@@ -131,7 +131,7 @@ def _merge_order(
 
 
 @pytest.mark.invariant
-@settings(max_examples=200)
+@settings(max_examples=100)
 @given(
     winch=st.lists(st.integers(0, 30), min_size=1, max_size=15),
     probe=st.lists(st.integers(0, 30), min_size=1, max_size=15),

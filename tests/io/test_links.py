@@ -14,8 +14,9 @@ from live_help import site
 from record_help import written
 
 from eastfall.io.errors import LinkError
-from eastfall.io.links import FileLink, Link, SerialLink, SocketLink, StreamLink, open_link
+from eastfall.io.links import FileLink, Link, SerialLink, StreamLink, open_link
 from eastfall.io.sitefile import LinkSettings
+from eastfall.io.sockets import SocketLink
 
 
 def opened(url: str, **more: object) -> Link:
