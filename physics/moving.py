@@ -3,6 +3,8 @@
 Turning tilts into offsets is `tilt`; deciding what stands still is the engine's business.
 """
 
+from typing import Any
+
 import numpy as np
 import numpy.typing as npt
 
@@ -193,7 +195,11 @@ def _parabolas(knots: Array, wanted: int) -> Array:
     total = knots.shape[1]
     if total == _MEMORY + wanted and knots[0, 0] == knots[0, -1]:
         result = np.empty((4, wanted))
-        result[:2], result[2:] = knots[:2, _MEMORY:], _grouped(knots[1:], GROUP)
+        result[:2] = knots[:2, _MEMORY:]
+        if wanted == 1:
+            result[2, 0], result[3, 0] = _newest(knots[1:])
+        else:
+            result[2:] = _grouped(knots[1:], GROUP)
         return result
     result = np.full((4, wanted), np.nan)
     result[:2] = knots[:2, total - wanted :]
@@ -234,25 +240,50 @@ def _running_mean(values: Array, size: int) -> Array:
 
 
 def _grouped(knots: Array, size: int) -> Array:
-    """Speed and acceleration at the newest of every 3 `size` consecutive knots.
-
-    The mean of z = z0 + v τ + ½ a τ² over a group is z0 + v T + ½ a (T² + q), T and q the mean and the
-    variance of τ in it; the differences of three groups give v and a.
-    """
-    time = knots[0]
+    """Speed and acceleration at the newest of every 3 `size` consecutive knots."""
     means = _running_mean(knots, size)
     if size > 1:
         centre = means[0]
         for shift in range(size):
-            away = time[shift : shift + centre.size] - centre
+            away = knots[0, shift : shift + centre.size] - centre
             away *= away
             away /= size
             means[1] += away
-    step, spread, height = means[:, size:] - means[:, :-size]
-    chord = height / step
-    lever = spread / step + (means[0, size:] + means[0, :-size])
-    half = (chord[size:] - chord[:-size]) / (lever[size:] - lever[:-size])
-    out = np.empty((2, half.size))
-    out[0] = chord[size:] - half * (lever[size:] - 2.0 * time[3 * size - 1 :])
-    np.multiply(half, 2.0, out=out[1])
+    last = means.shape[1] - size
+    groups = (means[:, : last - size], means[:, size:last], means[:, 2 * size :])
+    out = np.empty((2, last - size))
+    out[0], out[1] = _parabola(*groups, knots[0, 3 * size - 1 :])
     return out
+
+
+def _newest(knots: Array) -> tuple[float, float]:
+    """Do what `_grouped` does for the nine newest knots alone, in numbers: in the same order, so to the same bits."""
+    rows = knots[:, -3 * GROUP :].tolist()
+    groups = []
+    for first in range(0, 3 * GROUP, GROUP):
+        mean = [((row[first] + row[first + 1]) + row[first + 2]) / GROUP for row in rows]
+        for time in rows[0][first : first + GROUP]:
+            away = time - mean[0]
+            mean[1] += away * away / GROUP
+        groups.append(mean)
+    oldest, middle, newest = groups
+    speed, acceleration = _parabola(oldest, middle, newest, rows[0][-1])
+    return float(speed), float(acceleration)
+
+
+def _parabola(oldest: Any, middle: Any, newest: Any, at: Any) -> tuple[Any, Any]:
+    """Speed and acceleration at a time from the means of three groups, numbers or arrays alike.
+
+    A group is its mean time T, the variance q of its times and its mean depth. The mean of z = z0 + v τ + ½ a τ²
+    over it is z0 + v T + ½ a (T² + q); the differences of three groups give v and a.
+    """
+    steps = [
+        [right - left for left, right in zip(*pair, strict=True)]
+        for pair in ((oldest, middle), (middle, newest))
+    ]
+    (step1, spread1, rise1), (step2, spread2, rise2) = steps
+    chord1, chord2 = rise1 / step1, rise2 / step2
+    lever1 = spread1 / step1 + (middle[0] + oldest[0])
+    lever2 = spread2 / step2 + (newest[0] + middle[0])
+    half = (chord2 - chord1) / (lever2 - lever1)
+    return chord2 - half * (lever2 - 2.0 * at), 2.0 * half

@@ -133,8 +133,8 @@ def check_air(runs, swings, kind, memory, sigma, seed):
 @pytest.mark.independent
 @pytest.mark.parametrize("swings", [1.5, 4.0])
 def test_white_noise_meets_the_cramer_rao_bound_and_the_stated_interval(swings):
-    """150 runs: the interval of 2 u holds in 95 ± 2 %, the error is within 1.1 of the bound."""
-    check_white(150, swings, 21)
+    """100 runs: the interval of 2 u holds in 95 ± 2 %, the error is within 1.1 of the bound."""
+    check_white(100, swings, 21)
 
 
 @pytest.mark.soak
@@ -150,8 +150,8 @@ def test_white_noise_over_a_thousand_runs(swings):
     ("swings", "kind", "memory", "sigma"), [(2.0, remembering, 10.0, 1e-3), (4.0, blown, 10.0, 1e-3)]
 )
 def test_irregular_air_widens_the_interval(swings, kind, memory, sigma):
-    """80 runs with air that has a memory: the interval of 2 u holds in 90 % or more."""
-    check_air(80, swings, kind, memory, sigma, 23)
+    """60 runs with air that has a memory: the interval of 2 u holds in 90 % or more."""
+    check_air(60, swings, kind, memory, sigma, 23)
 
 
 @pytest.mark.soak
@@ -392,7 +392,7 @@ def same(one, other):
 
 
 @pytest.mark.invariant
-@settings(max_examples=12, deadline=None)
+@settings(max_examples=8, deadline=None)
 @given(cuts=st.lists(st.integers(0, 1500), max_size=10), length=st.sampled_from([LENGTH, 20.0, None]))
 def test_estimates_do_not_depend_on_the_cutting_to_the_last_bit(cuts, length):
     """Rows in any blocks, asked at the same rows, give the same bits; a short line makes old bins join and drop."""
