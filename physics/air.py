@@ -14,10 +14,10 @@ from eastfall.physics.field import LocalField
 from eastfall.physics.settings import Air
 
 GAS_CONSTANT = 287.05287
-"""Specific gas constant of dry air [J/(kg K)]; ICAO Doc 7488/3 (1993), table A."""
+"""Specific gas constant of dry air [J/(kg K)]; ICAO Doc 7488/3 (1993)."""
 
 ADIABATIC_INDEX = 1.4
-"""Of air [1]; ICAO Doc 7488/3 (1993), table A."""
+"""Of air [1]; ICAO Doc 7488/3 (1993)."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -72,7 +72,7 @@ class AirColumn:
 
         References
         ----------
-        ICAO Doc 7488/3 (1993), Manual of the ICAO Standard Atmosphere, eq. 8 and 9.
+        ICAO Doc 7488/3 (1993), Manual of the ICAO Standard Atmosphere.
         """
         z = np.asarray(depth, dtype=np.float64)
         top = self.settings.density * GAS_CONSTANT * self.settings.temperature
@@ -105,7 +105,7 @@ class AirColumn:
 
         References
         ----------
-        ICAO Doc 7488/3 (1993), eq. 16; U.S. Standard Atmosphere (1976), eq. 51.
+        ICAO Doc 7488/3 (1993); U.S. Standard Atmosphere (1976).
         """
         temperature = self.temperature(depth)
         value: Array = 1.458e-6 * temperature * np.sqrt(temperature) / (temperature + 110.4)

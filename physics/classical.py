@@ -53,7 +53,7 @@ def eastward(
 
     References
     ----------
-    Kibble, T. W. B. & Berkshire, F. H. (2004), Classical Mechanics, 5th ed., section 5.4.
+    Kibble, T. W. B. & Berkshire, F. H. (2004), Classical Mechanics, 5th ed.
     """
     h, g = np.asarray(height, dtype=np.float64), np.asarray(gravity, dtype=np.float64)
     offset: Array = rotation / 3.0 * np.cos(latitude) * np.sqrt(8.0 * h**3 / g)
@@ -118,7 +118,7 @@ def equatorward(
 
     References
     ----------
-    Sivukhin, D. V., General Course of Physics, vol. I, section 67 (C = 2/3); Marion, J. B. & Thornton, S. T., Classical
+    Sivukhin, D. V., General Course of Physics, vol. I (C = 2/3); Marion, J. B. & Thornton, S. T., Classical
     Dynamics of Particles and Systems, problem 10-13 (C = 4).
     """
     h = np.asarray(height, dtype=np.float64)
@@ -291,7 +291,7 @@ def orbit_fall(
 
     References
     ----------
-    Any text on celestial mechanics, e.g. Danby, J. M. A. (1988), Fundamentals of Celestial Mechanics, chapter 6.
+    Any text on celestial mechanics.
     """
     slow = rotation**2 * radius**3 / gm
     eccentricity = 1.0 - slow

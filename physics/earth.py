@@ -125,8 +125,8 @@ def normal_gravity(
 
     References
     ----------
-    Moritz, H. (1980), Bulletin géodésique 54(3), eq. for Somigliana's formula.
-    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, eq. 2-123 (the height formula).
+    Moritz, H. (1980), Bulletin géodésique 54(3) (Somigliana's formula).
+    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, chapter 2 (the height formula).
     """
     s2 = np.sin(_checked_latitude(latitude)) ** 2
     surface = (
@@ -161,7 +161,7 @@ def meridian_radius(latitude: npt.ArrayLike, ellipsoid: Ellipsoid = WGS84) -> Ar
 
     References
     ----------
-    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, section 5-3.
+    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy (radii of curvature).
     """
     e2 = ellipsoid.eccentricity_squared
     w = 1.0 - e2 * np.sin(_checked_latitude(latitude)) ** 2
@@ -190,7 +190,7 @@ def prime_vertical_radius(latitude: npt.ArrayLike, ellipsoid: Ellipsoid = WGS84)
 
     References
     ----------
-    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, section 5-3.
+    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy (radii of curvature).
     """
     w = 1.0 - ellipsoid.eccentricity_squared * np.sin(_checked_latitude(latitude)) ** 2
     radius: Array = ellipsoid.semimajor_axis / np.sqrt(w)
@@ -229,7 +229,7 @@ def plumbline_curvature(
 
     References
     ----------
-    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, section 2-1 (curvature of the plumb line).
+    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, chapter 2 (curvature of the plumb line).
     """
     phi = _checked_latitude(latitude)
     h, a, f = np.asarray(height, dtype=np.float64), ellipsoid.semimajor_axis, ellipsoid.flattening
@@ -267,7 +267,7 @@ def free_air_gradient(
 
     References
     ----------
-    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, eq. 2-20.
+    Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, chapter 2 (Bruns's formula).
     """
     curvatures = 1.0 / np.asarray(meridian, dtype=np.float64) + 1.0 / np.asarray(
         prime_vertical, dtype=np.float64

@@ -111,7 +111,7 @@ class LocalField:
 
         References
         ----------
-        Hofmann-Wellenhof, B. & Moritz, H. (2006), Physical Geodesy, eq. 2-40 and section 3.5.
+        Hofmann-Wellenhof, B. & Moritz, H. (2006), Physical Geodesy (Bruns's formula; Poincaré-Prey reduction).
         """
         z = np.asarray(depth, dtype=np.float64)
         radius = self.mean_radius - z
@@ -188,7 +188,7 @@ class LocalField:
 
         References
         ----------
-        Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, section 2-2 (curvatures of level surfaces).
+        Heiskanen, W. A. & Moritz, H. (1967), Physical Geodesy, chapter 2 (curvatures of level surfaces).
         """
         vertical = self.gravity_at(down)
         lean_north, lean_east = self.slope(down)

@@ -129,7 +129,7 @@ def landing_spread(
 
     References
     ----------
-    JCGM 100:2008 (GUM), section 5.1, eq. 10; JCGM 102:2011, section 6.2 (more than one output).
+    JCGM 100:2008 (GUM), section 5.1, eq. 10; JCGM 102:2011 (more than one output).
     """
     errors = (
         ("east", body.u_release),

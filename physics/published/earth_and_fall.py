@@ -160,7 +160,7 @@ CHECKS: tuple[PublishedCheck, ...] = (
     ),
     PublishedCheck(
         name="curvature of the plumb line at 45°, toward the equator upwards",
-        source="Heiskanen & Moritz (1967), Physical Geodesy, chapter 5 (from memory, unconfirmed)",
+        source="Heiskanen & Moritz (1967), Physical Geodesy (from memory, unconfirmed)",
         mark="memory",
         unit="″/km",
         expected=-0.17,
@@ -197,7 +197,7 @@ CHECKS: tuple[PublishedCheck, ...] = (
     ),
     PublishedCheck(
         name="eastward deflection, 100 m at 45° (about 16 mm)",
-        source="Kibble & Berkshire, Classical Mechanics, section 5.4",
+        source="Kibble & Berkshire, Classical Mechanics",
         mark="published",
         unit="mm",
         expected=16.0,
@@ -234,7 +234,7 @@ CHECKS: tuple[PublishedCheck, ...] = (
     ),
     PublishedCheck(
         name="equatorward coefficient, constant g, against the straight vertical",
-        source="Sivukhin, General Course of Physics, vol. I, section 67: 2/3",
+        source="Sivukhin, General Course of Physics, vol. I: 2/3",
         mark="published",
         unit="",
         expected=2.0 / 3.0,

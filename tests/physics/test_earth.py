@@ -114,7 +114,7 @@ def test_free_air_gradient_is_the_slope_of_the_height_formula() -> None:
 
 @pytest.mark.published
 def test_free_air_gradient_is_the_usual_one() -> None:
-    """F is 0.3086 mGal/m at 45°: Hofmann-Wellenhof & Moritz (2006), Physical Geodesy, section 3.5."""
+    """F is 0.3086 mGal/m at 45°: Hofmann-Wellenhof & Moritz (2006), Physical Geodesy."""
     field = free_air_gradient(
         normal_gravity(pi / 4), meridian_radius(pi / 4), prime_vertical_radius(pi / 4), EARTH_ROTATION
     )

@@ -17,7 +17,7 @@ DEGREES = 3
 
 
 def _zonals() -> list[mpmath.mpf]:
-    """J2n of the level ellipsoid: Heiskanen & Moritz (1967), Physical Geodesy, eq. 2-92, with J2 of GRS80."""
+    """J2n of the level ellipsoid: Heiskanen & Moritz (1967), Physical Geodesy, chapter 2, with J2 of GRS80."""
     j2, e2 = mpmath.mpf("108263e-8"), mpmath.mpf(GRS80.eccentricity_squared)
     return [
         (-1) ** (n + 1) * 3 * e2**n / ((2 * n + 1) * (2 * n + 3)) * (1 - n + 5 * n * j2 / e2)
