@@ -13,6 +13,7 @@ from eastfall.physics.field import local_field
 from eastfall.physics.hung import (
     converge,
     free_period,
+    gathered,
     hang,
     lowering_lean,
     radius_toward,
@@ -240,6 +241,18 @@ def test_lines_converge_toward_the_centre_of_curvature():
     assert radius_toward(FIELD, pi / 2) == pytest.approx(FIELD.prime_vertical_radius, rel=1e-15)
     with pytest.raises(ParameterError, match="radius"):
         converge(5.0, 1000.0, 0.0)
+
+
+@pytest.mark.invariant
+def test_many_lines_gather_as_each_pair_converges():
+    """Three lines hang nearer to each other by sL/R for every pair along a principal direction."""
+    east, north = gathered(FIELD, np.array([0.0, 5.0, 0.0]), np.array([0.0, 0.0, 4.0]), 1000.0)
+    assert east[0] - east[1] == pytest.approx(converge(5.0, 1000.0, radius_toward(FIELD, pi / 2)), rel=1e-14)
+    assert north[0] - north[2] == pytest.approx(converge(4.0, 1000.0, radius_toward(FIELD, 0.0)), rel=1e-14)
+    pull_north, pull_east, _ = FIELD.acceleration(4.0, 5.0, 0.0)
+    # The field's own horizontal pull beside the collar against its gravity is the lean of the vertical there.
+    assert east[1] == pytest.approx(1000.0 * pull_east / FIELD.gravity, rel=1e-12)
+    assert north[2] == pytest.approx(1000.0 * pull_north / FIELD.gravity, rel=1e-12)
 
 
 @pytest.mark.invariant
