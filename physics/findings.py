@@ -153,7 +153,7 @@ class RestPoint:
     decay: float
     """Time for the swing to fall to 1/e [s]."""
     swings: float
-    """Single swings seen."""
+    """Full swings seen."""
     fits: bool
     message: str = ""
 
