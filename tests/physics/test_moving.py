@@ -203,3 +203,18 @@ def test_different_lengths_are_refused():
     """Time and depth of different lengths raise."""
     with pytest.raises(ParameterError, match="the shape of time"):
         _speed(np.zeros(3), np.zeros(2))
+
+
+@pytest.mark.independent
+@pytest.mark.parametrize(("rate", "within"), [(1.0, 3e-4), (10.0, 5e-5), (200.0, 5e-5)])
+def test_the_lean_of_a_whole_journey_sums_to_the_offset_of_its_true_speed(rate, within):
+    """300 s with soft starts and stops at 4 m/s: 37 mm of lean, met to a tenth of what a survey resolves (1 mm)."""
+    time = np.arange(0.0, 300.0, 1.0 / rate)
+    ramp = np.minimum(time, 300.0 - time) * 0.4
+    true = np.clip(ramp, 0.0, 4.0)
+    depth = np.concatenate([[0.0], np.cumsum(0.5 * (true[1:] + true[:-1]) / rate)])
+    speed, _ = _speed(time, np.round(depth, 2))
+    off = lean(np.nan_to_num(speed) - true, 1.0, 9.82)
+    summed = np.cumsum(0.5 * (off[1:] + off[:-1]) * np.diff(depth))
+    # At 1 Hz a knot is one row, and the corners of the speed are seen nine seconds long.
+    assert np.abs(summed).max() < within
