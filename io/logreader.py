@@ -180,21 +180,19 @@ class LogReader:
 
     def _arrivals(self, data: bytes) -> list[Arrival]:
         spans, begin, rolled = [], 0, None
-        for at, end in self._scan.feed(data):
+        for at, end, record in self._scan.feed(data):
             spans.append(data[begin:at])
             begin = end
-            rolled = self._take_seal(data[at:end]) or rolled
+            rolled = self._take_seal(record) or rolled
         spans.append(data[begin:])
         arrivals = self._decoded(b"".join(spans))
         if rolled is not None:
             self._follow(rolled)
         return arrivals
 
-    def _take_seal(self, line: bytes) -> str | None:
+    def _take_seal(self, record: Record | None) -> str | None:
         """Note a final seal; return the name of the next part if the log goes on there."""
-        try:
-            record = RECORDS.decode(line)
-        except (msgspec.DecodeError, UnicodeDecodeError):
+        if record is None:
             self.bad_lines += 1
             return None
         self.last_time = max(self.last_time, record.t)

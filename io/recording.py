@@ -14,6 +14,7 @@ from eastfall.io.logreader import LogReader
 from eastfall.io.pipeline import Pipeline
 from eastfall.io.sitefile import SiteFile
 from eastfall.io.whatif import Difference, differences, with_lines_of
+from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.survey import Survey
 
 
@@ -73,11 +74,10 @@ class Recording:
             LogReader(self.path, by_link=by_link) if self.is_log else CaptureReader(self.path, self.interval)
         )
 
-    def pipeline(self) -> Pipeline:
-        """Return a fresh pipeline for the settings in use."""
-        if self.is_log:
-            return Pipeline(self.site)
-        return Pipeline(self.site, Survey(self.site.assumptions, feed_watched=False), armed=True)
+    def pipeline(self, curve: ExpectedCurve | None = None) -> Pipeline:
+        """Return a fresh pipeline for the settings in use, with their curve where it stands ready."""
+        survey = Survey(self.site.assumptions, curve=curve, feed_watched=self.is_log)
+        return Pipeline(self.site, survey, armed=None if self.is_log else True)
 
 
 def open_recording(path: Path, site: SiteFile | None = None, interval: float | None = None) -> Recording:

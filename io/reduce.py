@@ -1,6 +1,6 @@
 """A whole recording through the engine, headless: stations, verdicts and alarms out; streamed, in flat memory."""
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from datetime import datetime
 from math import nan
@@ -15,7 +15,9 @@ from eastfall.io.recording import Recording, Source, open_recording
 from eastfall.io.seal import Verification
 from eastfall.io.sitefile import SiteFile
 from eastfall.io.whatif import Difference
+from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.findings import Result, Standing, Verdict
+from eastfall.physics.settings import Assumptions
 
 _MOST_EVENTS = 10_000
 _KEPT = frozenset({"note", "acknowledge", "shelve", "armed", "setting", "condition", "start", "end"})
@@ -60,7 +62,13 @@ class Reduction:
         return next((one for one in worst if one in found), None)
 
 
-def reduce_file(path: Path, *, site: SiteFile | None = None, interval: float | None = None) -> Reduction:
+def reduce_file(
+    path: Path,
+    *,
+    site: SiteFile | None = None,
+    interval: float | None = None,
+    curve_for: Callable[[Assumptions], ExpectedCurve] = expected_curve,
+) -> Reduction:
     """Reduce a run log or a capture.
 
     Parameters
@@ -71,6 +79,8 @@ def reduce_file(path: Path, *, site: SiteFile | None = None, interval: float | N
         Settings to use instead of the recorded ones; needed for a capture.
     interval : float, optional
         Time between the lines of a capture without a clock [s].
+    curve_for : callable
+        Gives the expected curve for settings; one that remembers saves time over many runs of a site.
 
     Returns
     -------
@@ -83,7 +93,7 @@ def reduce_file(path: Path, *, site: SiteFile | None = None, interval: float | N
         The file cannot be used; for a capture that does not fit its line form, with its first lines.
     """
     recording = open_recording(path, site, interval)
-    pipeline = recording.pipeline()
+    pipeline = recording.pipeline(curve_for(recording.site.assumptions))
     source = recording.source(by_link=True)
     try:
         events = run_through(source, pipeline, is_log=recording.is_log)

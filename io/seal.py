@@ -114,17 +114,16 @@ class SealScan:
         """The last seal met, if it holds."""
         self.time = 0.0
 
-    def feed(self, data: bytes) -> list[tuple[int, int]]:
-        """Take whole lines; return where in `data` the seals' lines stand, as (begin, end)."""
-        found: list[tuple[int, int]] = []
+    def feed(self, data: bytes) -> list[tuple[int, int, Record | None]]:
+        """Take whole lines; return where in `data` the seals stand, as (begin, end, record or None if unreadable)."""
+        found: list[tuple[int, int, Record | None]] = []
         view = memoryview(data)
         begin = 0
         at = 0 if data.startswith(SEAL_MARK) else data.find(_NEXT_SEAL) + 1 or -1
         while at >= 0:
             end = data.index(b"\n", at) + 1
             self._pass(data, view, begin, at)
-            self._seal(data[at:end], at)
-            found.append((at, end))
+            found.append((at, end, self._seal(data[at:end], at)))
             begin, at = at, data.find(_NEXT_SEAL, at) + 1 or -1
         self._pass(data, view, begin, len(data))
         self._offset += len(data)
@@ -136,11 +135,11 @@ class SealScan:
             self.lines += data.count(b"\n", begin, end)
             self._last_crc = stated_crc(data[max(begin, end - 12) : end]) or 0
 
-    def _seal(self, line: bytes, at: int) -> None:
+    def _seal(self, line: bytes, at: int) -> Record | None:
         try:
             record = RECORDS.decode(line)
         except (msgspec.DecodeError, UnicodeDecodeError):
-            return  # then the next seal does not hold either, and the line check finds this one
+            return None  # then the next seal does not hold either, and the line check finds this one
         offset = self._offset + at
         holds = record.seal == self._chain.value() and record.lines == self.lines
         if not holds and self.bad is None:
@@ -150,6 +149,7 @@ class SealScan:
         self.time = record.t if self.bad is None else self.time
         self.open = _Stretch(offset=offset, line=self.lines + 1, crc=self._last_crc)
         self._chain.restart(record.seal or "")
+        return record
 
 
 def _lines_of(file: BinaryIO, stretch: _Stretch) -> Iterator[bytes]:

@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterator
 from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
 from datetime import datetime
+from functools import lru_cache, partial
 from math import inf
 from pathlib import Path
 from typing import Any
@@ -16,6 +17,8 @@ from eastfall.io.safetext import safe
 from eastfall.io.seal import header_of, verify_log
 from eastfall.io.tables import number
 from eastfall.physics.errors import EastfallError
+from eastfall.physics.expected import ExpectedCurve, expected_curve
+from eastfall.physics.settings import Assumptions
 
 CARD_KEYS = ("path", "site", "started_at", "kind", "depth_m", "verdict", "state", "error")
 _WORTH_A_POOL = 64
@@ -39,6 +42,12 @@ class RunCard:
     """intact, cut short, or changed."""
     error: str
     """Why the file cannot be read; empty if it can."""
+
+
+@lru_cache(maxsize=32)
+def _curve(assumptions: Assumptions) -> ExpectedCurve:
+    """Return the curve of a site; runs in one folder are often of few sites."""
+    return expected_curve(assumptions)
 
 
 def log_files(folder: Path) -> list[Path]:
@@ -65,7 +74,7 @@ def card(path: Path, *, judged: bool = True) -> RunCard:
         kind, started = safe(header.kind, 20), _instant(header.started_at)
         if not judged:
             return _card(path, _site_name(header.site), started, kind, None, "", verify_log(path).state, "")
-        reduction = reduce_file(path)
+        reduction = reduce_file(path, curve_for=_curve)
     except (EastfallError, OSError) as error:
         return _card(path, site, started, kind, depth, verdict, "", safe(str(error), 300))
     stations = reduction.result.stations
@@ -122,6 +131,8 @@ def list_runs(
     folder: Path,
     progress: Callable[[int, int], None] | None = None,
     workers: int | None = None,
+    *,
+    judged: bool = True,
 ) -> tuple[RunCard, ...]:
     """List the runs in a folder.
 
@@ -133,6 +144,8 @@ def list_runs(
         Called with the number done and the number there is.
     workers : int, optional
         Processes; by default as many as there are cores if there are many files. 1 stays in this process.
+    judged : bool
+        Whether to reduce each run for depth and verdict; else only headers and seals are read, which takes a tenth.
 
     Returns
     -------
@@ -146,7 +159,7 @@ def list_runs(
     """
     files = log_files(folder)
     found = []
-    for one in _cards(files, workers):
+    for one in _cards(files, workers, partial(card, judged=judged)):
         found.append(one)
         if progress is not None:
             progress(len(found), len(files))
@@ -160,17 +173,17 @@ def _age(one: RunCard) -> float:
         return -inf
 
 
-def _cards(files: list[Path], workers: int | None) -> Iterator[RunCard]:
+def _cards(files: list[Path], workers: int | None, make: Callable[[Path], RunCard]) -> Iterator[RunCard]:
     count = workers or ((os.cpu_count() or 1) if len(files) >= _WORTH_A_POOL else 1)
     if count == 1:
-        yield from map(card, files)
+        yield from map(make, files)
         return
     import multiprocessing  # noqa: PLC0415 - only where other processes are started
 
     # A fork would carry over a screen's threads and locks; a fresh interpreter takes nothing along.
     context = multiprocessing.get_context("spawn")
     with ProcessPoolExecutor(max_workers=count, mp_context=context) as pool:
-        yield from pool.map(card, files, chunksize=_BATCH)
+        yield from pool.map(make, files, chunksize=_BATCH)
 
 
 def card_row(one: RunCard) -> dict[str, Any]:

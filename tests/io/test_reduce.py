@@ -7,7 +7,9 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from record_help import SITE_TEXT, block, site, writer
+from hypothesis import given
+from hypothesis import strategies as st
+from record_help import SITE_TEXT, block, site, writer, written
 
 from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.capture import CaptureReader
@@ -17,6 +19,7 @@ from eastfall.io.reduce import reduce_file
 from eastfall.io.runlog import read_log
 from eastfall.io.tables import reduce_table
 from eastfall.io.whatif import differences, settings_of
+from eastfall.physics.errors import EastfallError
 
 LOGS = sorted((Path(__file__).parents[2] / "replay_logs").glob("*.eastfall.jsonl"))
 TIMED = SITE_TEXT + 'columns = ["time_s", "depth_m", "tilt_a_deg", "tilt_b_deg"]\n'
@@ -205,3 +208,48 @@ def test_line_numbers_count_on_over_the_blocks_of_a_capture(tmp_path: Path) -> N
     before = np.cumsum([len(one) for one in blocks])
     assert [one.first_line for one in blocks[1:]] == (before[:-1] + 1).tolist()
     assert blocks[-1].times[-1] == 99_999.5
+
+
+@pytest.fixture(scope="module")
+def small_log(tmp_path_factory: pytest.TempPathFactory) -> bytes:
+    """Return the bytes of a short log with a note."""
+    return written(tmp_path_factory.mktemp("small"), seconds=12, rate=2).read_bytes()
+
+
+@given(data=st.data())
+def test_a_log_of_any_bytes_gives_a_result_or_the_programs_own_error(
+    tmp_path_factory: pytest.TempPathFactory, small_log: bytes, data: st.DataObject
+) -> None:
+    """Pieces of a log cut, repeated, overwritten and mixed with rubbish never end in any other exception."""
+    parts = data.draw(
+        st.lists(
+            st.one_of(
+                st.binary(max_size=30),
+                st.sampled_from(small_log.splitlines(keepends=True)),
+                st.sampled_from(
+                    [b'{"t":1e999,"raw":["1,2,3"]}\n', b'{"t":-5,"raw":["1,2,3"]}\n', b'{"t":9}\n']
+                ),
+                st.sampled_from(
+                    [b'{"t":1,"event":"end","fields":{}}\n', b'{"t":1,"event":"shelve","fields":[]}\n']
+                ),
+                st.sampled_from(
+                    [b'{"seal":"","t":1,"lines":2,"end":"rolled","next":"../x"}\n', b'{"seal":null}\n']
+                ),
+                st.tuples(st.integers(0, len(small_log)), st.integers(0, 400)).map(
+                    lambda cut: small_log[cut[0] : cut[0] + cut[1]]
+                ),
+            ),
+            max_size=8,
+        )
+    )
+    path = tmp_path_factory.mktemp("any") / "any.eastfall.jsonl"
+    path.write_bytes(
+        (small_log if data.draw(st.booleans()) else small_log.splitlines(keepends=True)[0]) + b"".join(parts)
+    )
+    try:
+        found = reduce_file(path)
+    except EastfallError as error:
+        assert str(error).isprintable()
+    else:
+        assert found.seal_state in {"intact", "cut short", "changed"}
+        assert (found.seal_state == "intact") == (path.read_bytes() == small_log)
