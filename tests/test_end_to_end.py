@@ -62,7 +62,7 @@ columns = ["time_s", "depth_m", "tilt_a_deg", "tilt_b_deg"]
 
 def emulator_of(site: SiteFile) -> Emulator:
     """Return the instrument that the other process serves: down and up once, one broken line to five good ones."""
-    winch = Winch(speed=SPEED, acceleration=PULL, creep_length=0.0, collar_time=1.0, bottom_time=0.5)
+    winch = Winch(speed=SPEED, acceleration=PULL, creep_length=0.0, collar_time=0.5, bottom_time=0.3)
     until = down_and_up(site.assumptions.shaft.depth, winch).duration
     return Emulator(site, seed=6, rate=RATE, broken=0.2, truth=TRUTH, winch=winch, until=until)
 

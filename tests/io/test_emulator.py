@@ -76,7 +76,7 @@ def decoded(link: LinkSettings, lines: list[EmulatedLine]) -> Decoded:
     seed=st.integers(0, 2**31),
     broken=st.sampled_from([0.0, 0.2, 1.0]),
 )
-@settings(max_examples=25, deadline=None)
+@settings(max_examples=15, deadline=None)
 def test_lines_do_not_depend_on_how_often_they_are_asked_for(
     polls: list[float], seed: int, broken: float
 ) -> None:
