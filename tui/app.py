@@ -126,7 +126,7 @@ class Dashboard(App[int]):
     def action_keys(self) -> None:
         """Open the help page of the screen in front; a dialog or the help page itself has none."""
         if not self.screen.is_modal and not isinstance(self.screen, HelpScreen):
-            places: tuple[str, ...] = getattr(self.screen, "HELP", ())
+            places: tuple[str, ...] = getattr(self.screen, "PLACES", ())
             self.push_screen(HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed)))
 
     def action_leave(self) -> None:

@@ -4,6 +4,7 @@ A plane is a boolean array of dots, row 0 at the top. Curves come in dot coordin
 """
 
 import unicodedata
+from collections.abc import Callable, Hashable
 from dataclasses import dataclass
 from typing import Literal, Self
 
@@ -166,16 +167,27 @@ class Raster:
         """Return an empty plane of this sheet's dots."""
         return np.zeros((self.height * self.glyphs.down, self.width * self.glyphs.across), dtype=np.bool_)
 
-    def stamp(self, plane: Plane, role: Role) -> None:
-        """Add a plane's dots: none that stand already vanish, the style of a shared cell is the later one's."""
+    def stamp(self, plane: Plane, role: Role, column: int = 0, row: int = 0) -> None:
+        """Add a plane's dots: none that stand already vanish, the style of a shared cell is the later one's.
+
+        Parameters
+        ----------
+        plane : ndarray of bool
+            As many dots as some whole cells have, and no larger than what is left of the sheet.
+        role : Role
+            How its cells are drawn.
+        column, row : int
+            The cell of its upper left corner.
+        """
         down, across = self.glyphs.down, self.glyphs.across
-        blocks = plane.reshape(self.height, down, self.width, across)
+        height, width = plane.shape[0] // down, plane.shape[1] // across
+        blocks = plane.reshape(height, down, width, across)
         bits = np.einsum("ijkl,jl->ik", blocks, self.glyphs.weights, dtype=np.uint16, casting="unsafe")
-        hit = bits > 0
-        self._bits |= bits
-        self._cells.ink[hit] = role
+        hit, part = bits > 0, (slice(row, row + height), slice(column, column + width))
+        self._bits[part] |= bits
+        self._cells.ink[part][hit] = role
         if self.glyphs.name == "ascii":
-            self._letters[hit] = ord(_ASCII_OF_ROLE.get(role, "#"))
+            self._letters[part][hit] = ord(_ASCII_OF_ROLE.get(role, "#"))
 
     def tint(self, plane: Plane, role: Role) -> None:
         """Colour the ground of every cell in which the plane has a dot."""
@@ -226,11 +238,11 @@ def segments(plane: Plane, x0: ArrayLike, y0: ArrayLike, x1: ArrayLike, y1: Arra
     x0, y0, x1, y1 : array_like, shape (n,)
         Ends: column and row, in dots; a dot with index i covers i to i + 1.
     """
-    ends = np.array(np.broadcast_arrays(x0, y0, x1, y1), dtype=float).reshape(4, -1)
-    ends = np.clip(ends[:, np.isfinite(ends).all(axis=0)], -_FAR, _FAR)
-    rows, columns = plane.shape
+    ends = np.array([x0, y0, x1, y1], dtype=float).reshape(4, -1)
     if not ends.size or not plane.size:
         return
+    rows, columns = plane.shape
+    ends = np.clip(ends[:, np.isfinite(ends).all(axis=0)], -_FAR, _FAR)
     enter_x, leave_x = _clip(ends[0], ends[2], columns - 1e-6)
     enter_y, leave_y = _clip(ends[1], ends[3], rows - 1e-6)
     enter = np.maximum(0.0, np.maximum(enter_x, enter_y))
@@ -252,20 +264,21 @@ def _walk(plane: Plane, ends: Floats, enter: Floats, leave: Floats) -> None:
     part = along / (count[index] - 1)
     column = (from_x[index] + part * step_x[index]).astype(np.intp)
     row = (from_y[index] + part * step_y[index]).astype(np.intp)
-    plane[np.clip(row, 0, plane.shape[0] - 1), np.clip(column, 0, plane.shape[1] - 1)] = True
+    np.minimum(row, plane.shape[0] - 1, out=row)
+    np.minimum(column, plane.shape[1] - 1, out=column)
+    plane[np.maximum(row, 0, out=row), np.maximum(column, 0, out=column)] = True
 
 
 def polyline(plane: Plane, x: ArrayLike, y: ArrayLike) -> None:
     """Draw a line through points, shape (n,), in dots; a NaN breaks it, a lone point is a dot."""
     across, along = np.atleast_1d(np.asarray(x, dtype=float)), np.atleast_1d(np.asarray(y, dtype=float))
-    if across.size == 1:
-        segments(plane, across, along, across, along)
-        return
     segments(plane, across[:-1], along[:-1], across[1:], along[1:])
     known = np.isfinite(across) & np.isfinite(along)
-    before = np.r_[False, known[:-1]]
-    after = np.r_[known[1:], False]
-    alone = known & ~before & ~after
+    if across.size > 1 and known.all():
+        return
+    alone = known.copy()
+    alone[1:] &= ~known[:-1]
+    alone[:-1] &= ~known[1:]
     segments(plane, across[alone], along[alone], across[alone], along[alone])
 
 
@@ -295,7 +308,7 @@ class Runs:
         edges = np.flatnonzero(np.diff(dots)) + 1
         if breaks is not None and breaks.size:
             edges = np.union1d(edges, breaks)
-        return cls(np.r_[0, edges].astype(np.intp), n)
+        return cls(np.concatenate([np.zeros(1, dtype=np.intp), edges]), n)
 
     def first(self, values: Floats) -> Floats:
         """Return the first value of each run."""
@@ -303,7 +316,9 @@ class Runs:
 
     def last(self, values: Floats) -> Floats:
         """Return the last value of each run."""
-        return values[np.r_[self.starts[1:], self.length] - 1] if self.length else values[:0]
+        if not self.length:
+            return values[:0]
+        return np.concatenate([values[self.starts[1:] - 1], values[-1:]])
 
     def span(self, values: Floats) -> tuple[Floats, Floats]:
         """Return the smallest and largest value of each run; NaN samples are left out, all NaN gives NaN."""
@@ -363,3 +378,26 @@ def _circle(radius: tuple[float, float], gaps: int) -> tuple[Floats, Floats]:
     if gaps:
         x = np.where((turn * gaps / (2.0 * np.pi)) % 1.0 < 0.5, x, np.nan)
     return x, y
+
+
+class Kept:
+    """Planes that seldom change, kept by what they were drawn from.
+
+    Parameters
+    ----------
+    most : int
+        How many; beyond that all are forgotten.
+    """
+
+    def __init__(self, most: int = 48) -> None:
+        self._most = most
+        self._planes: dict[Hashable, Plane] = {}
+
+    def plane(self, key: Hashable, draw: Callable[[], Plane]) -> Plane:
+        """Return the plane of a key, drawn when it is not kept."""
+        found = self._planes.get(key)
+        if found is None:
+            if len(self._planes) >= self._most:
+                self._planes.clear()
+            found = self._planes[key] = draw()
+        return found

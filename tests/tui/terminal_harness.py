@@ -34,6 +34,7 @@ class Terminal:
 
     def __init__(self, command: Sequence[str], columns: int, rows: int, **environment: str) -> None:
         self.raw = bytearray()
+        self._fed = 0
         self.screen = pyte.Screen(columns, rows)
         self._stream = pyte.ByteStream(self.screen)
         self._ours, theirs = pty.openpty()
@@ -51,6 +52,7 @@ class Terminal:
     def resize(self, columns: int, rows: int) -> None:
         """Change the window."""
         self._size(columns, rows)
+        _ = self.text  # what came so far belongs to the old size
         self.screen.resize(rows, columns)
         self.process.send_signal(signal.SIGWINCH)
 
@@ -68,12 +70,13 @@ class Terminal:
         except OSError:
             return 0
         self.raw += data
-        self._stream.feed(data)
         return len(data)
 
     @property
     def text(self) -> str:
         """The screen as lines."""
+        self._stream.feed(bytes(self.raw[self._fed :]))
+        self._fed = len(self.raw)
         return "\n".join(line.rstrip() for line in self.screen.display)
 
     def wait(self, wanted: str | Callable[[str], bool], seconds: float = PATIENCE) -> str:

@@ -59,7 +59,7 @@ def chosen(stations: tuple[Station, ...], order: str, only_open: bool) -> list[i
 class StationsScreen(PaintedScreen[int | None]):
     """The table; closes with the index of a station to look back at, or None."""
 
-    HELP = ("stations", "page")
+    PLACES = ("stations", "page")
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page", "stations"))
 
     def __init__(self, snapshot: Snapshot) -> None:

@@ -23,8 +23,9 @@ from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.figures import Figures
 from eastfall.tui.widgets.health import HealthList, health_line
 from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
+from eastfall.tui.widgets.panel import ProfileView
 from eastfall.tui.widgets.plan import Plan
-from eastfall.tui.widgets.profile import Profile, ProfileView
+from eastfall.tui.widgets.profile import Profile
 from eastfall.tui.widgets.strip import Strip
 
 _LAYOUTS: tuple[look.Layout, ...] = ("all", "depth", "plan", "time")
@@ -39,7 +40,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         What is known before the first reading.
     """
 
-    HELP = ("watch",)
+    PLACES = ("watch",)
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("watch"))
     HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (60, "-small"), (80, "-narrow"), (100, "-normal"), (160, "-wide")]  # noqa: RUF012
     VERTICAL_BREAKPOINTS = [(0, "-tiny"), (10, "-low"), (17, "-mid"), (32, "-tall")]  # noqa: RUF012
@@ -135,8 +136,16 @@ class WatchScreen(PaintedScreen[Choice | None]):
         for name in _LAYOUTS:
             evidence.set_class(name == sight.layout, f"-view-{name}")
         whole = session.assumptions.shaft.depth
-        self.query_one(Profile).show(
-            ProfileView(snapshot=shown, sight=sight, whole=whole, bob=session.bob, fall=session.fall)
+        profile = self.query_one(Profile)
+        profile.show(
+            ProfileView(
+                snapshot=shown,
+                sight=sight,
+                whole=whole,
+                bob=session.bob,
+                fall=session.fall,
+                kept=profile.kept,
+            )
         )
         plan = views.plan(session, shown, sight, one)
         self.query_one("#plan", Plan).show(plan, "wall" if sight.wall else "close")

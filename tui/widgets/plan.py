@@ -9,7 +9,7 @@ import numpy as np
 
 from eastfall.physics.findings import RestPoint, Standing, Station
 from eastfall.tui.axes import round_step
-from eastfall.tui.raster import Floats, Raster, polyline, ring, segments
+from eastfall.tui.raster import Floats, Kept, Plane, Raster, polyline, ring, segments
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.words import mm
@@ -52,6 +52,10 @@ class Plan(CellWidget):
     scope: Scope = "close"
     aspect: float = CELL_ASPECT
 
+    def __init__(self, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
+        super().__init__(id=id)
+        self.kept = Kept()
+
     def show(self, view: PlanView, scope: Scope) -> None:
         """Draw another view."""
         self.view, self.scope = view, scope
@@ -66,14 +70,14 @@ class Plan(CellWidget):
             sheet.text(0, 0, "shaft plan", Role.STRONG)
             sheet.text(0, 1, "no diameter in the site file", Role.DIM)
             return
-        _Sheet(view, self.scope, sheet, self.aspect).draw()
+        _Sheet(view, self.scope, sheet, self.aspect, self.kept).draw()
 
 
 class _Sheet:
     """One drawing of a plan."""
 
-    def __init__(self, view: PlanView | None, scope: Scope, sheet: Raster, aspect: float) -> None:
-        self.view, self.scope, self.sheet = view, scope, sheet
+    def __init__(self, view: PlanView | None, scope: Scope, sheet: Raster, aspect: float, kept: Kept) -> None:
+        self.view, self.scope, self.sheet, self.kept = view, scope, sheet, kept
         self.rows = sheet.height - 2
         self.size = (sheet.width * sheet.glyphs.across, self.rows * sheet.glyphs.down)
         # Height of a dot over its width: one length must look the same both ways.
@@ -129,13 +133,10 @@ class _Sheet:
             return view.centre[0] + view.one.expected_east, view.centre[1] + view.one.expected_north
         return view.centre
 
-    def _stamp(self, plane: np.ndarray, role: Role) -> None:
-        whole = self.sheet.plane()
-        down = self.sheet.glyphs.down
-        whole[down : down + plane.shape[0]] = plane
-        self.sheet.stamp(whole, role)
+    def _stamp(self, plane: Plane, role: Role) -> None:
+        self.sheet.stamp(plane, role, 0, 1)
 
-    def _plane(self) -> np.ndarray:
+    def _plane(self) -> Plane:
         return np.zeros((self.size[1], self.size[0]), dtype=np.bool_)
 
     def _cross(self) -> None:
@@ -152,10 +153,15 @@ class _Sheet:
     def _circle(self, centre: Point, radius: float, role: Role, gaps: int) -> None:
         x, y = (float(one) for one in self.at(*centre))
         dots = radius * self.per_metre
-        if isfinite(dots) and isfinite(x) and isfinite(y):
+        if not (isfinite(dots) and isfinite(x) and isfinite(y)):
+            return
+
+        def drawn() -> Plane:
             plane = self._plane()
             ring(plane, (x, y), (dots, dots / self.squash), gaps=gaps)
-            self._stamp(plane, role)
+            return plane
+
+        self._stamp(self.kept.plane((role, self.size, x, y, dots), drawn), role)
 
     def _evidence(self, view: PlanView, one: Standing | Station) -> None:
         expected = (one.expected_east, one.expected_north)

@@ -49,23 +49,16 @@ class Strip(CellWidget):
             plane = self._plane(across, up)
             runs = Runs.of(place)
             if runs.length:
-                keep = np.r_[runs.starts, place.size - 1]
+                keep = np.append(runs.starts, place.size - 1)
                 polyline(plane, place[keep], up.dot(rows.column(name)[begin:][keep]))
-            self._put(sheet, rhythm(plane, *dash, upright=False) if dash else plane, role)
+            sheet.stamp(rhythm(plane, *dash, upright=False) if dash else plane, role, _GUTTER, 1)
         plane = self._plane(across, up)
         trace(plane, Runs.of(place), place, up.dot(size), upright=False)
-        self._put(sheet, plane, Role.MEASURED)
+        sheet.stamp(plane, Role.MEASURED, _GUTTER, 1)
 
     @staticmethod
     def _plane(across: Axis, up: Axis) -> np.ndarray:
         return np.zeros((up.dots, across.dots), dtype=np.bool_)
-
-    @staticmethod
-    def _put(sheet: Raster, plane: np.ndarray, role: Role) -> None:
-        whole = sheet.plane()
-        down, left = sheet.glyphs.down, _GUTTER * sheet.glyphs.across
-        whole[down : down + plane.shape[0], left : left + plane.shape[1]] = plane
-        sheet.stamp(whole, role)
 
     def _labels(self, sheet: Raster, top: float) -> None:
         sheet.text(0, 0, f"residual mm, last {self.minutes:g} min", Role.STRONG)
