@@ -49,6 +49,8 @@ class SiteFile:
     links: tuple[LinkSettings, ...]
     given: frozenset[str]
     """The keys that stand in the file, as "section.key"; all others are defaults."""
+    notes: tuple[str, ...] = ()
+    """What a reader of the answer must know of the site's own statements on that day."""
 
 
 def load_site(path: Path, *, on: date | None = None) -> SiteFile:
@@ -59,7 +61,7 @@ def load_site(path: Path, *, on: date | None = None) -> SiteFile:
     path : Path
         The file.
     on : date, optional
-        The day of the run, for the magnetic declination; today by default.
+        The day of the run, for the magnetic declination and the age of the calibration; today by default.
 
     Raises
     ------
@@ -90,7 +92,7 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
     source : str
         What to call it in messages.
     on : date, optional
-        The day of the run, for the magnetic declination; today by default.
+        The day of the run, for the magnetic declination and the age of the calibration; today by default.
 
     Raises
     ------
@@ -115,6 +117,7 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
         raise place.error(path, _at(tree, path), error.expected) from error
     links = tuple(_link(one) for one in document.link)
     _check_columns(assumptions, links, place)
+    notes = _calibration_notes(assumptions, place, on)
     return SiteFile(
         path=source,
         text=text,
@@ -123,6 +126,7 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
         given=frozenset(
             f"{section}.{key}" for section, keys in tree.items() if section != "link" for key in keys
         ),
+        notes=notes,
     )
 
 
@@ -277,6 +281,27 @@ def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], pl
             wanted = " or ".join(group)
             kind = assumptions.run.kind
             raise place.error("link.columns", sorted(present), f"{wanted} among them in a {kind} run")
+
+
+def _calibration_notes(assumptions: Assumptions, place: _Place, on: date | None) -> tuple[str, ...]:
+    """Point out a calibration that is too old on the day of the run, or lies in its future."""
+    instrument = assumptions.instrument
+    if not instrument.calibrated_on:
+        return ()
+    try:
+        calibrated = date.fromisoformat(instrument.calibrated_on)
+    except ValueError as error:
+        raise place.error(
+            "instrument.calibrated_on", instrument.calibrated_on, "a date of the calendar, such as 2026-03-01"
+        ) from error
+    age = ((on or date.today()) - calibrated).days  # noqa: DTZ011 (a day, not an instant)
+    if age < 0:
+        return (f"calibrated on {calibrated}, which is {-age} days after this run",)
+    if age > instrument.calibration_valid_days:
+        return (
+            f"calibration is {age} days old ({calibrated}); it was good for {instrument.calibration_valid_days:g}",
+        )
+    return ()
 
 
 def _with_true_north(assumptions: Assumptions, place: _Place, on: date | None) -> Assumptions:

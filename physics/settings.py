@@ -14,6 +14,22 @@ Kind = Literal["guided", "hung", "drop"]
 Reference = Literal["straight", "field-line", "hung-line"]
 Method = Literal["average", "minimum-curvature"]
 North = Literal["true", "magnetic", "grid"]
+Taken = Literal["all", "still"]
+Cable = Literal["as-shown", "unloaded"]
+AlarmName = Literal[
+    "action limit",
+    "warning limit",
+    "wall clearance",
+    "feed silent",
+    "bad lines",
+    "depth jump",
+    "tilt at end of range",
+    "tilt frozen",
+    "spinning",
+    "probe temperature",
+    "supply low",
+    "link lost",
+]
 
 ARCSECOND = pi / 648000.0
 DEGREE = pi / 180.0
@@ -109,6 +125,42 @@ class Run(_Checked):
     kind: Kind
     reference: Reference = "straight"
     station_every: float = 10.0
+    hold: float = 5.0
+    """A probe that rests for so long closes a station of its own [s]."""
+
+    def __post_init__(self) -> None:
+        _Checked.__post_init__(self)
+        _refuse_unless(self.hold > 0.0, "hold", self.hold, "s", "more than 0 s")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Depth(_Checked):
+    """How true depth follows from the depth shown, and what the counter may not do."""
+
+    scale: float = 1.0
+    """True metres in a metre shown."""
+    offset: float = 0.0
+    """True depth where the counter shows nothing [m]."""
+    marks: tuple[tuple[float, float], ...] = ()
+    """(true [m], shown [m]) of marks on the line; given, they replace scale and offset."""
+    cable: Cable = "as-shown"
+    """"unloaded": the counter shows the slack length of `Line`, which its load and the rock's warmth lengthen."""
+    max_speed: float = 30.0
+    """A depth that changes faster has jumped [m/s]."""
+    max_acceleration: float = 5.0
+    """A depth whose speed changes faster has jumped [m/s²]."""
+    u_offset: float = 0.0
+    """Of all depths alike [m]; what grows with depth is `Instrument.u_depth_fraction`."""
+
+    def __post_init__(self) -> None:
+        _Checked.__post_init__(self)
+        _refuse_unless(self.scale > 0.0, "scale", self.scale, "", "more than 0")
+        for name in ("max_speed", "max_acceleration"):
+            _refuse_unless(getattr(self, name) > 0.0, name, getattr(self, name), "", "more than 0")
+        rising = [sorted(set(one)) == list(one) for one in zip(*self.marks, strict=True)]
+        _refuse_unless(all(rising), "marks", self.marks, "m", "true and shown depths that both rise")
+        alone = self.scale == 1.0 and self.offset == 0.0
+        _refuse_unless(not self.marks or alone, "marks", self.marks, "m", "no scale or offset beside them")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -122,7 +174,18 @@ class Guide(_Checked):
     end_east: float | None = None
     end_north: float | None = None
     """Known offset of the deepest station; given, the misclosure is distributed over depth."""
+    u_end: float = 0.001
+    """Of the known end offset, each axis [m]."""
     method: Method = "average"
+    readings: Taken = "all"
+    """Which readings are summed: every one, or only the means taken at rest."""
+
+    def __post_init__(self) -> None:
+        _Checked.__post_init__(self)
+        both = (self.end_east is None) == (self.end_north is None)
+        _refuse_unless(
+            both, "end_east" if self.end_east is None else "end_north", None, "m", "both ends or none"
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -157,7 +220,7 @@ class Body(_Checked):
     """Of each horizontal coordinate of the release [m]."""
     u_release_speed: float = 0.002
     """Of each horizontal component of the release velocity [m/s]."""
-    u_drag_fraction: float = 0.05
+    u_drag_fraction: float = 0.1
     """Relative, of the drag coefficient."""
 
 
@@ -208,6 +271,15 @@ class Instrument(_Checked):
     reference_temperature: float = 293.15
     calibrated_on: str = ""
     """ISO date; empty if unknown."""
+    calibration_valid_days: float = 365.0
+    """A calibration older than this is pointed out."""
+    range: float | None = None
+    """Largest tilt that an axis can show [rad]; readings there are left aside."""
+    lowest_temperature: float | None = None
+    highest_temperature: float | None = None
+    """Of the probe, as its maker allows [K]."""
+    lowest_supply: float | None = None
+    """[V]."""
     u_tilt: float = 0.002 * DEGREE
     u_zero: float = 0.001 * DEGREE
     u_scale: float = 0.001
@@ -234,12 +306,18 @@ class Limits(_Checked):
     off_delay: float = 3.0
     dead_band: float = 0.002
     feed_silent: float = 5.0
+    bad_lines_per_minute: float = 30.0
+    """So many unreadable lines within a minute are an alarm."""
+    spin: float = 30.0 * DEGREE
+    """Faster turning of the probe about its own axis is an alarm [rad/s]."""
+    frozen: float = 2.0
+    """Both tilts the same to the last digit for so long on a moving line are an alarm [s]."""
+    latching: tuple[AlarmName, ...] = ("depth jump",)
+    """Alarms that stay until somebody acknowledges them."""
 
     def __post_init__(self) -> None:
         _Checked.__post_init__(self)
-        _refuse_unless(
-            self.warning <= self.action, "warning", self.warning, "m", "at most the action limit"
-        )
+        _refuse_unless(self.warning <= self.action, "warning", self.warning, "m", "at most the action limit")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -249,6 +327,7 @@ class Assumptions:
     site: Site
     shaft: Shaft
     run: Run
+    depth: Depth = field(default_factory=Depth)
     guide: Guide = field(default_factory=Guide)
     line: Line = field(default_factory=Line)
     body: Body | None = None

@@ -221,13 +221,50 @@ def test_every_key_has_help_and_a_default_that_its_own_range_accepts():
 
 @pytest.mark.invariant
 @given(
-    st.sampled_from([one for one in sitekeys.all_keys() if one.unit and one.low is not None]), st.floats(0.0, 1.0)
+    st.sampled_from([one for one in sitekeys.all_keys() if one.unit and one.low is not None]),
+    st.floats(0.0, 1.0),
 )
 def test_units_convert_to_si_and_back(key, share):
     """A number goes to SI and back to the same 12 digits."""
     value = key.low + share * (key.high - key.low)
     back = sitekeys.from_si(key.name, sitekeys.to_si(key.name, value))
     assert back == pytest.approx(value, rel=1e-11, abs=1e-9)
+
+
+CALIBRATED = LEAST + '[instrument]\ncalibrated_on = "2025-03-01"\n'
+
+
+@pytest.mark.parametrize(
+    ("on", "note"),
+    [
+        (date(2026, 3, 1), None),
+        (date(2026, 3, 2), "calibration is 366 days old"),
+        (date(2025, 2, 27), "which is 2 days after this run"),
+    ],
+)
+def test_an_old_calibration_is_pointed_out_on_the_day_of_the_run(on, note):
+    """365 days by default: the 366th gives a note, as does a calibration that lies in the run's future."""
+    notes = parse_site(CALIBRATED, "old.toml", on=on).notes
+    assert (len(notes) == 0) if note is None else note in notes[0]
+
+
+def test_a_day_that_is_not_in_the_calendar_is_refused():
+    """2025-02-30 looks like a date and is none."""
+    text = CALIBRATED.replace("03-01", "02-30")
+    with pytest.raises(SiteFileError, match=r"old.toml, line \d+: instrument.calibrated_on is '2025-02-30'"):
+        parse_site(text, "old.toml")
+
+
+def test_depth_marks_and_latching_alarms_reach_the_settings():
+    """Pairs of true and shown depth, and names of alarms, as given; a wrong name is refused with those there are."""
+    text = LEAST + '[depth]\nmarks = [[100.0, 100.42]]\n[limits]\nlatching = ["spinning"]\n'
+    given = parse_site(text, "marks.toml").assumptions
+    assert given.depth.marks == ((100.0, 100.42),)
+    assert given.limits.latching == ("spinning",)
+    with pytest.raises(SiteFileError, match=r"limits.latching\[0\] is 'spining'; expected"):
+        parse_site(text.replace('"spinning"', '"spining"'), "marks.toml")
+    with pytest.raises(SiteFileError, match=r"marks is .*no scale or offset beside them"):
+        parse_site(text.replace("marks =", "scale = 1.01\nmarks ="), "marks.toml")
 
 
 @pytest.mark.invariant
