@@ -7,6 +7,7 @@ from typing import Any
 import numpy as np
 
 from eastfall.io.errors import SiteFileError
+from eastfall.io.safetext import safe
 from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.settings import Assumptions
 
@@ -89,7 +90,7 @@ def predict(assumptions: Assumptions, at: list[float]) -> Prediction:
         shape=shape,
         rows=(names, [list(one.values()) for one in stations]),
         heading=(
-            f"{assumptions.site.name or 'unnamed site'}: {kind} run{running}; offsets in mm from "
+            f"{safe(assumptions.site.name) or 'unnamed site'}: {kind} run{running}; offsets in mm from "
             f"{REFERENCE_LINES[assumptions.run.reference]}; u is the standard uncertainty"
         ),
         notes=notes,

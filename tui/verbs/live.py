@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 import click
 
+from eastfall.physics.errors import EastfallError
 from eastfall.tui.verbs.options import an_input, into
 
 if TYPE_CHECKING:
@@ -89,10 +90,10 @@ def record(
     """
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
-    run = _open_run(load_site(site), links, into, _cleared(load_site(site), shaft_clear))
-    click.echo(run.log_path)
-    sys.stdout.flush()
-    with _signals() as stopped, run:
+    loaded = load_site(site)
+    with _recorded(loaded, links, into, _cleared(loaded, shaft_clear)) as run, _signals() as stopped, run:
+        click.echo(run.log_path)
+        sys.stdout.flush()
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
             _tell(run.step(_STEP))
@@ -104,8 +105,8 @@ def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
     """Open the dashboard on a new run, and print the log's path when it has ended."""
     from eastfall.tui.app import run_live  # noqa: PLC0415 (the screen library only where a screen opens)
 
-    run = _open_run(site, links, folder, None)
-    status = run_live(site, run=run, curve=run.pipeline.survey.curve)
+    with _recorded(site, links, folder, None) as run:
+        status = run_live(site, run=run, curve=run.pipeline.survey.curve)
     click.echo(run.log_path)
     click.get_current_context().exit(status)
 
@@ -123,9 +124,8 @@ def _plainly(
 ) -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    run = _open_run(site, links, folder, _cleared(site, shaft_clear))
     lines = PlainLines(click.echo, site.assumptions.run.kind)
-    with _signals() as stopped, run:
+    with _recorded(site, links, folder, _cleared(site, shaft_clear)) as run, _signals() as stopped, run:
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
             lines.take(run.step(_STEP))
@@ -134,23 +134,27 @@ def _plainly(
     click.echo(run.log_path)
 
 
-def _open_run(site: "SiteFile", links: tuple[str, ...], folder: Path, cleared_by: str | None) -> "Run":
-    """Start a log and a run over it; nothing is opened yet but the log."""
+@contextmanager
+def _recorded(
+    site: "SiteFile", links: tuple[str, ...], folder: Path, cleared_by: str | None
+) -> Iterator["Run"]:
+    """Give a run, not yet started, over a new log; a run that never began leaves no empty log behind."""
     from eastfall.io.run import Run  # noqa: PLC0415
     from eastfall.io.runlog import RunLogWriter  # noqa: PLC0415
 
     log = RunLogWriter.create(folder, site, started_at=datetime.now(UTC))
+    run = None
     try:
         run = Run(site, links=links or None, log=log)
-    except Exception:
-        # A run that never began leaves no empty log behind.
+        if cleared_by:
+            run.arm(cleared_by)
+        yield run
+    except EastfallError:
         log.close(0.0)
-        with suppress(OSError):
-            log.path.unlink()
+        if run is None or run.pipeline.frames + run.pipeline.rejected == 0:
+            with suppress(OSError):
+                log.path.unlink()
         raise
-    if cleared_by:
-        run.arm(cleared_by)
-    return run
 
 
 def _cleared(site: "SiteFile", name: str | None) -> str | None:
