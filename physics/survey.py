@@ -70,7 +70,8 @@ class Survey:
         }
         self._edge_alarms: dict[str, Alarm] = {SILENT: Alarm(Rule(name=SILENT))}
         self._messages: dict[str, str] = {}
-        self._feed_watched = feed_watched
+        # Between the bodies of a drop series the feed is silent by nature.
+        self._feed_watched = feed_watched and assumptions.run.kind != "drop"
         self._stations: dict[int, Station] = {}
         self._changes: list[AlarmChange] = []
         self._frames = 0

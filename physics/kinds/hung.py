@@ -9,6 +9,7 @@ from eastfall.physics import swing
 from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
+from eastfall.physics.hung import single_swing
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
@@ -38,6 +39,8 @@ _LATER = 0.02
 uncertainty shrinks no faster, and the cost of an hour stays bounded."""
 _SETTLED = 2.0
 """A line that runs on sooner than this has made no halt [s]."""
+_BY_HAND = 10.0
+"""Readings at least this far apart are taken by hand, from a bob that a person saw at rest [s]."""
 _QUIET = 3.0
 """Readings that scatter by less than this many times their own uncertainty show a bob at rest."""
 
@@ -47,6 +50,7 @@ class _Level:
 
     def __init__(self, depth: float, time: float, tracker: swing.RestPointTracker) -> None:
         self.depth = depth
+        self.single_swing = float(single_swing(depth))
         self.tracker = tracker
         self.began = self.time = time
         self.due = time + _FIRST_ESTIMATE
@@ -56,6 +60,12 @@ class _Level:
         self.rest: swing.RestPoint | None = None
         self.direct = True
         self.expected: Array = np.zeros(2)
+
+    @property
+    def swing_seen(self) -> bool:
+        """Whether the readings can tell rest from swing: they span a single swing, or were taken by hand."""
+        dwelt = self.time - self.began
+        return not dwelt < self.single_swing or dwelt >= _BY_HAND * (self.count - 1)
 
     def mean(self) -> Array:
         """Return the mean of the readings, shape (2,) [m]."""
@@ -222,7 +232,9 @@ class Hung:
             return
         mean = sums[:2] / numbers
         spread = np.sqrt(np.maximum(sums[2:] / numbers - mean**2, 0.0))
-        quiet = (spread <= self._quiet(level)).all(axis=0)
+        dwelt = rows[ROW["time"]] - level.began
+        seen = ~(dwelt < level.single_swing) | ((dwelt >= _BY_HAND * (numbers - 1)) & (numbers > 1))
+        quiet = (spread <= self._quiet(level)).all(axis=0) & seen
         judged[:] = np.where(quiet, level.origin[:, None] + mean - level.expected[:, None], np.nan)
 
     def _quiet(self, level: _Level) -> float:
@@ -258,6 +270,9 @@ class Hung:
             # A swing that does not fit the model leaves only its scatter, all of it, to say where the rest is.
             u = np.maximum(scatter, self._random(level)) / (np.sqrt(level.count) if quiet else 1.0)
             name = "readings" if quiet else "swing not resolved"
+            if not level.swing_seen:
+                # A few readings near a turning point look like rest; nothing is known of the rest point yet.
+                u, name = np.full(2, np.nan), "swing not seen yet"
         names, parts = self._systematic(level, position)
         budget = self._curve.budget
         return (

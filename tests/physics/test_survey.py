@@ -320,6 +320,20 @@ def test_a_swinging_bob_is_known_at_rest_and_each_halt_is_one_station(shaft):
     assert result.rest_point.period == pytest.approx(2.0 * np.pi * np.sqrt(60.0 / G), rel=2e-3)
 
 
+def test_a_few_readings_near_a_turning_point_do_not_pass_for_rest(shaft):
+    """80 mm of swing on 80 m of line: 3 s about its turning point raise nothing and leave it undecided."""
+    time = np.arange(0.0, 60.0, 0.1)
+    east = 0.08 * np.cos(np.sqrt(G / 80.0) * time)
+    readings = Readings.of(time=time, depth=np.full(time.size, 80.0), east=east, north=np.zeros(time.size))
+    survey = Survey(shaft("hung", depth=90.0, limits=Limits(on_delay=0.0)))
+    survey.feed(readings[:30])
+    assert survey.standing().verdict == "undecided"
+    assert survey.result().alarms == ()
+    survey.feed(readings[30:])
+    assert survey.standing().verdict == "within"
+    assert survey.result().alarms == ()
+
+
 def test_hand_readings_of_a_still_bob_make_a_station_a_level(shaft):
     """One reading a level half a minute apart, or several at one level: stations of one and of three readings."""
     depth = np.array([10.0, 20.0, 30.0, 30.0, 30.0])
