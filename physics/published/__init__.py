@@ -3,7 +3,7 @@
 The values stand in the modules of this package, one per field; comparing them is left to whoever runs them.
 """
 
-from eastfall.physics.published import earth_and_fall, line_and_tilt
+from eastfall.physics.published import deciding, earth_and_fall, line_and_tilt
 from eastfall.physics.published.check import PublishedCheck
 
 __all__ = ["PublishedCheck", "published_checks"]
@@ -16,4 +16,4 @@ def published_checks() -> tuple[PublishedCheck, ...]:
     -------
     tuple of PublishedCheck
     """
-    return (*earth_and_fall.CHECKS, *line_and_tilt.CHECKS)
+    return (*earth_and_fall.CHECKS, *line_and_tilt.CHECKS, *deciding.CHECKS)
