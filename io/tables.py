@@ -1,6 +1,5 @@
 """The shapes that other programs rely on: plain dicts with units in their keys, millimetres, and null for absent."""
 
-from collections.abc import Mapping
 from math import isfinite
 from typing import Any
 
@@ -102,20 +101,4 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "alarms": [alarm_row(one) for one in result.alarms],
         "closure": closure_row(result.closure),
         "rest_point": rest_point_row(result.rest_point),
-    }
-
-
-def verification_row(reduction: Reduction) -> Mapping[str, Any] | None:
-    """Return what the seals say, as `verify` prints it."""
-    found = reduction.verification
-    if found is None:
-        return None
-    return {
-        "state": found.state,
-        "good_lines": found.good_lines,
-        "good_until_time_s": number(found.good_until_time),
-        "first_bad_line": found.first_bad_line,
-        "sealed": found.sealed,
-        "seal": found.seal,
-        "reason": found.reason,
     }

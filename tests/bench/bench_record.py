@@ -1,0 +1,212 @@
+"""Speed of the record, as ratios in one run: reduce of a sealed log, verify, memory, the writer's cost, the shelf.
+
+Run with `python tests/bench/bench_record.py [--lines 2000000]`; it prints one table. Every work is a process of its
+own, timed whole in CPU seconds, so that other work on the machine does not count.
+"""
+
+import argparse
+import os
+import shutil
+import subprocess
+import sys
+import tempfile
+import time
+from datetime import UTC, datetime
+from pathlib import Path
+
+import numpy as np
+
+from eastfall.io.arrivals import LineBlock, RunEvent
+from eastfall.io.runlog import RunLogWriter
+from eastfall.io.sitefile import SiteFile, parse_site
+
+SITE_TEXT = """\
+[site]
+name = "Bench"
+latitude_deg = 57.30
+[shaft]
+depth_m = 940.0
+[run]
+kind = "guided"
+[[link]]
+url = "-"
+"""
+RATE = 200
+LOADTXT = """
+import sys, numpy as np
+depth, a, b = np.loadtxt(sys.argv[1], delimiter=",", unpack=True)
+step = np.diff(depth)
+print(np.sum(step * np.sin(np.radians(a[1:]))), np.sum(step * np.sin(np.radians(b[1:]))))
+"""
+REDUCE = """
+import sys
+from pathlib import Path
+from eastfall.io.reduce import reduce_file
+found = reduce_file(Path(sys.argv[1]))
+assert found.seal_state == "intact", found.verification
+status = Path("/proc/self/status")
+lines = status.read_text().splitlines() if status.exists() else ["VmHWM: 0"]
+print(next(line.split()[1] for line in lines if line.startswith("VmHWM")))
+"""
+CAPTURE = """
+import sys
+from pathlib import Path
+from eastfall.io.reduce import reduce_file
+from eastfall.io.sitefile import load_site
+print(reduce_file(Path(sys.argv[1]), site=load_site(Path(sys.argv[2])), interval=0.005).frames)
+"""
+VERIFY = """
+import sys
+from pathlib import Path
+from eastfall.io.seal import verify_log
+assert verify_log(Path(sys.argv[1])).state == "intact"
+"""
+SHELF = """
+import sys
+from pathlib import Path
+from eastfall.io.shelf import list_runs
+if __name__ == "__main__":
+    cards = list_runs(Path(sys.argv[1]), judged=sys.argv[2] == "judged")
+    assert {one.state for one in cards} == {"intact"}
+    print(len(cards))
+"""
+
+
+def bench_site() -> SiteFile:
+    """Return the site of the benchmark."""
+    return parse_site(SITE_TEXT, "bench.toml")
+
+
+def make_lines(count: int) -> list[bytes]:
+    """Return lines of a probe that goes down and up once."""
+    rng = np.random.default_rng(7)
+    depth = 470.0 - 470.0 * np.cos(np.arange(count) * (2.0 * np.pi / count))
+    tilt = rng.normal(0.0, 0.02, (2, count))
+    return [b"%.3f,%.4f,%.4f" % row for row in zip(depth, tilt[0], tilt[1], strict=True)]
+
+
+def write_log(folder: Path, lines: list[bytes], batch: int) -> tuple[Path, float]:
+    """Record lines in batches as they would arrive; return the log and the CPU time of writing [s]."""
+    log = RunLogWriter.create(folder, bench_site(), started_at=datetime(2026, 1, 14, tzinfo=UTC))
+    begun = time.process_time()
+    for first in range(0, len(lines), batch):
+        some = lines[first : first + batch]
+        now = round(first / RATE, 6)
+        log.raw(LineBlock(data=b"\n".join(some) + b"\n", times=np.full(len(some), now), first_line=first + 1))
+        log.tick(now)
+    end = len(lines) / RATE
+    log.event(RunEvent(time=end, name="end"))
+    log.close(end)
+    return log.path, time.process_time() - begun
+
+
+def cost(script: str, *arguments: str) -> tuple[float, float, str]:
+    """Run a script; return its CPU time [s], the time on the clock [s], and what it said."""
+    begun = time.perf_counter()
+    process = subprocess.Popen(
+        [sys.executable, "-c", script, *arguments], stdout=subprocess.PIPE, text=True, start_new_session=True
+    )
+    assert process.stdout is not None
+    with process.stdout as out:
+        said = out.read()
+    _, status, usage = os.wait4(process.pid, 0)
+    process.returncode = status
+    assert status == 0, (arguments, status)
+    return usage.ru_utime + usage.ru_stime, time.perf_counter() - begun, said
+
+
+def measure(count: int, logs: int) -> list[tuple[str, str, str, str]]:
+    """Return the rows of the table: work, measured, yardstick, aim."""
+    with tempfile.TemporaryDirectory() as name:
+        folder = Path(name)
+        (folder / "site.toml").write_text(SITE_TEXT, encoding="utf-8")
+        lines = make_lines(count)
+        bare = folder / "bare.csv"
+        bare.write_bytes(b"\n".join(lines) + b"\n")
+        single, spent = write_log(folder / "single", lines, 1)
+        batched, _ = write_log(folder / "batched", lines, 4)
+        return [
+            *_reductions(folder, bare, single, batched),
+            _writing(count, spent),
+            *_memory(folder, lines),
+            *_shelf(folder, lines, logs),
+        ]
+
+
+def _best(script: str, *arguments: str) -> tuple[float, float, str]:
+    return min((cost(script, *arguments) for _ in range(3)), key=lambda one: one[0])
+
+
+def _reductions(folder: Path, bare: Path, single: Path, batched: Path) -> list[tuple[str, str, str, str]]:
+    script = _best(LOADTXT, str(bare))[0]
+    works = (
+        ("reduce a capture", _best(CAPTURE, str(bare), str(folder / "site.toml"))[0], "1.5"),
+        ("reduce a sealed log, 1 line a record", _best(REDUCE, str(single))[0], "2.5"),
+        ("reduce a sealed log, 4 lines a record", _best(REDUCE, str(batched))[0], "2.5"),
+        ("verify a sealed log", _best(VERIFY, str(single))[0], "-"),
+    )
+    return [
+        (what, f"{spent:.2f} s", f"{spent / script:.2f} of loadtxt ({script:.2f} s)", aim)
+        for what, spent, aim in works
+    ]
+
+
+def _writing(count: int, spent: float) -> tuple[str, str, str, str]:
+    share = 100.0 * RATE * spent / count
+    return (
+        "record 200 lines a second",
+        f"{1e6 * spent / count:.1f} µs a line",
+        f"{share:.2f} % of a core",
+        "2 %",
+    )
+
+
+def _memory(folder: Path, lines: list[bytes]) -> list[tuple[str, str, str, str]]:
+    small, _ = write_log(folder / "small", lines[: len(lines) // 10], 1)
+    large, _ = write_log(folder / "large", lines, 1)
+    # the process itself says its peak: what the system counts begins with the memory of the process that started it
+    peaks = [int(cost(REDUCE, str(one))[2]) / 1024 for one in (small, large)]
+    return [
+        ("memory for ten times the log", f"{peaks[1]:.0f} MB", f"{peaks[0]:.0f} MB for one tenth", "flat")
+    ]
+
+
+def _shelf(folder: Path, lines: list[bytes], logs: int) -> list[tuple[str, str, str, str]]:
+    shelf = folder / "shelf"
+    first, _ = write_log(shelf, lines[:: max(1, len(lines) // 2400)], 1)
+    for number in range(logs - 1):
+        shutil.copy(first, shelf / f"run-{number:04d}.eastfall.jsonl")
+    rows = []
+    for how in ("plain", "judged"):
+        script = folder / "shelf.py"  # other processes are started from a file, not from a command line
+        script.write_text(SHELF, encoding="utf-8")
+        spent, clock, _ = cost(
+            f"import runpy; runpy.run_path({str(script)!r}, run_name='__main__')", str(shelf), how
+        )
+        rows.append((f"list {logs} logs, {how}", f"{clock:.1f} s", f"{spent:.1f} s CPU", "a few s"))
+    return rows
+
+
+def test_a_sealed_log_is_reduced_within_its_ratio() -> None:
+    """A short version: the ratios of the table hold for 200,000 lines, start-up of the process left out of both."""
+    with tempfile.TemporaryDirectory() as name:
+        folder = Path(name)
+        lines = make_lines(200_000)
+        bare = folder / "bare.csv"
+        bare.write_bytes(b"\n".join(lines) + b"\n")
+        log, _ = write_log(folder / "log", lines, 1)
+        empty, _ = write_log(folder / "empty", lines[:200], 1)
+        few = folder / "few.csv"
+        few.write_bytes(b"\n".join(lines[:200]) + b"\n")
+        script = _best(LOADTXT, str(bare))[0] - _best(LOADTXT, str(few))[0]
+        reduced = _best(REDUCE, str(log))[0] - _best(REDUCE, str(empty))[0]
+    assert reduced < 2.5 * script, (reduced, script)
+
+
+if __name__ == "__main__":
+    parser = argparse.ArgumentParser(description=__doc__)
+    parser.add_argument("--lines", type=int, default=2_000_000)
+    parser.add_argument("--logs", type=int, default=1000)
+    options = parser.parse_args()
+    for row in measure(options.lines, options.logs):
+        print("{:<40} {:>16}  {:<32} aim {}".format(*row))
