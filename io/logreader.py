@@ -23,6 +23,7 @@ from eastfall.io.logformat import (
     read_header,
 )
 from eastfall.io.rawlines import plain_lines
+from eastfall.io.safetext import safe
 from eastfall.io.seal import CHUNK, SealScan, Verification, beside, combined, first_part, judge, opened
 from eastfall.io.sitefile import SiteFile, parse_site
 
@@ -88,7 +89,13 @@ class LogReader:
     @property
     def started_at(self) -> datetime:
         """Start of the run, UTC."""
-        return datetime.fromisoformat(self.header.started_at)
+        try:
+            return datetime.fromisoformat(self.header.started_at)
+        except ValueError as cause:
+            shown = safe(self.header.started_at, 40)
+            raise LogError(
+                f"{self.path}, line 1: started_at is {shown!r}; expected a date and time"
+            ) from cause
 
     def site(self) -> SiteFile:
         """Return the settings that the run was recorded with.

@@ -9,7 +9,7 @@ from eastfall.physics import swing
 from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
-from eastfall.physics.hung import single_swing
+from eastfall.physics.hung import free_period, single_swing
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
@@ -183,9 +183,14 @@ class Hung:
 
     def _new_level(self, row: Array) -> _Level:
         depth, time = float(row[ROW["depth"]]), float(row[ROW["time"]])
-        field = self._curve.models.field
+        field, air = self._curve.models.field, self._curve.models.air
+        density = float(air.density(depth)) if air is not None else 0.0
+        # The wire's own weight makes a line swing faster than its length alone would.
+        period = (
+            float(free_period(self._assumptions.line, depth, field.gravity, density)) if depth > 0.0 else None
+        )
         tracker = swing.RestPointTracker(
-            latitude=field.latitude, length=max(depth, 0.0), gravity=field.gravity
+            latitude=field.latitude, length=max(depth, 0.0), gravity=field.gravity, period=period
         )
         level = _Level(depth, time, tracker)
         level.expected = row[[ROW["expected_east"], ROW["expected_north"]]]
