@@ -226,8 +226,15 @@ def run_replay(
         When this terminal has no screen, or the record cannot be read.
     """
     look = terminal_look() | ({"theme": theme} if theme else {})
+    session = replay_session(replay, curve)
+    app = watch_app(session, **look)
+    return _shown(app, ReplayFeed(replay, app.take, speed=speed, now=since_start(replay)))
+
+
+def replay_session(replay: "Replay", curve: "ExpectedCurve | None" = None) -> Session:
+    """Return what is known of a recorded run before its first reading."""
     bob, fall = curves_of(curve or replay.pipeline.survey.curve)
-    session = Session(
+    return Session(
         assumptions=replay.site.assumptions,
         mode="replay",
         title=safe(replay.site.assumptions.site.name),
@@ -235,11 +242,9 @@ def run_replay(
         fall=fall,
         differences=tuple(f"{one.key} {one.used} (recorded {one.recorded})" for one in replay.differences),
     )
-    app = watch_app(session, **look)
-    return _shown(app, ReplayFeed(replay, app.take, speed=speed, now=_since_start(replay)))
 
 
-def _since_start(replay: "Replay") -> Callable[[], float] | None:
+def since_start(replay: "Replay") -> Callable[[], float] | None:
     """Return a clock that tells the seconds since a run that is still being recorded started; None for any other."""
     started = replay.recording.started_at
     if not replay.follow or started is None:
