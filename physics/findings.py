@@ -72,6 +72,17 @@ class Share:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Halt:
+    """What a probe showed while it rested: robust mean of its slope, scatter of single readings, both in m/m."""
+
+    east: float
+    north: float
+    scatter_east: float
+    scatter_north: float
+    seconds: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Station:
     """A closed station: measured, expected, and what follows; lengths in metres, offsets east and north."""
 
@@ -96,6 +107,18 @@ class Station:
     """What the uncertainty comes from."""
     parts: tuple[tuple[float, float], ...] = ()
     """Standard uncertainty from each input alone, east and north [m]."""
+    halt: Halt | None = None
+    """The readings at rest that a still station was closed from."""
+    face: float | None = None
+    """In which face the probe was, 0 or pi [rad]; None where the readings do not say."""
+    lean: float | None = None
+    """Length of the residual's change from the station before in the same pass, a metre of depth [m/m]."""
+    u_lean: float | None = None
+    lean_verdict: Verdict | None = None
+    clearance: float | None = None
+    """From where this station is to the shaft wall [m]."""
+    u_clearance: float | None = None
+    clearance_verdict: Verdict | None = None
 
     @property
     def residual_east(self) -> float:
@@ -138,6 +161,67 @@ class Closure:
     expected_east: float
     expected_north: float
     """What the moving line alone would leave."""
+
+    @property
+    def misclosure_east(self) -> float:
+        """What the moving line does not explain [m]."""
+        return self.east - self.expected_east
+
+    @property
+    def misclosure_north(self) -> float:
+        """What the moving line does not explain [m]."""
+        return self.north - self.expected_north
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FaceSums:
+    """Readings in two faces, paired by depth; one entry a depth, angles in radians."""
+
+    depth: tuple[float, ...]
+    sum_a: tuple[float, ...]
+    sum_b: tuple[float, ...]
+    """Reading in face 0 plus reading in face 180, freed from the lean of the moving line and the stated zeros."""
+    suspect: tuple[bool, ...]
+    """Whether either sum stands apart from the others."""
+    mean_a: float
+    mean_b: float
+    spread_a: float
+    spread_b: float
+    zero_a: float
+    zero_b: float
+    """What is left of the zero offsets after the stated ones [rad]; NaN from fewer than two good pairs."""
+    u_zero_a: float
+    u_zero_b: float
+    unpaired: int
+    """Depths seen in one face only."""
+
+    @property
+    def suspect_depths(self) -> tuple[float, ...]:
+        """Depths whose sums stand apart [m]."""
+        return tuple(z for z, one in zip(self.depth, self.suspect, strict=True) if one)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Best:
+    """The best estimate of the residual at a depth from all passes and a known end; lengths in metres."""
+
+    depth: float
+    east: float
+    north: float
+    u_east: float
+    u_north: float
+    warning: float
+    action: float
+    verdict: Verdict
+    passes: int
+    apart_east: float
+    apart_north: float
+    """Up pass, tied at the shallowest common station, less down pass; 0 from one pass."""
+    tied: bool
+    """Whether the misclosure at a known end was distributed over depth."""
+    inputs: tuple[str, ...] = ()
+    parts: tuple[tuple[float, float], ...] = ()
+    """Standard uncertainty from each input alone, east and north [m]."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -225,3 +309,8 @@ class Result:
     alarms: tuple[AlarmChange, ...]
     closure: Closure | None
     rest_point: RestPoint | None
+    faces: FaceSums | None = None
+    best: tuple[Best, ...] = ()
+    """By depth; empty where one pass without a known end is all there is."""
+    notes: tuple[str, ...] = ()
+    """What a reader must know of the answer."""
