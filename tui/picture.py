@@ -92,7 +92,7 @@ def main() -> None:
     )
     parser.add_argument("out", type=Path)
     parser.add_argument("--kind", choices=get_args(Kind), default="guided")
-    parser.add_argument("--at", type=float, default=200.0, help="seconds of the instrument's clock")
+    parser.add_argument("--at", type=float, default=225.0, help="seconds of the instrument's clock")
     parser.add_argument("--size", default="120x40")
     parser.add_argument("--theme", choices=[one.name for one in THEMES], default=DARK.name)
     given = parser.parse_args()

@@ -6,6 +6,7 @@ A plane is a boolean array of dots, row 0 at the top. Curves come in dot coordin
 import unicodedata
 from collections.abc import Callable, Hashable
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Literal, Self
 
 import numpy as np
@@ -15,6 +16,7 @@ from eastfall.tui.roles import Role
 
 Floats = NDArray[np.float64]
 Plane = NDArray[np.bool_]
+Packed = NDArray[np.uint16]
 
 _BLANK = ord(" ")
 _BRAILLE_WEIGHTS = np.array([[1, 8], [2, 16], [4, 32], [64, 128]], dtype=np.uint16)
@@ -132,10 +134,11 @@ class Cells:
         return ["".join(map(chr, row)).replace(chr(FILLER), "") for row in self.chars]
 
 
-def columns(words: str) -> list[int]:
+@lru_cache(maxsize=4096)
+def columns(words: str) -> NDArray[np.int32]:
     """Return one code point a column: a wide letter takes two, what has no width or is a control is made plain."""
     if words.isascii() and words.isprintable():
-        return list(words.encode())
+        return np.frombuffer(words.encode(), dtype=np.uint8).astype(np.int32)
     codes: list[int] = []
     for one in words:
         if unicodedata.category(one) in {"Mn", "Me"}:
@@ -143,7 +146,7 @@ def columns(words: str) -> list[int]:
         codes.append(ord(one) if one.isprintable() else _UNPRINTABLE)
         if unicodedata.east_asian_width(one) in "WF":
             codes.append(FILLER)
-    return codes
+    return np.array(codes, dtype=np.int32)
 
 
 class Raster:
@@ -179,12 +182,19 @@ class Raster:
         column, row : int
             The cell of its upper left corner.
         """
+        self.put(self.packed(plane), role, column, row)
+
+    def packed(self, plane: Plane) -> Packed:
+        """Return a plane as one number a cell, ready to be put."""
         down, across = self.glyphs.down, self.glyphs.across
-        height, width = plane.shape[0] // down, plane.shape[1] // across
-        blocks = plane.reshape(height, down, width, across)
-        bits = np.einsum("ijkl,jl->ik", blocks, self.glyphs.weights, dtype=np.uint16, casting="unsafe")
-        hit, part = bits > 0, (slice(row, row + height), slice(column, column + width))
-        self._bits[part] |= bits
+        blocks = plane.reshape(plane.shape[0] // down, down, plane.shape[1] // across, across)
+        return np.einsum("ijkl,jl->ik", blocks, self.glyphs.weights, dtype=np.uint16, casting="unsafe")
+
+    def put(self, packed: Packed, role: Role, column: int = 0, row: int = 0) -> None:
+        """Add a packed plane, as `stamp` does."""
+        hit = packed > 0
+        part = (slice(row, row + packed.shape[0]), slice(column, column + packed.shape[1]))
+        self._bits[part] |= packed
         self._cells.ink[part][hit] = role
         if self.glyphs.name == "ascii":
             self._letters[part][hit] = ord(_ASCII_OF_ROLE.get(role, "#"))
@@ -198,7 +208,7 @@ class Raster:
         """Write over whatever is there, leave out what falls outside, and return how many columns the words take."""
         codes = columns(words.translate(_IN_ASCII) if self.glyphs.name == "ascii" else words)
         shown = codes[max(0, -column) : max(0, self.width - column)]
-        if 0 <= row < self.height and shown:
+        if 0 <= row < self.height and len(shown):
             start = max(column, 0)
             self._letters[row, start : start + len(shown)] = shown
             self._cells.ink[row, start : start + len(shown)] = role
@@ -243,30 +253,34 @@ def segments(plane: Plane, x0: ArrayLike, y0: ArrayLike, x1: ArrayLike, y1: Arra
         return
     rows, columns = plane.shape
     ends = np.clip(ends[:, np.isfinite(ends).all(axis=0)], -_FAR, _FAR)
+    if not ends.size:
+        return
+    least, most = ends.min(axis=1), ends.max(axis=1)
+    if (least >= 0.0).all() and max(most[0], most[2]) < columns and max(most[1], most[3]) < rows:
+        _walk(plane, ends[:2], ends[2:] - ends[:2])
+        return
     enter_x, leave_x = _clip(ends[0], ends[2], columns - 1e-6)
     enter_y, leave_y = _clip(ends[1], ends[3], rows - 1e-6)
     enter = np.maximum(0.0, np.maximum(enter_x, enter_y))
     leave = np.minimum(1.0, np.minimum(leave_x, leave_y))
     seen = enter <= leave
-    _walk(plane, ends[:, seen], enter[seen], leave[seen])
+    start, step = ends[:2, seen], ends[2:, seen] - ends[:2, seen]
+    _walk(plane, start + enter[seen] * step, (leave - enter)[seen] * step)
 
 
-def _walk(plane: Plane, ends: Floats, enter: Floats, leave: Floats) -> None:
-    """Set the dots along clipped segments, one a dot of the longer axis."""
-    if not enter.size:
+def _walk(plane: Plane, start: Floats, step: Floats) -> None:
+    """Set the dots along segments inside the plane, from `start` by `step` (column, row): one a dot, lengthwise."""
+    if not start.size:
         return
-    x0, y0, x1, y1 = ends
-    from_x, from_y = x0 + enter * (x1 - x0), y0 + enter * (y1 - y0)
-    step_x, step_y = (leave - enter) * (x1 - x0), (leave - enter) * (y1 - y0)
-    count = np.maximum(np.abs(step_x), np.abs(step_y)).astype(np.intp) + 2
+    count = np.abs(step).max(axis=0).astype(np.intp) + 2
     index = np.repeat(np.arange(count.size), count)
     along = np.arange(index.size) - np.repeat(np.cumsum(count) - count, count)
-    part = along / (count[index] - 1)
-    column = (from_x[index] + part * step_x[index]).astype(np.intp)
-    row = (from_y[index] + part * step_y[index]).astype(np.intp)
-    np.minimum(row, plane.shape[0] - 1, out=row)
-    np.minimum(column, plane.shape[1] - 1, out=column)
-    plane[np.maximum(row, 0, out=row), np.maximum(column, 0, out=column)] = True
+    part = along / (count - 1)[index]
+    column, row = (start[:, index] + part * step[:, index]).astype(np.intp)
+    # Rounding may carry a clipped end a hair over the edge.
+    np.clip(row, 0, plane.shape[0] - 1, out=row)
+    np.clip(column, 0, plane.shape[1] - 1, out=column)
+    plane[row, column] = True
 
 
 def polyline(plane: Plane, x: ArrayLike, y: ArrayLike) -> None:
@@ -381,7 +395,7 @@ def _circle(radius: tuple[float, float], gaps: int) -> tuple[Floats, Floats]:
 
 
 class Kept:
-    """Planes that seldom change, kept by what they were drawn from.
+    """Packed planes that seldom change, kept by what they were drawn from.
 
     Parameters
     ----------
@@ -391,13 +405,13 @@ class Kept:
 
     def __init__(self, most: int = 48) -> None:
         self._most = most
-        self._planes: dict[Hashable, Plane] = {}
+        self._packed: dict[Hashable, Packed] = {}
 
-    def plane(self, key: Hashable, draw: Callable[[], Plane]) -> Plane:
-        """Return the plane of a key, drawn when it is not kept."""
-        found = self._planes.get(key)
+    def packed(self, key: Hashable, draw: Callable[[], Packed]) -> Packed:
+        """Return what belongs to a key, drawn when it is not kept."""
+        found = self._packed.get(key)
         if found is None:
-            if len(self._planes) >= self._most:
-                self._planes.clear()
-            found = self._planes[key] = draw()
+            if len(self._packed) >= self._most:
+                self._packed.clear()
+            found = self._packed[key] = draw()
         return found

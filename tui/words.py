@@ -132,7 +132,7 @@ def swing(rest: RestPoint | None) -> str:
     worst = COVERAGE_FACTOR * max(rest.u_east, rest.u_north)
     return (
         f"rest point {pair(rest.east, rest.north)} ± {mm(worst)} mm, "
-        f"period {rest.period:.2f} s, {rest.swings:.1f} swings seen"
+        f"period {rest.period:.2f} s, {rest.swings:.1f} full swings seen"
     )
 
 

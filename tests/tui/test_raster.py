@@ -201,4 +201,4 @@ def test_control_characters_never_become_cells() -> None:
 
 def test_wide_letter_takes_two_columns() -> None:
     """A letter that terminals draw two columns wide keeps what follows in its place."""
-    assert columns("鷹1") == [ord("鷹"), FILLER, ord("1")]
+    assert columns("鷹1").tolist() == [ord("鷹"), FILLER, ord("1")]

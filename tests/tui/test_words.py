@@ -86,7 +86,7 @@ def test_swing_that_does_not_fit_is_waited_for(standing: Make) -> None:
         swings=1.0, fits=False, message="half a swing seen",
     )  # fmt: skip
     assert words.steering(standing(rest_point=rest), "hung") == "Let it swing: half a swing seen."
-    assert words.swing(rest) == "rest point E +0.0 N +0.0 mm ± 2.0 mm, period 30.00 s, 1.0 swings seen"
+    assert words.swing(rest) == "rest point E +0.0 N +0.0 mm ± 2.0 mm, period 30.00 s, 1.0 full swings seen"
 
 
 def test_offsets_carry_sign_and_letter() -> None:

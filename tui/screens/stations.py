@@ -17,7 +17,7 @@ from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.table import LongTable, fixed
 
 ORDERS = ("time", "depth", "residual")
-_WIDTHS = (8, 4, 15, 15, 8, 6, 6, 9, 5)
+_WIDTHS = (7, 4, 13, 13, 8, 6, 6, 9, 4)
 HEAD = fixed(
     tuple(
         zip(

@@ -29,8 +29,9 @@ class AlarmList(CellWidget):
 
     def show(self, alarms: tuple[AlarmView, ...]) -> None:
         """Draw another list."""
-        self.alarms = alarms
-        self.redraw()
+        if alarms != self.alarms:
+            self.alarms = alarms
+            self.redraw()
 
     def draw(self, sheet: Raster) -> None:
         """Write the list under its title."""

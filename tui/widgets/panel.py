@@ -10,7 +10,7 @@ from eastfall.physics.findings import Rows
 from eastfall.physics.verdict import COVERAGE_FACTOR
 from eastfall.tui import sight as look
 from eastfall.tui.axes import Axis, around, label, symmetric
-from eastfall.tui.raster import Floats, Kept, Plane, Raster, Runs, polyline, rhythm, trace
+from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster, Runs, polyline, rhythm, trace
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve
 from eastfall.tui.store import Snapshot, last_pass
@@ -148,20 +148,24 @@ class Panel:
     def _plane(self) -> Plane:
         return np.zeros((self.depth.dots, self.axis.dots), dtype=np.bool_)
 
-    def _put(self, plane: Plane, role: Role) -> None:
+    @staticmethod
+    def _dashed(plane: Plane, role: Role) -> Plane:
         dash = _DASH.get(role)
-        self.sheet.stamp(rhythm(plane, *dash, upright=True) if dash else plane, role, self.column, 1)
+        return rhythm(plane, *dash, upright=True) if dash else plane
+
+    def _put(self, plane: Plane, role: Role) -> None:
+        self.sheet.stamp(self._dashed(plane, role), role, self.column, 1)
 
     def _still(self, role: Role, known_by: Hashable, draw: Callable[[Plane], None]) -> None:
         """Put a plane that stays as it is until the axes change, or what it is known by."""
 
-        def drawn() -> Plane:
+        def drawn() -> Packed:
             plane = self._plane()
             draw(plane)
-            return plane
+            return self.sheet.packed(self._dashed(plane, role))
 
         key = (role, self.which, known_by, self.depth, self.axis, self.view.sight.residual)
-        self._put(self.view.kept.plane(key, drawn), role)
+        self.sheet.put(self.view.kept.packed(key, drawn), role, self.column, 1)
 
     # -- curves ----------------------------------------------------------------------------------------------------
 

@@ -9,7 +9,7 @@ import numpy as np
 
 from eastfall.physics.findings import RestPoint, Standing, Station
 from eastfall.tui.axes import round_step
-from eastfall.tui.raster import Floats, Kept, Plane, Raster, polyline, ring, segments
+from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster, polyline, rhythm, ring, segments
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.words import mm
@@ -142,13 +142,15 @@ class _Sheet:
     def _cross(self) -> None:
         """Draw the lines north-south and east-west through the reference line."""
         x, y = (float(one) for one in self.at(0.0, 0.0))
-        plane = self._plane()
-        polyline(plane, [x, x], [0.0, self.size[1]])
-        plane[1::2] = False
-        across = self._plane()
-        polyline(across, [0.0, self.size[0]], [y, y])
-        across[:, 1::3] = across[:, 2::3] = False
-        self._stamp(plane | across, Role.DIM)
+
+        def drawn() -> Packed:
+            plane, across = self._plane(), self._plane()
+            polyline(plane, [x, x], [0.0, self.size[1]])
+            polyline(across, [0.0, self.size[0]], [y, y])
+            cross = rhythm(plane, 1, 1, upright=True) | rhythm(across, 1, 2, upright=False)
+            return self.sheet.packed(cross)
+
+        self.sheet.put(self.kept.packed((Role.DIM, self.size, x, y), drawn), Role.DIM, 0, 1)
 
     def _circle(self, centre: Point, radius: float, role: Role, gaps: int) -> None:
         x, y = (float(one) for one in self.at(*centre))
@@ -156,12 +158,12 @@ class _Sheet:
         if not (isfinite(dots) and isfinite(x) and isfinite(y)):
             return
 
-        def drawn() -> Plane:
+        def drawn() -> Packed:
             plane = self._plane()
             ring(plane, (x, y), (dots, dots / self.squash), gaps=gaps)
-            return plane
+            return self.sheet.packed(plane)
 
-        self._stamp(self.kept.plane((role, self.size, x, y, dots), drawn), role)
+        self.sheet.put(self.kept.packed((role, self.size, x, y, dots), drawn), role, 0, 1)
 
     def _evidence(self, view: PlanView, one: Standing | Station) -> None:
         expected = (one.expected_east, one.expected_north)
