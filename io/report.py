@@ -113,7 +113,7 @@ def report_html(
     view = reportview.view(reduction)
     return environment.get_template("report.html").render(
         v=view,
-        verdict=reduction.verdict or "",
+        verdict="undecided" if reduction.seal_state == "changed" else reduction.verdict or "",
         kind=run.kind,
         reference=REFERENCE_LINES[run.reference],
         figures=_figures(reduction),

@@ -70,6 +70,10 @@ def worst(stations: tuple[Station, ...]) -> Station:
     return max(stations, key=lambda one: residual(one) / one.action if isfinite(residual(one)) else -1.0)
 
 
+def _stations(count: int) -> str:
+    return "1 station" if count == 1 else f"{count} stations"
+
+
 def answer(reduction: Reduction) -> str:
     """Return the run's answer in one line."""
     stations = reduction.result.stations
@@ -80,12 +84,12 @@ def answer(reduction: Reduction) -> str:
         f"{_MM * residual(one):.1f} mm toward {toward(one.residual_east, one.residual_north)} at {one.depth:.1f} m "
         f"({one.direction}; action limit {_MM * one.action:.1f} mm there)"
     )
-    every = f"all {len(stations)} stations" if len(stations) > 1 else "the one station"
+    every = f"all {_stations(len(stations))}" if len(stations) > 1 else "the one station"
     count = {name: sum(s.verdict == name for s in stations) for name in ("over", "undecided", "within")}
     if count["over"]:
-        return f"OVER the action limit at {count['over']} of {len(stations)} station(s); farthest out {size}."
+        return f"OVER the action limit at {count['over']} of {_stations(len(stations))}; farthest out {size}."
     if count["undecided"]:
-        return f"UNDECIDED at {count['undecided']} of {len(stations)} station(s), none over; farthest out {size}."
+        return f"UNDECIDED at {count['undecided']} of {_stations(len(stations))}, none over; farthest out {size}."
     beyond = sum(residual(s) > s.warning for s in stations)
     warned = f"; {beyond} beyond the warning limit" if beyond else ""
     return f"WITHIN the action limit at {every}{warned}; farthest out {size}."
@@ -203,6 +207,10 @@ def closure(reduction: Reduction) -> str:
     )
 
 
+def _fading(decay: float) -> str:
+    return f"falling to 1/e in {decay:.0f} s" if isfinite(decay) else "without visible decay"
+
+
 def rest_point(reduction: Reduction) -> str | None:
     """Return where the swing comes to rest, in a sentence; None without one."""
     one = reduction.result.rest_point
@@ -212,7 +220,7 @@ def rest_point(reduction: Reduction) -> str | None:
     return (
         f"The bob comes to rest {mm(one.east)} mm east and {mm(one.north)} mm north of the reference line, "
         f"U {plain_mm(2 * one.u_east)} and {plain_mm(2 * one.u_north)} mm, from {float(one.swings):.1f} single "
-        f"swings of period {float(one.period):.2f} s, falling to 1/e in {float(one.decay):.0f} s.{fit}"
+        f"swings of period {float(one.period):.2f} s, {_fading(float(one.decay))}.{fit}"
     )
 
 

@@ -66,7 +66,7 @@ def test_every_section_is_there_with_its_numbers(page_text: str) -> None:
     """The printed page says answer, place, instrument, stations, closure, alarms and who, budget, formulas, seal."""
     page = _Page(page_text)
     for words in (
-        "OVER the action limit at 2 of 5 station(s)",
+        "OVER the action limit at 2 of 5 stations",
         "26.4 mm toward 81° at 30.5 m",
         "aid to judgement, not a safety device",
         "Nobody stays below a suspended or dropped load",
@@ -192,7 +192,7 @@ def test_the_answer_is_one_line_for_each_verdict() -> None:
         "farthest out 16.0 mm toward 180° at 10.0 m (down; action limit 25.0 mm there)."
     )
     assert answer(reduction(undecided)).startswith(
-        "UNDECIDED at 1 of 1 station(s), none over; farthest out 24.0 mm"
+        "UNDECIDED at 1 of 1 station, none over; farthest out 24.0 mm"
     )
     assert answer(reduction()).startswith("OVER")
     assert [toward(*one) for one in ((0.0, 1.0), (1.0, 0.0), (-1.0, 0.0))] == ["0°", "90°", "270°"]
@@ -209,7 +209,7 @@ def test_a_comparison_is_part_of_the_report_when_asked() -> None:
         reduction(), reduction(replace(RESULT, stations=numbered(station(10.0, 0.02), STATIONS[2])))
     )
     page = _Page(report_html(reduction(), compared=compared(comparison), made_at=MADE))
-    assert "Compared with another survey" in page.text
+    assert "Second less first, with the band" in page.text
     assert page.tags.count("svg") == 4
     assert "+17.00" in page.text
 
