@@ -18,7 +18,7 @@ _EARTH = (
         "Normal gravity on the ellipsoid",
         "γ = γₑ (1 + k sin²φ) / √(1 − e² sin²φ)",
         "Somigliana's closed form with the constants of WGS 84; Moritz, H. (1980), Geodetic Reference System 1980, "
-        "Bulletin géodésique 54(3); NGA.STND.0036 (2014)",
+        "Bulletin géodésique 54(3); NGA.STND.0036 (2014) (number from memory, unconfirmed)",
     ),
     Formula(
         "Gravity below the collar",
@@ -53,7 +53,7 @@ _HUNG = (
         "Swing of the bob on the turning Earth",
         "ζ(t) = c + exp(−γt) exp(−iω t sin φ) (A exp(iω₀t) + B exp(−iω₀t)),  ζ = E + iN, c the rest point",
         "damped Foucault pendulum; Kibble & Berkshire (2004), chapter 5; fitted by separable least squares, "
-        "Golub, G. H. & Pereyra, V. (1973), SIAM J. Numer. Anal. 10(2)",
+        "Golub, G. H. & Pereyra, V. (1973), SIAM J. Numer. Anal. 10(2) (from memory, unconfirmed)",
     ),
 )
 _DROP = (
@@ -65,7 +65,7 @@ _DROP = (
     Formula(
         "Drag of a smooth sphere",
         "C_d(Re) through the drag crisis",
-        "Morrison, F. A. (2013), An Introduction to Fluid Mechanics, section 8.2",
+        "Morrison, F. A. (2013), An Introduction to Fluid Mechanics (section from memory, unconfirmed: 8.2)",
     ),
 )
 _JUDGING = (
