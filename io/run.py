@@ -202,10 +202,11 @@ class Run:
         arrivals = [arrival for item in items for arrival in self._arrivals(item)]
         for one in arrivals:  # all of them first: whatever happens below, what has come is in the log
             self._recorder.put(one)
+        newest = _stamp(arrivals[-1]) if arrivals else now
         for one in arrivals:
-            self._found(self.pipeline.take(one))
+            self._found(self.pipeline.take(one), newest)
         if all_of_it:  # else something still in the queue was stamped before `now`
-            self._found(self.pipeline.tick(now))
+            self._found(self.pipeline.tick(now), now)
         self._recorder.tick(now)
         self._watch_record(now)
         return now if all_of_it else None
@@ -231,18 +232,23 @@ class Run:
 
     def _event(self, event: RunEvent) -> None:
         self._recorder.put(event)
-        self._found(self.pipeline.take(event))
+        self._found(self.pipeline.take(event), event.time)
 
-    def _found(self, findings: Findings) -> None:
+    def _found(self, findings: Findings, now: float) -> None:
+        """Keep findings for the next update; a change of an alarm goes to the log, stamped by the host's clock.
+
+        Its instant by the readings' clock is a field: in the place of the stamp it would hold up a replay.
+        """
         for one in findings.alarms:
             fields: dict[str, object] = {
                 "name": one.name,
+                "at": one.time,
                 "from": one.old,
                 "to": one.new,
                 "depth": one.depth,
                 "message": one.message,
             }
-            self._recorder.put(RunEvent(time=one.time, name="alarm", fields=fields))
+            self._recorder.put(RunEvent(time=now, name="alarm", fields=fields))
         if len(findings.rows) or findings.stations or findings.alarms:
             self._findings.append(findings)
 
@@ -326,6 +332,10 @@ class Run:
             return ""
         number, kind, text, expected = last
         return f"line {number}: {kind}: {text}; expected {expected}"
+
+
+def _stamp(arrival: Arrival) -> float:
+    return arrival.time if isinstance(arrival, RunEvent) else float(arrival.times[-1])
 
 
 def _condition(now: float, name: str, *, on: bool, message: str) -> RunEvent:

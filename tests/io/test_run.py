@@ -8,6 +8,7 @@ from live_help import GUIDED, ONE_LINK, TWO_LINKS, FedLink, HandClock, Openers, 
 
 from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.errors import LinkError, OutputError
+from eastfall.io.logreader import last_time
 from eastfall.io.pipeline import Pipeline
 from eastfall.io.run import LINK_LOST, RECORD_FAILING, Run
 from eastfall.io.runlog import RunLogWriter, read_log
@@ -137,8 +138,26 @@ def test_what_a_person_says_is_an_event_in_the_log(tmp_path: Path) -> None:
         "shelved",
     ]
     assert events[-1].name == "end"
-    times = [one.time for one in events if one.name != "alarm"]
+    times = [one.time for one in events]
     assert times == sorted(times)
+
+
+def test_an_alarm_is_in_the_log_at_the_time_of_the_host(tmp_path: Path) -> None:
+    """Where the instrument's clock runs days ahead, the log's length stays that of the run, and a replay's with it."""
+    links = '[[link]]\nurl = "test"\ncolumns = ["time_s", "depth_m", "tilt_a_deg", "tilt_b_deg"]\n'
+    where, clock, link = site(links), HandClock(), FedLink()
+    log = log_for(tmp_path, where)
+    ahead = b"".join(b"%.1f,%.2f,1.5,0.0\n" % (200_000 + 0.5 * i, 0.25 * i) for i in range(400))
+    with Run(where, log=log, clock=clock, opener=Openers(link)) as run:
+        link.put(ahead)
+        until(run, lambda update: any(one.name == "action limit" for one in update.alarms))
+        clock.time += 1.0
+        run.note("seen", "R. Vane")
+    events = [one for one in recorded(log.path) if isinstance(one, RunEvent)]
+    alarm = next(one for one in events if one.name == "alarm" and one.fields["name"] == "action limit")
+    assert alarm.time <= 1.0
+    assert float(str(alarm.fields["at"])) > 200_000.0
+    assert last_time(log.path) == events[-1].time <= 2.0
 
 
 def test_a_lost_link_is_an_alarm_until_it_is_back() -> None:
