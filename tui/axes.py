@@ -43,9 +43,9 @@ class Axis:
         """How much one dot stands for."""
         return (self.high - self.low) / self.dots
 
-    def ticks(self, most: int) -> list[float]:
-        """Return round values inside the axis, at most `most` + 1 of them, zero among them when it is inside."""
-        step = round_step(self.high - self.low, most)
+    def ticks(self, most: int, size: float = 1.0) -> list[float]:
+        """Return values round in a unit of a size, at most `most` + 1 of them, zero among them when it is inside."""
+        step = round_step((self.high - self.low) / size, most) * size
         first, last = ceil(self.low / step - 1e-9), floor(self.high / step + 1e-9)
         return [index * step for index in range(first, last + 1)]
 

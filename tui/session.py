@@ -8,6 +8,7 @@ import numpy as np
 
 from eastfall.tui.raster import Floats
 from eastfall.tui.store import Mode
+from eastfall.tui.units import METRIC, Units
 
 if TYPE_CHECKING:
     from eastfall.physics.expected import ExpectedCurve
@@ -32,6 +33,8 @@ class Session:
         East and north [m] of a hanging bob and of a dropped body, by depth [m].
     differences : tuple of str
         For a replay: the settings that are not as recorded, each as a line; "what if" is on the screen then.
+    units : Units
+        What lengths are shown in.
     """
 
     assumptions: "Assumptions"
@@ -40,6 +43,7 @@ class Session:
     bob: Curve | None = None
     fall: Curve | None = None
     differences: tuple[str, ...] = ()
+    units: Units = METRIC
 
 
 def curves_of(curve: "ExpectedCurve | None") -> tuple[Curve | None, Curve | None]:

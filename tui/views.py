@@ -10,13 +10,14 @@ from eastfall.tui import words
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve, Session
 from eastfall.tui.store import Snapshot, worst_alarm
+from eastfall.tui.units import Units
 from eastfall.tui.widgets.figures import Figure
 from eastfall.tui.widgets.line import Piece
 from eastfall.tui.widgets.plan import PlanView, Point
 
 Subject = Standing | Station | None
 
-_DEEP = 1000.0  # m, from where the large figure leaves the tenth to the answer line
+_DEEP = 1000.0  # of the long unit, from where the large figure leaves the tenth to the answer line
 _NOTHING = (np.empty(0), np.empty(0))
 _TRAIL_SECONDS = 60.0
 
@@ -74,14 +75,14 @@ def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ..
     if isinstance(one, Station):
         rest = "at rest" if one.still else "in passing"
         return ((f"Station {one.number}, {one.direction}, {rest}. Press f to follow the newest.", Role.TEXT),)
-    return ((words.steering(one, session.assumptions.run.kind), Role.STRONG),)
+    return ((words.steering(one, session.assumptions.run.kind, session.units), Role.STRONG),)
 
 
 def swing(session: Session, one: Subject) -> tuple[Piece, ...]:
     """Return what the swing of a hung line says; nothing for other runs."""
     if session.assumptions.run.kind != "hung" or not isinstance(one, Standing):
         return ()
-    return ((words.swing(one.rest_point), Role.TEXT),)
+    return ((words.swing(one.rest_point, session.units), Role.TEXT),)
 
 
 def notes(session: Session, one: Subject) -> tuple[Piece, ...]:
@@ -94,16 +95,23 @@ def notes(session: Session, one: Subject) -> tuple[Piece, ...]:
 
 def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
     """Return the numbers that matter."""
+    units = session.units
     if one is None:
-        return (Figure(name="depth", value="–", unit="m"),)
+        return (Figure(name="depth", value="–", unit=units.long),)
     length = words.residual_length(one)
     role = {"over": Role.ACTION, "undecided": Role.WARNING}.get(one.verdict, Role.STRONG)
     shown = [
         Figure(
-            name="depth", value=words.metres(one.depth, int(one.depth < _DEEP)), unit="m", note=_motion(one)
+            name="depth",
+            value=units.depth(one.depth, int(one.depth < _DEEP * units.long_size)),
+            unit=units.long,
+            note=_motion(one, units),
         ),
         Figure(
-            name="residual", value=words.mm(length), unit=f"± {words.mm(words.expanded(one))} mm", role=role
+            name="residual",
+            value=units.offset(length),
+            unit=f"± {units.offset(words.expanded(one))} {units.short}",
+            role=role,
         ),
         Figure(
             name="toward",
@@ -113,15 +121,15 @@ def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
         ),
         Figure(
             name="measured E",
-            value=_signed(one.measured_east),
-            unit="mm",
-            note=f"expect {_signed(one.expected_east)}",
+            value=units.signed(one.measured_east),
+            unit=units.short,
+            note=f"expect {units.signed(one.expected_east)}",
         ),
         Figure(
             name="measured N",
-            value=_signed(one.measured_north),
-            unit="mm",
-            note=f"expect {_signed(one.expected_north)}",
+            value=units.signed(one.measured_north),
+            unit=units.short,
+            note=f"expect {units.signed(one.expected_north)}",
         ),
     ]
     if isinstance(one, Standing) and session.assumptions.run.kind == "hung" and one.rest_point is not None:
@@ -132,18 +140,15 @@ def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
     return tuple(shown)
 
 
-def _signed(value: float) -> str:
-    return f"{value * 1e3:+.1f}" if isfinite(value) else "–"
-
-
-def _motion(one: Standing | Station) -> str:
+def _motion(one: Standing | Station, units: Units) -> str:
     if isinstance(one, Station):
         return one.direction
     if not isfinite(one.speed):
         return ""
     if abs(one.speed) < 0.005:
         return "at rest"
-    return f"{'down' if one.speed > 0.0 else 'up'} {abs(one.speed):.1f} m/s"
+    way = "down" if one.speed > 0.0 else "up"
+    return f"{way} {units.depth(abs(one.speed))} {units.speed}"
 
 
 def plan(session: Session, snapshot: Snapshot, sight: look.Sight, one: Subject) -> PlanView:
@@ -162,6 +167,7 @@ def plan(session: Session, snapshot: Snapshot, sight: look.Sight, one: Subject) 
         centre=(shaft.centre_east, shaft.centre_north),
         diameter=shaft.diameter,
         clearance=one.wall_clearance if isinstance(one, Standing) else None,
+        units=session.units,
     )
 
 

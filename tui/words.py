@@ -5,6 +5,7 @@ from typing import TYPE_CHECKING, Protocol
 
 from eastfall.physics.findings import AlarmView, RestPoint, Standing
 from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+from eastfall.tui.units import FEET, METRIC, Units
 
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind, Reference
@@ -80,20 +81,21 @@ def decision(one: Judged) -> str:
     return VERDICT[one.verdict] + (", PAST WARNING" if warned else "")
 
 
-def answer(one: Judged | None) -> str:
+def answer(one: Judged | None, units: Units = METRIC) -> str:
     """Return the answer as one line."""
     if one is None:
         return "NO ANSWER YET: waiting for the first reading"
     length = residual_length(one)
     if not isfinite(length):
-        return f"NO ANSWER {metres(one.depth)} m: no offset in the readings"
+        return f"NO ANSWER {units.depth(one.depth)} {units.long}: no offset in the readings"
     return (
-        f"{decision(one)} {metres(one.depth)} m: residual {mm(length)} ± {mm(expanded(one))} mm "
-        f"toward {bearing(one.residual_east, one.residual_north)}, limit {mm(one.action)} mm"
+        f"{decision(one)} {units.depth(one.depth)} {units.long}: residual {units.offset(length)} ± "
+        f"{units.offset(expanded(one))} {units.short} toward {bearing(one.residual_east, one.residual_north)}, "
+        f"limit {units.offset(one.action)} {units.short}"
     )
 
 
-def steering(one: Standing | None, kind: "Kind") -> str:
+def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
     """Return what to do, as one line."""
     if one is None:
         return "Wait for the first reading."
@@ -106,32 +108,35 @@ def steering(one: Standing | None, kind: "Kind") -> str:
         return "Nothing to steer by: the readings give no offset."
     if kind == "drop":
         return "Stand clear: nothing to move while bodies fall."
-    return _move(one, length)
+    return _move(one, length, units)
 
 
-def _move(one: Judged, length: float) -> str:
+def _move(one: Judged, length: float, units: Units) -> str:
     """Return which way and how far to bring a residual to nothing."""
     if length <= expanded(one):
-        return f"Leave it: {mm(length)} mm is less than its uncertainty, ± {mm(expanded(one))} mm."
+        return (
+            f"Leave it: {units.offset(length)} {units.short} is less than its uncertainty, "
+            f"± {units.offset(expanded(one))} {units.short}."
+        )
     back = bearing(-one.residual_east, -one.residual_north)
     places = 0 if length >= 0.002 else 1
-    return f"Move {mm(length, places)} mm toward {back} to meet the expected line."
+    return f"Move {units.offset(length, places)} {units.short} toward {back} to meet the expected line."
 
 
-def pair(east: float, north: float, places: int = 1) -> str:
-    """Return an offset as signed east and north millimetres with their letters."""
+def pair(east: float, north: float, places: int = 1, units: Units = METRIC) -> str:
+    """Return an offset as signed east and north with their letters and the unit."""
     if not (isfinite(east) and isfinite(north)):
-        return "E – N – mm"
-    return f"E {east * 1e3:+.{places}f} N {north * 1e3:+.{places}f} mm"
+        return f"E – N – {units.short}"
+    return f"E {units.signed(east, places)} N {units.signed(north, places)} {units.short}"
 
 
-def swing(rest: RestPoint | None) -> str:
+def swing(rest: RestPoint | None, units: Units = METRIC) -> str:
     """Return what the swing says of the rest point, as one line."""
     if rest is None:
         return "rest point: not enough swing seen yet"
     worst = COVERAGE_FACTOR * max(rest.u_east, rest.u_north)
     return (
-        f"rest point {pair(rest.east, rest.north)} ± {mm(worst)} mm, "
+        f"rest point {pair(rest.east, rest.north, units=units)} ± {units.offset(worst)} {units.short}, "
         f"period {rest.period:.2f} s, {rest.swings:.1f} full swings seen"
     )
 
@@ -171,8 +176,15 @@ def size(count: int) -> str:
     return f"{count / 1e3:.0f} kB" if count < 1_000_000 else f"{count / 1e6:.1f} MB"
 
 
-def read_moment(text: str) -> tuple[str, float]:
-    """Read where to jump: "612.5 m" or "612.5" is a depth [m], "12:30" or "1:02:30" or "90 s" a time [s].
+def read_moment(text: str, units: Units = METRIC) -> tuple[str, float]:
+    """Read where to jump: "612.5 m" or "2009 ft" is a depth, "12:30" or "1:02:30" or "90 s" a time [s].
+
+    Parameters
+    ----------
+    text : str
+        As typed.
+    units : Units
+        What a depth without a unit is in.
 
     Returns
     -------
@@ -191,9 +203,23 @@ def read_moment(text: str) -> tuple[str, float]:
             return "time", sum(part * 60.0**power for power, part in enumerate(reversed(parts)))
         if plain.endswith("s"):
             return "time", _not_negative(float(plain[:-1]))
-        return "depth", _not_negative(float(plain.removesuffix("m")))
+        return "depth", read_depth(plain, units)
     except ValueError:
-        raise ValueError("Not understood. A depth: 612.5 m. A time: 12:30 or 90 s.") from None
+        raise ValueError(f"Not understood. A depth: 612.5 {units.long}. A time: 12:30 or 90 s.") from None
+
+
+def read_depth(text: str, units: Units = METRIC) -> float:
+    """Return a typed depth [m]; "m" or "ft" behind it overrules the units.
+
+    Raises
+    ------
+    ValueError
+        When it is no number of zero or more.
+    """
+    plain = text.strip().lower().replace(",", ".")
+    size = {"m": 1.0, "ft": FEET.long_size}
+    mark = next((one for one in size if plain.endswith(one)), "")
+    return _not_negative(float(plain.removesuffix(mark))) * size.get(mark, units.long_size)
 
 
 def _not_negative(value: float) -> float:

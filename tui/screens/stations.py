@@ -12,34 +12,42 @@ from eastfall.tui import keys, words
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
 from eastfall.tui.store import Snapshot
+from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.table import LongTable, fixed
 
 ORDERS = ("time", "depth", "residual")
 _WIDTHS = (7, 4, 13, 13, 8, 6, 6, 9, 4)
-HEAD = fixed(
-    tuple(
-        zip(
-            ("depth m", "pass", "measured E N", "expected E N", "resid mm", "toward", "± mm", "verdict", "n"),
-            _WIDTHS,
-            strict=True,
-        )
-    )
-)
 _ROLE = {"within": Role.TEXT, "over": Role.ACTION, "undecided": Role.WARNING}
 
 
-def row(one: Station) -> str:
+def head(units: Units = METRIC) -> str:
+    """Return the line over the table."""
+    names = (
+        f"depth {units.long}",
+        "pass",
+        "measured E N",
+        "expected E N",
+        f"resid {units.short}",
+        "toward",
+        f"± {units.short}",
+        "verdict",
+        "n",
+    )
+    return fixed(tuple(zip(names, _WIDTHS, strict=True)))
+
+
+def row(one: Station, units: Units = METRIC) -> str:
     """Return a station as a line of the table."""
     cells = (
-        words.metres(one.depth),
+        units.depth(one.depth),
         one.direction,
-        f"{words.mm(one.measured_east)} {words.mm(one.measured_north)}",
-        f"{words.mm(one.expected_east)} {words.mm(one.expected_north)}",
-        words.mm(words.residual_length(one)),
+        f"{units.offset(one.measured_east)} {units.offset(one.measured_north)}",
+        f"{units.offset(one.expected_east)} {units.offset(one.expected_north)}",
+        units.offset(words.residual_length(one)),
         words.bearing(one.residual_east, one.residual_north),
-        words.mm(words.expanded(one)),
+        units.offset(words.expanded(one)),
         words.VERDICT[one.verdict],
         str(one.readings),
     )
@@ -62,8 +70,9 @@ class StationsScreen(PaintedScreen[int | None]):
     PLACES = ("stations", "page")
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page", "stations"))
 
-    def __init__(self, snapshot: Snapshot) -> None:
+    def __init__(self, snapshot: Snapshot, units: Units = METRIC) -> None:
         super().__init__()
+        self._units = units
         self._snapshot = snapshot
         self._order = ORDERS[0]
         self._only_open = False
@@ -72,7 +81,7 @@ class StationsScreen(PaintedScreen[int | None]):
     def compose(self) -> ComposeResult:
         """Show a title line over the table."""
         yield TextLine(id="station-title")
-        yield LongTable(HEAD, id="stations")
+        yield LongTable(head(self._units), id="stations")
         yield KeyLine(id="station-keys")
 
     def on_mount(self) -> None:
@@ -94,7 +103,8 @@ class StationsScreen(PaintedScreen[int | None]):
         )
         stations = snapshot.stations
         self.query_one(LongTable).show(
-            len(self._indices), lambda i: (row(one := stations[self._indices[i]]), _ROLE[one.verdict])
+            len(self._indices),
+            lambda i: (row(one := stations[self._indices[i]], self._units), _ROLE[one.verdict]),
         )
 
     def action_sort(self) -> None:
@@ -115,20 +125,22 @@ class StationsScreen(PaintedScreen[int | None]):
             if look:
                 self.dismiss(index)
 
-        self.app.push_screen(StationPage(self._snapshot.stations[index]), after)
+        self.app.push_screen(StationPage(self._snapshot.stations[index], self._units), after)
 
     def action_close(self) -> None:
         """Go back."""
         self.dismiss(None)
 
 
-def budget(one: Station) -> str:
+def budget(one: Station, units: Units = METRIC) -> str:
     """Return a station's uncertainty budget as lines, largest first."""
     if not one.shares:
         return "no budget with this station"
-    lines = [f"{'standard uncertainty, mm':<34}{'east':>8}{'north':>8}"]
-    lines += [f"{s.name[:33]:<34}{words.mm(s.east, 3):>8}{words.mm(s.north, 3):>8}" for s in one.shares]
-    lines.append(f"{'together':<34}{words.mm(one.u_east, 3):>8}{words.mm(one.u_north, 3):>8}")
+    lines = [f"{f'standard uncertainty, {units.short}':<34}{'east':>8}{'north':>8}"]
+    lines += [
+        f"{s.name[:33]:<34}{units.offset(s.east, 3):>8}{units.offset(s.north, 3):>8}" for s in one.shares
+    ]
+    lines.append(f"{'together':<34}{units.offset(one.u_east, 3):>8}{units.offset(one.u_north, 3):>8}")
     return "\n".join(lines)
 
 
@@ -140,9 +152,9 @@ class StationPage(ModalScreen[bool]):
         ("enter", "look", "look at it"),
     ]
 
-    def __init__(self, one: Station) -> None:
+    def __init__(self, one: Station, units: Units = METRIC) -> None:
         super().__init__()
-        self._one = one
+        self._one, self._units = one, units
 
     def compose(self) -> ComposeResult:
         """Show the answer, both offsets and the budget."""
@@ -151,11 +163,11 @@ class StationPage(ModalScreen[bool]):
             yield plain(
                 f"Station {one.number}, {one.direction}, {'at rest' if one.still else 'in passing'}", "title"
             )
-            yield plain(words.answer(one))
-            yield plain(f"measured {words.pair(one.measured_east, one.measured_north)}")
-            yield plain(f"expected {words.pair(one.expected_east, one.expected_north)}")
+            yield plain(words.answer(one, self._units))
+            yield plain(f"measured {words.pair(one.measured_east, one.measured_north, units=self._units)}")
+            yield plain(f"expected {words.pair(one.expected_east, one.expected_north, units=self._units)}")
             yield plain(f"from {one.readings} readings, closed {words.clock(one.time)} after the start\n")
-            yield plain(budget(one))
+            yield plain(budget(one, self._units))
             yield plain("\nenter  look at it in the picture        esc  back")
 
     def action_look(self) -> None:

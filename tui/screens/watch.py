@@ -21,7 +21,7 @@ from eastfall.tui.store import Snapshot
 from eastfall.tui.widgets.alarms import AlarmList, in_order
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.figures import Figures
-from eastfall.tui.widgets.health import HealthList, health_line
+from eastfall.tui.widgets.health import HealthList, health_line, told
 from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
 from eastfall.tui.widgets.panel import ProfileView
 from eastfall.tui.widgets.plan import Plan
@@ -51,6 +51,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self.feed: Feed | None = None
         self.latest = Snapshot(mode=session.mode)
         self.held: Snapshot | None = None
+        self._told: tuple[object, ...] | None = None
         self.sight = Sight(layout="plan" if session.assumptions.run.kind == "hung" else "all")
 
     def compose(self) -> ComposeResult:
@@ -75,6 +76,10 @@ class WatchScreen(PaintedScreen[Choice | None]):
         """Show the empty picture at once."""
         self.paint()
 
+    def on_screen_resume(self) -> None:
+        """Catch up with what came while another screen was in front."""
+        self.paint()
+
     def show(self, snapshot: Snapshot) -> None:
         """Show a newer snapshot; a held picture stays, alarms and health do not wait for it."""
         known = {one.name for one in self.latest.alarms if one.state in words.WANTS_ANSWER}
@@ -84,7 +89,8 @@ class WatchScreen(PaintedScreen[Choice | None]):
         if snapshot.trouble and snapshot.trouble != self.latest.trouble:
             self.held = None
         self.latest = snapshot
-        self.paint()
+        if self.is_current or self.app.screen.is_modal:
+            self.paint()
         if isinstance(self.app.screen, StationsScreen):
             self.app.screen.show(snapshot)
 
@@ -107,7 +113,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self._line("title").show(*views.title(self.session), right=state)
         under = views.answer_ground(one)
         ink = Role.STRONG if under is None else Role.ON_GROUND
-        self._line("answer").show((words.answer(one), ink), under=under)
+        self._line("answer").show((words.answer(one, self.session.units), ink), under=under)
         self._line("steer").show(*views.steer(self.session, latest, one))
         for name, pieces in (
             ("swing", views.swing(self.session, one)),
@@ -116,11 +122,13 @@ class WatchScreen(PaintedScreen[Choice | None]):
             self._show_if_any(self._line(name), pieces)
         pieces, ground = views.alarm_line(latest)
         self._line("alarm").show(*pieces, under=ground)
-        self._line("health").show(*health_line(latest))
+        if told(latest) != self._told:
+            self._told = told(latest)
+            self._line("health").show(*health_line(latest))
+            self.query_one(HealthList).show(latest)
         self.query_one(KeyLine).show(*keys.line(("watch", "all"), replay=latest.mode == "replay"))
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms)
-        self.query_one(HealthList).show(latest)
 
     def _show_if_any(self, line: TextLine, pieces: tuple[Piece, ...]) -> None:
         """Give a line the rows that its words need, two at most, and none without words."""
@@ -144,6 +152,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
                 whole=whole,
                 bob=session.bob,
                 fall=session.fall,
+                units=session.units,
                 kept=profile.kept,
             )
         )
@@ -242,21 +251,25 @@ class WatchScreen(PaintedScreen[Choice | None]):
 
     def action_stations(self) -> None:
         """Open the table of stations."""
-        self.app.push_screen(StationsScreen(self.latest), self._chosen)
+        self.app.push_screen(StationsScreen(self.latest, self.session.units), self._chosen)
 
     def _chosen(self, index: int | None) -> None:
         self._look(replace(self.sight, station=index) if index is not None else self.sight)
 
     def action_jump(self) -> None:
         """Ask for a depth or, in a replay, a time."""
-        hint = "depth: 612.5 m" + ("     time: 12:30 or 90 s" if self.session.mode == "replay" else "")
+        hint = f"depth: 612.5 {self.session.units.long}" + (
+            "     time: 12:30 or 90 s" if self.session.mode == "replay" else ""
+        )
         self.app.push_screen(AskText("Jump to", hint, check=self._moment), self._jumped)
 
     def _moment(self, text: str) -> tuple[str, float]:
         """Read where to jump; a live run has no times to go to."""
-        what, value = words.read_moment(text)
+        what, value = words.read_moment(text, self.session.units)
         if what == "time" and self.session.mode == "live":
-            raise ValueError("A live run goes by its own clock: give a depth, as 612.5 m.")
+            raise ValueError(
+                f"A live run goes by its own clock: give a depth, as 612.5 {self.session.units.long}."
+            )
         if what == "depth" and isinstance(self.feed, ReplayFeed):
             return "time", self._time_of(self.feed, value)
         return what, value
@@ -268,7 +281,8 @@ class WatchScreen(PaintedScreen[Choice | None]):
         moment = feed.index.time_of_depth(depth, after=self.latest.time + 1.0)
         moment = feed.index.time_of_depth(depth) if moment is None else moment
         if moment is None:
-            raise ValueError(f"The record does not reach {depth:g} m.")
+            units = self.session.units
+            raise ValueError(f"The record does not reach {units.depth(depth)} {units.long}.")
         return moment
 
     def _jumped(self, text: str | None) -> None:

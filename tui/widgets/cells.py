@@ -13,6 +13,7 @@ from textual.widget import Widget
 
 from eastfall.tui.raster import BRAILLE, FILLER, Cells, Glyphs, Raster
 from eastfall.tui.roles import CLASS_OF, COMPONENT_CLASSES, Role
+from eastfall.tui.units import METRIC, Units
 
 if TYPE_CHECKING:
     from textual.events import Resize
@@ -51,6 +52,11 @@ class CellWidget(Widget):
         """How this terminal shows dots."""
         return getattr(self.app, "glyphs", BRAILLE)
 
+    @property
+    def units(self) -> Units:
+        """What lengths are shown in."""
+        return getattr(self.app, "units", METRIC)
+
     def draw(self, sheet: Raster) -> None:
         """Put the picture on a sheet of the widget's size."""
         raise NotImplementedError
@@ -58,7 +64,7 @@ class CellWidget(Widget):
     def redraw(self) -> None:
         """Draw again and paint the rows that came out differently; a hidden widget draws nothing."""
         width, height = self.size
-        if width == 0 or height == 0 or not self.is_attached:
+        if width == 0 or height == 0 or not self.is_attached or not self.is_on_screen:
             return
         sheet = Raster(width, height, self.glyphs)
         self.draw(sheet)
@@ -74,6 +80,10 @@ class CellWidget(Widget):
     def on_resize(self, event: "Resize") -> None:
         """Draw for the new size."""
         del event
+        self.redraw()
+
+    def on_show(self) -> None:
+        """Draw what came while it was hidden."""
         self.redraw()
 
     def notify_style_update(self) -> None:

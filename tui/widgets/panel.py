@@ -14,6 +14,7 @@ from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster, Runs, polyl
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve
 from eastfall.tui.store import Snapshot, last_pass
+from eastfall.tui.units import METRIC, Units
 
 GUTTER = 6
 """Columns for the depths at the left."""
@@ -43,6 +44,7 @@ class ProfileView:
     bob: Curve | None = None
     fall: Curve | None = None
     """Where a bob would hang and a dropped body would be, by depth: east and north [m]."""
+    units: Units = METRIC
     kept: Kept = field(default_factory=Kept)
     """Planes from one picture to the next."""
 
@@ -69,7 +71,75 @@ def one_row_a_dot(rows: Rows, along: Floats) -> Rows:
     return Rows(rows.data[:, np.append(Runs.of(along).starts, len(rows) - 1)])
 
 
-class Panel:
+class PanelGround:
+    """One axis of an offset by depth on part of a sheet, and the means to draw on it.
+
+    Parameters
+    ----------
+    which : int
+        0 for east, 1 for north.
+    depth : Axis
+        Metres of depth down the panel.
+    sheet : Raster
+        Drawn on.
+    place : tuple of int
+        First column and width of the panel.
+    units : Units
+        Of the scale below.
+    """
+
+    def __init__(
+        self, which: int, depth: Axis, sheet: Raster, place: tuple[int, int], units: Units = METRIC
+    ) -> None:
+        self.which, self.depth, self.sheet, self.units = which, depth, sheet, units
+        self.column, self.width = place
+        self.axis = Axis(low=-1.0, high=1.0, dots=self.width * sheet.glyphs.across)
+
+    def _plane(self) -> Plane:
+        return np.zeros((self.depth.dots, self.axis.dots), dtype=np.bool_)
+
+    @staticmethod
+    def _dashed(plane: Plane, role: Role) -> Plane:
+        dash = _DASH.get(role)
+        return rhythm(plane, *dash, upright=True) if dash else plane
+
+    def _put(self, plane: Plane, role: Role) -> None:
+        self.sheet.stamp(self._dashed(plane, role), role, self.column, 1)
+
+    def _about(self, place: Floats, middle: Floats, off: Floats, role: Role) -> None:
+        """Draw a pair of curves to both sides of one."""
+        plane, gap = self._plane(), np.full(1, np.nan)
+        across = self.axis.dot(np.concatenate([middle - off, gap, middle + off]))
+        polyline(plane, across, np.concatenate([place, gap, place]))
+        self._put(plane, role)
+
+    def _mark(self, place: float, row: int, mark: str, role: Role) -> None:
+        """Write a mark at a place across the panel [dots]; outside of it nothing."""
+        if 0.0 <= place < self.axis.dots:
+            self.sheet.text(self.column + int(place) // self.sheet.glyphs.across, row, mark, role)
+
+    def _labels(self) -> None:
+        """Name the panel's directions at the top and write the scale below."""
+        left, right = _SIDES[self.which]
+        title = f"{left} – {right}  {self.units.short}"
+        self.sheet.text(self.column + (self.width - len(title)) // 2, 0, title, Role.STRONG)
+        size = self.units.short_size
+        ticks = self.axis.ticks(max(4, self.width // 5), size)
+        step = (ticks[1] - ticks[0]) if len(ticks) > 1 else size
+        row = self.sheet.height - BELOW
+        self.sheet.text(self.column, row, self.sheet.glyphs.rule * self.width, Role.DIM)
+        free = self.column
+        for value in ticks:
+            words = label(value / size, step / size, signed=True)
+            middle = self.column + int(self.axis.dot(value)) // self.sheet.glyphs.across
+            start = min(max(middle - len(words) // 2, self.column), self.column + self.width - len(words))
+            if start >= free:
+                self.sheet.text(max(start - 1, self.column), row, " " * (len(words) + 2), Role.DIM)
+                self.sheet.text(start, row, words, Role.DIM)
+                free = start + len(words) + 1
+
+
+class Panel(PanelGround):
     """East or north, drawn on part of a sheet.
 
     Parameters
@@ -89,12 +159,11 @@ class Panel:
     def __init__(
         self, view: ProfileView, which: int, depth: Axis, sheet: Raster, place: tuple[int, int]
     ) -> None:
-        self.view, self.which, self.depth, self.sheet = view, which, depth, sheet
-        self.column, self.width = place
+        super().__init__(which, depth, sheet, place, view.units)
+        self.view = view
         rows = view.snapshot.rows
         begin = last_pass(rows)
         self.past, self.now = Rows(rows.data[:, :begin]), Rows(rows.data[:, begin:])
-        self.axis = Axis(low=-1.0, high=1.0, dots=self.width * sheet.glyphs.across)
 
     def draw(self) -> None:
         """Draw grid, band, limits, curves and labels, the important ones last."""
@@ -145,17 +214,6 @@ class Panel:
         along: Floats = self.depth.dot(rows.column("depth"))
         return along
 
-    def _plane(self) -> Plane:
-        return np.zeros((self.depth.dots, self.axis.dots), dtype=np.bool_)
-
-    @staticmethod
-    def _dashed(plane: Plane, role: Role) -> Plane:
-        dash = _DASH.get(role)
-        return rhythm(plane, *dash, upright=True) if dash else plane
-
-    def _put(self, plane: Plane, role: Role) -> None:
-        self.sheet.stamp(self._dashed(plane, role), role, self.column, 1)
-
     def _still(self, role: Role, known_by: Hashable, draw: Callable[[Plane], None]) -> None:
         """Put a plane that stays as it is until the axes change, or what it is known by."""
 
@@ -191,13 +249,6 @@ class Panel:
         polyline(plane, self.axis.dot(part.expected), place)
         self._put(plane, Role.EXPECTED)
 
-    def _about(self, place: Floats, middle: Floats, off: Floats, role: Role) -> None:
-        """Draw a pair of curves to both sides of one."""
-        plane, gap = self._plane(), np.full(1, np.nan)
-        across = self.axis.dot(np.concatenate([middle - off, gap, middle + off]))
-        polyline(plane, across, np.concatenate([place, gap, place]))
-        self._put(plane, role)
-
     def _extras(self) -> None:
         """Draw where a bob would hang and a dropped body would be, the whole way down, with a letter at the end."""
         depths = np.linspace(self.depth.low, self.depth.high, 64)
@@ -210,30 +261,6 @@ class Panel:
                 self._mark(float(across[known[-1]]), self.sheet.height - BELOW - 1, letter, role)
 
     # -- words -----------------------------------------------------------------------------------------------------
-
-    def _mark(self, place: float, row: int, mark: str, role: Role) -> None:
-        """Write a mark at a place across the panel [dots]; outside of it nothing."""
-        if 0.0 <= place < self.axis.dots:
-            self.sheet.text(self.column + int(place) // self.sheet.glyphs.across, row, mark, role)
-
-    def _labels(self) -> None:
-        """Name the panel's directions at the top and write the scale below."""
-        left, right = _SIDES[self.which]
-        title = f"{left} – {right}  mm"
-        self.sheet.text(self.column + (self.width - len(title)) // 2, 0, title, Role.STRONG)
-        ticks = self.axis.ticks(max(4, self.width // 5))
-        step = (ticks[1] - ticks[0]) if len(ticks) > 1 else 1e-3
-        row = self.sheet.height - BELOW
-        self.sheet.text(self.column, row, self.sheet.glyphs.rule * self.width, Role.DIM)
-        free = self.column
-        for value in ticks:
-            words = label(value * 1e3, step * 1e3, signed=True)
-            middle = self.column + int(self.axis.dot(value)) // self.sheet.glyphs.across
-            start = min(max(middle - len(words) // 2, self.column), self.column + self.width - len(words))
-            if start >= free:
-                self.sheet.text(max(start - 1, self.column), row, " " * (len(words) + 2), Role.DIM)
-                self.sheet.text(start, row, words, Role.DIM)
-                free = start + len(words) + 1
 
     def _marks(self) -> None:
         """Mark the point in view: expected first, measured over it."""

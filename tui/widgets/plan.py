@@ -11,8 +11,8 @@ from eastfall.physics.findings import RestPoint, Standing, Station
 from eastfall.tui.axes import round_step
 from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster, polyline, rhythm, ring, segments
 from eastfall.tui.roles import Role
+from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.cells import CellWidget
-from eastfall.tui.words import mm
 
 CELL_ASPECT = 2.0
 """Height of a character cell over its width; a setting, because terminals differ."""
@@ -43,6 +43,7 @@ class PlanView:
     """Of the shaft, round about its centre."""
     clearance: float | None = None
     """From the measured point to the wall."""
+    units: Units = METRIC
 
 
 class Plan(CellWidget):
@@ -70,14 +71,15 @@ class Plan(CellWidget):
             sheet.text(0, 0, "shaft plan", Role.STRONG)
             sheet.text(0, 1, "no diameter in the site file", Role.DIM)
             return
-        _Sheet(view, self.scope, sheet, self.aspect, self.kept).draw()
+        PlanSheet(view, self.scope, sheet, self.aspect, self.kept).draw()
 
 
-class _Sheet:
+class PlanSheet:
     """One drawing of a plan."""
 
     def __init__(self, view: PlanView | None, scope: Scope, sheet: Raster, aspect: float, kept: Kept) -> None:
         self.view, self.scope, self.sheet, self.kept = view, scope, sheet, kept
+        self.units = view.units if view is not None else METRIC
         self.rows = sheet.height - 2
         self.size = (sheet.width * sheet.glyphs.across, self.rows * sheet.glyphs.down)
         # Height of a dot over its width: one length must look the same both ways.
@@ -225,7 +227,9 @@ class _Sheet:
         """Write the title with the scale at the top, north, and the legend at the bottom."""
         width = self.sheet.width
         across = 2.0 * self.reach
-        span = f"{across:.1f} m" if across >= 1.0 else f"{mm(across, 0)} mm"
+        units = self.units
+        wide = across >= 1.0
+        span = f"{units.depth(across)} {units.long}" if wide else f"{units.offset(across, 0)} {units.short}"
         title = "shaft" if self.scope == "wall" else "plan"
         self.sheet.text(0, 0, f"{title}, {span} across", Role.STRONG)
         self.sheet.text(width // 2, 1, "N", Role.STRONG)
@@ -238,7 +242,7 @@ class _Sheet:
     def _legend(self) -> Iterable[tuple[str, Role]]:
         view, glyphs = self.view, self.sheet.glyphs
         if view is not None and view.clearance is not None and self.scope == "wall":
-            yield f"wall {view.clearance:.2f} m off", Role.WALL
+            yield f"wall {view.units.depth(view.clearance, 2)} {view.units.long} off", Role.WALL
         yield f"{glyphs.measured}measured", Role.MEASURED
         yield f"{glyphs.expected}expected", Role.EXPECTED
         if view is None:

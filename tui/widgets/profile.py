@@ -6,6 +6,7 @@ from eastfall.tui import sight as look
 from eastfall.tui.axes import Axis, label
 from eastfall.tui.raster import Kept, Raster
 from eastfall.tui.roles import Role
+from eastfall.tui.units import Units
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.widgets.panel import BELOW, GUTTER, Panel, ProfileView, row_of
 
@@ -37,7 +38,7 @@ class Profile(CellWidget):
         focus = one.depth if one is not None else float("nan")
         top, bottom = look.window(self.view.sight, self.view.whole, focus)
         depth = Axis(low=top, high=bottom, dots=(sheet.height - 1 - BELOW) * sheet.glyphs.down)
-        _depth_labels(sheet, depth, focus)
+        depth_labels(sheet, depth, focus, self.view.units)
         left = (sheet.width - GUTTER - 1) // 2
         places = ((GUTTER, left), (GUTTER + left + 1, sheet.width - GUTTER - left - 1))
         for which, place in enumerate(places):
@@ -45,17 +46,18 @@ class Profile(CellWidget):
         _legend(sheet, self.view)
 
 
-def _depth_labels(sheet: Raster, depth: Axis, focus: float) -> None:
+def depth_labels(sheet: Raster, depth: Axis, focus: float, units: Units) -> None:
     """Write the depths at the left, and the mark of the depth in view."""
-    sheet.text(0, 0, "depth m", Role.DIM)
-    ticks = depth.ticks(max(2, (sheet.height - 1 - BELOW) // 3))
-    step = ticks[1] - ticks[0] if len(ticks) > 1 else 1.0
+    size = units.long_size
+    sheet.text(0, 0, f"depth {units.long}", Role.DIM)
+    ticks = depth.ticks(max(2, (sheet.height - 1 - BELOW) // 3), size)
+    step = ticks[1] - ticks[0] if len(ticks) > 1 else size
     for value in ticks:
-        words = label(value, step, signed=False)
+        words = label(value / size, step / size, signed=False)
         sheet.text(0, row_of(depth, value, sheet), f"{words:>{GUTTER - 1}}", Role.DIM)
     if isfinite(focus) and depth.low <= focus <= depth.high:
-        row, places = row_of(depth, focus, sheet), 0 if focus >= 1000.0 else 1
-        sheet.text(0, row, f"{focus:>{GUTTER - 1}.{places}f}{sheet.glyphs.here}", Role.STRONG)
+        row, places = row_of(depth, focus, sheet), 0 if focus / size >= 1000.0 else 1
+        sheet.text(0, row, f"{units.depth(focus, places):>{GUTTER - 1}}{sheet.glyphs.here}", Role.STRONG)
 
 
 def _legend(sheet: Raster, view: ProfileView) -> None:

@@ -17,11 +17,17 @@ class Strip(CellWidget):
 
     snapshot: Snapshot | None = None
     minutes: float = 3.0
+    _drawn_at: float = float("-inf")
 
     def show(self, snapshot: Snapshot) -> None:
-        """Draw another snapshot."""
+        """Draw another snapshot, unless less than half a dot of time went by since the last drawing."""
         self.snapshot = snapshot
-        self.redraw()
+        time = snapshot.rows.column("time")
+        newest = float(time[-1]) if time.size else 0.0
+        half_a_dot = self.minutes * 30.0 / max(1, (self.size.width - _GUTTER) * self.glyphs.across)
+        if not 0.0 <= newest - self._drawn_at < half_a_dot:
+            self._drawn_at = newest
+            self.redraw()
 
     def draw(self, sheet: Raster) -> None:
         """Draw the strip."""
@@ -33,7 +39,7 @@ class Strip(CellWidget):
         begin = int(np.searchsorted(time, newest - self.minutes * 60.0)) if time.size else 0
         size = np.hypot(rows.residual_east[begin:], rows.residual_north[begin:])
         limit = rows.column("action")[begin:]
-        top = _top(size, limit)
+        top = _top(size, limit, self.units.short_size)
         across = Axis(
             low=newest - self.minutes * 60.0, high=newest, dots=(sheet.width - _GUTTER) * glyphs.across
         )
@@ -61,18 +67,19 @@ class Strip(CellWidget):
         return np.zeros((up.dots, across.dots), dtype=np.bool_)
 
     def _labels(self, sheet: Raster, top: float) -> None:
-        sheet.text(0, 0, f"residual mm, last {self.minutes:g} min", Role.STRONG)
-        step = round_step(top, 4)
-        sheet.text(0, 1, f"{label(top * 1e3, step * 1e3, signed=False):>{_GUTTER - 1}}", Role.DIM)
+        size = self.units.short_size
+        sheet.text(0, 0, f"residual {self.units.short}, last {self.minutes:g} min", Role.STRONG)
+        step = round_step(top / size, 4)
+        sheet.text(0, 1, f"{label(top / size, step, signed=False):>{_GUTTER - 1}}", Role.DIM)
         sheet.text(0, sheet.height - 2, f"{'0':>{_GUTTER - 1}}", Role.DIM)
         sheet.text(_GUTTER, sheet.height - 1, f"{self.minutes:g} min ago", Role.DIM)
         sheet.text(sheet.width - 3, sheet.height - 1, "now", Role.DIM)
 
 
-def _top(size: np.ndarray, limit: np.ndarray) -> float:
+def _top(size: np.ndarray, limit: np.ndarray, unit: float) -> float:
     """Return the rounded upper end of the strip [m]: past the limit and all that is finite."""
     values = np.concatenate([size, limit])
     values = values[np.isfinite(values)]
     reach = max(0.002, float(values.max()) * 1.1 if values.size else 0.0)
-    step = round_step(reach, 4)
+    step = round_step(reach / unit, 4) * unit
     return float(step * np.ceil(reach / step))
