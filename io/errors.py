@@ -17,7 +17,19 @@ class InputError(EastfallError):
 
 
 class SiteFileError(InputError, ValueError):
-    """The site file cannot be used."""
+    """The site file cannot be used.
+
+    Parameters
+    ----------
+    message : str
+        The one clear line.
+    key : str
+        The key that it speaks of, as "section.key" or "link[0].key"; empty for the file as a whole.
+    """
+
+    def __init__(self, message: str, *, key: str = "") -> None:
+        super().__init__(message)
+        self.key = key
 
 
 class LinkError(InputError, OSError):

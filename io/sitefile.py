@@ -155,7 +155,7 @@ class _Place:
         """Return the one clear line."""
         line = self.line_of(path)
         where = f"{self.source}, line {line}" if line else self.source
-        return SiteFileError(f"{where}: {path} is {_shown(value)}; expected {expected}")
+        return SiteFileError(f"{where}: {path} is {_shown(value)}; expected {expected}", key=path)
 
 
 def _shown(value: object) -> str:
@@ -199,7 +199,7 @@ def _converted(tree: dict[str, Any], place: _Place) -> SiteDocument:
         full = f"{path}.{missing[1]}" if path else missing[1]
         where = place.line_of(path) if path else None
         head = f"{place.source}, line {where}" if where else place.source
-        raise SiteFileError(f"{head}: {full} is missing; expected {_expectation(full, '')}")
+        raise SiteFileError(f"{head}: {full} is missing; expected {_expectation(full, '')}", key=full)
     raise place.error(path, _at(tree, path), _expectation(path, what))
 
 
@@ -213,7 +213,7 @@ def _unknown_key(key: str, section: str, place: _Place) -> SiteFileError:
     shown = ascii(key)[1:-1]
     listed = ", ".join(known)
     inside = f"in [{section}]" if section else "at the top level"
-    return SiteFileError(f"{where}: unknown key {shown} {inside}; {hint}expected one of {listed}")
+    return SiteFileError(f"{where}: unknown key {shown} {inside}; {hint}expected one of {listed}", key=path)
 
 
 def _expectation(path: str, what: str) -> str:
@@ -325,5 +325,5 @@ def _with_true_north(assumptions: Assumptions, place: _Place, on: date | None) -
             grid=site.grid,
         )
     except SiteFileError as error:
-        raise SiteFileError(f"{place.source}: {error}") from error
+        raise SiteFileError(f"{place.source}: {error}", key="instrument.azimuth_from") from error
     return replace(assumptions, instrument=replace(instrument, north_offset=offset))
