@@ -282,7 +282,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         moment = feed.index.time_of_depth(depth) if moment is None else moment
         if moment is None:
             units = self.session.units
-            raise ValueError(f"The record does not reach {units.depth(depth)} {units.long}.")
+            raise ValueError(f"The record does not reach {depth / units.long_size:g} {units.long}.")
         return moment
 
     def _jumped(self, text: str | None) -> None:
