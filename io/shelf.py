@@ -2,8 +2,7 @@
 
 import os
 import tomllib
-from collections.abc import Callable, Iterator
-from concurrent.futures import ProcessPoolExecutor
+from collections.abc import Callable
 from dataclasses import dataclass
 from datetime import datetime
 from functools import lru_cache, partial
@@ -15,15 +14,13 @@ from eastfall.io.logformat import SUFFIX
 from eastfall.io.reduce import reduce_file
 from eastfall.io.safetext import safe
 from eastfall.io.seal import header_of, verify_log
+from eastfall.io.spread import spread
 from eastfall.io.tables import number
 from eastfall.physics.errors import EastfallError
 from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.settings import Assumptions
 
 CARD_KEYS = ("path", "site", "started_at", "kind", "depth_m", "verdict", "state", "error")
-_WORTH_A_POOL = 64
-"""Files from which on other processes are worth their start."""
-_BATCH = 8
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -45,7 +42,7 @@ class RunCard:
 
 
 @lru_cache(maxsize=32)
-def _curve(assumptions: Assumptions) -> ExpectedCurve:
+def curve_of(assumptions: Assumptions) -> ExpectedCurve:
     """Return the curve of a site; runs in one folder are often of few sites."""
     return expected_curve(assumptions)
 
@@ -74,7 +71,7 @@ def card(path: Path, *, judged: bool = True) -> RunCard:
         kind, started = safe(header.kind, 20), _instant(header.started_at)
         if not judged:
             return _card(path, _site_name(header.site), started, kind, None, "", verify_log(path).state, "")
-        reduction = reduce_file(path, curve_for=_curve)
+        reduction = reduce_file(path, curve_for=curve_of)
     except (EastfallError, OSError) as error:
         return _card(path, site, started, kind, depth, verdict, "", safe(str(error), 300))
     stations = reduction.result.stations
@@ -133,6 +130,7 @@ def list_runs(
     workers: int | None = None,
     *,
     judged: bool = True,
+    scheduler: str | None = None,
 ) -> tuple[RunCard, ...]:
     """List the runs in a folder.
 
@@ -142,8 +140,8 @@ def list_runs(
         Where run logs stand; folders inside it are not entered.
     progress : callable, optional
         Called with the number done and the number there is.
-    workers : int, optional
-        Processes; by default as many as there are cores if there are many files. 1 stays in this process.
+    workers, scheduler
+        Where it is done: see `io.spread`.
     judged : bool
         Whether to reduce each run for depth and verdict; else only headers and seals are read, which takes a tenth.
 
@@ -156,10 +154,13 @@ def list_runs(
     ------
     OSError
         The folder cannot be read.
+    InputError
+        No scheduler answers, or Dask is not installed.
     """
-    files = log_files(folder)
+    files = log_files(folder.absolute() if scheduler else folder)  # workers stand in a folder of their own
     found = []
-    for one in _cards(files, workers, partial(card, judged=judged)):
+    work = partial(card, judged=judged)
+    for one in spread(work, files, lost=_lost, workers=workers, scheduler=scheduler):
         found.append(one)
         if progress is not None:
             progress(len(found), len(files))
@@ -173,17 +174,8 @@ def _age(one: RunCard) -> float:
         return -inf
 
 
-def _cards(files: list[Path], workers: int | None, make: Callable[[Path], RunCard]) -> Iterator[RunCard]:
-    count = workers or ((os.cpu_count() or 1) if len(files) >= _WORTH_A_POOL else 1)
-    if count == 1:
-        yield from map(make, files)
-        return
-    import multiprocessing  # noqa: PLC0415 - only where other processes are started
-
-    # A fork would carry over a screen's threads and locks; a fresh interpreter takes nothing along.
-    context = multiprocessing.get_context("spawn")
-    with ProcessPoolExecutor(max_workers=count, mp_context=context) as pool:
-        yield from pool.map(make, files, chunksize=_BATCH)
+def _lost(path: Path, why: str) -> RunCard:
+    return _card(path, "", None, "", None, "", "", safe(why, 300))
 
 
 def card_row(one: RunCard) -> dict[str, Any]:

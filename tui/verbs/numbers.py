@@ -7,10 +7,19 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from eastfall.tui import words
-from eastfall.tui.verbs.options import an_input, as_format, print_json, print_rows
+from eastfall.tui.verbs.options import (
+    an_input,
+    an_input_or_folder,
+    as_format,
+    counted,
+    over_cores,
+    print_json,
+    print_rows,
+)
 
 if TYPE_CHECKING:
     from eastfall.io.reduce import Reduction
+    from eastfall.io.sitefile import SiteFile
 
 
 class _Depths(click.ParamType[tuple[float, ...]]):
@@ -64,7 +73,7 @@ def expect(site: Path, every: float | None, at: tuple[float, ...] | None, budget
 
 
 @click.command()
-@click.argument("log", type=an_input)
+@click.argument("log", type=an_input_or_folder)
 @click.option("--site", type=an_input, help="Another site file; needed for a plain-text capture.")
 @click.option(
     "--interval",
@@ -72,17 +81,34 @@ def expect(site: Path, every: float | None, at: tuple[float, ...] | None, budget
     metavar="S",
     help="Between the lines of a capture without time_s.",
 )
+@over_cores
 @as_format
-def reduce(log: Path, site: Path | None, interval: float | None, form: str) -> None:
+def reduce(
+    log: Path,
+    site: Path | None,
+    interval: float | None,
+    workers: int | None,
+    scheduler: str | None,
+    form: str,
+) -> None:
     """Work through a whole log: stations, verdicts, alarms, closure, rest point.
 
-    LOG is a run log, or a plain-text capture (with --site). Exit status 1 if a limit is exceeded.
+    LOG is a run log, a plain-text capture (with --site), or a folder: then every run log in it is worked through, and
+    a row for each is printed (with --format json, a list of all that each comes to). Exit status 1 if a limit is
+    exceeded, 2 if something cannot be used.
     """
+    from eastfall.io.folder import exceeded  # noqa: PLC0415
     from eastfall.io.reduce import reduce_file  # noqa: PLC0415
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
     from eastfall.io.tables import reduce_table  # noqa: PLC0415
 
-    found = reduce_file(log, site=load_site(site) if site else None, interval=interval)
+    settings = load_site(site) if site else None
+    if log.is_dir():
+        if interval is not None:
+            raise click.UsageError("--interval is for a capture; a folder is worked through for its run logs")
+        _many(log, settings, workers, scheduler, form)
+        return
+    found = reduce_file(log, site=settings, interval=interval)
     shape = reduce_table(found)
     if form == "json":
         print_json(shape)
@@ -95,13 +121,21 @@ def reduce(log: Path, site: Path | None, interval: float | None, form: str) -> N
     click.get_current_context().exit(1 if exceeded(found) else 0)
 
 
-def exceeded(found: "Reduction") -> bool:
-    """Tell whether a limit was exceeded: a station over, or an action alarm."""
-    from eastfall.physics.survey import ACTION  # noqa: PLC0415
+def _many(
+    folder: Path, site: "SiteFile | None", workers: int | None, scheduler: str | None, form: str
+) -> None:
+    """Print what every run log of a folder comes to."""
+    from eastfall.io.folder import SUMMARY_KEYS, reduce_folder  # noqa: PLC0415
 
-    return found.verdict == "over" or any(
-        one.name == ACTION and one.new == "active" for one in found.result.alarms
-    )
+    found = reduce_folder(folder, site=site, progress=counted(), workers=workers, scheduler=scheduler)
+    if form == "json":
+        print_json(found)
+    else:
+        print_rows((list(SUMMARY_KEYS), [[one[name] for name in SUMMARY_KEYS] for one in found]), form)
+    unusable = [one for one in found if one["error"]]
+    for one in unusable:
+        click.echo(f"eastfall: {one['error']}", err=True)
+    click.get_current_context().exit(2 if unusable else int(any(one["exceeded"] for one in found)))
 
 
 def _stations(shape: dict[str, Any]) -> tuple[list[str], list[list[Any]]]:

@@ -16,6 +16,7 @@ Table = tuple[Sequence[str], Sequence[Sequence[Any]]]
 """Column names with units, and rows."""
 
 an_input = click.Path(path_type=Path, dir_okay=False)
+an_input_or_folder = click.Path(path_type=Path)
 a_folder = click.Path(path_type=Path, file_okay=False)
 
 as_format = click.option(
@@ -40,6 +41,29 @@ def with_options(*options: Callable[[Any], Any]) -> Callable[[Any], Any]:
         return command
 
     return add
+
+
+over_cores = with_options(
+    click.option(
+        "--workers", type=click.IntRange(min=1), help="Processes for a folder; one a core by default."
+    ),
+    click.option(
+        "--scheduler",
+        metavar="tcp://HOST:PORT",
+        help="A Dask cluster that works through a folder instead of this machine.",
+    ),
+)
+"""Where a folder of runs is worked through."""
+
+
+def counted() -> Callable[[int, int], None] | None:
+    """Return what shows on standard error how far work on a folder is; None where nobody looks."""
+    return _count if sys.stderr.isatty() else None
+
+
+def _count(done: int, total: int) -> None:
+    """Say how far it is, and wipe it when it is done."""
+    click.echo(f"\r{done} of {total} runs" if done < total else "\r" + " " * 40 + "\r", nl=False, err=True)
 
 
 def print_json(value: object) -> None:

@@ -1,11 +1,19 @@
 """The verbs on what has been recorded: `report`, `verify`, `export`, `compare` and `runs`."""
 
-import sys
 from pathlib import Path
 
 import click
 
-from eastfall.tui.verbs.options import a_folder, an_input, as_format, print_json, print_rows, with_options
+from eastfall.tui.verbs.options import (
+    a_folder,
+    an_input,
+    as_format,
+    counted,
+    over_cores,
+    print_json,
+    print_rows,
+    with_options,
+)
 
 another_site = click.option(
     "--site", type=an_input, help="Another site file: what if? The log is not changed."
@@ -145,13 +153,21 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
     help="Only such runs.",
 )
 @click.option("--quick", is_flag=True, help="Headers and seals alone, without verdicts.")
-@click.option("--workers", type=click.IntRange(min=1), help="Processes; one a core by default.")
+@over_cores
 @as_format
-def runs(folder: Path, sort: str, only: str | None, quick: bool, workers: int | None, form: str) -> None:
+def runs(
+    folder: Path,
+    sort: str,
+    only: str | None,
+    quick: bool,
+    workers: int | None,
+    scheduler: str | None,
+    form: str,
+) -> None:
     """List the runs in a folder: site, date, kind, depth, verdict, intact or not."""
     from eastfall.io.shelf import CARD_KEYS, card_row, list_runs  # noqa: PLC0415
 
-    cards = list_runs(folder, _count if sys.stderr.isatty() else None, workers, judged=not quick)
+    cards = list_runs(folder, counted(), workers, judged=not quick, scheduler=scheduler)
     kept = [card_row(one) for one in cards]
     if only == "not-intact":
         kept = [one for one in kept if one["state"] != "intact"]
@@ -164,8 +180,3 @@ def runs(folder: Path, sort: str, only: str | None, quick: bool, workers: int | 
         print_json({"runs": kept})
     else:
         print_rows((list(CARD_KEYS), [[one[name] for name in CARD_KEYS] for one in kept]), form)
-
-
-def _count(done: int, total: int) -> None:
-    """Show on standard error how far the work is, and wipe it when it is done."""
-    click.echo(f"\r{done} of {total} runs" if done < total else "\r" + " " * 40 + "\r", nl=False, err=True)
