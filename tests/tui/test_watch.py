@@ -261,6 +261,7 @@ async def test_jump_takes_a_depth_and_refuses_a_time_while_live(session: Make, s
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot())
         await pilot.press("j", *"2:00", "enter")
+        await pilot.pause()
         assert isinstance(app.screen, AskText)
         assert "give a depth" in "\n".join(lines(app))
         await pilot.press(*["backspace"] * 4, *"204 m".replace(" ", ""), "enter")
@@ -329,6 +330,7 @@ async def test_replay_keys_reach_the_replay(session: Make, snapshot: Snap) -> No
         )
         await pilot.press("j", *"2:05", "enter", "j", *"300", "enter")
         await pilot.press("j", *"400", "enter")
+        await pilot.pause()
         assert "does not reach 400 m" in "\n".join(lines(app))
         await pilot.press("escape", "q")
     assert feed.calls == [

@@ -69,6 +69,15 @@ def health_line(snapshot: Snapshot) -> tuple[Piece, ...]:
     return tuple(pieces)
 
 
+def told(snapshot: Snapshot) -> tuple[object, ...]:
+    """Return what must change for health to be written again at once; its counts alone wait for half a second."""
+    health = snapshot.health
+    if health is None:
+        return ()
+    states = tuple((one.state, one.queue_dropped) for one in health.links)
+    return states, health.rejected, health.log_state, health.log_lost, int(2.0 * snapshot.time)
+
+
 class HealthList(CellWidget):
     """Links, bad lines by kind, and the record."""
 
