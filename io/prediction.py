@@ -9,7 +9,7 @@ import numpy as np
 from eastfall.io.errors import SiteFileError
 from eastfall.io.safetext import safe
 from eastfall.physics.expected import ExpectedCurve, expected_curve
-from eastfall.physics.settings import Assumptions
+from eastfall.physics.settings import ARCSECOND, Assumptions
 
 _MM = 1000.0
 _MOST = 1_000_000
@@ -84,6 +84,12 @@ def predict(assumptions: Assumptions, at: list[float]) -> Prediction:
     names = list(stations[0]) if stations else []
     running = f", line at {speed:g} m/s" if speed else ""
     notes = [f"note: {one}" for one in curve.warnings]
+    if not assumptions.site.deflections:
+        arcsec = assumptions.site.u_deflection / ARCSECOND
+        notes.append(
+            f"note: masses nearby are not modelled; they are taken to bend the vertical by {arcsec:g}″ (u) from collar "
+            "to bottom, and a dense ore body can do more: give site.deflections_arcsec where it was measured"
+        )
     if contact is not None:
         notes.insert(0, f"a body dropped at the collar meets the wall at {contact:.1f} m")
     return Prediction(

@@ -339,8 +339,27 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
         fall_time=there.time,
         fall_speed=there.speed,
         wall_contact_depth=_contact(assumptions, path),
-        warnings=tuple(path.warnings) if assumptions.run.kind == "drop" else (),
+        warnings=_warnings(models, path, depth),
     )
+
+
+def _warnings(models: Models, path: Trajectory, depth: NDArray[np.float64]) -> tuple[str, ...]:
+    """Say where the run's own answer is outside its model."""
+    assumptions = models.assumptions
+    if assumptions.run.kind == "drop":
+        return tuple(path.warnings)
+    if assumptions.run.kind != "hung" and assumptions.run.reference != "hung-line":
+        return ()
+    found = hang(models.field, assumptions.line, depth[depth <= assumptions.shaft.depth], models.air)
+    warnings = []
+    if bool(found.is_swamped.any()):
+        warnings.append(
+            "the air moves the bob farther than all else together, and its speed is hardly known: "
+            "the classical practice is to stop the fan"
+        )
+    if not bool(found.is_linear.all()):
+        warnings.append("the line leans by more than 0.05 rad: beyond the theory of small slopes")
+    return tuple(warnings)
 
 
 def _contact(assumptions: Assumptions, path: Trajectory) -> float | None:

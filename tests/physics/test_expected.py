@@ -149,6 +149,14 @@ def test_a_narrow_shaft_is_met_by_a_falling_body_where_the_room_is_used_up(shaft
     assert expected_curve(base).wall_contact_depth is None
 
 
+def test_air_that_swamps_the_rest_is_pointed_out_for_a_hung_line_only(shaft):
+    """1 m/s across 20 m of a wire moves its bob more than the curved vertical does: said, with what is usually done."""
+    air = Air(cross_flow=((100.0, 120.0, 1.0, 0.0),))
+    assert any("stop the fan" in one for one in expected_curve(shaft("hung", air=air)).warnings)
+    assert expected_curve(shaft("hung")).warnings == ()
+    assert expected_curve(shaft("guided", air=air)).warnings == ()
+
+
 @pytest.mark.invariant
 def test_north_and_south_of_the_equator_mirror_each_other(shaft):
     """East offsets are the same at ±φ and north offsets change sign."""
