@@ -66,9 +66,45 @@ class _Columns:
     u: Floats
 
 
-def one_row_a_dot(rows: Rows, along: Floats) -> Rows:
-    """Return the first row of each dot and the last of all: enough for curves that are smooth."""
-    return Rows(rows.data[:, np.append(Runs.of(along).starts, len(rows) - 1)])
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Journey:
+    """The rows of a picture laid along its depth axis, worked out once for both panels.
+
+    The newest pass is parted where its last dot of depth begins: all before that is as it will stay, and need not be
+    drawn again until a further dot is reached.
+    """
+
+    past: Rows
+    """Earlier passes."""
+    now: Rows
+    """The newest pass."""
+    along: Floats
+    """Its depths in dots."""
+    smooth: Rows
+    """Its first row in each dot: enough for curves that bend little."""
+    settled: int
+    """How many of its rows are as they will stay."""
+    known_by: tuple[float, ...]
+    """What tells one settled part from another."""
+
+    @classmethod
+    def of(cls, rows: Rows, depth: Axis) -> "Journey":
+        """Part and group rows along a depth axis."""
+        begin = last_pass(rows)
+        now = Rows(rows.data[:, begin:])
+        along = depth.dot(now.column("depth"))
+        starts = Runs.of(along).starts
+        settled = int(starts[-1]) if starts.size else 0
+        time = now.column("time")
+        known_by = (begin, settled, starts.size, float(time[0]), float(time[settled])) if starts.size else ()
+        return cls(
+            past=Rows(rows.data[:, :begin]),
+            now=now,
+            along=along,
+            smooth=Rows(now.data[:, starts]),
+            settled=settled,
+            known_by=known_by,
+        )
 
 
 class PanelGround:
@@ -108,10 +144,14 @@ class PanelGround:
 
     def _about(self, place: Floats, middle: Floats, off: Floats, role: Role) -> None:
         """Draw a pair of curves to both sides of one."""
-        plane, gap = self._plane(), np.full(1, np.nan)
+        plane = self._plane()
+        self._pair(plane, place, middle, off)
+        self._put(plane, role)
+
+    def _pair(self, plane: Plane, place: Floats, middle: Floats, off: Floats) -> None:
+        gap = np.full(1, np.nan)
         across = self.axis.dot(np.concatenate([middle - off, gap, middle + off]))
         polyline(plane, across, np.concatenate([place, gap, place]))
-        self._put(plane, role)
 
     def _mark(self, place: float, row: int, mark: str, role: Role) -> None:
         """Write a mark at a place across the panel [dots]; outside of it nothing."""
@@ -146,6 +186,8 @@ class Panel(PanelGround):
     ----------
     view : ProfileView
         What to draw.
+    journey : Journey
+        Its rows along the depth axis.
     which : int
         0 for east, 1 for north.
     depth : Axis
@@ -157,29 +199,32 @@ class Panel(PanelGround):
     """
 
     def __init__(
-        self, view: ProfileView, which: int, depth: Axis, sheet: Raster, place: tuple[int, int]
+        self,
+        view: ProfileView,
+        journey: Journey,
+        which: int,
+        *,
+        depth: Axis,
+        sheet: Raster,
+        place: tuple[int, int],
     ) -> None:
         super().__init__(which, depth, sheet, place, view.units)
-        self.view = view
-        rows = view.snapshot.rows
-        begin = last_pass(rows)
-        self.past, self.now = Rows(rows.data[:, :begin]), Rows(rows.data[:, begin:])
+        self.view, self.journey = view, journey
 
     def draw(self) -> None:
         """Draw grid, band, limits, curves and labels, the important ones last."""
-        along = self._along(self.now)
-        kept = one_row_a_dot(self.now, along) if len(self.now) else self.now
-        self._scale(kept)
+        journey = self.journey
+        self._scale()
         self._still(Role.DIM, (), self._zero)
-        if len(self.past):
-            last = self.past.data[:, -1]
-            known_by = (len(self.past), float(last[0]), float(last[1]))
-            self._still(Role.PAST, known_by, lambda plane: self._trace(plane, self.past))
-        self._bounds(kept)
+        if len(journey.past):
+            last = journey.past.data[:, -1]
+            known_by = (len(journey.past), float(last[0]), float(last[1]))
+            self._still(Role.PAST, known_by, lambda plane: self._trace(plane, journey.past))
+        if len(journey.now):
+            self._bounds()
         self._extras()
-        plane = self._plane()
-        self._trace(plane, self.now)
-        self._put(plane, Role.MEASURED)
+        if len(journey.now):
+            self._newest()
         self._labels()
         self._marks()
 
@@ -192,11 +237,12 @@ class Panel(PanelGround):
             measured, expected = measured - expected, np.zeros_like(expected)
         return _Columns(measured=measured, expected=expected, u=rows.column(f"u_{name}"))
 
-    def _scale(self, kept: Rows) -> None:
+    def _scale(self) -> None:
         """Fit the axis to what is in view; the limits count, so that the eye sees how far off they are."""
-        part, limit = self._columns(kept), kept.column("action")
-        held = [np.where(self._inside(kept), part.expected + side * limit, np.nan) for side in (-1.0, 1.0)]
-        for rows in (self.past, self.now):
+        smooth = self.journey.smooth
+        part, limit = self._columns(smooth), smooth.column("action")
+        held = [np.where(self._inside(smooth), part.expected + side * limit, np.nan) for side in (-1.0, 1.0)]
+        for rows in (self.journey.past, self.journey.now):
             values = self._columns(rows).measured
             if self.view.sight.span is not None:
                 values = values[self._inside(rows)]
@@ -209,10 +255,6 @@ class Panel(PanelGround):
         depth = rows.column("depth")
         inside: Plane = (depth >= self.depth.low) & (depth <= self.depth.high)
         return inside
-
-    def _along(self, rows: Rows) -> Floats:
-        along: Floats = self.depth.dot(rows.column("depth"))
-        return along
 
     def _still(self, role: Role, known_by: Hashable, draw: Callable[[Plane], None]) -> None:
         """Put a plane that stays as it is until the axes change, or what it is known by."""
@@ -234,20 +276,31 @@ class Panel(PanelGround):
 
     def _trace(self, plane: Plane, rows: Rows) -> None:
         """Draw what was measured."""
-        along = self._along(rows)
+        along = self.depth.dot(rows.column("depth"))
         trace(plane, Runs.of(along), along, self.axis.dot(self._columns(rows).measured), upright=True)
 
-    def _bounds(self, kept: Rows) -> None:
-        """Draw band, limits and expected curve of the pass."""
-        if not len(kept):
-            return
-        place, part = self._along(kept), self._columns(kept)
-        self._about(place, part.expected, COVERAGE_FACTOR * part.u, Role.BAND)
-        self._about(place, part.expected, kept.column("warning"), Role.WARNING)
-        self._about(place, part.expected, kept.column("action"), Role.ACTION)
+    def _newest(self) -> None:
+        """Draw what was measured in the newest pass."""
+        data, settled = self.journey.now.data, self.journey.settled
+        self._still(
+            Role.MEASURED, self.journey.known_by, lambda plane: self._trace(plane, Rows(data[:, :settled]))
+        )
         plane = self._plane()
-        polyline(plane, self.axis.dot(part.expected), place)
-        self._put(plane, Role.EXPECTED)
+        self._trace(plane, Rows(data[:, max(settled - 1, 0) :]))
+        self._put(plane, Role.MEASURED)
+
+    def _bounds(self) -> None:
+        """Draw band, limits and expected curve of the newest pass."""
+        smooth, known_by = self.journey.smooth, self.journey.known_by
+        place, part = self.depth.dot(smooth.column("depth")), self._columns(smooth)
+        for role, off in (
+            (Role.BAND, COVERAGE_FACTOR * part.u),
+            (Role.WARNING, smooth.column("warning")),
+            (Role.ACTION, smooth.column("action")),
+        ):
+            self._still(role, known_by, partial(self._pair, place=place, middle=part.expected, off=off))
+        across = self.axis.dot(part.expected)
+        self._still(Role.EXPECTED, known_by, partial(polyline, x=across, y=place))
 
     def _extras(self) -> None:
         """Draw where a bob would hang and a dropped body would be, the whole way down, with a letter at the end."""

@@ -8,7 +8,7 @@ from eastfall.tui.raster import Kept, Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.units import Units
 from eastfall.tui.widgets.cells import CellWidget
-from eastfall.tui.widgets.panel import BELOW, GUTTER, Panel, ProfileView, row_of
+from eastfall.tui.widgets.panel import BELOW, GUTTER, Journey, Panel, ProfileView, row_of
 
 LEAST_WIDTH, LEAST_HEIGHT = 26, 6
 
@@ -41,8 +41,9 @@ class Profile(CellWidget):
         depth_labels(sheet, depth, focus, self.view.units)
         left = (sheet.width - GUTTER - 1) // 2
         places = ((GUTTER, left), (GUTTER + left + 1, sheet.width - GUTTER - left - 1))
+        journey = Journey.of(self.view.snapshot.rows, depth)
         for which, place in enumerate(places):
-            Panel(self.view, which, depth, sheet, place).draw()
+            Panel(self.view, journey, which, depth=depth, sheet=sheet, place=place).draw()
         _legend(sheet, self.view)
 
 
