@@ -2,7 +2,7 @@
 
 from collections.abc import Iterable
 from dataclasses import dataclass
-from math import hypot, isfinite
+from math import isfinite
 from typing import Literal
 
 import numpy as np
@@ -51,11 +51,15 @@ class Plan(CellWidget):
 
     view: PlanView | None = None
     scope: Scope = "close"
-    aspect: float = CELL_ASPECT
 
     def __init__(self, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
         super().__init__(id=id)
         self.kept = Kept()
+
+    @property
+    def aspect(self) -> float:
+        """Height of a character cell over its width."""
+        return getattr(self.app, "cell_aspect", CELL_ASPECT)
 
     def show(self, view: PlanView, scope: Scope) -> None:
         """Draw another view."""
@@ -99,13 +103,14 @@ class PlanSheet:
         middle = (one.expected_east, one.expected_north)
         if not all(map(isfinite, middle)):
             middle = (0.0, 0.0)
-        points = [
-            (one.measured_east, one.measured_north),
-            *zip(*view.trail, strict=True),
-            *zip(*view.landings, strict=True),
-        ]
-        far = [hypot(east - middle[0], north - middle[1]) for east, north in points]
-        reach = max([one.action * 1.12, *(1.1 * value for value in far if isfinite(value))])
+        measured = (np.array([one.measured_east]), np.array([one.measured_north]))
+        far = np.concatenate(
+            [
+                np.hypot(east - middle[0], north - middle[1])
+                for east, north in (measured, view.trail, view.landings)
+            ]
+        )
+        reach = max(one.action * 1.12, 1.1 * float(np.max(far, where=np.isfinite(far), initial=0.0)))
         step = round_step(2.0 * reach, 40)
         return middle, step * np.ceil(reach / step)
 
@@ -165,7 +170,7 @@ class PlanSheet:
             ring(plane, (x, y), (dots, dots / self.squash), gaps=gaps)
             return self.sheet.packed(plane)
 
-        self.sheet.put(self.kept.packed((role, self.size, x, y, dots), drawn), role, 0, 1)
+        self.sheet.put(self.kept.packed((role, self.size, x, y, dots, self.squash), drawn), role, 0, 1)
 
     def _evidence(self, view: PlanView, one: Standing | Station) -> None:
         expected = (one.expected_east, one.expected_north)
