@@ -6,6 +6,7 @@ import os
 import signal
 import sys
 from collections.abc import Callable
+from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
 from typing import TYPE_CHECKING, ClassVar
@@ -19,15 +20,19 @@ from eastfall.io.logformat import SUFFIX
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.preferences import Remembered
 from eastfall.tui.raster import BRAILLE, Glyphs
 from eastfall.tui.screens.dialogs import Confirm
 from eastfall.tui.screens.help import HelpScreen
+from eastfall.tui.screens.settings import SettingsScreen
 from eastfall.tui.screens.start import Choice, Ports, StartScreen
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session, curves_of
 from eastfall.tui.store import Snapshot
 from eastfall.tui.terminal import glyphs_for, refuse_unless_screen, wants_no_colour
 from eastfall.tui.themes import MONO, THEMES
+from eastfall.tui.units import UNITS, Units
+from eastfall.tui.widgets.cells import CellWidget
 
 if TYPE_CHECKING:
     from eastfall.io.replay import Replay
@@ -49,10 +54,12 @@ class Dashboard(App[int]):
         The screen to begin with.
     glyphs : Glyphs
         How this terminal shows dots.
-    theme : str
-        Name of one of the program's themes.
+    theme : str, optional
+        Name of one of the program's themes; as remembered by default.
     no_colour : bool
         Keep every colour code out of the output.
+    remembered : Remembered, optional
+        The person's settings; the defaults, and nothing kept, without.
     """
 
     CSS_PATH = "app.tcss"
@@ -65,16 +72,20 @@ class Dashboard(App[int]):
         first: Screen[Choice | None],
         *,
         glyphs: Glyphs = BRAILLE,
-        theme: str = THEMES[0].name,
+        theme: str | None = None,
         no_colour: bool = False,
+        remembered: Remembered | None = None,
     ) -> None:
         # Textual picks its colour filter here, before a theme of ours can be set: ansi mode sends none of its own.
         super().__init__(ansi_color=True if no_colour else None)
         for one in THEMES:
             self.register_theme(one)
-        self.theme = MONO.name if no_colour else theme
+        self.remembered = remembered or Remembered()
+        self.theme = MONO.name if no_colour else theme or theme_named(self.remembered.now.theme)
         self.glyphs = glyphs
-        self.muted = False
+        self.muted = not self.remembered.now.sound
+        self.key_changes, self._refused = keys.moved(self.remembered.now.keys)
+        self.set_keymap(self.key_changes)
         self.first = first
         self.choice: Choice | None = None
         self.feed: Feed | None = None
@@ -91,6 +102,8 @@ class Dashboard(App[int]):
                 with contextlib.suppress(NotImplementedError, RuntimeError, ValueError):
                     loop.add_signal_handler(number, self.exit, 0)
         self.push_screen(self.first, self._chosen)
+        for complaint in filter(None, (self.remembered.complaint, *self._refused)):
+            self.notify(safe(complaint), markup=False, severity="warning", timeout=10)
         if self.feed is not None:
             self.feed.start()
 
@@ -117,17 +130,56 @@ class Dashboard(App[int]):
         if not self._no_colour:
             names = [one.name for one in THEMES]
             self.theme = names[(names.index(self.theme) + 1) % len(names)]
+            self.remember(theme=theme_word(self.theme))
+
+    @property
+    def units(self) -> Units:
+        """What lengths are shown in."""
+        return UNITS[self.remembered.now.units]
+
+    @property
+    def cell_aspect(self) -> float:
+        """Height of a character cell over its width."""
+        return self.remembered.now.cell_aspect
+
+    def remember(self, **settings: object) -> None:
+        """Change settings and keep them; say so when they cannot be kept."""
+        complaint = self.remembered.change(**settings)
+        if complaint:
+            self.notify(complaint, markup=False, severity="warning", timeout=6)
 
     def action_mute(self) -> None:
         """Turn the sound off or on."""
         self.muted = not self.muted
+        self.remember(sound=not self.muted)
         self.notify("sound off" if self.muted else "sound on", markup=False, timeout=2)
+
+    def action_settings(self) -> None:
+        """Open the settings; a dialog has none."""
+        if not self.screen.is_modal and not isinstance(self.screen, SettingsScreen):
+            self.push_screen(SettingsScreen(self.remembered, self._set))
+
+    def _set(self, name: str, value: object) -> None:
+        """Take a changed setting at once, as far as the screens in front can."""
+        self.remember(**{name: value})
+        if name == "theme" and not self._no_colour:
+            self.theme = theme_named(self.remembered.now.theme)
+        self.muted = not self.remembered.now.sound
+        if name == "glyphs":
+            self.glyphs = glyphs_for(os.environ, sys.stdout.encoding, self.remembered.now.glyphs)
+        if isinstance(self.first, WatchScreen):
+            self.first.session = replace(self.first.session, units=self.units)
+        for screen in self.screen_stack:
+            for widget in screen.query(CellWidget):
+                widget.redraw()
 
     def action_keys(self) -> None:
         """Open the help page of the screen in front; a dialog or the help page itself has none."""
         if not self.screen.is_modal and not isinstance(self.screen, HelpScreen):
             places: tuple[str, ...] = getattr(self.screen, "PLACES", ())
-            self.push_screen(HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed)))
+            self.push_screen(
+                HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed), changes=self.key_changes)
+            )
 
     def action_leave(self) -> None:
         """Leave; a run that is being recorded is asked about first."""
@@ -146,7 +198,23 @@ class Dashboard(App[int]):
 
 def watch_app(session: Session, **look: object) -> Dashboard:
     """Return the application on a watch screen; its feed is set by the caller."""
+    remembered = look.get("remembered")
+    if isinstance(remembered, Remembered):
+        session = replace(session, units=UNITS[remembered.now.units])
     return Dashboard(WatchScreen(session), **look)  # type: ignore[arg-type]  # the caller names Dashboard's arguments
+
+
+def theme_named(word: str) -> str:
+    """Return the theme's name for a word of the settings."""
+    return _THEME_OF[word]
+
+
+def theme_word(name: str) -> str:
+    """Return the word of the settings for a theme's name."""
+    return next(word for word, one in _THEME_OF.items() if one == name)
+
+
+_THEME_OF = dict(zip(("dark", "light", "none"), (one.name for one in THEMES), strict=True))
 
 
 def terminal_look() -> dict[str, object]:
@@ -158,9 +226,11 @@ def terminal_look() -> dict[str, object]:
         When there is no screen to draw on.
     """
     refuse_unless_screen(os.environ, is_terminal=sys.stdin.isatty() and sys.stdout.isatty())
+    remembered = Remembered.of(os.environ)
     return {
-        "glyphs": glyphs_for(os.environ, sys.stdout.encoding),
+        "glyphs": glyphs_for(os.environ, sys.stdout.encoding, remembered.now.glyphs),
         "no_colour": wants_no_colour(os.environ),
+        "remembered": remembered,
     }
 
 
@@ -196,6 +266,8 @@ def run_live(
         assumptions=site.assumptions, mode="live", title=safe(site.assumptions.site.name), bob=bob, fall=fall
     )
     app = watch_app(session, **look)
+    if Path(site.path).is_file():
+        app.remembered.used(Path(site.path))
     return _shown(app, LiveFeed(run, app.take))
 
 

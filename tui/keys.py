@@ -1,8 +1,11 @@
 """Every key of the program in one table; bindings, the key line and the help page are made from it."""
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 from textual.binding import Binding
+from textual.keys import Keys as NamedKeys
+from textual.keys import _character_to_key
 
 
 @dataclass(frozen=True, slots=True)
@@ -19,6 +22,11 @@ class Key:
     help: str
     where: str = "watch"
 
+    @property
+    def full_id(self) -> str:
+        """How settings name it."""
+        return f"{self.where}.{self.id}"
+
     def binding(self) -> Binding:
         """Return Textual's binding; its id lets a user's keymap move it."""
         return Binding(
@@ -26,7 +34,7 @@ class Key:
             self.action,
             self.name or self.help,
             show=False,
-            id=f"{self.where}.{self.id}",
+            id=self.full_id,
             tooltip=self.help,
         )
 
@@ -68,10 +76,50 @@ TABLE = (
     Key("theme", "t", "theme", "t", "", "Colours: dark, light, none", "all"),
     Key("mute", "m", "mute", "m", "", "Sound of new alarms on or off", "all"),
     Key("help", "question_mark,f1,h", "keys", "?", "help", "This page", "all"),
+    Key("settings", "f2", "settings", "F2", "", "Settings: units, glyphs, sound, colours", "all"),
     Key("quit", "q,ctrl+c", "leave", "q", "quit", "Leave; a recording is asked about first", "all"),
     Key("close", "escape,q", "close", "esc", "close", "Back to the picture", "page"),
+    Key("planner", "p", "planner", "p", "", "Drop run: plan the release: wall, spread, best point"),
     Key("sort", "o", "sort", "o", "order", "Order by depth, by residual, by time", "stations"),
     Key("filter", "f", "filter", "f", "filter", "Show all, or only what is over or undecided", "stations"),
+    *(
+        key
+        for where in ("explorer", "planner")
+        for key in (
+            Key("up", "up", "move(-1)", "↑ ↓", "input", "The input above or below", where),
+            Key("down", "down", "move(1)", "", "", "The input below", where),
+            Key(
+                "less",
+                "left",
+                "step(-1)",
+                "← →",
+                "less, more",
+                "A step less or more, or another choice",
+                where,
+            ),
+            Key("more", "right", "step(1)", "", "", "A step more", where),
+            Key("restore", "r", "restore", "r", "as in file", "The input in view as in the site file", where),
+            Key("restore-all", "R", "restore_all", "R", "", "All inputs as in the site file", where),
+        )
+    ),
+    Key("keep", "k", "keep", "k", "keep as B", "Keep this prediction as B, to compare with", "explorer"),
+    Key("swap", "x", "swap", "x", "", "Change over A and B", "explorer"),
+    Key("alone", "n", "alone", "n", "", "Forget B", "explorer"),
+    Key("compare", "v", "compare", "v", "table", "Table of: expected, hanging bob, dropped body", "explorer"),
+    Key("depths", "d", "depths", "d", "depths", "Depths of the table", "explorer"),
+    Key("extras", "b", "extras", "b", "", "Show or hide the bob's and the dropped body's curve", "explorer"),
+    Key("budget", "u", "budget", "u", "budget", "Where the uncertainty comes from", "explorer"),
+    Key("plan", "p", "plan", "p", "drop", "Plan a drop with these inputs", "explorer"),
+    Key(
+        "best",
+        "g",
+        "best",
+        "g",
+        "best point",
+        "Release where the body keeps farthest from the wall",
+        "planner",
+    ),
+    Key("scope", "w", "scope", "w", "wall", "Plan at the scale of the wall, or close by", "planner"),
 )
 
 REPLAY_ONLY = frozenset({"back", "on", "step", "slower", "faster", "next", "previous"})
@@ -93,13 +141,110 @@ def usable(places: tuple[str, ...], *, replay: bool) -> list[Key]:
     return [one for one in TABLE if one.where in places and one.id not in hidden]
 
 
-def line(places: tuple[str, ...], *, replay: bool) -> list[tuple[str, str]]:
-    """Return key and name for the key line: help, quit and pause, then those of a replay, then the others."""
+def line(
+    places: tuple[str, ...], *, replay: bool, changes: Mapping[str, str] | None = None
+) -> list[tuple[str, str]]:
+    """Return key and name for the key line: help, quit and pause, then those of a replay, then the others.
+
+    Parameters
+    ----------
+    places : tuple of str
+        Where the keys hold.
+    replay : bool
+        Leave out what a record does not do, or what only a record does.
+    changes : mapping, optional
+        As `moved` returns them.
+    """
     named = [one for one in usable(places, replay=replay) if one.name]
     named.sort(key=lambda one: _FIRST.index(one.id) if one.id in _FIRST else 9 - (one.id in REPLAY_ONLY))
-    return [(one.shown, one.name) for one in named]
+    return [(shown(one, changes), one.name) for one in named]
 
 
-def page(places: tuple[str, ...], *, replay: bool) -> list[tuple[str, str]]:
-    """Return key and help for the help page; the second key of a pair is told with the first."""
-    return [(one.shown, one.help) for one in usable(places, replay=replay) if one.shown]
+def page(
+    places: tuple[str, ...], *, replay: bool, changes: Mapping[str, str] | None = None
+) -> list[tuple[str, str]]:
+    """Return key and help for the help page; the second key of a pair is told with the first, unless it was moved."""
+    told = [(shown(one, changes), one.help) for one in usable(places, replay=replay)]
+    return [(key, what) for key, what in told if key]
+
+
+# Keys that a person moved.
+
+_TOGETHER = (
+    ("watch", "all"),
+    ("stations", "page", "all"),
+    ("explorer", "page", "all"),
+    ("planner", "page", "all"),
+)
+"""Places whose keys hold at the same time."""
+_STAYS = {"all.quit": "ctrl+c", "page.close": "escape"}
+"""Keys that no setting takes away: there is always a way out."""
+TYPING = (*"0123456789", "full_stop", "comma", "minus", "backspace", "delete")
+"""Keys that type a number where inputs are changed."""
+_SHOWN = {"space": "space", "escape": "esc", "pageup": "PgUp", "pagedown": "PgDn"}
+
+
+def shown(one: Key, changes: Mapping[str, str] | None) -> str:
+    """Return how a key is written for a reader, after what was moved."""
+    moved_to = (changes or {}).get(one.full_id, "").split(",", maxsplit=1)[0]
+    if not moved_to:
+        return one.shown
+    letter = next((chr(code) for code in range(33, 127) if _character_to_key(chr(code)) == moved_to), "")
+    return letter or _SHOWN.get(moved_to, moved_to)
+
+
+def moved(wanted: Mapping[str, str]) -> tuple[dict[str, str], list[str]]:
+    """Check which keys a person wants elsewhere.
+
+    Parameters
+    ----------
+    wanted : mapping
+        From "place.id" of the table to one key: a letter or sign, or a name such as "f5" or "ctrl+n".
+
+    Returns
+    -------
+    tuple
+        What holds, from the same names to Textual's names of keys; and a line for each wish that does not.
+    """
+    table = {one.full_id: one for one in TABLE}
+    holds: dict[str, str] = {}
+    refused = []
+    for name, key in wanted.items():
+        named = _named(key)
+        if name not in table:
+            refused.append(f"keys: there is no {name!r}; the names stand in the settings screen")
+        elif named is None:
+            refused.append(f"keys: {name} is {key!r}; expected one key such as N, f5 or ctrl+n")
+        else:
+            holds[name] = ",".join(filter(None, (named, _STAYS.get(name))))
+    for name in list(holds):
+        other = _clash(table[name], holds, table)
+        if other is not None:
+            refused.append(f"keys: {name} stays as it is: {wanted[name]} is already {other.full_id}")
+            del holds[name]
+    return holds, refused
+
+
+def _named(key: str) -> str | None:
+    """Return Textual's name of a key; None for what is no single key."""
+    if len(key) == 1 and key.isprintable():
+        return _character_to_key(key)
+    plain = key.lower()
+    base = plain.removeprefix("ctrl+").removeprefix("shift+")
+    known = {one.value for one in NamedKeys if not one.value.startswith("<")}
+    modified = base != plain and len(base) == 1 and base.isalnum()
+    return plain if plain in known or modified else None
+
+
+def _clash(one: Key, holds: Mapping[str, str], table: Mapping[str, Key]) -> Key | None:
+    """Return another key of the same places that is the same after all moves."""
+    mine = set(holds[one.full_id].split(","))
+    if one.where in {"explorer", "planner", "all"} and mine & set(TYPING):
+        return next(key for key in table.values() if key.full_id == "explorer.up")
+    beside = {place for places in _TOGETHER if one.where in places for place in places}
+    for other in table.values():
+        if other is one or other.where not in beside:
+            continue
+        if mine & set(holds.get(other.full_id, other.keys).split(",")):
+            return other
+    return None

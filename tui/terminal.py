@@ -21,9 +21,9 @@ def refuse_unless_screen(environment: Mapping[str, str], *, is_terminal: bool) -
         raise InputError(f"TERM is {environment['TERM']}: this terminal cannot place text; {advice}")
 
 
-def glyphs_for(environment: Mapping[str, str], encoding: str | None) -> Glyphs:
-    """Return the finest glyphs that will show; EASTFALL_GLYPHS (braille, half, ascii) overrules."""
-    asked = environment.get("EASTFALL_GLYPHS")
+def glyphs_for(environment: Mapping[str, str], encoding: str | None, wish: str = "auto") -> Glyphs:
+    """Return the finest glyphs that will show; a wish overrules, and EASTFALL_GLYPHS (braille, half, ascii) that."""
+    asked = environment.get("EASTFALL_GLYPHS") or wish
     if asked in GLYPHS:
         return GLYPHS[asked]
     if not _can(encoding, "⣿"):

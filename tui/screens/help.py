@@ -1,5 +1,6 @@
 """The help page: the keys of the screen one came from, and how to read what is on it."""
 
+from collections.abc import Mapping
 from typing import ClassVar
 
 from textual.app import ComposeResult
@@ -35,9 +36,11 @@ Plan, north up
   x         rest point of a swing, in its 95 % ellipse"""
 
 
-def key_table(places: tuple[str, ...], *, replay: bool) -> str:
+def key_table(places: tuple[str, ...], *, replay: bool, changes: Mapping[str, str] | None = None) -> str:
     """Return the keys of some places, one a line."""
-    return "\n".join(f"{shown:<10}{what}" for shown, what in keys.page(places, replay=replay))
+    return "\n".join(
+        f"{shown:<10}{what}" for shown, what in keys.page(places, replay=replay, changes=changes)
+    )
 
 
 class HelpScreen(Screen[None]):
@@ -45,9 +48,9 @@ class HelpScreen(Screen[None]):
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
 
-    def __init__(self, *places: str, replay: bool = False) -> None:
+    def __init__(self, *places: str, replay: bool = False, changes: Mapping[str, str] | None = None) -> None:
         super().__init__()
-        self._table = key_table((*places, "all"), replay=replay)
+        self._table = key_table((*places, "all"), replay=replay, changes=changes)
 
     def compose(self) -> ComposeResult:
         """Show the keys, how to read the picture, and the cautions."""

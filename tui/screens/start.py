@@ -91,7 +91,11 @@ class StartScreen(PaintedScreen[Choice | None]):
     def on_mount(self) -> None:
         """Take the keys."""
         self.query_one(OptionList).focus()
-        self.query_one(KeyLine).show(("↑ ↓", "move"), ("enter", "choose"), *keys.line(("all",), replay=False))
+        self.query_one(KeyLine).show(
+            ("↑ ↓", "move"),
+            ("enter", "choose"),
+            *keys.line(("all",), replay=False, changes=getattr(self.app, "key_changes", None)),
+        )
 
     def _options(self) -> list[Option | None]:
         options: list[Option | None] = [_head("Try it without an instrument")]

@@ -88,7 +88,10 @@ class StationsScreen(PaintedScreen[int | None]):
         """Fill the table."""
         self.query_one(LongTable).focus()
         self.show(self._snapshot)
-        self.query_one(KeyLine).show(("enter", "open"), *keys.line(("stations", "page"), replay=False))
+        self.query_one(KeyLine).show(
+            ("enter", "open"),
+            *keys.line(("stations", "page"), replay=False, changes=getattr(self.app, "key_changes", None)),
+        )
 
     def show(self, snapshot: Snapshot) -> None:
         """Show a newer snapshot."""

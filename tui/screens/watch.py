@@ -126,7 +126,13 @@ class WatchScreen(PaintedScreen[Choice | None]):
             self._told = told(latest)
             self._line("health").show(*health_line(latest))
             self.query_one(HealthList).show(latest)
-        self.query_one(KeyLine).show(*keys.line(("watch", "all"), replay=latest.mode == "replay"))
+        self.query_one(KeyLine).show(
+            *keys.line(
+                ("watch", "all"),
+                replay=latest.mode == "replay",
+                changes=getattr(self.app, "key_changes", None),
+            )
+        )
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms)
 
