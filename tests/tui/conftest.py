@@ -18,8 +18,9 @@ WARNING, ACTION = 0.015, 0.030
 
 
 @pytest.fixture(autouse=True)
-def plain_environment(monkeypatch: pytest.MonkeyPatch) -> None:
-    """Take away what would change colours, glyphs and motion."""
+def plain_environment(monkeypatch: pytest.MonkeyPatch, tmp_path_factory: pytest.TempPathFactory) -> None:
+    """Take away what would change colours, glyphs and motion, and the settings of whoever runs the tests."""
+    monkeypatch.setenv("EASTFALL_CONFIG", str(tmp_path_factory.mktemp("settings") / "settings.toml"))
     for name in ("NO_COLOR", "COLORTERM", "EASTFALL_GLYPHS", "TEXTUAL", "TEXTUAL_THEME"):
         monkeypatch.delenv(name, raising=False)
     monkeypatch.setenv("TEXTUAL_ANIMATIONS", "none")
