@@ -120,6 +120,36 @@ TABLE = (
         "planner",
     ),
     Key("scope", "w", "scope", "w", "wall", "Plan at the scale of the wall, or close by", "planner"),
+    Key("edit", "e", "edit", "e", "edit", "Edit the site file under the cursor", "start"),
+    Key("up", "up", "move(-1)", "↑ ↓", "key", "The key above or below", "form"),
+    Key("down", "down", "move(1)", "", "", "The key below", "form"),
+    Key(
+        "before",
+        "pageup,shift+tab",
+        "page(-1)",
+        "PgUp PgDn",
+        "section",
+        "The section before or after",
+        "form",
+    ),
+    Key("after", "pagedown,tab", "page(1)", "", "", "The section after", "form"),
+    Key("mend", "f7", "next_fault", "F7", "to mend", "Go to the next key that is wrong or missing", "form"),
+    Key("save", "ctrl+s", "save", "^S", "save", "Save; asks before it writes over a file", "form"),
+    Key(
+        "port", "f4", "port", "F4", "try port", "Listen to the link's port and have its form proposed", "form"
+    ),
+    Key("add", "f5", "add_link", "F5", "", "Add a link", "form"),
+    Key("remove", "f8", "remove_link", "F8", "", "Take the link in view out", "form"),
+    Key("save-as", "f9", "save_as", "F9", "", "Save under another name", "form"),
+    Key(
+        "close", "escape", "close", "esc", "leave", "Leave the form; asks when something is not saved", "form"
+    ),
+    Key("speed", "plus,equals_sign", "speed(1)", "+ -", "speed", "Another serial speed", "trial"),
+    Key("slower", "minus", "speed(-1)", "", "", "A lower serial speed", "trial"),
+    Key("use", "u", "use", "u", "form", "Read the lines by the form given, or by the one proposed", "trial"),
+    Key("hold", "space", "hold", "space", "hold", "Hold the lines while more come", "trial"),
+    Key("take", "o", "take", "o", "take over", "Take the proposed form over into a site file", "trial"),
+    Key("close", "escape", "close", "esc", "let go", "Let go of the port; again: leave", "trial"),
 )
 
 REPLAY_ONLY = frozenset({"back", "on", "step", "slower", "faster", "next", "previous"})
@@ -175,6 +205,9 @@ _TOGETHER = (
     ("stations", "page", "all"),
     ("explorer", "page", "all"),
     ("planner", "page", "all"),
+    ("start", "all"),
+    ("form", "all"),
+    ("trial", "all"),
 )
 """Places whose keys hold at the same time."""
 _STAYS = {"all.quit": "ctrl+c", "page.close": "escape"}
