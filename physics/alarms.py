@@ -118,6 +118,11 @@ class Alarm:
     _shelved_until: float = inf
     _changes: list[Change] = field(default_factory=list)
 
+    @property
+    def idle(self) -> bool:
+        """Whether a further sample inside the limit can change nothing."""
+        return self._sample == INSIDE and not self.standing and self._shelved_until == inf
+
     def sample(self, time: NDArray[np.float64], placed: NDArray[np.int8]) -> list[Change]:
         """Take samples in time order and return the transitions that they settle.
 

@@ -66,6 +66,11 @@ class Passes:
         self._extreme = np.nan
         self._fresh = True
 
+    def jump(self, depth: float) -> None:
+        """Go on in the same pass from another depth [m]."""
+        if not np.isnan(self._extreme):
+            self._extreme = depth
+
     def stretches(self, depth: Array) -> Iterator[Stretch]:
         """Cut a block of finite depths, shape (n,) [m], into stretches."""
         if depth.size and self.direction == 0:

@@ -21,7 +21,7 @@ class RobustMean(NamedTuple):
     mean: float
     scatter: float
     u: float
-    count: int
+    readings: int
 
 
 def huber_mean(values: npt.ArrayLike) -> RobustMean:

@@ -271,3 +271,8 @@ class OffsetSum:
         out = sums[:, 1:].copy()
         out[2] += half * half
         return out
+
+    def jump(self, depth: float) -> None:
+        """Let the next step begin at another depth [m], with the slopes of the last good row: nothing is summed."""
+        if self._last is not None:
+            self._last[0, 0] = depth

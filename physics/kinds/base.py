@@ -7,11 +7,12 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
+from eastfall.physics.depth import Jump
 from eastfall.physics.expected import ExpectedCurve
-from eastfall.physics.findings import ROW_FIELDS, RestPoint, Rows, Station
+from eastfall.physics.findings import ROW_FIELDS, FaceSums, Halt, RestPoint, Rows, Station, Verdict
 from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import Readings
-from eastfall.physics.settings import Limits
+from eastfall.physics.settings import Assumptions, Limits
 from eastfall.physics.verdict import horizontal, verdicts
 
 Array = NDArray[np.float64]
@@ -76,6 +77,30 @@ class KindTracker(Protocol):
     def notes(self) -> tuple[str, ...]:
         """Return what a reader must know of the answer."""
 
+    def jump(self, jump: Jump) -> None:
+        """Take note that the depth jumps before the next block."""
+
+    def hold_still(self) -> float | None:
+        """Return the seconds until a halt closes a station; None while moving, or where it has."""
+
+    def faces(self) -> FaceSums | None:
+        """Return the sums of readings in two faces, where there are any."""
+
+
+class Plain:
+    """What a kind without a sum of its own answers."""
+
+    def jump(self, jump: Jump) -> None:
+        """Do nothing: each reading stands for itself."""
+
+    def hold_still(self) -> float | None:
+        """Return nothing: there is no hold to wait for."""
+        return None
+
+    def faces(self) -> FaceSums | None:
+        """Return nothing: faces are not paired here."""
+        return None
+
 
 def rows_of(count: int) -> Array:
     """Return an empty table of findings for `count` rows."""
@@ -110,8 +135,8 @@ class StationFacts:
 
     Parameters
     ----------
-    number : int
-        Of the first; the others count on from it.
+    numbers : list of int, length n
+        Of the stations.
     depth, time : ndarray, shape (n,)
         [m], [s].
     passing, direction : int
@@ -126,9 +151,15 @@ class StationFacts:
         Of the inputs of the uncertainty.
     parts : ndarray, shape (len(names), 2, n)
         Standard uncertainty from each input, taken as uncorrelated [m].
+    halt : Halt, optional
+        What a single station at rest was closed from.
+    face : ndarray, shape (n,), optional
+        0 or pi [rad], NaN where it is not known.
+    before : Station, optional
+        The station before the first in the same pass; the others follow each other.
     """
 
-    number: int
+    numbers: list[int]
     depth: Array
     time: Array
     passing: int
@@ -139,25 +170,30 @@ class StationFacts:
     still: bool
     names: tuple[str, ...]
     parts: Array
+    halt: Halt | None = None
+    face: Array | None = None
+    before: Station | None = None
 
 
-def one_station(facts: StationFacts, limits: Limits) -> Station:
+def one_station(facts: StationFacts, assumptions: Assumptions) -> Station:
     """Judge a single station."""
-    return stations_of(facts, limits)[0]
+    return stations_of(facts, assumptions)[0]
 
 
-def stations_of(facts: StationFacts, limits: Limits) -> list[Station]:
-    """Judge stations: uncertainty of the residual by the root sum of squares (GUM, eq. 10), and the verdict on it."""
+def stations_of(facts: StationFacts, assumptions: Assumptions) -> list[Station]:
+    """Judge stations: uncertainty of the residual by the root sum of squares (GUM, eq. 10), and the verdicts."""
     u = np.sqrt(np.sum(facts.parts**2, axis=0))
     residual = facts.measured - facts.expected
     length, u_length = horizontal(residual[0], residual[1], u[0], u[1])
-    warning, action = limits_at(limits, facts.depth)
+    warning, action = limits_at(assumptions.limits, facts.depth)
     words = verdicts(length, u_length, action)
     columns = np.stack([facts.depth, facts.time, *facts.measured, *facts.expected, *u, warning, action])
     parts = np.abs(facts.parts).transpose(2, 0, 1).tolist()
+    face = [None] * len(words) if facts.face is None else [_known(one) for one in facts.face.tolist()]
+    walls, leans = _clearances(facts, u, assumptions), _leans(facts, residual, assumptions.limits)
     return [
         Station(
-            number=facts.number + at,
+            number=facts.numbers[at],
             depth=row[0],
             passing=facts.passing,
             direction="down" if facts.direction > 0 else "up",
@@ -175,6 +211,71 @@ def stations_of(facts: StationFacts, limits: Limits) -> list[Station]:
             still=facts.still,
             inputs=facts.names,
             parts=tuple((east, north) for east, north in parts[at]),
+            halt=facts.halt,
+            face=face[at],
+            lean=leans[at][0],
+            u_lean=leans[at][1],
+            lean_verdict=leans[at][2],
+            clearance=walls[at][0],
+            u_clearance=walls[at][1],
+            clearance_verdict=walls[at][2],
         )
         for at, row in enumerate(columns.T.tolist())
     ]
+
+
+_Judgement = tuple[float | None, float | None, Verdict | None]
+_NOTHING: _Judgement = (None, None, None)
+
+
+def _known(value: float) -> float | None:
+    return None if value != value else value  # noqa: PLR0124 (NaN, without an import)
+
+
+def _clearances(facts: StationFacts, u: Array, assumptions: Assumptions) -> list[_Judgement]:
+    """Return clearance from the wall, its standard uncertainty [m] and the verdict at each station."""
+    shaft = assumptions.shaft
+    if shaft.diameter is None:
+        return [_NOTHING] * len(facts.numbers)
+    at = facts.measured - facts.expected if assumptions.run.kind == "guided" else facts.measured
+    east, north = at[0] - shaft.centre_east, at[1] - shaft.centre_north
+    away, u_away = horizontal(east, north, *u)
+    clear, bound = from_wall(assumptions, away), assumptions.limits.wall_clearance
+    words = [None] * away.size if bound is None else verdicts(-clear, u_away, -bound)
+    return list(zip(clear.tolist(), u_away.tolist(), words, strict=True))
+
+
+def from_wall(assumptions: Assumptions, away: Array) -> Array:
+    """Return the clearance [m] of what is `away` from the shaft's centre [m]; NaN without a diameter."""
+    shaft, body = assumptions.shaft, assumptions.body
+    size = body.diameter / 2.0 if body and assumptions.run.kind == "drop" else 0.0
+    return (np.nan if shaft.diameter is None else shaft.diameter) / 2.0 - size - away
+
+
+RANDOM = "tilt, random"
+"""The input that gains with every reading, so that its part between two stations is a difference of squares."""
+
+
+def _leans(facts: StationFacts, residual: Array, limits: Limits) -> list[_Judgement]:
+    """Return the residual's change a metre of depth from the station before, its u and the verdict."""
+    before = facts.before
+    if before is not None:
+        first = np.array([[before.residual_east], [before.residual_north]])
+        known = dict(zip(before.inputs, before.parts, strict=True))
+        earlier = np.array([known.get(name, (0.0, 0.0)) for name in facts.names])[:, :, None]
+        top = before.depth
+    else:
+        first, earlier, top = residual[:, :1], facts.parts[:, :, :1], float(facts.depth[0])
+    step = np.abs(np.diff(facts.depth, prepend=top))
+    change = np.diff(residual, axis=1, prepend=first)
+    parts = np.abs(np.diff(np.abs(facts.parts), axis=2, prepend=earlier))
+    if RANDOM in facts.names:
+        row = facts.names.index(RANDOM)
+        squares = np.diff(facts.parts[row] ** 2, axis=1, prepend=earlier[row] ** 2)
+        parts[row] = np.sqrt(np.abs(squares))
+    length, u = horizontal(*change, *np.sqrt(np.sum(parts**2, axis=0)))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        lean, u_lean = length / step, u / step
+    words = [None] * step.size if limits.lean is None else verdicts(lean, u_lean, limits.lean)
+    found = zip(lean.tolist(), u_lean.tolist(), words, step.tolist(), strict=True)
+    return [one[:3] if one[3] > 0.0 else _NOTHING for one in found]

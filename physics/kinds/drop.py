@@ -13,9 +13,9 @@ from eastfall.physics.kinds.base import (
     Array,
     Batch,
     Judged,
+    Plain,
     StationFacts,
     fill_limits,
-    inside_shaft,
     one_station,
     rows_of,
     usable,
@@ -48,7 +48,7 @@ class _Level:
         self.squares = self.squares + away * (offset - self.mean)
 
 
-class Drop:
+class Drop(Plain):
     """Findings of a drop series.
 
     Parameters
@@ -70,7 +70,6 @@ class Drop:
     def feed(self, readings: Readings) -> Batch:
         """Take a block."""
         self._tilt_seen |= bool(np.isfinite(readings.column("tilt_a")).any())
-        readings = inside_shaft(readings, self._curve, self.unused)
         good = np.isfinite(readings.column("east")) & np.isfinite(readings.column("north"))
         readings = usable(readings, good, "no offset", self.unused)
         if not len(readings):
@@ -134,7 +133,7 @@ class Drop:
     def _station(self, level: _Level) -> Station:
         names, parts = self._parts(level)
         facts = StationFacts(
-            number=level.number,
+            numbers=[level.number],
             depth=np.array([level.depth]),
             time=np.array([level.time]),
             passing=0,
@@ -146,7 +145,7 @@ class Drop:
             names=names,
             parts=parts,
         )
-        return one_station(facts, self._assumptions.limits)
+        return one_station(facts, self._assumptions)
 
     def close(self) -> tuple[Station, ...]:
         """Return nothing: every mark has given its station already."""

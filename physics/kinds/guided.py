@@ -1,13 +1,16 @@
 """A probe or cage in guides: tilt summed over depth, against what a plumb guide shows on the same journey."""
 
 from collections import Counter
+from dataclasses import replace
 
 import numpy as np
-from numpy.typing import NDArray
 
 from eastfall.physics.calibration import corrected
+from eastfall.physics.depth import Jump
 from eastfall.physics.expected import ExpectedCurve, reach
-from eastfall.physics.findings import RestPoint, Rows, Station
+from eastfall.physics.faces import FaceBins
+from eastfall.physics.findings import FaceSums, Halt, RestPoint, Rows, Station
+from eastfall.physics.halts import HaltFinder, Rest
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
@@ -15,28 +18,20 @@ from eastfall.physics.kinds.base import (
     Judged,
     StationFacts,
     fill_limits,
-    inside_shaft,
     rows_of,
     stations_of,
     usable,
 )
-from eastfall.physics.moving import LineSpeed, lean
-from eastfall.physics.passes import Passes, Stretch, crossings
+from eastfall.physics.kinds.closing import Closing, Due
+from eastfall.physics.kinds.gaps import Gaps
+from eastfall.physics.kinds.plumbguide import PlumbGuide
+from eastfall.physics.kinds.shares import Shares
+from eastfall.physics.kinds.stillsum import StillSum
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
 from eastfall.physics.tilt import OffsetSum, increments
 
-_TURN = 0.2
-"""Coming back by more than this ends a pass [m]: beyond the jerking of a rope, below any station spacing in use."""
-_REACHED = 0.05
-"""A pass that turns this close to a station has reached it [m]."""
-
-# What is remembered of a row between blocks; the weight of the random part comes after these.
-_KEPT = ("time", "depth", "measured_east", "measured_north", "expected_east", "expected_north")
-
 _PIECE = 4096
-_OWN = ("tilt, random", "tilt, zero", "tilt, scale", "azimuth", "depth")
-"""The inputs of the measured offset's uncertainty."""
 
 
 class Guided:
@@ -51,220 +46,262 @@ class Guided:
     """
 
     def __init__(self, assumptions: Assumptions, curve: ExpectedCurve) -> None:
+        guide, run, instrument = assumptions.guide, assumptions.run, assumptions.instrument
         self._assumptions = assumptions
         self._curve = curve
-        guide = assumptions.guide
-        self._speed = LineSpeed()
+        self._plumb = PlumbGuide(curve)
         self._sum = OffsetSum(guide.start_east, guide.start_north, guide.method)
-        turn = min(_TURN, assumptions.run.station_every / 4.0)
-        self._passes = Passes(turn, assumptions.shaft.depth / 2.0)
-        self._start: tuple[float, Array] | None = None
-        self._ridden = 0.0
-        self._ridden_to: float | None = None
+        self._still = StillSum(guide, instrument.u_tilt) if guide.readings == "still" else None
+        self._halts = HaltFinder(run.hold)
+        self._closing = Closing(
+            run, assumptions.shaft.depth, reach(assumptions), crossed=guide.readings == "all"
+        )
+        self._faces = FaceBins(run.station_every, reach(assumptions))
+        self._shares = Shares(assumptions)
         self._last: Array | None = None
-        self._extreme: Array | None = None
-        self._taken = 0
-        self._closed = 0
+        self._depth: float | None = None
+        self._slope: Array = np.zeros(2)
+        self._gaps = Gaps(assumptions.limits.feed_silent)
+        self._station: Station | None = None
+        self._station_before: Station | None = None
         self.unused: Counter[str] = Counter()
-        self._no_clock = False
+
+    # -- readings --------------------------------------------------------------------------------------------------
 
     def feed(self, readings: Readings) -> Batch:
         """Take a block."""
-        readings = inside_shaft(readings, self._curve, self.unused)
-        east, north = self._slopes(readings)
-        good = np.isfinite(east) & (east * east + north * north < 1.0)
+        slopes, azimuth = self._slopes(readings)
+        good = np.isfinite(slopes[0]) & (slopes[0] * slopes[0] + slopes[1] * slopes[1] < 1.0)
+        edges = self._gaps.ends(readings, good) if self._still is None else []
         readings = usable(readings, good, "no usable tilt", self.unused)
         if not len(readings):
             return Batch.none()
-        rows, weight = self._rows(readings, east[good], north[good])
-        stations = self._pass_through(rows, weight)
-        fill_limits(rows, self._assumptions.limits)
-        found = Rows(rows)
-        return Batch(
-            rows=found, judged=np.stack([found.residual_east, found.residual_north]), stations=stations
-        )
+        slopes, azimuth = slopes[:, good], azimuth[good]
+        found = []
+        for begin, end in zip([0, *edges], [*edges, len(readings)], strict=True):
+            if begin == end:
+                continue
+            if begin in edges:
+                self._bridge(readings.depth[begin], slopes[:, begin])
+            part = slice(begin, end)
+            found.append(self._take(readings[part], slopes[:, part], azimuth[part]))
+        return found[0] if len(found) == 1 else _joined(found)
 
     def _slopes(self, readings: Readings) -> tuple[Array, Array]:
+        """Return slope east and north, shape (2, n) [m/m], and azimuth of A at each row [rad]."""
         instrument = self._assumptions.instrument
         a, b = corrected(
             readings.column("tilt_a"), readings.column("tilt_b"), readings.column("temperature"), instrument
         )
-        azimuth = readings.column("azimuth")
-        given = np.isfinite(azimuth)
-        if not given.any():
-            return increments(a, b, instrument.a_azimuth + instrument.north_offset)
-        return increments(a, b, np.where(given, azimuth, instrument.a_azimuth) + instrument.north_offset)
+        azimuth, face = readings.column("azimuth"), readings.column("face")
+        true = np.full(a.shape, instrument.a_azimuth + instrument.north_offset)
+        if np.isnan(azimuth).all() and np.isnan(face).all():
+            return np.stack(increments(a, b, true[:1])), true
+        # A probe that is turned about its own axis by its face carries its A axis with it; one that reads its own
+        # azimuth says so itself.
+        true += np.where(np.isnan(azimuth), np.nan_to_num(face), azimuth - instrument.a_azimuth)
+        return np.stack(increments(a, b, true)), true
 
-    def _rows(self, readings: Readings, east: Array, north: Array) -> tuple[Array, Array]:
-        rows = rows_of(len(readings))
+    def _bridge(self, depth: float, slope: Array) -> None:
+        """Go over a stretch without readings."""
+        if self._depth is not None:
+            self._shares.bridge(abs(depth - self._depth), self._slope, slope)
+
+    def _take(self, readings: Readings, slopes: Array, azimuth: Array) -> Batch:
+        """Take rows without a gap or a jump between them."""
         depth = readings.depth
+        rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
-        speed, lag = self._line_speed(readings)
-        rows[ROW["speed"]] = speed
-        measured_east, measured_north, weight = self._sum.update(depth, north, east)
-        rows[ROW["measured_east"]], rows[ROW["measured_north"]] = measured_east, measured_north
-        still = self._curve.look_up(self._curve.plumb, depth)
-        if self._start is None:
-            self._start = (float(depth[0]), still[:, 0].copy())
-        expected = still - self._start[1][:, None]
-        expected[0] -= self._ride(depth, speed, lag)
+        rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
+        timed = not np.isnan(readings.time).any()
+        rests = self._halts.feed(np.stack([readings.time, depth, *slopes])) if timed else []
+        ridden, leaning = self._plumb.ride(depth, rows[ROW["speed"]], lag)
+        self._gather(readings, slopes, leaning, azimuth, rests)
+        summed = self._moving if self._still is None else self._halting
+        at, weight, slopes = summed(rows, slopes, ridden, rests)
+        rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(rows, at, weight, slopes)
+        columns = (*rows[[ROW["time"]]], at, *rows[5:9], weight, *slopes, readings.column("face"))
+        passes, due = self._closing.take((columns[0], depth, *columns[2:]), rests)
+        rows[ROW["passing"]], rows[ROW["direction"]] = passes
+        fill_limits(rows, self._assumptions.limits)
+        self._last = np.array([one[-1] for one in columns])
+        self._slope, self._depth = self._last[7:9], float(depth[-1])
+        found = Rows(rows)
+        judged = np.stack([found.residual_east, found.residual_north])
+        return Batch(rows=found, judged=judged, stations=self._stations(due))
+
+    def _moving(
+        self, rows: Array, slopes: Array, ridden: Array, _rests: list[tuple[int, Rest]]
+    ) -> tuple[Array, Array, Array]:
+        """Sum every reading; return the depth, weight and slopes that the offsets stand for."""
+        depth = rows[ROW["depth"]]
+        east, north, weight = self._sum.update(depth, slopes[1], slopes[0])
+        rows[ROW["measured_east"]], rows[ROW["measured_north"]] = east, north
+        self._begin(float(depth[0]))
+        expected = self._plumb.at_rest(depth)
+        expected[0] -= ridden
         rows[ROW["expected_east"]], rows[ROW["expected_north"]] = expected
-        rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(rows, weight)
-        return rows, weight
+        return depth, weight, slopes
 
-    def _line_speed(self, readings: Readings) -> tuple[Array, Array]:
-        """Return speed and acceleration of the line; without a clock the site's speed stands in."""
-        speed, acceleration = self._speed.update(readings.time, readings.depth)
-        unknown = np.isnan(readings.time)
-        if unknown.any():
-            self._no_clock = True
-            before = readings.depth[0] if self._last is None else self._last[1]
-            steps = np.sign(np.diff(readings.depth, prepend=before))
-            speed = np.where(unknown, steps * abs(self._assumptions.guide.line_speed), speed)
-        return speed, acceleration
+    def _halting(
+        self, rows: Array, _slopes: Array, _ridden: Array, rests: list[tuple[int, Rest]]
+    ) -> tuple[Array, Array, Array]:
+        """Hold what the last halt gave; the same returns as `_moving`."""
+        still = self._still or StillSum(self._assumptions.guide, 0.0)
+        held = still.take(rows.shape[1], rests)
+        before = np.isnan(held[0])
+        at = np.where(before, rows[ROW["depth"]], held[0])
+        if rests:
+            self._begin(rests[0][1].depth)
+        rows[ROW["measured_east"]], rows[ROW["measured_north"]] = held[1:3]
+        expected = self._plumb.at_rest(at)
+        rows[ROW["expected_east"]], rows[ROW["expected_north"]] = np.where(before, 0.0, expected)
+        return at, held[3], held[4:6]
 
-    def _ride(self, depth: Array, speed: Array, acceleration: Array) -> Array:
-        """Return ∫ ε dz so far at each row [m]: how far west a plumb guide seems to have gone.
+    def _begin(self, depth: float) -> None:
+        self._plumb.begin(depth)
+        self._shares.start = self._plumb.start or 0.0
 
-        The speed of a row is that of the step that led to it. While it is not known yet (the first fractions of a
-        second of a run) steps are kept waiting for the first speed that is.
-        """
-        site, gravity = self._assumptions.site, self._curve.models.field.gravity
-        felt = gravity - np.clip(np.nan_to_num(acceleration), -0.5 * gravity, 0.5 * gravity)
-        known = np.isfinite(speed)
-        angle = lean(speed[known], site.latitude, felt[known])
-        before = self._ridden_to if self._ridden_to is not None else depth[0]
-        terms = np.zeros(depth.size + 1)
-        terms[0] = self._ridden
-        terms[1:][known] = angle * np.diff(depth[known], prepend=before)
-        ridden = np.cumsum(terms)[1:]
-        self._ridden = float(ridden[-1])
-        self._ridden_to = float(depth[known][-1]) if known.any() else float(before)
-        return ridden
+    def _gather(
+        self,
+        readings: Readings,
+        slopes: Array,
+        leaning: Array,
+        azimuth: Array,
+        rests: list[tuple[int, Rest]],
+    ) -> None:
+        """Put what the axes showed, freed from the lean of the line, to its depth and face."""
+        face = readings.column("face")
+        if np.isnan(face).all():
+            return
+        depth, weight = (
+            readings.depth,
+            np.abs(
+                np.diff(readings.depth, prepend=readings.depth[0] if self._last is None else self._last[1])
+            ),
+        )
+        east, north = slopes[0] + leaning, slopes[1]
+        if self._still is not None:
+            at = np.array([row for row, _ in rests], dtype=np.intp)
+            depth, weight, face, azimuth = depth[at], np.ones(at.size), face[at], azimuth[at]
+            east = np.array([rest.east.mean for _, rest in rests])
+            north = np.array([rest.north.mean for _, rest in rests])
+        s, c = np.sin(azimuth), np.cos(azimuth)
+        self._faces.add(depth, weight, np.stack([east * s + north * c, east * c - north * s]), face)
 
-    def _parts(self, depth: Array, east: Array, north: Array, weight: Array) -> Array:
-        """Return what each input of `_OWN` contributes to the measured offset, shape (len(_OWN), 2, n) [m]."""
-        instrument, guide = self._assumptions.instrument, self._assumptions.guide
-        start = self._start[0] if self._start else 0.0
-        parts = np.empty((len(_OWN), 2, depth.size))
-        gone_east, gone_north = np.abs(east - guide.start_east), np.abs(north - guide.start_north)
-        parts[0] = instrument.u_tilt * np.sqrt(weight)
-        parts[1] = instrument.u_zero * np.abs(depth - start)
-        parts[2] = instrument.u_scale * gone_east, instrument.u_scale * gone_north
-        parts[3] = instrument.u_azimuth * gone_north, instrument.u_azimuth * gone_east
-        parts[4] = instrument.u_depth_fraction * gone_east, instrument.u_depth_fraction * gone_north
-        return parts
+    # -- stations --------------------------------------------------------------------------------------------------
 
-    def _uncertainty(self, rows: Array, weight: Array) -> Array:
-        u = self._curve.look_up(self._curve.u, rows[ROW["depth"]])
+    def _uncertainty(self, rows: Array, at: Array, weight: Array, slopes: Array) -> Array:
+        u = self._curve.look_up(self._curve.u, at)
         u *= u
         # In pieces that stay in the processor's cache: the parts of a long block would not.
         for start in range(0, weight.size, _PIECE):
             piece = slice(start, start + _PIECE)
-            depth, east, north = (
-                rows[ROW[name], piece] for name in ("depth", "measured_east", "measured_north")
-            )
-            own = self._parts(depth, east, north, weight[piece])
+            own = self._shares.parts(at[piece], rows[5:7, piece], weight[piece], slopes[:, piece])
             np.multiply(own, own, out=own)
             u[:, piece] += own.sum(axis=0)
         return np.sqrt(u, out=u)
 
-    def _pass_through(self, rows: Array, weight: Array) -> tuple[Station, ...]:
-        depth = rows[ROW["depth"]]
-        kept = np.stack([*(rows[ROW[name]] for name in _KEPT), weight])
-        stations: list[Station] = []
-        for stretch in self._passes.stretches(depth):
-            part = kept[:, stretch.rows]
-            rows[ROW["passing"], stretch.rows] = stretch.passing
-            rows[ROW["direction"], stretch.rows] = stretch.direction
-            stations += self._crossed(stretch, part)
-            self._remember(stretch, part)
-            if stretch.ended:
-                stations += self._end_of_pass(stretch.passing, stretch.direction)
-        return tuple(stations)
+    def _stations(self, due: list[Due]) -> tuple[Station, ...]:
+        found: list[Station] = []
+        start = 0
+        for end in range(1, len(due) + 1):
+            if end == len(due) or not _alike(due[end - 1], due[end]):
+                found += self._closed(due[start:end])
+                start = end
+        return tuple(found)
 
-    def _crossed(self, stretch: Stretch, part: Array) -> list[Station]:
-        depths, rows, readings = [], [], []
-        done = 0
-        for depth, row in crossings(stretch, self._assumptions.run.station_every, reach(self._assumptions)):
-            before = part[:, row - 1] if row else self._last
-            depths.append(depth)
-            rows.append(_between(before, part[:, row], depth))
-            readings.append(self._taken + row + 1 - done)
-            self._taken = 0
-            done = row + 1
-        self._taken += part.shape[1] - done
-        return self._stations(stretch.passing, stretch.direction, depths, rows, readings)
-
-    def _remember(self, stretch: Stretch, part: Array) -> None:
-        if not part.shape[1]:
-            return
-        at = int(np.argmax(stretch.direction * part[1]))
-        if (
-            stretch.first
-            or self._extreme is None
-            or stretch.direction * (part[1, at] - self._extreme[1]) > 0.0
-        ):
-            self._extreme = part[:, at].copy()
-        self._last = part[:, -1].copy()
-
-    def _end_of_pass(self, passing: int, direction: int) -> list[Station]:
-        """Close the station that a pass stopped just short of."""
-        if self._extreme is None:
-            return []
-        every = self._assumptions.run.station_every
-        depth = float(self._extreme[1])
-        short_of = direction * (np.floor(direction * depth / every) + 1.0) * every + 0.0
-        near = direction * (short_of - depth) <= min(_REACHED, every / 10.0)
-        if near and 0.0 <= short_of <= reach(self._assumptions):
-            readings, self._taken = [self._taken], 0
-            return self._stations(passing, direction, [float(short_of)], [self._extreme], readings)
-        return []
-
-    def _stations(
-        self, passing: int, direction: int, depths: list[float], rows: list[Array], readings: list[int]
-    ) -> list[Station]:
-        if not depths:
-            return []
-        time, at, east, north, expected_east, expected_north, weight = np.stack(rows, axis=1)
-        own = self._parts(at, east, north, weight)
-        facts = StationFacts(
-            number=self._closed,
-            depth=np.array(depths),
-            time=time,
-            passing=passing,
-            direction=direction,
-            measured=np.stack([east, north]),
-            expected=np.stack([expected_east, expected_north]),
-            readings=readings,
-            still=False,
-            names=(*_OWN, *self._curve.budget.names),
-            parts=np.concatenate([own, self._curve.budget.at(at)]),
+    def _closed(self, due: list[Due]) -> list[Station]:
+        """Close stations taken in passing one after the other, or one at rest."""
+        time, at, east, north, expected_east, expected_north, weight, *slope, face = np.stack(
+            [one.at for one in due], axis=1
         )
-        self._closed += len(depths)
-        return stations_of(facts, self._assumptions.limits)
+        offset, first = np.stack([east, north]), due[0]
+        own = self._shares.parts(at, offset, weight, np.stack(slope))
+        before = self._before(first)
+        facts = StationFacts(
+            numbers=[one.number for one in due],
+            depth=np.array([one.depth for one in due]),
+            time=time,
+            passing=first.passing,
+            direction=first.direction,
+            measured=offset,
+            expected=np.stack([expected_east, expected_north]),
+            readings=[one.readings for one in due],
+            still=first.rest is not None,
+            names=(*self._shares.names, *self._curve.budget.names),
+            parts=np.concatenate([own, self._curve.budget.at(at)]),
+            halt=_halt(first.rest),
+            face=face,
+            before=before,
+        )
+        found = stations_of(facts, self._assumptions)
+        self._note_leans(before, found)
+        self._station_before = found[-2] if len(found) > 1 else before
+        self._station = found[-1]
+        return found
+
+    def _before(self, due: Due) -> Station | None:
+        """Return the station before one in the same pass; that of a station renewed by a halt is the one before it."""
+        for one in (self._station, self._station_before):
+            if one is not None and one.passing == due.passing and one.number != due.number:
+                return one
+        return None
+
+    def _note_leans(self, before: Station | None, found: list[Station]) -> None:
+        for first, second in zip([before, *found[:-1]], found, strict=True):
+            if first is not None and first.depth != second.depth:
+                step = second.depth - first.depth
+                east = (second.residual_east - first.residual_east) / step
+                self._shares.lean(east, (second.residual_north - first.residual_north) / step)
+
+    def jump(self, jump: Jump) -> None:
+        """Go on at another depth: nothing is summed between, and what that leaves open is added to the uncertainty."""
+        by = jump.after - jump.before
+        if self._last is None:
+            return
+        self._shares.jumped(by, self._slope)
+        self._sum.jump(jump.after)
+        if self._still is not None:
+            self._still.jump(by)
+        self._plumb.jump(jump)
+        self._halts.moved()
+        self._closing.jump(jump.after)
+        self._gaps.jump(jump.after)
+        self._depth = jump.after
 
     def close(self) -> tuple[Station, ...]:
         """Close the station that the last pass stopped just short of."""
-        return tuple(self._end_of_pass(self._passes.passing, self._passes.direction))
+        return self._stations(self._closing.close())
+
+    # -- looking ---------------------------------------------------------------------------------------------------
 
     def judged(self) -> Judged | None:
         """Return the newest row."""
         if self._last is None:
             return None
-        _, depth, east, north, expected_east, expected_north, weight = (float(one) for one in self._last)
         rows = rows_of(1)
-        rows[ROW["depth"]], rows[ROW["measured_east"]], rows[ROW["measured_north"]] = depth, east, north
-        u_east, u_north = self._uncertainty(rows, np.array([weight]))[:, 0]
+        rows[[ROW["time"], ROW["depth"]], 0] = self._last[:2]
+        rows[5:9, 0] = self._last[2:6]
+        u = self._uncertainty(rows, self._last[1:2], self._last[6:7], self._last[7:9, None])
+        depth, east, north, expected_east, expected_north = self._last[1:6].tolist()
         return Judged(
             depth=depth,
             measured_east=east,
             measured_north=north,
             expected_east=expected_east,
             expected_north=expected_north,
-            u_east=float(u_east),
-            u_north=float(u_north),
+            u_east=float(u[0, 0]),
+            u_north=float(u[1, 0]),
         )
+
+    def hold_still(self) -> float | None:
+        """Return the seconds until a halt closes a station."""
+        return None if self._last is None else self._halts.to_go(float(self._last[0]))
+
+    def faces(self) -> FaceSums | None:
+        """Return the sums of readings in two faces."""
+        return self._faces.sums(self._assumptions.instrument.u_tilt)
 
     def rest_point(self) -> RestPoint | None:
         """Return nothing: a guided probe does not swing."""
@@ -272,14 +309,40 @@ class Guided:
 
     def notes(self) -> tuple[str, ...]:
         """Say where the answer leans on an assumption."""
-        if self._no_clock:
-            return ("no clock in the readings: line speed taken from guide.line_speed_mps",)
-        return ()
+        found = []
+        if self._plumb.without_clock:
+            found.append("no clock in the readings: line speed taken from guide.line_speed_mps")
+        if self._still is not None and self._last is not None:
+            found.append(f"summed from halt to halt: the answer is that at {self._last[1]:.1f} m")
+        if self._shares.is_bridged:
+            found.append(
+                "readings are missing over more than half a metre: bridged, with a larger uncertainty"
+            )
+        return tuple(found)
 
 
-def _between(before: NDArray[np.float64] | None, after: Array, depth: float) -> Array:
-    """Interpolate a row at a depth between two rows; without a row before, the row itself."""
-    if before is None or after[1] == before[1]:
-        return after
-    share = (depth - before[1]) / (after[1] - before[1])
-    return before + share * (after - before)
+def _alike(one: Due, other: Due) -> bool:
+    """Whether two stations may be closed together."""
+    still = one.rest is not None or other.rest is not None
+    return not still and one.passing == other.passing
+
+
+def _halt(rest: Rest | None) -> Halt | None:
+    if rest is None:
+        return None
+    return Halt(
+        east=rest.east.mean,
+        north=rest.north.mean,
+        scatter_east=rest.east.scatter,
+        scatter_north=rest.north.scatter,
+        seconds=rest.seconds,
+    )
+
+
+def _joined(batches: list[Batch]) -> Batch:
+    return replace(
+        batches[0],
+        rows=Rows(np.concatenate([one.rows.data for one in batches], axis=1)),
+        judged=np.concatenate([one.judged for one in batches], axis=1),
+        stations=tuple(station for one in batches for station in one.stations),
+    )

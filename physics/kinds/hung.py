@@ -15,9 +15,9 @@ from eastfall.physics.kinds.base import (
     Array,
     Batch,
     Judged,
+    Plain,
     StationFacts,
     fill_limits,
-    inside_shaft,
     one_station,
     rows_of,
     usable,
@@ -81,7 +81,7 @@ class _Level:
         )
 
 
-class Hung:
+class Hung(Plain):
     """Findings of a hung run.
 
     Parameters
@@ -105,7 +105,6 @@ class Hung:
 
     def feed(self, readings: Readings) -> Batch:
         """Take a block."""
-        readings = inside_shaft(readings, self._curve, self.unused)
         offsets, direct = self._offsets(readings)
         good = _whole(offsets)
         readings = usable(readings, good, "no offset and no usable tilt", self.unused)
@@ -302,7 +301,7 @@ class Hung:
     def _station(self, level: _Level) -> Station:
         position, names, parts = self._position(level)
         facts = StationFacts(
-            number=self._closed,
+            numbers=[self._closed],
             depth=np.array([level.depth]),
             time=np.array([level.time]),
             passing=0,
@@ -314,7 +313,7 @@ class Hung:
             names=names,
             parts=parts,
         )
-        return one_station(facts, self._assumptions.limits)
+        return one_station(facts, self._assumptions)
 
     def _told(self, rest: swing.RestPoint | None) -> RestPoint | None:
         if rest is None:

@@ -126,6 +126,7 @@ def test_readings_without_depth_or_tilt_or_outside_the_shaft_are_left_aside_and_
     bad[2, 0] = np.nan
     bad[2, 1] = 5000.0
     bad[2, 2] = -40.0
+    bad[2, 3:] = readings.depth[900]
     bad[3, 3] = np.nan
     bad[3:5, 4] = 1.5
     mixed = Readings(np.concatenate([readings.data[:, :900], bad, readings.data[:, 900:]], axis=1))
