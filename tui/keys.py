@@ -145,7 +145,9 @@ TABLE = (
         "close", "escape", "close", "esc", "leave", "Leave the form; asks when something is not saved", "form"
     ),
     Key("speed", "plus,equals_sign", "speed(1)", "+ -", "speed", "Another serial speed", "trial"),
-    Key("slower", "minus", "speed(-1)", "", "", "A lower serial speed", "trial"),
+    Key("speed-down", "minus", "speed(-1)", "", "", "A lower serial speed", "trial"),
+    Key("up", "up", "move(-1)", "↑ ↓", "choose", "The port or the speed above or below", "trial"),
+    Key("down", "down", "move(1)", "", "", "The port or the speed below", "trial"),
     Key("use", "u", "use", "u", "form", "Read the lines by the form given, or by the one proposed", "trial"),
     Key("hold", "space", "hold", "space", "hold", "Hold the lines while more come", "trial"),
     Key("take", "o", "take", "o", "take over", "Take the proposed form over into a site file", "trial"),
