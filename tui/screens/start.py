@@ -73,7 +73,8 @@ class StartScreen(PaintedScreen[Choice | None]):
         Names the serial ports of this machine, one line each.
     """
 
-    BINDINGS: ClassVar[list[BindingType]] = []
+    PLACES = ("start",)
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("start"))
 
     def __init__(self, folder: Path, *, log_suffix: str, ports: Ports | None = None) -> None:
         super().__init__()
@@ -111,6 +112,10 @@ class StartScreen(PaintedScreen[Choice | None]):
             self._option(f"watch {path}", self._shown(path), Choice(what="watch", path=path))
             for path in sites
         ]
+        options += [
+            Option(Text("  write a new site file"), id="new"),
+            Option(Text("  edit a site file (or e on one above)"), id="edit"),
+        ]
         logs = recent(self._folder, (self._suffix,))
         options.append(_head("Replay: run logs here" if logs else "Replay: no run log in this folder"))
         options += [
@@ -122,7 +127,11 @@ class StartScreen(PaintedScreen[Choice | None]):
             for path in logs
         ]
         if self._ports is not None:
-            options += [_head("Instruments"), Option("check the serial ports of this machine", id="ports")]
+            options += [
+                _head("Instruments"),
+                Option(Text("  try a port: raw lines, and how they read"), id="trial"),
+                Option(Text("  check the serial ports of this machine"), id="ports"),
+            ]
         return options
 
     def _shown(self, path: Path) -> str:
@@ -137,8 +146,45 @@ class StartScreen(PaintedScreen[Choice | None]):
         if event.option_id == "ports":
             event.option_list.replace_option_prompt("ports", Text("  looking ..."))
             self._look_for_ports()
+        elif event.option_id in {"new", "edit", "trial"}:
+            self._to_desk(event.option_id)
         elif event.option_id in self._choices:
             self.dismiss(self._choices[event.option_id])
+
+    def _to_desk(self, what: str) -> None:
+        """Open the site form or the port trial."""
+        from eastfall.tui.screens import desk  # noqa: PLC0415 (what edits TOML is loaded only where it is used)
+
+        if what == "new":
+            desk.new_site(self.app, self._folder, self._ports, self._back)
+        elif what == "trial":
+            desk.try_port(self.app, self._folder, self._ports, self._back)
+        else:
+            sites = [one.path for one in self._choices.values() if one.what == "watch" and one.path]
+            newest = self._shown(sites[0]) if sites else ""
+            desk.ask_site(self.app, self._folder, newest, self._ports, self._back)
+
+    def action_edit(self) -> None:
+        """Edit the site file under the cursor."""
+        option = self.query_one(OptionList).highlighted_option
+        choice = self._choices.get(option.id or "") if option is not None else None
+        if choice is not None and choice.what == "watch" and choice.path is not None:
+            from eastfall.tui.screens import desk  # noqa: PLC0415 (as above)
+
+            desk.edit_site(self.app, choice.path, self._ports, self._back)
+        else:
+            self._to_desk("edit")
+
+    def _back(self, saved: Path | None) -> None:
+        """List the files anew, the cursor on what was saved."""
+        if saved is None:
+            return
+        options = self.query_one(OptionList)
+        self._choices.clear()
+        options.clear_options()
+        options.add_options(self._options())
+        if f"watch {saved}" in self._choices:
+            options.highlighted = options.get_option_index(f"watch {saved}")
 
     @work(thread=True, exclusive=True, exit_on_error=False)
     def _look_for_ports(self) -> None:

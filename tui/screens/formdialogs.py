@@ -1,0 +1,93 @@
+"""Dialogs of the site form: a table typed as rows of numbers, and the name of the file to save."""
+
+from collections.abc import Callable
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import Binding, BindingType
+from textual.containers import Vertical
+from textual.screen import ModalScreen
+from textual.widgets import Input, Static, TextArea
+
+from eastfall.io.safetext import safe
+from eastfall.tui.screens.dialogs import AskText, plain
+
+Check = Callable[[str], str]
+"""From what is typed to what is wrong with it; empty when nothing is."""
+
+
+class RowsDialog(ModalScreen[str | None]):
+    """A table of the site file, one row a line, checked as it is typed; closes with the text or None.
+
+    Parameters
+    ----------
+    title : str
+        The key.
+    headings : tuple of str
+        What the numbers of a row mean.
+    text : str
+        The rows as they are.
+    check : callable
+        Says what is wrong.
+    """
+
+    CSS = """
+    RowsDialog TextArea { height: 10; border: tall $foreground; background: $background; color: $foreground; }
+    RowsDialog .complaint { height: 3; }
+    """
+    BINDINGS: ClassVar[list[BindingType]] = [
+        Binding("ctrl+s,f10", "take", "take", show=False, priority=True),
+        Binding("escape", "leave", "leave", show=False),
+    ]
+
+    def __init__(self, title: str, headings: tuple[str, ...], text: str, check: Check) -> None:
+        super().__init__()
+        self._title, self._headings, self._text, self._check = title, headings, text, check
+
+    def compose(self) -> ComposeResult:
+        """Show the headings over the rows, and what is wrong beneath."""
+        with Vertical(classes="dialog"):
+            yield plain(self._title, "title")
+            yield plain("a line for each row:  " + "   ".join(self._headings))
+            yield TextArea(self._text, tab_behavior="focus", show_line_numbers=False, id="rows")
+            yield plain("", "complaint")
+            yield plain("ctrl+s  take the rows        esc  leave them as they were")
+
+    def on_mount(self) -> None:
+        """Take the keys."""
+        field = self.query_one(TextArea)
+        field.cursor_blink = False
+        field.focus()
+        field.move_cursor(field.document.end)
+        self._tell(self._text)
+
+    def on_text_area_changed(self, event: TextArea.Changed) -> None:
+        """Check the rows."""
+        self._tell(event.text_area.text)
+
+    def _tell(self, text: str) -> None:
+        rows = sum(bool(one.strip()) for one in text.splitlines())
+        complaint = self._check(text)
+        says = f"! {safe(complaint, 180)}" if complaint else f"{rows} rows, no fault"
+        self.query_one(".complaint", Static).update(says)
+
+    def action_take(self) -> None:
+        """Close with the rows."""
+        self.dismiss(self.query_one(TextArea).text)
+
+    def action_leave(self) -> None:
+        """Close without them."""
+        self.dismiss(None)
+
+
+class AskName(AskText):
+    """Asks for the name of a file, with a proposal to change or take."""
+
+    def __init__(self, question: str, hint: str, proposal: str, check: Callable[[str], object]) -> None:
+        super().__init__(question, hint, check=check)
+        self._proposal = proposal
+
+    def on_mount(self) -> None:
+        """Show the proposal, the cursor at its end."""
+        super().on_mount()
+        self.query_one(Input).value = self._proposal
