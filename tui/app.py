@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import App
 from textual.binding import BindingType
+from textual.driver import Driver
 from textual.message import Message
 from textual.screen import Screen
 
@@ -92,6 +93,15 @@ class Dashboard(App[int]):
         self._no_colour = no_colour
         self._newest: Snapshot | None = None
         self._told = False
+
+    def get_driver_class(self) -> type[Driver]:
+        """Take the driver that outlives a closed window wherever the stock one of POSIX would be taken."""
+        found = super().get_driver_class()
+        if found.__name__ != "LinuxDriver":
+            return found
+        from eastfall.tui.driver import PatientDriver  # noqa: PLC0415 (POSIX alone has what it imports)
+
+        return PatientDriver
 
     def on_mount(self) -> None:
         """Leave cleanly on the signals that Textual does not catch, then show the first screen."""

@@ -1,0 +1,72 @@
+"""The screen library's way to a POSIX terminal, made to outlive trouble: a window that is gone, bytes that are no text.
+
+As it comes, its output thread dies with the first failed write, and the application then waits for ever for room in
+that thread's queue; its input thread ends the application at a byte that is not UTF-8, such as an accented letter of
+another locale; and a SIGCONT that follows no SIGTSTP (the system sends one with the SIGHUP of a closed window) starts
+its threads a second time and leaves one running for ever. A run must survive all three.
+"""
+
+import os
+from contextlib import suppress
+from typing import Any, TextIO
+
+from textual.drivers.linux_driver import LinuxDriver
+
+
+class PatientFile:
+    """A terminal's output that takes everything, also when there is no terminal any more.
+
+    Parameters
+    ----------
+    file : TextIO
+        Where it goes while it can.
+    """
+
+    def __init__(self, file: TextIO) -> None:
+        self._file = file
+
+    def write(self, text: str) -> int:
+        """Write, or drop."""
+        with suppress(OSError):
+            self._file.write(text)
+        return len(text)
+
+    def flush(self) -> None:
+        """Flush, or drop."""
+        with suppress(OSError):
+            self._file.flush()
+
+    def fileno(self) -> int:
+        """Return the file's own number."""
+        return self._file.fileno()
+
+    def isatty(self) -> bool:
+        """Tell whether the file is a terminal."""
+        return self._file.isatty()
+
+
+class PatientDriver(LinuxDriver):
+    """The stock driver over a patient file, reading on after bytes that it cannot understand."""
+
+    def __init__(self, *arguments: Any, **options: Any) -> None:
+        super().__init__(*arguments, **options)
+        self._file: Any = PatientFile(self._file)
+
+    def _sigcont_application(self, *arguments: Any) -> None:
+        """Take the terminal again after a stop; SIGSTOP gave no chance to let go of it before."""
+        if not os.isatty(self.fileno):
+            return
+        if not self._must_signal_resume:
+            self.suspend_application_mode()
+            self._must_signal_resume = True
+        super()._sigcont_application(*arguments)
+
+    def run_input_thread(self) -> None:
+        """Read keys until told to stop; the bytes read with one that is no text are left out."""
+        while not self.exit_event.is_set():
+            try:
+                super().run_input_thread()
+            except UnicodeDecodeError:
+                continue
+            except OSError:  # no terminal to read from: what is to be done about it, SIGHUP says
+                return
