@@ -70,7 +70,7 @@ class Dashboard(App[int]):
 
     def __init__(
         self,
-        first: Screen[Choice | None],
+        first: Screen[Choice | None] | Screen[None],
         *,
         glyphs: Glyphs = BRAILLE,
         theme: str | None = None,
@@ -208,10 +208,14 @@ class Dashboard(App[int]):
 
 def watch_app(session: Session, **look: object) -> Dashboard:
     """Return the application on a watch screen; its feed is set by the caller."""
-    remembered = look.get("remembered")
-    if isinstance(remembered, Remembered):
-        session = replace(session, units=UNITS[remembered.now.units])
+    session = replace(session, units=UNITS[settings_of(look).now.units])
     return Dashboard(WatchScreen(session), **look)  # type: ignore[arg-type]  # the caller names Dashboard's arguments
+
+
+def settings_of(look: dict[str, object]) -> Remembered:
+    """Return the settings that a look comes with; the defaults without any."""
+    found = look.get("remembered")
+    return found if isinstance(found, Remembered) else Remembered()
 
 
 def theme_named(word: str) -> str:
@@ -352,6 +356,35 @@ def _shown(app: Dashboard, feed: Feed) -> int:
     return status if status is not None else app.return_code or 0
 
 
+def run_explorer(site: "SiteFile", *, theme: str | None = None) -> int:
+    """Show the prediction explorer of a site until the user leaves.
+
+    Parameters
+    ----------
+    site : SiteFile
+        What the inputs begin with.
+    theme : str, optional
+        Name of a theme.
+
+    Returns
+    -------
+    int
+        Exit status.
+
+    Raises
+    ------
+    InputError
+        When this terminal has no screen.
+    """
+    from eastfall.tui.screens.explorer import ExplorerScreen  # noqa: PLC0415 (the models only where asked for)
+
+    look = terminal_look() | ({"theme": theme} if theme else {})
+    units = UNITS[settings_of(look).now.units]
+    screen = ExplorerScreen(site.assumptions, name=safe(site.assumptions.site.name), units=units)
+    app = Dashboard(screen, **look)  # type: ignore[arg-type]  # as in watch_app
+    return app.run() or app.return_code or 0
+
+
 def run_start(
     act: Callable[[Choice], int] | None = None,
     *,
@@ -383,10 +416,12 @@ def run_start(
     InputError
         When this terminal has no screen; or what `act` raises.
     """
-    look = terminal_look() | ({"theme": theme} if theme else {})
     status, act = 0, act or by_verb
     while True:
-        screen = StartScreen(folder or Path.cwd(), log_suffix=SUFFIX, ports=ports or port_names)
+        # Read anew each time round: what was done in between may have changed the settings.
+        look = terminal_look() | ({"theme": theme} if theme else {})
+        used = [Path(one) for one in settings_of(look).now.recent_sites]
+        screen = StartScreen(folder or Path.cwd(), log_suffix=SUFFIX, ports=ports or port_names, used=used)
         app = Dashboard(screen, **look)  # type: ignore[arg-type]  # as in watch_app
         app.run()
         if app.choice is None:
@@ -398,6 +433,11 @@ def by_verb(choice: Choice) -> int:
     """Do what was chosen as the command line would."""
     from eastfall.tui.main import cli  # noqa: PLC0415 (the command line imports this module)
 
+    if choice.what == "explore":
+        from eastfall.io.emulator import demo_site  # noqa: PLC0415
+        from eastfall.io.sitefile import load_site  # noqa: PLC0415
+
+        return run_explorer(load_site(choice.path) if choice.path else demo_site("drop"))
     arguments = ["demo", "--kind", choice.kind] if choice.what == "demo" else [choice.what, str(choice.path)]
     status = cli.main(arguments, standalone_mode=False)
     return status if isinstance(status, int) else 0

@@ -71,7 +71,7 @@ def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ..
     if snapshot.trouble:
         return ((f"STOPPED: {snapshot.trouble}", Role.ACTION),)
     if not snapshot.armed:
-        return (("Not armed. Clear the shaft, then press g to say so.", Role.WARNING),)
+        return (("Not armed. Clear the shaft, then press g to say so. p plans the release.", Role.WARNING),)
     if isinstance(one, Station):
         rest = "at rest" if one.still else "in passing"
         return ((f"Station {one.number}, {one.direction}, {rest}. Press f to follow the newest.", Role.TEXT),)

@@ -36,11 +36,13 @@ _DEMO: "tuple[tuple[Kind, str], ...]" = (
 class Choice:
     """What the user wants to do."""
 
-    what: Literal["demo", "watch", "replay"]
+    what: Literal["demo", "watch", "replay", "explore"]
     path: Path | None = None
     kind: "Kind" = "guided"
 
 
+_EXPLORED = 3
+"""Sites offered to explore; any other by `eastfall expect SITE --explore`."""
 Ports = Callable[[], Sequence[str]]
 
 
@@ -71,13 +73,18 @@ class StartScreen(PaintedScreen[Choice | None]):
         How a run log's name ends.
     ports : callable, optional
         Names the serial ports of this machine, one line each.
+    used : sequence of Path
+        Site files used lately, the newest first.
     """
 
     PLACES = ("start",)
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("start"))
 
-    def __init__(self, folder: Path, *, log_suffix: str, ports: Ports | None = None) -> None:
+    def __init__(
+        self, folder: Path, *, log_suffix: str, ports: Ports | None = None, used: Sequence[Path] = ()
+    ) -> None:
         super().__init__()
+        self._used = used
         self._folder, self._suffix, self._ports = folder, log_suffix, ports
         self._choices: dict[str, Choice] = {}
 
@@ -95,7 +102,7 @@ class StartScreen(PaintedScreen[Choice | None]):
         self.query_one(KeyLine).show(
             ("↑ ↓", "move"),
             ("enter", "choose"),
-            *keys.line(("all",), replay=False, changes=getattr(self.app, "key_changes", None)),
+            *keys.line(("start", "all"), replay=False, changes=getattr(self.app, "key_changes", None)),
         )
 
     def _options(self) -> list[Option | None]:
@@ -104,9 +111,9 @@ class StartScreen(PaintedScreen[Choice | None]):
             self._option(f"demo {kind}", f"demo, {what}", Choice(what="demo", kind=kind))
             for kind, what in _DEMO
         ]
-        sites = [path for path in recent(self._folder, (".toml",)) if looks_like_site(path)]
+        sites = self._sites()
         options.append(
-            _head("Watch live: site files here" if sites else "Watch live: no site file in this folder")
+            _head("Watch live: site files" if sites else "Watch live: no site file in this folder")
         )
         options += [
             self._option(f"watch {path}", self._shown(path), Choice(what="watch", path=path))
@@ -126,6 +133,12 @@ class StartScreen(PaintedScreen[Choice | None]):
             )
             for path in logs
         ]
+        options.append(_head("Expect: change latitude, depth, body, wire, air; see the curves move"))
+        options += [
+            self._option(f"explore {path}", f"explore {self._shown(path)}", Choice(what="explore", path=path))
+            for path in sites[:_EXPLORED]
+        ]
+        options.append(self._option("explore", "explore an invented shaft", Choice(what="explore")))
         if self._ports is not None:
             options += [
                 _head("Instruments"),
@@ -134,8 +147,15 @@ class StartScreen(PaintedScreen[Choice | None]):
             ]
         return options
 
+    def _sites(self) -> list[Path]:
+        """Return the site files of the folder, then those used lately elsewhere that are still there."""
+        here = [path for path in recent(self._folder, (".toml",)) if looks_like_site(path)]
+        known = {path.absolute() for path in here}
+        return here + [path for path in self._used if path.absolute() not in known and looks_like_site(path)]
+
     def _shown(self, path: Path) -> str:
-        return safe(str(path.relative_to(self._folder)), 60)
+        inside = path.is_relative_to(self._folder)
+        return safe(str(path.relative_to(self._folder) if inside else path), 60)
 
     def _option(self, name: str, words: str, choice: Choice) -> Option:
         self._choices[name] = choice

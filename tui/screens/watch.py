@@ -255,6 +255,14 @@ class WatchScreen(PaintedScreen[Choice | None]):
         if who:
             cast("LiveFeed", self.feed).arm(safe(who.strip()))
 
+    def action_planner(self) -> None:
+        """Open the drop planner for this site; only a drop has one."""
+        from eastfall.tui.screens.planner import PlannerScreen  # noqa: PLC0415 (the models only where asked for)
+
+        session = self.session
+        if session.assumptions.run.kind == "drop":
+            self.app.push_screen(PlannerScreen(session.assumptions, name=session.title, units=session.units))
+
     def action_stations(self) -> None:
         """Open the table of stations."""
         self.app.push_screen(StationsScreen(self.latest, self.session.units), self._chosen)

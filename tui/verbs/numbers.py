@@ -43,8 +43,11 @@ class _Depths(click.ParamType[tuple[float, ...]]):
 @click.option("--every", type=click.FloatRange(min=0.001), metavar="M", help="A row every so many metres.")
 @click.option("--at", type=_Depths(), help="Rows at these depths.")
 @click.option("--budget", is_flag=True, help="What each input contributes to the uncertainty, instead.")
+@click.option("--explore", is_flag=True, help="A screen to change the inputs and see the curves move.")
 @as_format
-def expect(site: Path, every: float | None, at: tuple[float, ...] | None, budget: bool, form: str) -> None:
+def expect(
+    site: Path, every: float | None, at: tuple[float, ...] | None, budget: bool, explore: bool, form: str
+) -> None:
     """Print what a perfectly plumb shaft would show, with its uncertainty.
 
     Without --every or --at a row is printed for every station of the site file.
@@ -52,6 +55,10 @@ def expect(site: Path, every: float | None, at: tuple[float, ...] | None, budget
     from eastfall.io import prediction  # noqa: PLC0415 (the numerical library only where numbers are made)
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
+    if explore:
+        from eastfall.tui.app import run_explorer  # noqa: PLC0415 (the screen library only where a screen opens)
+
+        click.get_current_context().exit(run_explorer(load_site(site)))
     assumptions = load_site(site).assumptions
     depths = prediction.depths(assumptions, every=every, at=at)
     if budget:
