@@ -76,7 +76,7 @@ class Recording:
 
     def pipeline(self, curve: ExpectedCurve | None = None) -> Pipeline:
         """Return a fresh pipeline for the settings in use, with their curve where it stands ready."""
-        survey = Survey(self.site.assumptions, curve=curve, feed_watched=self.is_log)
+        survey = Survey(self.site.assumptions, curve=curve, feed_watched=self.is_log, notes=self.site.notes)
         return Pipeline(self.site, survey, armed=None if self.is_log else True)
 
 

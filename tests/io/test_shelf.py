@@ -31,7 +31,7 @@ def test_cards_say_what_when_how_deep_and_whether_intact(tmp_path: Path) -> None
     assert (guided.site, guided.kind, guided.depth, guided.verdict, guided.state, guided.error) == (
         "Sandrigg East",
         "guided",
-        360.0,
+        360.211,  # where the probe rested at the bottom, past the last station
         "within",
         "intact",
         "",
