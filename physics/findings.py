@@ -1,6 +1,7 @@
 """What the engine says: rows, stations, alarm changes and the standing answer, as frozen records in SI units."""
 
 from dataclasses import dataclass
+from math import nan
 from typing import Literal
 
 import numpy as np
@@ -240,6 +241,18 @@ class RestPoint:
     """Full swings seen."""
     fits: bool
     message: str = ""
+    u_period: float = nan
+    free_period: float = nan
+    """Of a free line of this length and weight [s]; NaN where the length is not known."""
+    amplitude: float = nan
+    """Of the newest swing, to each side [m]."""
+    width: float = nan
+    """Half of the narrow way across its ellipse [m]; negative for a clockwise bob."""
+    swings_needed: float = nan
+    """Full swings in all after which both standard uncertainties should be under 0.5 mm."""
+    schuler_east: float = nan
+    schuler_north: float = nan
+    """Schuler mean of the turning points, the check on paper [m]."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

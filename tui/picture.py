@@ -39,7 +39,7 @@ def demo_snapshot(site: "SiteFile", at: float) -> tuple[Pipeline, Snapshot]:
     pipeline, history = Pipeline(site), History("live")
     lines = emulator_for(site, options_of(site.links[0].url)).lines(0, at)
     block = LineBlock(
-        data=b"".join(line for _, line in lines),
+        data=b"".join(line for _, line in lines).replace(b"\r\n", b"\n"),
         times=np.array([moment for moment, _ in lines]),
         first_line=1,
     )

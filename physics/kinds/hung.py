@@ -1,6 +1,7 @@
 """A plumb line or a probe hanging free: where its bob comes to rest, against where a bob hangs in a plumb shaft."""
 
 from collections import Counter
+from math import nan
 
 import numpy as np
 from numpy.typing import NDArray
@@ -41,6 +42,8 @@ _SETTLED = 2.0
 """A line that runs on sooner than this has made no halt [s]."""
 _BY_HAND = 10.0
 """Readings at least this far apart are taken by hand, from a bob that a person saw at rest [s]."""
+_WANTED = 0.0005
+"""Standard uncertainty of a rest point for which the swings needed are told [m]."""
 _QUIET = 3.0
 """Readings that scatter by less than this many times their own uncertainty show a bob at rest."""
 
@@ -254,7 +257,7 @@ class Hung(Plain):
         if level is None or not level.count:
             return []
         level.rest = level.tracker.estimate()
-        self._rest = self._told(level.rest)
+        self._rest = self._told(level)
         found = self._station(level)
         self._closed += 1
         return [found]
@@ -315,7 +318,9 @@ class Hung(Plain):
         )
         return one_station(facts, self._assumptions)
 
-    def _told(self, rest: swing.RestPoint | None) -> RestPoint | None:
+    @staticmethod
+    def _told(level: _Level) -> RestPoint | None:
+        rest = level.rest
         if rest is None:
             return None
         return RestPoint(
@@ -329,6 +334,13 @@ class Hung(Plain):
             swings=float(rest.swings),
             fits=rest.fits,
             message=rest.message,
+            u_period=rest.u_period,
+            free_period=nan if level.tracker.period is None else float(level.tracker.period),
+            amplitude=float(rest.amplitude),
+            width=float(rest.width),
+            swings_needed=rest.swings_needed(_WANTED),
+            schuler_east=float(rest.schuler_east),
+            schuler_north=float(rest.schuler_north),
         )
 
     def close(self) -> tuple[Station, ...]:
@@ -358,7 +370,7 @@ class Hung(Plain):
     def rest_point(self) -> RestPoint | None:
         """Return the newest rest point: at this level, else at the last one closed."""
         if self._level is not None and self._level.rest is not None:
-            return self._told(self._level.rest)
+            return self._told(self._level)
         return self._rest
 
     def notes(self) -> tuple[str, ...]:

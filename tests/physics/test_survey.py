@@ -321,6 +321,17 @@ def test_a_swinging_bob_is_known_at_rest_and_each_halt_is_one_station(shaft):
     assert result.rest_point.period == pytest.approx(2.0 * np.pi * np.sqrt(60.0 / G), rel=2e-3)
 
 
+def test_a_rest_point_tells_the_swing_that_is_left_and_whether_it_is_good_enough(shaft):
+    """A swing of 20 mm that decays in 400 s stands at 12.1 mm after 200 s; under 0.5 mm it needs no more swings."""
+    rest = run(shaft("hung", depth=90.0), EVERY_KIND["hung"])[0].result().rest_point
+    assert rest.amplitude == pytest.approx(0.02 * np.exp(-200.0 / 400.0), abs=3.0 * 3e-4)
+    assert abs(rest.width) < 3.0 * 3e-4
+    assert rest.decay == pytest.approx(400.0, rel=0.1)
+    assert rest.free_period == pytest.approx(2.0 * np.pi * np.sqrt(60.0 / G), rel=0.01)
+    assert rest.swings_needed == rest.swings
+    assert abs(rest.schuler_east) < 1e-3
+
+
 def test_a_few_readings_near_a_turning_point_do_not_pass_for_rest(shaft):
     """80 mm of swing on 80 m of line: 3 s about its turning point raise nothing and leave it undecided."""
     time = np.arange(0.0, 60.0, 0.1)
