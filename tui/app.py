@@ -180,6 +180,9 @@ class Dashboard(App[int]):
         if isinstance(self.first, WatchScreen):
             self.first.session = replace(self.first.session, units=self.units)
         for screen in self.screen_stack:
+            reckon_in = getattr(screen, "reckon_in", None)
+            if name == "units" and reckon_in is not None:
+                reckon_in(self.units)
             for widget in screen.query(CellWidget):
                 widget.redraw()
 

@@ -8,9 +8,10 @@ from textual.containers import Horizontal
 
 from eastfall.physics.settings import Assumptions
 from eastfall.tui import drop, keys
-from eastfall.tui.dials import RELEASE, Dial, Inputs
+from eastfall.tui.dials import RELEASE, Dial
+from eastfall.tui.inputs import Inputs
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.explorer import InputScreen, typing
+from eastfall.tui.screens.inputs import InputScreen, typing
 from eastfall.tui.units import METRIC, Units, size_of
 from eastfall.tui.widgets.cloud import Cloud
 from eastfall.tui.widgets.dials import DialList
@@ -39,14 +40,10 @@ class PlannerScreen(InputScreen):
     BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("planner", "page"), *typing()]
     DIALS: ClassVar[tuple[Dial, ...]] = RELEASE
     HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (110, "-normal")]  # noqa: RUF012
-    DEFAULT_CSS = """
-    PlannerScreen #other-plan { display: none; margin-left: 1; }
-    PlannerScreen.-normal #other-plan { display: block; }
-    """
 
     def __init__(self, base: Assumptions, *, name: str = "", units: Units = METRIC) -> None:
         super().__init__(Inputs(base=base, units=units))
-        self._site_name, self._units = name or "unnamed site", units
+        self._site_name = name or "unnamed site"
         self.found: drop.Plan | None = None
         self.scope: Scope = "close"
 
@@ -87,7 +84,7 @@ class PlannerScreen(InputScreen):
             self._paint_found(self.found)
 
     def _paint_found(self, found: drop.Plan) -> None:
-        units = self._units
+        units = self.inputs.units
         self.query_one("#answer", TextLine).show(
             (drop.landing(found, units), Role.DIM if self.complaint else Role.STRONG)
         )
@@ -113,8 +110,10 @@ class PlannerScreen(InputScreen):
             ("body.release_north_mm", self.found.best.north),
         ):
             dial = next(one for one in RELEASE if one.path == path)
-            shown = value * 1e3 / size_of(dial.key.unit, self._units)[1]
-            inputs = inputs.put(dial, f"{shown:.1f}" if self._units.name == "metric" else f"{shown:.2f}")
+            shown = value * 1e3 / size_of(dial.key.unit, self.inputs.units)[1]
+            inputs = inputs.put(
+                dial, f"{shown:.1f}" if self.inputs.units.name == "metric" else f"{shown:.2f}"
+            )
         self.change(inputs)
 
     def action_scope(self) -> None:

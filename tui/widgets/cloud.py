@@ -1,7 +1,7 @@
 """The plan of a drop, north up: release, path, landing with its 95 % ellipse, cloud of drops, best release, wall."""
 
 from collections.abc import Iterable
-from math import hypot, isfinite
+from math import hypot
 
 import numpy as np
 
@@ -21,6 +21,8 @@ from eastfall.tui.widgets.plan import (
     Point,
     Scope,
 )
+
+_IN_VIEW = 2.0
 
 
 class Cloud(CellWidget):
@@ -70,9 +72,9 @@ class _CloudSheet(PlanSheet):
             return (shaft.centre_east, shaft.centre_north), (shaft.diameter or 1.0) / 2.0 * 1.08
         far = np.hypot(drop.cloud[0] - drop.landing[0], drop.cloud[1] - drop.landing[1])
         apart = hypot(drop.release[0] - drop.landing[0], drop.release[1] - drop.landing[1])
-        # Four times the cloud at most: a release farther off than that would make a dot of it.
-        reach = max(0.002, float(far.max()) * 1.1)
-        reach = max(reach, min(1.1 * apart, 4.0 * reach))
+        # A release much farther off than the cloud is wide would make a dot of it.
+        reach = max(0.001, float(far.max()) * 1.1)
+        reach = 1.1 * apart if reach < 1.1 * apart < _IN_VIEW * reach else reach
         step = round_step(2.0 * reach, 40)
         return drop.landing, step * float(np.ceil(reach / step))
 
@@ -109,9 +111,17 @@ class _CloudSheet(PlanSheet):
         polyline(plane, *self.at(self.drop.landing[0] + east, self.drop.landing[1] + north))
         self._stamp(plane, Role.EXPECTED)
 
+    def _in_view(self, point: Point) -> bool:
+        x, y = (float(one) for one in self.at(*point))
+        return 0.0 <= x < self.size[0] and 0.0 <= y < self.size[1]
+
     def _legend(self) -> Iterable[tuple[str, Role]]:
-        yield "R release", Role.STRONG
+        """Name what is in view."""
         yield "x lands (95 %)", Role.EXPECTED
-        if self.drop.best is not None and isfinite(self.drop.best.east):
+        if self._in_view(self.drop.release):
+            yield "R release", Role.STRONG
+        best = self.drop.best
+        if best is not None and self._in_view((best.east, best.north)):
             yield "+ best", Role.OK
-        yield "wall", Role.WALL
+        if self.scope == "wall":
+            yield "wall", Role.WALL

@@ -62,14 +62,14 @@ class Curves(CellWidget):
         self._legend(sheet, self.view)
 
     def _legend(self, sheet: Raster, view: Prospects) -> None:
-        solid, dashed, dotted, _, heavy = sheet.glyphs.samples
+        solid, dashed, dotted, _, _ = sheet.glyphs.samples
         parts = [(f"{solid}A expected", Role.EXPECTED), (f"{dotted}±U", Role.BAND)]
         if view.extras:
             parts += [("b bob", Role.BOB), ("d dropped", Role.FALL)]
         if view.other is not None:
             parts.append((f"{dashed}B", Role.PAST))
         if view.one.curve.wall_contact_depth is not None:
-            parts.append((f"{heavy}wall", Role.ACTION))
+            parts.append((f"{sheet.glyphs.rule}wall", Role.ACTION))
         column = GUTTER
         for text, role in parts:
             if column + len(text) <= sheet.width:

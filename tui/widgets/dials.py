@@ -1,6 +1,7 @@
 """A list of inputs with a cursor: name, value, unit; those changed are marked; typing is the screen's business."""
 
-from eastfall.tui.dials import Dial, Inputs
+from eastfall.tui.dials import Dial
+from eastfall.tui.inputs import Inputs
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
