@@ -4,6 +4,7 @@ from dataclasses import dataclass
 from math import atan2, degrees, hypot, isfinite
 from typing import Any
 
+from eastfall.io.cautions import CAUTIONS
 from eastfall.io.prediction import REFERENCE_LINES
 from eastfall.io.reduce import Reduction
 from eastfall.io.safetext import safe
@@ -11,12 +12,6 @@ from eastfall.io.whatif import settings_of
 from eastfall.physics.findings import Station
 
 _MM = 1000.0
-CAUTIONS = (
-    "This report is an aid to judgement, not a safety device.",
-    "Nobody stays below a suspended or dropped load.",
-    "Local mining and hoisting regulations and a licensed surveyor's practice come first.",
-    "Check that electronics are allowed in the atmosphere before they go into the shaft.",
-)
 KINDS = {
     "guided": "probe or cage running in guides",
     "hung": "plumb line or probe hanging free",

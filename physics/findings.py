@@ -249,7 +249,7 @@ class RestPoint:
     width: float = nan
     """Half of the narrow way across its ellipse [m]; negative for a clockwise bob."""
     swings_needed: float = nan
-    """Full swings in all after which both standard uncertainties should be under 0.5 mm."""
+    """Full swings in all after which both expanded uncertainties should be under 0.5 mm."""
     schuler_east: float = nan
     schuler_north: float = nan
     """Schuler mean of the turning points, the check on paper [m]."""

@@ -9,12 +9,8 @@ import sys
 
 import click
 
+from eastfall.io.cautions import CAUTIONS
 from eastfall.physics.errors import EastfallError
-
-CAUTION = (
-    "An aid to judgement, not a safety device. Nobody below a suspended or dropped load. Local mining and hoisting "
-    "regulations and a licensed surveyor's practice come first. Check that electronics are allowed in the atmosphere."
-)
 
 VERBS: dict[str, tuple[str, str]] = {
     "demo": ("live", "run the whole job on a built-in emulated instrument"),
@@ -58,7 +54,10 @@ class _Verbs(click.Group):
 
 
 @click.group(
-    cls=_Verbs, invoke_without_command=True, epilog=CAUTION, context_settings={"max_content_width": 100}
+    cls=_Verbs,
+    invoke_without_command=True,
+    epilog=" ".join(CAUTIONS),
+    context_settings={"max_content_width": 100},
 )
 @click.version_option(package_name="eastfall", message="%(prog)s %(version)s")
 @click.pass_context

@@ -10,13 +10,6 @@ from eastfall.tui.units import FEET, METRIC, Units
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind, Reference
 
-CAUTIONS = (
-    "An aid to judgement: not a safety device, and no part of one.",
-    "Nobody below a suspended or dropped load, whatever this screen says.",
-    "Local mining and hoisting regulations and a licensed surveyor's practice come first.",
-    "Check that electronics are allowed in this atmosphere.",
-)
-
 REFERENCE: "dict[Reference, str]" = {
     "straight": "straight vertical",
     "field-line": "curved vertical",

@@ -42,8 +42,8 @@ _SETTLED = 2.0
 """A line that runs on sooner than this has made no halt [s]."""
 _BY_HAND = 10.0
 """Readings at least this far apart are taken by hand, from a bob that a person saw at rest [s]."""
-_WANTED = 0.0005
-"""Standard uncertainty of a rest point for which the swings needed are told [m]."""
+_WANTED = 0.00025
+"""Standard uncertainty of a rest point for which the swings needed are told [m]: ±0.5 mm expanded."""
 _QUIET = 3.0
 """Readings that scatter by less than this many times their own uncertainty show a bob at rest."""
 
@@ -334,11 +334,11 @@ class Hung(Plain):
             swings=float(rest.swings),
             fits=rest.fits,
             message=rest.message,
-            u_period=rest.u_period,
+            u_period=float(rest.u_period),
             free_period=nan if level.tracker.period is None else float(level.tracker.period),
             amplitude=float(rest.amplitude),
             width=float(rest.width),
-            swings_needed=rest.swings_needed(_WANTED),
+            swings_needed=float(rest.swings_needed(_WANTED)),
             schuler_east=float(rest.schuler_east),
             schuler_north=float(rest.schuler_north),
         )

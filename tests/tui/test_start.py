@@ -5,9 +5,9 @@ from pathlib import Path
 
 import pytest
 
+from eastfall.io.cautions import CAUTIONS
 from eastfall.tui.app import Dashboard
 from eastfall.tui.screens.start import RECENT, Choice, StartScreen, looks_like_site, recent
-from eastfall.tui.words import CAUTIONS
 
 pytestmark = pytest.mark.invariant
 SUFFIX = ".eastfall.jsonl"

@@ -9,8 +9,6 @@ from textual.containers import Vertical
 from textual.screen import ModalScreen
 from textual.widgets import Input, Static
 
-from eastfall.tui.words import CAUTIONS
-
 
 def plain(text: str, classes: str = "") -> Static:
     """Return text that is shown letter by letter: brackets are no markup."""

@@ -8,9 +8,9 @@ from textual.binding import BindingType
 from textual.containers import VerticalScroll
 from textual.screen import Screen
 
+from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain
-from eastfall.tui.words import CAUTIONS
 
 READING = """How to read the picture
 

@@ -13,12 +13,13 @@ from textual.containers import Vertical
 from textual.widgets import OptionList
 from textual.widgets.option_list import Option
 
+from eastfall.io.cautions import CAUTIONS
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine
-from eastfall.tui.words import CAUTIONS, size
+from eastfall.tui.words import size
 
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind
