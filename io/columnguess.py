@@ -15,8 +15,12 @@ _NUMERIC = 0.9
 """Share of a column's fields that must be numbers."""
 _EPOCH = 1e8
 """Seconds: a larger rising number counts from some calendar date."""
-_SMOOTH = 0.2
-"""Median step over the range, of a quantity that moves and does not merely flicker."""
+_SMOOTH = 0.08
+"""Median step over the range, of a quantity that moves and does not merely flicker: noise has 0.2."""
+_FEW = 1.6
+"""The same, times the number of steps, where these are few: a steady walk has 1."""
+_CLOCKLIKE = 0.01
+"""Spread over size of the steps, below which a column may be a clock."""
 _ABOVE_COLLAR = -5.0
 """Metres: what swings about zero goes farther to the other side than a depth goes above the collar."""
 
@@ -65,14 +69,19 @@ class _Looks:
         return bool(np.all(self.steps >= 0.0) and np.mean(self.steps > 0.0) >= _NUMERIC)
 
     @property
+    def one_way(self) -> bool:
+        return bool(np.all(self.steps >= 0.0) or np.all(self.steps <= 0.0))
+
+    @property
     def unevenness(self) -> float:
-        """Spread of the steps over their median; 0 for a clock."""
+        """Mean deviation of the steps from their median, over that; 0 for a clock."""
         middle = float(np.median(self.steps))
-        return float(np.median(np.abs(self.steps - middle))) / abs(middle) if middle else np.inf
+        return float(np.mean(np.abs(self.steps - middle))) / abs(middle) if middle else np.inf
 
     @property
     def smooth(self) -> bool:
-        return self.span == 0.0 or float(np.median(np.abs(self.steps))) <= _SMOOTH * self.span
+        most = max(_SMOOTH, _FEW / max(self.steps.size, 1))
+        return self.span == 0.0 or float(np.median(np.abs(self.steps))) <= most * self.span
 
     def inside(self, name: str) -> bool:
         """Whether the decoder would believe every value under this name."""
@@ -134,22 +143,22 @@ def _face(left: list[_Looks]) -> Named:
 
 
 def _time(left: list[_Looks]) -> Named:
-    """Take the column that rises most evenly; one that could as well be a depth is no clock unless two rise."""
+    """Take the column that rises most evenly, if another is left that may be the depth."""
     rising = [one for one in left if one.rises and one.inside("time_s")]
     if not rising:
         return {}
-    best = min(rising, key=lambda one: (one.size < _EPOCH, round(one.unevenness, 3), one.place))
+    best = min(rising, key=lambda one: (one.size < _EPOCH, round(one.unevenness, 9), one.place))
     others = [one for one in left if one is not best and _may_be_depth(one)]
     if best.size >= _EPOCH:
         return {best.place: Guess("time_s", "rises, counted from a calendar date")}
-    if not others and best.unevenness > 0.01:
-        return {}
+    if not others:
+        return {}  # a run can do without a clock of the instrument's own, but not without depth
     step = float(np.median(best.steps))
     return {best.place: Guess("time_s", f"rises evenly, by {step:.4g} each line")}
 
 
 def _may_be_depth(one: _Looks) -> bool:
-    large = one.span >= 1.0 or one.size >= 1.0 or (one.span == 0.0 and one.decimals > 0)
+    large = one.span >= 1.0 or (one.span == 0.0 and (one.size >= 1.0 or one.decimals > 0))
     return one.inside("depth_m") and one.smooth and large
 
 
@@ -160,10 +169,11 @@ def _depth(left: list[_Looks]) -> Named:
     standing = [one for one in first if one.span == 0.0 and one.decimals > 0]
     moving = [one for one in able if one.span >= 1.0 and one.values.min() >= _ABOVE_COLLAR]
     if moving:
-        best = max(moving, key=lambda one: (one.span, -one.place))
+        best = max(moving, key=lambda one: (one.one_way, one.span, -one.place))
         # A plumb line that swings at one depth moves smoothly too, but never as far as that depth.
         if not standing or best.span > standing[0].size > 0.0:
-            return {best.place: Guess("depth_m", f"moves smoothly over {best.span:.4g}")}
+            doubt = "; or is it a clock?" if best.rises and best.unevenness < _CLOCKLIKE else ""
+            return {best.place: Guess("depth_m", f"moves smoothly over {best.span:.4g}{doubt}")}
     for one in standing or first:
         return {one.place: Guess("depth_m", "stands still ahead of the others: a probe at rest")}
     return {}

@@ -221,10 +221,10 @@ def _delimiter_of(lines: list[bytes]) -> tuple[str, int, tuple[str, ...]]:
     scores = []
     lines = lines[-_CUT_UP:]
     for place, delimiter in enumerate(_DELIMITERS):
-        counts = Counter(len(_cut(one, delimiter)) for one in lines)
-        fields, alike = counts.most_common(1)[0] if counts else (1, 0)
-        numeric = sum(_is_number(field, delimiter) for one in lines for field in _cut(one, delimiter))
-        pieces = sum(len(_cut(one, delimiter)) for one in lines)
+        rows = [_cut(one, delimiter) for one in lines]
+        fields, alike = max(Counter(map(len, rows)).items(), key=lambda one: one[1], default=(1, 0))
+        pieces = sum(bool(field) for row in rows for field in row)
+        numeric = sum(_is_number(field, delimiter) for row in rows for field in row)
         # A cut that makes words of what stood together is worth less than one that leaves numbers whole.
         scores.append((alike * (2 * numeric - pieces), -place, delimiter, fields, alike))
     _, _, delimiter, fields, alike = max(scores)

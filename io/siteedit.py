@@ -314,3 +314,12 @@ def take_link(draft: SiteDraft, index: int, settings: LinkSettings) -> None:
         default = key.default if key is not None else None
         if draft.value(path) is not None or value != default:
             draft.put(path, list(value) if isinstance(value, tuple) else value)
+
+
+def changed_since(path: Path, text: str) -> str:
+    """Return a warning if a file is no longer what it was when it was opened; empty if it is."""
+    try:
+        same = path.read_bytes() == text.encode("utf-8")
+    except OSError:
+        return "It cannot be read any more; it is written anew."
+    return "" if same else "Another program changed it since it was opened: that change is lost."

@@ -1,4 +1,4 @@
-"""What the start screen opens beside runs: a new site file, one to edit, a port to listen to; and what follows from it."""
+"""What the start screen opens beside runs: a new site file, one to edit, a port to listen to; and what follows."""
 
 from collections.abc import Callable, Sequence
 from pathlib import Path

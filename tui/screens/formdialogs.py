@@ -1,6 +1,7 @@
 """Dialogs of the site form: a table typed as rows of numbers, and the name of the file to save."""
 
 from collections.abc import Callable
+from pathlib import Path
 from typing import ClassVar
 
 from textual.app import ComposeResult
@@ -91,3 +92,26 @@ class AskName(AskText):
         """Show the proposal, the cursor at its end."""
         super().on_mount()
         self.query_one(Input).value = self._proposal
+
+
+def free_name(folder: Path, name: str) -> Path:
+    """Return the path of a site file under whose name nothing stands yet.
+
+    Raises
+    ------
+    ValueError
+        With what to type instead.
+    """
+    plain_name = name.strip()
+    if not plain_name:
+        raise ValueError("A name is needed, such as kestrel.toml.")
+    path = folder / Path(plain_name if plain_name.endswith(".toml") else f"{plain_name}.toml").expanduser()
+    try:
+        stands = path.exists() or path.is_symlink()
+    except (OSError, ValueError) as error:
+        raise ValueError(f"This is no name of a file: {error}") from error
+    if stands:
+        raise ValueError("A file of this name stands already; another name, please.")
+    if not path.parent.is_dir():
+        raise ValueError("There is no such folder.")
+    return path

@@ -22,11 +22,11 @@ from eastfall.io.sitefile import LinkSettings, SiteFile
 from eastfall.io.trial import KEPT, Heard, LineRead, LineReader, Trial
 from eastfall.physics.errors import ParameterError
 from eastfall.tui import keys
-from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
-from eastfall.tui.widgets.cells import CellWidget, PaintedScreen
-from eastfall.tui.widgets.line import KeyLine, Piece, TextLine, wrapped
+from eastfall.tui.widgets.cells import PaintedScreen
+from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
+from eastfall.tui.widgets.trial import Reasons, TrialLines
 
 Ports = Callable[[], Sequence[str]]
 SPEEDS = (1200, 2400, 4800, 9600, 19200, 38400, 57600, 115200)
@@ -35,8 +35,6 @@ _THINK = 10
 """Every so many pictures the lines are looked at anew for a form."""
 _SILENT = 3.0
 """Seconds without a byte after which the screen says so."""
-_ROLES = {"good": Role.OK, "bad": Role.ACTION, "unused": Role.DIM, "waiting": Role.DIM}
-_MARKS = {"good": "=", "bad": "!", "unused": "-", "waiting": "~"}
 _STATES = {
     "opening": ("opening ...", Role.TEXT),
     "open": ("listening", Role.OK),
@@ -44,52 +42,6 @@ _STATES = {
     "lost": ("no port", Role.ACTION),
     "closed": ("let go", Role.TEXT),
 }
-
-
-class TrialLines(CellWidget):
-    """Pairs of rows: a line as it came, and under it how it is read; the newest at the bottom."""
-
-    lines: tuple[LineRead, ...] = ()
-    note = ""
-
-    def show(self, lines: tuple[LineRead, ...], note: str) -> None:
-        """Set the lines, and what to say where there are none."""
-        if (lines, note) != (self.lines, self.note):
-            self.lines, self.note = lines, note
-            self.redraw()
-
-    def draw(self, sheet: Raster) -> None:
-        """Write as many pairs as there is room for."""
-        shown = self.lines[-(sheet.height // 2) :] if sheet.height > 1 else ()
-        for place, one in enumerate(shown):
-            sheet.text(0, 2 * place, safe(one.raw, max(sheet.width, 4)), Role.TEXT)
-            sheet.text(2, 2 * place + 1, f"{_MARKS[one.verdict]} {one.words}", _ROLES[one.verdict])
-        if not shown:
-            sheet.text(0, 0, self.note, Role.WARNING)
-
-
-class Reasons(CellWidget):
-    """What is proposed, then a line for each reason; what does not fit is counted."""
-
-    head: Piece = ("", Role.TEXT)
-    reasons: tuple[str, ...] = ()
-
-    def show(self, head: Piece, reasons: tuple[str, ...]) -> None:
-        """Set both."""
-        if (head, reasons) != (self.head, self.reasons):
-            self.head, self.reasons = head, reasons
-            self.redraw()
-
-    def draw(self, sheet: Raster) -> None:
-        """Write them."""
-        words, role = self.head
-        lines = [(one, role) for one in wrapped(words, sheet.width, sheet.width)]
-        lines += [(f"  {one}", Role.TEXT) for one in self.reasons]
-        if len(lines) > sheet.height:
-            left = len(lines) - sheet.height + 1
-            lines = [*lines[: sheet.height - 1], (f"  and {left} more; a taller window shows them", Role.DIM)]
-        for row, (text, ink) in enumerate(lines):
-            sheet.text(0, row, text, ink)
 
 
 class PortTrial(PaintedScreen[LinkSettings | None]):
@@ -319,7 +271,8 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
 
     def _keys(self) -> list[tuple[str, str]]:
         if self.listening:
-            return [one for one in keys.line(self.PLACES, replay=False) if one[1] != "choose"]
+            idle = {"choose"} if self._given is not None else {"choose", "form"}
+            return [one for one in keys.line(self.PLACES, replay=False) if one[1] not in idle]
         return [("↑ ↓", "choose"), ("tab", "speed"), ("enter", "listen"), ("esc", "back")]
 
     def _counts(self, heard: Heard) -> tuple[Piece, ...]:

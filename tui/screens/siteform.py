@@ -16,13 +16,13 @@ from textual.widgets import Input
 from eastfall.io.errors import OutputError, SiteFileError
 from eastfall.io.outputs import write_text
 from eastfall.io.safetext import safe
-from eastfall.io.siteedit import NEW_SITE, SiteDraft, open_draft, take_link
+from eastfall.io.siteedit import NEW_SITE, SiteDraft, changed_since, open_draft, take_link
 from eastfall.io.sitefile import LinkSettings, SiteFile, parse_site
 from eastfall.io.sitevalues import headings, key_of, shape, typed
 from eastfall.tui import formpages, keys
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import Confirm
-from eastfall.tui.screens.formdialogs import AskName, RowsDialog
+from eastfall.tui.screens.formdialogs import AskName, RowsDialog, free_name
 from eastfall.tui.screens.porttrial import PortTrial
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.formrow import KeyList, KeyRow, SectionList, ValueInput
@@ -340,7 +340,7 @@ class SiteForm(PaintedScreen[Path | None]):
         if self._path is None:
             self.action_save_as()
             return
-        changed = _differs(self._path, self._kept)
+        changed = changed_since(self._path, self._kept)
         self.app.push_screen(
             Confirm(f"Write over {safe(self._path.name, 50)}?", changed or "Comments and order are kept."),
             lambda sure: self._write(self._path, over=True) if sure else None,
@@ -358,16 +358,7 @@ class SiteForm(PaintedScreen[Path | None]):
         )
 
     def _free(self, name: str) -> Path:
-        """Return the path of a name under which nothing stands."""
-        plain = name.strip()
-        if not plain:
-            raise ValueError("A name is needed, such as kestrel.toml.")
-        path = self._folder / Path(plain if plain.endswith(".toml") else f"{plain}.toml").expanduser()
-        if path.exists() or path.is_symlink():
-            raise ValueError("A file of this name stands already; another name, please.")
-        if not path.parent.is_dir():
-            raise ValueError("There is no such folder.")
-        return path
+        return free_name(self._folder, name)
 
     def _write(self, path: Path | None, *, over: bool) -> None:
         if path is None:
@@ -396,12 +387,3 @@ class SiteForm(PaintedScreen[Path | None]):
     def _left(self, sure: bool | None) -> None:
         if sure:
             self.dismiss(self._saved)
-
-
-def _differs(path: Path, text: str) -> str:
-    """Return a warning if a file is no longer what it was when it was opened."""
-    try:
-        same = path.read_bytes() == text.encode("utf-8")
-    except OSError:
-        return "It cannot be read any more; it is written anew."
-    return "" if same else "It was changed by another program since it was opened: that change is lost."
