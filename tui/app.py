@@ -21,8 +21,8 @@ from eastfall.io.logformat import SUFFIX
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.glyphs import BRAILLE, Glyphs
 from eastfall.tui.preferences import Remembered
-from eastfall.tui.raster import BRAILLE, Glyphs
 from eastfall.tui.screens.dialogs import Confirm
 from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.settings import SettingsScreen
@@ -176,7 +176,9 @@ class Dashboard(App[int]):
             self.theme = theme_named(self.remembered.now.theme)
         self.muted = not self.remembered.now.sound
         if name == "glyphs":
-            self.glyphs = glyphs_for(os.environ, sys.stdout.encoding, self.remembered.now.glyphs)
+            # While a screen is open the library stands in for stdout.
+            encoding = getattr(sys.__stdout__, "encoding", None)
+            self.glyphs = glyphs_for(os.environ, encoding, self.remembered.now.glyphs)
         if isinstance(self.first, WatchScreen):
             self.first.session = replace(self.first.session, units=self.units)
         for screen in self.screen_stack:

@@ -3,7 +3,7 @@
 from collections.abc import Mapping
 
 from eastfall.io.errors import InputError
-from eastfall.tui.raster import ASCII, BRAILLE, GLYPHS, HALF, Glyphs
+from eastfall.tui.glyphs import ASCII, BRAILLE, GLYPHS, HALF, Glyphs
 
 
 def refuse_unless_screen(environment: Mapping[str, str], *, is_terminal: bool) -> None:

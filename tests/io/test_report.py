@@ -69,7 +69,7 @@ def test_every_section_is_there_with_its_numbers(page_text: str) -> None:
         "OVER the action limit at 2 of 5 stations",
         "26.4 mm toward 81° at 30.5 m",
         "aid to judgement, not a safety device",
-        "Nobody stays below a suspended or dropped load",
+        "Nobody below a suspended or dropped load",
         "licensed surveyor's practice come first",
         "electronics are allowed in the atmosphere",
         "latitude 57.30000°",

@@ -8,7 +8,8 @@ import pytest
 
 from eastfall.physics.findings import Rows
 from eastfall.tui.axes import Axis
-from eastfall.tui.raster import BRAILLE, GLYPHS, Cells, Kept, Raster
+from eastfall.tui.glyphs import BRAILLE, GLYPHS
+from eastfall.tui.raster import Cells, Kept, Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.sight import Sight
 from eastfall.tui.store import Snapshot

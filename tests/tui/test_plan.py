@@ -6,7 +6,8 @@ import numpy as np
 import pytest
 
 from eastfall.physics.findings import RestPoint, Standing
-from eastfall.tui.raster import BRAILLE, Cells, Raster
+from eastfall.tui.glyphs import BRAILLE
+from eastfall.tui.raster import Cells, Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.plan import Plan, PlanView
 

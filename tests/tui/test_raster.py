@@ -3,22 +3,10 @@
 import numpy as np
 import pytest
 
-from eastfall.tui.raster import (
-    ASCII,
-    BRAILLE,
-    FILLER,
-    HALF,
-    Cells,
-    Raster,
-    Runs,
-    columns,
-    polyline,
-    rhythm,
-    ring,
-    segments,
-    trace,
-)
+from eastfall.tui.glyphs import ASCII, BRAILLE, HALF
+from eastfall.tui.raster import FILLER, Cells, Raster, columns
 from eastfall.tui.roles import Role
+from eastfall.tui.strokes import Runs, polyline, rhythm, ring, segments, trace
 
 pytestmark = pytest.mark.invariant
 

@@ -3,7 +3,7 @@
 import pytest
 
 from eastfall.io.errors import InputError
-from eastfall.tui.raster import ASCII, BRAILLE, HALF, Glyphs
+from eastfall.tui.glyphs import ASCII, BRAILLE, HALF, Glyphs
 from eastfall.tui.terminal import glyphs_for, refuse_unless_screen, wants_no_colour
 
 pytestmark = pytest.mark.invariant

@@ -11,7 +11,7 @@ from textual.pilot import Pilot
 from eastfall.physics.findings import AlarmView
 from eastfall.tui.app import Dashboard, watch_app
 from eastfall.tui.feed import LiveFeed, ReplayFeed
-from eastfall.tui.raster import GLYPHS
+from eastfall.tui.glyphs import GLYPHS
 from eastfall.tui.screens.dialogs import AskText, ClearShaft, Confirm
 from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.stations import StationPage, StationsScreen

@@ -9,6 +9,8 @@ from textual.containers import Vertical
 from textual.screen import ModalScreen
 from textual.widgets import Input, Static
 
+from eastfall.io.cautions import CAUTIONS
+
 
 def plain(text: str, classes: str = "") -> Static:
     """Return text that is shown letter by letter: brackets are no markup."""

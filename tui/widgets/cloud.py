@@ -7,8 +7,9 @@ import numpy as np
 
 from eastfall.tui.axes import round_step
 from eastfall.tui.drop import Plan as Drop
-from eastfall.tui.raster import Kept, Raster, polyline, rhythm, segments
+from eastfall.tui.raster import Kept, Raster
 from eastfall.tui.roles import Role
+from eastfall.tui.strokes import polyline, rhythm, segments
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.widgets.plan import (

@@ -6,8 +6,9 @@ import numpy as np
 
 from eastfall.tui.axes import Axis, around
 from eastfall.tui.outlook import Prospect
-from eastfall.tui.raster import Floats, Raster, polyline, rhythm
+from eastfall.tui.raster import Floats, Raster
 from eastfall.tui.roles import Role
+from eastfall.tui.strokes import polyline, rhythm
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.widgets.panel import BELOW, GUTTER, PanelGround, row_of

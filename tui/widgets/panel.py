@@ -10,10 +10,11 @@ from eastfall.physics.findings import Rows
 from eastfall.physics.verdict import COVERAGE_FACTOR
 from eastfall.tui import sight as look
 from eastfall.tui.axes import Axis, around, label, symmetric
-from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster, Runs, polyline, rhythm, trace
+from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve
 from eastfall.tui.store import Snapshot, last_pass
+from eastfall.tui.strokes import Runs, polyline, rhythm, trace
 from eastfall.tui.units import METRIC, Units
 
 GUTTER = 6

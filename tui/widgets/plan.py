@@ -9,8 +9,9 @@ import numpy as np
 
 from eastfall.physics.findings import RestPoint, Standing, Station
 from eastfall.tui.axes import round_step
-from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster, polyline, rhythm, ring, segments
+from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster
 from eastfall.tui.roles import Role
+from eastfall.tui.strokes import polyline, rhythm, ring, segments
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.cells import CellWidget
 

@@ -3,9 +3,10 @@
 import numpy as np
 
 from eastfall.tui.axes import Axis, label, round_step
-from eastfall.tui.raster import Raster, Runs, polyline, rhythm, trace
+from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.store import Snapshot
+from eastfall.tui.strokes import Runs, polyline, rhythm, trace
 from eastfall.tui.widgets.cells import CellWidget
 
 LEAST_WIDTH, LEAST_HEIGHT = 24, 4
