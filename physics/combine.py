@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from eastfall.physics.findings import Best, Closure, FaceSums, Station
 from eastfall.physics.kinds.base import RANDOM
-from eastfall.physics.kinds.shares import AZIMUTH, DEPTH, JUMPED, MISSING, SCALE, ZERO
+from eastfall.physics.kinds.shares import AZIMUTH, BENDS, DEPTH, JUMPED, MISSING, SCALE, ZERO
 from eastfall.physics.settings import DEGREE, Assumptions, Instrument
 from eastfall.physics.tilt import spread_misclosure
 from eastfall.physics.verdict import horizontal, verdicts
@@ -26,7 +26,7 @@ _GRAIN = 1e-5
 """Passes that agree as well as this never disagree [m]: the corners of the winch's ramps."""
 _OWN = frozenset({RANDOM, MISSING, JUMPED})
 """What a pass gathers for itself."""
-_SPREAD = _OWN | {ZERO, SCALE, AZIMUTH, DEPTH}
+_SPREAD = _OWN | {ZERO, SCALE, AZIMUTH, DEPTH, BENDS}
 """Inputs of the measurement itself: a known end takes their part there away; what is expected stays as it is."""
 
 
@@ -61,8 +61,13 @@ def _pair(stations: tuple[Station, ...]) -> tuple[dict[float, Station], dict[flo
     """Return the stations that the first pass down and the pass up after it have in common, by depth."""
     down = {one.depth: one for one in stations if one.passing == 0 and one.direction == "down"}
     up = {one.depth: one for one in stations if one.passing == 1 and one.direction == "up"}
+    if down and up and max(down) > max(up):
+        # The pass up begins where the pass down ends: its deepest station is the sum's own turning point.
+        up[max(down)] = down[max(down)]
     common = sorted(down.keys() & up.keys())
-    return ({z: down[z] for z in common}, {z: up[z] for z in common}) if common else None
+    if len(common) < 2:
+        return None
+    return {z: down[z] for z in common}, {z: up[z] for z in common}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -174,6 +179,7 @@ def _opposite(down: list[Station], up: list[Station]) -> bool:
     return all(
         one.face is not None and other.face is not None and abs(abs(one.face - other.face) - pi) < pi / 4.0
         for one, other in zip(down, up, strict=True)
+        if one is not other
     )
 
 

@@ -6,6 +6,7 @@ Each guard places readings against its bound; delays and states are `alarms`, an
 from collections.abc import Iterator
 from dataclasses import dataclass
 from math import log, pi
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -91,23 +92,20 @@ class Guards:
         found: list[Sighting] = []
         bad = self._saturated(readings, found)
         frozen = self._frozen.feed(readings)
-        if frozen is not None:
-            found.append(self._sighting(FROZEN, readings, np.where(frozen, BEYOND, INSIDE), readings.depth))
-            bad = frozen if bad is None else bad | frozen
+        if frozen is None:
+            placed = np.full(len(readings), INSIDE, dtype=np.int8)
         else:
-            found.append(self._inside(FROZEN, readings))
+            placed = np.where(frozen, BEYOND, INSIDE)
+            bad = frozen if bad is None else bad | frozen
+        found.append(self._sighting(FROZEN, readings, placed, readings.depth))
         self._slow(readings, found)
         return found, bad
 
     @staticmethod
-    def _sighting(name: AlarmName, readings: Readings, placed: NDArray[np.int_], value: Array) -> Sighting:
-        return Sighting(name, readings.time, placed.astype(np.int8), readings.depth, value)
-
-    @staticmethod
-    def _inside(name: AlarmName, readings: Readings) -> Sighting:
-        """Say of the first and the last row what holds for all: a guard inside all along needs no more."""
-        ends = readings.data[:, [0, -1]]
-        return Sighting(name, ends[0], np.full(2, INSIDE, dtype=np.int8), ends[2], ends[2])
+    def _sighting(
+        name: AlarmName, readings: Readings, placed: NDArray[np.integer[Any]], value: Array
+    ) -> Sighting:
+        return Sighting(name, readings.time, placed.astype(np.int8, copy=False), readings.depth, value)
 
     def _saturated(self, readings: Readings, found: list[Sighting]) -> Flags | None:
         bound = self._instrument.range

@@ -31,6 +31,8 @@ KEPT = (
     "weight",
     "slope_east",
     "slope_north",
+    "lever",
+    "bend",
     "face",
 )
 """What is known of a row for the station that may be closed there."""
@@ -77,12 +79,14 @@ class Closing:
         self._next = 0
         self._numbers: dict[tuple[int, float], tuple[int, bool]] = {}
 
-    def take(self, columns: tuple[Array, ...], rests: list[tuple[int, Rest]]) -> tuple[Array, list[Due]]:
+    def take(
+        self, columns: tuple[Array, ...], rests: list[tuple[int, Rest]]
+    ) -> tuple[Array, Array, list[Due]]:
         """Take the columns of a block in the order of `KEPT`, and its halts; return passes and what is due.
 
         Returns
         -------
-        passes : ndarray, shape (2, n)
+        passing, direction : ndarray, shape (n,)
             Number and direction of the pass at each row.
         due : list of Due
             In the order in which the rows bring them about.
@@ -101,8 +105,9 @@ class Closing:
             depth = self._label(rest.depth)
             due.append(Due(row, _HALT, depth, _column(columns, row), rest.count, number, direction, rest))
         if not due:
-            return passes, due
-        return passes, list(self._numbered(sorted(due, key=lambda one: (one.row, one.order))))
+            return passes[0], passes[1], due
+        in_order = sorted(due, key=lambda one: (one.row, one.order))
+        return passes[0], passes[1], list(self._numbered(in_order))
 
     def _crossings(self, stretch: Stretch, columns: tuple[Array, ...]) -> Iterator[Due]:
         done, first = 0, stretch.rows.start

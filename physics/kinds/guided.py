@@ -24,8 +24,9 @@ from eastfall.physics.kinds.base import (
 )
 from eastfall.physics.kinds.closing import Closing, Due
 from eastfall.physics.kinds.gaps import Gaps
+from eastfall.physics.kinds.lever import Lever
 from eastfall.physics.kinds.plumbguide import PlumbGuide
-from eastfall.physics.kinds.shares import Shares
+from eastfall.physics.kinds.shares import Shares, Summed
 from eastfall.physics.kinds.stillsum import StillSum
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
@@ -58,6 +59,7 @@ class Guided:
         )
         self._faces = FaceBins(run.station_every, reach(assumptions))
         self._shares = Shares(assumptions)
+        self._lever = Lever(instrument.a_azimuth + instrument.north_offset)
         self._last: Array | None = None
         self._depth: float | None = None
         self._slope: Array = np.zeros(2)
@@ -117,50 +119,56 @@ class Guided:
         rests = self._halts.feed(np.stack([readings.time, depth, *slopes])) if timed else []
         ridden, leaning = self._plumb.ride(depth, rows[ROW["speed"]], lag)
         self._gather(readings, slopes, leaning, azimuth, rests)
-        summed = self._moving if self._still is None else self._halting
-        at, weight, slopes = summed(rows, slopes, ridden, rests)
-        rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(rows, at, weight, slopes)
-        columns = (*rows[[ROW["time"]]], at, *rows[5:9], weight, *slopes, readings.column("face"))
-        passes, due = self._closing.take((columns[0], depth, *columns[2:]), rests)
-        rows[ROW["passing"]], rows[ROW["direction"]] = passes
+        bend = np.nan_to_num(rows[ROW["speed"]]) ** 2 / self._curve.models.field.gravity
+        if self._still is None:
+            at, summed = self._moving(readings, rows, slopes, ridden, azimuth, bend)
+        else:
+            at, summed = self._halting(self._still, rows, azimuth, rests)
+        rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(at, summed)
+        columns = (
+            *(readings.time, depth, *rows[5:9], summed.weight, *summed.slope),
+            *(summed.lever, summed.bend, readings.column("face")),
+        )
+        rows[ROW["passing"]], rows[ROW["direction"]], due = self._closing.take(columns, rests)
         fill_limits(rows, self._assumptions.limits)
         self._last = np.array([one[-1] for one in columns])
-        self._slope, self._depth = self._last[7:9], float(depth[-1])
+        self._last[1], self._depth = at[-1], float(depth[-1])
+        self._slope = self._last[7:9]
         found = Rows(rows)
         judged = np.stack([found.residual_east, found.residual_north])
         return Batch(rows=found, judged=judged, stations=self._stations(due))
 
     def _moving(
-        self, rows: Array, slopes: Array, ridden: Array, _rests: list[tuple[int, Rest]]
-    ) -> tuple[Array, Array, Array]:
-        """Sum every reading; return the depth, weight and slopes that the offsets stand for."""
+        self, readings: Readings, rows: Array, slopes: Array, ridden: Array, azimuth: Array, bend: Array
+    ) -> tuple[Array, Summed]:
+        """Sum every reading; return the depths that the offsets stand for, and where the sum stands."""
         depth = rows[ROW["depth"]]
         east, north, weight = self._sum.update(depth, slopes[1], slopes[0])
         rows[ROW["measured_east"]], rows[ROW["measured_north"]] = east, north
-        self._begin(float(depth[0]))
+        self._plumb.begin(float(depth[0]))
         expected = self._plumb.at_rest(depth)
         expected[0] -= ridden
         rows[ROW["expected_east"]], rows[ROW["expected_north"]] = expected
-        return depth, weight, slopes
+        told = np.isfinite(readings.column("azimuth")) | np.isfinite(readings.column("face"))
+        lever = self._lever.update(depth, azimuth, told)
+        return depth, Summed(offset=rows[5:7], weight=weight, slope=slopes, lever=lever, bend=bend)
 
     def _halting(
-        self, rows: Array, _slopes: Array, _ridden: Array, rests: list[tuple[int, Rest]]
-    ) -> tuple[Array, Array, Array]:
+        self, still: StillSum, rows: Array, azimuth: Array, rests: list[tuple[int, Rest]]
+    ) -> tuple[Array, Summed]:
         """Hold what the last halt gave; the same returns as `_moving`."""
-        still = self._still or StillSum(self._assumptions.guide, 0.0)
-        held = still.take(rows.shape[1], rests)
+        held = still.take(azimuth, rests)
         before = np.isnan(held[0])
         at = np.where(before, rows[ROW["depth"]], held[0])
         if rests:
-            self._begin(rests[0][1].depth)
+            self._plumb.begin(rests[0][1].depth)
         rows[ROW["measured_east"]], rows[ROW["measured_north"]] = held[1:3]
-        expected = self._plumb.at_rest(at)
-        rows[ROW["expected_east"]], rows[ROW["expected_north"]] = np.where(before, 0.0, expected)
-        return at, held[3], held[4:6]
-
-    def _begin(self, depth: float) -> None:
-        self._plumb.begin(depth)
-        self._shares.start = self._plumb.start or 0.0
+        rows[ROW["expected_east"]], rows[ROW["expected_north"]] = np.where(
+            before, 0.0, self._plumb.at_rest(at)
+        )
+        return at, Summed(
+            offset=held[1:3], weight=held[3], slope=held[4:6], lever=held[6], bend=np.zeros(at.size)
+        )
 
     def _gather(
         self,
@@ -191,13 +199,13 @@ class Guided:
 
     # -- stations --------------------------------------------------------------------------------------------------
 
-    def _uncertainty(self, rows: Array, at: Array, weight: Array, slopes: Array) -> Array:
+    def _uncertainty(self, at: Array, summed: Summed) -> Array:
         u = self._curve.look_up(self._curve.u, at)
         u *= u
         # In pieces that stay in the processor's cache: the parts of a long block would not.
-        for start in range(0, weight.size, _PIECE):
+        for start in range(0, at.size, _PIECE):
             piece = slice(start, start + _PIECE)
-            own = self._shares.parts(at[piece], rows[5:7, piece], weight[piece], slopes[:, piece])
+            own = self._shares.parts(summed[piece])
             np.multiply(own, own, out=own)
             u[:, piece] += own.sum(axis=0)
         return np.sqrt(u, out=u)
@@ -213,26 +221,23 @@ class Guided:
 
     def _closed(self, due: list[Due]) -> list[Station]:
         """Close stations taken in passing one after the other, or one at rest."""
-        time, at, east, north, expected_east, expected_north, weight, *slope, face = np.stack(
-            [one.at for one in due], axis=1
-        )
-        offset, first = np.stack([east, north]), due[0]
-        own = self._shares.parts(at, offset, weight, np.stack(slope))
+        kept = np.stack([one.at for one in due], axis=1)
+        at, first = kept[1], due[0]
         before = self._before(first)
         facts = StationFacts(
             numbers=[one.number for one in due],
             depth=np.array([one.depth for one in due]),
-            time=time,
+            time=kept[0],
             passing=first.passing,
             direction=first.direction,
-            measured=offset,
-            expected=np.stack([expected_east, expected_north]),
+            measured=kept[2:4],
+            expected=kept[4:6],
             readings=[one.readings for one in due],
             still=first.rest is not None,
             names=(*self._shares.names, *self._curve.budget.names),
-            parts=np.concatenate([own, self._curve.budget.at(at)]),
+            parts=np.concatenate([self._shares.parts(_summed(kept)), self._curve.budget.at(at)]),
             halt=_halt(first.rest),
-            face=face,
+            face=kept[11],
             before=before,
         )
         found = stations_of(facts, self._assumptions)
@@ -265,6 +270,7 @@ class Guided:
         if self._still is not None:
             self._still.jump(by)
         self._plumb.jump(jump)
+        self._lever.jump(by)
         self._halts.moved()
         self._closing.jump(jump.after)
         self._gaps.jump(jump.after)
@@ -280,10 +286,7 @@ class Guided:
         """Return the newest row."""
         if self._last is None:
             return None
-        rows = rows_of(1)
-        rows[[ROW["time"], ROW["depth"]], 0] = self._last[:2]
-        rows[5:9, 0] = self._last[2:6]
-        u = self._uncertainty(rows, self._last[1:2], self._last[6:7], self._last[7:9, None])
+        u = self._uncertainty(self._last[1:2], _summed(self._last[:, None]))
         depth, east, north, expected_east, expected_north = self._last[1:6].tolist()
         return Judged(
             depth=depth,
@@ -319,6 +322,11 @@ class Guided:
                 "readings are missing over more than half a metre: bridged, with a larger uncertainty"
             )
         return tuple(found)
+
+
+def _summed(kept: Array) -> Summed:
+    """Return where the sum stood at rows kept in the order of `KEPT`, shape (len(KEPT), n)."""
+    return Summed(offset=kept[2:4], weight=kept[6], slope=kept[7:9], lever=kept[9], bend=kept[10])
 
 
 def _alike(one: Due, other: Due) -> bool:

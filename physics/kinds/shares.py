@@ -1,5 +1,6 @@
 """What each input puts into the uncertainty of a sum of tilts; how the sum is made is the guided kind's business."""
 
+from dataclasses import dataclass
 from math import sqrt
 
 import numpy as np
@@ -11,7 +12,42 @@ from eastfall.physics.settings import Assumptions
 Array = NDArray[np.float64]
 
 ZERO, SCALE, AZIMUTH, DEPTH, COUNTER = "tilt, zero", "tilt, scale", "azimuth", "depth", "depth, zero"
+BENDS = "line over bends"
 MISSING, JUMPED = "readings missing", "depth jump"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Summed:
+    """Where a sum of tilts stands, row by row.
+
+    Parameters
+    ----------
+    offset : ndarray, shape (2, n)
+        Measured, east and north [m].
+    weight : ndarray, shape (n,)
+        Σ w² of the readings summed so far [m²]; of halts, the variance itself.
+    slope : ndarray, shape (2, n)
+        East and north [m/m].
+    lever : ndarray, shape (n,)
+        What a zero offset is multiplied by: |∫ exp(iα) dz|, α the azimuth of A; the depth gone, where that stays [m].
+    bend : ndarray, shape (n,)
+        v²/g of the line [m].
+    """
+
+    offset: Array
+    weight: Array
+    slope: Array
+    lever: Array
+    bend: Array
+
+    def __getitem__(self, part: slice) -> "Summed":
+        return Summed(
+            offset=self.offset[:, part],
+            weight=self.weight[part],
+            slope=self.slope[:, part],
+            lever=self.lever[part],
+            bend=self.bend[part],
+        )
 
 
 class Shares:
@@ -29,8 +65,7 @@ class Shares:
         self._guide = assumptions.guide
         self._u_counter = assumptions.depth.u_offset
         self._random = instrument.u_tilt if assumptions.guide.readings == "all" else 1.0
-        self.start = 0.0
-        """Depth of the first reading [m]."""
+        self._first: Array | None = None
         self._added: dict[str, Array] = {}
         self._leans = _Spread()
 
@@ -38,38 +73,40 @@ class Shares:
     def names(self) -> tuple[str, ...]:
         """Inputs, in the order of `parts`."""
         counter = (COUNTER,) if self._u_counter else ()
-        return (RANDOM, ZERO, SCALE, AZIMUTH, DEPTH, *counter, *self._added)
+        return (RANDOM, ZERO, SCALE, AZIMUTH, DEPTH, BENDS, *counter, *self._added)
 
-    def parts(self, depth: Array, offset: Array, weight: Array, slope: Array) -> Array:
+    def parts(self, summed: Summed) -> Array:
         """Return the parts.
 
         Parameters
         ----------
-        depth : ndarray, shape (n,)
-            [m].
-        offset : ndarray, shape (2, n)
-            Measured, east and north [m].
-        weight : ndarray, shape (n,)
-            Σ w² of the readings summed so far [m²]; of halts, the variance itself.
-        slope : ndarray, shape (2, n)
-            East and north [m/m].
+        summed : Summed
+            Of n rows.
 
         Returns
         -------
         ndarray, shape (len(names), 2, n)
             Standard uncertainties [m].
+
+        Notes
+        -----
+        A probe that follows a bend of the guide at speed is pulled sideways by v² P'', which it shows as a tilt: the
+        sum gains v²/g times what the slope has changed since the start. It is left in, and counted as uncertainty.
         """
         instrument = self._instrument
-        parts = np.empty((len(self.names), 2, depth.size))
-        east = np.abs(offset[0] - self._guide.start_east)
-        north = np.abs(offset[1] - self._guide.start_north)
-        parts[0] = self._random * np.sqrt(weight)
-        parts[1] = instrument.u_zero * np.abs(depth - self.start)
+        parts = np.empty((len(self.names), 2, summed.weight.size))
+        east = np.abs(summed.offset[0] - self._guide.start_east)
+        north = np.abs(summed.offset[1] - self._guide.start_north)
+        parts[0] = self._random * np.sqrt(summed.weight)
+        parts[1] = instrument.u_zero * summed.lever
         parts[2] = instrument.u_scale * east, instrument.u_scale * north
         parts[3] = instrument.u_azimuth * north, instrument.u_azimuth * east
         parts[4] = instrument.u_depth_fraction * east, instrument.u_depth_fraction * north
+        if self._first is None and summed.weight.size:
+            self._first = summed.slope[:, :1].copy()
+        parts[5] = summed.bend * np.abs(summed.slope - self._first)
         if self._u_counter:
-            parts[5] = self._u_counter * np.abs(slope)
+            parts[6] = self._u_counter * np.abs(summed.slope)
         for row, one in enumerate(reversed(self._added.values()), start=1):
             parts[-row] = one[:, None]
         return parts

@@ -28,25 +28,31 @@ class StillSum:
         self._depths: list[float] = []
         self._variances: list[float] = []
         self._variance = 0.0
-        # Depth, measured east and north, variance, slope east and north at the last halt.
-        self.held: Array = np.array([np.nan, guide.start_east, guide.start_north, 0.0, 0.0, 0.0])
+        self._lever, self._turned = 0j, 0j
+        # Depth, measured east and north, variance, slope east and north, and the zero's lever at the last halt.
+        self.held: Array = np.array([np.nan, guide.start_east, guide.start_north, 0.0, 0.0, 0.0, 0.0])
 
-    def take(self, count: int, rests: list[tuple[int, Rest]]) -> Array:
-        """Return what is held at each of `count` rows, shape (6, count), given the halts and their rows."""
+    def take(self, azimuth: Array, rests: list[tuple[int, Rest]]) -> Array:
+        """Return what is held at each row, shape (7, n), given azimuths of A [rad], and halts with their rows."""
+        count = azimuth.size
         out = np.empty((self.held.size, count))
         start = 0
         for row, rest in rests:
             out[:, start:row] = self.held[:, None]
-            self.held = self._after(rest)
+            self.held = self._after(rest, float(azimuth[row]))
             start = row
         out[:, start:] = self.held[:, None]
         return out
 
-    def _after(self, rest: Rest) -> Array:
+    def _after(self, rest: Rest, azimuth: float) -> Array:
         east, north, _ = self._sum.update([rest.depth], [rest.north.mean], [rest.east.mean])
         variance = self._grown(rest)
         slopes = rest.east.mean, rest.north.mean
-        return np.array([rest.depth, east[0], north[0], variance, *slopes])
+        turned = complex(np.exp(1j * azimuth))
+        if len(self._depths) > 1:
+            self._lever += 0.5 * (self._turned + turned) * (self._depths[-1] - self._depths[-2])
+        self._turned = turned
+        return np.array([rest.depth, east[0], north[0], variance, *slopes, abs(self._lever)])
 
     def _grown(self, rest: Rest) -> float:
         """Return the variance of the sum [m²]: a halt weighs by half of the two steps beside it."""

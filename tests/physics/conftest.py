@@ -1,11 +1,15 @@
 """Assumptions that several tests start from."""
 
+import sys
 from dataclasses import replace
 from math import radians
+from pathlib import Path
 
 import pytest
 
 from eastfall.physics.settings import Air, Assumptions, Body, Instrument, Limits, Line, Run, Shaft, Site
+
+sys.path.insert(0, str(Path(__file__).parent))  # helpers beside the tests, which are no package
 
 
 def assumptions(kind="guided", *, latitude=57.3, depth=300.0, **changes):

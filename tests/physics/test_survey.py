@@ -8,11 +8,12 @@ import numpy as np
 import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
+from truth_help import DEPTH, capture
 
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Body, Guide, Instrument, Limits, Run, Shaft
-from eastfall.physics.survey import ACTION, SILENT, WALL, WARNING, Survey
+from eastfall.physics.survey import ACTION, JUMP, SILENT, WALL, WARNING, Survey
 
 OMEGA = 7.292115e-5  # GRS80, Moritz (1980)
 G = 9.8167
@@ -172,6 +173,38 @@ def test_findings_do_not_depend_on_how_the_rows_are_cut_into_blocks(shaft, cuts,
     pieces, other = run(assumptions, readings, [one for one in cuts if one < len(readings)])
     np.testing.assert_array_equal(other, rows)
     assert pieces.result() == whole.result()
+
+
+def troubled():
+    """Give a ride in two faces with rests, spikes, a jump, a frozen stretch, lost rows and rows without tilt."""
+    readings = capture(5, faces=True, rest=14.0)
+    data = readings.data
+    data[0:2, 900:] += 3.0
+    data[2, 150:153] += 40.0
+    data[2, 1100:] += 2.5
+    data[3:5, 300:340] = data[3:5, 299:300]
+    data[3, 420:440] = np.nan
+    data[3, 700] = 1.4
+    return Readings(np.delete(data, np.r_[480:520, 1000], axis=1))
+
+
+TROUBLED = troubled()
+
+
+@pytest.mark.invariant
+@settings(deadline=None, max_examples=25, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(cuts=st.sets(st.integers(1, len(TROUBLED) - 1), max_size=14), taken=st.sampled_from(["all", "still"]))
+def test_faults_halts_faces_and_jumps_do_not_depend_on_blocks_either(shaft, cuts, taken):
+    """A ride with every trouble there is: rows, stations, alarms, faces, best estimate and notes to the last bit."""
+    assumptions = shaft(depth=DEPTH, guide=Guide(readings=taken), instrument=Instrument(range=1.2))
+    whole, rows = run(assumptions, TROUBLED)
+    pieces, other = run(assumptions, TROUBLED, cuts)
+    np.testing.assert_array_equal(other, rows)
+    assert repr(pieces.result()) == repr(whole.result())
+    assert pieces.unused == whole.unused
+    if taken == "all":
+        assert {one.name for one in whole.result().alarms} == {JUMP, "tilt frozen", "tilt at end of range"}
+        assert whole.unused["depth spike"] == 3
 
 
 def test_a_slow_lean_raises_warning_then_action_after_the_delay_and_returns_with_the_dead_band(shaft):
