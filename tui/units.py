@@ -38,6 +38,11 @@ class Units:
         """The mark of a speed: the long unit per second."""
         return f"{self.long}/s"
 
+    @property
+    def depth_head(self) -> str:
+        """What stands over a column of depths, seven letters in either unit."""
+        return f"depth {self.long}" if self.name == "metric" else f"{self.long} down"
+
     def depth(self, value: float, places: int = 1) -> str:
         """Return metres in the long unit, without its mark."""
         return f"{value / self.long_size:.{places}f}" if isfinite(value) else NONE

@@ -25,7 +25,7 @@ _ROLE = {"within": Role.TEXT, "over": Role.ACTION, "undecided": Role.WARNING}
 def head(units: Units = METRIC) -> str:
     """Return the line over the table."""
     names = (
-        f"depth {units.long}",
+        units.depth_head,
         "pass",
         "measured E N",
         "expected E N",

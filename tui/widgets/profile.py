@@ -50,7 +50,7 @@ class Profile(CellWidget):
 def depth_labels(sheet: Raster, depth: Axis, focus: float, units: Units) -> None:
     """Write the depths at the left, and the mark of the depth in view."""
     size = units.long_size
-    sheet.text(0, 0, "depth m" if units.long == "m" else f"{units.long} down", Role.DIM)
+    sheet.text(0, 0, units.depth_head, Role.DIM)
     ticks = depth.ticks(max(2, (sheet.height - 1 - BELOW) // 3), size)
     step = ticks[1] - ticks[0] if len(ticks) > 1 else size
     for value in ticks:
