@@ -115,7 +115,7 @@ def best_estimate(
         return (), ()
     pair = _pair(stations)
     notes: list[str] = []
-    line = _one_pass(stations) if pair is None else _two_passes(pair, notes)
+    line = _one_pass(stations) if pair is None else _two_passes(pair, assumptions, notes)
     if line is None:
         return (), ()
     line = _tied(line, assumptions, notes)
@@ -143,7 +143,9 @@ def _one_pass(stations: tuple[Station, ...]) -> _Line | None:
     return _Line(depth=depth, residual=residual, parts=parts, passes=1, apart=np.zeros(residual.shape))
 
 
-def _two_passes(pair: tuple[dict[float, Station], dict[float, Station]], notes: list[str]) -> _Line:
+def _two_passes(
+    pair: tuple[dict[float, Station], dict[float, Station]], assumptions: Assumptions, notes: list[str]
+) -> _Line:
     down, up = (list(one.values()) for one in pair)
     depth, first, parts = _table(down)
     _, second, others = _table(up)
@@ -154,8 +156,10 @@ def _two_passes(pair: tuple[dict[float, Station], dict[float, Station]], notes: 
     for name in dict.fromkeys([*parts, *others]):
         own = 0.5 * np.hypot(parts.get(name, zeros), _tied_part(others.get(name, zeros)))
         combined[name] = own if name in _OWN else parts.get(name, zeros)
+    best = first + 0.5 * apart
     if opposite:
         combined[ZERO] = zeros
+        combined |= _proportional(best, assumptions)
     u_apart = 2.0 * np.sqrt(sum(combined[name] ** 2 for name in _OWN if name in combined) + _GRAIN**2)
     odd = np.abs(_freed(depth, apart, opposite=opposite))
     disagree = odd > _TOO_FAR * u_apart
@@ -165,7 +169,18 @@ def _two_passes(pair: tuple[dict[float, Station], dict[float, Station]], notes: 
         notes.append(
             f"down and up pass disagree at {far.size} of {depth.size} stations, first at {far[0]:g} m"
         )
-    return _Line(depth=depth, residual=first + 0.5 * apart, parts=combined, passes=2, apart=apart)
+    return _Line(depth=depth, residual=best, parts=combined, passes=2, apart=apart)
+
+
+def _proportional(best: Array, assumptions: Assumptions) -> dict[str, Array]:
+    """Return the parts that follow from an offset itself, for one that is free of a zero error."""
+    instrument, guide = assumptions.instrument, assumptions.guide
+    gone = np.abs(best - np.array([[guide.start_east], [guide.start_north]]))
+    return {
+        SCALE: instrument.u_scale * gone,
+        AZIMUTH: instrument.u_azimuth * gone[::-1],
+        DEPTH: instrument.u_depth_fraction * gone,
+    }
 
 
 def _tied_part(up: Array) -> Array:
