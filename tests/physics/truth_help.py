@@ -36,6 +36,15 @@ class Guide:
             ]
         )
 
+    def curvature(self, depth):
+        """Give its second derivative, shape (2, n) [1/m]."""
+        return np.stack(
+            [
+                -a * (2.0 * np.pi / w) ** 2 * np.sin(2.0 * np.pi * depth / w)
+                for a, w in zip(self.size, self.wave, strict=True)
+            ]
+        )
+
 
 @dataclass(frozen=True)
 class Errors:
@@ -68,9 +77,12 @@ def capture(seed, errors=None, *, guide=None, faces=False, told=True, rest=0.0):
     errors, guide, rng = errors or Errors(), guide or Guide(), np.random.default_rng(seed)
     time, depth, moving = ride(rest)
     east, north = guide.slope(depth)
-    # The felt vertical leans east by 2ωv cos φ/g going down: a plumb guide shows that much west. The guide's
-    # curvature and the ramps change the felt vertical by less than 1 µrad here.
-    east = east - 2.0 * OMEGA * moving * COS / GRAVITY
+    # In the probe's frame everything falls with g - r̈ - 2ω × ṙ: a plumb guide shows west going down, a bend is felt as
+    # v² P'', and a lean under acceleration as P' pull.
+    pull = np.gradient(moving, time)
+    bends = (guide.slope(depth) * pull + guide.curvature(depth) * moving**2) / (GRAVITY - pull)
+    east = east - 2.0 * OMEGA * moving * COS / (GRAVITY - pull) + bends[0]
+    north = north + bends[1]
     up = time > time[np.argmax(depth)] + rest / 2.0
     face = np.where(faces & up, np.pi, 0.0)
     azimuth = errors.azimuth + face

@@ -1,0 +1,93 @@
+"""What would settle a verdict: done as it says, it is settled."""
+
+from dataclasses import replace
+
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from eastfall.physics.findings import Station
+from eastfall.physics.settle import RANDOM, settle
+from eastfall.physics.verdict import horizontal, verdict
+
+NAMES = ("tilt, random", "tilt, zero", "azimuth")
+
+
+def station(east, north, parts, readings=100, action=0.025):
+    """Give a station with a residual and a budget."""
+    u = [sum(one[row] ** 2 for one in parts) ** 0.5 for row in (0, 1)]
+    length, u_length = horizontal(east, north, *u)
+    return Station(
+        number=0,
+        depth=50.0,
+        passing=0,
+        direction="down",
+        time=0.0,
+        measured_east=east,
+        measured_north=north,
+        expected_east=0.0,
+        expected_north=0.0,
+        u_east=u[0],
+        u_north=u[1],
+        warning=0.015,
+        action=action,
+        verdict=verdict(float(length), float(u_length), action),
+        readings=readings,
+        still=False,
+        inputs=NAMES,
+        parts=tuple(parts),
+    )
+
+
+def with_part(one, row, factor):
+    """Give the station with one input's part multiplied."""
+    parts = [tuple(x * (factor if at == row else 1.0) for x in part) for at, part in enumerate(one.parts)]
+    return station(one.measured_east, one.measured_north, parts, one.readings)
+
+
+def test_a_decided_verdict_needs_nothing():
+    """Clearly within, clearly over: None."""
+    assert settle(station(0.005, 0.0, [(1e-3, 1e-3)] * 3)) is None
+    assert settle(station(0.050, 0.0, [(1e-3, 1e-3)] * 3)) is None
+
+
+def test_a_worked_case():
+    """24 mm against 25 mm needs u ≤ 0.5 mm: of 0.6 random, 0.3 zero, 0.1 azimuth only more readings will do.
+
+    Room for the random part is √(0.25 - 0.10) = 0.3873 mm: (0.6/0.3873)² = 2.4 times the readings, 140 more than 100.
+    """
+    found = settle(station(0.024, 0.0, [(6e-4, 0.0), (3e-4, 0.0), (1e-4, 0.0)]))
+    assert found.u_needed == pytest.approx(5e-4)
+    assert [one.name for one in found.remedies] == ["tilt, random"]
+    assert found.remedies[0].needed == pytest.approx(0.15**0.5 * 1e-3)
+    assert found.more_readings == 140
+    assert found.leans_to == "within"
+
+
+def test_on_the_limit_itself_nothing_will_do():
+    """A residual equal to the limit stays undecided at any uncertainty."""
+    found = settle(station(0.025, 0.0, [(6e-4, 0.0)] * 3))
+    assert (found.more_readings, found.remedies) == (None, ())
+
+
+@pytest.mark.invariant
+@given(
+    st.floats(0.015, 0.035),
+    st.floats(-0.01, 0.01),
+    st.lists(st.tuples(st.floats(1e-5, 3e-3), st.floats(1e-5, 3e-3)), min_size=3, max_size=3),
+)
+def test_doing_what_it_says_decides(east, north, parts):
+    """Each remedy, applied alone, makes the verdict "within" or "over"; and so do the readings it asks for."""
+    one = station(east, north, parts)
+    found = settle(one)
+    assert (found is None) == (one.verdict != "undecided")
+    if found is None:
+        return
+    for remedy in found.remedies:
+        better = with_part(one, NAMES.index(remedy.name), remedy.factor * (1.0 - 1e-9))
+        assert better.verdict == found.leans_to
+    if found.more_readings is not None:
+        more = replace(one, readings=one.readings + found.more_readings)
+        better = with_part(more, 0, (one.readings / more.readings) ** 0.5 * (1.0 - 1e-9))
+        assert better.verdict == found.leans_to
+    assert NAMES[0] in RANDOM
