@@ -140,7 +140,7 @@ def landing(one: Plan, units: Units = METRIC) -> str:
     east, north = (there - here for there, here in zip(one.landing, one.release, strict=True))
     u_east, u_north = np.sqrt(np.diag(one.covariance))
     return (
-        f"LANDS at {units.depth(one.level)} {units.long}: {words.pair(east, north, units=units)} from the release, "
+        f"LANDS at {units.depth(one.level)} {units.long}: {words.pair(east, north, units=units)} from release, "
         f"spread E {units.offset(float(u_east))} N {units.offset(float(u_north))} {units.short}"
     )
 
