@@ -5,10 +5,13 @@ import threading
 import tomllib
 from collections.abc import Callable
 from dataclasses import replace
+from pathlib import Path
 
 import numpy as np
 import pytest
+from click.testing import CliRunner
 
+from eastfall.io.errors import InputError
 from eastfall.io.sitefile import parse_site
 from eastfall.physics.expected import expected_curve
 from eastfall.physics.settings import Air, Assumptions, Body, Run, Shaft, Site
@@ -16,12 +19,14 @@ from eastfall.tui import outlook
 from eastfall.tui.app import Dashboard
 from eastfall.tui.dials import CONDITIONS, FLOW_SPEED, FLOW_TOWARD, LINE_SPEED, Dial
 from eastfall.tui.inputs import Inputs
+from eastfall.tui.main import cli
 from eastfall.tui.newest import Newest
 from eastfall.tui.outlook import Prospect
 from eastfall.tui.preferences import Remembered
 from eastfall.tui.screens.explorer import BudgetPage, ExplorerScreen
 from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.planner import PlannerScreen
+from eastfall.tui.screens.start import StartScreen
 from eastfall.tui.units import FEET
 from eastfall.tui.widgets.curves import Curves
 
@@ -427,6 +432,25 @@ async def test_escape_leaves_an_explorer_that_was_opened_alone() -> None:
         await settled(pilot, "escape")
     assert app.return_value == 0
     assert app.choice is None
+
+
+async def test_start_screen_offers_to_explore_each_site_and_an_invented_one(tmp_path: Path) -> None:
+    """The choice names the site; the invented shaft has none."""
+    (tmp_path / "pit.toml").write_text(SITE)
+    for pressed, path in ((("up",), None), (("up", "up"), tmp_path / "pit.toml")):
+        app = Dashboard(StartScreen(tmp_path, log_suffix=".jsonl"))
+        async with app.run_test(size=(80, 40)) as pilot:
+            await pilot.press(*pressed, "enter")
+        assert app.choice is not None
+        assert (app.choice.what, app.choice.path) == ("explore", path)
+
+
+def test_explore_without_a_screen_is_one_clear_line(tmp_path: Path) -> None:
+    """The verb's option needs a terminal and says so; exit status 2 comes from the refusal."""
+    (tmp_path / "pit.toml").write_text(SITE)
+    found = CliRunner().invoke(cli, ["expect", str(tmp_path / "pit.toml"), "--explore"])
+    assert isinstance(found.exception, InputError)
+    assert "needs a terminal" in str(found.exception)
 
 
 async def test_no_colour_sends_no_colour(monkeypatch: pytest.MonkeyPatch) -> None:

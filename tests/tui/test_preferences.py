@@ -4,12 +4,14 @@ import os
 from pathlib import Path
 
 import pytest
+from click.testing import CliRunner
 from hypothesis import given
 from hypothesis import strategies as st
 
 from eastfall.tui import keys
 from eastfall.tui.app import Dashboard, terminal_look
 from eastfall.tui.glyphs import ASCII, BRAILLE
+from eastfall.tui.main import cli
 from eastfall.tui.preferences import VARIABLE, Preferences, Remembered, place, read, written
 from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.settings import SETTINGS, SettingsScreen, after, in_words
@@ -276,6 +278,32 @@ async def test_sites_used_elsewhere_are_offered_while_they_are_there(tmp_path: P
         await pilot.pause()
         watched = [name for name in app.first._choices if name.startswith("watch ")]  # type: ignore[attr-defined]
     assert watched == [f"watch {here / 'here.toml'}", f"watch {there / 'there.toml'}"]
+
+
+@pytest.mark.parametrize("named", ["", "elsewhere"])
+def test_runs_are_recorded_where_the_settings_say(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, named: str
+) -> None:
+    """Without --into a run goes into the folder of the settings, or into eastfall-runs beside the work."""
+    if named:
+        Path(os.environ[VARIABLE]).write_text(f"runs_folder = {str(tmp_path / named)!r}\n")
+    monkeypatch.chdir(tmp_path)
+    found = CliRunner().invoke(cli, ["demo", "--plain", "--for", "0.3"])
+    assert found.exit_code == 0, found.output
+    folder = tmp_path / (named or "eastfall-runs")
+    assert len(list(folder.glob("*.eastfall.jsonl"))) == 1
+
+
+def test_run_without_a_screen_tells_of_a_broken_file_and_goes_on(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """One line on standard error; the record is made in the default folder."""
+    Path(os.environ[VARIABLE]).write_text("runs_folder = 7\n")
+    monkeypatch.chdir(tmp_path)
+    found = CliRunner().invoke(cli, ["demo", "--plain", "--for", "0.3"])
+    assert found.exit_code == 0, found.output
+    assert "runs_folder is 7; expected a folder, as text" in found.stderr
+    assert len(list((tmp_path / "eastfall-runs").glob("*.eastfall.jsonl"))) == 1
 
 
 def test_tests_do_not_touch_the_settings_of_whoever_runs_them() -> None:

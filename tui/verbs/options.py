@@ -2,6 +2,7 @@
 
 import csv
 import json
+import os
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
@@ -27,8 +28,25 @@ as_format = click.option(
     show_default=True,
     help="How to print.",
 )
+
+
+def runs_folder() -> Path:
+    """Return where runs are recorded: as the person's settings say, or beside the work."""
+    from eastfall.tui.preferences import Remembered  # noqa: PLC0415 (only for a run that is recorded)
+
+    remembered = Remembered.of(os.environ)
+    if remembered.complaint:
+        click.echo(remembered.complaint, err=True)
+    named = remembered.now.runs_folder
+    return Path(named).expanduser() if named else RUNS_FOLDER
+
+
 into = click.option(
-    "--into", type=a_folder, default=RUNS_FOLDER, show_default=True, help="Folder for the run log."
+    "--into",
+    type=a_folder,
+    default=runs_folder,
+    show_default=f"{RUNS_FOLDER}, or as in the settings",
+    help="Folder for the run log.",
 )
 
 
