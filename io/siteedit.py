@@ -50,6 +50,7 @@ class SiteDraft:
     def __init__(self, text: str, source: str) -> None:
         self.source = source
         self._text = text
+        self._now: str | None = text
         self._changes: dict[str, Any] = {}
         try:
             self._base = _plain(tomlkit.parse(text))
@@ -62,7 +63,9 @@ class SiteDraft:
     @property
     def text(self) -> str:
         """The text with all changes in it."""
-        return edited(self._text, self._changes) if self._changes else self._text
+        if self._now is None:
+            self._now = edited(self._text, self._changes) if self._changes else self._text
+        return self._now
 
     @property
     def links(self) -> int:
@@ -82,6 +85,7 @@ class SiteDraft:
     def put(self, path: str, value: Any) -> None:
         """Set a key; None takes it out. What equals the text as it was is no change."""
         self._changes.pop(path, None)
+        self._now = None
         before = self.value(path)
         if type(before) is not type(value) or typed(path, before) != typed(path, value):
             self._changes[path] = value
@@ -112,7 +116,7 @@ class SiteDraft:
         self._rebase(tomlkit.dumps(document))
 
     def _rebase(self, text: str) -> None:
-        self._text, self._changes = text, {}
+        self._text, self._now, self._changes = text, text, {}
         self._base = _plain(tomlkit.parse(text))
 
     def strays(self, section: str, index: int | None = None) -> list[str]:

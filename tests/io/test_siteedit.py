@@ -270,7 +270,7 @@ def test_tables_have_a_heading_for_each_number(path: str, count: int) -> None:
 ANYTHING = st.text(st.characters(exclude_categories=["Cs", "Cc"]), max_size=20)
 
 
-@settings(max_examples=40, deadline=None)
+@settings(max_examples=25, deadline=None)
 @given(st.lists(st.tuples(st.sampled_from(KEYS), ANYTHING), max_size=6))
 def test_whatever_is_typed_the_text_stays_toml_and_keeps_its_comments(
     typing: list[tuple[str, str]],

@@ -103,12 +103,12 @@ def free_name(folder: Path, name: str) -> Path:
         With what to type instead.
     """
     plain_name = name.strip()
-    if not plain_name:
+    if not plain_name or not plain_name.isprintable():
         raise ValueError("A name is needed, such as kestrel.toml.")
     path = folder / Path(plain_name if plain_name.endswith(".toml") else f"{plain_name}.toml").expanduser()
     try:
         stands = path.exists() or path.is_symlink()
-    except (OSError, ValueError) as error:
+    except OSError as error:
         raise ValueError(f"This is no name of a file: {error}") from error
     if stands:
         raise ValueError("A file of this name stands already; another name, please.")

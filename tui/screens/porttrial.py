@@ -97,6 +97,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
         self._reads: deque[LineRead] = deque(maxlen=KEPT)
         self._read_by: LinkSettings | None = None
         self._seen = self._turn = 0
+        self._news = False
         self._silent_since = 0.0
 
     def compose(self) -> ComposeResult:
@@ -231,9 +232,11 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
         new = min(heard.count - self._seen, len(heard.lines))
         if new or heard.pending:
             self._silent_since = heard.seconds
-        if self._turn % _THINK == 0 and (new or self._turn == 0 or not self._reads):
+            self._news = True
+        if self._turn % _THINK == 0 and self._news:
+            self._news = False
             self.proposal = propose(heard.lines or ((heard.pending,) if heard.pending else ()))
-        self._turn = self._turn + 1 if new or self._turn % _THINK else self._turn
+        self._turn += 1
         form = self._form()
         if form != self._read_by:
             self._read_by, self._reader = form, _reader(form)

@@ -8,6 +8,7 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import ClassVar
 
+from textual import on
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Horizontal
@@ -25,7 +26,7 @@ from eastfall.tui.screens.dialogs import Confirm
 from eastfall.tui.screens.formdialogs import AskName, RowsDialog, free_name
 from eastfall.tui.screens.porttrial import PortTrial
 from eastfall.tui.widgets.cells import PaintedScreen
-from eastfall.tui.widgets.formrow import KeyList, KeyRow, SectionList, ValueInput
+from eastfall.tui.widgets.formrow import KeyList, KeyRow, RowList, SectionList, ValueInput
 from eastfall.tui.widgets.line import KeyLine, TextLine
 
 Ports = Callable[[], Sequence[str]]
@@ -215,12 +216,14 @@ class SiteForm(PaintedScreen[Path | None]):
         """Take another section."""
         self._go(self._page + by, 0)
 
-    def on_section_list_chosen(self, event: SectionList.Chosen) -> None:
+    @on(RowList.Chosen, "#sections")
+    def _section_chosen(self, event: RowList.Chosen) -> None:
         """Take the section that was clicked."""
         self._go(event.row, 0)
         self.query_one(ValueInput).focus()
 
-    def on_key_list_chosen(self, event: KeyList.Chosen) -> None:
+    @on(RowList.Chosen, "#form-keys")
+    def _key_chosen(self, event: RowList.Chosen) -> None:
         """Take the key that was clicked."""
         self._go(self._page, event.row)
         self.query_one(ValueInput).focus()

@@ -41,19 +41,19 @@ class KeyRow:
     state: State = "default"
 
 
-class _Rows(CellWidget):
+class RowList(CellWidget):
     """Rows of which one is the cursor's; the list moves so that it stays in view."""
 
     class Chosen(Message):
         """A row was clicked, or the wheel asks for a step."""
 
-        def __init__(self, control: "_Rows", row: int) -> None:
+        def __init__(self, control: "RowList", row: int) -> None:
             super().__init__()
             self.row = row
             self._control = control
 
         @property
-        def control(self) -> "_Rows":
+        def control(self) -> "RowList":
             """The list."""
             return self._control
 
@@ -85,7 +85,7 @@ class _Rows(CellWidget):
         self.post_message(self.Chosen(self, max(self.cursor - 1, 0)))
 
 
-class SectionList(_Rows):
+class SectionList(RowList):
     """The sections of a file; each with how many keys are given, or how many are at fault."""
 
     rows: tuple[SectionRow, ...] = ()
@@ -109,7 +109,7 @@ class SectionList(_Rows):
             sheet.text(sheet.width - 1, line, "│", Role.DIM)
 
 
-class KeyList(_Rows):
+class KeyList(RowList):
     """The keys of one section: name, value or default, unit."""
 
     rows: tuple[KeyRow, ...] = ()
@@ -122,7 +122,7 @@ class KeyList(_Rows):
 
     def draw(self, sheet: Raster) -> None:
         """Write the rows in view; a value that does not fit ends in dots."""
-        room = sheet.width - NAME_WIDTH - UNIT_WIDTH - 3
+        room = max(sheet.width - NAME_WIDTH - UNIT_WIDTH - 3, 6)
         for line, row in enumerate(self._place(sheet.height)):
             one = self.rows[row]
             role = Role.CURSOR if row == self.cursor else _ROLES[one.state]
