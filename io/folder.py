@@ -6,14 +6,13 @@ from pathlib import Path
 from typing import Any
 
 from eastfall.io.errors import InputError
-from eastfall.io.reduce import Reduction, reduce_file
+from eastfall.io.reduce import reduce_file
 from eastfall.io.safetext import safe
 from eastfall.io.shelf import curve_of, log_files
 from eastfall.io.sitefile import SiteFile
 from eastfall.io.spread import spread
 from eastfall.io.tables import number, reduce_table
 from eastfall.physics.errors import EastfallError
-from eastfall.physics.survey import ACTION
 
 SUMMARY_KEYS = (
     "path",
@@ -28,13 +27,6 @@ SUMMARY_KEYS = (
     "state",
     "error",
 )
-
-
-def exceeded(found: Reduction) -> bool:
-    """Tell whether a limit was exceeded: a station over, or an action alarm."""
-    return found.verdict == "over" or any(
-        one.name == ACTION and one.new == "active" for one in found.result.alarms
-    )
 
 
 def summary(path: Path, *, site: SiteFile | None = None) -> dict[str, Any]:
@@ -67,7 +59,7 @@ def summary(path: Path, *, site: SiteFile | None = None) -> dict[str, Any]:
         "frames": table["frames"],
         "rejected": table["rejected"],
         "verdict": found.verdict,
-        "exceeded": exceeded(found),
+        "exceeded": found.exceeded,
         "state": found.seal_state,
         "error": None,
         **{name: value for name, value in table.items() if name not in SUMMARY_KEYS},

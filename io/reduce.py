@@ -15,6 +15,7 @@ from eastfall.io.recording import Recording, Source, open_recording
 from eastfall.io.seal import Verification
 from eastfall.io.sitefile import SiteFile
 from eastfall.io.whatif import Difference
+from eastfall.physics.board import ACTION
 from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.findings import Result, Standing, Verdict
 from eastfall.physics.settings import Assumptions
@@ -60,6 +61,13 @@ class Reduction:
         found = {one.verdict for one in self.result.stations}
         worst: tuple[Verdict, ...] = ("over", "undecided", "within")
         return next((one for one in worst if one in found), None)
+
+    @property
+    def exceeded(self) -> bool:
+        """Whether a limit was exceeded: a station over, or an action alarm."""
+        return self.verdict == "over" or any(
+            one.name == ACTION and one.new == "active" for one in self.result.alarms
+        )
 
 
 def reduce_file(

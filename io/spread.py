@@ -6,7 +6,6 @@ What is done with a file is the caller's function, the same wherever it runs; th
 import importlib
 import os
 from collections.abc import Callable, Iterator, Sequence
-from concurrent.futures import ProcessPoolExecutor
 from contextlib import closing
 from pathlib import Path
 from typing import Any, TypeVar
@@ -65,7 +64,9 @@ def spread(
     if count == 1:
         yield from map(make, files)
         return
-    import multiprocessing  # noqa: PLC0415 - only where other processes are started
+    # Only where other processes are started: the import takes a tenth of a second.
+    import multiprocessing  # noqa: PLC0415
+    from concurrent.futures import ProcessPoolExecutor  # noqa: PLC0415
 
     # A fork would carry over a screen's threads and locks; a fresh interpreter takes nothing along.
     context = multiprocessing.get_context("spawn")

@@ -104,7 +104,6 @@ def reduce(
     a row for each is printed (with --format json, a list of all that each comes to). Exit status 1 if a limit is
     exceeded, 2 if something cannot be used.
     """
-    from eastfall.io.folder import exceeded  # noqa: PLC0415
     from eastfall.io.reduce import reduce_file  # noqa: PLC0415
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
     from eastfall.io.tables import reduce_table  # noqa: PLC0415
@@ -125,7 +124,7 @@ def reduce(
         print_rows(_stations(shape), form)
         for line in _footing(found, shape) if form == "table" else ():
             click.echo(line)
-    click.get_current_context().exit(1 if exceeded(found) else 0)
+    click.get_current_context().exit(1 if found.exceeded else 0)
 
 
 def _many(
