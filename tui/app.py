@@ -84,6 +84,7 @@ class Dashboard(App[int]):
         self.remembered = remembered or Remembered()
         self.theme = MONO.name if no_colour else theme or theme_named(self.remembered.now.theme)
         self.glyphs = glyphs
+        self.set_class(glyphs.name == "ascii", "-ascii")
         self.muted = not self.remembered.now.sound
         self.key_changes, self._refused = keys.moved(self.remembered.now.keys)
         self.set_keymap(self.key_changes)
@@ -179,6 +180,7 @@ class Dashboard(App[int]):
             # While a screen is open the library stands in for stdout.
             encoding = getattr(sys.__stdout__, "encoding", None)
             self.glyphs = glyphs_for(os.environ, encoding, self.remembered.now.glyphs)
+            self.set_class(self.glyphs.name == "ascii", "-ascii")
         if isinstance(self.first, WatchScreen):
             self.first.session = replace(self.first.session, units=self.units)
         for screen in self.screen_stack:
@@ -203,8 +205,16 @@ class Dashboard(App[int]):
                 Confirm("Stop recording and leave?", "The record so far is kept. The instrument is let go."),
                 self._left,
             )
+        elif any(getattr(one, "unsaved", False) for one in self.screen_stack):
+            self.push_screen(
+                Confirm("Leave without saving?", "What was typed into the site file is lost."), self._left
+            )
         else:
             self.exit(0)
+
+    async def action_quit(self) -> None:
+        """Leave as by the key of the table: the library's own ctrl+q would not ask."""
+        self.action_leave()
 
     def _left(self, sure: bool | None) -> None:
         if sure:

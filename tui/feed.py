@@ -11,8 +11,9 @@ from collections.abc import Callable
 from contextlib import suppress
 from typing import TYPE_CHECKING
 
+from eastfall.io.safetext import safe
 from eastfall.physics.errors import EastfallError
-from eastfall.tui.store import History, Snapshot
+from eastfall.tui.store import History, Said, Snapshot
 
 if TYPE_CHECKING:
     from eastfall.io.replay import Index, Replay
@@ -146,18 +147,35 @@ class LiveFeed(Feed):
         super().__init__(History("live"), publish, clock)
         self._source = run
         self._update: RunUpdate | None = None
+        self._said: tuple[Said, ...] = ()
 
-    def acknowledge(self, name: str) -> None:
+    def acknowledge(self, name: str, who: str = "") -> None:
         """Acknowledge one alarm."""
-        self.ask(lambda: self._source.acknowledge(name))
+        self._say(lambda: self._source.acknowledge(name, who), f"acknowledge {name}", who)
 
-    def note(self, text: str) -> None:
+    def shelve(self, name: str, seconds: float, reason: str, who: str = "") -> None:
+        """Put one alarm aside for some seconds."""
+        said = f"shelve {name} for {seconds / 60.0:.3g} min: {reason}"
+        self._say(lambda: self._source.shelve(name, seconds, reason, who), said, who)
+
+    def note(self, text: str, who: str = "") -> None:
         """Write a note into the record."""
-        self.ask(lambda: self._source.note(text))
+        self._say(lambda: self._source.note(text, who), text, who, is_note=True)
 
     def arm(self, who: str) -> None:
         """Write into the record who declared the shaft clear, and arm the run."""
-        self.ask(lambda: self._source.arm(who))
+        self._say(lambda: self._source.arm(who), "shaft clear, armed", who)
+
+    def _say(self, act: Command, text: str, who: str, *, is_note: bool = False) -> None:
+        """Have something said to the run, and keep it for the history on the screen."""
+
+        def command() -> None:
+            act()
+            moment = self._update.time if self._update is not None else 0.0
+            told = safe(f"{text} · {who}" if who else text, 200)
+            self._said += (Said(time=moment, text=told, is_note=is_note),)
+
+        self.ask(command)
 
     def _begin(self) -> None:
         self._source.start()
@@ -183,6 +201,7 @@ class LiveFeed(Feed):
             alarms=update.alarms,
             health=update.health,
             armed=update.armed,
+            said=self._said,
             ended=all(one.state == "ended" for one in update.health.links) and bool(update.health.links),
             trouble=self._trouble,
         )
@@ -271,6 +290,20 @@ class ReplayFeed(Feed):
 
         self.ask(command)
 
+    def change(self, replay: "Replay") -> None:
+        """Go on with the same record under other settings, at the same moment."""
+
+        def command() -> None:
+            moment = self._replay.time
+            self._replay.close()
+            self._replay, self._restarts = replay, replay.restarts
+            self._history.clear()
+            self.index = None
+            self._begin()
+            self._go(moment)
+
+        self.ask(command)
+
     def _go(self, moment: float) -> None:
         self._keeping_up = False
         self._take(self._replay.seek(min(max(moment, 0.0), self._replay.duration)))
@@ -283,9 +316,12 @@ class ReplayFeed(Feed):
         threading.Thread(target=self._read_through, name="eastfall index", daemon=True).start()
 
     def _read_through(self) -> None:
+        replay = self._replay
         # A record that cannot be read through is told of by the worker that plays it.
         with suppress(EastfallError, OSError):
-            self.index = self._replay.index
+            index = replay.index
+            if replay is self._replay:
+                self.index = index
 
     def _work(self) -> None:
         try:
@@ -327,5 +363,16 @@ class ReplayFeed(Feed):
             standing=update.standing if update else None,
             alarms=update.alarms if update else (),
             health=update.health if update else None,
+            said=self._said_by_now(),
             trouble=self._trouble,
+        )
+
+    def _said_by_now(self) -> tuple[Said, ...]:
+        """Return what people had said by where the record stands."""
+        if self.index is None:
+            return ()
+        return tuple(
+            Said(time=one.time, text=one.text, is_note=one.what == "note")
+            for one in self.index.marks
+            if one.what in {"note", "event"} and one.time <= self._replay.time
         )

@@ -63,6 +63,11 @@ TABLE = (
     Key("wall", "w", "wall", "w", "wall", "Plan at the scale of the wall, or close by"),
     Key("extras", "b", "extras", "b", "", "Show or hide where a bob would hang and a dropped body would be"),
     Key("stations", "s", "stations", "s", "stations", "The table of stations"),
+    Key("alarms", "l", "alarms", "l", "alarms", "The list of alarms with its history; shelve one"),
+    Key("steer", "d", "steer", "d", "steer", "Direction and distance in large figures, with a sound"),
+    Key("passes", "c", "passes", "c", "passes", "Compare the passes of this run by depth"),
+    Key("whatif", "i", "what_if", "i", "what if", "Replay: other settings, and what follows from them"),
+    Key("who", "u", "who", "u", "", "Your name, as it goes into the record"),
     Key("note", "n", "note", "n", "note", "Write a note into the record"),
     Key("arm", "g", "arm", "g", "", "Drop run: declare the shaft clear and arm"),
     Key("jump", "j", "jump", "j", "jump", "Jump to a depth; in a replay also to a time"),
@@ -79,6 +84,13 @@ TABLE = (
     Key("settings", "f2", "settings", "F2", "", "Settings: units, glyphs, sound, colours", "all"),
     Key("quit", "q,ctrl+c", "leave", "q", "quit", "Leave; a recording is asked about first", "all"),
     Key("close", "escape,q", "close", "esc", "close", "Back to the picture", "page"),
+    Key("seen", "a", "seen", "a", "seen", "Acknowledge the alarm under the cursor", "alarms"),
+    Key("shelve", "z", "shelve", "z", "shelve", "Put it aside for some minutes, with a reason", "alarms"),
+    Key("other", "right", "other(1)", "← →", "other pair", "Another pair of passes", "compare"),
+    Key("other-back", "left", "other(-1)", "", "", "The pair of passes before", "compare"),
+    Key("sort", "o", "sort", "o", "order", "Order by depth, or by how much moved", "compare"),
+    Key("filter", "f", "filter", "f", "filter", "All depths, or only where it moved", "compare"),
+    Key("turn", "v", "turn", "v", "plot", "Table or plot, where both do not fit", "compare"),
     Key("planner", "p", "planner", "p", "", "Drop run: plan the release: wall, spread, best point"),
     Key("sort", "o", "sort", "o", "order", "Order by depth, by residual, by time", "stations"),
     Key("filter", "f", "filter", "f", "filter", "Show all, or only what is over or undecided", "stations"),
@@ -120,6 +132,11 @@ TABLE = (
         "planner",
     ),
     Key("scope", "w", "scope", "w", "wall", "Plan at the scale of the wall, or close by", "planner"),
+    Key("sort", "o", "sort", "o", "order", "Order by date, site, verdict, depth, state", "shelf"),
+    Key("filter", "f", "filter", "f", "filter", "All, over, undecided, or not intact", "shelf"),
+    Key("pick", "c", "pick", "c", "compare", "Compare: this run, then another", "shelf"),
+    Key("report", "r", "report", "r", "report", "Write the report to a new file", "shelf"),
+    Key("export", "x", "export", "x", "export", "Write a CSV, JSON or LAS file", "shelf"),
     Key("edit", "e", "edit", "e", "edit", "Edit the site file under the cursor", "start"),
     Key("up", "up", "move(-1)", "↑ ↓", "key", "The key above or below", "form"),
     Key("down", "down", "move(1)", "", "", "The key below", "form"),
@@ -154,8 +171,8 @@ TABLE = (
     Key("close", "escape", "close", "esc", "let go", "Let go of the port; again: leave", "trial"),
 )
 
-REPLAY_ONLY = frozenset({"back", "on", "step", "slower", "faster", "next", "previous"})
-LIVE_ONLY = frozenset({"note", "arm", "acknowledge", "acknowledge-all"})
+REPLAY_ONLY = frozenset({"back", "on", "step", "slower", "faster", "next", "previous", "whatif"})
+LIVE_ONLY = frozenset({"note", "arm", "acknowledge", "acknowledge-all", "who", "seen", "shelve"})
 
 
 def bindings(*places: str) -> list[Binding]:
@@ -205,6 +222,9 @@ def page(
 _TOGETHER = (
     ("watch", "all"),
     ("stations", "page", "all"),
+    ("alarms", "page", "all"),
+    ("compare", "page", "all"),
+    ("shelf", "page", "all"),
     ("explorer", "page", "all"),
     ("planner", "page", "all"),
     ("start", "all"),

@@ -22,6 +22,8 @@ class Sight:
     """Index of the station looked back at; None follows the newest reading."""
     span: float | None = None
     """Metres of depth in view; None is the whole shaft."""
+    top: float | None = None
+    """Depth at the upper edge of the view [m], where the pointer fixed it; None keeps what is looked at in view."""
     residual: bool = False
     """Draw the residual about zero instead of measured and expected."""
     layout: Layout = "all"
@@ -83,11 +85,38 @@ def at_depth(sight: Sight, snapshot: "Snapshot", depth: float) -> Sight:
 def zoomed(sight: Sight, whole: float, factor: float) -> Sight:
     """Show `factor` times as much depth; as much as the whole shaft or more is the whole shaft."""
     span = (sight.span if sight.span is not None else whole) * factor
-    return replace(sight, span=None if span >= whole else max(span, min(LEAST_SPAN, whole)))
+    whole_seen = span >= whole
+    return replace(sight, span=None if whole_seen else max(span, min(LEAST_SPAN, whole)), top=None)
+
+
+def zoomed_about(sight: Sight, whole: float, factor: float, view: tuple[float, float], depth: float) -> Sight:
+    """Zoom so that a depth stays where it is on the screen.
+
+    Parameters
+    ----------
+    sight : Sight
+        Before.
+    whole : float
+        Depth of the shaft [m].
+    factor : float
+        How many times as much depth to show.
+    view : tuple of float
+        Top and bottom now in view [m].
+    depth : float
+        Under the pointer [m].
+    """
+    closer = zoomed(sight, whole, factor)
+    if closer.span is None:
+        return closer
+    part = (depth - view[0]) / (view[1] - view[0])
+    top = min(max(depth - part * closer.span, 0.0), whole - closer.span)
+    return replace(closer, top=top)
 
 
 def window(sight: Sight, whole: float, focus: float) -> tuple[float, float]:
     """Return the top and bottom depth [m] in view, `focus` well inside and no view past the collar or bottom."""
+    if sight.span is not None and sight.top is not None:
+        return sight.top, sight.top + sight.span
     if sight.span is None or isnan(focus):
         return 0.0, whole
     top = min(max(0.0, focus - 0.6 * sight.span), max(0.0, whole - sight.span))

@@ -3,13 +3,14 @@
 The worker thread owns the history and appends; a snapshot holds read-only views of what stood when it was taken.
 """
 
+from collections import deque
 from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
-from eastfall.physics.findings import ROW_FIELDS, AlarmView, Rows, Standing, Station
+from eastfall.physics.findings import ROW_FIELDS, AlarmChange, AlarmView, Rows, Standing, Station
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -21,6 +22,10 @@ Mode = Literal["live", "replay"]
 
 KEPT = 60_000
 """Rows kept for the picture; older ones are thinned, the run log keeps all."""
+
+
+REMEMBERED = 2000
+"""Alarm changes kept for the history on the screen; the run log keeps all."""
 
 
 class GrowingRows:
@@ -95,10 +100,24 @@ class Snapshot:
     """A replay at the newest end of a record that is being written."""
     armed: bool = True
     """False while a drop waits for the shaft to be declared clear."""
+    changes: tuple[AlarmChange, ...] = ()
+    """What alarms did so far, on the run's clock; the newest `REMEMBERED`."""
+    said: tuple["Said", ...] = ()
+    """What people said and did so far."""
     trouble: str = ""
     """What stopped the source, in one line."""
     serial: int = 0
     """Rises with every snapshot of one source."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Said:
+    """A note, an acknowledgement, a shelving or an arming, and by whom."""
+
+    time: float
+    """On the run's clock [s]."""
+    text: str
+    is_note: bool = False
 
 
 class History:
@@ -123,6 +142,8 @@ class History:
         self._rows = GrowingRows(self._keep)
         self._stations: dict[int, Station] = {}
         self._since: dict[str, float] = {}
+        self._changes: deque[AlarmChange] = deque(maxlen=REMEMBERED)
+        self._changed: tuple[AlarmChange, ...] | None = ()
         self._until = 0.0
         self._frozen: tuple[Station, ...] | None = ()
 
@@ -147,7 +168,10 @@ class History:
             part = 1.0
             if times.size and times[-1] > times[0]:
                 part = min(max((change.time - times[0]) / (times[-1] - times[0]), 0.0), 1.0)
-            self._since[change.name] = self._until + float(part) * (until - self._until)
+            moment = self._until + float(part) * (until - self._until)
+            self._since[change.name] = moment
+            self._changes.append(replace(change, time=moment))
+            self._changed = None
 
     def _on_our_clock(self, alarms: tuple[AlarmView, ...]) -> tuple[AlarmView, ...]:
         return tuple(replace(one, since=self._since.get(one.name, one.since)) for one in alarms)
@@ -157,11 +181,14 @@ class History:
         self._serial += 1
         if self._frozen is None:
             self._frozen = tuple(self._stations[number] for number in sorted(self._stations))
+        if self._changed is None:
+            self._changed = tuple(self._changes)
         return Snapshot(
             mode=self._mode,
             rows=self._rows.view(),
             stations=self._frozen,
             alarms=self._on_our_clock(alarms),
+            changes=self._changed,
             serial=self._serial,
             **state,  # type: ignore[arg-type]  # the caller names fields of Snapshot; a wrong name raises
         )

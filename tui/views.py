@@ -20,6 +20,7 @@ Subject = Standing | Station | None
 _DEEP = 1000.0  # of the long unit, from where the large figure leaves the tenth to the answer line
 _NOTHING = (np.empty(0), np.empty(0))
 _TRAIL_SECONDS = 60.0
+_NOTE_SECONDS = 20.0  # that a note stays in view
 
 
 def title(session: Session) -> tuple[Piece, ...]:
@@ -82,15 +83,18 @@ def swing(session: Session, one: Subject) -> tuple[Piece, ...]:
     """Return what the swing of a hung line says; nothing for other runs."""
     if session.assumptions.run.kind != "hung" or not isinstance(one, Standing):
         return ()
-    return ((words.swing(one.rest_point, session.units), Role.TEXT),)
+    touches = one.rest_point is not None and words.TOUCHING in one.rest_point.message
+    return ((words.swing(one.rest_point, session.units), Role.WARNING if touches else Role.TEXT),)
 
 
-def notes(session: Session, one: Subject) -> tuple[Piece, ...]:
-    """Return what a reader must know of the answer besides: other settings than recorded, what the model leaves out."""
+def notes(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ...]:
+    """Return what a reader must know besides: other settings than recorded, what the model leaves out, a fresh note."""
     found = list(one.notes) if isinstance(one, Standing) else []
     if session.differences:
         found.insert(0, f"WHAT IF: {', '.join(session.differences)}")
-    return tuple((f"! {note}  ", Role.WARNING) for note in found)
+    noted = [said for said in snapshot.said if said.is_note and snapshot.time - said.time <= _NOTE_SECONDS]
+    fresh = tuple((f"note {words.clock(said.time)} {said.text}  ", Role.STRONG) for said in noted[-1:])
+    return (*fresh, *((f"! {note}  ", Role.WARNING) for note in found))
 
 
 def figures(session: Session, one: Subject) -> tuple[Figure, ...]:

@@ -1,6 +1,6 @@
 """Findings as plain sentences: every number with its unit, its sign or direction, and the line it is reckoned from."""
 
-from math import atan2, degrees, hypot, isfinite
+from math import atan2, degrees, hypot, isfinite, log
 from typing import TYPE_CHECKING, Protocol
 
 from eastfall.physics.findings import AlarmView, RestPoint, Standing
@@ -124,14 +124,56 @@ def pair(east: float, north: float, places: int = 1, units: Units = METRIC) -> s
 
 
 def swing(rest: RestPoint | None, units: Units = METRIC) -> str:
-    """Return what the swing says of the rest point, as one line."""
+    """Return what the swing says of the rest point."""
     if rest is None:
         return "rest point: not enough swing seen yet"
     worst = COVERAGE_FACTOR * max(rest.u_east, rest.u_north)
-    return (
-        f"rest point {pair(rest.east, rest.north, units=units)} ± {units.offset(worst)} {units.short}, "
-        f"period {rest.period:.2f} s, {rest.swings:.1f} full swings seen"
-    )
+    parts = [
+        f"rest point {pair(rest.east, rest.north, units=units)} ± {units.offset(worst)} {units.short}",
+        f"{rest.swings:.1f} full swings seen{_more_swings(rest, units)}",
+        period(rest),
+        amplitude(rest, units),
+    ]
+    return ", ".join(filter(None, parts))
+
+
+def _more_swings(rest: RestPoint, units: Units) -> str:
+    """Return how many swings more a rest point needs to be known to half a millimetre."""
+    if not isfinite(rest.swings_needed):
+        return ""
+    more = rest.swings_needed - rest.swings
+    wanted = f"± {units.offset(_WANTED)} {units.short}"
+    return f", {more:.1f} more for {wanted}" if more > 0.05 else f", enough for {wanted}"
+
+
+def period(rest: RestPoint) -> str:
+    """Return the period against that of a free line, which goes with the root of the length; touching shortens it."""
+    if not isfinite(rest.period):
+        return ""
+    told = f"period {rest.period:.2f} s"
+    if isfinite(rest.free_period):
+        told += f", a free line {rest.free_period:.2f} s"
+    return told + (": MAY BE TOUCHING" if TOUCHING in rest.message else "")
+
+
+def amplitude(rest: RestPoint, units: Units = METRIC) -> str:
+    """Return how far it swings, and how long until it swings by no more than `SMALL`."""
+    if not isfinite(rest.amplitude):
+        return ""
+    told = f"swings {units.offset(rest.amplitude)} {units.short} to each side"
+    small = f"{units.offset(SMALL)} {units.short}"
+    if rest.amplitude <= SMALL:
+        return told
+    if not isfinite(rest.decay):
+        return f"{told}, not dying down"
+    return f"{told}, under {small} in {clock(rest.decay * log(rest.amplitude / SMALL))}"
+
+
+TOUCHING = "may be touching"
+"""What the engine says of a line that swings faster than a free one can."""
+SMALL = 0.002
+"""A swing of no more than this to each side disturbs nobody's work [m]: common practice, no source."""
+_WANTED = 0.0005
 
 
 def clock(seconds: float) -> str:

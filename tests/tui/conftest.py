@@ -1,7 +1,9 @@
 """Hand-made findings and sources for the screen's tests, and an environment that does not colour them."""
 
+import sys
 from collections.abc import Callable
 from dataclasses import replace
+from pathlib import Path
 from types import SimpleNamespace
 from typing import Any
 
@@ -12,6 +14,8 @@ from eastfall.physics.findings import AlarmView, Findings, Rows, Standing, Stati
 from eastfall.physics.settings import Assumptions, Run, Shaft, Site
 from eastfall.tui.session import Session
 from eastfall.tui.store import History, Snapshot
+
+sys.path.insert(0, str(Path(__file__).parent))  # the helpers beside the tests stand in no package
 
 SHAFT_DEPTH = 300.0
 WARNING, ACTION = 0.015, 0.030
@@ -24,6 +28,7 @@ def plain_environment(monkeypatch: pytest.MonkeyPatch, tmp_path_factory: pytest.
     for name in ("NO_COLOR", "COLORTERM", "EASTFALL_GLYPHS", "TEXTUAL", "TEXTUAL_THEME"):
         monkeypatch.delenv(name, raising=False)
     monkeypatch.setenv("TEXTUAL_ANIMATIONS", "none")
+    monkeypatch.setenv("LOGNAME", "Ada")
 
 
 STANDING = Standing(

@@ -3,14 +3,11 @@
 from collections.abc import Callable
 from dataclasses import replace
 from types import SimpleNamespace
-from typing import Any
 
 import pytest
-from textual.pilot import Pilot
+from screen_harness import AskedLive, AskedReplay, built, lines, shown, watch
 
 from eastfall.physics.findings import AlarmView
-from eastfall.tui.app import Dashboard, watch_app
-from eastfall.tui.feed import LiveFeed, ReplayFeed
 from eastfall.tui.glyphs import GLYPHS
 from eastfall.tui.screens.dialogs import AskText, ClearShaft, Confirm
 from eastfall.tui.screens.help import HelpScreen
@@ -22,79 +19,6 @@ from eastfall.tui.store import Snapshot
 pytestmark = pytest.mark.invariant
 Snap = Callable[..., Snapshot]
 Make = Callable[..., Session]
-
-
-class _Asked:
-    """Writes down what the screen asks of its source."""
-
-    running = True
-
-    def __init__(self) -> None:
-        self.calls: list[tuple[Any, ...]] = []
-
-    def start(self) -> None:
-        self.calls.clear()
-
-    def close(self) -> None:
-        self.running = False
-
-
-class _AskedLive(_Asked, LiveFeed):
-    """A live source that only listens."""
-
-    def acknowledge(self, name: str) -> None:
-        self.calls.append(("acknowledge", name))
-
-    def note(self, text: str) -> None:
-        self.calls.append(("note", text))
-
-    def arm(self, who: str) -> None:
-        self.calls.append(("arm", who))
-
-
-class _AskedReplay(_Asked, ReplayFeed):
-    """A replay that only listens."""
-
-    def play(self, *, on: bool | None = None) -> None:
-        self.calls.append(("play", on))
-
-    def faster(self, factor: float) -> None:
-        self.calls.append(("faster", factor))
-
-    def skip(self, seconds: float) -> None:
-        self.calls.append(("skip", seconds))
-
-    def seek(self, moment: float) -> None:
-        self.calls.append(("seek", moment))
-
-    def step(self) -> None:
-        self.calls.append(("step",))
-
-
-def built(session: Session, feed: _Asked | None = None, **look: Any) -> Dashboard:
-    """Return the application with a source that only listens."""
-    app = watch_app(session, **look)
-    app.feed = app.first.feed = feed  # type: ignore[assignment, attr-defined]
-    return app
-
-
-def lines(app: Dashboard) -> list[str]:
-    """Return the screen as text."""
-    strips = app.screen._compositor.render_strips()
-    return ["".join(segment.text for segment in strip) for strip in strips]
-
-
-async def shown(pilot: Pilot[Any], snapshot: Snapshot) -> list[str]:
-    """Hand a snapshot in and return the screen."""
-    pilot.app.take(snapshot)  # type: ignore[attr-defined]
-    await pilot.pause()
-    return lines(pilot.app)  # type: ignore[arg-type]
-
-
-def watch(app: Dashboard) -> WatchScreen:
-    """Return the watch screen."""
-    assert isinstance(app.first, WatchScreen)
-    return app.first
 
 
 @pytest.mark.parametrize(("width", "height"), [(80, 24), (120, 40), (200, 60)])
@@ -159,7 +83,7 @@ async def test_alarm_stays_until_the_key_and_the_key_names_it(
     session: Make, snapshot: Snap, alarm: Callable[..., AlarmView]
 ) -> None:
     """An alarm that went back by itself is still shown, and a asks for exactly that one."""
-    feed = _AskedLive()
+    feed = AskedLive()
     app = built(session(), feed)
     returned = alarm(state="returned")
     async with app.run_test(size=(80, 24)) as pilot:
@@ -168,20 +92,20 @@ async def test_alarm_stays_until_the_key_and_the_key_names_it(
         )
         assert "WENT BACK, NOT SEEN 5:12 warning limit at 212.3 m" in text
         await pilot.press("a")
-    assert feed.calls == [("acknowledge", "warning limit")]
+    assert feed.calls == [("acknowledge", "warning limit", "Ada")]
 
 
 async def test_shifted_a_acknowledges_all_that_wait(
     session: Make, snapshot: Snap, alarm: Callable[..., AlarmView]
 ) -> None:
     """A asks for every alarm that waits for an answer and for no other."""
-    feed = _AskedLive()
+    feed = AskedLive()
     app = built(session(), feed)
     alarms = (alarm(name="one"), alarm(name="two", since=400.0), alarm(name="three", state="acknowledged"))
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot(alarms=alarms))
         await pilot.press("A")
-    assert feed.calls == [("acknowledge", "two"), ("acknowledge", "one")]
+    assert feed.calls == [("acknowledge", "two", "Ada"), ("acknowledge", "one", "Ada")]
 
 
 async def test_new_alarm_rings_once_unless_muted(
@@ -204,7 +128,7 @@ async def test_pause_holds_the_picture_and_nothing_else(
     session: Make, snapshot: Snap, alarm: Callable[..., AlarmView]
 ) -> None:
     """While the picture is held, alarms and the recording's size go on; f lets go."""
-    app = built(session(), _AskedLive())
+    app = built(session(), AskedLive())
     first = snapshot()
     assert first.standing is not None
     deeper = replace(first.standing, depth=123.4)
@@ -223,7 +147,7 @@ async def test_pause_holds_the_picture_and_nothing_else(
 
 async def test_arrows_look_back_and_f_follows_again(session: Make, snapshot: Snap) -> None:
     """Looking back shows a station's answer and says so; the newest goes on behind it."""
-    app = built(session(), _AskedLive())
+    app = built(session(), AskedLive())
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot())
         await pilot.press("up", "up")
@@ -240,7 +164,7 @@ async def test_arrows_look_back_and_f_follows_again(session: Make, snapshot: Sna
 
 async def test_keys_of_the_picture_change_the_sight(session: Make, snapshot: Snap) -> None:
     """Zoom, whole, view, residual, wall and extras each do their one thing."""
-    app = built(session(), _AskedLive())
+    app = built(session(), AskedLive())
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot())
         await pilot.press("plus", "plus")
@@ -257,7 +181,7 @@ async def test_keys_of_the_picture_change_the_sight(session: Make, snapshot: Sna
 
 async def test_jump_takes_a_depth_and_refuses_a_time_while_live(session: Make, snapshot: Snap) -> None:
     """A depth goes to its station; a time is answered with what is understood and the dialog stays."""
-    app = built(session(), _AskedLive())
+    app = built(session(), AskedLive())
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot())
         await pilot.press("j", *"2:00", "enter")
@@ -273,19 +197,19 @@ async def test_note_goes_to_the_record_with_control_characters_made_visible(
     session: Make, snapshot: Snap
 ) -> None:
     """A note is written as typed; an empty one is not."""
-    feed = _AskedLive()
+    feed = AskedLive()
     app = built(session(), feed)
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot())
         await pilot.press("n", *"fan", "enter")
         await pilot.press("n", "enter")
         await pilot.press("n", *"no", "escape")
-    assert feed.calls == [("note", "fan")]
+    assert feed.calls == [("note", "fan", "Ada")]
 
 
 async def test_drop_is_armed_only_by_a_name(session: Make, snapshot: Snap) -> None:
     """The shaft is declared clear by a person with a name, or the run stays disarmed."""
-    feed = _AskedLive()
+    feed = AskedLive()
     app = built(session("drop"), feed)
     async with app.run_test(size=(80, 24)) as pilot:
         text = "\n".join(await shown(pilot, snapshot(armed=False)))
@@ -301,7 +225,7 @@ async def test_drop_is_armed_only_by_a_name(session: Make, snapshot: Snap) -> No
 
 async def test_quitting_a_recording_is_asked_about(session: Make, snapshot: Snap) -> None:
     """The quit key asks; anything but y goes on; y leaves with status 0."""
-    app = built(session(), _AskedLive())
+    app = built(session(), AskedLive())
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot())
         for refusal in ("n", "escape", "enter"):
@@ -315,7 +239,7 @@ async def test_quitting_a_recording_is_asked_about(session: Make, snapshot: Snap
 
 async def test_replay_keys_reach_the_replay(session: Make, snapshot: Snap) -> None:
     """Pause, step, speed, skip, events and jumps are handed to the record; quitting is not asked about."""
-    feed = _AskedReplay()
+    feed = AskedReplay()
     feed.index = SimpleNamespace(  # type: ignore[assignment]
         marks=(SimpleNamespace(time=100.0, what="alarm"), SimpleNamespace(time=500.0, what="alarm")),
         time_of_depth=lambda depth, after=0.0: depth / 2.0 if depth < 301.0 and after < 1.0 else None,
@@ -369,7 +293,7 @@ async def test_help_lists_every_key_of_the_screen(session: Make) -> None:
 
 async def test_stations_are_listed_filtered_opened_and_looked_at(session: Make, snapshot: Snap) -> None:
     """The table follows the newest, filters what is open, and hands a station back to the picture."""
-    app = built(session(), _AskedLive())
+    app = built(session(), AskedLive())
     made = snapshot()
     judged = tuple(
         replace(

@@ -1,6 +1,7 @@
 """Sentences: units, signs, directions and the line they are reckoned from."""
 
 from collections.abc import Callable
+from dataclasses import replace
 from math import nan
 
 import pytest
@@ -86,7 +87,7 @@ def test_swing_that_does_not_fit_is_waited_for(standing: Make) -> None:
         swings=1.0, fits=False, message="half a swing seen",
     )  # fmt: skip
     assert words.steering(standing(rest_point=rest), "hung") == "Let it swing: half a swing seen."
-    assert words.swing(rest) == "rest point E +0.0 N +0.0 mm ± 2.0 mm, period 30.00 s, 1.0 full swings seen"
+    assert words.swing(rest) == "rest point E +0.0 N +0.0 mm ± 2.0 mm, 1.0 full swings seen, period 30.00 s"
 
 
 def test_offsets_carry_sign_and_letter() -> None:
@@ -134,3 +135,21 @@ def test_every_reference_line_and_kind_has_a_name() -> None:
     """The title can always name what the offsets are measured from."""
     assert set(words.REFERENCE) == {"straight", "field-line", "hung-line"}
     assert set(words.KIND) == {"guided", "hung", "drop"}
+
+
+def test_swing_tells_what_is_left_to_wait_for() -> None:
+    """Swings to go for half a millimetre, the free period, and 25 mm dying to 2 mm: decay 1000 s times ln 12.5."""
+    rest = RestPoint(
+        east=0.001, north=0.0, u_east=4e-4, u_north=3e-4, covariance_east_north=0.0, period=41.1, decay=1000.0,
+        swings=2.0, fits=True, free_period=41.0, amplitude=0.025, swings_needed=5.1,
+    )  # fmt: skip
+    told = words.swing(rest)
+    assert "2.0 full swings seen, 3.1 more for ± 0.5 mm" in told
+    assert "period 41.10 s, a free line 41.00 s" in told
+    assert "swings 25.0 mm to each side, under 2.0 mm in 42:05" in told
+    assert "MAY BE TOUCHING" not in told
+    enough = words.swing(replace(rest, swings=6.0, swings_needed=6.0, amplitude=0.001))
+    assert "enough for ± 0.5 mm" in enough
+    assert enough.endswith("swings 1.0 mm to each side")
+    touching = replace(rest, message="the line may be touching: it swings in 10.00 s from side to side")
+    assert "MAY BE TOUCHING" in words.swing(touching)

@@ -7,14 +7,39 @@ from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 from textual.containers import Vertical
 from textual.screen import ModalScreen
+from textual.visual import VisualType
 from textual.widgets import Input, Static
 
 from eastfall.io.cautions import CAUTIONS
+from eastfall.tui.glyphs import BRAILLE, Glyphs, in_ascii
 
 
-def plain(text: str, classes: str = "") -> Static:
-    """Return text that is shown letter by letter: brackets are no markup."""
-    return Static(text, markup=False, classes=classes)
+class Plain(Static):
+    """Text that is shown letter by letter: brackets are no markup, and a plain terminal gets plain letters."""
+
+    def __init__(self, text: str, classes: str = "") -> None:
+        super().__init__(text, markup=False, classes=classes)
+        self._words = text
+
+    def on_mount(self) -> None:
+        """Choose the letters, now that the terminal is known."""
+        if shown_in(self.app, self._words) != self._words:
+            self.update(self._words)
+
+    def update(self, content: VisualType = "", *, layout: bool = True) -> None:
+        """Show other words."""
+        super().update(shown_in(self.app, content) if isinstance(content, str) else content, layout=layout)
+
+
+def shown_in(app: object, text: str) -> str:
+    """Return a text in the letters that an application's terminal can show."""
+    glyphs: Glyphs = getattr(app, "glyphs", BRAILLE)
+    return in_ascii(text) if glyphs.name == "ascii" else text
+
+
+def plain(text: str, classes: str = "") -> Plain:
+    """Return text that is shown letter by letter."""
+    return Plain(text, classes)
 
 
 class Confirm(ModalScreen[bool]):
@@ -47,10 +72,17 @@ class AskText(ModalScreen[str | None]):
     BINDINGS: ClassVar[list[BindingType]] = [Binding("escape,ctrl+c", "leave", "leave", show=False)]
 
     def __init__(
-        self, question: str, hint: str, *, check: Callable[[str], object] | None = None, warning: str = ""
+        self,
+        question: str,
+        hint: str,
+        *,
+        check: Callable[[str], object] | None = None,
+        warning: str = "",
+        value: str = "",
     ) -> None:
         super().__init__()
         self._question, self._hint, self._check, self._warning = question, hint, check, warning
+        self._value = value
 
     def compose(self) -> ComposeResult:
         """Show the question over the line to type in."""
@@ -58,7 +90,7 @@ class AskText(ModalScreen[str | None]):
             yield plain(self._question, "title")
             if self._warning:
                 yield plain(self._warning)
-            field = Input(id="field")
+            field = Input(self._value, id="field", select_on_focus=False)
             field.cursor_blink = False
             yield field
             yield plain(self._hint)

@@ -11,9 +11,9 @@ from eastfall.physics.findings import Station
 from eastfall.tui import keys, words
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.screens.following import FollowingScreen
 from eastfall.tui.store import Snapshot
 from eastfall.tui.units import METRIC, Units
-from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.table import LongTable, fixed
 
@@ -64,7 +64,7 @@ def chosen(stations: tuple[Station, ...], order: str, only_open: bool) -> list[i
     return indices
 
 
-class StationsScreen(PaintedScreen[int | None]):
+class StationsScreen(FollowingScreen[int | None]):
     """The table; closes with the index of a station to look back at, or None."""
 
     PLACES = ("stations", "page")

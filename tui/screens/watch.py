@@ -1,28 +1,26 @@
 """The watch screen, live and replay alike: hands snapshots to the widgets, and keys to the source."""
 
 from dataclasses import replace
-from typing import ClassVar, cast
+from typing import ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Horizontal
+from textual.events import Click
 
-from eastfall.io.safetext import safe
 from eastfall.tui import keys, views, words
 from eastfall.tui import sight as look
-from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.feed import ReplayFeed
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import AskText, ClearShaft
-from eastfall.tui.screens.start import Choice
-from eastfall.tui.screens.stations import StationsScreen
+from eastfall.tui.screens.following import FollowingScreen
+from eastfall.tui.screens.runkeys import RunScreen
 from eastfall.tui.session import Session
 from eastfall.tui.sight import Sight
 from eastfall.tui.store import Snapshot
-from eastfall.tui.widgets.alarms import AlarmList, in_order
-from eastfall.tui.widgets.cells import PaintedScreen
+from eastfall.tui.widgets.alarms import AlarmList
 from eastfall.tui.widgets.figures import Figures
 from eastfall.tui.widgets.health import HealthList, health_line, told
-from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
+from eastfall.tui.widgets.line import KeyLine, Piece, TextLine, wrapped
 from eastfall.tui.widgets.panel import ProfileView
 from eastfall.tui.widgets.plan import Plan
 from eastfall.tui.widgets.profile import Profile
@@ -31,7 +29,7 @@ from eastfall.tui.widgets.strip import Strip
 _LAYOUTS: tuple[look.Layout, ...] = ("all", "depth", "plan", "time")
 
 
-class WatchScreen(PaintedScreen[Choice | None]):
+class WatchScreen(RunScreen):
     """One run, live or replayed.
 
     Parameters
@@ -46,13 +44,9 @@ class WatchScreen(PaintedScreen[Choice | None]):
     VERTICAL_BREAKPOINTS = [(0, "-tiny"), (10, "-low"), (17, "-mid"), (32, "-tall")]  # noqa: RUF012
 
     def __init__(self, session: Session) -> None:
-        super().__init__()
-        self.session = session
-        self.feed: Feed | None = None
-        self.latest = Snapshot(mode=session.mode)
+        super().__init__(session)
         self.held: Snapshot | None = None
         self._told: tuple[object, ...] | None = None
-        self.sight = Sight(layout="plan" if session.assumptions.run.kind == "hung" else "all")
 
     def compose(self) -> ComposeResult:
         """Put the parts together; the stylesheet decides which show at which size."""
@@ -91,7 +85,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self.latest = snapshot
         if self.is_current or self.app.screen.is_modal:
             self.paint()
-        if isinstance(self.app.screen, StationsScreen):
+        if isinstance(self.app.screen, FollowingScreen):
             self.app.screen.show(snapshot)
 
     def paint(self) -> None:
@@ -101,13 +95,13 @@ class WatchScreen(PaintedScreen[Choice | None]):
         shown = self.held or self.latest
         one = look.subject(self.sight, shown)
         with self.app.batch_update():
-            self._paint_lines(one)
+            self._paint_lines(shown, one)
             self._paint_evidence(shown, one)
 
     def _line(self, name: str) -> TextLine:
         return self.query_one(f"#{name}", TextLine)
 
-    def _paint_lines(self, one: views.Subject) -> None:
+    def _paint_lines(self, shown: Snapshot, one: views.Subject) -> None:
         latest = self.latest
         state = views.state(latest, self.sight, held=self.held is not None)
         self._line("title").show(*views.title(self.session), right=state)
@@ -117,7 +111,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self._line("steer").show(*views.steer(self.session, latest, one))
         for name, pieces in (
             ("swing", views.swing(self.session, one)),
-            ("notes", views.notes(self.session, one)),
+            ("notes", views.notes(self.session, shown, one)),
         ):
             self._show_if_any(self._line(name), pieces)
         pieces, ground = views.alarm_line(latest)
@@ -137,9 +131,10 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self.query_one(AlarmList).show(latest.alarms)
 
     def _show_if_any(self, line: TextLine, pieces: tuple[Piece, ...]) -> None:
-        """Give a line the rows that its words need, two at most, and none without words."""
+        """Give a line the rows that its words need, three at most, and none without words."""
         line.display = bool(pieces)
-        rows = 1 if sum(len(text) for text, _ in pieces) <= self.size.width else 2
+        words = "".join(text for text, _ in pieces)
+        rows = min(len(wrapped(words, self.size.width, self.size.width)), 3)
         if line.styles.height is None or line.styles.height.value != rows:
             line.styles.height = rows
         line.show(*pieces)
@@ -183,7 +178,7 @@ class WatchScreen(PaintedScreen[Choice | None]):
         self.held = None
         if isinstance(self.feed, ReplayFeed):
             self.feed.newest()
-        self._look(replace(self.sight, station=None))
+        self._look(replace(self.sight, station=None, top=None))
 
     def action_zoom(self, factor: float) -> None:
         """Change how much depth is in view."""
@@ -211,6 +206,25 @@ class WatchScreen(PaintedScreen[Choice | None]):
         """Show or hide bob and dropped body."""
         self._look(replace(self.sight, extras=not self.sight.extras))
 
+    # What the mouse does.
+
+    def on_profile_pointed(self, event: Profile.Pointed) -> None:
+        """Zoom about the pointer, or look at the station nearest to it."""
+        if event.factor == 1.0:
+            self._look(look.at_depth(self.sight, self.held or self.latest, event.depth))
+            return
+        whole = self.session.assumptions.shaft.depth
+        self._look(look.zoomed_about(self.sight, whole, event.factor, event.window, event.depth))
+
+    def on_alarm_list_clicked(self) -> None:
+        """Open the list of alarms."""
+        self.action_alarms()
+
+    def on_click(self, event: Click) -> None:
+        """Open the list of alarms from the line that shows the first one."""
+        if event.widget is self._line("alarm"):
+            self.action_alarms()
+
     def action_pause(self) -> None:
         """Hold the picture of a live run, or stop and play a replay."""
         if isinstance(self.feed, ReplayFeed):
@@ -218,119 +232,3 @@ class WatchScreen(PaintedScreen[Choice | None]):
             return
         self.held = None if self.held is not None else self.latest
         self.paint()
-
-    # What the keys do: the source.
-
-    def action_acknowledge(self) -> None:
-        """Acknowledge the alarm shown first."""
-        self._acknowledge(1)
-
-    def action_acknowledge_all(self) -> None:
-        """Acknowledge every alarm."""
-        self._acknowledge(len(self.latest.alarms))
-
-    def _acknowledge(self, most: int) -> None:
-        if isinstance(self.feed, LiveFeed):
-            waiting = [one for one in in_order(self.latest.alarms) if one.state in words.WANTS_ANSWER]
-            for one in waiting[:most]:
-                self.feed.acknowledge(one.name)
-
-    def action_note(self) -> None:
-        """Ask for a note and write it into the record."""
-        if isinstance(self.feed, LiveFeed):
-            self.app.push_screen(
-                AskText("Note for the record", "enter writes it, escape does not"), self._noted
-            )
-
-    def _noted(self, text: str | None) -> None:
-        if text and text.strip():
-            cast("LiveFeed", self.feed).note(safe(text.strip()))
-
-    def action_arm(self) -> None:
-        """Ask whether the shaft is clear, and arm the run."""
-        if isinstance(self.feed, LiveFeed) and not self.latest.armed:
-            self.app.push_screen(ClearShaft(), self._armed)
-
-    def _armed(self, who: str | None) -> None:
-        if who:
-            cast("LiveFeed", self.feed).arm(safe(who.strip()))
-
-    def action_planner(self) -> None:
-        """Open the drop planner for this site; only a drop has one."""
-        from eastfall.tui.screens.planner import PlannerScreen  # noqa: PLC0415 (the models only where asked for)
-
-        session = self.session
-        if session.assumptions.run.kind == "drop":
-            self.app.push_screen(PlannerScreen(session.assumptions, name=session.title, units=session.units))
-
-    def action_stations(self) -> None:
-        """Open the table of stations."""
-        self.app.push_screen(StationsScreen(self.latest, self.session.units), self._chosen)
-
-    def _chosen(self, index: int | None) -> None:
-        self._look(replace(self.sight, station=index) if index is not None else self.sight)
-
-    def action_jump(self) -> None:
-        """Ask for a depth or, in a replay, a time."""
-        hint = f"depth: 612.5 {self.session.units.long}" + (
-            "     time: 12:30 or 90 s" if self.session.mode == "replay" else ""
-        )
-        self.app.push_screen(AskText("Jump to", hint, check=self._moment), self._jumped)
-
-    def _moment(self, text: str) -> tuple[str, float]:
-        """Read where to jump; a live run has no times to go to."""
-        what, value = words.read_moment(text, self.session.units)
-        if what == "time" and self.session.mode == "live":
-            raise ValueError(
-                f"A live run goes by its own clock: give a depth, as 612.5 {self.session.units.long}."
-            )
-        if what == "depth" and isinstance(self.feed, ReplayFeed):
-            return "time", self._time_of(self.feed, value)
-        return what, value
-
-    def _time_of(self, feed: ReplayFeed, depth: float) -> float:
-        """Return when a record next reaches a depth after where it stands, or else first reaches it [s]."""
-        if feed.index is None:
-            raise ValueError("The record is still being read through: a moment, please.")
-        moment = feed.index.time_of_depth(depth, after=self.latest.time + 1.0)
-        moment = feed.index.time_of_depth(depth) if moment is None else moment
-        if moment is None:
-            units = self.session.units
-            raise ValueError(f"The record does not reach {depth / units.long_size:g} {units.long}.")
-        return moment
-
-    def _jumped(self, text: str | None) -> None:
-        if text is None:
-            return
-        _, value = self._moment(text)
-        if isinstance(self.feed, ReplayFeed):
-            self.feed.seek(value)
-            self._look(replace(self.sight, station=None))
-        else:
-            self._look(look.at_depth(self.sight, self.latest, value))
-
-    def action_skip(self, seconds: float) -> None:
-        """Move in a replay."""
-        if isinstance(self.feed, ReplayFeed):
-            self.feed.skip(seconds)
-
-    def action_step(self) -> None:
-        """Take one block of a replay."""
-        if isinstance(self.feed, ReplayFeed):
-            self.feed.step()
-
-    def action_speed(self, factor: float) -> None:
-        """Change the speed of a replay."""
-        if isinstance(self.feed, ReplayFeed):
-            self.feed.faster(factor)
-
-    def action_event(self, way: int) -> None:
-        """Go to the next or previous event of a replay."""
-        if isinstance(self.feed, ReplayFeed) and self.feed.index is not None:
-            times = [one.time for one in self.feed.index.marks if one.what != "station"]
-            now = self.latest.time
-            ahead = (
-                [t for t in times if t > now + 1e-6] if way > 0 else [t for t in times if t < now - 1.0][::-1]
-            )
-            if ahead:
-                self.feed.seek(ahead[0])

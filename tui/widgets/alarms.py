@@ -2,6 +2,8 @@
 
 from collections.abc import Sequence
 
+from textual.message import Message
+
 from eastfall.physics.findings import AlarmView
 from eastfall.tui import words
 from eastfall.tui.raster import Raster
@@ -26,6 +28,13 @@ class AlarmList(CellWidget):
     """The alarms under a title, long ones on several lines; the last line says when there are more."""
 
     alarms: tuple[AlarmView, ...] = ()
+
+    class Clicked(Message):
+        """The list was clicked."""
+
+    def on_click(self) -> None:
+        """Ask for the board."""
+        self.post_message(self.Clicked())
 
     def show(self, alarms: tuple[AlarmView, ...]) -> None:
         """Draw another list."""

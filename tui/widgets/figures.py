@@ -25,6 +25,10 @@ _DOTS = {
     "°": ("##", "##", "..", "..", ".."),
     ":": (".", "#", ".", "#", "."),
     " ": (".", ".", ".", ".", "."),
+    "N": ("#..#", "##.#", "#.##", "#..#", "#..#"),
+    "E": ("###", "#..", "##.", "#..", "###"),
+    "S": ("###", "#..", "###", "..#", "###"),
+    "W": ("#...#", "#...#", "#.#.#", "##.##", "#...#"),
 }
 _BLOCKS = " ▀▄█"
 
@@ -38,6 +42,11 @@ class Figure:
     unit: str
     note: str = ""
     role: Role = Role.STRONG
+
+
+def dots_of(value: str) -> tuple[str, ...]:
+    """Return a number as five rows of dots, # and ., a column of blanks after each sign."""
+    return tuple("".join(_DOTS.get(one, (".",) * 5)[row] + "." for one in value) for row in range(5))
 
 
 def large(value: str) -> tuple[str, str, str]:

@@ -2,6 +2,9 @@
 
 from math import isfinite
 
+from textual.events import Click, MouseEvent, MouseScrollDown, MouseScrollUp
+from textual.message import Message
+
 from eastfall.tui import sight as look
 from eastfall.tui.axes import Axis, label
 from eastfall.tui.raster import Kept, Raster
@@ -11,12 +14,23 @@ from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.widgets.panel import BELOW, GUTTER, Journey, Panel, ProfileView, row_of
 
 LEAST_WIDTH, LEAST_HEIGHT = 26, 6
+_WHEEL = 1.25
+"""How many times as much depth, or as little, a notch of the wheel shows."""
 
 
 class Profile(CellWidget):
     """Depth downward on the left, one panel for east and one for north."""
 
     view: ProfileView | None = None
+    depth: Axis | None = None
+    """Of the newest picture."""
+
+    class Pointed(Message):
+        """The pointer is at a depth [m]: to look at with factor 1, else to zoom about."""
+
+        def __init__(self, depth: float, factor: float, window: tuple[float, float]) -> None:
+            super().__init__()
+            self.depth, self.factor, self.window = depth, factor, window
 
     def __init__(self, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
         super().__init__(id=id)
@@ -26,6 +40,27 @@ class Profile(CellWidget):
         """Draw another view."""
         self.view = view
         self.redraw()
+
+    def on_mouse_scroll_up(self, event: MouseScrollUp) -> None:
+        """Come closer, about the pointer."""
+        self._point(event, 1.0 / _WHEEL)
+
+    def on_mouse_scroll_down(self, event: MouseScrollDown) -> None:
+        """Go back, about the pointer."""
+        self._point(event, _WHEEL)
+
+    def on_click(self, event: Click) -> None:
+        """Ask for what is at this depth."""
+        self._point(event, 1.0)
+
+    def _point(self, event: MouseEvent, factor: float) -> None:
+        if self.depth is None:
+            return
+        event.stop()
+        rows = self.size.height - 1 - BELOW
+        part = min(max((event.y - 1 + 0.5) / max(rows, 1), 0.0), 1.0)
+        low, high = self.depth.low, self.depth.high
+        self.post_message(self.Pointed(low + part * (high - low), factor, (low, high)))
 
     def draw(self, sheet: Raster) -> None:
         """Draw both panels with a common depth axis."""
@@ -38,6 +73,7 @@ class Profile(CellWidget):
         focus = one.depth if one is not None else float("nan")
         top, bottom = look.window(self.view.sight, self.view.whole, focus)
         depth = Axis(low=top, high=bottom, dots=(sheet.height - 1 - BELOW) * sheet.glyphs.down)
+        self.depth = depth
         depth_labels(sheet, depth, focus, self.view.units)
         left = (sheet.width - GUTTER - 1) // 2
         places = ((GUTTER, left), (GUTTER + left + 1, sheet.width - GUTTER - left - 1))

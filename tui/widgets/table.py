@@ -5,11 +5,13 @@ from typing import ClassVar
 
 from rich.segment import Segment
 from textual.binding import Binding, BindingType
+from textual.events import Click
 from textual.geometry import Size
 from textual.message import Message
 from textual.scroll_view import ScrollView
 from textual.strip import Strip
 
+from eastfall.tui.glyphs import BRAILLE, in_ascii
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import role_style
 
@@ -89,7 +91,19 @@ class LongTable(ScrollView, can_focus=True):
         text, role = self._format(row)
         return self._strip(text, Role.CURSOR if row == self.cursor else role, width)
 
+    def on_click(self, event: Click) -> None:
+        """Put the cursor on the row that was clicked; a click on the cursor opens its row."""
+        row = int(self.scroll_offset.y) + event.y - 1
+        if event.y < 1 or row >= self._count:
+            return
+        if row == self.cursor:
+            self.action_open()
+        else:
+            self.action_move(row - self.cursor)
+
     def _strip(self, text: str, role: Role, width: int) -> Strip:
+        if getattr(self.app, "glyphs", BRAILLE).name == "ascii":
+            text = in_ascii(text)
         style = self.rich_style + role_style(self, role)
         return Strip([Segment(text, style)]).adjust_cell_length(width, style)
 

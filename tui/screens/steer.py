@@ -1,0 +1,92 @@
+"""The steering line over the whole screen, with a bell that beats the slower the nearer it is."""
+
+import time
+from collections.abc import Callable
+from typing import TYPE_CHECKING, ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import BindingType
+
+from eastfall.tui import keys, views, words
+from eastfall.tui.roles import Role
+from eastfall.tui.screens.following import FollowingScreen
+from eastfall.tui.steering import steer
+from eastfall.tui.store import Snapshot
+from eastfall.tui.units import METRIC, Units
+from eastfall.tui.widgets.bearing import BearingView
+from eastfall.tui.widgets.line import KeyLine, TextLine
+
+if TYPE_CHECKING:
+    from eastfall.physics.settings import Kind
+
+_TICK = 0.1
+
+
+class SteerScreen(FollowingScreen[None]):
+    """Direction and distance, readable across the collar.
+
+    Parameters
+    ----------
+    snapshot : Snapshot
+        To begin with.
+    kind : {"guided", "hung", "drop"}
+        Of the run.
+    units : Units
+        Of the reader.
+    clock : callable
+        Monotonic seconds, for the beat.
+    """
+
+    PLACES = ("page",)
+    BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("page")]
+
+    def __init__(
+        self,
+        snapshot: Snapshot,
+        kind: "Kind",
+        units: Units = METRIC,
+        clock: Callable[[], float] = time.monotonic,
+    ) -> None:
+        super().__init__()
+        self._snapshot, self._kind, self._units, self._clock = snapshot, kind, units, clock
+        self._rung = float("-inf")
+
+    def compose(self) -> ComposeResult:
+        """Show the answer over the large figures."""
+        yield TextLine(id="answer")
+        yield BearingView(id="bearing")
+        yield TextLine(id="alarm")
+        yield KeyLine(id="steer-keys")
+
+    def on_mount(self) -> None:
+        """Begin to beat."""
+        self.query_one(BearingView).aspect = getattr(self.app, "cell_aspect", 2.0)
+        self.show(self._snapshot)
+        changes = getattr(self.app, "key_changes", None)
+        self.query_one(KeyLine).show(("m", "sound"), *keys.line(("page",), replay=False, changes=changes))
+        self.set_interval(_TICK, self.beat)
+
+    def show(self, snapshot: Snapshot) -> None:
+        """Show a newer snapshot."""
+        self._snapshot = snapshot
+        one = snapshot.standing
+        under = views.answer_ground(one)
+        ink = Role.STRONG if under is None else Role.ON_GROUND
+        self.query_one("#answer", TextLine).show((words.answer(one, self._units), ink), under=under)
+        self.query_one(BearingView).show(steer(one, self._kind, self._units))
+        pieces, ground = views.alarm_line(snapshot)
+        self.query_one("#alarm", TextLine).show(*pieces, under=ground)
+
+    def beat(self) -> None:
+        """Ring when the time for it has come, unless muted or the picture is of the past."""
+        pause = steer(self._snapshot.standing, self._kind, self._units).beat
+        now = self._clock()
+        if pause is None or now - self._rung < pause or getattr(self.app, "muted", True):
+            return
+        if self._snapshot.playing and not self._snapshot.ended:
+            self._rung = now
+            self.app.bell()
+
+    def action_close(self) -> None:
+        """Go back."""
+        self.dismiss(None)
