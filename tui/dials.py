@@ -4,6 +4,7 @@ Names, ranges and units are those of the site file's keys; `inputs` changes them
 """
 
 from dataclasses import dataclass
+from functools import cache
 from math import degrees
 from typing import Any
 
@@ -14,6 +15,14 @@ LINE_SPEED = "line speed"
 FLOW_SPEED, FLOW_TOWARD = "cross-flow speed", "cross-flow toward"
 LEVEL = "level"
 """Inputs that are no single key: speed of probe or line, the air across all of the shaft, the depth looked at."""
+
+
+@cache
+def _key(path: str) -> sitekeys.Key:
+    """Return what the site file says of a key; it is gathered from annotations, which is slow."""
+    found = sitekeys.key(path)
+    assert found is not None, path  # noqa: S101 (a misspelt table of dials)
+    return found
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -43,9 +52,7 @@ class Dial:
     @property
     def key(self) -> sitekeys.Key:
         """What the site file says of it."""
-        found = sitekeys.key(self.like or self.path)
-        assert found is not None, self.path  # noqa: S101 (a misspelt table of dials)
-        return found
+        return _key(self.like or self.path)
 
     @property
     def help(self) -> str:

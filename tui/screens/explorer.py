@@ -46,6 +46,7 @@ class ExplorerScreen(InputScreen):
         self.what: outlook.What = "expected"
         self.extras = True
         self.depths: tuple[float, ...] = ()
+        self._painted: tuple[object, ...] = ()
 
     def compose(self) -> ComposeResult:
         """Put the parts together."""
@@ -87,10 +88,17 @@ class ExplorerScreen(InputScreen):
             )
             return
         self._paint_lines(self.one)
+        fresh = (self.one, self.other, self.extras, self.what, self.shown_depths(), self.inputs.units)
+        if fresh != self._painted:
+            self._painted = fresh
+            self._paint_curves(self.one)
+
+    def _paint_curves(self, one: Prospect) -> None:
+        """Draw curves and numbers; moving the cursor changes neither."""
         self.query_one(Curves).show(
-            Prospects(one=self.one, other=self.other, extras=self.extras, units=self.inputs.units)
+            Prospects(one=one, other=self.other, extras=self.extras, units=self.inputs.units)
         )
-        lines = outlook.table(self.one, self.other, self.what, self.shown_depths(), self.inputs.units)
+        lines = outlook.table(one, self.other, self.what, self.shown_depths(), self.inputs.units)
         if self._others_inputs is not None:
             lines.append(self._others_inputs.against(self.inputs, CONDITIONS))
         numbers = self.query_one("#numbers", Lines)

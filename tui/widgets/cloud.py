@@ -35,9 +35,12 @@ class Cloud(CellWidget):
     def __init__(self, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
         super().__init__(id=id)
         self.kept = Kept()
+        self.shown_units = METRIC
 
     def show(self, drop: Drop, scope: Scope, units: Units = METRIC) -> None:
         """Draw another drop."""
+        if drop is self.drop and (scope, units) == (self.scope, self.shown_units):
+            return
         self.drop, self.scope, self.shown_units = drop, scope, units
         self.redraw()
 
