@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from eastfall.physics.hung import stretch
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions, Depth
+from eastfall.physics.steps import steps
 
 Array = NDArray[np.float64]
 
@@ -184,8 +185,8 @@ def _plain(track: _Track | None, depth: Array) -> bool:
     """Whether every step is too small to be called a jump."""
     if track is not None and not abs(depth[0] - track.depth) <= SLACK:
         return False
-    steps = np.diff(depth)
-    return not steps.size or bool(steps.max() <= SLACK and steps.min() >= -SLACK)
+    found = steps(depth)
+    return not found.size or bool(found.max() <= SLACK and found.min() >= -SLACK)
 
 
 def _advanced(track: _Track | None, time: Array, depth: Array) -> _Track:

@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from eastfall.physics.alarms import BETWEEN, BEYOND, INSIDE
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import AlarmName, Instrument, Limits
+from eastfall.physics.steps import steps, steps_from
 
 Array = NDArray[np.float64]
 Flags = NDArray[np.bool_]
@@ -120,11 +121,12 @@ class Guards:
 
     def _slow(self, readings: Readings, found: list[Sighting]) -> None:
         """Look at the slow channels of the first row in each cell of time."""
-        cell = np.floor(readings.time / _CELL)
-        opens = np.flatnonzero(np.diff(cell, prepend=self._cell) != 0.0)
+        time = readings.time
+        if np.floor(time[0] / _CELL) == self._cell == np.floor(time[-1] / _CELL):
+            return  # time does not fall
+        cell = np.floor(time / _CELL)
+        opens = np.flatnonzero(steps_from(self._cell, cell) != 0.0)
         self._cell = float(cell[-1])
-        if not opens.size:
-            return
         rows = readings[opens]
         azimuth = rows.column("azimuth")
         if not np.isnan(azimuth).all() or not np.isnan(self._azimuth[0]):
@@ -176,13 +178,14 @@ class _Frozen:
         """Return which rows are frozen; None where none is."""
         data = np.concatenate([self._last, readings.data[2:5]], axis=1)
         self._last = data[:, -2:].copy()
-        step = np.diff(data[1] + data[2])
+        step = steps(data[1] + data[2])
         same = (data[1, 2:] == data[1, 1:-1]) & (data[2, 2:] == data[2, 1:-1])
         moving = data[0, 2:] != data[0, 1:-1]
         calm = moving & ~(step[1:] * step[:-1] < 0.0)
         changes = np.flatnonzero(~same)
         first = int(changes[0]) if changes.size else same.size
-        longest = max(self._in_run + first, int(np.diff(changes, append=same.size).max(initial=0)))
+        # No run is longer than this; most blocks of a live feed need no closer look.
+        longest = max(self._in_run + first, same.size - changes.size + 1)
         frozen = self._runs(readings, changes, same, moving, calm) if longest >= _FEWEST else None
         self._note(readings, changes, moving, calm)
         return frozen

@@ -6,6 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.robust import RobustMean, huber_mean
+from eastfall.physics.steps import steps_from
 
 Array = NDArray[np.float64]
 
@@ -83,7 +84,7 @@ class HaltFinder:
     def _starts(self, rows: Array) -> NDArray[np.intp]:
         """Return the rows from which a halt may begin: the first of each cell of time without movement."""
         cell = np.floor(rows[0] * (_CELLS / self._hold))
-        opens = np.flatnonzero(np.diff(cell, prepend=self._cell) != 0.0)
+        opens = np.flatnonzero(steps_from(self._cell, cell) != 0.0)
         self._cell = float(cell[-1])
         if not opens.size:
             return opens

@@ -11,6 +11,7 @@ import numpy.typing as npt
 from eastfall.physics.binning import Bins, TimeBins
 from eastfall.physics.earth import EARTH_ROTATION
 from eastfall.physics.errors import ParameterError
+from eastfall.physics.steps import steps_from
 
 Array = npt.NDArray[np.float64]
 
@@ -124,7 +125,7 @@ class LineSpeed:
         return out[0], out[1]
 
     def _update(self, time: Array, depth: Array, out: Array) -> None:
-        steps = _steps(self._latest, time)
+        steps = steps_from(self._latest, time)
         if steps.min() >= 0.0 and np.isfinite(depth).all() and time[-1] < np.inf:
             self._rows(time, depth, steps, out)
             return
@@ -133,7 +134,7 @@ class LineSpeed:
         good &= time >= np.maximum(highest, self._latest)
         if good.any():
             kept = np.empty((2, np.count_nonzero(good)))
-            self._rows(time[good], depth[good], _steps(self._latest, time[good]), kept)
+            self._rows(time[good], depth[good], steps_from(self._latest, time[good]), kept)
             out[:, good] = kept
 
     def _rows(self, time: Array, depth: Array, steps: Array, out: Array) -> None:
@@ -180,14 +181,6 @@ class LineSpeed:
         self._knots = knots[:, -_MEMORY:].copy()
         self._fit = fits[:, -1:].copy()
         return fits
-
-
-def _steps(before: float, values: Array) -> Array:
-    """Difference of each value from the one before it."""
-    steps = np.empty(values.size)
-    steps[0] = values[0] - before
-    np.subtract(values[1:], values[:-1], out=steps[1:])
-    return steps
 
 
 def _parabolas(knots: Array, wanted: int) -> Array:

@@ -24,6 +24,7 @@ from eastfall.physics.kinds.hung import Hung
 from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import CHANNELS, Readings
 from eastfall.physics.settings import Assumptions
+from eastfall.physics.steps import steps, steps_from
 from eastfall.physics.verdict import horizontal, verdict
 
 __all__ = ["ACTION", "BAD_LINES", "JUMP", "SILENT", "WALL", "WARNING", "Survey", "closure"]
@@ -143,10 +144,12 @@ class Survey:
 
     def _on_one_clock(self, readings: Readings) -> Readings:
         """Let time never fall."""
-        time = readings.time
+        time, newest = readings.time, self._board.newest[0]
+        if time[0] >= newest and (time[1:] >= time[:-1]).all():
+            return readings
         if np.isnan(time).all():
             return readings
-        held = np.fmax(np.fmax.accumulate(time), self._board.newest[0])
+        held = np.fmax(np.fmax.accumulate(time), newest)
         if np.array_equal(held, time):
             return readings
         data = readings.data.copy()
@@ -155,15 +158,17 @@ class Survey:
 
     def _silences(self, readings: Readings) -> list[AlarmChange]:
         """Raise and return the silent-feed alarm for every gap before and inside a block."""
+        limit = self.assumptions.limits.feed_silent
+        if not self._feed_watched or steps_from(self._board.newest[1], readings.host_time).max() <= limit:
+            return []
         rows = np.concatenate([self._board.newest[:, None], readings.data[:3]], axis=1)
-        if not self._feed_watched or not np.isfinite(rows[1, 1:]).all():
+        if not np.isfinite(rows[1, 1:]).all():
             return []
         if np.isnan(rows[1, 0]):
             # Before the first reading the feed is reckoned from the start of the run, on the host's clock alone.
             rows[:2, 0] = 0.0
-        limit = self.assumptions.limits.feed_silent
         changes: list[AlarmChange] = []
-        for gap in np.flatnonzero(np.diff(rows[1]) > limit).tolist():
+        for gap in np.flatnonzero(steps(rows[1]) > limit).tolist():
             for row, host, on in (
                 (rows[:, gap], rows[1, gap] + limit, True),
                 (rows[:, gap + 1], rows[1, gap + 1], False),

@@ -4,6 +4,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.readings import Readings
+from eastfall.physics.steps import steps_from
 
 Array = NDArray[np.float64]
 
@@ -36,7 +37,7 @@ class Gaps:
         before = self._last or (float(depth[0]), float(time[0]))
         if not self._rows:
             self._began = float(time[0])
-        far = np.abs(np.diff(depth, prepend=before[0])) > _BRIDGED
+        far = np.abs(steps_from(before[0], depth)) > _BRIDGED
         ends: list[int] = []
         if far.any():
             missing = self._pauses(time, before[1])
@@ -51,7 +52,7 @@ class Gaps:
     def _pauses(self, time: Array, before: float) -> NDArray[np.bool_]:
         """Return before which rows the feed paused for ten times its mean interval."""
         mean = (time - self._began) / (self._rows + np.arange(1.0, time.size + 1.0))
-        pauses: NDArray[np.bool_] = np.diff(time, prepend=before) > np.maximum(self._silent, 10.0 * mean)
+        pauses: NDArray[np.bool_] = steps_from(before, time) > np.maximum(self._silent, 10.0 * mean)
         return pauses
 
     def jump(self, depth: float) -> None:

@@ -116,10 +116,11 @@ class Guided:
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
         rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
         timed = not np.isnan(readings.time).any()
-        rests = self._halts.feed(np.stack([readings.time, depth, *slopes])) if timed else []
+        rests = self._halts.feed(np.array([readings.time, depth, *slopes])) if timed else []
         ridden, leaning = self._plumb.ride(depth, rows[ROW["speed"]], lag)
         self._gather(readings, slopes, leaning, azimuth, rests)
-        bend = np.nan_to_num(rows[ROW["speed"]]) ** 2 / self._curve.models.field.gravity
+        speed = rows[ROW["speed"]]
+        bend = np.where(np.isnan(speed), 0.0, speed) ** 2 / self._curve.models.field.gravity
         if self._still is None:
             at, summed = self._moving(readings, rows, slopes, ridden, azimuth, bend)
         else:
@@ -135,7 +136,7 @@ class Guided:
         self._last[1], self._depth = at[-1], float(depth[-1])
         self._slope = self._last[7:9]
         found = Rows(rows)
-        judged = np.stack([found.residual_east, found.residual_north])
+        judged = rows[5:7] - rows[7:9]
         return Batch(rows=found, judged=judged, stations=self._stations(due))
 
     def _moving(

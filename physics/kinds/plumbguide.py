@@ -7,6 +7,7 @@ from eastfall.physics.depth import Jump
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.moving import LineSpeed, lean
 from eastfall.physics.readings import Readings
+from eastfall.physics.steps import steps_from
 
 Array = NDArray[np.float64]
 
@@ -50,7 +51,7 @@ class PlumbGuide:
         if unknown.any():
             self.without_clock = True
             before = readings.depth[0] if self._ridden_to is None else self._ridden_to
-            steps = np.sign(np.diff(readings.depth, prepend=before))
+            steps = np.sign(steps_from(before, readings.depth))
             speed = np.where(unknown, steps * abs(self._curve.assumptions.guide.line_speed), speed)
         return speed, acceleration
 
@@ -61,16 +62,20 @@ class PlumbGuide:
         second of a run) steps are kept waiting for the first speed that is, and ε is NaN.
         """
         site, gravity = self._curve.assumptions.site, self._curve.models.field.gravity
-        felt = gravity - np.clip(np.nan_to_num(acceleration), -0.5 * gravity, 0.5 * gravity)
+        most = 0.5 * gravity
+        felt = gravity - np.maximum(
+            np.minimum(np.where(np.isnan(acceleration), 0.0, acceleration), most), -most
+        )
         angle = lean(speed, site.latitude, felt)
         known = np.isfinite(speed)
-        before = self._ridden_to if self._ridden_to is not None else depth[0]
+        before = float(self._ridden_to if self._ridden_to is not None else depth[0])
         terms = np.zeros(depth.size + 1)
         terms[0] = self._ridden
-        terms[1:][known] = angle[known] * np.diff(depth[known], prepend=before)
+        travelled, turned = (depth, angle) if known.all() else (depth[known], angle[known])
+        terms[1:][known] = turned * steps_from(before, travelled)
         ridden = np.cumsum(terms)[1:]
         self._ridden = float(ridden[-1])
-        self._ridden_to = float(depth[known][-1]) if known.any() else float(before)
+        self._ridden_to = float(travelled[-1]) if travelled.size else before
         return ridden, angle
 
     def jump(self, jump: Jump) -> None:

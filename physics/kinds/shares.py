@@ -90,8 +90,9 @@ class Shares:
 
         Notes
         -----
-        A probe that follows a bend of the guide at speed is pulled sideways by v² P'', which it shows as a tilt: the
-        sum gains v²/g times what the slope has changed since the start. It is left in, and counted as uncertainty.
+        A probe that follows a guide of slope P' at speed v is pulled sideways by v² P'' + a P', which it shows as a
+        tilt. Since a dz = ½ d(v²), the sum gains (v² P' - ½ v² P'(0))/g once the line has got up to speed. It is left
+        in, and counted as uncertainty.
         """
         instrument = self._instrument
         parts = np.empty((len(self.names), 2, summed.weight.size))
@@ -102,9 +103,8 @@ class Shares:
         parts[2] = instrument.u_scale * east, instrument.u_scale * north
         parts[3] = instrument.u_azimuth * north, instrument.u_azimuth * east
         parts[4] = instrument.u_depth_fraction * east, instrument.u_depth_fraction * north
-        if self._first is None and summed.weight.size:
-            self._first = summed.slope[:, :1].copy()
-        parts[5] = summed.bend * np.abs(summed.slope - self._first)
+        first = self._first = summed.slope[:, :1].copy() if self._first is None else self._first
+        parts[5] = summed.bend * np.abs(summed.slope - 0.5 * first)
         if self._u_counter:
             parts[6] = self._u_counter * np.abs(summed.slope)
         for row, one in enumerate(reversed(self._added.values()), start=1):

@@ -25,7 +25,7 @@ def test_a_quarter_turn_is_neither_face():
 
 @pytest.mark.independent
 def test_sums_are_those_of_means_weighted_by_path():
-    """A made-up tilt in two faces, bins of 10 m: face sums are those of numpy's averages, the zero is half their mean."""
+    """A made-up tilt in two faces: face sums are those of numpy's averages, the zero is half their mean."""
     rng = np.random.default_rng(1)
     depth = np.sort(rng.uniform(0.0, 100.0, 4000))
     weight = rng.uniform(0.1, 0.3, depth.size)
