@@ -65,11 +65,12 @@ def stand_in(*arguments: str) -> list[str]:
 
 
 @asynccontextmanager
-async def serving(*, most: int = 4, viewer: list[str] | None = None) -> AsyncIterator[str]:
+async def serving(*, most: int = 4, viewer: list[str] | None = None, name: str = "") -> AsyncIterator[str]:
     """Serve in this process; give `host:port`."""
     listener = listen(LOOPBACK, 0)
     names = own_names(LOOPBACK, listener.getsockname()[1])
-    server = ShareServer(viewer or stand_in(), listener, names=names, title="Brackwater North", most=most)
+    known = [*names, name] if name else names
+    server = ShareServer(viewer or stand_in(), listener, names=known, title="Brackwater North", most=most)
     ready = asyncio.Event()
     task = asyncio.create_task(server.run(ready.set))
     await asyncio.wait([task, waiting := asyncio.create_task(ready.wait())], return_when="FIRST_COMPLETED")
@@ -181,6 +182,15 @@ async def test_both_names_of_this_machine_give_a_picture(client: Any) -> None:
         for name in (at, f"localhost:{at.split(':')[1]}"):
             async with connect(client, at, Host=name, Origin=f"http://{name}") as view:
                 assert (await view.receive_bytes(timeout=PATIENCE)).startswith(b"picture")
+
+
+async def test_name_at_the_other_end_of_a_tunnel_is_let_in_once_told(client: Any) -> None:
+    """A tunnel that begins at another port shows in Host and Origin: 403 until that name was given, then a picture."""
+    far = {"Host": "localhost:9000", "Origin": "http://localhost:9000"}
+    async with serving() as at:
+        assert await refusal(client, at, **far) == 403
+    async with serving(name="localhost:9000") as at, connect(client, at, **far) as view:
+        assert (await view.receive_bytes(timeout=PATIENCE)).startswith(b"picture")
 
 
 async def test_number_of_views_is_bounded(client: Any) -> None:

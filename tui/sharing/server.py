@@ -94,6 +94,8 @@ class ShareServer(Server):
         Of the page.
     most : int
         Views at a time.
+    theme : {"dark", "light"}
+        Of what shows beside the picture.
     """
 
     def __init__(
@@ -104,6 +106,7 @@ class ShareServer(Server):
         names: Sequence[str],
         title: str,
         most: int = MOST_VIEWERS,
+        theme: str = "dark",
     ) -> None:
         super().__init__(
             "", title=title, public_url=f"http://{names[0]}", templates_path=Path(__file__).parent
@@ -112,6 +115,7 @@ class ShareServer(Server):
         self._listener = listener
         self._names = frozenset(name.lower() for name in names)
         self._most = most
+        self._theme = theme
         self._taken = 0
         self._views: set[web.WebSocketResponse] = set()
 
@@ -170,6 +174,7 @@ class ShareServer(Server):
             "websocket": f"ws://{request.host}/ws",
             "title": self.title,
             "most": self._most,
+            "theme": self._theme,
         }
 
     async def handle_websocket(self, request: web.Request) -> web.WebSocketResponse:

@@ -12,17 +12,18 @@ from pathlib import Path
 
 import click
 from textual import events
+from textual.app import ComposeResult
 
 from eastfall.io.replay import Replay
 from eastfall.physics.errors import EastfallError
 from eastfall.tui.app import Dashboard, replay_session, since_start
 from eastfall.tui.feed import ReplayFeed
+from eastfall.tui.roles import Role
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session
 from eastfall.tui.terminal import glyphs_for, wants_no_colour
 from eastfall.tui.themes import THEMES
-from eastfall.tui.views import Subject
-from eastfall.tui.widgets.line import KeyLine
+from eastfall.tui.widgets.line import KeyLine, TextLine
 
 THEME_NAMES = {one.name.removeprefix("eastfall-"): one.name for one in THEMES}
 """What a person calls a set of colours, and what the application does."""
@@ -32,9 +33,16 @@ _PERIOD = 0.5  # s between looks for the parent
 class ViewScreen(WatchScreen, inherit_bindings=False):
     """The watch screen without a key."""
 
-    def _paint_lines(self, one: Subject) -> None:
-        super()._paint_lines(one)
-        self.query_one(KeyLine).show(("view only", "keys work where the run is recorded"))
+    def compose(self) -> ComposeResult:
+        """Put a line that says so in place of the keys."""
+        yield from super().compose()
+        yield TextLine(id="view-only")
+
+    def on_mount(self) -> None:
+        """Write the line."""
+        self.query_one(KeyLine).display = False
+        said = ("view only ", Role.STRONG), ("keys work where the run is recorded", Role.DIM)
+        self.query_one("#view-only", TextLine).show(*said)
 
 
 class ViewFeed(ReplayFeed):
@@ -56,7 +64,7 @@ class Viewer(Dashboard, inherit_bindings=False):
     """
 
     # Textual looks for it beside the module of the class.
-    CSS_PATH = Path(__file__).parents[1] / "app.tcss"
+    CSS_PATH = str(Path(__file__).parents[1] / "app.tcss")
 
     def __init__(self, session: Session, *, theme: str = THEMES[0].name) -> None:
         # Whose terminal this is started from says nothing of the browser: only what the user set counts.

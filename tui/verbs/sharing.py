@@ -69,6 +69,7 @@ def share(
             names=[*names, *known] if address.is_unspecified else [*known, *names],
             title=f"{site} (view only)",
             most=viewers,
+            theme=theme,
         )
     )
 
