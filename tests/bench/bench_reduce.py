@@ -44,13 +44,18 @@ def cost(words: Sequence[str], around: dict[str, str]) -> float:
     process = subprocess.Popen(
         [sys.executable, *words],
         stdout=subprocess.DEVNULL,
-        stderr=subprocess.DEVNULL,
+        stderr=subprocess.PIPE,
         start_new_session=True,
         env=around,
+        text=True,
     )
+    assert process.stderr is not None
+    with process.stderr as errors:
+        said = errors.read()
     _, status, usage = os.wait4(process.pid, 0)
     process.returncode = os.waitstatus_to_exitcode(status)
-    assert process.returncode in {0, 1}, (words, process.returncode)
+    assert process.returncode in {0, 1}, (words, said)  # 1: a limit is exceeded
+    assert "Traceback" not in said, said
     return usage.ru_utime + usage.ru_stime
 
 
