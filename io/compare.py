@@ -115,17 +115,27 @@ def compare_runs(first: Reduction, second: Reduction) -> Comparison:
 def compare_passes(run: Reduction, first: int = 0, second: int = 1) -> Comparison:
     """Compare two passes of one run; parameters count passes from 0, returns and raises as `compare_runs`."""
     stations = run.result.stations
-    sides = [[one for one in stations if one.passing == number] for number in (first, second)]
-    rows, left_out = _between(*sides)
-    if not rows:
+    found = between_passes(stations, first, second, _named(run))
+    if found is None:
         passes = sorted({one.passing + 1 for one in stations})
         raise InputError(
             f"{run.path}: passes {first + 1} and {second + 1} have no depth in common; it has {passes}"
         )
+    return found
+
+
+def between_passes(
+    stations: Sequence[Station], first: int, second: int, name: str = "this run"
+) -> Comparison | None:
+    """Compare two passes of the stations of one run; passes count from 0, None without a depth in common."""
+    sides = [[one for one in stations if one.passing == number] for number in (first, second)]
+    rows, left_out = _between(*sides)
+    if not rows:
+        return None
     notes = ("both passes share the instrument's zero and scale: what is common to both does not show here",)
     return Comparison(
-        first=f"{_named(run)}, pass {first + 1}",
-        second=f"{_named(run)}, pass {second + 1}",
+        first=f"{name}, pass {first + 1}",
+        second=f"{name}, pass {second + 1}",
         rows=rows,
         left_out=left_out,
         notes=notes,

@@ -436,7 +436,14 @@ def run_start(
         # Read anew each time round: what was done in between may have changed the settings.
         look = terminal_look() | ({"theme": theme} if theme else {})
         used = [Path(one) for one in settings_of(look).now.recent_sites]
-        screen = StartScreen(folder or Path.cwd(), log_suffix=SUFFIX, ports=ports or port_names, used=used)
+        kept = settings_of(look).now.runs_folder
+        screen = StartScreen(
+            folder or Path.cwd(),
+            log_suffix=SUFFIX,
+            ports=ports or port_names,
+            used=used,
+            shelves=[Path(kept).expanduser()] if kept else [],
+        )
         app = Dashboard(screen, **look)  # type: ignore[arg-type]  # as in watch_app
         app.run()
         if app.choice is None:

@@ -11,6 +11,7 @@ from textual.screen import Screen
 from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.widgets.table import fit_bar
 
 READING = """How to read the picture
 
@@ -30,6 +31,13 @@ Depth picture, east-west on the left and north-south on the right
   broken    warning limit
   unbroken  action limit
   b, d      where a plumb bob would hang, where a dropped body would be
+
+Swing of a hung line: the rest point, the swings still needed, and its period
+against that of a free line, which goes with the root of its length; a line
+that swings faster touches something.
+
+Steering (key d): bell fast: over or undecided; slower: past warning; slow:
+off by more than the uncertainty; silent: leave it.
 
 Plan, north up
   rings     warning limit inside, action limit outside, about the expected
@@ -58,6 +66,10 @@ class HelpScreen(Screen[None]):
             yield plain("Keys   (escape goes back, arrows scroll)\n\n" + self._table)
             yield plain("\n" + READING)
             yield plain("\nCautions\n\n" + "\n".join(CAUTIONS))
+
+    def on_mount(self) -> None:
+        """Fit the scroll bar to the terminal."""
+        fit_bar(self.query_one(VerticalScroll))
 
     def action_close(self) -> None:
         """Go back."""

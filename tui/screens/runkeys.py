@@ -130,7 +130,18 @@ class RunScreen(PaintedScreen[Choice | None]):
     def action_steer(self) -> None:
         """Open the steering line in large figures."""
         kind = self.session.assumptions.run.kind
-        self.app.push_screen(SteerScreen(self.latest, kind, self.session.units))
+        self.app.push_screen(SteerScreen(self.latest, kind, self.session.units, seen=self.action_acknowledge))
+
+    def action_passes(self) -> None:
+        """Compare the passes of this run, as far as it went."""
+        from eastfall.tui import differences  # noqa: PLC0415 (only where asked for)
+        from eastfall.tui.screens.compare import CompareScreen  # noqa: PLC0415
+
+        found = differences.passes(self.latest.stations)
+        if found:
+            self.app.push_screen(CompareScreen(found, self.session.units))
+        else:
+            self.app.notify("No two passes have a depth in common yet.", markup=False, timeout=4)
 
     def action_stations(self) -> None:
         """Open the table of stations."""

@@ -17,6 +17,7 @@ from eastfall.io.cautions import CAUTIONS
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.units import METRIC
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine
 from eastfall.tui.words import size
@@ -76,16 +77,24 @@ class StartScreen(PaintedScreen[Choice | None]):
         Names the serial ports of this machine, one line each.
     used : sequence of Path
         Site files used lately, the newest first.
+    shelves : sequence of Path
+        Folders of runs besides those here.
     """
 
     PLACES = ("start",)
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("start"))
 
     def __init__(
-        self, folder: Path, *, log_suffix: str, ports: Ports | None = None, used: Sequence[Path] = ()
+        self,
+        folder: Path,
+        *,
+        log_suffix: str,
+        ports: Ports | None = None,
+        used: Sequence[Path] = (),
+        shelves: Sequence[Path] = (),
     ) -> None:
         super().__init__()
-        self._used = used
+        self._used, self._shelves = used, shelves
         self._folder, self._suffix, self._ports = folder, log_suffix, ports
         self._choices: dict[str, Choice] = {}
 
@@ -134,6 +143,9 @@ class StartScreen(PaintedScreen[Choice | None]):
             )
             for path in logs
         ]
+        options.append(
+            Option(Text("  the shelf: all runs, verdicts; compare two, write reports"), id="shelf")
+        )
         options.append(_head("Expect: change latitude, depth, body, wire, air; see the curves move"))
         options += [
             self._option(f"explore {path}", f"explore {self._shown(path)}", Choice(what="explore", path=path))
@@ -167,10 +179,25 @@ class StartScreen(PaintedScreen[Choice | None]):
         if event.option_id == "ports":
             event.option_list.replace_option_prompt("ports", Text("  looking ..."))
             self._look_for_ports()
+        elif event.option_id == "shelf":
+            self._open_shelf()
         elif event.option_id in {"new", "edit", "trial"}:
             self._to_desk(event.option_id)
         elif event.option_id in self._choices:
             self.dismiss(self._choices[event.option_id])
+
+    def _open_shelf(self) -> None:
+        """Open the list of all runs of this folder, the folders right below it, and where runs are recorded."""
+        from eastfall.tui.screens.shelf import ShelfScreen  # noqa: PLC0415 (the engine only where it runs)
+        from eastfall.tui.shelf import folders  # noqa: PLC0415
+
+        below = sorted(one for one in self._folder.glob("*") if one.is_dir() and one.name[0] != ".")
+        where = folders(self._folder, *below, *self._shelves)
+        self.app.push_screen(ShelfScreen(where, getattr(self.app, "units", METRIC)), self._taken)
+
+    def _taken(self, log: Path | None) -> None:
+        if log is not None:
+            self.dismiss(Choice(what="replay", path=log))
 
     def _to_desk(self, what: str) -> None:
         """Open the site form or the port trial."""

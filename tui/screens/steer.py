@@ -5,7 +5,7 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import BindingType
+from textual.binding import Binding, BindingType
 
 from eastfall.tui import keys, views, words
 from eastfall.tui.roles import Role
@@ -35,10 +35,12 @@ class SteerScreen(FollowingScreen[None]):
         Of the reader.
     clock : callable
         Monotonic seconds, for the beat.
+    seen : callable, optional
+        Acknowledges the alarm that is shown.
     """
 
     PLACES = ("page",)
-    BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("page")]
+    BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("page"), Binding("a", "seen", show=False)]
 
     def __init__(
         self,
@@ -46,8 +48,10 @@ class SteerScreen(FollowingScreen[None]):
         kind: "Kind",
         units: Units = METRIC,
         clock: Callable[[], float] = time.monotonic,
+        seen: Callable[[], None] | None = None,
     ) -> None:
         super().__init__()
+        self._seen = seen
         self._snapshot, self._kind, self._units, self._clock = snapshot, kind, units, clock
         self._rung = float("-inf")
 
@@ -86,6 +90,11 @@ class SteerScreen(FollowingScreen[None]):
         if self._snapshot.playing and not self._snapshot.ended:
             self._rung = now
             self.app.bell()
+
+    def action_seen(self) -> None:
+        """Acknowledge the alarm that is shown."""
+        if self._seen is not None:
+            self._seen()
 
     def action_close(self) -> None:
         """Go back."""

@@ -107,7 +107,7 @@ class BearingView(CellWidget):
 
     def _figures(self, sheet: Raster, column: int, room: int, role: Role) -> None:
         told, width = self.steer, sheet.width - column
-        sheet.text(column, 0, f"{told.verdict}   {told.unit}", role)
+        sheet.text(column, 0, f"{told.verdict}   {told.distance} {told.unit}", role)
         way = f"{told.wind} {told.bearing}".strip()
         plain = sheet.glyphs.name == "ascii"
         lower = fitting(way, width, (room - 2) * 2 // 5, int(plain)) if way else []

@@ -9,7 +9,9 @@ from textual.events import Click
 from textual.geometry import Size
 from textual.message import Message
 from textual.scroll_view import ScrollView
+from textual.scrollbar import ScrollBarRender
 from textual.strip import Strip
+from textual.widget import Widget
 
 from eastfall.tui.glyphs import BRAILLE, in_ascii
 from eastfall.tui.roles import Role
@@ -17,6 +19,18 @@ from eastfall.tui.widgets.cells import role_style
 
 Formatter = Callable[[int], tuple[str, Role]]
 """From a row's number to its text and how it is drawn."""
+
+
+class PlainBar(ScrollBarRender):
+    """A scroll bar without parts of letters, for terminals that have none."""
+
+    VERTICAL_BARS: ClassVar[list[str]] = [" "] * 8
+
+
+def fit_bar(widget: Widget) -> None:
+    """Give a widget's scroll bar the letters that the terminal has."""
+    if getattr(widget.app, "glyphs", BRAILLE).name == "ascii":
+        widget.vertical_scrollbar.renderer = PlainBar
 
 
 class LongTable(ScrollView, can_focus=True):
@@ -49,6 +63,10 @@ class LongTable(ScrollView, can_focus=True):
         self._format: Formatter = lambda _: ("", Role.TEXT)
         self.cursor = 0
         self.follows = True
+
+    def on_mount(self) -> None:
+        """Fit the scroll bar to the terminal."""
+        fit_bar(self)
 
     def show(self, count: int, formatter: Formatter) -> None:
         """Show `count` rows; the cursor stays on the last one until it is moved off."""

@@ -1,0 +1,106 @@
+"""Two surveys of one shaft held against each other: the outcome, the plot by depth, the table with uncertainties."""
+
+from typing import ClassVar
+
+from textual.app import ComposeResult
+from textual.binding import BindingType
+from textual.containers import Horizontal
+
+from eastfall.io.compare import Comparison
+from eastfall.io.safetext import safe
+from eastfall.tui import differences, keys
+from eastfall.tui.roles import Role
+from eastfall.tui.units import METRIC, Units
+from eastfall.tui.widgets.cells import PaintedScreen
+from eastfall.tui.widgets.line import KeyLine, TextLine
+from eastfall.tui.widgets.shift import Shift
+from eastfall.tui.widgets.table import LongTable
+
+
+class CompareScreen(PaintedScreen[None]):
+    """One comparison of several.
+
+    Parameters
+    ----------
+    comparisons : tuple of Comparison
+        One at least; the arrows go from one to the next.
+    units : Units
+        Of the reader.
+    """
+
+    PLACES = ("compare", "page")
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page", "compare"))
+    HORIZONTAL_BREAKPOINTS = [(0, "-small"), (110, "-normal")]  # noqa: RUF012
+
+    def __init__(self, comparisons: tuple[Comparison, ...], units: Units = METRIC) -> None:
+        super().__init__()
+        self._all, self._units = comparisons, units
+        self._at = 0
+        self._order = differences.ORDERS[0]
+        self._only_moved = False
+
+    def compose(self) -> ComposeResult:
+        """Put the parts together."""
+        for name in ("compared", "outcome", "remarks"):
+            yield TextLine(id=name)
+        with Horizontal(id="shown"):
+            yield Shift(id="shift")
+            yield LongTable(differences.head(self._units), id="differences")
+        yield KeyLine(id="compare-keys")
+
+    def on_mount(self) -> None:
+        """Show the first."""
+        table = self.query_one(LongTable)
+        table.follows = False
+        table.focus()
+        changes = getattr(self.app, "key_changes", None)
+        pairs = keys.line(("compare", "page"), replay=False, changes=changes)
+        self.query_one(KeyLine).show(*pairs)
+        self.paint()
+
+    def paint(self) -> None:
+        """Show the comparison in view."""
+        one = self._all[self._at]
+        which = f"{self._at + 1} of {len(self._all)}" if len(self._all) > 1 else ""
+        self.query_one("#compared", TextLine).show(
+            (safe(one.second), Role.STRONG),
+            ("  less  ", Role.DIM),
+            (safe(one.first), Role.STRONG),
+            right=((which, Role.STRONG),) if which else (),
+        )
+        under = Role.GROUND_WARNING if one.moved else Role.GROUND_OK
+        words = differences.outcome(one, self._units)
+        self.query_one("#outcome", TextLine).show((words, Role.ON_GROUND), under=under)
+        left_out = (f"stations of the first beyond the second: {one.left_out}",) if one.left_out else ()
+        remarks = self.query_one("#remarks", TextLine)
+        told = "  ".join(f"! {safe(note)}" for note in (*one.notes, *left_out))
+        remarks.display = bool(told)
+        remarks.styles.height = 1 if len(told) <= self.size.width else 2
+        remarks.show((told, Role.WARNING))
+        self.query_one(Shift).show(one)
+        rows = differences.chosen(one, self._order, only_moved=self._only_moved)
+        self.query_one(LongTable).show(len(rows), lambda i: differences.row(rows[i], self._units))
+
+    def action_other(self, by: int) -> None:
+        """Take another comparison."""
+        self._at = (self._at + by) % len(self._all)
+        self.paint()
+
+    def action_sort(self) -> None:
+        """Take the other order."""
+        orders = differences.ORDERS
+        self._order = orders[(orders.index(self._order) + 1) % len(orders)]
+        self.paint()
+
+    def action_filter(self) -> None:
+        """Show all depths, or only where it moved."""
+        self._only_moved = not self._only_moved
+        self.paint()
+
+    def action_turn(self) -> None:
+        """Show the table instead of the plot, or the plot instead of the table, where both do not fit."""
+        self.query_one("#shown").toggle_class("-table")
+
+    def action_close(self) -> None:
+        """Go back."""
+        self.dismiss(None)

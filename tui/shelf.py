@@ -1,0 +1,128 @@
+"""The runs of some folders as a list: orders, filters, lines, names for what is written from one; draws nothing."""
+
+from collections.abc import Callable, Iterable, Sequence
+from pathlib import Path
+from typing import Any
+
+from eastfall.io.errors import OutputError
+from eastfall.io.logformat import SUFFIX
+from eastfall.io.outputs import refuse_existing
+from eastfall.io.safetext import safe
+from eastfall.io.shelf import RunCard, list_runs, log_files
+from eastfall.tui.roles import Role
+from eastfall.tui.units import METRIC, Units
+
+ORDERS = ("date", "site", "verdict", "depth", "state")
+FILTERS = ("all", "over", "undecided", "not intact")
+EXPORTS = (".csv", ".json", ".las")
+Progress = Callable[[int, int], None]
+_WORST = ("over", "undecided", "within", "")
+_ROLES = {"over": Role.ACTION, "undecided": Role.WARNING}
+_SITE = 24
+
+
+def folders(*wanted: Path) -> tuple[Path, ...]:
+    """Return those folders that hold run logs, each once, in the order given."""
+    found: dict[Path, Path] = {}
+    for one in wanted:
+        try:
+            holds = one.is_dir() and bool(log_files(one))
+        except OSError:
+            holds = False
+        if holds:
+            found.setdefault(one.resolve(), one)
+    return tuple(found.values())
+
+
+def cards(where: Sequence[Path], progress: Progress, *, judged: bool) -> tuple[RunCard, ...]:
+    """Return the cards of all runs in some folders, the newest first.
+
+    Raises
+    ------
+    OSError
+        A folder cannot be read.
+    """
+    total = sum(len(log_files(one)) for one in where)
+    found: list[RunCard] = []
+    for folder in where:
+        before = len(found)
+        found += list_runs(
+            folder,
+            lambda done, _, before=before: progress(before + done, total),
+            judged=judged,  # type: ignore[misc]
+        )
+    return tuple(found)
+
+
+def chosen(found: Iterable[RunCard], order: str, only: str) -> list[RunCard]:
+    """Return the cards of a filter in an order."""
+    kept = [one for one in found if _passes(one, only)]
+    keys: dict[str, Callable[[RunCard], Any]] = {
+        "date": lambda one: -age(one),
+        "site": lambda one: one.site.casefold(),
+        "verdict": lambda one: _WORST.index(one.verdict),
+        "depth": lambda one: -(one.depth or 0.0),
+        "state": lambda one: (one.state == "intact", one.state),
+    }
+    return sorted(kept, key=keys[order])
+
+
+def age(one: RunCard) -> float:
+    """Return when a run began [s since 1970]; 0 where that is not known."""
+    try:
+        return one.started_at.timestamp() if one.started_at else 0.0
+    except (OverflowError, ValueError):  # a date that no clock of this machine reaches
+        return 0.0
+
+
+def _passes(one: RunCard, only: str) -> bool:
+    if only == "not intact":
+        return one.state != "intact"
+    return only in ("all", one.verdict)
+
+
+def head(units: Units = METRIC) -> str:
+    """Return the line over the list."""
+    return (
+        f"  {'started, UTC':<17}{'site':<{_SITE}} {'run':<7}{units.depth_head:>8} {'verdict':<10}{'record'}"
+    )
+
+
+def line(one: RunCard, *, picked: bool, units: Units = METRIC) -> tuple[str, Role]:
+    """Return a card as a line; a file that cannot be read tells why."""
+    mark = "*" if picked else " "
+    if one.error:
+        return f"{mark} {safe(one.path.name, 34)}: {one.error}", Role.WARNING
+    started = f"{one.started_at:%Y-%m-%d %H:%M}" if one.started_at else ""
+    depth = units.depth(one.depth) if one.depth is not None else ""
+    site = (one.site or one.path.name)[: _SITE - 1]
+    text = (
+        f"{mark} {started:<17}{site:<{_SITE}} {one.kind:<7}{depth:>8} {one.verdict.upper():<10}"
+        f"{one.state if one.state == 'intact' else one.state.upper()}"
+    )
+    return text, Role.ACTION if one.state == "changed" else _ROLES.get(one.verdict, Role.TEXT)
+
+
+def beside(log: Path, suffix: str) -> str:
+    """Return a name for what is written from a run: as the log, in the same folder, with another suffix."""
+    return str(log.with_name(log.name.removesuffix(SUFFIX) + suffix))
+
+
+def new_file(text: str, suffixes: Sequence[str]) -> Path:
+    """Read the name of a file to write.
+
+    Raises
+    ------
+    ValueError
+        With one line: it stands already, its folder does not, or its suffix is another.
+    """
+    path = Path(text.strip()).expanduser()
+    if path.suffix.lower() not in suffixes:
+        raise ValueError(f"The name ends in {', '.join(suffixes)}: what to write goes by it.")
+    if not path.parent.is_dir():
+        raise ValueError("There is no such folder.")
+    try:
+        refuse_existing(path)
+    except OutputError:
+        raise ValueError("It stands already, and nothing is written over. Another name?") from None
+    return path
