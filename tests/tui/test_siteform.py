@@ -1,5 +1,8 @@
 """The site form driven by keys on the real screen: typed, checked, saved, left."""
 
+import os
+import re
+import runpy
 from pathlib import Path
 
 import pytest
@@ -338,6 +341,21 @@ async def test_quick_keys_do_not_mix_up_their_lines(pit: Path) -> None:
         assert (form.draft.value("site.latitude_deg"), form.draft.value("shaft.depth_m")) == (48.2013, 512.02)
 
 
+async def test_help_lists_the_keys_of_the_form(pit: Path) -> None:
+    """F1 opens the page of the form's own keys, escape goes back to the key that was typed in."""
+    form = SiteForm.over(pit)
+    app = Dashboard(form)  # type: ignore[arg-type]  # as above
+    async with app.run_test(size=(80, 24)) as pilot:
+        await pilot.press("down", "f1")
+        await pilot.pause()
+        shown = text_of(app)
+        for words in ("^S        Save; asks before it writes over a file", "F5        Add a link"):
+            assert words in shown
+        await pilot.press("escape")
+        await type_in(pilot, "7")
+        assert form.draft.value("site.latitude_deg") == 48.207
+
+
 async def test_rows_and_sections_can_be_clicked(pit: Path) -> None:
     """The mouse works as well: a section, then a key; the line keeps the keyboard."""
     form = SiteForm.over(pit)
@@ -431,3 +449,27 @@ def test_every_key_of_the_site_file_is_on_one_page() -> None:
         path.replace("[0]", "") for page in formpages.pages(SiteDraft(PIT, "x"))[1:] for path in page.paths
     ]
     assert sorted(shown) == sorted(f"{one.section}.{one.name}" for one in sitekeys.all_keys())
+
+
+@pytest.mark.skipif(os.name != "posix", reason="pseudo-terminals")
+def test_form_in_a_real_terminal_without_colour(pit: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """From a bare start at 80x24: no colour code is sent, a burst of keys lands where it was meant, ctrl+q asks."""
+    monkeypatch.chdir(pit.parent)
+    harness = runpy.run_path(str(Path(__file__).with_name("terminal_harness.py")))  # POSIX alone can load it
+    with harness["Terminal"](harness["EASTFALL"], 80, 24, NO_COLOR="1") as terminal:
+        terminal.wait("heron.toml")
+        terminal.press("\x1b[B\x1b[B\x1b[Be")
+        terminal.wait("no fault: this file can be used")
+        # All at once, as over a slow line: two down, a letter, back, enter, a choice, up twice, two letters, one back.
+        terminal.press("\x1b[B\x1b[B57\x7f\r\x1b[C\x1b[A\x1b[A12\x7f\x1b[A")
+        terminal.wait("512.05")
+        shown = terminal.wait("48.201 ")
+        assert "run.kind                  hung" in shown
+        terminal.press("\x11")
+        terminal.wait("Leave without saving?")
+        terminal.press("y")
+        assert terminal.ended() == 0
+        codes = b";".join(re.findall(rb"\x1b\[([0-9;]*)m", bytes(terminal.raw))).split(b";")
+    # 39 and 49 are the terminal's own; 1, 2, 4, 7 are bold, dim, underlined, reversed.
+    assert set(codes) <= {b"", b"0", b"1", b"2", b"4", b"7", b"39", b"49"}
+    assert pit.read_text() == PIT

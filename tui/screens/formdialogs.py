@@ -34,6 +34,8 @@ class RowsDialog(ModalScreen[str | None]):
 
     CSS = """
     RowsDialog TextArea { height: 10; border: tall $foreground; background: $background; color: $foreground; }
+    RowsDialog TextArea .text-area--cursor { background: $foreground; color: $background; }
+    RowsDialog TextArea:ansi .text-area--cursor { background: ansi_default; color: ansi_default; text-style: reverse; }
     RowsDialog .complaint { height: 3; }
     """
     BINDINGS: ClassVar[list[BindingType]] = [

@@ -64,6 +64,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
     PortTrial #where Static { width: auto; }
     PortTrial Input { background: $panel; color: $foreground; }
     PortTrial Input:ansi { background: ansi_default; text-style: underline; }
+    PortTrial Input:ansi > .input--cursor { background: ansi_default; color: ansi_default; text-style: reverse; }
     PortTrial #url { width: 1fr; }
     PortTrial #baud { width: 9; }
     PortTrial #trial-lines { display: none; }
@@ -275,7 +276,10 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
     def _keys(self) -> list[tuple[str, str]]:
         if self.listening:
             idle = {"choose"} if self._given is not None else {"choose", "form"}
-            return [one for one in keys.line(self.PLACES, replay=False) if one[1] not in idle]
+            changes = getattr(self.app, "key_changes", None)
+            return [
+                one for one in keys.line(self.PLACES, replay=False, changes=changes) if one[1] not in idle
+            ]
         return [("↑ ↓", "choose"), ("tab", "speed"), ("enter", "listen"), ("esc", "back")]
 
     def _counts(self, heard: Heard) -> tuple[Piece, ...]:

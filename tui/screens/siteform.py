@@ -12,7 +12,6 @@ from textual import on
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Horizontal
-from textual.widgets import Input
 
 from eastfall.io.errors import OutputError, SiteFileError
 from eastfall.io.outputs import write_text
@@ -47,7 +46,7 @@ class SiteForm(PaintedScreen[Path | None]):
         Names the serial ports, for the port trial.
     """
 
-    PLACES = ("form", "page")
+    PLACES = ("form",)
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("form"))
     CSS = """
     SiteForm #form { height: 1fr; }
@@ -57,6 +56,7 @@ class SiteForm(PaintedScreen[Path | None]):
     SiteForm #edit-unit { width: 10; }
     SiteForm #value { width: 1fr; background: $panel; color: $foreground; }
     SiteForm #value:ansi { background: ansi_default; text-style: underline; }
+    SiteForm #value:ansi > .input--cursor { background: ansi_default; color: ansi_default; text-style: reverse; }
     SiteForm #about { height: 3; }
     SiteForm #fault { height: 2; }
     """
@@ -109,7 +109,9 @@ class SiteForm(PaintedScreen[Path | None]):
 
     def on_mount(self) -> None:
         """Take the keys."""
-        self.query_one(KeyLine).show(*keys.line(self.PLACES[:1], replay=False))
+        self.query_one(KeyLine).show(
+            *keys.line(self.PLACES, replay=False, changes=getattr(self.app, "key_changes", None))
+        )
         self.query_one(ValueInput).focus()
         self._load()
 
@@ -228,9 +230,8 @@ class SiteForm(PaintedScreen[Path | None]):
         self._go(self._page, event.row)
         self.query_one(ValueInput).focus()
 
-    def on_input_submitted(self, event: Input.Submitted) -> None:
+    def action_enter(self) -> None:
         """Open the rows, add a link, or take the next key."""
-        event.stop()
         path = self.key_path
         if not path:
             self.action_add_link()

@@ -14,12 +14,12 @@ from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
 
 if TYPE_CHECKING:
-    from textual.events import Click, MouseScrollDown, MouseScrollUp
+    from textual.events import Click, Key, MouseScrollDown, MouseScrollUp
 
 State = Literal["given", "default", "missing", "fault"]
 _ROLES = {"given": Role.STRONG, "default": Role.DIM, "missing": Role.WARNING, "fault": Role.ACTION}
 _MARKS = {"given": "*", "default": " ", "missing": "?", "fault": "!"}
-NAME_WIDTH, UNIT_WIDTH = 26, 10
+NAME_WIDTH, VALUE_WIDTH, UNIT_WIDTH = 26, 44, 10
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -122,7 +122,7 @@ class KeyList(RowList):
 
     def draw(self, sheet: Raster) -> None:
         """Write the rows in view; a value that does not fit ends in dots."""
-        room = max(sheet.width - NAME_WIDTH - UNIT_WIDTH - 3, 6)
+        room = min(max(sheet.width - NAME_WIDTH - UNIT_WIDTH - 3, 6), VALUE_WIDTH)
         for line, row in enumerate(self._place(sheet.height)):
             one = self.rows[row]
             role = Role.CURSOR if row == self.cursor else _ROLES[one.state]
@@ -135,7 +135,7 @@ class KeyList(RowList):
 
 
 class ValueInput(Input):
-    """The line that is typed in; for a choice the arrows take the next one.
+    """The line that is typed in; for a choice the arrows take the next one. Its screen has an action `enter`.
 
     Posts `Typed` with the key that it stands for, so that a message that comes late still meets its own key.
     """
@@ -167,6 +167,21 @@ class ValueInput(Input):
         """Tell what was typed."""
         if self._told and self.path:
             self.post_message(self.Typed(self.path, value))
+
+    async def _on_key(self, event: "Key") -> None:
+        """Do what a key is bound to before the next one is looked at.
+
+        The library sends such keys up to the application and back, while letters are taken at once: in a burst, over a
+        slow line, a letter would overtake the arrow before it and land in the wrong key.
+        """
+        # Nothing public does it: `active_bindings` names the first binding, not the first that is not skipped.
+        if not event.is_printable and await self.app._check_bindings(event.key):  # noqa: SLF001
+            event.stop()
+            event.prevent_default()
+
+    async def action_submit(self) -> None:
+        """Have the screen go on at once, for the same reason."""
+        await self.run_action("screen.enter")
 
     def _choose(self, by: int) -> None:
         if self.value in self.choices:
