@@ -151,6 +151,8 @@ def wall(one: Plan, units: Units = METRIC) -> tuple[str, bool]:
     if one.touching is None:
         return f"No shaft diameter given: nothing is known of the wall. {fall}", False
     share = f"{one.touching} of {DROPS} simulated drops touch it"
+    if one.contact == 0.0:
+        return "THE RELEASE POINT itself touches the wall or lies beyond it.", True
     if one.contact is not None and one.contact <= one.level:
         return f"MEETS THE WALL at {units.depth(one.contact)} {units.long}; {share}.", True
     gap = "–" if one.clearance is None else units.depth(one.clearance, 2)

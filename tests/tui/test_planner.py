@@ -102,6 +102,12 @@ def test_body_that_meets_the_wall_is_said_with_its_depth_and_share() -> None:
     assert near.touching > 0.9 * drop.DROPS
 
 
+def test_release_beyond_the_wall_is_said_as_that() -> None:
+    """A contact at the collar is no fall that meets the wall: the release point is wrong."""
+    outside = drop.plan(replace(BASE, body=replace(BODY, release_east=2.6)), 210.0)
+    assert drop.wall(outside) == ("THE RELEASE POINT itself touches the wall or lies beyond it.", True)
+
+
 def test_level_above_the_contact_is_clear() -> None:
     """The contact below the level looked at does not hinder a drop to that level."""
     near = replace(BASE, body=replace(BODY, release_east=2.575 - 0.030))
