@@ -101,7 +101,7 @@ def against_limit(
     """
     beyond = value > limit
     inside = value <= limit - dead_band
-    return beyond.astype(np.int8) - inside.astype(np.int8)
+    return beyond.view(np.int8) - inside.view(np.int8)
 
 
 @dataclass(slots=True)

@@ -282,10 +282,14 @@ class ExpectedCurve:
             NaN below the table and more than a metre above the collar; nothing is extrapolated.
         """
         z = np.asarray(depth, dtype=float)
-        rows = [np.interp(z, self.depth, row, right=np.nan) for row in np.atleast_2d(table)]
-        for row in rows:
-            row[z < _ABOVE] = np.nan
-        return rows[0] if table.ndim == 1 else np.stack(rows)
+        if table.ndim == 1:
+            found: NDArray[np.float64] = np.interp(z, self.depth, table, right=np.nan)
+        else:
+            found = np.array([np.interp(z, self.depth, row, right=np.nan) for row in table])
+        above = z < _ABOVE
+        if above.any():
+            found[..., above] = np.nan
+        return found
 
     def expected(self, depth: ArrayLike, speed: float = 0.0) -> Pair:
         """Return what is expected at depths with the line at one constant speed all the way [m], shape (2, m)."""

@@ -57,7 +57,7 @@ class Sighting:
     @property
     def quiet(self) -> bool:
         """Whether every row is inside."""
-        return not self.placed.size or bool(self.placed.max() == INSIDE == self.placed.min())
+        return not np.count_nonzero(self.placed != INSIDE)
 
 
 class Guards:

@@ -64,6 +64,8 @@ class HaltFinder:
         list of (int, Rest)
             Halts, and the row of this block at which each was complete.
         """
+        if self._at is None and not self._rows and self._in_cell(rows[0, 0]) and self._in_cell(rows[0, -1]):
+            return []  # on the way, and no cell in which a halt could begin opens: time does not fall
         found: list[tuple[int, Rest]] = []
         starts = self._starts(rows)
         row = 0
@@ -80,6 +82,9 @@ class HaltFinder:
                 self._begin(float(rows[0, row]))
                 row = self._go_on(rows, row, found)
         return found
+
+    def _in_cell(self, time: float) -> bool:
+        return bool(np.floor(time * (_CELLS / self._hold)) == self._cell)
 
     def _starts(self, rows: Array) -> NDArray[np.intp]:
         """Return the rows from which a halt may begin: the first of each cell of time without movement."""

@@ -59,9 +59,9 @@ def lean(speed: npt.ArrayLike, latitude: npt.ArrayLike, gravity: npt.ArrayLike) 
     """
     g = np.asarray(gravity, dtype=np.float64)
     phi = np.asarray(latitude, dtype=np.float64)
-    if np.any(g <= 0.0):
+    if (g <= 0.0).any():
         raise ParameterError("gravity", gravity, "m/s²", "more than 0 m/s²")
-    if np.any(np.abs(phi) > np.pi / 2):
+    if (np.abs(phi) > np.pi / 2).any():
         raise ParameterError("latitude", latitude, "rad", "-pi/2 to pi/2")
     angle: Array = 2.0 * EARTH_ROTATION * np.asarray(speed, dtype=np.float64) * np.cos(phi) / g
     return angle

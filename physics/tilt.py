@@ -237,13 +237,15 @@ class OffsetSum:
         ParameterError
             If the arrays differ in length, or a direction is longer than 1 (minimum curvature only).
         """
-        rows = np.stack(
-            [np.asarray(one, dtype=np.float64) for one in np.broadcast_arrays(depth, east_slope, north_slope)]
-        )
-        good = np.isfinite(rows).all(axis=0)
-        if good.all() and good.size:
+        given = [np.asarray(one, dtype=np.float64) for one in (depth, east_slope, north_slope)]
+        if not given[0].shape == given[1].shape == given[2].shape:
+            given = list(np.broadcast_arrays(*given))
+        rows = np.array(given)
+        finite = np.isfinite(rows)
+        if finite.all() and finite.size:
             out = self._add(rows)
         else:
+            good = finite.all(axis=0)
             out = np.full(rows.shape, np.nan)
             if good.any():
                 out[:, good] = self._add(rows[:, good])
