@@ -99,6 +99,17 @@ def test_offsets_of_a_plumb_line_are_no_tilts(delimiter: str, checksum: str, tim
     assert propose(worded("hung", form)).columns == form.columns
 
 
+def test_what_swings_to_both_sides_is_no_depth() -> None:
+    """With the depth on another link, offsets that go as far above zero as below are not taken for one."""
+    form = LinkSettings(url="x", columns=("time_s", "east_mm", "north_mm"))
+    found = propose(worded("hung", form)).columns
+    assert found[1:] == form.columns[1:]
+    assert found[0] in {
+        "time_s",
+        "depth_m",
+    }  # alone beside offsets, an even rise can be either: it is said so
+
+
 def test_landing_marks_of_a_drop_are_offsets() -> None:
     """A few marks at the bottom are enough for depth and offsets."""
     form = LinkSettings(url="x", columns=("time_s", "depth_m", "east_mm", "north_mm"))
