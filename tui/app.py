@@ -28,7 +28,7 @@ from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.settings import SettingsScreen
 from eastfall.tui.screens.start import Choice, Ports, StartScreen
 from eastfall.tui.screens.watch import WatchScreen
-from eastfall.tui.session import Session, curves_of
+from eastfall.tui.session import Session, curves_of, replay_session
 from eastfall.tui.store import Snapshot
 from eastfall.tui.terminal import glyphs_for, refuse_unless_screen, wants_no_colour
 from eastfall.tui.themes import MONO, THEMES
@@ -330,19 +330,6 @@ def run_replay(
     session = replay_session(replay, curve)
     app = watch_app(session, **look)
     return _shown(app, ReplayFeed(replay, app.take, speed=speed, now=since_start(replay)))
-
-
-def replay_session(replay: "Replay", curve: "ExpectedCurve | None" = None) -> Session:
-    """Return what is known of a recorded run before its first reading."""
-    bob, fall = curves_of(curve or replay.pipeline.survey.curve)
-    return Session(
-        assumptions=replay.site.assumptions,
-        mode="replay",
-        title=safe(replay.site.assumptions.site.name),
-        bob=bob,
-        fall=fall,
-        differences=tuple(f"{one.key} {one.used} (recorded {one.recorded})" for one in replay.differences),
-    )
 
 
 def since_start(replay: "Replay") -> Callable[[], float] | None:

@@ -290,6 +290,11 @@ class ReplayFeed(Feed):
 
         self.ask(command)
 
+    @property
+    def replay(self) -> "Replay":
+        """The record; only the worker moves in it."""
+        return self._replay
+
     def change(self, replay: "Replay") -> None:
         """Go on with the same record under other settings, at the same moment."""
 

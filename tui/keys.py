@@ -96,7 +96,7 @@ TABLE = (
     Key("filter", "f", "filter", "f", "filter", "Show all, or only what is over or undecided", "stations"),
     *(
         key
-        for where in ("explorer", "planner")
+        for where in ("explorer", "planner", "whatif")
         for key in (
             Key("up", "up", "move(-1)", "↑ ↓", "input", "The input above or below", where),
             Key("down", "down", "move(1)", "", "", "The input below", where),
@@ -114,6 +114,7 @@ TABLE = (
             Key("restore-all", "R", "restore_all", "R", "", "All inputs as in the site file", where),
         )
     ),
+    Key("site", "o", "other_site", "o", "other file", "Another site file instead", "whatif"),
     Key("keep", "k", "keep", "k", "keep as B", "Keep this prediction as B, to compare with", "explorer"),
     Key("swap", "x", "swap", "x", "", "Change over A and B", "explorer"),
     Key("alone", "n", "alone", "n", "", "Forget B", "explorer"),
@@ -227,6 +228,7 @@ _TOGETHER = (
     ("shelf", "page", "all"),
     ("explorer", "page", "all"),
     ("planner", "page", "all"),
+    ("whatif", "page", "all"),
     ("start", "all"),
     ("form", "all"),
     ("trial", "all"),
@@ -294,7 +296,7 @@ def _named(key: str) -> str | None:
 def _clash(one: Key, holds: Mapping[str, str], table: Mapping[str, Key]) -> Key | None:
     """Return another key of the same places that is the same after all moves."""
     mine = set(holds[one.full_id].split(","))
-    if one.where in {"explorer", "planner", "all"} and mine & set(TYPING):
+    if one.where in {"explorer", "planner", "whatif", "all"} and mine & set(TYPING):
         return next(key for key in table.values() if key.full_id == "explorer.up")
     beside = {place for places in _TOGETHER if one.where in places for place in places}
     for other in table.values():

@@ -6,11 +6,13 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from eastfall.io.safetext import safe
 from eastfall.tui.raster import Floats
 from eastfall.tui.store import Mode
 from eastfall.tui.units import METRIC, Units
 
 if TYPE_CHECKING:
+    from eastfall.io.replay import Replay
     from eastfall.physics.expected import ExpectedCurve
     from eastfall.physics.settings import Assumptions
 
@@ -56,3 +58,21 @@ def curves_of(curve: "ExpectedCurve | None") -> tuple[Curve | None, Curve | None
 def _pair(curve: "ExpectedCurve", table: Floats, depth: Floats) -> tuple[Floats, Floats]:
     east, north = curve.look_up(table, np.atleast_1d(np.asarray(depth, dtype=float)))
     return east, north
+
+
+def replay_session(
+    replay: "Replay", curve: "ExpectedCurve | None" = None, *, units: Units = METRIC
+) -> Session:
+    """Return what is known of a recorded run before its first reading."""
+    from eastfall.tui.whatif import told  # noqa: PLC0415 (the reducing of records only where there is one)
+
+    bob, fall = curves_of(curve or replay.pipeline.survey.curve)
+    return Session(
+        assumptions=replay.site.assumptions,
+        mode="replay",
+        title=safe(replay.site.assumptions.site.name),
+        bob=bob,
+        fall=fall,
+        differences=told(replay.differences),
+        units=units,
+    )

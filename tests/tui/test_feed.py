@@ -68,11 +68,14 @@ class _FakeRun:
             findings=findings, standing=None, alarms=(), health=self.health, time=1.0 * self.steps, armed=True
         )
 
-    def acknowledge(self, name: str) -> None:
-        self.told.append(("acknowledge", name))
+    def acknowledge(self, name: str, who: str) -> None:
+        self.told.append(("acknowledge", name, who))
 
-    def note(self, text: str) -> None:
-        self.told.append(("note", text))
+    def shelve(self, name: str, seconds: float, reason: str, who: str) -> None:
+        self.told.append(("shelve", name, seconds, reason, who))
+
+    def note(self, text: str, who: str) -> None:
+        self.told.append(("note", text, who))
 
     def arm(self, who: str) -> None:
         self.told.append(("arm", who))
@@ -165,17 +168,31 @@ def test_pictures_come_no_faster_than_ten_a_second(
 def test_commands_are_done_in_order_in_the_workers_thread(
     run: _FakeRun, shown: Collected, finished: list[Feed]
 ) -> None:
-    """Acknowledge, note and arming reach the run as they were asked."""
+    """Acknowledging, shelving, note and arming reach the run as they were asked, and stand in the snapshot by name."""
     feed = LiveFeed(run, shown)  # type: ignore[arg-type]
     finished.append(feed)
-    feed.acknowledge("action limit")
-    feed.note("fan stopped")
+    feed.acknowledge("action limit", "Ada")
+    feed.shelve("feed silent", 600.0, "cable", "Ada")
+    feed.note("fan stopped", "Ada")
     feed.arm("M. Quill")
     done = threading.Event()
     feed.ask(done.set)
     feed.start()
     assert done.wait(PATIENCE)
-    assert run.told == [("acknowledge", "action limit"), ("note", "fan stopped"), ("arm", "M. Quill")]
+    assert run.told == [
+        ("acknowledge", "action limit", "Ada"),
+        ("shelve", "feed silent", 600.0, "cable", "Ada"),
+        ("note", "fan stopped", "Ada"),
+        ("arm", "M. Quill"),
+    ]
+    said = shown.wait(lambda one: len(one.said) == 4).said
+    assert [one.text for one in said] == [
+        "acknowledge action limit · Ada",
+        "shelve feed silent for 10 min: cable · Ada",
+        "fan stopped · Ada",
+        "shaft clear, armed · M. Quill",
+    ]
+    assert [one.is_note for one in said] == [False, False, True, False]
 
 
 def test_closing_stops_the_run_once_and_ends_the_thread(run: _FakeRun, shown: Collected) -> None:

@@ -13,7 +13,7 @@ from eastfall.tui.screens.dialogs import AskText, ClearShaft, named
 from eastfall.tui.screens.start import Choice
 from eastfall.tui.screens.stations import StationsScreen
 from eastfall.tui.screens.steer import SteerScreen
-from eastfall.tui.session import Session
+from eastfall.tui.session import Session, replay_session
 from eastfall.tui.sight import Sight
 from eastfall.tui.store import Snapshot
 from eastfall.tui.widgets.alarms import in_order
@@ -21,6 +21,8 @@ from eastfall.tui.widgets.cells import PaintedScreen
 
 if TYPE_CHECKING:
     from collections.abc import Callable
+
+    from eastfall.io.replay import Replay
 
 
 class RunScreen(PaintedScreen[Choice | None]):
@@ -142,6 +144,26 @@ class RunScreen(PaintedScreen[Choice | None]):
             self.app.push_screen(CompareScreen(found, self.session.units))
         else:
             self.app.notify("No two passes have a depth in common yet.", markup=False, timeout=4)
+
+    def action_what_if(self) -> None:
+        """Open the settings of a record, to see what would have followed from others."""
+        from eastfall.tui.screens.whatif import WhatIfScreen  # noqa: PLC0415 (only where asked for)
+
+        if not isinstance(self.feed, ReplayFeed):
+            return
+        recording = self.feed.replay.recording
+        if recording.recorded is None or self.feed.replay.follow:
+            self.app.notify("What if is for a complete run log.", markup=False, timeout=4)
+            return
+        screen = WhatIfScreen(
+            recording.path, recording.recorded, recording.site, self._take_over, self.session.units
+        )
+        self.app.push_screen(screen)
+
+    def _take_over(self, replay: "Replay") -> None:
+        self.session = replay_session(replay, units=self.session.units)
+        self._look(replace(self.sight, station=None))
+        cast("ReplayFeed", self.feed).change(replay)
 
     def action_stations(self) -> None:
         """Open the table of stations."""
