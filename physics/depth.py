@@ -131,6 +131,12 @@ class _State:
 
     track: _Track | None = None
     waiting: _Track | None = None
+    lost: int = 0
+    """How many of the rows that wait agree with nothing: only kept until a second row is accepted."""
+    settled: bool = False
+    """Whether two rows in line have been seen."""
+    trusting: bool = True
+    """False once the first rows show that the times are not those of the line's movement."""
 
 
 class DepthWatch:
@@ -139,7 +145,8 @@ class DepthWatch:
     A step of more than `SLACK` is out of line if the line would have to be faster than `max_speed`, or more than twice
     as fast as in the step before and `max_acceleration` on top. Rows out of line wait: if the depth comes back they
     were a spike and are left aside; if `LASTS` of them agree with each other the depth has jumped. Rows that share
-    a time stamp are held against the last one before it. Rows without a time are not judged.
+    a time stamp are held against the last one before it. Rows without a time are not judged, and none is where the
+    first `LASTS` steps of a run are all out of line: then the times are not those of the movement.
 
     Parameters
     ----------
@@ -163,7 +170,10 @@ class DepthWatch:
             untimed = int(np.searchsorted(~np.isnan(readings.time), True))
             return [Piece(readings[:untimed]), *self.pieces(readings[untimed:])]
         track = self._state.track
+        if not self._state.trusting:
+            return [Piece(readings)]
         if not len(self._waiting) and _plain(track, readings.depth):
+            self._state.settled |= len(readings) > 1 or track is not None
             self._state.track = _advanced(track, readings.time, readings.depth)
             return [Piece(readings)]
         joined = Readings.joined([self._waiting, readings])
@@ -174,11 +184,14 @@ class DepthWatch:
         self._waiting = walk.waiting()
         return walk.pieces()
 
-    def close(self) -> None:
-        """End the run: rows that still wait are left aside."""
-        if len(self._waiting):
-            self._unused[SPIKE] += len(self._waiting)
-            self._waiting = Readings.none()
+    def close(self) -> list[Piece]:
+        """End the run: rows that still wait are left aside, but for the first of a run, which count as they are."""
+        waiting, self._waiting = self._waiting, Readings.none()
+        if not self._state.settled and len(waiting):
+            return [Piece(waiting)]
+        if len(waiting):
+            self._unused[SPIKE] += len(waiting)
+        return []
 
 
 def _plain(track: _Track | None, depth: Array) -> bool:
@@ -230,7 +243,8 @@ class _Walk:
         self._limits = limits
         self._state = state
         self._readings = readings
-        self._run = list(range(waiting))
+        self._lost = list(range(state.lost))
+        self._run = list(range(state.lost, waiting))
         self._keep = np.zeros(len(readings), dtype=bool)
         self._jumps: dict[int, Jump] = {}
         self.spikes = 0
@@ -239,13 +253,17 @@ class _Walk:
         """Judge every row."""
         time, depth = self._readings.time, self._readings.depth
         quiet = np.abs(np.diff(depth)) <= SLACK
-        row = len(self._run)
+        row = len(self._lost) + len(self._run)
         while row < depth.size:
+            if not self._state.trusting:
+                self._keep[row:] = True
+                return
             if not self._run and row and self._keep[row - 1] and quiet[row - 1]:
                 # All of a quiet stretch is in line whatever the times say.
                 end = row + _leading(quiet[row - 1 :])
                 self._state.track = _advanced(self._state.track, time[row:end], depth[row:end])
                 self._keep[row:end] = True
+                self._state.settled = True
                 row = end
             else:
                 self._judge(row, float(time[row]), float(depth[row]))
@@ -262,15 +280,22 @@ class _Walk:
         elif track is None or _in_line(self._limits, track, time, depth):
             self._forget()
             self._keep[row] = True
+            state.settled |= track is not None
             state.track = track.to(time, depth) if track else _Track(time, depth)
-        else:
+        elif state.settled:
             self._forget()
             self._run = [row]
             state.waiting = _Track(time, depth, track.step, track.lasted)
+        else:
+            self._lost, self._run = [*self._lost, *self._run], [row]
+            state.waiting = _Track(time, depth, track.step, track.lasted)
+            if len(self._lost) + 1 >= LASTS:
+                self._keep[[*self._lost, row]] = True
+                self._lost, self._run, state.trusting = [], [], False
 
     def _forget(self) -> None:
-        self.spikes += len(self._run)
-        self._run = []
+        self.spikes += len(self._run) + len(self._lost)
+        self._run, self._lost = [], []
 
     def _jump(self) -> None:
         """Take the rows that wait for the new truth."""
@@ -280,11 +305,13 @@ class _Walk:
             float(self._readings.time[first]), before, float(self._readings.depth[first])
         )
         self._keep[self._run] = True
-        self._state.track, self._run = self._state.waiting, []
+        self._state.track, self._state.settled, self._run = self._state.waiting, True, []
+        self._forget()
 
     def waiting(self) -> Readings:
-        """Return the rows that still wait."""
-        return self._readings[np.array(self._run, dtype=np.intp)]
+        """Return the rows that still wait, those that agree with nothing first."""
+        self._state.lost = len(self._lost)
+        return self._readings[np.array([*self._lost, *self._run], dtype=np.intp)]
 
     def pieces(self) -> list[Piece]:
         """Return what counts, cut at the jumps."""

@@ -105,8 +105,12 @@ class Survey:
         changes = self._silences(readings)
         self._board.newest = readings.data[:3, -1].copy()
         changes += self._unreadable(bad, float(readings.host_time[-1]))
+        return self._count(self._pieces(self._guarded(readings, changes)), changes)
+
+    def _count(self, pieces: list[Piece], changes: list[AlarmChange]) -> Findings:
+        """Let the kind of run take readings that count, and judge what it makes of them."""
         batches = []
-        for piece in self._pieces(self._guarded(readings, changes)):
+        for piece in pieces:
             if piece.jump is not None:
                 self._kind.jump(piece.jump)
                 changes += self._board.jumped(*piece.jump)
@@ -323,10 +327,14 @@ class Survey:
             return Findings(rows=Rows.none())
         self._closed = True
         ticked = self.tick(host_time) if isfinite(host_time) else Findings(rows=Rows.none())
-        self._watch.close()
+        counted = self._count(self._watch.close(), [])
         stations = self._kind.close()
         self._keep(stations, [])
-        return Findings(rows=Rows.none(), stations=stations, alarms=ticked.alarms)
+        return Findings(
+            rows=counted.rows,
+            stations=(*counted.stations, *stations),
+            alarms=(*ticked.alarms, *counted.alarms),
+        )
 
     def standing(self) -> Standing | None:
         """Return the answer as it stands; None before the first usable reading."""

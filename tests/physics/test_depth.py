@@ -84,7 +84,7 @@ def watched(readings, cuts=(), limits=None):
     found = []
     for begin, end in itertools.pairwise([0, *sorted(cuts), len(readings)]):
         found += watch.pieces(readings[begin:end])
-    watch.close()
+    found += watch.close()
     kept = np.concatenate([one.readings.depth for one in found])
     return kept, [one.jump for one in found if one.jump], unused[SPIKE]
 
@@ -156,6 +156,25 @@ def test_blocks_do_not_matter_and_every_row_is_kept_or_counted(cuts, faults, sam
     assert (other_jumps, other_spikes) == (jumps, spikes)
     assert whole.size + spikes == len(readings)
     assert LASTS > 1
+
+
+@pytest.mark.parametrize("rows", [2, 4, 5, 12])
+@pytest.mark.parametrize("cuts", [(), (1, 2, 3, 4)])
+def test_a_capture_by_hand_with_a_made_up_clock_loses_nothing(rows, cuts):
+    """A reading every 10 m, a tenth of a second apart: no line moves so, the times are made up, and all rows count."""
+    readings = Readings.of(time=0.1 * np.arange(rows), depth=10.0 * np.arange(rows))
+    kept, jumps, spikes = watched(readings, [cut for cut in cuts if cut < rows])
+    np.testing.assert_array_equal(kept, readings.depth)
+    assert (jumps, spikes) == ([], 0)
+
+
+def test_rubbish_in_the_first_row_is_told_as_a_jump_and_not_summed_from():
+    """A first depth of 700 m, then the ride from the collar: one jump, no row of the ride lost."""
+    readings = ride()
+    readings.data[2, 0] = 700.0
+    kept, jumps, spikes = watched(readings)
+    assert (kept.size, spikes) == (len(readings), 0)
+    assert [(one.before, one.after) for one in jumps] == [(700.0, pytest.approx(0.1))]
 
 
 def test_rows_without_a_time_are_not_judged():
