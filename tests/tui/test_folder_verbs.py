@@ -1,0 +1,75 @@
+"""`reduce` and `runs` over a folder, as the command line shows them: rows, list, exit status, one line of refusal."""
+
+import json
+import shutil
+from pathlib import Path
+
+import pytest
+from click.testing import CliRunner, Result
+
+from eastfall.tui.main import cli
+
+pytestmark = pytest.mark.invariant
+
+LOGS = sorted((Path(__file__).parents[2] / "replay_logs").glob("*.eastfall.jsonl"))
+
+
+@pytest.fixture
+def shelf(tmp_path: Path) -> Path:
+    """Return a folder with the recorded demonstrations."""
+    for log in LOGS:
+        shutil.copy(log, tmp_path)
+    return tmp_path
+
+
+def called(*words: object) -> Result:
+    """Call a verb."""
+    return CliRunner().invoke(cli, [str(one) for one in words], standalone_mode=False)
+
+
+def test_reduce_of_a_folder_is_a_row_for_each_log(shelf: Path) -> None:
+    """The table names each log with its verdict, and the status is that of limits kept."""
+    done = called("reduce", shelf, "--workers", 1)
+    assert done.return_value == 0
+    rows = done.stdout.splitlines()
+    assert len(rows) == 1 + len(LOGS)
+    for log, row in zip(LOGS, rows[1:], strict=True):
+        assert log.name in row
+        assert "within" in row
+        assert "intact" in row
+
+
+def test_reduce_of_a_folder_as_json_is_a_list_with_what_each_comes_to(shelf: Path) -> None:
+    """Each entry holds the summary, and the stations and alarms that `reduce` gives of that log alone."""
+    found = json.loads(called("reduce", shelf, "--workers", 1, "--format", "json").stdout)
+    for one, log in zip(found, LOGS, strict=True):
+        alone = json.loads(called("reduce", log, "--format", "json").stdout)
+        assert {name: one[name] for name in ("stations", "alarms", "closure", "rest_point", "frames")} == {
+            name: alone[name] for name in ("stations", "alarms", "closure", "rest_point", "frames")
+        }
+
+
+def test_a_log_that_cannot_be_used_is_named_and_the_status_is_2(shelf: Path) -> None:
+    """The others are worked through all the same."""
+    (shelf / "rubbish.eastfall.jsonl").write_bytes(b"\xff")
+    done = called("reduce", shelf, "--workers", 1, "--format", "csv")
+    assert done.return_value == 2
+    assert len(done.stdout.splitlines()) == 2 + len(LOGS)
+    assert "rubbish.eastfall.jsonl" in done.stderr
+    assert len(done.stderr.splitlines()) == 1
+
+
+def test_an_interval_is_refused_for_a_folder_and_a_folder_without_logs_too(tmp_path: Path) -> None:
+    """What makes no sense is said in one line."""
+    assert "for a capture" in str(called("reduce", tmp_path, "--interval", 1).exception)
+    assert "no run log in it" in str(called("reduce", tmp_path).exception)
+
+
+def test_runs_and_reduce_agree_on_verdict_and_depth(shelf: Path) -> None:
+    """The list of runs and the reduced folder say the same of each log."""
+    cards = json.loads(called("runs", shelf, "--format", "json").stdout)["runs"]
+    found = json.loads(called("reduce", shelf, "--format", "json").stdout)
+    names = ("path", "site", "started_at", "kind", "depth_m", "verdict", "state", "error")
+    assert sorted([[one[name] for name in names] for one in found]) == sorted(
+        [[one[name] for name in names] for one in cards]
+    )
