@@ -159,7 +159,7 @@ def _time(left: list[_Looks]) -> Named:
 
 def _may_be_depth(one: _Looks) -> bool:
     large = one.span >= 1.0 or (one.span == 0.0 and (one.size >= 1.0 or one.decimals > 0))
-    return one.inside("depth_m") and one.smooth and large
+    return one.inside("depth_m") and one.smooth and large and one.values.min() >= _ABOVE_COLLAR
 
 
 def _depth(left: list[_Looks]) -> Named:
@@ -167,14 +167,14 @@ def _depth(left: list[_Looks]) -> Named:
     able = [one for one in left if _may_be_depth(one)]
     first = [one for one in able if one.place == min(other.place for other in left)]
     standing = [one for one in first if one.span == 0.0 and one.decimals > 0]
-    moving = [one for one in able if one.span >= 1.0 and one.values.min() >= _ABOVE_COLLAR]
+    moving = [one for one in able if one.span >= 1.0]
     if moving:
         best = max(moving, key=lambda one: (one.one_way, one.span, -one.place))
         # A plumb line that swings at one depth moves smoothly too, but never as far as that depth.
         if not standing or best.span > standing[0].size > 0.0:
             doubt = "; or is it a clock?" if best.rises and best.unevenness < _CLOCKLIKE else ""
             return {best.place: Guess("depth_m", f"moves smoothly over {best.span:.4g}{doubt}")}
-    for one in standing or first:
+    for one in standing or [one for one in first if one.span == 0.0]:
         return {one.place: Guess("depth_m", "stands still ahead of the others: a probe at rest")}
     return {}
 
