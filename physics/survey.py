@@ -15,8 +15,9 @@ from eastfall.physics.board import ACTION, BAD_LINES, JUMP, SILENT, WALL, WARNIN
 from eastfall.physics.combine import best_estimate, closure, face_notes
 from eastfall.physics.depth import DepthWatch, Piece, TrueDepth
 from eastfall.physics.expected import ExpectedCurve, expected_curve
+from eastfall.physics.feedwatch import FeedWatch
 from eastfall.physics.findings import AlarmChange, AlarmView, Findings, Result, Rows, Standing, Station
-from eastfall.physics.guards import BadLines, Guards, Sighting
+from eastfall.physics.guards import Guards, Sighting
 from eastfall.physics.kinds.base import ROW, Batch, Judged, KindTracker, from_wall, inside_shaft
 from eastfall.physics.kinds.drop import Drop
 from eastfall.physics.kinds.guided import Guided
@@ -24,7 +25,6 @@ from eastfall.physics.kinds.hung import Hung
 from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import CHANNELS, Readings
 from eastfall.physics.settings import Assumptions
-from eastfall.physics.steps import steps, steps_from
 from eastfall.physics.verdict import horizontal, verdict
 
 __all__ = ["ACTION", "BAD_LINES", "JUMP", "SILENT", "WALL", "WARNING", "Survey", "closure"]
@@ -66,8 +66,7 @@ class Survey:
         self._true_depth = TrueDepth(assumptions, self.curve.models.field.gravity)
         self._watch = DepthWatch(assumptions.depth, self._kind.unused)
         self._board = Board(assumptions.limits)
-        self._bad_lines = BadLines(assumptions.limits.bad_lines_per_minute)
-        self._feed_watched = feed_watched
+        self._feed_watch = FeedWatch(self._board, assumptions.limits, watched=feed_watched)
         self._notes = notes
         self._stations: dict[int, Station] = {}
         self._frames = 0
@@ -100,11 +99,9 @@ class Survey:
         """
         bad = _NONE if rejected is None else rejected
         if not len(readings):
-            return self._keep((), self._unreadable(bad, _latest(bad)))
+            return self._keep((), self._feed_watch.take(readings, bad))
         readings = self._on_true_depth(self._on_one_clock(readings))
-        changes = self._silences(readings)
-        self._board.newest = readings.data[:3, -1].copy()
-        changes += self._unreadable(bad, float(readings.host_time[-1]))
+        changes = self._feed_watch.take(readings, bad)
         return self._count(self._pieces(self._guarded(readings, changes)), changes)
 
     def _count(self, pieces: list[Piece], changes: list[AlarmChange]) -> Findings:
@@ -159,41 +156,6 @@ class Survey:
         data = readings.data.copy()
         data[0] = held
         return Readings(data)
-
-    def _silences(self, readings: Readings) -> list[AlarmChange]:
-        """Raise and return the silent-feed alarm for every gap before and inside a block."""
-        limit = self.assumptions.limits.feed_silent
-        if not self._feed_watched or steps_from(self._board.newest[1], readings.host_time).max() <= limit:
-            return []
-        rows = np.concatenate([self._board.newest[:, None], readings.data[:3]], axis=1)
-        if not np.isfinite(rows[1, 1:]).all():
-            return []
-        if np.isnan(rows[1, 0]):
-            # Before the first reading the feed is reckoned from the start of the run, on the host's clock alone.
-            rows[:2, 0] = 0.0
-        changes: list[AlarmChange] = []
-        for gap in np.flatnonzero(steps(rows[1]) > limit).tolist():
-            for row, host, on in (
-                (rows[:, gap], rows[1, gap] + limit, True),
-                (rows[:, gap + 1], rows[1, gap + 1], False),
-            ):
-                changes += self._silence(row, float(host), on=on)
-        return changes
-
-    def _silence(self, row: Array, host_time: float, *, on: bool) -> list[AlarmChange]:
-        message = f"no reading for {self.assumptions.limits.feed_silent:g} s" if on else "readings again"
-        return self._board.turn(SILENT, host_time, on=on, message=message, row=row)
-
-    def _unreadable(self, rejected: Array, now: float) -> list[AlarmChange]:
-        """Raise and return the alarm of bad lines, up to a host time [s]."""
-        if not self._feed_watched or not isfinite(now):
-            return []
-        changes: list[AlarmChange] = []
-        often = f"{self.assumptions.limits.bad_lines_per_minute:g} or more unreadable lines in a minute"
-        for when, on in self._bad_lines.feed(rejected[np.isfinite(rejected)], now):
-            message = often if on else "lines can be read again"
-            changes += self._board.turn(BAD_LINES, when, on=on, message=message)
-        return changes
 
     def _judge(self, batch: Batch) -> list[AlarmChange]:
         """Hold the rows of a block against the limits."""
@@ -256,16 +218,7 @@ class Survey:
         Findings
             What has fallen due; its instants are those that the next reading would have brought to light.
         """
-        changes: list[AlarmChange] = []
-        limit = self.assumptions.limits.feed_silent
-        newest = self._board.newest
-        before = float(np.nan_to_num(newest[1]))
-        if self._feed_watched and host_time - before > limit:
-            row = newest if isfinite(newest[1]) else np.array([0.0, 0.0, np.nan])
-            changes += self._silence(row, before + limit, on=True)
-        changes += self._unreadable(_NONE, host_time)
-        changes += self._board.pass_time(host_time)
-        return self._keep((), changes)
+        return self._keep((), self._feed_watch.tick(host_time))
 
     def condition(self, host_time: float, name: str, on: bool, message: str) -> Findings:
         """Take a fault that only the edge knows, such as a lost link.
@@ -399,10 +352,6 @@ class Survey:
             best=best,
             notes=(*self._all_notes(), *about, *face_notes(faces, self.assumptions.instrument)),
         )
-
-
-def _latest(times: Array) -> float:
-    return float(np.nanmax(times)) if np.isfinite(times).any() else float("nan")
 
 
 def _rows(batches: list[Batch]) -> Rows:

@@ -213,6 +213,7 @@ def test_bad_lines_are_an_alarm_from_ticks_and_from_readings_alike(shaft):
     for survey in (one, other):
         changes = [(x.new, x.time) for x in survey.result().alarms if x.name == BAD_LINES]
         assert changes == [("active", pytest.approx(22.9)), ("returned", pytest.approx(81.0))]
+    assert one.result().alarms == other.result().alarms
     only = Survey(shaft(depth=DEPTH))
     only.feed(Readings.none(), rejected)
     assert any(x.name == BAD_LINES for x in only.result().alarms)
