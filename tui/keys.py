@@ -94,6 +94,7 @@ TABLE = (
     Key("planner", "p", "planner", "p", "", "Drop run: plan the release: wall, spread, best point"),
     Key("sort", "o", "sort", "o", "order", "Order by depth, by residual, by time", "stations"),
     Key("filter", "f", "filter", "f", "filter", "Show all, or only what is over or undecided", "stations"),
+    Key("site", "o", "other_site", "o", "other file", "Another site file instead", "whatif"),
     *(
         key
         for where in ("explorer", "planner", "whatif")
@@ -114,7 +115,6 @@ TABLE = (
             Key("restore-all", "R", "restore_all", "R", "", "All inputs as in the site file", where),
         )
     ),
-    Key("site", "o", "other_site", "o", "other file", "Another site file instead", "whatif"),
     Key("keep", "k", "keep", "k", "keep as B", "Keep this prediction as B, to compare with", "explorer"),
     Key("swap", "x", "swap", "x", "", "Change over A and B", "explorer"),
     Key("alone", "n", "alone", "n", "", "Forget B", "explorer"),

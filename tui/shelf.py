@@ -92,7 +92,8 @@ def line(one: RunCard, *, picked: bool, units: Units = METRIC) -> tuple[str, Rol
     """Return a card as a line; a file that cannot be read tells why."""
     mark = "*" if picked else " "
     if one.error:
-        return f"{mark} {safe(one.path.name, 34)}: {one.error}", Role.WARNING
+        why = one.error.removeprefix(safe(str(one.path), 300)).lstrip(",: ")
+        return f"{mark} {safe(one.path.name, 40)}: {why}", Role.WARNING
     started = f"{one.started_at:%Y-%m-%d %H:%M}" if one.started_at else ""
     depth = units.depth(one.depth) if one.depth is not None else ""
     site = (one.site or one.path.name)[: _SITE - 1]

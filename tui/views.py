@@ -207,4 +207,5 @@ def alarm_line(snapshot: Snapshot) -> tuple[tuple[Piece, ...], Role | None]:
         return ((f"{text}  ", Role.TEXT), (f"{len(snapshot.alarms)} seen", Role.DIM)), None
     more = f", {waiting - 1} more" if waiting > 1 else ""
     under = Role.GROUND_WARNING if "warning" in worst.name else Role.GROUND_ACTION
-    return ((f"{text}{more}   (a: seen)", Role.ON_GROUND),), under
+    key = "   (a: seen)" if snapshot.mode == "live" else ""
+    return ((f"{text}{more}{key}", Role.ON_GROUND),), under

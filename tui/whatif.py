@@ -31,7 +31,7 @@ SETTINGS = (
     Dial(path="guide.start_north_mm", says="start north", step=1.0),
 )
 """Those that are asked about most; every other by a site file."""
-_NAME, _NUMBER = 22, 14
+_NAME, _BEFORE, _AFTER = 19, 12, 9
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -58,10 +58,10 @@ def _shown(value: object) -> str:
 def table(found: Outcomes, units: Units = METRIC) -> tuple[str, ...]:
     """Return both outcomes side by side, a head first."""
     recorded, used = _facts(found.recorded, units), _facts(found.used, units)
-    lines = [f"{'':<{_NAME}}{'as recorded':>{_NUMBER}}{'what if':>{_NUMBER}}"]
+    lines = [f"{'':<{_NAME}}{'as recorded':>{_BEFORE}}{'what if':>{_AFTER}}"]
     for (name, before), (_, after) in zip(recorded, used, strict=True):
-        mark = "" if before == after else "  *"
-        lines.append(f"{name:<{_NAME}}{before:>{_NUMBER}}{after:>{_NUMBER}}{mark}")
+        mark = "" if before == after else " *"
+        lines.append(f"{name:<{_NAME}}{before:>{_BEFORE}}{after:>{_AFTER}}{mark}")
     return tuple(lines)
 
 

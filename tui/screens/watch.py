@@ -128,7 +128,7 @@ class WatchScreen(RunScreen):
             )
         )
         self.query_one(Figures).show(*views.figures(self.session, one))
-        self.query_one(AlarmList).show(latest.alarms)
+        self.query_one(AlarmList).show(latest.alarms, live=latest.mode == "live")
 
     def _show_if_any(self, line: TextLine, pieces: tuple[Piece, ...]) -> None:
         """Give a line the rows that its words need, three at most, and none without words."""

@@ -28,6 +28,7 @@ class AlarmList(CellWidget):
     """The alarms under a title, long ones on several lines; the last line says when there are more."""
 
     alarms: tuple[AlarmView, ...] = ()
+    live: bool = True
 
     class Clicked(Message):
         """The list was clicked."""
@@ -36,16 +37,17 @@ class AlarmList(CellWidget):
         """Ask for the board."""
         self.post_message(self.Clicked())
 
-    def show(self, alarms: tuple[AlarmView, ...]) -> None:
-        """Draw another list."""
-        if alarms != self.alarms:
-            self.alarms = alarms
+    def show(self, alarms: tuple[AlarmView, ...], *, live: bool = True) -> None:
+        """Draw another list; only a live run has the key that acknowledges."""
+        if (alarms, live) != (self.alarms, self.live):
+            self.alarms, self.live = alarms, live
             self.redraw()
 
     def draw(self, sheet: Raster) -> None:
         """Write the list under its title."""
         waiting = sum(one.state in words.WANTS_ANSWER for one in self.alarms)
-        title = f"alarms: {waiting} to acknowledge (key a)" if waiting else "alarms: none to acknowledge"
+        key = " (key a)" if self.live else ""
+        title = f"alarms: {waiting} to acknowledge{key}" if waiting else "alarms: none to acknowledge"
         sheet.text(0, 0, title, Role.STRONG)
         row = 1
         for one in in_order(self.alarms):
