@@ -6,7 +6,9 @@ another locale; and a SIGCONT that follows no SIGTSTP (the system sends one with
 its threads a second time and leaves one running for ever. A run must survive all three.
 """
 
+import asyncio
 import os
+from collections.abc import Callable
 from contextlib import suppress
 from typing import Any, TextIO
 
@@ -49,17 +51,36 @@ class PatientDriver(LinuxDriver):
     """The stock driver over a patient file, reading on after bytes that it cannot understand."""
 
     def __init__(self, *arguments: Any, **options: Any) -> None:
+        self._loop: asyncio.AbstractEventLoop | None = None
         super().__init__(*arguments, **options)
         self._file: Any = PatientFile(self._file)
 
-    def _sigcont_application(self, *arguments: Any) -> None:
+    def start_application_mode(self) -> None:
+        """Take the terminal."""
+        self._loop = asyncio.get_running_loop()
+        super().start_application_mode()
+
+    # A signal may come while the output queue is locked by the very thread that handles it: letting go of the
+    # terminal, which writes, has to wait until the event loop comes round.
+
+    def _sigtstp_application(self, *_: Any) -> None:
+        self._soon(super()._sigtstp_application)
+
+    def _sigcont_application(self, *_: Any) -> None:
+        self._soon(self._retake)
+
+    def _soon(self, action: Callable[[], None]) -> None:
+        if self._loop is not None and not self._loop.is_closed():
+            self._loop.call_soon_threadsafe(action)
+
+    def _retake(self) -> None:
         """Take the terminal again after a stop; SIGSTOP gave no chance to let go of it before."""
         if not os.isatty(self.fileno):
             return
         if not self._must_signal_resume:
             self.suspend_application_mode()
             self._must_signal_resume = True
-        super()._sigcont_application(*arguments)
+        super()._sigcont_application()
 
     def run_input_thread(self) -> None:
         """Read keys until told to stop; the bytes read with one that is no text are left out."""
