@@ -9,9 +9,9 @@ from numpy.typing import NDArray
 from eastfall.tui.roles import Role
 
 BLANK = ord(" ")
-_BRAILLE_WEIGHTS = np.array([[1, 8], [2, 16], [4, 32], [64, 128]], dtype=np.uint16)
-_HALF_WEIGHTS = np.array([[1], [2]], dtype=np.uint16)
-_LONE_WEIGHTS = np.array([[1]], dtype=np.uint16)
+_BRAILLE_WEIGHTS = np.array([[1, 8], [2, 16], [4, 32], [64, 128]], dtype=np.uint8)
+_HALF_WEIGHTS = np.array([[1], [2]], dtype=np.uint8)
+_LONE_WEIGHTS = np.array([[1]], dtype=np.uint8)
 _BRAILLE_TABLE = np.arange(0x2800, 0x2900, dtype=np.int32)
 _BRAILLE_TABLE[0] = BLANK
 _HALF_TABLE = np.array([ord(c) for c in " ▀▄█"], dtype=np.int32)
@@ -39,7 +39,7 @@ class Glyphs:
     name: Literal["braille", "half", "ascii"]
     across: int
     down: int
-    weights: NDArray[np.uint16]
+    weights: NDArray[np.uint8]
     table: NDArray[np.int32]
     measured: str
     expected: str

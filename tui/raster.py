@@ -7,7 +7,7 @@ import unicodedata
 from collections.abc import Callable, Hashable
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import Self
+from typing import Any, Self
 
 import numpy as np
 from numpy.typing import NDArray
@@ -103,18 +103,22 @@ class Raster:
 
     def packed(self, plane: Plane) -> Packed:
         """Return a plane as one number a cell, ready to be put."""
+        dots = plane.view(np.uint8)
         down, across = self.glyphs.down, self.glyphs.across
-        blocks = plane.reshape(plane.shape[0] // down, down, plane.shape[1] // across, across)
-        return np.einsum("ijkl,jl->ik", blocks, self.glyphs.weights, dtype=np.uint16, casting="unsafe")
+        packed = np.zeros((plane.shape[0] // down, plane.shape[1] // across), dtype=np.uint8)
+        for row in range(down):
+            for column in range(across):
+                packed |= dots[row::down, column::across] * self.glyphs.weights[row, column]
+        return packed.astype(np.uint16)
 
     def put(self, packed: Packed, role: Role, column: int = 0, row: int = 0) -> None:
         """Add a packed plane, as `stamp` does."""
         hit = packed > 0
         part = (slice(row, row + packed.shape[0]), slice(column, column + packed.shape[1]))
         self._bits[part] |= packed
-        self._cells.ink[part][hit] = role
+        np.copyto(self._cells.ink[part], int(role), where=hit)
         if self.glyphs.name == "ascii":
-            self._letters[part][hit] = ord(ASCII_OF_ROLE.get(role, "#"))
+            np.copyto(self._letters[part], ord(ASCII_OF_ROLE.get(role, "#")), where=hit)
 
     def tint(self, plane: Plane, role: Role) -> None:
         """Colour the ground of every cell in which the plane has a dot."""
@@ -124,11 +128,10 @@ class Raster:
     def text(self, column: int, row: int, words: str, role: Role) -> int:
         """Write over whatever is there, leave out what falls outside, and return how many columns the words take."""
         codes = columns(in_ascii(words) if self.glyphs.name == "ascii" else words)
-        shown = codes[max(0, -column) : max(0, self.width - column)]
-        if 0 <= row < self.height and len(shown):
-            start = max(column, 0)
-            self._letters[row, start : start + len(shown)] = shown
-            self._cells.ink[row, start : start + len(shown)] = role
+        start, stop = max(column, 0), min(column + len(codes), self.width)
+        if start < stop and 0 <= row < self.height:
+            self._letters[row, start:stop] = codes[start - column : stop - column]
+            self._cells.ink[row, start:stop] = role
         return len(codes)
 
     def ground(self, row: int, start: int, stop: int, role: Role) -> None:
@@ -144,23 +147,29 @@ class Raster:
 
 
 class Kept:
-    """Packed planes that seldom change, kept by what they were drawn from.
+    """What seldom changes from one picture to the next, kept by what it was made from.
 
     Parameters
     ----------
     most : int
-        How many; beyond that all are forgotten.
+        How many things; beyond that the older half is forgotten.
     """
 
-    def __init__(self, most: int = 48) -> None:
+    def __init__(self, most: int = 64) -> None:
         self._most = most
-        self._packed: dict[Hashable, Packed] = {}
+        self._made: dict[Hashable, Any] = {}
 
     def packed(self, key: Hashable, draw: Callable[[], Packed]) -> Packed:
-        """Return what belongs to a key, drawn when it is not kept."""
-        found = self._packed.get(key)
+        """Return the packed plane that belongs to a key, drawn when it is not kept."""
+        found: Packed = self.made(key, draw)
+        return found
+
+    def made(self, key: Hashable, make: Callable[[], Any]) -> Any:
+        """Return what belongs to a key, made when it is not kept."""
+        found = self._made.get(key)
         if found is None:
-            if len(self._packed) >= self._most:
-                self._packed.clear()
-            found = self._packed[key] = draw()
+            if len(self._made) >= self._most:
+                for old in list(self._made)[: self._most // 2]:
+                    del self._made[old]
+            found = self._made[key] = make()
         return found

@@ -1,6 +1,7 @@
 """The numbers that matter, three rows high, each with its name and unit beside it."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
@@ -49,6 +50,7 @@ def dots_of(value: str) -> tuple[str, ...]:
     return tuple("".join(_DOTS.get(one, (".",) * 5)[row] + "." for one in value) for row in range(5))
 
 
+@lru_cache(maxsize=512)
 def large(value: str) -> tuple[str, str, str]:
     """Return a number as three rows of half blocks; a sign without a drawing is left out."""
     rows = ["", "", ""]

@@ -305,14 +305,19 @@ class Panel(PanelGround):
 
     def _extras(self) -> None:
         """Draw where a bob would hang and a dropped body would be, the whole way down, with a letter at the end."""
-        depths = np.linspace(self.depth.low, self.depth.high, 64)
         for letter, role, curve in self.view.extras:
-            values = curve(depths)[self.which]
-            across, down = self.axis.dot(values), self.depth.dot(depths)
+            across, down, last = self.view.kept.made(
+                (id(curve), self.which, self.depth, self.axis), partial(self._curve, curve)
+            )
             self._still(role, id(curve), partial(polyline, x=across, y=down))
-            known = np.flatnonzero(np.isfinite(values))
-            if known.size:
-                self._mark(float(across[known[-1]]), self.sheet.height - BELOW - 1, letter, role)
+            self._mark(last, self.sheet.height - BELOW - 1, letter, role)
+
+    def _curve(self, curve: Curve) -> tuple[Floats, Floats, float]:
+        """Return a curve of depth in dots across and down, and where across it ends; NaN for nowhere."""
+        depths = np.linspace(self.depth.low, self.depth.high, 64)
+        across, down = self.axis.dot(curve(depths)[self.which]), self.depth.dot(depths)
+        known = across[np.isfinite(across)]
+        return across, down, float(known[-1]) if known.size else float("nan")
 
     # -- words -----------------------------------------------------------------------------------------------------
 

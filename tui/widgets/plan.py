@@ -1,6 +1,6 @@
 """The plan at one depth, north up: measured, expected and limits close by, or the shaft wall; true in both ways."""
 
-from collections.abc import Iterable
+from collections.abc import Hashable, Iterable
 from dataclasses import dataclass
 from math import isfinite
 from typing import Literal
@@ -20,6 +20,8 @@ CELL_ASPECT = 2.0
 LEAST_WIDTH, LEAST_HEIGHT = 14, 6
 ELLIPSE = 2.4477
 """Half-axes of the 95 % ellipse of two normal variables, in standard deviations: sqrt(-2 ln 0.05)."""
+
+_NOWHERE = (1e6, 1e6)  # m; stands for a point that there is none of
 
 Scope = Literal["close", "wall"]
 Point = tuple[float, float]
@@ -56,6 +58,7 @@ class Plan(CellWidget):
     def __init__(self, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
         super().__init__(id=id)
         self.kept = Kept()
+        self._drawn: Hashable = None
 
     @property
     def aspect(self) -> float:
@@ -63,9 +66,19 @@ class Plan(CellWidget):
         return getattr(self.app, "cell_aspect", CELL_ASPECT)
 
     def show(self, view: PlanView, scope: Scope) -> None:
-        """Draw another view."""
+        """Draw another view, unless all of it comes out within half a dot of where it stands."""
         self.view, self.scope = view, scope
-        self.redraw()
+        seen = self._seen(view) if self.is_on_screen else None
+        if seen is None or seen != self._drawn:
+            self.redraw()
+            self._drawn = seen
+
+    def _seen(self, view: PlanView) -> Hashable:
+        """Return what tells one picture from another; None where there is more to it than single marks."""
+        if view.one is None or view.trail[0].size or view.landings[0].size or view.rest is not None:
+            return None
+        sheet = PlanSheet(view, self.scope, Raster(*self.size, self.glyphs), self.aspect, self.kept)
+        return sheet.places(view, view.one), id(self.app.theme), self.units.name
 
     def draw(self, sheet: Raster) -> None:
         """Draw the plan, or say why there is none."""
@@ -124,6 +137,22 @@ class PlanSheet:
         )
         return x, y
 
+    def places(self, view: PlanView, one: Standing | Station) -> Hashable:
+        """Return where everything comes to lie, in half dots, and the words that change."""
+        points = (
+            (0.0, 0.0),
+            (one.measured_east, one.measured_north),
+            (one.expected_east, one.expected_north),
+            self._shaft_centre(view),
+            view.bob or _NOWHERE,
+            view.fall or _NOWHERE,
+        )
+        if not all(isfinite(east) and isfinite(north) for east, north in points):
+            return None
+        half = [round(2.0 * float(place)) for point in points for place in self.at(*point)]
+        gap = None if view.clearance is None else view.units.depth(view.clearance, 2)
+        return (*half, self.scope, self.size, self.squash, self.per_metre, one.warning, one.action, gap)
+
     def draw(self) -> None:
         """Draw axes, circles, curves and marks, then the words."""
         self._cross()
@@ -147,9 +176,14 @@ class PlanSheet:
     def _plane(self) -> Plane:
         return np.zeros((self.size[1], self.size[0]), dtype=np.bool_)
 
+    def _settled(self, point: Point) -> tuple[float, float]:
+        """Return the place of a point to a quarter of a dot, so that what hangs on it is not drawn anew for less."""
+        x, y = (float(one) for one in self.at(*point))
+        return (round(4.0 * x) / 4.0, round(4.0 * y) / 4.0) if isfinite(x) and isfinite(y) else (x, y)
+
     def _cross(self) -> None:
         """Draw the lines north-south and east-west through the reference line."""
-        x, y = (float(one) for one in self.at(0.0, 0.0))
+        x, y = self._settled((0.0, 0.0))
 
         def drawn() -> Packed:
             plane, across = self._plane(), self._plane()
@@ -161,7 +195,7 @@ class PlanSheet:
         self.sheet.put(self.kept.packed((Role.DIM, self.size, x, y), drawn), Role.DIM, 0, 1)
 
     def _circle(self, centre: Point, radius: float, role: Role, gaps: int) -> None:
-        x, y = (float(one) for one in self.at(*centre))
+        x, y = self._settled(centre)
         dots = radius * self.per_metre
         if not (isfinite(dots) and isfinite(x) and isfinite(y)):
             return
@@ -173,17 +207,22 @@ class PlanSheet:
 
         self.sheet.put(self.kept.packed((role, self.size, x, y, dots, self.squash), drawn), role, 0, 1)
 
+    def _lately(self, view: PlanView) -> None:
+        """Draw where it was lately, and where bodies landed."""
+        plane = self._plane()
+        polyline(plane, *self.at(*view.trail))
+        landed = self.at(*view.landings)
+        segments(plane, *landed, *landed)
+        self._stamp(plane, Role.PAST)
+
     def _evidence(self, view: PlanView, one: Standing | Station) -> None:
         expected = (one.expected_east, one.expected_north)
         measured = (one.measured_east, one.measured_north)
         if self.scope == "close":
             self._circle(expected, one.warning, Role.WARNING, 28)
             self._circle(expected, one.action, Role.ACTION, 0)
-            plane = self._plane()
-            polyline(plane, *self.at(*view.trail))
-            landed = self.at(*view.landings)
-            segments(plane, *landed, *landed)
-            self._stamp(plane, Role.PAST)
+            if view.trail[0].size or view.landings[0].size:
+                self._lately(view)
             self._residual(expected, measured)
             if view.rest is not None:
                 self._ellipse(view.rest)
