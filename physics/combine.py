@@ -65,7 +65,7 @@ def _pair(stations: tuple[Station, ...]) -> tuple[dict[float, Station], dict[flo
         # The pass up begins where the pass down ends: its deepest station is the sum's own turning point.
         up[max(down)] = down[max(down)]
     common = sorted(down.keys() & up.keys())
-    if len(common) < 2:
+    if not common:
         return None
     return {z: down[z] for z in common}, {z: up[z] for z in common}
 
@@ -114,6 +114,8 @@ def best_estimate(
     if assumptions.run.kind != "guided":
         return (), ()
     pair = _pair(stations)
+    if pair is not None and len(pair[0]) < 2:
+        return (), ()
     notes: list[str] = []
     line = _one_pass(stations) if pair is None else _two_passes(pair, assumptions, notes)
     if line is None:
