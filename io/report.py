@@ -12,7 +12,7 @@ from typing import Any
 
 import numpy as np
 
-from eastfall.io import reportview
+from eastfall.io import reportfindings, reportview
 from eastfall.io.compare import Comparison, in_words
 from eastfall.io.outputs import refuse_existing, write_text
 from eastfall.io.prediction import REFERENCE_LINES
@@ -110,7 +110,7 @@ def report_html(
     environment.filters["css"] = _css_text
     run = reduction.site.assumptions.run
     made = (made_at or datetime.now(UTC)).astimezone(UTC)
-    view = reportview.view(reduction)
+    view = {**reportview.view(reduction), **reportfindings.view(reduction)}
     return environment.get_template("report.html").render(
         v=view,
         verdict="undecided" if reduction.seal_state == "changed" else reduction.verdict or "",
@@ -151,7 +151,7 @@ def _figures(reduction: Reduction) -> dict[str, str]:
 
 def report_text(reduction: Reduction) -> str:
     """Return the report as Markdown, for a terminal or a mail: everything but figures, formulas and defaults."""
-    view = reportview.view(reduction)
+    view = {**reportview.view(reduction), **reportfindings.view(reduction)}
     run = reduction.site.assumptions.run
     parts = [
         f"# {_inert(view['title'])}",
@@ -163,6 +163,16 @@ def report_text(reduction: Reduction) -> str:
         _section("Environment assumed", _facts(view["environment"])),
         _section("Stations (mm)", _markdown(view["stations"], most=_MARKDOWN_STATIONS)),
         _section("Closure", "\n\n".join(one for one in (view["closure"], view["rest_point"]) if one)),
+        *(
+            _section(title, _markdown(view[name]))
+            for title, name in (
+                ("Best estimate (mm)", "best"),
+                ("Lean and clearance", "checks"),
+                ("What would decide (mm)", "undecided"),
+            )
+            if view[name].rows
+        ),
+        *([_section("Two faces", view["faces"])] if view["faces"] else []),
         _section("Alarms", _markdown(view["alarms"])),
         _section("Notes, acknowledgements, settings changed", _markdown(view["people"])),
         _section("Uncertainty budget", _markdown(view["budget"])),

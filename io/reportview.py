@@ -214,7 +214,7 @@ def rest_point(reduction: Reduction) -> str | None:
     fit = "" if one.fits else " The swing does not follow the model: " + safe(one.message, 200)
     return (
         f"The bob comes to rest {mm(one.east)} mm east and {mm(one.north)} mm north of the reference line, "
-        f"U {plain_mm(2 * one.u_east)} and {plain_mm(2 * one.u_north)} mm, from {float(one.swings):.1f} single "
+        f"U {plain_mm(2 * one.u_east)} and {plain_mm(2 * one.u_north)} mm, from {float(one.swings):.1f} full "
         f"swings of period {float(one.period):.2f} s, {_fading(float(one.decay))}.{fit}"
     )
 
@@ -320,7 +320,9 @@ def record(reduction: Reduction) -> list[tuple[str, str]]:
 
 def remarks(reduction: Reduction) -> list[str]:
     """Return what a reader must know of the answer."""
-    notes = [safe(one, 400) for one in reduction.standing.notes] if reduction.standing else []
+    told = reduction.standing.notes if reduction.standing else ()
+    # What the closed run adds may repeat what stood at its end.
+    notes = [safe(one, 400) for one in dict.fromkeys([*told, *reduction.result.notes])]
     found = reduction.verification
     if found is not None and found.state != "intact":
         notes.insert(0, f"The record is {found.state}: {found.reason}.")

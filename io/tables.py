@@ -1,10 +1,10 @@
 """The shapes that other programs rely on: plain dicts with units in their keys, millimetres, and null for absent."""
 
-from math import isfinite
+from math import degrees, isfinite
 from typing import Any
 
 from eastfall.io.reduce import Reduction
-from eastfall.physics.findings import AlarmChange, Closure, RestPoint, Station
+from eastfall.physics.findings import AlarmChange, Best, Closure, FaceSums, RestPoint, Station
 
 STATION_KEYS = (
     "depth_m",
@@ -47,6 +47,12 @@ def station_row(station: Station) -> dict[str, Any]:
         "pass": station.direction,
         **lengths,
         "verdict": station.verdict,
+        "readings": station.readings,
+        "at_rest": station.still,
+        "lean_mmpm": millimetres(station.lean),
+        "lean_verdict": station.lean_verdict,
+        "clearance_mm": millimetres(station.clearance),
+        "clearance_verdict": station.clearance_verdict,
     }
 
 
@@ -89,6 +95,37 @@ def rest_point_row(rest: RestPoint | None) -> dict[str, Any] | None:
     }
 
 
+def best_row(one: Best) -> dict[str, Any]:
+    """Return the best estimate at a depth, from all passes and a known end."""
+    return {
+        "depth_m": number(one.depth),
+        "residual_east_mm": millimetres(one.east),
+        "residual_north_mm": millimetres(one.north),
+        "u_east_mm": millimetres(one.u_east),
+        "u_north_mm": millimetres(one.u_north),
+        "passes": one.passes,
+        "apart_east_mm": millimetres(one.apart_east),
+        "apart_north_mm": millimetres(one.apart_north),
+        "verdict": one.verdict,
+    }
+
+
+def faces_row(one: FaceSums | None) -> dict[str, Any] | None:
+    """Return what two faces say of the instrument."""
+    if one is None:
+        return None
+    return {
+        "depths": len(one.depth),
+        "unpaired": one.unpaired,
+        "suspect_depths_m": [number(depth) for depth in one.suspect_depths],
+        **{
+            f"{name}_deg": number(degrees(getattr(one, name)))
+            for side in "ab"
+            for name in (f"mean_{side}", f"spread_{side}", f"zero_{side}", f"u_zero_{side}")
+        },
+    }
+
+
 def reduce_table(reduction: Reduction) -> dict[str, Any]:
     """Return what `reduce` prints as JSON."""
     result = reduction.result
@@ -101,4 +138,9 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "alarms": [alarm_row(one) for one in result.alarms],
         "closure": closure_row(result.closure),
         "rest_point": rest_point_row(result.rest_point),
+        "best": [best_row(one) for one in result.best],
+        "faces": faces_row(result.faces),
+        "notes": list(
+            dict.fromkeys([*(reduction.standing.notes if reduction.standing else ()), *result.notes])
+        ),
     }
