@@ -1,6 +1,7 @@
 """The runs of some folders as a list: orders, filters, lines, names for what is written from one; draws nothing."""
 
 from collections.abc import Callable, Iterable, Sequence
+from functools import partial
 from pathlib import Path
 from typing import Any
 
@@ -45,13 +46,13 @@ def cards(where: Sequence[Path], progress: Progress, *, judged: bool) -> tuple[R
     total = sum(len(log_files(one)) for one in where)
     found: list[RunCard] = []
     for folder in where:
-        before = len(found)
-        found += list_runs(
-            folder,
-            lambda done, _, before=before: progress(before + done, total),
-            judged=judged,  # type: ignore[misc]
-        )
+        found += list_runs(folder, partial(_onward, progress, len(found), total), judged=judged)
     return tuple(found)
+
+
+def _onward(progress: Progress, before: int, total: int, done: int, _: int) -> None:
+    """Tell how far it is over all folders."""
+    progress(before + done, total)
 
 
 def chosen(found: Iterable[RunCard], order: str, only: str) -> list[RunCard]:

@@ -15,7 +15,7 @@ WINDS = ("N", "NE", "E", "SE", "S", "SW", "W", "NW")
 IN_WORDS = ("north", "north-east", "east", "south-east", "south", "south-west", "west", "north-west")
 BEATS = (("over", 0.4), ("warned", 0.8), ("off", 1.6))
 """Seconds between two bells by how far it is off: beyond the action limit or not surely inside of it, past the warning
-limit, off by more than its uncertainty. Silence says: leave it."""
+limit, off by more than its uncertainty. Silence says: do not move it."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -69,8 +69,8 @@ def steer(one: "Standing | None", kind: "Kind", units: Units = METRIC) -> Steer:
 
 def _beat(one: "Standing", length: float) -> float | None:
     beats = dict(BEATS)
+    if length <= words.expanded(one):
+        return None
     if one.verdict != "within":
         return beats["over"]
-    if length > one.warning:
-        return beats["warned"]
-    return beats["off"] if length > words.expanded(one) else None
+    return beats["warned"] if length > one.warning else beats["off"]

@@ -106,6 +106,11 @@ def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
 
 def _move(one: Judged, length: float, units: Units) -> str:
     """Return which way and how far to bring a residual to nothing."""
+    if length <= expanded(one) and one.verdict != "within":
+        return (
+            f"Do not move it yet: {units.offset(length)} {units.short} is less than its uncertainty, "
+            f"± {units.offset(expanded(one))} {units.short}, and that is too much to judge by."
+        )
     if length <= expanded(one):
         return (
             f"Leave it: {units.offset(length)} {units.short} is less than its uncertainty, "

@@ -153,3 +153,13 @@ def test_swing_tells_what_is_left_to_wait_for() -> None:
     assert enough.endswith("swings 1.0 mm to each side")
     touching = replace(rest, message="the line may be touching: it swings in 10.00 s from side to side")
     assert "MAY BE TOUCHING" in words.swing(touching)
+
+
+def test_what_is_not_known_well_enough_is_not_to_be_moved(standing: Make) -> None:
+    """5.9 mm with ± 37 mm against 20 mm: undecided, and nobody is told that it may be left."""
+    vague = standing(
+        measured_east=0.0059, measured_north=0.0, expected_east=0.0, u_east=0.0185, u_north=0.0185,
+        verdict="undecided",
+    )  # fmt: skip
+    told = words.steering(vague, "hung")
+    assert told.startswith("Do not move it yet: 5.9 mm is less than its uncertainty, ± 37.0 mm")

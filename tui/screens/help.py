@@ -37,7 +37,7 @@ against that of a free line, which goes with the root of its length; a line
 that swings faster touches something.
 
 Steering (key d): bell fast: over or undecided; slower: past warning; slow:
-off by more than the uncertainty; silent: leave it.
+off by more than the uncertainty; silent: do not move it.
 
 Plan, north up
   rings     warning limit inside, action limit outside, about the expected

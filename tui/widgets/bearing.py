@@ -102,7 +102,8 @@ class BearingView(CellWidget):
         if self.steer.angle is not None:
             sheet.stamp(arrow((plane.shape[0], plane.shape[1]), squash, self.steer.angle), role)
         else:
-            sheet.text(max(0, width // 2 - 4), height // 2, "LEAVE IT", Role.OK)
+            words = "LEAVE IT" if self.steer.verdict == "WITHIN" else "DO NOT MOVE"
+            sheet.text(max(0, (width - len(words)) // 2), height // 2, words, role)
         sheet.text(width // 2, 0, "N", Role.STRONG)
 
     def _figures(self, sheet: Raster, column: int, room: int, role: Role) -> None:

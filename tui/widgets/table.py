@@ -9,7 +9,7 @@ from textual.events import Click
 from textual.geometry import Size
 from textual.message import Message
 from textual.scroll_view import ScrollView
-from textual.scrollbar import ScrollBarRender
+from textual.scrollbar import ScrollBar, ScrollBarRender
 from textual.strip import Strip
 from textual.widget import Widget
 
@@ -21,16 +21,22 @@ Formatter = Callable[[int], tuple[str, Role]]
 """From a row's number to its text and how it is drawn."""
 
 
-class PlainBar(ScrollBarRender):
+class PlainRender(ScrollBarRender):
     """A scroll bar without parts of letters, for terminals that have none."""
 
     VERTICAL_BARS: ClassVar[list[str]] = [" "] * 8
 
 
+class PlainBar(ScrollBar):
+    """The widget that shows it."""
+
+    renderer: ClassVar[type[ScrollBarRender]] = PlainRender
+
+
 def fit_bar(widget: Widget) -> None:
     """Give a widget's scroll bar the letters that the terminal has."""
     if getattr(widget.app, "glyphs", BRAILLE).name == "ascii":
-        widget.vertical_scrollbar.renderer = PlainBar
+        widget.vertical_scrollbar.__class__ = PlainBar
 
 
 class LongTable(ScrollView, can_focus=True):
