@@ -6,7 +6,6 @@ another locale; and a SIGCONT that follows no SIGTSTP (the system sends one with
 its threads a second time and leaves one running for ever. A run must survive all three.
 """
 
-import asyncio
 import os
 from collections.abc import Callable
 from contextlib import suppress
@@ -51,14 +50,8 @@ class PatientDriver(LinuxDriver):
     """The stock driver over a patient file, reading on after bytes that it cannot understand."""
 
     def __init__(self, *arguments: Any, **options: Any) -> None:
-        self._loop: asyncio.AbstractEventLoop | None = None
         super().__init__(*arguments, **options)
         self._file: Any = PatientFile(self._file)
-
-    def start_application_mode(self) -> None:
-        """Take the terminal."""
-        self._loop = asyncio.get_running_loop()
-        super().start_application_mode()
 
     # A signal may come while the output queue is locked by the very thread that handles it: letting go of the
     # terminal, which writes, has to wait until the event loop comes round.
@@ -70,7 +63,7 @@ class PatientDriver(LinuxDriver):
         self._soon(self._retake)
 
     def _soon(self, action: Callable[[], None]) -> None:
-        if self._loop is not None and not self._loop.is_closed():
+        if not self._loop.is_closed():
             self._loop.call_soon_threadsafe(action)
 
     def _retake(self) -> None:
