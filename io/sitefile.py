@@ -110,11 +110,7 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
         if isinstance(value, float) and not math.isfinite(value):
             raise place.error(path, value, "a finite number")
     document = _converted(tree, place)
-    try:
-        assumptions = _assumptions(document)
-    except ParameterError as error:
-        path = _key_of(tree, error.name)
-        raise place.error(path, _at(tree, path), error.expected) from error
+    assumptions = _assumptions(document, tree, place)
     links = tuple(_link(one) for one in document.link)
     _check_columns(assumptions, links, place)
     notes = _calibration_notes(assumptions, place, on)
@@ -224,22 +220,19 @@ def _expectation(path: str, what: str) -> str:
     return f"a section ({plain})" if path in sitekeys.SECTIONS else plain
 
 
-def _key_of(tree: dict[str, Any], name: str) -> str:
-    """Return the dotted key whose SI name a parameter error speaks of."""
-    for section, keys in tree.items():
-        if isinstance(keys, dict):
-            for key in keys:
-                if sitekeys.si_name(key) == name:
-                    return f"{section}.{key}"
-    return name
-
-
-def _assumptions(document: SiteDocument) -> Assumptions:
+def _assumptions(document: SiteDocument, tree: dict[str, Any], place: _Place) -> Assumptions:
     records: dict[str, Any] = {}
     for section, record in sitekeys.RECORDS.items():
         given = getattr(document, section)
-        if given is not None:
+        if given is None:
+            continue
+        try:
             records[section] = record(**_si_fields(given))
+        except ParameterError as error:
+            # The record names its field; the key of the same name stands in this section.
+            keys = [key for key in tree[section] if sitekeys.si_name(key) == error.name]
+            path = f"{section}.{keys[0] if keys else error.name}"
+            raise place.error(path, _at(tree, path), error.expected) from error
     return Assumptions(**records)
 
 

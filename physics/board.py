@@ -115,7 +115,7 @@ class Board:
     # -- on the host's clock ---------------------------------------------------------------------------------------
 
     def turn(
-        self, name: str, host_time: float, *, on: bool, message: str, row: Array | None = None
+        self, name: str, host_time: float, *, on: bool, message: str, rows: Array | None = None
     ) -> list[AlarmChange]:
         """Say that a condition stands, or is gone, from a host time [s] on.
 
@@ -129,8 +129,8 @@ class Board:
             Whether it stands.
         message : str
             What it is about.
-        row : ndarray, shape (3,), optional
-            Time, host time and depth of the reading to date it by; the newest by default.
+        rows : ndarray, shape (3, n), optional
+            Time, host time and depth of the readings to date it by; the newest alone by default.
         """
         alarm = self._on_host.get(name)
         if alarm is None:
@@ -138,23 +138,34 @@ class Board:
         if alarm.standing == on:
             return []
         self._messages[name] = message
-        return self._dated(alarm.set(host_time, on=on), name, message, row)
+        return self._dated(alarm.set(host_time, on=on), name, message, rows)
 
-    def pass_time(self, host_time: float) -> list[AlarmChange]:
-        """Let the host's clock go on to a time [s]."""
+    def pass_time(self, host_time: float, rows: Array | None = None) -> list[AlarmChange]:
+        """Let the host's clock go on to a time [s], past the readings `rows` as for `turn`."""
         changes: list[AlarmChange] = []
         for name, alarm in self._on_host.items():
-            changes += self._dated(alarm.tick(host_time), name, self._messages.get(name, ""))
+            changes += self._dated(alarm.tick(host_time), name, self._messages.get(name, ""), rows)
         return changes
 
     def _dated(
-        self, changes: list[Change], name: str, message: str, row: Array | None = None
+        self, changes: list[Change], name: str, message: str, rows: Array | None = None
     ) -> list[AlarmChange]:
-        if not changes:
-            return []
-        time, host, depth = (self.newest if row is None else row).tolist()
-        apart = host - time if isfinite(host - time) else 0.0
-        return [_told(name, one, one.time - apart, depth, message) for one in changes]
+        """Date each change by the reading that was the newest then, whenever it is looked at."""
+        told = []
+        for one in changes:
+            time, host, depth = self._newest_at(one.time, rows).tolist()
+            apart = host - time if isfinite(host - time) else 0.0
+            told.append(_told(name, one, one.time - apart, depth, message))
+        return told
+
+    def _newest_at(self, host_time: float, rows: Array | None) -> Array:
+        if rows is None or np.isnan(rows[1, -1]):
+            return self.newest
+        known = rows[:, int(np.isnan(rows[1, 0])) :]
+        at = int(np.searchsorted(known[1], host_time))
+        if at == known.shape[1] or known[1, at] != host_time:
+            at = max(at - 1, 0)
+        return known[:, at]
 
     # -- by hand ---------------------------------------------------------------------------------------------------
 

@@ -46,6 +46,7 @@ class FeedWatch:
             return []
         rows = np.concatenate([self._board.newest[:, None], readings.data[:3]], axis=1)
         changes = self._silences(rows) if self._may_be_silent(readings) else []
+        changes += self._board.pass_time(float(rows[1, -1]), rows)
         self._board.newest = rows[:, -1].copy()
         return changes + self._unreadable(rejected, float(rows[1, -1]), rows)
 
@@ -63,16 +64,13 @@ class FeedWatch:
             rows[:2, 0] = 0.0
         changes: list[AlarmChange] = []
         for gap in np.flatnonzero(steps(rows[1]) > self._silent).tolist():
-            for row, host, on in (
-                (rows[:, gap], rows[1, gap] + self._silent, True),
-                (rows[:, gap + 1], rows[1, gap + 1], False),
-            ):
-                changes += self._silence(row, float(host), on=on)
+            for host, on in ((rows[1, gap] + self._silent, True), (rows[1, gap + 1], False)):
+                changes += self._silence(rows, float(host), on=on)
         return changes
 
-    def _silence(self, row: Array, host_time: float, *, on: bool) -> list[AlarmChange]:
+    def _silence(self, rows: Array, host_time: float, *, on: bool) -> list[AlarmChange]:
         message = f"no reading for {self._silent:g} s" if on else "readings again"
-        return self._board.turn(SILENT, host_time, on=on, message=message, row=row)
+        return self._board.turn(SILENT, host_time, on=on, message=message, rows=rows)
 
     def _unreadable(self, rejected: Array, now: float, rows: Array) -> list[AlarmChange]:
         """Raise and return the alarm of bad lines up to a host time [s], dated by the last of the rows before it."""
@@ -81,8 +79,7 @@ class FeedWatch:
         changes: list[AlarmChange] = []
         for when, on in self._bad_lines.feed(rejected[np.isfinite(rejected)], now):
             message = self._often if on else "lines can be read again"
-            row = rows[:, max(int(np.searchsorted(rows[1, 1:], when, side="right")), 0)]
-            changes += self._board.turn(BAD_LINES, when, on=on, message=message, row=row)
+            changes += self._board.turn(BAD_LINES, when, on=on, message=message, rows=rows)
         return changes
 
     def tick(self, host_time: float) -> list[AlarmChange]:
@@ -92,6 +89,6 @@ class FeedWatch:
         changes: list[AlarmChange] = []
         if self._watched and host_time - before > self._silent:
             row = newest if isfinite(newest[1]) else np.array([0.0, 0.0, np.nan])
-            changes += self._silence(row, before + self._silent, on=True)
+            changes += self._silence(row[:, None], before + self._silent, on=True)
         changes += self._unreadable(_NONE, host_time, newest[:, None])
         return changes + self._board.pass_time(host_time)

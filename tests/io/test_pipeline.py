@@ -136,9 +136,10 @@ def test_unknown_events_and_notes_change_nothing() -> None:
     places=st.lists(st.integers(0, 120), max_size=10),
     ticks=st.lists(st.floats(0.0, 1.0), max_size=5),
     noise=st.lists(st.integers(0, 119), max_size=10),
+    first=st.sampled_from(["acknowledge", "shelve"]),
 )
 def test_findings_do_not_depend_on_blocks_or_on_ticks(
-    places: list[int], ticks: list[float], noise: list[int]
+    places: list[int], ticks: list[float], noise: list[int], first: str
 ) -> None:
     """Cut anywhere, with time let pass in between or not, a run with silences and events has one result."""
     texts = journey(120)
@@ -147,7 +148,7 @@ def test_findings_do_not_depend_on_blocks_or_on_ticks(
     times = np.round(0.1 * np.arange(120) + 4.0 * (np.arange(120) > 60), 6)
     events = [
         event(5.0, "condition", name="link lost", on=True, message="gone"),
-        event(5.5, "acknowledge", name="link lost", who=""),
+        event(5.5, first, name="link lost", who="", seconds=1.0, reason="crew change"),
         event(13.0, "condition", name="link lost", on=False, message=""),
     ]
     results = []
