@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 
 from eastfall.physics.errors import ParameterError
 
-STATE_EVENTS = frozenset({"acknowledge", "shelve", "condition", "armed", "end"})
+STATE_EVENTS = frozenset({"acknowledge", "shelve", "condition", "mark", "armed", "end"})
 """Events that change the engine's state: their place among the lines matters, and no block is joined across one."""
 
 

@@ -140,10 +140,21 @@ class Pipeline:
                     self.faults[CUT_SHORT] += 1
             case "end":
                 return self.close(event.time)
+            case "mark":
+                return self._marked(event)
             case "acknowledge" | "shelve" | "condition":
                 ahead = self.tick(event.time)
                 return merged([ahead, self._applied(event)])
         return merged(())
+
+    def _marked(self, event: RunEvent) -> Findings:
+        """Take an offset that a person typed in, as a reading like any other."""
+        values = [_number(event, name) for name in ("depth_m", "east_m", "north_m")]
+        if not self.armed:
+            self.set_aside += 1
+            return merged(())
+        self.frames += 1
+        return self.survey.mark(event.time, *values)
 
     def _applied(self, event: RunEvent) -> Findings:
         try:

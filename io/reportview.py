@@ -239,11 +239,12 @@ _SAID = {
     "acknowledge": "acknowledged",
     "shelve": "shelved",
     "armed": "shaft declared clear",
+    "mark": "offset typed in",
     "setting": "setting changed",
 }
 
 
-_WORDS = ("name", "text", "reason", "key", "from", "to")
+_WORDS = ("name", "text", "reason", "key", "from", "to", "depth_m", "east_m", "north_m")
 
 
 def people(reduction: Reduction) -> Table:
@@ -251,11 +252,8 @@ def people(reduction: Reduction) -> Table:
     rows = []
     for one in reduction.events:
         if one.name in _SAID:
-            words = [
-                str(one.fields[key])
-                for key in ("name", "text", "reason", "key", "from", "to")
-                if one.fields.get(key)
-            ]
+            said = [(key, one.fields[key]) for key in _WORDS if one.fields.get(key) is not None]
+            words = [f"{key[:-2]} {value} m" if key.endswith("_m") else str(value) for key, value in said]
             who = safe(str(one.fields.get("who") or "not named"), 80)
             rows.append((f"{one.time:.1f}", _SAID[one.name], safe(" · ".join(words), 300), who))
     return Table(heads=("time s", "what", "words", "who"), rows=tuple(rows))

@@ -276,6 +276,10 @@ class Run:
         """Say that the shaft is clear: from now on the readings of a `drop` run count."""
         self._said("armed", who=who)
 
+    def mark(self, depth: float, east: float, north: float, who: str = "") -> None:
+        """Take an offset [m] that a person read and typed in, such as where a body landed; it is recorded first."""
+        self._said("mark", depth_m=depth, east_m=east, north_m=north, who=who)
+
     def _said(self, event: str, **fields: object) -> None:
         """Let the word take effect after everything that was stamped before it."""
         with self._engine:

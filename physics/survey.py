@@ -220,6 +220,27 @@ class Survey:
         """
         return self._keep((), self._feed_watch.tick(host_time))
 
+    def mark(self, host_time: float, depth: float, east: float, north: float) -> Findings:
+        """Take one offset that a person read and typed in, such as where a body landed.
+
+        Parameters
+        ----------
+        host_time : float
+            When it was typed [s].
+        depth : float
+            [m].
+        east, north : float
+            Offset from the run's reference line [m].
+        """
+        time, host, _ = self._board.newest
+        ahead = self.tick(host_time)
+        apart = host - time if np.isfinite(host - time) else 0.0
+        reading = Readings.of(
+            time=[host_time - apart], host_time=[host_time], depth=[depth], east=[east], north=[north]
+        )
+        found = self.feed(reading)
+        return Findings(rows=found.rows, stations=found.stations, alarms=ahead.alarms + found.alarms)
+
     def condition(self, host_time: float, name: str, on: bool, message: str) -> Findings:
         """Take a fault that only the edge knows, such as a lost link.
 

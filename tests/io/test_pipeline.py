@@ -130,6 +130,21 @@ def test_unknown_events_and_notes_change_nothing() -> None:
         assert pipeline.take(event(9.0, name)).alarms == ()
 
 
+def test_a_mark_typed_in_is_a_reading_like_any_other_once_the_shaft_is_clear() -> None:
+    """Before arming it is set aside; after it, it closes its level's station with the typed offset."""
+    drop = GUIDED.replace('"guided"', '"drop"')
+    pipeline = Pipeline(site("", drop))
+    mark = {"depth_m": 40.0, "east_m": 0.004, "north_m": -0.001, "who": "R. Vane"}
+    assert len(pipeline.take(event(1.0, "mark", **mark)).rows) == 0
+    pipeline.take(event(2.0, "armed", who="R. Vane"))
+    found = pipeline.take(event(3.0, "mark", **mark))
+    (station,) = found.stations
+    assert (station.depth, station.measured_east, station.measured_north) == (40.0, 0.004, -0.001)
+    assert (pipeline.frames, pipeline.set_aside) == (1, 1)
+    with pytest.raises(LogError, match="east_m is 'far'; expected a number"):
+        pipeline.take(event(4.0, "mark", **{**mark, "east_m": "far"}))
+
+
 @pytest.mark.invariant
 @settings(max_examples=25, deadline=None)
 @given(
