@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 from eastfall.io.safetext import safe
 from eastfall.physics.errors import EastfallError
+from eastfall.tui import words
 from eastfall.tui.store import History, Said, Snapshot
 
 if TYPE_CHECKING:
@@ -161,6 +162,11 @@ class LiveFeed(Feed):
     def note(self, text: str, who: str = "") -> None:
         """Write a note into the record."""
         self._say(lambda: self._source.note(text, who), text, who, is_note=True)
+
+    def mark(self, depth: float, east: float, north: float, who: str = "") -> None:
+        """Take an offset [m] that a person read and typed in."""
+        said = f"mark at {depth:g} m: {words.pair(east, north)}"
+        self._say(lambda: self._source.mark(depth, east, north, who), said, who)
 
     def arm(self, who: str) -> None:
         """Write into the record who declared the shaft clear, and arm the run."""

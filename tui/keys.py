@@ -69,6 +69,7 @@ TABLE = (
     Key("whatif", "i", "what_if", "i", "what if", "Replay: other settings, and what follows from them"),
     Key("who", "u", "who", "u", "", "Your name, as it goes into the record"),
     Key("note", "n", "note", "n", "note", "Write a note into the record"),
+    Key("mark", "x", "mark", "x", "", "Drop run: type in where a body landed"),
     Key("arm", "g", "arm", "g", "", "Drop run: declare the shaft clear and arm"),
     Key("jump", "j", "jump", "j", "jump", "Jump to a depth; in a replay also to a time"),
     Key("back", "left", "skip(-10)", "← →", "10 s", "Replay: ten seconds back or on"),

@@ -1,6 +1,6 @@
 """Findings as plain sentences: every number with its unit, its sign or direction, and the line it is reckoned from."""
 
-from math import atan2, degrees, hypot, isfinite, log
+from math import atan2, degrees, hypot, isfinite, log, nan
 from typing import TYPE_CHECKING, Protocol
 
 from eastfall.physics.findings import AlarmView, RestPoint, Standing
@@ -260,6 +260,28 @@ def read_depth(text: str, units: Units = METRIC) -> float:
     size = {"m": 1.0, "ft": FEET.long_size}
     mark = next((one for one in size if plain.endswith(one)), "")
     return _not_negative(float(plain.removesuffix(mark))) * size.get(mark, units.long_size)
+
+
+def read_mark(text: str) -> tuple[float, float, float]:
+    """Read where a body landed: depth in metres, then east and north in millimetres, as "210 5.5 -3.2".
+
+    Returns
+    -------
+    tuple of float
+        Depth, east and north [m].
+
+    Raises
+    ------
+    ValueError
+        With one line that says what is understood.
+    """
+    try:
+        depth, east, north = (float(one) for one in text.replace(";", " ").split())
+    except ValueError:
+        depth = east = north = nan
+    if not (isfinite(depth + east + north) and depth >= 0.0):
+        raise ValueError("three numbers: depth in m, east and north in mm, as 210 5.5 -3.2")
+    return depth, east / 1000.0, north / 1000.0
 
 
 def _not_negative(value: float) -> float:

@@ -47,6 +47,10 @@ class AskedLive(Asked, LiveFeed):
         """Write it down."""
         self.calls.append(("arm", who))
 
+    def mark(self, depth: float, east: float, north: float, who: str = "") -> None:
+        """Write it down."""
+        self.calls.append(("mark", depth, east, north, who))
+
 
 class AskedReplay(Asked, ReplayFeed):
     """A replay that only listens."""

@@ -223,6 +223,20 @@ async def test_drop_is_armed_only_by_a_name(session: Make, snapshot: Snap) -> No
     assert feed.calls == [("arm", "Ada")]
 
 
+async def test_where_a_body_landed_is_typed_in_and_goes_to_the_run(session: Make, snapshot: Snap) -> None:
+    """Depth in metres, east and north in millimetres; what is no such thing stays in the dialog."""
+    feed = AskedLive()
+    app = built(session("drop"), feed)
+    async with app.run_test(size=(80, 24)) as pilot:
+        await shown(pilot, snapshot(armed=True))
+        assert isinstance(app.screen, WatchScreen)
+        app.screen.who = "Ada"
+        await pilot.press("x", *"210 5.5", "enter")
+        assert "three numbers: depth in m" in "\n".join(lines(app))
+        await pilot.press("space", "minus", *"3.2", "enter")
+    assert feed.calls == [("mark", 210.0, 0.0055, -0.0032, "Ada")]
+
+
 async def test_quitting_a_recording_is_asked_about(session: Make, snapshot: Snap) -> None:
     """The quit key asks; anything but y goes on; y leaves with status 0."""
     app = built(session(), AskedLive())

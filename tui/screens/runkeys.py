@@ -112,6 +112,21 @@ class RunScreen(PaintedScreen[Choice | None]):
             note = safe(text.strip())
             self._named(lambda who: cast("LiveFeed", self.feed).note(note, who))
 
+    def action_mark(self) -> None:
+        """Ask where a body landed; only an armed drop takes marks."""
+        if not isinstance(self.feed, LiveFeed) or self.session.assumptions.run.kind != "drop":
+            return
+        if not self.latest.armed:
+            self.action_arm()
+            return
+        hint = "depth in m, east and north in mm, as 210 5.5 -3.2; enter records it, escape does not"
+        self.app.push_screen(AskText("Where did the body land?", hint, check=words.read_mark), self._marked)
+
+    def _marked(self, text: str | None) -> None:
+        if text:
+            depth, east, north = words.read_mark(text)
+            self._named(lambda who: cast("LiveFeed", self.feed).mark(depth, east, north, who))
+
     def action_arm(self) -> None:
         """Ask whether the shaft is clear, and arm the run."""
         if isinstance(self.feed, LiveFeed) and not self.latest.armed:
