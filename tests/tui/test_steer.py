@@ -90,8 +90,10 @@ def test_figures_are_as_large_as_their_place_allows() -> None:
     assert fitting("8.6", 4, 10) == ["8.6"]
 
 
-@pytest.mark.parametrize(("width", "height"), [(80, 24), (120, 40), (40, 12)])
-@pytest.mark.parametrize("glyphs", ["braille", "ascii"])
+@pytest.mark.parametrize(
+    ("width", "height", "glyphs"),
+    [(80, 24, "braille"), (80, 24, "ascii"), (120, 40, "braille"), (40, 12, "ascii")],
+)
 async def test_it_fills_the_screen_and_says_the_same_in_words(
     session: Callable[..., Session], snapshot: Callable[..., Snapshot], width: int, height: int, glyphs: str
 ) -> None:

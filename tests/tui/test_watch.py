@@ -21,8 +21,17 @@ Snap = Callable[..., Snapshot]
 Make = Callable[..., Session]
 
 
-@pytest.mark.parametrize(("width", "height"), [(80, 24), (120, 40), (200, 60)])
-@pytest.mark.parametrize("glyphs", ["braille", "half", "ascii"])
+@pytest.mark.parametrize(
+    ("width", "height", "glyphs"),
+    [
+        (80, 24, "braille"),
+        (80, 24, "half"),
+        (80, 24, "ascii"),
+        (120, 40, "braille"),
+        (200, 60, "half"),
+        (200, 60, "ascii"),
+    ],
+)
 async def test_answer_steering_evidence_health_and_keys_are_on_every_size(
     session: Make, snapshot: Snap, width: int, height: int, glyphs: str
 ) -> None:
