@@ -67,7 +67,7 @@ def cli(ctx: click.Context) -> None:
     Without a verb the start screen opens. Every verb has its own --help.
     """
     if ctx.invoked_subcommand is None:
-        from eastfall.tui.app import run_start  # noqa: PLC0415 (the screen library only where a screen opens)
+        from eastfall.tui.opening import run_start  # noqa: PLC0415 (the screen library only where a screen opens)
 
         ctx.exit(run_start())
 

@@ -103,8 +103,9 @@ def _rows(count: int) -> np.ndarray:
 def under_test() -> None:
     """Be the program: the real application over the invented source."""
     from eastfall.physics.settings import Assumptions, Run, Shaft, Site
-    from eastfall.tui.app import _shown, watch_app
+    from eastfall.tui.app import watch_app
     from eastfall.tui.feed import LiveFeed
+    from eastfall.tui.opening import shown_over
     from eastfall.tui.session import Session
 
     assumptions = Assumptions(
@@ -119,7 +120,7 @@ def under_test() -> None:
             fall=lambda depth: (1e-6 * depth**1.5, 0.0 * depth),
         )
     )
-    sys.exit(_shown(app, LiveFeed(Source(), app.take)))  # type: ignore[arg-type]
+    sys.exit(shown_over(app, LiveFeed(Source(), app.take)))  # type: ignore[arg-type]
 
 
 def cpu_seconds(pid: int) -> float:

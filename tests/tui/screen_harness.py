@@ -5,7 +5,8 @@ from typing import Any
 from textual.pilot import Pilot
 
 from eastfall.tui.app import Dashboard, watch_app
-from eastfall.tui.feed import LiveFeed, ReplayFeed
+from eastfall.tui.feed import LiveFeed
+from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session
 from eastfall.tui.store import Snapshot

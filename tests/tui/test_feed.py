@@ -9,7 +9,8 @@ import pytest
 
 from eastfall.io.errors import LinkError
 from eastfall.physics.findings import Findings, Rows
-from eastfall.tui.feed import FASTEST, SLOWEST, Feed, LiveFeed, ReplayFeed
+from eastfall.tui.feed import Feed, LiveFeed
+from eastfall.tui.replayfeed import FASTEST, SLOWEST, ReplayFeed
 from eastfall.tui.store import Snapshot
 
 pytestmark = pytest.mark.invariant

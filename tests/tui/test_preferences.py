@@ -9,9 +9,10 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from eastfall.tui import keys
-from eastfall.tui.app import Dashboard, terminal_look
+from eastfall.tui.app import Dashboard
 from eastfall.tui.glyphs import ASCII, BRAILLE
 from eastfall.tui.main import cli
+from eastfall.tui.opening import terminal_look
 from eastfall.tui.preferences import VARIABLE, Preferences, Remembered, place, read, written
 from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.settings import SETTINGS, SettingsScreen, after, in_words
@@ -259,7 +260,7 @@ def test_look_of_a_terminal_comes_with_the_settings(tmp_path: Path, monkeypatch:
     path = tmp_path / "settings.toml"
     path.write_text('glyphs = "ascii"\nunits = "feet"\n')
     monkeypatch.setenv(VARIABLE, str(path))
-    monkeypatch.setattr("eastfall.tui.app.refuse_unless_screen", lambda *_args, **_more: None)
+    monkeypatch.setattr("eastfall.tui.opening.refuse_unless_screen", lambda *_args, **_more: None)
     look = terminal_look()
     assert look["glyphs"] is ASCII
     assert isinstance(look["remembered"], Remembered)

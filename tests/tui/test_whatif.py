@@ -14,7 +14,7 @@ from eastfall.io.replay import Replay
 from eastfall.io.whatif import Difference
 from eastfall.tui import whatif
 from eastfall.tui.app import Dashboard, watch_app
-from eastfall.tui.feed import ReplayFeed
+from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.screens.whatif import WhatIfScreen
 from eastfall.tui.session import replay_session

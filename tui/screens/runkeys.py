@@ -6,8 +6,9 @@ from typing import TYPE_CHECKING, cast
 from eastfall.io.safetext import safe
 from eastfall.tui import sight as look
 from eastfall.tui import words
-from eastfall.tui.feed import Feed, LiveFeed, ReplayFeed
+from eastfall.tui.feed import Feed, LiveFeed
 from eastfall.tui.people import LONGEST, user_name
+from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.screens.alarmboard import AlarmsScreen
 from eastfall.tui.screens.dialogs import AskText, ClearShaft, named
 from eastfall.tui.screens.start import Choice

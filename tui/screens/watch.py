@@ -10,7 +10,7 @@ from textual.events import Click
 
 from eastfall.tui import keys, views, words
 from eastfall.tui import sight as look
-from eastfall.tui.feed import ReplayFeed
+from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.following import FollowingScreen
 from eastfall.tui.screens.runkeys import RunScreen

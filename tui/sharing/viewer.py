@@ -16,11 +16,12 @@ from textual.app import ComposeResult
 
 from eastfall.io.replay import Replay
 from eastfall.physics.errors import EastfallError
-from eastfall.tui.app import Dashboard, replay_session, since_start
-from eastfall.tui.feed import ReplayFeed
+from eastfall.tui.app import Dashboard
+from eastfall.tui.opening import since_start
+from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.watch import WatchScreen
-from eastfall.tui.session import Session
+from eastfall.tui.session import Session, replay_session
 from eastfall.tui.terminal import glyphs_for, wants_no_colour
 from eastfall.tui.themes import THEMES
 from eastfall.tui.widgets.line import KeyLine, TextLine

@@ -28,7 +28,7 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
     if plain:
         _plainly(found)
         return
-    from eastfall.tui.app import run_replay  # noqa: PLC0415
+    from eastfall.tui.opening import run_replay  # noqa: PLC0415
 
     click.get_current_context().exit(run_replay(found, speed=speed, curve=found.pipeline.survey.curve))
 

@@ -103,7 +103,7 @@ def record(
 
 def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
     """Open the dashboard on a new run, and print the log's path when it has ended."""
-    from eastfall.tui.app import run_live  # noqa: PLC0415 (the screen library only where a screen opens)
+    from eastfall.tui.opening import run_live  # noqa: PLC0415 (the screen library only where a screen opens)
 
     with _recorded(site, links, folder, None) as run:
         status = run_live(site, run=run, curve=run.pipeline.survey.curve)

@@ -56,7 +56,7 @@ def expect(
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
     if explore:
-        from eastfall.tui.app import run_explorer  # noqa: PLC0415 (the screen library only where a screen opens)
+        from eastfall.tui.opening import run_explorer  # noqa: PLC0415 (the screen library only where a screen opens)
 
         click.get_current_context().exit(run_explorer(load_site(site)))
     assumptions = load_site(site).assumptions
