@@ -3,15 +3,22 @@
 As it comes, its output thread dies with the first failed write, and the application then waits for ever for room in
 that thread's queue; its input thread ends the application at a byte that is not UTF-8, such as an accented letter of
 another locale; and a SIGCONT that follows no SIGTSTP (the system sends one with the SIGHUP of a closed window) starts
-its threads a second time and leaves one running for ever. A run must survive all three.
+its threads a second time and leaves one running for ever. A run must survive all three. And where no SIGHUP comes with
+the end of the window, since that was not the controlling terminal of the program, the input thread would read nothing
+for ever, at the cost of a core.
 """
 
 import os
+import select
 from collections.abc import Callable
 from contextlib import suppress
 from typing import Any, TextIO
 
 from textual.drivers.linux_driver import LinuxDriver
+
+
+_LOOK = 0.5
+"""Seconds between two looks whether the terminal is still there."""
 
 
 class PatientFile:
@@ -52,6 +59,16 @@ class PatientDriver(LinuxDriver):
     def __init__(self, *arguments: Any, **options: Any) -> None:
         super().__init__(*arguments, **options)
         self._file: Any = PatientFile(self._file)
+        self._hung_up = select.poll()
+        self._hung_up.register(self.fileno, 0)  # what is asked for is nothing; a hang-up is told all the same
+        self._loop.call_later(_LOOK, self._look)
+
+    def _look(self) -> None:
+        """End the application when its terminal is gone, as SIGHUP does."""
+        if self._hung_up.poll(0):
+            self._app.exit(0)
+        else:
+            self._loop.call_later(_LOOK, self._look)
 
     # A signal may come while the output queue is locked by the very thread that handles it: letting go of the
     # terminal, which writes, has to wait until the event loop comes round.

@@ -219,6 +219,25 @@ def test_a_closed_window_ends_the_run_and_closes_the_record(
     assert_whole(tmp_path / "runs", shown, "intact")
 
 
+def test_a_terminal_that_is_gone_without_a_signal_ends_the_run(
+    instrument: Instrument, site: Path, tmp_path: Path
+) -> None:
+    """A terminal that is not the controlling one sends no SIGHUP; its end is noticed, and the log is sealed."""
+    into = tmp_path / "runs"
+    command = (*EASTFALL, "watch", str(site), "--link", instrument.url, "--into", str(into))
+    one = Terminal(command, 80, 24)
+    try:
+        one.wait("WITHIN")
+        found = ANSWER.search(one.text)
+        os.close(one._ours)
+        one.process.wait(PATIENCE)  # its status says nothing: where it would say so is gone
+    finally:
+        one.process.kill()
+        one.process.wait(PATIENCE)
+    assert found is not None
+    assert_whole(into, float(found[1]), "intact")
+
+
 @pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGHUP])
 def test_a_signal_leaves_modes_and_record_in_order(
     window: Callable[..., Window], tmp_path: Path, number: signal.Signals
