@@ -1,4 +1,4 @@
-"""Make the helpers beside the tests importable."""
+"""Make what the tests share, which stands beside them, importable."""
 
 import sys
 from pathlib import Path

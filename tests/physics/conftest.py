@@ -9,7 +9,7 @@ import pytest
 
 from eastfall.physics.settings import Air, Assumptions, Body, Instrument, Limits, Line, Run, Shaft, Site
 
-sys.path.insert(0, str(Path(__file__).parent))  # helpers beside the tests, which are no package
+sys.path.insert(0, str(Path(__file__).parent))  # the folder of the tests is no package
 
 
 def assumptions(kind="guided", *, latitude=57.3, depth=300.0, **changes):

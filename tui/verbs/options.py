@@ -1,4 +1,4 @@
-"""Options and small helpers that several verbs share."""
+"""Options, and ways of printing, that several verbs share."""
 
 import csv
 import json
