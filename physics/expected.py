@@ -41,6 +41,19 @@ def graded(to_depth: float, points: int) -> NDArray[np.float64]:
     return to_depth * np.linspace(0.0, 1.0, points) ** 2
 
 
+def tabulated(assumptions: Assumptions, points: int) -> NDArray[np.float64]:
+    """Return the depths of a table: graded to `reach`, and both sides of every edge of a cross-flow.
+
+    A bob that comes out of a flow is pushed no longer: its rest jumps there, and a line drawn across the jump would
+    give readings near it an offset that neither side has.
+    """
+    deepest = reach(assumptions)
+    flow = () if assumptions.air.is_vacuum else assumptions.air.cross_flow
+    edges = [edge for row in flow for edge in row[:2] if 0.0 < edge < deepest]
+    sides = [*edges, *np.nextafter(edges, 0.0)]
+    return np.union1d(graded(deepest, points), sides)
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Models:
     """The local field and air of a site, and what falls and hangs in them, against the straight vertical."""
@@ -320,7 +333,7 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
         From the models, for assumptions outside their domain.
     """
     models = Models.of(assumptions)
-    depth = graded(reach(assumptions), _POINTS)
+    depth = tabulated(assumptions, _POINTS)
     path = models.body(float(depth[-1]))
     there = path.at(depth)
     reference = models.reference(depth)
@@ -338,7 +351,7 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
         body=body - reference,
         field_line=field_line - reference,
         reference=reference,
-        u=np.stack([np.interp(depth, budget.depth, row) for row in budget.total()]),
+        u=np.sqrt(np.sum(budget.at(depth) ** 2, axis=0)),
         budget=budget,
         fall_time=there.time,
         fall_speed=there.speed,
@@ -381,7 +394,7 @@ def expected_budget(models: Models) -> Budget:
     ----------
     JCGM 100:2008 (GUM), 5.1.3, note 2: numerical partial derivatives.
     """
-    depth = graded(reach(models.assumptions), _COARSE)
+    depth = tabulated(models.assumptions, _COARSE)
     moved = list(shifts(models))
     others = [Models.of(one.assumptions) for one in moved]
     if models.assumptions.run.kind == "drop":

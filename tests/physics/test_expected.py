@@ -163,3 +163,25 @@ def test_north_and_south_of_the_equator_mirror_each_other(shaft):
     north, south = (expected_curve(shaft("drop", latitude=sign * 40.0)) for sign in (1.0, -1.0))
     np.testing.assert_allclose(south.body[0], north.body[0], rtol=1e-12, atol=1e-13)
     np.testing.assert_allclose(south.body[1], -north.body[1], rtol=1e-9, atol=1e-13)
+
+
+@pytest.mark.invariant
+def test_a_bob_on_either_side_of_a_flow_edge_hangs_where_the_model_says_not_between(shaft):
+    """A bob leaves the push of the air at the edge at once: 1 mm beside it the table is within 1 µm of the model."""
+    blown = Air(cross_flow=((0.0, 480.0, 1.0, radians(90.0)), (500.0, 700.0, 0.5, radians(200.0))))
+    assumptions = replace(shaft("hung", depth=1000.0), air=blown)
+    curve = expected_curve(assumptions)
+    depth = np.array([479.999, 480.0, 480.001, 499.999, 500.0, 500.001, 699.999, 700.0, 700.001])
+    assert np.abs(curve.expected(depth) - curve.models.bob(depth)).max() < 1e-6
+    jump = curve.expected(depth)[0, 1] - curve.expected(depth)[0, 0]
+    assert jump < -1e-3, "the bob itself feels the flow"
+
+
+@pytest.mark.invariant
+def test_the_uncertainty_at_any_depth_is_what_its_budget_adds_up_to(shaft):
+    """Also between the depths at which the budget is worked out: within a ten-thousandth, the table's own step."""
+    blown = Air(cross_flow=((480.0, 500.0, 1.0, radians(90.0)), (700.0, 900.0, 0.4, radians(200.0))))
+    curve = expected_curve(replace(shaft("hung", depth=1000.0), air=blown))
+    depth = np.array([470.0, 485.0, 505.0, 550.0, 710.0, 800.0, 910.0, 1000.0])
+    combined = np.sqrt(np.sum(curve.budget.at(depth) ** 2, axis=0))
+    assert curve.look_up(curve.u, depth) == pytest.approx(combined, rel=1e-4)
