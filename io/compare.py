@@ -198,17 +198,6 @@ def difference_rows(comparison: Comparison) -> list[dict[str, Any]]:
     ]
 
 
-def comparison_table(comparison: Comparison) -> dict[str, Any]:
-    """Return what `compare` prints as JSON."""
-    return {
-        "first": comparison.first,
-        "second": comparison.second,
-        "left_out": comparison.left_out,
-        "notes": list(comparison.notes),
-        "depths": difference_rows(comparison),
-    }
-
-
 def in_words(comparison: Comparison) -> str:
     """Return the outcome in one line."""
     moved, all_rows = comparison.moved, comparison.rows

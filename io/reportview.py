@@ -194,7 +194,7 @@ def closure(reduction: Reduction) -> str:
     one = reduction.result.closure
     if one is None:
         return "One pass only: there is no misclosure to state."
-    east, north = one.east - one.expected_east, one.north - one.expected_north
+    east, north = one.misclosure_east, one.misclosure_north
     return (
         f"At {one.depth:.2f} m the up pass ends {mm(one.east)} mm east and {mm(one.north)} mm north of the down pass. "
         f"The moving line alone leaves {mm(one.expected_east)} and {mm(one.expected_north)} mm; "

@@ -1,7 +1,4 @@
-"""What an instrument shows and what it means: corrections, azimuths to true north, and pairs of faces.
-
-Declination and convergence come from libraries at the edge; reading the constants from a file is `io`.
-"""
+"""What an instrument shows and what it means: corrections and pairs of faces; reading the constants is `io`'s business."""
 
 from dataclasses import dataclass
 
@@ -9,7 +6,7 @@ import numpy as np
 import numpy.typing as npt
 
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.settings import Instrument, North
+from eastfall.physics.settings import Instrument
 
 Array = npt.NDArray[np.float64]
 
@@ -100,47 +97,6 @@ def _constants(temperature: npt.ArrayLike | None, one: Instrument) -> tuple[Arra
         one.scale_a * scale,
         one.scale_b * scale,
     )
-
-
-def true_azimuth(
-    azimuth: npt.ArrayLike,
-    azimuth_from: North,
-    declination: float | None = None,
-    convergence: float | None = None,
-) -> Array:
-    """Azimuth from true north.
-
-    Parameters
-    ----------
-    azimuth : array_like
-        Clockwise from the north that `azimuth_from` names [rad].
-    azimuth_from : {"true", "magnetic", "grid"}
-    declination : float, optional
-        Of magnetic north, east of true north positive [rad].
-    convergence : float, optional
-        Of grid north, east of true north positive [rad].
-
-    Returns
-    -------
-    array
-        [rad], 0 to 2π, in the shape of `azimuth`.
-
-    Raises
-    ------
-    ParameterError
-        If what the conversion needs is missing.
-    """
-    turn: float | None = 0.0
-    if azimuth_from == "magnetic":
-        turn = declination
-    elif azimuth_from == "grid":
-        turn = convergence
-    if turn is None:
-        missing = "declination" if azimuth_from == "magnetic" else "convergence"
-        raise ParameterError(
-            missing, None, "rad", f"a value, because the azimuth is from {azimuth_from} north"
-        )
-    return np.mod(np.asarray(azimuth, dtype=np.float64) + turn, 2.0 * np.pi)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

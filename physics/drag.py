@@ -4,8 +4,6 @@ The program uses Morrison's, because it goes through the drag crisis; Haider and
 coefficient acts on a moving body is in `motion`.
 """
 
-from math import pi
-
 import numpy as np
 import numpy.typing as npt
 
@@ -123,30 +121,3 @@ def scaled_morrison_rows(reynolds: Array) -> Array:
         value *= x
     value += coefficients[:, :1]
     return value
-
-
-def terminal_speed(
-    mass: float, diameter: float, drag_coefficient: float, density: float, gravity: float = 9.80665
-) -> float:
-    """Speed at which drag at a constant coefficient balances weight.
-
-    Parameters
-    ----------
-    mass : float
-        m [kg].
-    diameter : float
-        d [m]; the coefficient is on π d²/4.
-    drag_coefficient : float
-        Cd [1].
-    density : float
-        Of the air [kg/m³].
-    gravity : float
-        [m/s²]; the default is standard gravity.
-
-    Returns
-    -------
-    float
-        V = √(2 m g/(ρ Cd A)) [m/s].
-    """
-    area = 0.25 * pi * diameter**2
-    return float(np.sqrt(2.0 * mass * gravity / (density * drag_coefficient * area)))

@@ -12,7 +12,6 @@ import numpy.typing as npt
 from eastfall.physics.air import AirColumn
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.field import LocalField
-from eastfall.physics.moving import lean
 from eastfall.physics.settings import Line
 from eastfall.physics.wire import Wire, check_line
 
@@ -288,68 +287,6 @@ def gathered(
         -np.asarray(east, dtype=np.float64) * L / field.prime_vertical_radius,
         -np.asarray(north, dtype=np.float64) * L / field.meridian_radius,
     )
-
-
-def lowering_lean(
-    speed: npt.ArrayLike, length: npt.ArrayLike, latitude: npt.ArrayLike, gravity: npt.ArrayLike
-) -> Array:
-    """Offset of a bob while its line runs, and the swing that is left when the winch stops.
-
-    Parameters
-    ----------
-    speed : array_like
-        v of the line [m/s], down positive.
-    length : array_like
-        L [m].
-    latitude : array_like
-        φ [rad].
-    gravity : array_like
-        g [m/s²].
-
-    Returns
-    -------
-    array
-        ε L [m], east positive, ε = 2ωv cos φ/g (`moving.lean`); its size is about that of the swing afterwards.
-
-    Raises
-    ------
-    ParameterError
-        As `moving.lean`.
-    """
-    offset: Array = lean(speed, latitude, gravity) * np.asarray(length, dtype=np.float64)
-    return offset
-
-
-def swing_wait(amplitude: npt.ArrayLike, decay: npt.ArrayLike, below: npt.ArrayLike) -> Array:
-    """Time until a swing has died down to a size.
-
-    Parameters
-    ----------
-    amplitude : array_like
-        Now [m], 0 or more.
-    decay : array_like
-        Time in which the amplitude falls to 1/e [s].
-    below : array_like
-        The size to wait for [m].
-
-    Returns
-    -------
-    array
-        decay ln(amplitude/below) [s], broadcast; 0 where the swing is small enough already.
-
-    Raises
-    ------
-    ParameterError
-        If `decay` or `below` is not positive, or an amplitude is negative.
-    """
-    size, wanted = np.asarray(amplitude, dtype=np.float64), np.asarray(below, dtype=np.float64)
-    for name, value, unit in (("decay", np.asarray(decay, dtype=np.float64), "s"), ("below", wanted, "m")):
-        if np.any(value <= 0.0):
-            raise ParameterError(name, value, unit, f"more than 0 {unit}")
-    if np.any(size < 0.0):
-        raise ParameterError("amplitude", amplitude, "m", "0 m or more")
-    wait: Array = np.asarray(decay, dtype=np.float64) * np.log(np.maximum(size / wanted, 1.0))
-    return wait
 
 
 def single_swing(length: npt.ArrayLike) -> Array:

@@ -38,11 +38,6 @@ class Axis:
         """Return the position in dots; outside values lie outside 0 to `dots`."""
         return (np.asarray(values, dtype=float) - self.low) * (self.dots / (self.high - self.low))
 
-    @property
-    def per_dot(self) -> float:
-        """How much one dot stands for."""
-        return (self.high - self.low) / self.dots
-
     def ticks(self, most: int, size: float = 1.0) -> list[float]:
         """Return values round in a unit of a size, at most `most` + 1 of them, zero among them when it is inside."""
         step = round_step((self.high - self.low) / size, most) * size

@@ -16,7 +16,6 @@ from typing import Any, TextIO
 
 from textual.drivers.linux_driver import LinuxDriver
 
-
 _LOOK = 0.5
 """Seconds between two looks whether the terminal is still there."""
 

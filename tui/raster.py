@@ -120,11 +120,6 @@ class Raster:
         if self.glyphs.name == "ascii":
             np.copyto(self._letters[part], ord(ASCII_OF_ROLE.get(role, "#")), where=hit)
 
-    def tint(self, plane: Plane, role: Role) -> None:
-        """Colour the ground of every cell in which the plane has a dot."""
-        blocks = plane.reshape(self.height, self.glyphs.down, self.width, self.glyphs.across)
-        self._cells.ground[blocks.any(axis=(1, 3))] = role
-
     def text(self, column: int, row: int, words: str, role: Role) -> int:
         """Write over whatever is there, leave out what falls outside, and return how many columns the words take."""
         codes = columns(in_ascii(words) if self.glyphs.name == "ascii" else words)

@@ -1,13 +1,11 @@
-"""Instrument corrections, azimuths and pairs of faces."""
-
-from math import pi
+"""Instrument corrections and pairs of faces."""
 
 import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from eastfall.physics.calibration import corrected, pair_faces, shown, true_azimuth
+from eastfall.physics.calibration import corrected, pair_faces, shown
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.settings import DEGREE, Instrument
 
@@ -61,18 +59,6 @@ def test_a_hopeless_instrument_is_refused():
     """Cross terms as large as the scales cannot be undone."""
     with pytest.raises(ParameterError, match="well above the cross terms"):
         corrected(0.0, 0.0, None, Instrument(cross_ab=1.0, cross_ba=1.0))
-
-
-@pytest.mark.invariant
-def test_azimuths_turn_by_declination_or_convergence():
-    """True = magnetic + declination = grid + convergence, east positive, wrapped to one turn."""
-    assert true_azimuth(0.2, "true") == pytest.approx(0.2)
-    assert true_azimuth(0.2, "magnetic", declination=0.05) == pytest.approx(0.25)
-    assert true_azimuth(0.2, "grid", convergence=-0.3) == pytest.approx(2 * pi - 0.1)
-    with pytest.raises(
-        ParameterError, match="declination is None rad; expected a value, because the azimuth is"
-    ):
-        true_azimuth(0.2, "magnetic", convergence=0.1)
 
 
 @pytest.mark.published

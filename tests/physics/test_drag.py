@@ -9,7 +9,6 @@ from eastfall.physics.drag import (
     morrison,
     scaled_morrison,
     scaled_morrison_rows,
-    terminal_speed,
 )
 
 # Measured drag of spheres, data set at ma.iup.edu/projects/CalcDEMma/drag/drag7.html (every third point or so).
@@ -77,11 +76,3 @@ def test_rows_keep_nan() -> None:
     found = scaled_morrison_rows(reynolds)
     assert np.isnan(found).sum() == 1
     assert found[1, 0] == pytest.approx(float(scaled_morrison(np.array(1e5))), rel=1e-12)
-
-
-@pytest.mark.invariant
-def test_drag_balances_weight_at_terminal_speed() -> None:
-    """½ρV²CdA is mg at V."""
-    speed = terminal_speed(0.514, 0.05, 0.45, 1.25)
-    drag = 0.5 * 1.25 * speed**2 * 0.45 * 0.25 * np.pi * 0.05**2
-    assert drag == pytest.approx(0.514 * 9.80665, rel=1e-14)

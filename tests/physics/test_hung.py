@@ -15,12 +15,10 @@ from eastfall.physics.hung import (
     free_period,
     gathered,
     hang,
-    lowering_lean,
     radius_toward,
     shape,
     single_swing,
     stretch,
-    swing_wait,
 )
 from eastfall.physics.moving import lean
 from eastfall.physics.settings import ARCSECOND, Air, Line, Site
@@ -185,9 +183,8 @@ def test_a_line_being_lowered_leans_east_by_its_speed():
         down = hang(FIELD, Line(mass_per_length=mass, line_speed=2.0), 600.0)
         # ε falls with growing gravity by 5e-5 over the line.
         assert down.bob_east - still.bob_east == pytest.approx(
-            lowering_lean(2.0, 600.0, pi / 4, FIELD.gravity), rel=1e-4
+            600.0 * lean(2.0, pi / 4, FIELD.gravity), rel=1e-4
         )
-    assert lowering_lean(2.0, 600.0, pi / 4, 9.8) == 600.0 * lean(2.0, pi / 4, 9.8)
 
 
 def test_lines_that_cannot_hang_are_refused():
@@ -253,17 +250,6 @@ def test_many_lines_gather_as_each_pair_converges():
     # The field's own horizontal pull beside the collar against its gravity is the lean of the vertical there.
     assert east[1] == pytest.approx(1000.0 * pull_east / FIELD.gravity, rel=1e-12)
     assert north[2] == pytest.approx(1000.0 * pull_north / FIELD.gravity, rel=1e-12)
-
-
-@pytest.mark.invariant
-def test_the_wait_is_when_the_swing_has_come_down_to_size():
-    """After the wait the amplitude is the wanted one; a small swing needs none."""
-    wait = swing_wait(0.044, 900.0, 0.001)
-    assert 0.044 * np.exp(-wait / 900.0) == pytest.approx(0.001, rel=1e-14)
-    assert swing_wait(0.0005, 900.0, 0.001) == 0.0
-    assert swing_wait(0.0, 900.0, 0.001) == 0.0
-    with pytest.raises(ParameterError, match=r"decay is 0\.0 s"):
-        swing_wait(0.1, 0.0, 0.001)
 
 
 @pytest.mark.published

@@ -48,7 +48,6 @@ def test_dot_positions_run_from_first_to_past_last() -> None:
     """The low end is dot 0, the high end the number of dots."""
     axis = Axis(low=-2.0, high=2.0, dots=80)
     assert axis.dot([-2.0, 0.0, 2.0]).tolist() == [0.0, 40.0, 80.0]
-    assert axis.per_dot == pytest.approx(0.05)
 
 
 def test_ticks_hold_zero_and_stay_inside() -> None:
