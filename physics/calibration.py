@@ -1,4 +1,4 @@
-"""What an instrument shows and what it means: corrections and pairs of faces; reading the constants is `io`'s business."""
+"""What an instrument shows and what it means: corrections and pairs of faces; reading the constants is for `io`."""
 
 from dataclasses import dataclass
 
