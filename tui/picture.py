@@ -47,8 +47,8 @@ def demo_snapshot(site: "SiteFile", at: float) -> tuple[Pipeline, Snapshot]:
     health = Health(
         links=(
             LinkHealth(
-                name="/dev/ttyUSB0",
-                url="/dev/ttyUSB0",
+                name="emulate",
+                url=site.links[0].url,
                 state="open",
                 retry_in=None,
                 lines=len(lines),
