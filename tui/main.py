@@ -88,6 +88,11 @@ def main() -> None:
         # Whoever read the output has gone; leaving quietly also keeps the interpreter from complaining at exit.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         status = 0
+    except OSError as error:
+        # What the verbs expect to fail they word themselves; this is the rest, as a full disk behind a pipe.
+        where = f"{error.filename}: " if error.filename else ""
+        click.echo(f"eastfall: {_one_line(f'{where}{error.strerror or error}')}", err=True)
+        status = 2
     sys.exit(status if isinstance(status, int) else 0)
 
 

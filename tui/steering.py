@@ -42,7 +42,7 @@ def steer(one: "Standing | None", kind: "Kind", units: Units = METRIC) -> Steer:
         return Steer(line=line)
     length = words.residual_length(one)
     unresolved = kind == "hung" and one.rest_point is not None and not one.rest_point.fits
-    if not isfinite(length) or unresolved:
+    if not isfinite(length) or not isfinite(words.expanded(one)) or unresolved:
         return Steer(line=line)
     told = Steer(
         distance=units.offset(length),

@@ -16,6 +16,11 @@ REFERENCE: "dict[Reference, str]" = {
     "hung-line": "hung line",
 }
 KIND: "dict[Kind, str]" = {"guided": "guided run", "hung": "hung line", "drop": "drop"}
+_NO_MOVE: "dict[Kind, str]" = {
+    "guided": "Do not move it yet: how far the reading can be trusted is not known.",
+    "hung": "Let it swing: too little is seen of it to tell where it comes to rest.",
+    "drop": "Stand clear: nothing to move while bodies fall.",
+}
 VERDICT = {"within": "WITHIN", "over": "OVER", "undecided": "UNDECIDED"}
 
 
@@ -99,8 +104,8 @@ def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
     length = residual_length(one)
     if not isfinite(length):
         return "Nothing to steer by: the readings give no offset."
-    if kind == "drop":
-        return "Stand clear: nothing to move while bodies fall."
+    if kind == "drop" or not isfinite(expanded(one)):
+        return _NO_MOVE[kind]
     return _move(one, length, units)
 
 
@@ -109,7 +114,7 @@ def _move(one: Judged, length: float, units: Units) -> str:
     if length <= expanded(one) and one.verdict != "within":
         return (
             f"Do not move it yet: {units.offset(length)} {units.short} is less than its uncertainty, "
-            f"± {units.offset(expanded(one))} {units.short}, and that is too much to judge by."
+            f"± {units.offset(expanded(one))} {units.short}."
         )
     if length <= expanded(one):
         return (

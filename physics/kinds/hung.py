@@ -100,6 +100,7 @@ class Hung(Plain):
         self._curve = curve
         self._speed = LineSpeed()
         self._level: _Level | None = None
+        self._final: _Level | None = None
         self._closed = 0
         self._rest: RestPoint | None = None
         self._last: Array | None = None
@@ -344,25 +345,27 @@ class Hung(Plain):
         )
 
     def close(self) -> tuple[Station, ...]:
-        """Close the level that the run ends at."""
+        """Close the level that the run ends at; its rest point stays the answer."""
+        self._final = self._level
         return tuple(self._leave())
 
     def judged(self) -> Judged | None:
-        """Return the rest point at the level, or the newest reading of a running line."""
+        """Return the rest point at the level, also of a run that has ended, or a running line's newest reading."""
         if self._last is None:
             return None
-        if self._level is None:
+        level = self._level or self._final
+        if level is None:
             row = dict(zip(ROW, self._last.tolist(), strict=True))
             names = Judged.__slots__
             return Judged(**{name: row[name] for name in names})
-        position, _, parts = self._position(self._level)
+        position, _, parts = self._position(level)
         u_east, u_north = np.sqrt(np.sum(parts**2, axis=0))[:, 0]
         return Judged(
-            depth=self._level.depth,
+            depth=level.depth,
             measured_east=float(position[0]),
             measured_north=float(position[1]),
-            expected_east=float(self._level.expected[0]),
-            expected_north=float(self._level.expected[1]),
+            expected_east=float(level.expected[0]),
+            expected_north=float(level.expected[1]),
             u_east=float(u_east),
             u_north=float(u_north),
         )

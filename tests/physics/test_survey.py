@@ -2,7 +2,7 @@
 
 import itertools
 from dataclasses import replace
-from math import cos, radians
+from math import cos, nan, radians
 
 import numpy as np
 import pytest
@@ -437,6 +437,18 @@ def test_a_rest_point_tells_the_swing_that_is_left_and_whether_it_is_good_enough
     assert rest.free_period == pytest.approx(2.0 * np.pi * np.sqrt(60.0 / G), rel=0.01)
     assert rest.swings_needed == rest.swings
     assert abs(rest.schuler_east) < 1e-3
+
+
+def test_a_run_that_has_ended_at_a_swinging_bob_still_answers_with_its_rest_point(shaft):
+    """The standing answer before and after the end is the same offset, not where the bob swung last."""
+    survey = Survey(shaft("hung", depth=90.0))
+    survey.feed(EVERY_KIND["hung"])
+    before = survey.standing()
+    station = survey.close(nan).stations[-1]
+    after = survey.standing()
+    assert (after.measured_east, after.measured_north) == (station.measured_east, station.measured_north)
+    assert (after.u_east, after.u_north, after.verdict) == (station.u_east, station.u_north, station.verdict)
+    assert after.measured_east == pytest.approx(before.measured_east, abs=3.0 * station.u_east)
 
 
 def test_a_few_readings_near_a_turning_point_do_not_pass_for_rest(shaft):

@@ -184,6 +184,7 @@ UNUSABLE = [
     (("watch", "site.toml"), ("terminal",)),
     (("emulate", "site.toml", "--tcp", "99999"), ("--tcp",)),
     (("emulate", "nowhere.toml"), ("nowhere.toml",)),
+    (("runs", "nowhere"), ("nowhere", "does not exist")),
 ]
 
 

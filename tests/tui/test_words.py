@@ -8,6 +8,7 @@ import pytest
 
 from eastfall.physics.findings import AlarmView, RestPoint, Standing
 from eastfall.tui import words
+from eastfall.tui.steering import steer
 
 pytestmark = pytest.mark.invariant
 Make = Callable[..., Standing]
@@ -163,3 +164,12 @@ def test_what_is_not_known_well_enough_is_not_to_be_moved(standing: Make) -> Non
     )  # fmt: skip
     told = words.steering(vague, "hung")
     assert told.startswith("Do not move it yet: 5.9 mm is less than its uncertainty, ± 37.0 mm")
+
+
+@pytest.mark.parametrize(("kind", "begins"), [("hung", "Let it swing: "), ("guided", "Do not move it yet: ")])
+def test_an_offset_without_an_uncertainty_is_not_to_be_moved(standing: Make, kind: str, begins: str) -> None:
+    """26 mm ± nothing, as from the first seconds of a swing: nobody is told to move, and no arrow points."""
+    blind = standing(measured_east=0.026, u_east=nan, u_north=nan, verdict="undecided")
+    assert words.steering(blind, kind).startswith(begins)  # type: ignore[arg-type]
+    told = steer(blind, kind)  # type: ignore[arg-type]
+    assert (told.angle, told.beat) == (None, None)

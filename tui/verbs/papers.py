@@ -5,7 +5,6 @@ from pathlib import Path
 import click
 
 from eastfall.tui.verbs.options import (
-    a_folder,
     an_input,
     as_format,
     counted,
@@ -140,7 +139,7 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
 
 
 @click.command()
-@click.argument("folder", type=a_folder, metavar="DIR")
+@click.argument("folder", type=click.Path(path_type=Path, exists=True, file_okay=False), metavar="DIR")
 @click.option(
     "--sort",
     type=click.Choice(["path", "site", "started_at", "kind", "depth_m", "verdict", "state"]),
