@@ -39,3 +39,13 @@ def link_error(url: str, error: BaseException) -> LinkError:
         number = errno.EBUSY
     what = _WHAT.get(number, "") if number is not None else ""
     return LinkError(f"{safe(url, 80)}: {what or 'cannot be opened: ' + safe(text, 160)}")
+
+
+def lost_error(name: str, error: BaseException) -> LinkError:
+    """Return the one clear line for a link that worked and is gone."""
+    text = str(error)
+    unplugged = getattr(error, "errno", None) in (errno.EIO, errno.ENODEV, errno.ENXIO)
+    # The second is how pyserial words it; neither would tell a person at the collar what to look at.
+    if unplugged or "returned no data" in text:
+        text = "unplugged, or another program reads it"
+    return LinkError(f"{safe(name, 80)}: lost: {safe(text, 120)}")

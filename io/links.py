@@ -16,7 +16,7 @@ from pathlib import Path
 from typing import Any, Protocol
 
 from eastfall.io.errors import LinkError, LogError
-from eastfall.io.linkerror import link_error
+from eastfall.io.linkerror import link_error, lost_error
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import LinkSettings, SiteFile
 from eastfall.io.sockets import CHUNK, Cancelled, SocketLink
@@ -163,7 +163,7 @@ class SerialLink:
                 self._port.timeout = timeout
             return bytes(self._port.read(min(max(1, self._port.in_waiting), CHUNK)))
         except self._troubles as error:
-            raise LinkError(f"{safe(self.name, 80)}: lost: {safe(str(error), 120)}") from error
+            raise lost_error(self.name, error) from error
 
     def close(self) -> None:
         """Let go of the port."""
@@ -209,7 +209,7 @@ class StreamLink:
                 return b""
             return os.read(self._descriptor, CHUNK) or None
         except (OSError, ValueError) as error:
-            raise LinkError(f"{safe(self.name, 80)}: lost: {safe(str(error), 120)}") from error
+            raise lost_error(self.name, error) from error
 
     def close(self) -> None:
         """Let go of the descriptor."""
@@ -262,7 +262,7 @@ class FileLink:
         try:
             return next(self._pieces, None)
         except (OSError, LogError) as error:
-            raise LinkError(f"{safe(self.name, 80)}: lost: {safe(str(error), 120)}") from error
+            raise lost_error(self.name, error) from error
 
     def close(self) -> None:
         """Let go of the file."""

@@ -68,6 +68,18 @@ def test_a_device_that_is_in_use_is_busy(terminal: tuple[int, str]) -> None:
         opened(path)
 
 
+def test_a_device_that_is_unplugged_says_so_in_plain_words() -> None:
+    """The far end of the line goes: one short line without the serial library's own wording."""
+    master, slave = pty.openpty()
+    path = os.ttyname(slave)
+    with closing(opened(path)) as link:
+        os.close(slave)
+        os.close(master)
+        with pytest.raises(LinkError) as lost:
+            everything(link, 1)
+    assert str(lost.value) == f"{path}: lost: unplugged, or another program reads it"
+
+
 def test_a_socket_url_reads_a_device_server(server: socket.socket) -> None:
     """All that a server sends comes out, also what it sent right before it closed."""
     port = server.getsockname()[1]
