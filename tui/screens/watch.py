@@ -1,11 +1,13 @@
 """The watch screen, live and replay alike: hands snapshots to the widgets, and keys to the source."""
 
+from contextlib import suppress
 from dataclasses import replace
 from typing import ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import Horizontal
+from textual.css.query import NoMatches
 from textual.events import Click
 
 from eastfall.tui import keys, views, words
@@ -94,7 +96,8 @@ class WatchScreen(RunScreen):
             return
         shown = self.held or self.latest
         one = look.subject(self.sight, shown)
-        with self.app.batch_update():
+        # While the application ends, the last pictures find only some of the parts, or none.
+        with self.app.batch_update(), suppress(NoMatches):
             self._paint_lines(shown, one)
             self._paint_evidence(shown, one)
 
