@@ -1,7 +1,7 @@
 """Print the ratios of every benchmark beside what is wanted of them: `python tests/bench/table.py [NAME ...]`.
 
 Each file `bench_NAME.py` beside this one has a function `rows` that measures a work and its yardstick in the same
-run; one without it prints a table of its own. Exit status 1 if a ratio falls short.
+run. Exit status 1 if a ratio falls short.
 """
 
 import importlib.util
@@ -17,9 +17,6 @@ def rows_of(path: Path) -> list[tuple[str, str, float, float]]:
     spec = importlib.util.spec_from_file_location(path.stem, path)
     module = importlib.util.module_from_spec(spec)
     spec.loader.exec_module(module)
-    if not hasattr(module, "rows"):
-        print(f"   by itself: python tests/bench/{path.name}")
-        return []
     return module.rows()
 
 
