@@ -26,9 +26,7 @@ _WHAT = {
 def link_error(url: str, error: BaseException) -> LinkError:
     """Return the one clear line for a link that cannot be opened."""
     text = str(error)
-    number = getattr(error, "errno", None)
-    if number is None and (found := re.search(r"\[Errno (\d+)\]", text)):
-        number = int(found[1])
+    number = _number(error)
     if isinstance(error, socket.gaierror):
         return LinkError(
             f"{safe(url, 80)}: the host's name cannot be resolved; expected a name or an address"
@@ -44,8 +42,14 @@ def link_error(url: str, error: BaseException) -> LinkError:
 def lost_error(name: str, error: BaseException) -> LinkError:
     """Return the one clear line for a link that worked and is gone."""
     text = str(error)
-    unplugged = getattr(error, "errno", None) in (errno.EIO, errno.ENODEV, errno.ENXIO)
     # The second is how pyserial words it; neither would tell a person at the collar what to look at.
-    if unplugged or "returned no data" in text:
+    if _number(error) in (errno.EIO, errno.ENODEV, errno.ENXIO) or "returned no data" in text:
         text = "unplugged, or another program reads it"
     return LinkError(f"{safe(name, 80)}: lost: {safe(text, 120)}")
+
+
+def _number(error: BaseException) -> int | None:
+    """Return the operating system's number of an error, also from the text of one that pyserial wrapped."""
+    number: int | None = getattr(error, "errno", None)
+    found = re.search(r"\[Errno (\d+)\]|\((\d+), '", str(error)) if number is None else None
+    return int(found[1] or found[2]) if found else number
