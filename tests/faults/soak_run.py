@@ -5,11 +5,13 @@ Run as a program: `soak_run.py FOLDER HOURS`; at each tenth of the run one line 
 
 import json
 import sys
+import threading
 import time
 from datetime import UTC, datetime
 from pathlib import Path
+from typing import Any
 
-from eastfall.io.emulator import EmulatedLink, Emulator
+from eastfall.io.emulator import EmulatedLine, EmulatedLink, Emulator
 from eastfall.io.health import RunUpdate
 from eastfall.io.journey import Winch
 from eastfall.io.run import Run
@@ -41,6 +43,29 @@ def resident() -> int:
     return next(int(line.split()[1]) for line in lines if line.startswith("VmRSS"))
 
 
+class Shared(Emulator):
+    """An emulator that two threads ask: the link's for lines, and the one that moves the clock for what is due."""
+
+    def __init__(self, *arguments: Any, **options: Any) -> None:
+        super().__init__(*arguments, **options)
+        self._lock = threading.Lock()
+
+    def take(self, link: int, until: float) -> list[EmulatedLine]:
+        """Return what has arrived."""
+        with self._lock:
+            return super().take(link, until)
+
+    def due(self, link: int) -> float | None:
+        """Return when the next line arrives."""
+        with self._lock:
+            return super().due(link)
+
+    def counts(self, link: int) -> dict[str, int]:
+        """Return what was taken."""
+        with self._lock:
+            return super().counts(link)
+
+
 class Soak:
     """One run of so many hours, down the shaft and up again."""
 
@@ -51,7 +76,7 @@ class Soak:
         site = parse_site(SITE, "strand.toml")
         speed = 2.2 * site.assumptions.shaft.depth / self.seconds
         winch = Winch(speed=speed, acceleration=max(0.25, 0.1 * speed))
-        self.emulator = Emulator(site, seed=4, rate=RATE, broken=0.01, winch=winch, until=float(self.seconds))
+        self.emulator = Shared(site, seed=4, rate=RATE, broken=0.01, winch=winch, until=float(self.seconds))
         self.log = RunLogWriter.create(folder, site, started_at=datetime(2026, 3, 4, tzinfo=UTC))
         self.run = Run(site, log=self.log, clock=lambda: self.now, opener=self._open)
         self.history = History("live", keep=20_000)
@@ -95,6 +120,7 @@ class Soak:
             "frames": update.health.frames,
             "rejected": update.health.rejected,
             "dropped": update.health.links[0].queue_dropped,
+            "faults": dict(update.health.faults),
             "log": str(self.log.path),
         }
         self.slowest = 0
