@@ -140,6 +140,7 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "rest_point": rest_point_row(result.rest_point),
         "best": [best_row(one) for one in result.best],
         "faces": faces_row(result.faces),
+        "reference": reduction.site.assumptions.run.reference,
         "notes": list(
             dict.fromkeys([*(reduction.standing.notes if reduction.standing else ()), *result.notes])
         ),

@@ -289,6 +289,38 @@ def gathered(
     )
 
 
+def swing_wait(amplitude: npt.ArrayLike, decay: npt.ArrayLike, below: npt.ArrayLike) -> Array:
+    """Time until a swing has died down to a size.
+
+    Parameters
+    ----------
+    amplitude : array_like
+        Now [m], 0 or more.
+    decay : array_like
+        Time in which the amplitude falls to 1/e [s].
+    below : array_like
+        The size to wait for [m].
+
+    Returns
+    -------
+    array
+        decay ln(amplitude/below) [s], broadcast; 0 where the swing is small enough already.
+
+    Raises
+    ------
+    ParameterError
+        If `decay` or `below` is not positive, or an amplitude is negative.
+    """
+    size, wanted = np.asarray(amplitude, dtype=np.float64), np.asarray(below, dtype=np.float64)
+    for name, value, unit in (("decay", np.asarray(decay, dtype=np.float64), "s"), ("below", wanted, "m")):
+        if np.any(value <= 0.0):
+            raise ParameterError(name, value, unit, f"more than 0 {unit}")
+    if np.any(size < 0.0):
+        raise ParameterError("amplitude", amplitude, "m", "0 m or more")
+    wait: Array = np.asarray(decay, dtype=np.float64) * np.log(np.maximum(size / wanted, 1.0))
+    return wait
+
+
 def single_swing(length: npt.ArrayLike) -> Array:
     """Time of one swing from side to side by the shaft rule.
 

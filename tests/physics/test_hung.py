@@ -19,6 +19,7 @@ from eastfall.physics.hung import (
     shape,
     single_swing,
     stretch,
+    swing_wait,
 )
 from eastfall.physics.moving import lean
 from eastfall.physics.settings import ARCSECOND, Air, Line, Site
@@ -250,6 +251,17 @@ def test_many_lines_gather_as_each_pair_converges():
     # The field's own horizontal pull beside the collar against its gravity is the lean of the vertical there.
     assert east[1] == pytest.approx(1000.0 * pull_east / FIELD.gravity, rel=1e-12)
     assert north[2] == pytest.approx(1000.0 * pull_north / FIELD.gravity, rel=1e-12)
+
+
+@pytest.mark.invariant
+def test_the_wait_is_when_the_swing_has_come_down_to_size():
+    """After the wait the amplitude is the wanted one; a small swing needs none."""
+    wait = swing_wait(0.044, 900.0, 0.001)
+    assert 0.044 * np.exp(-wait / 900.0) == pytest.approx(0.001, rel=1e-14)
+    assert swing_wait(0.0005, 900.0, 0.001) == 0.0
+    assert swing_wait(0.0, 900.0, 0.001) == 0.0
+    with pytest.raises(ParameterError, match=r"decay is 0\.0 s"):
+        swing_wait(0.1, 0.0, 0.001)
 
 
 @pytest.mark.published

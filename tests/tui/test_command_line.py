@@ -132,6 +132,28 @@ def test_the_budget_adds_up_to_the_combined_uncertainty(place):
     assert station["u_east_mm"] == pytest.approx(total, rel=1e-12)
 
 
+def test_the_line_itself_can_be_asked_for(place):
+    """Stretch, swing, what a winch at 2 m/s leaves, the wait for it, and two lines 5 m apart: by hand formulas.
+
+    300 m of 1 mm steel under 50 kg: MgL/(AE) = 937.4 mm (g 9.817, E 200 GPa); the lean of 2 m/s at 57.3°, 16.05 µrad,
+    leaves 4.8 mm; sL/R = 5·300/6.39e6 = 0.235 mm; from 4.8 to 1 mm takes 600 s · ln 4.8 = 942 s.
+    """
+    site = (
+        SITE.replace('"guided"', '"hung"')
+        + "[line]\nline_speed_mps = 2.0\n[air]\ntemperature_gradient_cpkm = 0.0\n"
+    )
+    (place / "line.toml").write_text(
+        site.replace('"tilt_a_deg", "tilt_b_deg"', '"east_mm", "north_mm"'), encoding="utf-8"
+    )
+    words = ("--at", "300", "--line", "--apart", "5", "--decay", "600", "--format", "json")
+    (row,) = json.loads(eastfall("expect", "line.toml", *words, cwd=place).stdout)["line"]
+    assert row["stretch_mm"] == pytest.approx(937.4, abs=0.1)
+    assert row["single_swing_s"] == pytest.approx(300.0**0.5, rel=5e-3)
+    assert row["swing_left_mm"] == pytest.approx(4.81, abs=0.01)
+    assert row["nearer_mm"] == pytest.approx(0.235, abs=0.001)
+    assert row["wait_s"] == pytest.approx(942.0, abs=2.0)
+
+
 def test_reduce_of_a_capture_finds_its_lean_and_has_the_fixed_shape(place):
     """0.2 mm/m toward A = north: 60 mm at 300 m, the fixed keys, and exit status 1 because it is over 25 mm."""
     outcome = eastfall(

@@ -1,6 +1,7 @@
 """The verbs that print numbers: `expect` and `reduce`."""
 
 import re
+from math import radians
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -20,6 +21,7 @@ from eastfall.tui.verbs.options import (
 if TYPE_CHECKING:
     from eastfall.io.reduce import Reduction
     from eastfall.io.sitefile import SiteFile
+    from eastfall.physics.settings import Assumptions
 
 
 class _Depths(click.ParamType[tuple[float, ...]]):
@@ -44,9 +46,43 @@ class _Depths(click.ParamType[tuple[float, ...]]):
 @click.option("--at", type=_Depths(), help="Rows at these depths.")
 @click.option("--budget", is_flag=True, help="What each input contributes to the uncertainty, instead.")
 @click.option("--explore", is_flag=True, help="A screen to change the inputs and see the curves move.")
+@click.option(
+    "--line", is_flag=True, help="The plumb line itself, instead: stretch, swing, what the winch leaves."
+)
+@click.option(
+    "--apart",
+    type=click.FloatRange(min=0.0, min_open=True),
+    metavar="M",
+    help="With --line: a second line this far off.",
+)
+@click.option("--toward", type=float, default=0.0, metavar="DEG", help="With --apart: its azimuth.")
+@click.option(
+    "--decay",
+    type=click.FloatRange(min=0.0, min_open=True),
+    metavar="S",
+    help="With --line: a swing falls to 1/e in this time.",
+)
+@click.option(
+    "--small",
+    type=click.FloatRange(min=0.0, min_open=True),
+    default=1.0,
+    metavar="MM",
+    show_default=True,
+    help="With --decay: wait for a swing below this.",
+)
 @as_format
 def expect(
-    site: Path, every: float | None, at: tuple[float, ...] | None, budget: bool, explore: bool, form: str
+    site: Path,
+    every: float | None,
+    at: tuple[float, ...] | None,
+    budget: bool,
+    explore: bool,
+    line: bool,
+    apart: float | None,
+    toward: float,
+    decay: float | None,
+    small: float,
+    form: str,
 ) -> None:
     """Print what a perfectly plumb shaft would show, with its uncertainty.
 
@@ -61,6 +97,13 @@ def expect(
         click.get_current_context().exit(run_explorer(load_site(site)))
     assumptions = load_site(site).assumptions
     depths = prediction.depths(assumptions, every=every, at=at)
+    if line:
+        found = _line(assumptions, depths, apart=apart, toward=toward, decay=decay, small=small)
+        if form == "json":
+            print_json(found)
+        else:
+            print_rows((list(found["line"][0]), [list(one.values()) for one in found["line"]]), form)
+        return
     if budget:
         rows = prediction.budget(assumptions, depths)
         if form == "json":
@@ -68,15 +111,31 @@ def expect(
         else:
             print_rows(prediction.budget_rows(rows), form)
         return
-    found = prediction.predict(assumptions, depths)
+    predicted = prediction.predict(assumptions, depths)
     if form == "json":
-        print_json(found.shape)
+        print_json(predicted.shape)
         return
     if form == "table":
-        click.echo(found.heading)
-    print_rows(found.rows, form)
-    for line in found.notes if form == "table" else ():
-        click.echo(line)
+        click.echo(predicted.heading)
+    print_rows(predicted.rows, form)
+    for note in predicted.notes if form == "table" else ():
+        click.echo(note)
+
+
+def _line(
+    assumptions: "Assumptions",
+    depths: list[float],
+    *,
+    apart: float | None,
+    toward: float,
+    decay: float | None,
+    small: float,
+) -> dict[str, Any]:
+    from eastfall.io.lineprediction import line_table  # noqa: PLC0415 (the numerical library only where used)
+
+    return line_table(
+        assumptions, depths, apart=apart, toward=radians(toward), decay=decay, small=small / 1000.0
+    )
 
 
 @click.command()
