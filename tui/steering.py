@@ -51,7 +51,7 @@ def steer(one: "Standing | None", kind: "Kind", units: Units = METRIC) -> Steer:
         line=line,
         beat=_beat(one, length),
     )
-    if length <= words.expanded(one):
+    if length <= max(words.expanded(one), words.UNSEEN):
         return told
     angle = atan2(-one.residual_east, -one.residual_north) % (2.0 * pi)
     place = round(degrees(angle) / 45.0) % 8
@@ -69,7 +69,7 @@ def steer(one: "Standing | None", kind: "Kind", units: Units = METRIC) -> Steer:
 
 def _beat(one: "Standing", length: float) -> float | None:
     beats = dict(BEATS)
-    if length <= words.expanded(one):
+    if length <= max(words.expanded(one), words.UNSEEN):
         return None
     if one.verdict != "within":
         return beats["over"]

@@ -14,7 +14,9 @@ def refuse_unless_screen(environment: Mapping[str, str], *, is_terminal: bool) -
     InputError
         When input or output is no terminal, or TERM says that it cannot place text.
     """
-    advice = "use `record` for a live run, `reduce` for a record, and `eastfall --help` for the rest"
+    advice = (
+        "add --plain to a live verb or use `record`, `reduce` for a record, `eastfall --help` for the rest"
+    )
     if not is_terminal:
         raise InputError(f"the screen needs a terminal for input and output; {advice}")
     if environment.get("TERM", "") in {"dumb", "unknown"}:

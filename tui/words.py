@@ -21,6 +21,8 @@ _NO_MOVE: "dict[Kind, str]" = {
     "hung": "Let it swing: too little is seen of it to tell where it comes to rest.",
     "drop": "Stand clear: nothing to move while bodies fall.",
 }
+UNSEEN = 0.00005
+"""A residual that is shown as 0.0 mm is nothing to move by [m]."""
 VERDICT = {"within": "WITHIN", "over": "OVER", "undecided": "UNDECIDED"}
 
 
@@ -121,6 +123,8 @@ def _move(one: Judged, length: float, units: Units) -> str:
             f"Leave it: {units.offset(length)} {units.short} is less than its uncertainty, "
             f"± {units.offset(expanded(one))} {units.short}."
         )
+    if length < UNSEEN:
+        return "Leave it: it is off by less than this screen shows."
     back = bearing(-one.residual_east, -one.residual_north)
     places = 0 if length >= 0.002 else 1
     return f"Move {units.offset(length, places)} {units.short} toward {back} to meet the expected line."

@@ -7,10 +7,13 @@ import subprocess
 import sys
 import time
 from pathlib import Path
+from types import SimpleNamespace
 
+import click
 import pytest
 
 from eastfall.tui.main import VERBS
+from eastfall.tui.verbs import live
 
 PROGRAM = str(Path(sys.executable).parent / "eastfall")
 
@@ -304,3 +307,18 @@ def test_the_demo_runs_without_a_screen_as_lines_of_text(place):
     assert outcome.returncode == 0, outcome.stderr
     assert "station 10.0 m down: WITHIN" in outcome.stdout
     assert Path(place / outcome.stdout.splitlines()[-1]).exists()
+
+
+@pytest.mark.parametrize(("lost", "status"), [(0, None), (3, 1)])
+def test_a_run_whose_record_lost_lines_ends_with_status_1(lost, status, capsys):
+    """A full disk: the log's path and the count on standard error, and the status of a log that is not intact."""
+    health = SimpleNamespace(log_path="run.eastfall.jsonl", log_lost=lost)
+    left = None
+    with click.Context(live.record):
+        try:
+            live.judge_record(health)
+        except click.exceptions.Exit as over:
+            left = over.exit_code
+    said = capsys.readouterr()
+    assert (left, said.out) == (status, "")
+    assert ("run.eastfall.jsonl: incomplete, 3 lines" in said.err) is bool(lost)

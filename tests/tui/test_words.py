@@ -173,3 +173,18 @@ def test_an_offset_without_an_uncertainty_is_not_to_be_moved(standing: Make, kin
     assert words.steering(blind, kind).startswith(begins)  # type: ignore[arg-type]
     told = steer(blind, kind)  # type: ignore[arg-type]
     assert (told.angle, told.beat) == (None, None)
+
+
+def test_nobody_is_told_to_move_nothing(standing: Make) -> None:
+    """0.03 mm ± 0.02 mm is shown as 0.0: no "move 0.0 mm", no arrow, no sound."""
+    tiny = standing(
+        measured_east=0.00003,
+        measured_north=0.0,
+        expected_east=0.0,
+        expected_north=0.0,
+        u_east=1e-5,
+        u_north=1e-5,
+    )
+    assert words.steering(tiny, "guided") == "Leave it: it is off by less than this screen shows."
+    told = steer(tiny, "guided")
+    assert (told.angle, told.beat) == (None, None)

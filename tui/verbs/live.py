@@ -17,7 +17,7 @@ from eastfall.physics.errors import EastfallError
 from eastfall.tui.verbs.options import an_input, into
 
 if TYPE_CHECKING:
-    from eastfall.io.run import Run, RunUpdate
+    from eastfall.io.run import Health, Run, RunUpdate
     from eastfall.io.sitefile import SiteFile
 
 _STEP = 0.1
@@ -99,6 +99,7 @@ def record(
             _tell(run.step(_STEP))
         last = run.stop()
     click.echo(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
+    judge_record(last.health)
 
 
 def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
@@ -130,8 +131,19 @@ def _plainly(
         while not (stopped() or run.ended or time.monotonic() >= end):
             lines.take(run.step(_STEP))
             sys.stdout.flush()
-        lines.end(run.stop())
+        last = run.stop()
+        lines.end(last)
     click.echo(run.log_path)
+    judge_record(last.health)
+
+
+def judge_record(health: "Health") -> None:
+    """End with status 1 where lines that came are not in the log: a full disk, a folder that is gone."""
+    if health.log_lost:
+        click.echo(
+            f"eastfall: {health.log_path}: incomplete, {health.log_lost} lines or events lost", err=True
+        )
+        click.get_current_context().exit(1)
 
 
 @contextmanager
