@@ -309,6 +309,18 @@ def last_time(path: Path) -> float:
         part = beside(part, name)
 
 
+def last_event(path: Path, name: str) -> RunEvent | None:
+    """Return the newest event of a name among the last records of a log of one part; None if it is not there.
+
+    Raises
+    ------
+    LogError
+        The file cannot be opened or is no run log.
+    """
+    found = [one for one in _tail(first_part(path)) if one.event == name]
+    return RunEvent(time=found[-1].t, name=name, fields=found[-1].fields or {}) if found else None
+
+
 def _tail(path: Path) -> list[Record]:
     """Return the last records of a part that can be read."""
     with opened(path) as file:

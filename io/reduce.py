@@ -21,6 +21,7 @@ from eastfall.physics.board import ACTION
 from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.findings import Result, Standing, Verdict
 from eastfall.physics.settings import Assumptions
+from eastfall.physics.verdict import worst
 
 _MOST_EVENTS = 10_000
 _ROOM = 30_000_000
@@ -67,9 +68,7 @@ class Reduction:
     @property
     def verdict(self) -> Verdict | None:
         """The worst verdict of any station; None without stations."""
-        found = {one.verdict for one in self.result.stations}
-        worst: tuple[Verdict, ...] = ("over", "undecided", "within")
-        return next((one for one in worst if one in found), None)
+        return worst(one.verdict for one in self.result.stations)
 
     @property
     def exceeded(self) -> bool:

@@ -24,6 +24,7 @@ from eastfall.io.runlog import RunLogWriter
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import LinkSettings, SiteFile
 from eastfall.physics.findings import Findings
+from eastfall.physics.verdict import worst
 
 __all__ = ["Health", "LinkHealth", "Run", "RunUpdate"]
 
@@ -166,7 +167,16 @@ class Run:
             if cut:
                 self._event(RunEvent(time=now, name="link", fields=_link_fields(index, "closed", "", cut)))
         self._event(RunEvent(time=now, name="end"))
+        self._event(RunEvent(time=now, name="summary", fields=self._summary()))
         self._recorder.close(now)
+
+    def _summary(self) -> dict[str, object]:
+        """Return what a list of many runs shows of this one, so that it need not be worked through for that."""
+        stations = self.pipeline.survey.result().stations
+        return {
+            "verdict": worst(one.verdict for one in stations) or "",
+            "deepest_m": max((one.depth for one in stations), default=None),
+        }
 
     def __enter__(self) -> Self:
         self.start()

@@ -6,11 +6,14 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from datetime import datetime
 from functools import lru_cache, partial
+from importlib.metadata import version
 from math import inf
 from pathlib import Path
 from typing import Any
 
+from eastfall.io.arrivals import RunEvent
 from eastfall.io.logformat import SUFFIX
+from eastfall.io.logreader import last_event
 from eastfall.io.reduce import reduce_file
 from eastfall.io.safetext import safe
 from eastfall.io.seal import header_of, verify_log
@@ -69,8 +72,14 @@ def card(path: Path, *, judged: bool = True) -> RunCard:
     try:
         header = header_of(path)
         kind, started = safe(header.kind, 20), _instant(header.started_at)
+        state = verify_log(path).state
         if not judged:
-            return _card(path, _site_name(header.site), started, kind, None, "", verify_log(path).state, "")
+            return _card(path, _site_name(header.site), started, kind, None, "", state, "")
+        if state == "intact" and header.program == version("eastfall"):
+            told = last_event(path, "summary")
+            if told is not None:
+                # Sealed with the run, and by this very program: working through the run would say the same.
+                return _card(path, _site_name(header.site), started, kind, *_told(told), state, "")
         reduction = reduce_file(path, curve_for=curve_of)
     except (EastfallError, OSError) as error:
         return _card(path, site, started, kind, depth, verdict, "", safe(str(error), 300))
@@ -84,6 +93,15 @@ def card(path: Path, *, judged: bool = True) -> RunCard:
         reduction.verdict or "",
         reduction.seal_state,
         "",
+    )
+
+
+def _told(summary: RunEvent) -> tuple[float | None, str]:
+    """Return depth [m] and verdict of a summary; what is not of their kind counts as absent."""
+    depth, verdict = summary.fields.get("deepest_m"), summary.fields.get("verdict")
+    return (
+        float(depth) if isinstance(depth, int | float) else None,
+        verdict if verdict in {"within", "over", "undecided"} else "",
     )
 
 

@@ -1,5 +1,7 @@
 """The decision on a residual against a limit, by the guard-band rule; lengths in metres."""
 
+from collections.abc import Iterable
+
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
@@ -62,6 +64,13 @@ def verdicts(length: ArrayLike, u: ArrayLike, limit: ArrayLike) -> list[Verdict]
     size, guard, bound = np.atleast_1d(length), COVERAGE_FACTOR * np.atleast_1d(u), np.atleast_1d(limit)
     words: list[Verdict] = ["undecided", "within", "over"]
     return [words[one] for one in ((size + guard <= bound) + 2 * (size - guard > bound)).tolist()]
+
+
+def worst(found: Iterable[Verdict]) -> Verdict | None:
+    """Return the worst of several verdicts; None of none."""
+    told = set(found)
+    order: tuple[Verdict, ...] = ("over", "undecided", "within")
+    return next((one for one in order if one in told), None)
 
 
 def verdict(length: float, u: float, limit: float) -> Verdict:

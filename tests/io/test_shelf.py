@@ -5,6 +5,8 @@ from pathlib import Path
 
 from record_help import written
 
+from eastfall.io.logreader import last_event
+from eastfall.io.reduce import reduce_file
 from eastfall.io.shelf import CARD_KEYS, card, card_row, list_runs, log_files
 
 LOGS = Path(__file__).parents[2] / "replay_logs"
@@ -68,3 +70,16 @@ def test_a_card_without_verdict_is_quick_and_still_verified(tmp_path: Path) -> N
         "",
         "intact",
     )
+
+
+def test_what_a_run_says_of_itself_is_what_working_through_it_says() -> None:
+    """The sealed summary of each recorded demonstration gives the depth and verdict that its reduction gives."""
+    logs = log_files(Path(__file__).parents[2] / "replay_logs")
+    assert len(logs) == 3
+    for path in logs:
+        told = last_event(path, "summary")
+        assert told is not None
+        found = reduce_file(path)
+        assert told.fields["verdict"] == found.verdict
+        assert told.fields["deepest_m"] == max(one.depth for one in found.result.stations)
+        assert (card(path).verdict, card(path).depth) == (found.verdict, told.fields["deepest_m"])
