@@ -78,6 +78,17 @@ class InstrumentKeys(Section, frozen=True, kw_only=True):
         Annotated[float, Meta(gt=0.0, le=36500.0, description="An older calibration is pointed out")]
         | UnsetType
     ) = UNSET
+    spike_deg: (
+        Annotated[
+            float,
+            Meta(
+                gt=0.0,
+                le=180.0,
+                description="A tilt so far from those just before it is left aside as a spike",
+            ),
+        ]
+        | UnsetType
+    ) = UNSET
     range_deg: (
         Annotated[
             float,

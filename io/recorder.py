@@ -3,6 +3,7 @@
 The file itself is `io.runlog`. Nothing here raises: a disk that is full must not stop the measurement.
 """
 
+import os
 from collections import deque
 
 from eastfall.io.arrivals import Arrival, LineBlock
@@ -108,7 +109,9 @@ class Recorder:
         return True
 
     def _failed(self, error: OSError) -> None:
-        self.trouble = safe(str(error), 200)
+        # The reason first: on a narrow screen the end of a long path is what may be cut.
+        reason = f"{os.strerror(error.errno)}: " if error.errno else ""
+        self.trouble = safe(f"{reason}{error}", 200)
 
 
 def _size(arrival: Arrival) -> int:

@@ -108,13 +108,15 @@ class Run:
     # -- start and stop --------------------------------------------------------------------------------------------
 
     def start(self) -> None:
-        """Open every link and start reading.
+        """Open every link and start reading; a second call changes nothing.
 
         Raises
         ------
         LinkError
             A link cannot be opened; those that were are closed again.
         """
+        if self._readers:
+            return
         opened: list[Link] = []
         try:
             for index in range(len(self.site.links)):

@@ -69,11 +69,12 @@ def load_site(path: Path, *, on: date | None = None) -> SiteFile:
         With the file, the line and the key, what stands there and what was expected.
     """
     try:
-        raw = path.read_bytes()
+        with path.open("rb") as file:
+            raw = file.read(_LARGEST + 1)
     except OSError as error:
         raise SiteFileError(f"{path}: {error.strerror or error}; expected a site file (TOML)") from error
     if len(raw) > _LARGEST:
-        raise SiteFileError(f"{path}: {len(raw)} bytes; expected a site file of at most {_LARGEST} bytes")
+        raise SiteFileError(f"{path}: too large; expected a site file of at most {_LARGEST} bytes")
     try:
         text = raw.decode("utf-8")
     except UnicodeDecodeError as error:

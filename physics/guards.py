@@ -14,6 +14,7 @@ from numpy.typing import NDArray
 from eastfall.physics.alarms import BETWEEN, BEYOND, INSIDE
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import AlarmName, Instrument, Limits
+from eastfall.physics.spikes import TiltSpikes
 from eastfall.physics.steps import steps, steps_from
 
 Array = NDArray[np.float64]
@@ -75,6 +76,7 @@ class Guards:
         self._instrument = instrument
         self._limits = limits
         self._frozen = _Frozen(limits.frozen)
+        self.spikes = TiltSpikes(instrument.spike)
         self._cell = np.nan
         self._azimuth = (np.nan, np.nan)
 
@@ -88,10 +90,15 @@ class Guards:
         bad : ndarray of bool or None
             Rows whose tilt means nothing; None where there are none.
         """
-        if not len(readings) or np.isnan(readings.time[0]):
+        if not len(readings):
             return [], None
         found: list[Sighting] = []
         bad = self._saturated(readings, found)
+        spikes = self.spikes.feed(readings, bad)
+        if spikes is not None:
+            bad = spikes if bad is None else bad | spikes
+        if np.isnan(readings.time[0]):
+            return [], bad
         frozen = self._frozen.feed(readings)
         if frozen is None:
             placed = np.full(len(readings), INSIDE, dtype=np.int8)

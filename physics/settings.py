@@ -273,6 +273,8 @@ class Instrument(_Checked):
     """ISO date; empty if unknown."""
     calibration_valid_days: float = 365.0
     """A calibration older than this is pointed out."""
+    spike: float = 1.0 * DEGREE
+    """A tilt that stands apart by more from those just before it is left aside [rad]."""
     range: float | None = None
     """Largest tilt that an axis can show [rad]; readings there are left aside."""
     lowest_temperature: float | None = None

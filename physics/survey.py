@@ -352,7 +352,10 @@ class Survey:
 
     def _all_notes(self) -> tuple[str, ...]:
         deeper = self._true_depth.beyond_marks(self._deepest)
-        return (*self._notes, *self._kind.notes(), *((deeper,) if deeper else ()))
+        spikes = self._guards.spikes.found if self.assumptions.run.kind == "guided" else 0
+        apart = f"{spikes} tilt readings stood apart from those before them and were left aside"
+        told = ((deeper,) if deeper else ()) + ((apart,) if spikes else ())
+        return (*self._notes, *self._kind.notes(), *told)
 
     def alarms(self) -> tuple[AlarmView, ...]:
         """Return every alarm that is not normal, the newest first."""

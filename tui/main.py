@@ -84,6 +84,9 @@ def main() -> None:
     except EastfallError as error:
         click.echo(f"eastfall: {_one_line(str(error))}", err=True)
         status = 2
+    except SystemExit:
+        # The command-line library ends the process itself when whoever read the output has gone.
+        status = 0
     except BrokenPipeError:
         # Whoever read the output has gone; leaving quietly also keeps the interpreter from complaining at exit.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())

@@ -57,9 +57,23 @@ def _pace(snapshot: Snapshot) -> str:
     return f"x{snapshot.speed:g}" if snapshot.playing else "PAUSED"
 
 
-def answer_ground(one: Subject) -> Role | None:
-    """Return the colour under the answer."""
-    if one is None or not isfinite(words.residual_length(one)):
+def is_old(snapshot: Snapshot, one: Subject) -> bool:
+    """Tell whether the answer in view is the newest there is, and the feed has brought nothing since."""
+    gone = ("feed silent", "link lost")
+    return isinstance(one, Standing) and any(
+        alarm.name.startswith(gone) and alarm.state in {"active", "acknowledged"} for alarm in snapshot.alarms
+    )
+
+
+def answer(snapshot: Snapshot, one: Subject, units: Units) -> str:
+    """Return the answer as one line, which says first if it is old."""
+    told = words.answer(one, units)
+    return f"OLD, no new reading: {told}" if is_old(snapshot, one) else told
+
+
+def answer_ground(snapshot: Snapshot, one: Subject) -> Role | None:
+    """Return the colour under the answer; an old one has none, whatever it says."""
+    if one is None or not isfinite(words.residual_length(one)) or is_old(snapshot, one):
         return None
     if one.verdict == "over":
         return Role.GROUND_ACTION
@@ -76,6 +90,8 @@ def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ..
     if isinstance(one, Station):
         rest = "at rest" if one.still else "in passing"
         return ((f"Station {one.number}, {one.direction}, {rest}. Press f to follow the newest.", Role.TEXT),)
+    if is_old(snapshot, one):
+        return (("Do not go by this: wait until the feed is back.", Role.WARNING),)
     return ((words.steering(one, session.assumptions.run.kind, session.units), Role.STRONG),)
 
 
@@ -150,7 +166,7 @@ def _motion(one: Standing | Station, units: Units) -> str:
     if not isfinite(one.speed):
         return ""
     if abs(one.speed) < 0.005:
-        return "at rest"
+        return "line still"
     way = "down" if one.speed > 0.0 else "up"
     return f"{way} {units.depth(abs(one.speed))} {units.speed}"
 

@@ -225,7 +225,8 @@ def test_stop_and_read_sums_only_what_was_read_at_rest(shaft):
     readings = Readings.of(time=time, depth=depth, tilt_a=tilt[0], tilt_b=tilt[1])
     result = found(shaft, readings, guide=settings.Guide(readings="still")).result()
     assert [round(one.depth, 2) for one in result.stations] == levels.tolist()
-    assert all(one.still and one.readings == 51 for one in result.stations)
+    # Of 51 readings at a halt the one or two knocked ones are left aside.
+    assert all(one.still and 49 <= one.readings <= 51 for one in result.stations)
     coarse = np.cumsum((slope_at(levels)[:, 1:] + slope_at(levels)[:, :-1]) * 5.0, axis=1)
     for one, true in zip(result.stations[1:], coarse.T, strict=True):
         u = one.parts[one.inputs.index("tilt, random")][0]

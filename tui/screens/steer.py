@@ -7,10 +7,10 @@ from typing import TYPE_CHECKING, ClassVar
 from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 
-from eastfall.tui import keys, views, words
+from eastfall.tui import keys, views
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.following import FollowingScreen
-from eastfall.tui.steering import steer
+from eastfall.tui.steering import Steer, steer
 from eastfall.tui.store import Snapshot
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.bearing import BearingView
@@ -74,16 +74,23 @@ class SteerScreen(FollowingScreen[None]):
         """Show a newer snapshot."""
         self._snapshot = snapshot
         one = snapshot.standing
-        under = views.answer_ground(one)
+        under = views.answer_ground(snapshot, one)
         ink = Role.STRONG if under is None else Role.ON_GROUND
-        self.query_one("#answer", TextLine).show((words.answer(one, self._units), ink), under=under)
-        self.query_one(BearingView).show(steer(one, self._kind, self._units))
+        self.query_one("#answer", TextLine).show((views.answer(snapshot, one, self._units), ink), under=under)
+        self.query_one(BearingView).show(self._steer())
         pieces, ground = views.alarm_line(snapshot)
         self.query_one("#alarm", TextLine).show(*pieces, under=ground)
 
+    def _steer(self) -> Steer:
+        """Return what to do; nothing to go by once the answer is old."""
+        one = self._snapshot.standing
+        if views.is_old(self._snapshot, one):
+            return Steer(line="Do not go by this: wait until the feed is back.")
+        return steer(one, self._kind, self._units)
+
     def beat(self) -> None:
         """Ring when the time for it has come, unless muted or the picture is of the past."""
-        pause = steer(self._snapshot.standing, self._kind, self._units).beat
+        pause = self._steer().beat
         now = self._clock()
         if pause is None or now - self._rung < pause or getattr(self.app, "muted", True):
             return

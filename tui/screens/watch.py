@@ -108,9 +108,9 @@ class WatchScreen(RunScreen):
         latest = self.latest
         state = views.state(latest, self.sight, held=self.held is not None)
         self._line("title").show(*views.title(self.session), right=state)
-        under = views.answer_ground(one)
+        under = views.answer_ground(shown, one)
         ink = Role.STRONG if under is None else Role.ON_GROUND
-        self._line("answer").show((words.answer(one, self.session.units), ink), under=under)
+        self._line("answer").show((views.answer(shown, one, self.session.units), ink), under=under)
         self._line("steer").show(*views.steer(self.session, latest, one))
         for name, pieces in (
             ("swing", views.swing(self.session, one)),

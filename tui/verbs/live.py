@@ -1,6 +1,7 @@
 """The verbs of a live run: `demo`, `watch` and `record`."""
 
 import getpass
+import os
 import signal
 import sys
 import time
@@ -105,8 +106,11 @@ def record(
 def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
     """Open the dashboard on a new run, and print the log's path when it has ended."""
     from eastfall.tui.opening import run_live  # noqa: PLC0415 (the screen library only where a screen opens)
+    from eastfall.tui.terminal import refuse_unless_screen  # noqa: PLC0415
 
-    with _recorded(site, links, folder, None) as run:
+    refuse_unless_screen(os.environ, is_terminal=_screen_there())
+    # The links are opened before the screen: one that cannot be had is told in one line, here and now.
+    with _recorded(site, links, folder, None) as run, run:
         status = run_live(site, run=run, curve=run.pipeline.survey.curve)
     click.echo(run.log_path)
     click.get_current_context().exit(status)

@@ -183,7 +183,7 @@ def reduce(
         print_rows(_stations(shape), form)
         for line in _footing(found, shape) if form == "table" else ():
             click.echo(line)
-    click.get_current_context().exit(1 if found.exceeded else 0)
+    click.get_current_context().exit(1 if found.exceeded or found.seal_state == "changed" else 0)
 
 
 def _many(
@@ -220,10 +220,10 @@ def _heading(found: "Reduction") -> str:
 
 def _footing(found: "Reduction", shape: dict[str, Any]) -> list[str]:
     """Return what stands below the table of stations."""
-    faults = "".join(f", {count} {name}" for name, count in sorted(found.faults.items()))
+    faults = ", ".join(f"{name}: {count}" for name, count in sorted(found.faults.items()))
     aside = "".join(f", {count} {name}" for name, count in sorted(found.unused.items()))
     lines = [
-        f"readings used {found.frames}, lines refused {found.rejected}{faults}"
+        f"readings used {found.frames}, lines refused {found.rejected}{f' ({faults})' if faults else ''}"
         + (f"; readings left aside{aside}" if aside else "")
     ]
     if closure := shape["closure"]:
