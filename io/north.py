@@ -57,6 +57,8 @@ def _declination(latitude: float, longitude: float, elevation: float, on: date) 
 
 
 def _convergence(latitude: float, longitude: float, grid: str) -> float:
+    if not grid:
+        raise SiteFileError("site.grid is ''; expected an EPSG code of a projection, as EPSG:25832")
     try:
         from pyproj import Proj  # noqa: PLC0415 (an extra; only for grid north)
         from pyproj.exceptions import ProjError  # noqa: PLC0415
