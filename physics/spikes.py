@@ -1,12 +1,16 @@
 """Tilts that stand apart from those before them for a row or two: knocks and slips of a digit, not the guide."""
 
+from math import isfinite
+
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.physics.readings import Readings
+from eastfall.physics.readings import CHANNELS, Readings
 
 Flags = NDArray[np.bool_]
 
+_ROWS = slice(CHANNELS.index("depth"), CHANNELS.index("tilt_b") + 1)
+"""Depth and the two tilts, which stand beside each other in a block."""
 _BEFORE = 5
 """Rows that a tilt is held against, by their median: two spikes among them do not move it."""
 _STEP, _REACH = 1.0, 3.0
@@ -33,11 +37,15 @@ class TiltSpikes:
 
     def feed(self, readings: Readings, blank: Flags | None = None) -> Flags | None:
         """Take a block, less rows that are blank already; return which rows are spikes, or None where none is."""
-        rows = np.stack([readings.depth, readings.column("tilt_a"), readings.column("tilt_b")])
+        rows = readings.data[_ROWS]
+        joined = np.concatenate((self._last, rows), axis=1)
+        if blank is None and self._is_calm(joined[1:]) and isfinite(joined[0].max(initial=0.0)):
+            self._last = joined[:, -_BEFORE:].copy()
+            return None
         whole = np.isfinite(rows).all(axis=0)
         if blank is not None:
             whole &= ~blank
-        joined = np.concatenate([self._last, rows if whole.all() else rows[:, whole]], axis=1)
+        joined = np.concatenate((self._last, rows[:, whole]), axis=1)
         known = self._last.shape[1]
         self._last = joined[:, -_BEFORE:].copy()
         if joined.shape[1] <= _BEFORE or self._is_calm(joined[1:]):
@@ -56,5 +64,10 @@ class TiltSpikes:
         return flags if flags.any() else None
 
     def _is_calm(self, tilts: NDArray[np.float64]) -> bool:
-        """Tell at little cost that no row can be far from the five before it: no step is a fifth of that."""
-        return bool(np.abs(tilts[:, 1:] - tilts[:, :-1]).max() <= self._apart / _BEFORE)
+        """Tell at little cost that no row can be far from the five before it: no step is a fifth of that.
+
+        A missing tilt is not calm.
+        """
+        steps = tilts[:, 1:] - tilts[:, :-1]
+        most = self._apart / _BEFORE
+        return bool(steps.max(initial=-most) <= most and steps.min(initial=most) >= -most)

@@ -73,6 +73,7 @@ def test_spikes_do_not_depend_on_how_the_rows_are_cut(cuts, at):
     readings = ride()
     readings.data[3, list(at)] += radians(4.0)
     readings.data[4, list(at)[:2]] = np.nan
+    readings.data[2, list(at)[2:4]] = np.nan
     whole = TiltSpikes(radians(1.0)).feed(readings)
     pieces, spikes = [], TiltSpikes(radians(1.0))
     for begin, end in itertools.pairwise([0, *sorted(cuts), 400]):
