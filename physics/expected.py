@@ -119,6 +119,16 @@ class Models:
             case _:
                 return self.body_at(depth) - self.reference(depth)
 
+    def stated(self, depth: NDArray[np.float64]) -> Pair:
+        """Return what a plumb shaft shows with the line at the speed that the site states, shape (2, n) [m]."""
+        match self.assumptions.run.kind:
+            case "guided":
+                return self.plumb(depth) - self.lowering(depth, self.assumptions.guide.line_speed)
+            case "hung":
+                return self.plumb(depth) + self.lowering(depth, self.assumptions.line.line_speed)
+            case _:
+                return self.plumb(depth)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Budget:
@@ -401,7 +411,7 @@ def expected_budget(models: Models) -> Budget:
         lines = np.array([one.reference(depth) for one in others]) - models.reference(depth)
         parts = _fall_parts(models, others, moved, depth) - lines
     else:
-        parts = np.array([one.plumb(depth) for one in others]) - models.plumb(depth)
+        parts = np.array([one.stated(depth) for one in others]) - models.stated(depth)
     matter = np.flatnonzero(np.any(parts, axis=(1, 2)))
     return Budget(depth=depth, names=tuple(moved[one].name for one in matter), parts=parts[matter])
 

@@ -206,7 +206,7 @@ CHECKS: tuple[PublishedCheck, ...] = (
     ),
     PublishedCheck(
         name="eastward deflection, 100 m at 32° (about 1.9 cm)",
-        source="UCSD Physics 110B, lecture notes on rotating frames",
+        source="UCSD Physics 110B, notes on rotating frames",
         mark="published",
         unit="mm",
         expected=19.0,
