@@ -53,6 +53,8 @@ def station_row(station: Station) -> dict[str, Any]:
         "lean_verdict": station.lean_verdict,
         "clearance_mm": millimetres(station.clearance),
         "clearance_verdict": station.clearance_verdict,
+        "spread_east_mm": millimetres(station.spread_east),
+        "spread_north_mm": millimetres(station.spread_north),
     }
 
 

@@ -120,6 +120,9 @@ class Station:
     """From where this station is to the shaft wall [m]."""
     u_clearance: float | None = None
     clearance_verdict: Verdict | None = None
+    spread_east: float | None = None
+    spread_north: float | None = None
+    """Of single bodies about their mean: standard deviation of the marks at a level [m]; None for other stations."""
 
     @property
     def residual_east(self) -> float:

@@ -2,7 +2,7 @@
 
 import bisect
 from collections import Counter
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -145,7 +145,11 @@ class Drop(Plain):
             names=names,
             parts=parts,
         )
-        return one_station(facts, self._assumptions)
+        found = one_station(facts, self._assumptions)
+        if level.count < 2:
+            return found
+        east, north = np.sqrt(level.squares / (level.count - 1)).tolist()
+        return replace(found, spread_east=east, spread_north=north)
 
     def close(self) -> tuple[Station, ...]:
         """Return nothing: every mark has given its station already."""

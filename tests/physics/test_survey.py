@@ -414,6 +414,8 @@ def test_each_landing_mark_is_its_own_reading_and_the_level_its_mean(shaft):
     assert level.measured_east == pytest.approx(marks[:, 0].mean(), rel=1e-12)
     scatter = next(one for one in level.shares if one.name == "scatter of the marks")
     assert scatter.east == pytest.approx(marks[:, 0].std(ddof=1) / 3.0, rel=1e-9)
+    assert level.spread_east == pytest.approx(marks[:, 0].std(ddof=1), rel=1e-9)
+    assert level.spread_north == pytest.approx(marks[:, 1].std(ddof=1), rel=1e-9)
 
 
 def test_a_swinging_bob_is_known_at_rest_and_each_halt_is_one_station(shaft):

@@ -170,6 +170,9 @@ class StationPage(ModalScreen[bool]):
             yield plain(f"measured {words.pair(one.measured_east, one.measured_north, units=self._units)}")
             yield plain(f"expected {words.pair(one.expected_east, one.expected_north, units=self._units)}")
             yield plain(f"from {one.readings} readings, closed {words.clock(one.time)} after the start\n")
+            if one.spread_east is not None and one.spread_north is not None:
+                told = words.pair(one.spread_east, one.spread_north, units=self._units)
+                yield plain(f"single bodies scatter by {told} (standard deviation)\n")
             yield plain(budget(one, self._units))
             yield plain("\nenter  look at it in the picture        esc  back")
 
