@@ -300,11 +300,18 @@ def text_of(app: Dashboard) -> str:
 
 
 async def settled(pilot, *pressed: str) -> str:
-    """Press keys, wait until no worker runs, and return the screen."""
+    """Press keys, wait until no worker runs and the picture stands, and return the screen."""
     await pilot.press(*pressed)
-    await pilot.app.workers.wait_for_complete()
-    await pilot.pause()
-    return text_of(pilot.app)
+    text, same = "", 0
+    for _ in range(200):
+        await pilot.app.workers.wait_for_complete()
+        await pilot.pause()
+        before, text = text, text_of(pilot.app)
+        # What a worker found is painted a few messages later: the picture stands when it did three times over.
+        same = same + 1 if text == before else 0
+        if same == 3:
+            break
+    return text
 
 
 def explorer(**more: object) -> Dashboard:
