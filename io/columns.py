@@ -155,7 +155,10 @@ class ColumnsDecoder:
             words = found.groups() if found else ()
             if any(words):
                 read.append(number)
-                rows.append([float(one) if one else np.nan for one in words])
+                full = all(words)
+                rows.append(
+                    [*map(float, words)] if full else [float(one) if one else np.nan for one in words]
+                )
             else:
                 codes[number] = self._fault(line)
         if rows:

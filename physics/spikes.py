@@ -51,10 +51,14 @@ class TiltSpikes:
         if joined.shape[1] <= _BEFORE or self._is_calm(joined[1:]):
             return None
         spiky = np.zeros(joined.shape[1], dtype=bool)
-        windows = np.lib.stride_tricks.sliding_window_view(joined[1:, :-1], _BEFORE, axis=1)
-        away = np.abs(joined[1:, _BEFORE:] - np.median(windows, axis=2))
+        rows = joined.shape[1] - _BEFORE
+        before = np.array([joined[1:, first : first + rows] for first in range(_BEFORE)])
+        before.sort(
+            axis=0
+        )  # the median by its middle row: numpy.median costs six times as much on a live block
+        away = np.abs(joined[1:, _BEFORE:] - before[_BEFORE // 2])
         depth = joined[0]
-        near = (np.abs(np.diff(depth))[_BEFORE - 1 :] <= _STEP) & (
+        near = (np.abs(depth[_BEFORE:] - depth[_BEFORE - 1 : -1]) <= _STEP) & (
             np.abs(depth[_BEFORE:] - depth[:-_BEFORE]) <= _REACH
         )
         spiky[_BEFORE:] = (away > self._apart).any(axis=0) & near
