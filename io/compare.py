@@ -11,8 +11,9 @@ from numpy.typing import NDArray
 from eastfall.io.errors import InputError
 from eastfall.io.reduce import Reduction
 from eastfall.io.tables import millimetres, number
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Station
-from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+from eastfall.physics.verdict import horizontal
 
 DIFFERENCE_KEYS = (
     "depth_m",

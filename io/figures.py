@@ -14,6 +14,7 @@ from matplotlib.axes import Axes
 from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Station
 from eastfall.physics.settings import Shaft
 
@@ -86,12 +87,13 @@ def _depth_axis(axes: Axes, depths: Column, side: str, label: str) -> None:
 
 def _with_band(axes: Axes, value: Column, u: Column, depth: Column, number: int, label: str) -> None:
     colour, mark = _PASS[number % len(_PASS)], _MARK[number % len(_MARK)]
+    width = COVERAGE_FACTOR * u
     if depth.size <= _ONLY_A_FEW:
         axes.errorbar(
-            value, depth, xerr=2.0 * u, fmt=mark, color=colour, markersize=4.5, capsize=3.0, label=label
+            value, depth, xerr=width, fmt=mark, color=colour, markersize=4.5, capsize=3.0, label=label
         )
         return
-    axes.fill_betweenx(depth, value - 2.0 * u, value + 2.0 * u, color=colour, alpha=0.16, linewidth=0)
+    axes.fill_betweenx(depth, value - width, value + width, color=colour, alpha=0.16, linewidth=0)
     axes.plot(
         value,
         depth,

@@ -8,6 +8,7 @@ import numpy as np
 
 from eastfall.io.errors import SiteFileError
 from eastfall.io.safetext import safe
+from eastfall.physics.budget import combined
 from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.settings import ARCSECOND, Assumptions
 
@@ -133,7 +134,7 @@ def budget(assumptions: Assumptions, at: list[float]) -> dict[str, Any]:
     """Return what each input contributes to the uncertainty of the expected offset at depths [m]."""
     curve = expected_curve(assumptions)
     parts = np.abs(curve.budget.at(at)) * _MM
-    total = np.sqrt(np.sum(parts**2, axis=0))
+    total = combined(parts)
     return {
         "kind": assumptions.run.kind,
         "site": assumptions.site.name,

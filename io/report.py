@@ -20,6 +20,7 @@ from eastfall.io.reduce import Reduction
 from eastfall.io.reportview import Table
 from eastfall.io.safetext import safe
 from eastfall.io.sources import formulas
+from eastfall.physics.budget import COVERAGE_FACTOR
 
 _MARKDOWN_STATIONS = 60
 _DIFFERENCE = ("depth", "east", "north", "u_east", "u_north")
@@ -51,7 +52,7 @@ def compared(comparison: Comparison) -> Compared:
                     for x in (one.first_east, one.first_north, one.second_east, one.second_north)
                 ),
                 *(reportview.mm(x) for x in (one.east, one.north)),
-                *(reportview.plain_mm(2.0 * x) for x in (one.u_east, one.u_north)),
+                *(reportview.plain_mm(COVERAGE_FACTOR * x) for x in (one.u_east, one.u_north)),
                 one.moved,
             )
             for one in rows

@@ -5,9 +5,9 @@ from typing import Any
 
 from eastfall.io.reduce import Reduction
 from eastfall.io.reportview import Table, mm, plain_mm
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Station
 from eastfall.physics.settle import Settling, settle
-from eastfall.physics.verdict import COVERAGE_FACTOR
 
 _MOST_REMEDIES = 3
 

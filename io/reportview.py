@@ -9,6 +9,7 @@ from eastfall.io.prediction import REFERENCE_LINES
 from eastfall.io.reduce import Reduction
 from eastfall.io.safetext import safe
 from eastfall.io.whatif import settings_of
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Station
 
 _MM = 1000.0
@@ -179,8 +180,8 @@ def stations(reduction: Reduction) -> Table:
             mm(one.expected_north),
             mm(one.residual_east),
             mm(one.residual_north),
-            plain_mm(2.0 * one.u_east),
-            plain_mm(2.0 * one.u_north),
+            plain_mm(COVERAGE_FACTOR * one.u_east),
+            plain_mm(COVERAGE_FACTOR * one.u_north),
             plain_mm(one.action),
             one.verdict,
         )

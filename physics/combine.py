@@ -9,6 +9,7 @@ from math import hypot, isfinite, pi
 import numpy as np
 from numpy.typing import NDArray
 
+from eastfall.physics.budget import combined
 from eastfall.physics.findings import Best, Closure, FaceSums, Station
 from eastfall.physics.kinds.base import RANDOM
 from eastfall.physics.kinds.shares import AZIMUTH, BENDS, DEPTH, JUMPED, MISSING, SCALE, ZERO
@@ -153,25 +154,26 @@ def _two_passes(
     _, second, others = _table(up)
     apart = second - second[:, :1] - (first - first[:, :1])
     opposite = _opposite(down, up)
-    combined: dict[str, Array] = {}
+    kept: dict[str, Array] = {}
     zeros = np.zeros(first.shape)
     for name in dict.fromkeys([*parts, *others]):
-        own = 0.5 * np.hypot(parts.get(name, zeros), _tied_part(others.get(name, zeros)))
-        combined[name] = own if name in _OWN else parts.get(name, zeros)
+        alone = 0.5 * np.hypot(parts.get(name, zeros), _tied_part(others.get(name, zeros)))
+        kept[name] = alone if name in _OWN else parts.get(name, zeros)
     best = first + 0.5 * apart
     if opposite:
-        combined[ZERO] = zeros
-        combined |= _proportional(best, assumptions)
-    u_apart = 2.0 * np.sqrt(sum(combined[name] ** 2 for name in _OWN if name in combined) + _GRAIN**2)
+        kept[ZERO] = zeros
+        kept |= _proportional(best, assumptions)
+    own = [part for name, part in kept.items() if name in _OWN]
+    u_apart = 2.0 * combined([*own, np.full(first.shape, _GRAIN)])
     odd = np.abs(_freed(depth, apart, opposite=opposite))
     disagree = odd > _TOO_FAR * u_apart
     if disagree.any():
-        combined[APART] = np.where(disagree, 0.5 * odd, 0.0)
+        kept[APART] = np.where(disagree, 0.5 * odd, 0.0)
         far = depth[disagree.any(axis=0)]
         notes.append(
             f"down and up pass disagree at {far.size} of {depth.size} stations, first at {far[0]:g} m"
         )
-    return _Line(depth=depth, residual=best, parts=combined, passes=2, apart=apart)
+    return _Line(depth=depth, residual=best, parts=kept, passes=2, apart=apart)
 
 
 def _proportional(best: Array, assumptions: Assumptions) -> dict[str, Array]:
@@ -225,7 +227,7 @@ def _tied(line: _Line, assumptions: Assumptions, notes: list[str]) -> _Line:
         return line
     end = np.array([guide.end_east, guide.end_north])
     misclosure = line.residual[:, -1] - end
-    u_end = np.array([np.sqrt(sum(part[row, -1] ** 2 for part in line.parts.values())) for row in (0, 1)])
+    u_end = combined([part[:, -1] for part in line.parts.values()])
     notes.append(
         f"tied to the known end at {line.depth[-1]:g} m: {misclosure[0] * 1e3:.1f} mm east and "
         f"{misclosure[1] * 1e3:.1f} mm north of misclosure spread over depth"
@@ -250,11 +252,12 @@ def _bridged(name: str, part: Array, t: Array) -> Array:
 
 def _told(line: _Line, stations: tuple[Station, ...]) -> tuple[Best, ...]:
     limits = {one.depth: (one.warning, one.action) for one in stations}
-    u = np.sqrt(np.sum(np.stack(list(line.parts.values())) ** 2, axis=0))
+    parts = np.stack(list(line.parts.values()))
+    u = combined(parts)
     length, u_length = horizontal(*line.residual, *u)
     words = verdicts(length, u_length, [limits[z][1] for z in line.depth.tolist()])
     names = tuple(line.parts)
-    by_station = np.stack(list(line.parts.values())).transpose(2, 0, 1).tolist()
+    by_station = parts.transpose(2, 0, 1).tolist()
     rows = np.stack([line.depth, *line.residual, *u, *line.apart]).T.tolist()
     return tuple(
         Best(

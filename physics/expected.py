@@ -12,6 +12,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from eastfall.physics.air import AirColumn, air_column
+from eastfall.physics.budget import Budget, combined
 from eastfall.physics.fall import Trajectory, Variation, fall, fall_ensemble
 from eastfall.physics.field import LocalField, local_field
 from eastfall.physics.hung import hang
@@ -128,35 +129,6 @@ class Models:
                 return self.plumb(depth) + self.lowering(depth, self.assumptions.line.line_speed)
             case _:
                 return self.plumb(depth)
-
-
-@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
-class Budget:
-    """What each input contributes to the uncertainty of the expected offset, by depth.
-
-    Parameters
-    ----------
-    depth : ndarray, shape (m,)
-        [m].
-    names : tuple of str
-        The inputs.
-    parts : ndarray, shape (len(names), 2, m)
-        Standard uncertainty from each alone [m], east and north; the sign is that of the sensitivity.
-    """
-
-    depth: NDArray[np.float64]
-    names: tuple[str, ...]
-    parts: NDArray[np.float64]
-
-    def total(self) -> Pair:
-        """Return the combined standard uncertainty, shape (2, m) [m]; inputs taken as uncorrelated."""
-        return np.sqrt(np.sum(self.parts**2, axis=0))
-
-    def at(self, depth: ArrayLike) -> NDArray[np.float64]:
-        """Return the parts at depths, shape (n,) [m]: shape (len(names), 2, n) [m]."""
-        z = np.atleast_1d(np.asarray(depth, dtype=float))
-        rows = [np.interp(z, self.depth, row) for part in self.parts for row in part]
-        return np.array(rows).reshape(len(self.names), 2, z.size)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -361,7 +333,7 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
         body=body - reference,
         field_line=field_line - reference,
         reference=reference,
-        u=np.sqrt(np.sum(budget.at(depth) ** 2, axis=0)),
+        u=combined(budget.at(depth)),
         budget=budget,
         fall_time=there.time,
         fall_speed=there.speed,

@@ -4,7 +4,8 @@ from dataclasses import dataclass
 from math import ceil, hypot, sqrt
 from typing import Protocol
 
-from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+from eastfall.physics.budget import COVERAGE_FACTOR
+from eastfall.physics.verdict import horizontal
 
 RANDOM = frozenset(
     {"tilt, random", "tilt at rest", "readings", "rest point", "reading of the mark", "scatter of the marks"}

@@ -10,6 +10,7 @@ import numpy as np
 import numpy.typing as npt
 
 from eastfall.physics.air import AirColumn
+from eastfall.physics.budget import covariance
 from eastfall.physics.earth import Array
 from eastfall.physics.ensemble import COARSE
 from eastfall.physics.errors import ParameterError
@@ -151,9 +152,9 @@ def landing_spread(
     )
     if not active:
         return LandingSpread(depth=falls.depth, covariance=np.zeros((len(falls.depth), 2, 2)))
-    plus, minus = np.split(np.stack([falls.east, falls.north]), 2, axis=1)
+    plus, minus = np.split(np.stack([falls.east, falls.north], axis=1), 2)
     parts = 0.5 * (plus - minus)
-    return LandingSpread(depth=falls.depth, covariance=np.einsum("imd,jmd->dij", parts, parts))
+    return LandingSpread(depth=falls.depth, covariance=covariance(parts))
 
 
 def monte_carlo(

@@ -3,7 +3,8 @@
 from dataclasses import dataclass
 from math import atan2, hypot, inf, nan, pi
 
-from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+from eastfall.physics.budget import COVERAGE_FACTOR
+from eastfall.physics.verdict import horizontal
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -5,10 +5,8 @@ from collections.abc import Iterable
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Verdict
-
-COVERAGE_FACTOR = 2.0
-"""U = 2u, about 95 % for a normal distribution (GUM, 6.3)."""
 
 
 def horizontal(

@@ -5,8 +5,9 @@ from itertools import combinations
 from math import hypot
 
 from eastfall.io.compare import Comparison, DepthDifference, between_passes
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Station
-from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+from eastfall.physics.verdict import horizontal
 from eastfall.tui import words
 from eastfall.tui.roles import Role
 from eastfall.tui.units import METRIC, Units

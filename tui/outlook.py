@@ -8,9 +8,9 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
+from eastfall.physics.budget import COVERAGE_FACTOR, combined
 from eastfall.physics.expected import ExpectedCurve, Pair, expected_curve
 from eastfall.physics.settings import Assumptions
-from eastfall.physics.verdict import COVERAGE_FACTOR
 from eastfall.tui import words
 from eastfall.tui.dials import line_speed
 from eastfall.tui.units import METRIC, Units
@@ -148,7 +148,7 @@ def budget(one: Prospect, depths: Sequence[float], units: Units = METRIC) -> lis
     named = zip(one.curve.budget.names, parts, strict=True)
     rows = sorted(named, key=lambda row: -hypot(*row[1][:, -1]))
     seen = [(name, part) for name, part in rows if part.max() >= _SMALL]
-    seen.append(("together", np.sqrt(np.sum(parts**2, axis=0))))
+    seen.append(("together", combined(parts)))
     lines = [
         f"{units.short:<22}" + "".join(f"{f'{units.depth(depth)} {units.long}':>13}" for depth in shown),
         f"{'':<22}" + "".join(f"{'E':>6}{'N':>7}" for _ in shown),

@@ -3,8 +3,9 @@
 from math import atan2, degrees, hypot, isfinite, log, nan
 from typing import TYPE_CHECKING, Protocol
 
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import AlarmView, RestPoint, Standing
-from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal
+from eastfall.physics.verdict import horizontal
 from eastfall.tui.units import FEET, METRIC, Units
 
 if TYPE_CHECKING:

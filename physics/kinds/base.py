@@ -7,6 +7,7 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
+from eastfall.physics.budget import combined
 from eastfall.physics.depth import Jump
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import ROW_FIELDS, FaceSums, Halt, RestPoint, Rows, Station, Verdict
@@ -181,8 +182,8 @@ def one_station(facts: StationFacts, assumptions: Assumptions) -> Station:
 
 
 def stations_of(facts: StationFacts, assumptions: Assumptions) -> list[Station]:
-    """Judge stations: uncertainty of the residual by the root sum of squares (GUM, eq. 10), and the verdicts."""
-    u = np.sqrt(np.sum(facts.parts**2, axis=0))
+    """Judge stations: combined uncertainty of the residual, and the verdicts."""
+    u = combined(facts.parts)
     residual = facts.measured - facts.expected
     length, u_length = horizontal(residual[0], residual[1], u[0], u[1])
     warning, action = limits_at(assumptions.limits, facts.depth)
@@ -273,7 +274,7 @@ def _leans(facts: StationFacts, residual: Array, limits: Limits) -> list[_Judgem
         row = facts.names.index(RANDOM)
         squares = np.diff(facts.parts[row] ** 2, axis=1, prepend=earlier[row] ** 2)
         parts[row] = np.sqrt(np.abs(squares))
-    length, u = horizontal(*change, *np.sqrt(np.sum(parts**2, axis=0)))
+    length, u = horizontal(*change, *combined(parts))
     with np.errstate(divide="ignore", invalid="ignore"):
         lean, u_lean = length / step, u / step
     words = [None] * step.size if limits.lean is None else verdicts(lean, u_lean, limits.lean)

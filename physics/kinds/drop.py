@@ -6,6 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from eastfall.physics.budget import combined
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.kinds.base import (
@@ -117,7 +118,7 @@ class Drop(Plain):
         parts = np.concatenate([budget.at(level.depth), np.full((1, 2, 1), self._u_offset)])
         names = (*budget.names, "reading of the mark")
         single = np.array([name in _OF_A_RELEASE or name == names[-1] for name in names])
-        assumed = np.sqrt(np.sum(parts[single] ** 2, axis=0))[:, 0]
+        assumed = combined(parts[single])[:, 0]
         seen = np.sqrt(level.squares / (count - 1)) if count > 1 else np.zeros(2)
         if np.any(seen > assumed):
             scatter = (np.maximum(seen, assumed) / np.sqrt(count)).reshape(1, 2, 1)

@@ -7,6 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics import swing
+from eastfall.physics.budget import combined
 from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
@@ -359,7 +360,7 @@ class Hung(Plain):
             names = Judged.__slots__
             return Judged(**{name: row[name] for name in names})
         position, _, parts = self._position(level)
-        u_east, u_north = np.sqrt(np.sum(parts**2, axis=0))[:, 0]
+        u_east, u_north = combined(parts)[:, 0]
         return Judged(
             depth=level.depth,
             measured_east=float(position[0]),

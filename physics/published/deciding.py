@@ -2,10 +2,9 @@
 
 from functools import partial
 
-import numpy as np
-
+from eastfall.physics.budget import COVERAGE_FACTOR, combined
 from eastfall.physics.published.check import PublishedCheck
-from eastfall.physics.verdict import COVERAGE_FACTOR, horizontal, verdict
+from eastfall.physics.verdict import horizontal, verdict
 
 _GUM_H1 = "JCGM 100:2008 (GUM), H.1: calibration of an end gauge, uncertainties 25, 9.7, 2.9, 16.6 nm"
 
@@ -20,10 +19,6 @@ def _edge_of_acceptance(nominal: float, tolerance: float, expanded: float, side:
         else:
             outside = middle
     return nominal + side * inside
-
-
-def _combined(*parts: float) -> float:
-    return float(np.sqrt(np.sum(np.square(parts))))
 
 
 def _length_uncertainty() -> float:
@@ -56,7 +51,7 @@ CHECKS = (
         unit="nm",
         expected=32.0,
         tolerance=0.5,
-        compute=partial(_combined, 25.0, 9.7, 2.9, 16.6),
+        compute=lambda: float(combined([25.0, 9.7, 2.9, 16.6])),
     ),
     PublishedCheck(
         name="uncertainty of the length of (30 ± 4, 40 ± 3)",

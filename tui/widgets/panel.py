@@ -6,8 +6,8 @@ from functools import partial
 
 import numpy as np
 
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Rows
-from eastfall.physics.verdict import COVERAGE_FACTOR
 from eastfall.tui import sight as look
 from eastfall.tui.axes import Axis, around, label, symmetric
 from eastfall.tui.raster import Floats, Kept, Packed, Plane, Raster

@@ -3,7 +3,7 @@
 import numpy as np
 
 from eastfall.io.compare import Comparison
-from eastfall.physics.verdict import COVERAGE_FACTOR
+from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.tui.axes import Axis, symmetric
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
