@@ -46,7 +46,7 @@ def line_table(
     field, depth = models.field, np.asarray(at, dtype=float)
     density = models.air.density(depth / 2.0) if models.air else np.zeros_like(depth)
     longer = stretch(line, depth, field.gravity, _warmer(assumptions, depth))
-    left = np.abs(models.lowering(depth, line.line_speed)[0])
+    left = np.abs(line.line_speed * models.riding(depth, models.bob(depth)))
     columns: dict[str, list[float | None]] = {
         "depth_m": depth.tolist(),
         "stretch_mm": (longer.total * _MM).tolist(),

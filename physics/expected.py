@@ -1,7 +1,8 @@
 """What a perfectly plumb shaft would have shown: one curve over depth for a set of assumptions, with its uncertainty.
 
 The models are in `field`, `hung` and `fall`; here they are put together per kind of run and reference line, tabulated
-once and interpolated after that. The lean of a moving line depends on the journey and is added by the engine.
+once and interpolated after that. How fast a line moves depends on the journey: the engine multiplies what a curve says
+of one metre a second, or sums its own.
 """
 
 from collections.abc import Iterator
@@ -10,6 +11,7 @@ from math import tau
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
+from scipy.integrate import cumulative_trapezoid
 
 from eastfall.physics.air import AirColumn, air_column
 from eastfall.physics.budget import Budget, combined
@@ -77,8 +79,11 @@ class Models:
 
     def bob(self, depth: NDArray[np.float64]) -> Pair:
         """Return where the bob hangs, at rest, when the line is as long as each depth, shape (2, n) [m]."""
-        still = replace(self.assumptions.line, line_speed=0.0)
-        found = hang(self.field, still, np.maximum(depth, 0.0), self.air)
+        return self._hung(depth, 0.0)
+
+    def _hung(self, depth: NDArray[np.float64], speed: float) -> Pair:
+        line = replace(self.assumptions.line, line_speed=speed)
+        found = hang(self.field, line, np.maximum(depth, 0.0), self.air)
         return np.stack([found.bob_east, found.bob_north])
 
     def body(self, to_depth: float) -> Trajectory:
@@ -91,10 +96,30 @@ class Models:
         there = self.body(float(depth[-1])).at(depth)
         return np.stack([there.east, there.north])
 
-    def lowering(self, depth: NDArray[np.float64], speed: ArrayLike) -> Pair:
-        """Return how far east a bob rides while its line runs at `speed` [m/s], shape (2, n) [m]."""
-        angle = lean(speed, self.assumptions.site.latitude, self.field.gravity)
-        return np.stack([angle * depth, np.zeros_like(depth)])
+    def riding(self, depth: NDArray[np.float64], bob: Pair) -> NDArray[np.float64]:
+        """Return how far east of its rest `bob` rides for each metre a second of its line, shape (n,) [s]."""
+        return self._hung(depth, 1.0)[0] - bob[0]
+
+    def seeming(self, depth: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Return how far west a plumb guide seems to go for each metre a second of the line, shape (n,) [s].
+
+        That is ∫ ε dz at 1 m/s, by the trapezoidal rule over `depth`, which rises from the collar.
+        """
+        angle = lean(1.0, self.assumptions.site.latitude, self.field.gravity_at(depth))
+        return np.asarray(cumulative_trapezoid(angle, depth, initial=0.0))
+
+    def moving(self, depth: NDArray[np.float64], bob: Pair) -> NDArray[np.float64]:
+        """Return how far east `plumb` moves for each metre a second of the line, shape (n,) [s].
+
+        At depths that rise from the collar, where a bob at rest is known; a falling body hangs on no line.
+        """
+        match self.assumptions.run.kind:
+            case "guided":
+                return -self.seeming(depth)
+            case "hung":
+                return self.riding(depth, bob)
+            case _:
+                return np.zeros_like(depth)
 
     def reference(self, depth: NDArray[np.float64]) -> Pair:
         """Return the run's reference line against the straight vertical, shape (2, n) [m]."""
@@ -121,14 +146,16 @@ class Models:
                 return self.body_at(depth) - self.reference(depth)
 
     def stated(self, depth: NDArray[np.float64]) -> Pair:
-        """Return what a plumb shaft shows with the line at the speed that the site states, shape (2, n) [m]."""
-        match self.assumptions.run.kind:
-            case "guided":
-                return self.plumb(depth) - self.lowering(depth, self.assumptions.guide.line_speed)
-            case "hung":
-                return self.plumb(depth) + self.lowering(depth, self.assumptions.line.line_speed)
-            case _:
-                return self.plumb(depth)
+        """Return what a plumb shaft shows with the line at the speed that the site states, shape (2, n) [m].
+
+        Guided or hung, at depths that rise from the collar.
+        """
+        given = self.assumptions
+        if given.run.kind == "hung":
+            return self._hung(depth, given.line.line_speed) - self.reference(depth)
+        shown = self.plumb(depth)
+        shown[0] -= given.guide.line_speed * self.seeming(depth)
+        return shown
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -234,6 +261,10 @@ class ExpectedCurve:
         East and north [m]. `plumb` is what the run's own measurement shows in a plumb shaft with the line at rest;
         `bob` and `body` the two classical answers and `field_line` the curved vertical, all three against the
         run's reference line; `reference` is that line against the straight vertical.
+    moving : ndarray, shape (n,)
+        How far east `plumb` moves for each metre a second of the line, down positive [s].
+    gravity : ndarray, shape (n,)
+        [m/s²].
     u : ndarray, shape (2, n)
         Standard uncertainty of `plumb` [m].
     budget : Budget
@@ -254,6 +285,8 @@ class ExpectedCurve:
     body: Pair
     field_line: Pair
     reference: Pair
+    moving: NDArray[np.float64]
+    gravity: NDArray[np.float64]
     u: Pair
     budget: Budget
     fall_time: NDArray[np.float64]
@@ -288,12 +321,9 @@ class ExpectedCurve:
 
     def expected(self, depth: ArrayLike, speed: float = 0.0) -> Pair:
         """Return what is expected at depths with the line at one constant speed all the way [m], shape (2, m)."""
-        z = np.asarray(depth, dtype=float)
-        still = self.look_up(self.plumb, z)
-        if speed == 0.0 or self.assumptions.run.kind == "drop":
-            return still
-        rides = self.models.lowering(np.maximum(z, 0.0), speed)
-        return still + rides if self.assumptions.run.kind == "hung" else still - rides
+        found = self.look_up(self.plumb, depth)
+        found[0] += speed * self.look_up(self.moving, depth)
+        return found
 
 
 def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
@@ -333,6 +363,8 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
         body=body - reference,
         field_line=field_line - reference,
         reference=reference,
+        moving=models.moving(depth, bob),
+        gravity=models.field.gravity_at(depth),
         u=combined(budget.at(depth)),
         budget=budget,
         fall_time=there.time,

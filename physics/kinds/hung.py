@@ -147,8 +147,8 @@ class Hung(Plain):
         rows[ROW["passing"]], rows[ROW["direction"]] = 0, np.where(speed < -_RUNNING, -1, 1)
         rows[ROW["measured_east"]], rows[ROW["measured_north"]] = offsets
         running = np.where(np.abs(speed) > _RUNNING, speed, 0.0)
-        rides = self._curve.models.lowering(np.maximum(depth, 0.0), running)
-        expected = self._curve.look_up(self._curve.plumb, depth) + rides
+        expected = self._curve.look_up(self._curve.plumb, depth)
+        expected[0] += running * self._curve.look_up(self._curve.moving, depth)
         rows[ROW["expected_east"]], rows[ROW["expected_north"]] = expected
         single = self._single(depth, np.isfinite(readings.column("east")))
         rows[ROW["u_east"]], rows[ROW["u_north"]] = np.hypot(

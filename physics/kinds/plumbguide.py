@@ -61,9 +61,9 @@ class PlumbGuide:
         The speed of a row is that of the step that led to it. While it is not known yet (the first fractions of a
         second of a run) steps are kept waiting for the first speed that is, and ε is NaN.
         """
-        site, gravity = self._curve.assumptions.site, self._curve.models.field.gravity
-        most = 0.5 * gravity
-        felt = gravity - np.maximum(
+        site = self._curve.assumptions.site
+        most = 0.5 * self._curve.models.field.gravity
+        felt = np.interp(depth, self._curve.depth, self._curve.gravity) - np.maximum(
             np.minimum(np.where(np.isnan(acceleration), 0.0, acceleration), most), -most
         )
         angle = lean(speed, site.latitude, felt)
