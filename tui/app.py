@@ -77,8 +77,9 @@ class Dashboard(App[int]):
         self.glyphs = glyphs
         self.set_class(glyphs.name == "ascii", "-ascii")
         self.muted = not self.remembered.now.sound
-        self.key_changes, self._refused = keys.moved(self.remembered.now.keys)
-        self.set_keymap(self.key_changes)
+        changes, self._refused = keys.moved(self.remembered.now.keys)
+        self.keys_now = keys.Keymap(changes)
+        self.set_keymap(changes)
         self.first = first
         self.choice: Choice | None = None
         self.feed: Feed | None = None
@@ -185,9 +186,8 @@ class Dashboard(App[int]):
         """Open the help page of the screen in front; a dialog or the help page itself has none."""
         if not self.screen.is_modal and not isinstance(self.screen, HelpScreen):
             places: tuple[str, ...] = getattr(self.screen, "PLACES", ())
-            self.push_screen(
-                HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed), changes=self.key_changes)
-            )
+            drop = isinstance(self.first, WatchScreen) and self.first.is_drop
+            self.push_screen(HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed), drop=drop))
 
     def action_leave(self) -> None:
         """Leave; a run that is being recorded is asked about first."""

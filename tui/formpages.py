@@ -7,6 +7,7 @@ from eastfall.io import sitekeys
 from eastfall.io.safetext import safe
 from eastfall.io.siteedit import REQUIRED, SiteDraft
 from eastfall.io.sitevalues import joined, key_of, parts, shape, typed
+from eastfall.tui.keys import AS_MADE, Keymap
 from eastfall.tui.widgets.formrow import KeyRow, SectionRow, State
 
 FIRST = "start here"
@@ -15,7 +16,6 @@ _HINTS = {
     "site.name": "e.g. Sandrigg East",
     "site.latitude_deg": "e.g. 57.30, south negative",
     "shaft.depth_m": "e.g. 940",
-    "run.kind": "arrows choose: guided, hung, drop",
     "url": "e.g. /dev/ttyUSB0, COM3, socket://10.0.0.7:4001",
 }
 
@@ -88,7 +88,7 @@ def _default_words(key: sitekeys.Key | None) -> str:
     return one_line(f"{key.section}.{key.name}", key.default)
 
 
-def hint(path: str) -> str:
+def hint(path: str, keymap: Keymap = AS_MADE) -> str:
     """Return what stands in the empty line."""
     key = key_of(path)
     name = parts(path)[2]
@@ -96,9 +96,9 @@ def hint(path: str) -> str:
     if key is None or example:
         return example
     if shape(path) == "choice":
-        return "arrows choose: " + ", ".join(key.choices)
+        return f"{keymap['form.less']} {keymap['form.more']} choose: " + ", ".join(key.choices)
     if shape(path) == "rows":
-        return "enter opens the rows"
+        return f"{keymap['form.open']} opens the rows"
     return "" if key.required else f"default: {_default_words(key)}"
 
 

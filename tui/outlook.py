@@ -13,6 +13,7 @@ from eastfall.physics.expected import ExpectedCurve, Pair, expected_curve
 from eastfall.physics.settings import Assumptions
 from eastfall.tui import words
 from eastfall.tui.dials import line_speed
+from eastfall.tui.typed import example_depths, read_depth
 from eastfall.tui.units import METRIC, Units
 
 What = Literal["expected", "bob", "dropped"]
@@ -186,9 +187,10 @@ def read_depths(text: str, deepest: float, units: Units = METRIC) -> tuple[float
     parts = text.replace(",", " ").replace(";", " ").split()
     bottom = f"{units.depth(deepest)} {units.long}"
     try:
-        found = sorted({words.read_depth(one, units) for one in parts})
+        found = sorted({read_depth(one, units) for one in parts})
     except ValueError:
-        raise ValueError(f"Not understood. Depths: 100 250 600, each at most {bottom}.") from None
+        example = example_depths(deepest, units)
+        raise ValueError(f"Not understood. Depths: {example}, each at most {bottom}.") from None
     if len(found) > _MOST or (found and found[-1] > deepest * (1.0 + 1e-9)):
         raise ValueError(f"At most {_MOST} depths, each at most {bottom}.")
     return tuple(found) or quarters(deepest)

@@ -58,9 +58,19 @@ class Units:
     def _places(self, places: int) -> int:
         return places + self.finer
 
+    @property
+    def long_name(self) -> str:
+        """The long unit as a word."""
+        return {"metric": "metres", "feet": "feet"}[self.name]
+
+    @property
+    def short_name(self) -> str:
+        """The short unit as a word."""
+        return {"metric": "millimetres", "feet": "inches"}[self.name]
+
     def in_words(self) -> str:
         """Return both units as a sentence part."""
-        return {"metric": "metres and millimetres", "feet": "feet and inches, decimal"}[self.name]
+        return f"{self.long_name} and {self.short_name}" + (", decimal" if self.name == "feet" else "")
 
 
 METRIC = Units(name="metric", long="m", short="mm", long_size=1.0, short_size=1e-3, finer=0)

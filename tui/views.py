@@ -7,6 +7,7 @@ import numpy as np
 from eastfall.physics.findings import Standing, Station
 from eastfall.tui import sight as look
 from eastfall.tui import words
+from eastfall.tui.keys import AS_MADE, Keymap
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve, Session
 from eastfall.tui.store import Snapshot, worst_alarm
@@ -81,15 +82,18 @@ def answer_ground(snapshot: Snapshot, one: Subject) -> Role | None:
     return Role.GROUND_OK if calm else Role.GROUND_WARNING
 
 
-def steer(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ...]:
+def steer(session: Session, snapshot: Snapshot, one: Subject, keymap: Keymap = AS_MADE) -> tuple[Piece, ...]:
     """Return what to do, or what hinders."""
     if snapshot.trouble:
         return ((f"STOPPED: {snapshot.trouble}", Role.ACTION),)
     if not snapshot.armed:
-        return (("Not armed. Clear the shaft, then press g to say so. p plans the release.", Role.WARNING),)
+        arm, planner = keymap["watch.arm"], keymap["watch.planner"]
+        told = f"Not armed. Clear the shaft, then press {arm} to say so. {planner} plans the release."
+        return ((told, Role.WARNING),)
     if isinstance(one, Station):
         rest = "at rest" if one.still else "in passing"
-        return ((f"Station {one.number}, {one.direction}, {rest}. Press f to follow the newest.", Role.TEXT),)
+        follow = f"Press {keymap['watch.follow']} to follow the newest."
+        return ((f"Station {one.number}, {one.direction}, {rest}. {follow}", Role.TEXT),)
     if is_old(snapshot, one):
         return (("Do not go by this: wait until the feed is back.", Role.WARNING),)
     return ((words.steering(one, session.assumptions.run.kind, session.units), Role.STRONG),)
@@ -212,8 +216,10 @@ def _at(curve: Curve | None, one: Subject) -> Point | None:
     return float(east[0]), float(north[0])
 
 
-def alarm_line(snapshot: Snapshot) -> tuple[tuple[Piece, ...], Role | None]:
-    """Return the alarm to show first and the colour under it."""
+def alarm_line(
+    snapshot: Snapshot, keymap: Keymap = AS_MADE, seen: str = "watch.acknowledge"
+) -> tuple[tuple[Piece, ...], Role | None]:
+    """Return the alarm to show first and the colour under it; `seen` names the key that acknowledges it."""
     worst = worst_alarm(snapshot.alarms)
     if worst is None:
         return (("no alarms", Role.DIM),), None
@@ -223,5 +229,5 @@ def alarm_line(snapshot: Snapshot) -> tuple[tuple[Piece, ...], Role | None]:
         return ((f"{text}  ", Role.TEXT), (f"{len(snapshot.alarms)} seen", Role.DIM)), None
     more = f", {waiting - 1} more" if waiting > 1 else ""
     under = Role.GROUND_WARNING if "warning" in worst.name else Role.GROUND_ACTION
-    key = "   (a: seen)" if snapshot.mode == "live" else ""
+    key = f"   ({keymap[seen]}: seen)" if snapshot.mode == "live" else ""
     return ((f"{text}{more}{key}", Role.ON_GROUND),), under

@@ -1,12 +1,12 @@
 """Findings as plain sentences: every number with its unit, its sign or direction, and the line it is reckoned from."""
 
-from math import atan2, degrees, hypot, isfinite, log, nan
+from math import atan2, degrees, hypot, isfinite, log
 from typing import TYPE_CHECKING, Protocol
 
 from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import AlarmView, RestPoint, Standing
 from eastfall.physics.verdict import horizontal
-from eastfall.tui.units import FEET, METRIC, Units
+from eastfall.tui.units import METRIC, Units
 
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind, Reference
@@ -224,77 +224,3 @@ def size(count: int) -> str:
     if count < 1000:
         return f"{count} B"
     return f"{count / 1e3:.0f} kB" if count < 1_000_000 else f"{count / 1e6:.1f} MB"
-
-
-def read_moment(text: str, units: Units = METRIC) -> tuple[str, float]:
-    """Read where to jump: "612.5 m" or "2009 ft" is a depth, "12:30" or "1:02:30" or "90 s" a time [s].
-
-    Parameters
-    ----------
-    text : str
-        As typed.
-    units : Units
-        What a depth without a unit is in.
-
-    Returns
-    -------
-    tuple of str and float
-        "depth" and metres, or "time" and seconds from the start of the run.
-
-    Raises
-    ------
-    ValueError
-        With one line that says what is understood.
-    """
-    plain = text.strip().lower().replace(",", ".")
-    try:
-        if ":" in plain:
-            parts = [_not_negative(float(one)) for one in plain.split(":")]
-            return "time", sum(part * 60.0**power for power, part in enumerate(reversed(parts)))
-        if plain.endswith("s"):
-            return "time", _not_negative(float(plain[:-1]))
-        return "depth", read_depth(plain, units)
-    except ValueError:
-        raise ValueError(f"Not understood. A depth: 612.5 {units.long}. A time: 12:30 or 90 s.") from None
-
-
-def read_depth(text: str, units: Units = METRIC) -> float:
-    """Return a typed depth [m]; "m" or "ft" behind it overrules the units.
-
-    Raises
-    ------
-    ValueError
-        When it is no number of zero or more.
-    """
-    plain = text.strip().lower().replace(",", ".")
-    size = {"m": 1.0, "ft": FEET.long_size}
-    mark = next((one for one in size if plain.endswith(one)), "")
-    return _not_negative(float(plain.removesuffix(mark))) * size.get(mark, units.long_size)
-
-
-def read_mark(text: str) -> tuple[float, float, float]:
-    """Read where a body landed: depth in metres, then east and north in millimetres, as "210 5.5 -3.2".
-
-    Returns
-    -------
-    tuple of float
-        Depth, east and north [m].
-
-    Raises
-    ------
-    ValueError
-        With one line that says what is understood.
-    """
-    try:
-        depth, east, north = (float(one) for one in text.replace(";", " ").split())
-    except ValueError:
-        depth = east = north = nan
-    if not (isfinite(depth + east + north) and depth >= 0.0):
-        raise ValueError("three numbers: depth in m, east and north in mm, as 210 5.5 -3.2")
-    return depth, east / 1000.0, north / 1000.0
-
-
-def _not_negative(value: float) -> float:
-    if not (isfinite(value) and value >= 0.0):
-        raise ValueError(value)
-    return value

@@ -90,6 +90,26 @@ def lines(app: Dashboard) -> list[str]:
     return ["".join(segment.text for segment in strip) for strip in strips]
 
 
+def text_of(app: Any) -> str:
+    """Return the screen as one text."""
+    return "\n".join(lines(app))
+
+
+async def settled(pilot: Pilot[Any], *pressed: str) -> str:
+    """Press keys, wait until no worker runs and the picture stands, and return the screen."""
+    await pilot.press(*pressed)
+    text, same = "", 0
+    for _ in range(200):
+        await pilot.app.workers.wait_for_complete()
+        await pilot.pause()
+        before, text = text, text_of(pilot.app)
+        # What a worker found is painted a few messages later: the picture stands when it did three times over.
+        same = same + 1 if text == before else 0
+        if same == 3:
+            break
+    return text
+
+
 async def shown(pilot: Pilot[Any], snapshot: Snapshot) -> list[str]:
     """Hand a snapshot in and return the screen."""
     pilot.app.take(snapshot)  # type: ignore[attr-defined]

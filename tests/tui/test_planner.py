@@ -4,6 +4,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from screen_harness import settled, text_of
 
 from eastfall.io.sitefile import parse_site
 from eastfall.physics.errors import ParameterError
@@ -144,26 +145,6 @@ def test_lines_fit_eighty_columns_in_both_units(planned: drop.Plan) -> None:
 
 
 # The screen.
-
-
-def text_of(app: Dashboard) -> str:
-    """Return the screen as text."""
-    return "\n".join("".join(s.text for s in strip) for strip in app.screen._compositor.render_strips())
-
-
-async def settled(pilot, *pressed: str) -> str:
-    """Press keys, wait until no worker runs and the picture stands, and return the screen."""
-    await pilot.press(*pressed)
-    text, same = "", 0
-    for _ in range(200):
-        await pilot.app.workers.wait_for_complete()
-        await pilot.pause()
-        before, text = text, text_of(pilot.app)
-        # What a worker found is painted a few messages later: the picture stands when it did three times over.
-        same = same + 1 if text == before else 0
-        if same == 3:
-            break
-    return text
 
 
 @pytest.mark.parametrize(("width", "height"), [(80, 24), (120, 40), (200, 60)])

@@ -8,6 +8,7 @@ from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import pytest
+from screen_harness import text_of
 from textual.pilot import Pilot
 from textual.widgets import Input
 
@@ -62,11 +63,6 @@ def no_thread_is_left() -> Iterator[None]:
     """After every test the thread that listens is gone."""
     yield
     assert not [one for one in threading.enumerate() if one.name == "port trial" and one.is_alive()]
-
-
-def text_of(app: Dashboard) -> str:
-    """Return the screen as text."""
-    return "\n".join("".join(s.text for s in strip) for strip in app.screen._compositor.render_strips())
 
 
 async def see(pilot: Pilot[int], wanted: str | Callable[[str], bool]) -> str:

@@ -7,14 +7,13 @@ import pytest
 from click.testing import CliRunner
 from hypothesis import given
 from hypothesis import strategies as st
+from screen_harness import text_of
 
-from eastfall.tui import keys
 from eastfall.tui.app import Dashboard
 from eastfall.tui.glyphs import ASCII, BRAILLE
 from eastfall.tui.main import cli
 from eastfall.tui.opening import terminal_look
 from eastfall.tui.preferences import VARIABLE, Preferences, Remembered, place, read, written
-from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.settings import SETTINGS, SettingsScreen, after, in_words
 from eastfall.tui.screens.start import StartScreen
 from eastfall.tui.screens.watch import WatchScreen
@@ -119,66 +118,7 @@ def test_place_is_the_platforms_unless_the_environment_names_another() -> None:
     assert "eastfall" in str(found.parent)
 
 
-# Keys.
-
-
-def test_moved_key_holds_and_a_way_out_stays() -> None:
-    """Quit keeps ctrl+c and close keeps escape, whatever is asked for."""
-    holds, refused = keys.moved({"watch.note": "N", "all.quit": "Q", "page.close": "x9"})
-    assert holds == {"watch.note": "N", "all.quit": "Q,ctrl+c"}
-    assert len(refused) == 1
-    assert "page.close is 'x9'; expected one key" in refused[0]
-
-
-@pytest.mark.parametrize(
-    ("wanted", "says"),
-    [
-        ({"watch.nothing": "x"}, "there is no 'watch.nothing'"),
-        ({"watch.note": "a"}, "a is already watch.acknowledge"),
-        ({"watch.note": "q"}, "q is already all.quit"),
-        ({"watch.note": ""}, "expected one key"),
-        ({"explorer.keep": "5"}, "stays as it is"),
-        ({"all.theme": "r"}, "r is already watch.residual"),
-    ],
-)
-def test_key_that_cannot_move_is_told_and_stays(wanted: dict[str, str], says: str) -> None:
-    """An unknown action, a taken key and no key at all are one line each."""
-    holds, refused = keys.moved(wanted)
-    assert holds == {}
-    assert len(refused) == 1
-    assert says in refused[0]
-
-
-def test_two_keys_can_change_places() -> None:
-    """A swap is no clash."""
-    holds, refused = keys.moved({"watch.note": "j", "watch.jump": "n"})
-    assert holds == {"watch.note": "j", "watch.jump": "n"}
-    assert refused == []
-
-
-async def test_moved_key_acts_and_stands_in_key_line_and_help(session) -> None:
-    """The new key opens the note or the view, the old one does nothing, and both lists show the new one."""
-    app = Dashboard(
-        WatchScreen(session()), remembered=Remembered(now=Preferences(keys={"watch.residual": "Z"}))
-    )
-    async with app.run_test(size=(120, 40)) as pilot:
-        assert isinstance(app.first, WatchScreen)
-        await pilot.press("r")
-        assert not app.first.sight.residual
-        await pilot.press("Z")
-        assert app.first.sight.residual
-        assert "Z residual" in text_of(app)
-        await pilot.press("f1")
-        assert isinstance(app.screen, HelpScreen)
-        assert "Z         Draw the residual" in text_of(app)
-
-
 # What the application does with them.
-
-
-def text_of(app: Dashboard) -> str:
-    """Return the screen as text."""
-    return "\n".join("".join(s.text for s in strip) for strip in app.screen._compositor.render_strips())
 
 
 async def test_theme_and_sound_are_kept_when_their_keys_are_pressed(tmp_path: Path, session) -> None:

@@ -6,6 +6,7 @@ import runpy
 from pathlib import Path
 
 import pytest
+from screen_harness import text_of
 from textual.pilot import Pilot
 from textual.widgets import Input, TextArea
 
@@ -46,11 +47,6 @@ def pit(tmp_path: Path) -> Path:
     path = tmp_path / "heron.toml"
     path.write_text(PIT)
     return path
-
-
-def text_of(app: Dashboard) -> str:
-    """Return the screen as text."""
-    return "\n".join("".join(s.text for s in strip) for strip in app.screen._compositor.render_strips())
 
 
 async def type_in(pilot: Pilot[int], text: str) -> None:
@@ -349,7 +345,7 @@ async def test_help_lists_the_keys_of_the_form(pit: Path) -> None:
         await pilot.press("down", "f1")
         await pilot.pause()
         shown = text_of(app)
-        for words in ("^S        Save; asks before it writes over a file", "F5        Add a link"):
+        for words in ("F3        Save; asks before it writes over a file", "F5        Add a link"):
             assert words in shown
         await pilot.press("escape")
         await type_in(pilot, "7")

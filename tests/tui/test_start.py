@@ -4,6 +4,7 @@ import os
 from pathlib import Path
 
 import pytest
+from screen_harness import text_of
 
 from eastfall.io.cautions import CAUTIONS
 from eastfall.tui.app import Dashboard
@@ -21,11 +22,6 @@ def folder(tmp_path: Path) -> Path:
     (tmp_path / "runs").mkdir()
     (tmp_path / "runs" / "a\x1b[2J.eastfall.jsonl").write_text("{}\n")
     return tmp_path
-
-
-def text_of(app: Dashboard) -> str:
-    """Return the screen as text."""
-    return "\n".join("".join(s.text for s in strip) for strip in app.screen._compositor.render_strips())
 
 
 async def test_cautions_demo_sites_and_runs_are_offered(folder: Path) -> None:

@@ -9,6 +9,7 @@ from eastfall.tui.app import Dashboard
 from eastfall.tui.axes import Axis
 from eastfall.tui.glyphs import BRAILLE
 from eastfall.tui.screens.stations import head, row
+from eastfall.tui.typed import read_moment
 from eastfall.tui.units import FEET, METRIC, UNITS, size_of
 
 pytestmark = pytest.mark.invariant
@@ -58,7 +59,7 @@ def test_station_table_heads_name_the_unit_and_columns_stay(station) -> None:
 )
 def test_typed_depth_is_in_the_readers_unit_unless_it_says_another(typed, units, metres) -> None:
     """A mark behind the number overrules the setting."""
-    assert words.read_moment(typed, units) == ("depth", pytest.approx(metres, abs=1e-12))
+    assert read_moment(typed, 940.0, units) == ("depth", pytest.approx(metres, abs=1e-12))
 
 
 def test_ticks_are_round_in_the_unit_shown() -> None:

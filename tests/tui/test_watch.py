@@ -241,7 +241,7 @@ async def test_where_a_body_landed_is_typed_in_and_goes_to_the_run(session: Make
         assert isinstance(app.screen, WatchScreen)
         app.screen.who = "Ada"
         await pilot.press("x", *"210 5.5", "enter")
-        assert "three numbers: depth in m" in "\n".join(lines(app))
+        assert "three numbers: depth in metres" in "\n".join(lines(app))
         await pilot.press("space", "minus", *"3.2", "enter")
     assert feed.calls == [("mark", 210.0, 0.0055, -0.0032, "Ada")]
 

@@ -110,28 +110,6 @@ def test_alarm_line_begins_with_its_state(alarm: Callable[..., AlarmView]) -> No
     assert words.alarm(silent) == "WENT BACK, NOT SEEN 5:12 feed silent: no reading for 5 s"
 
 
-@pytest.mark.parametrize(
-    ("typed", "read"),
-    [
-        ("612.5 m", ("depth", 612.5)),
-        ("612,5", ("depth", 612.5)),
-        ("12:30", ("time", 750.0)),
-        ("1:02:30", ("time", 3750.0)),
-        (" 90 s", ("time", 90.0)),
-    ],
-)
-def test_moments_are_read_as_typed(typed: str, read: tuple[str, float]) -> None:
-    """Metres are a depth, a colon or s a time; a comma is a decimal point."""
-    assert words.read_moment(typed) == read
-
-
-@pytest.mark.parametrize("typed", ["", "abc", "-3", "1:-2", "nan", "inf m"])
-def test_moments_that_are_none_are_refused_with_advice(typed: str) -> None:
-    """What is not understood is answered with what would be."""
-    with pytest.raises(ValueError, match=r"612\.5 m.*12:30"):
-        words.read_moment(typed)
-
-
 def test_every_reference_line_and_kind_has_a_name() -> None:
     """The title can always name what the offsets are measured from."""
     assert set(words.REFERENCE) == {"straight", "field-line", "hung-line"}

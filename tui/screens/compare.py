@@ -53,9 +53,7 @@ class CompareScreen(PaintedScreen[None]):
         table = self.query_one(LongTable)
         table.follows = False
         table.focus()
-        changes = getattr(self.app, "key_changes", None)
-        pairs = keys.line(("compare", "page"), replay=False, changes=changes)
-        self.query_one(KeyLine).show(*pairs)
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("compare", "page"))
         self.paint()
 
     def paint(self) -> None:

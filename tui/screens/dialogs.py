@@ -4,13 +4,14 @@ from collections.abc import Callable
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import Vertical
 from textual.screen import ModalScreen
 from textual.visual import VisualType
 from textual.widgets import Input, Static
 
 from eastfall.io.cautions import CAUTIONS
+from eastfall.tui import keys
 from eastfall.tui.glyphs import BRAILLE, Glyphs, in_ascii
 
 
@@ -45,10 +46,7 @@ def plain(text: str, classes: str = "") -> Plain:
 class Confirm(ModalScreen[bool]):
     """A question with yes and no; anything but the one key is no."""
 
-    BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("y", "answer(True)", "yes", show=False),
-        Binding("n,escape,q,enter,ctrl+c", "answer(False)", "no", show=False),
-    ]
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("confirm"))
 
     def __init__(self, question: str, consequence: str) -> None:
         super().__init__()
@@ -59,7 +57,8 @@ class Confirm(ModalScreen[bool]):
         with Vertical(classes="dialog"):
             yield plain(self._question, "title")
             yield plain(self._consequence)
-            yield plain("y  yes        n  no")
+            told = keys.keymap_of(self.app).line("confirm")
+            yield plain("        ".join(f"{key}  {name}" for key, name in told))
 
     def action_answer(self, answer: bool) -> None:
         """Close with the answer."""
@@ -69,7 +68,7 @@ class Confirm(ModalScreen[bool]):
 class AskText(ModalScreen[str | None]):
     """One line to type; enter takes it when it is understood, escape leaves it."""
 
-    BINDINGS: ClassVar[list[BindingType]] = [Binding("escape,ctrl+c", "leave", "leave", show=False)]
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("dialog"))
 
     def __init__(
         self,
@@ -119,6 +118,12 @@ class AskText(ModalScreen[str | None]):
         self.dismiss(None)
 
 
+def taken(app: object, does: str) -> str:
+    """Return the hint of a line to type in: which key takes it, and which leaves it."""
+    keymap = keys.keymap_of(app)
+    return f"{keymap['dialog.take']} {does}, {keymap['dialog.leave']} does not"
+
+
 def named(text: str) -> str:
     """Return a person's name, or refuse an empty one.
 
@@ -135,10 +140,12 @@ def named(text: str) -> str:
 class ClearShaft(AskText):
     """Asks who declares the shaft clear before a drop run is armed."""
 
-    def __init__(self) -> None:
+    def __init__(self, app: object) -> None:
+        keymap = keys.keymap_of(app)
         super().__init__(
             "Is the shaft clear, from collar to bottom?",
-            "Name and enter: the shaft is clear, arm the run.   Escape: do not arm.",
+            f"Your name and {keymap['dialog.take']}: the shaft is clear, arm the run.   "
+            f"{keymap['dialog.leave']}: do not arm.",
             check=named,
             warning=f"{CAUTIONS[1]}\nYour name goes into the record as the one who declared it clear.",
         )

@@ -3,7 +3,7 @@
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import Horizontal, Vertical
 from textual.screen import ModalScreen
 
@@ -15,6 +15,7 @@ from eastfall.tui.outlook import Prospect
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText, plain
 from eastfall.tui.screens.inputs import InputScreen, Lines, typing
+from eastfall.tui.typed import example_depths
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.curves import Curves, Prospects
 from eastfall.tui.widgets.dials import DialList
@@ -157,7 +158,11 @@ class ExplorerScreen(InputScreen):
     def action_depths(self) -> None:
         """Ask for the depths of the table."""
         if self.one is not None:
-            hint = f"{self.inputs.units.long}, as 100 250 600; nothing: quarters of the shaft; escape leaves them"
+            leave = keys.keymap_of(self.app)["dialog.leave"]
+            example = example_depths(self.one.deepest, self.inputs.units)
+            hint = (
+                f"{self.inputs.units.long}, as {example}; nothing: quarters of the shaft; {leave} leaves them"
+            )
             self.app.push_screen(AskText("Depths of the table", hint, check=self._read), self._asked)
 
     def _read(self, text: str) -> tuple[float, ...]:
@@ -187,7 +192,7 @@ class ExplorerScreen(InputScreen):
 class BudgetPage(ModalScreen[None]):
     """Where the uncertainty of the expected offset comes from."""
 
-    BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("page"), Binding("u", "close", show=False)]
+    BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("page"), keys.again("explorer.budget", "close")]
 
     def __init__(self, lines: list[str]) -> None:
         super().__init__()
@@ -198,7 +203,8 @@ class BudgetPage(ModalScreen[None]):
         with Vertical(classes="dialog"):
             yield plain("Where the uncertainty of the expected offset comes from", "title")
             yield plain("\n".join(self._lines))
-            yield plain("\nOne standard uncertainty of each input alone, east and north.   esc  back")
+            back = f"{keys.keymap_of(self.app)['page.close']}  back"
+            yield plain(f"\nOne standard uncertainty of each input alone, east and north.   {back}")
 
     def action_close(self) -> None:
         """Close."""

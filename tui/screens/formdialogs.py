@@ -5,12 +5,13 @@ from pathlib import Path
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import Vertical
 from textual.screen import ModalScreen
 from textual.widgets import Input, Static, TextArea
 
 from eastfall.io.safetext import safe
+from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import AskText, plain
 
 Check = Callable[[str], str]
@@ -38,10 +39,7 @@ class RowsDialog(ModalScreen[str | None]):
     RowsDialog TextArea:ansi .text-area--cursor { background: ansi_default; color: ansi_default; text-style: reverse; }
     RowsDialog .complaint { height: 3; }
     """
-    BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("ctrl+s,f10", "take", "take", show=False, priority=True),
-        Binding("escape", "leave", "leave", show=False),
-    ]
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("rows"))
 
     def __init__(self, title: str, headings: tuple[str, ...], text: str, check: Check) -> None:
         super().__init__()
@@ -54,7 +52,10 @@ class RowsDialog(ModalScreen[str | None]):
             yield plain("a line for each row:  " + "   ".join(self._headings))
             yield TextArea(self._text, tab_behavior="focus", show_line_numbers=False, id="rows")
             yield plain("", "complaint")
-            yield plain("ctrl+s  take the rows        esc  leave them as they were")
+            keymap = keys.keymap_of(self.app)
+            yield plain(
+                f"{keymap['rows.take']}  take the rows        {keymap['rows.leave']}  leave them as they were"
+            )
 
     def on_mount(self) -> None:
         """Take the keys."""

@@ -1,6 +1,5 @@
 """The help page: the keys of the screen one came from, and how to read what is on it."""
 
-from collections.abc import Mapping
 from typing import ClassVar
 
 from textual.app import ComposeResult
@@ -10,13 +9,17 @@ from textual.screen import Screen
 
 from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
+from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
-from eastfall.tui.widgets.table import fit_bar
+from eastfall.tui.units import METRIC, Units
+from eastfall.tui.widgets.cells import PaintedScreen
+from eastfall.tui.widgets.line import KeyLine
+from eastfall.tui.widgets.table import LongTable, fit_bar
 
-READING = """How to read the picture
+_READING = """How to read the picture
 
-Depth goes down, in metres from the collar.
-Offsets are millimetres east (+) or west (-), north (+) or south (-) of the
+Depth goes down, in {long} from the collar.
+Offsets are {short} east (+) or west (-), north (+) or south (-) of the
 reference line named in the top row.
 A residual is measured less expected; its direction is a bearing from north.
 ± is the expanded uncertainty (k = 2, about 95 %).
@@ -36,7 +39,7 @@ Swing of a hung line: the rest point, the swings still needed, and its period
 against that of a free line, which goes with the root of its length; a line
 that swings faster touches something.
 
-Steering (key d): bell fast: over or undecided; slower: past warning; slow:
+Steering (key {steer}): bell fast: over or undecided; slower: past warning; slow:
 off by more than the uncertainty; silent: do not move it.
 
 Plan, north up
@@ -44,11 +47,14 @@ Plan, north up
   x         rest point of a swing, in its 95 % ellipse"""
 
 
-def key_table(places: tuple[str, ...], *, replay: bool, changes: Mapping[str, str] | None = None) -> str:
+def reading(keymap: keys.Keymap, units: Units = METRIC) -> str:
+    """Return how to read what is on the watch screen."""
+    return _READING.format(steer=keymap["watch.steer"], long=units.long_name, short=units.short_name)
+
+
+def key_table(keymap: keys.Keymap, *places: str, replay: bool = False, drop: bool = False) -> str:
     """Return the keys of some places, one a line."""
-    return "\n".join(
-        f"{shown:<10}{what}" for shown, what in keys.page(places, replay=replay, changes=changes)
-    )
+    return "\n".join(f"{key:<10}{what}" for key, what in keymap.page(*places, replay=replay, drop=drop))
 
 
 class HelpScreen(Screen[None]):
@@ -56,20 +62,49 @@ class HelpScreen(Screen[None]):
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
 
-    def __init__(self, *places: str, replay: bool = False, changes: Mapping[str, str] | None = None) -> None:
+    def __init__(self, *places: str, replay: bool = False, drop: bool = False) -> None:
         super().__init__()
-        self._table = key_table((*places, "all"), replay=replay, changes=changes)
+        self._places, self._replay, self._drop = places, replay, drop
 
     def compose(self) -> ComposeResult:
         """Show the keys, how to read the picture, and the cautions."""
+        keymap = keys.keymap_of(self.app)
+        scroll = f"{keymap['list.up']} {keymap['list.down']}"
+        table = key_table(keymap, *self._places, "all", replay=self._replay, drop=self._drop)
         with VerticalScroll(classes="page"):
-            yield plain("Keys   (escape goes back, arrows scroll)\n\n" + self._table)
-            yield plain("\n" + READING)
+            yield plain(f"Keys   ({keymap['page.close']} goes back, {scroll} scroll)\n\n" + table)
+            yield plain("\n" + reading(keymap, getattr(self.app, "units", METRIC)))
             yield plain("\nCautions\n\n" + "\n".join(CAUTIONS))
 
     def on_mount(self) -> None:
         """Fit the scroll bar to the terminal."""
         fit_bar(self.query_one(VerticalScroll))
+
+    def action_close(self) -> None:
+        """Go back."""
+        self.dismiss(None)
+
+
+class KeyNames(PaintedScreen[None]):
+    """Every key that can be moved, by the name that the settings file knows it by."""
+
+    PLACES = ("list", "page")
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
+
+    def compose(self) -> ComposeResult:
+        """Show the table."""
+        yield LongTable(f"{'name':<22}{'key':<7}what it does", id="key-names")
+        yield KeyLine(id="keys")
+
+    def on_mount(self) -> None:
+        """Fill it."""
+        keymap = keys.keymap_of(self.app)
+        names = keymap.names()
+        table = self.query_one(LongTable)
+        table.follows = False
+        table.focus()
+        table.show(len(names), lambda row: ("{:<22}{:<7}{}".format(*names[row]), Role.TEXT))
+        self.query_one(KeyLine).show(*keymap.line(*self.PLACES))
 
     def action_close(self) -> None:
         """Go back."""

@@ -36,6 +36,7 @@ class InputScreen(PaintedScreen[None]):
     """
 
     DIALS: ClassVar[tuple[Dial, ...]] = CONDITIONS
+    PLACES: ClassVar[tuple[str, ...]] = ()
 
     class Worked(Message):
         """A result for inputs, or why there is none."""
@@ -161,13 +162,13 @@ class InputScreen(PaintedScreen[None]):
         return ""
 
     def _help(self) -> str:
-        dial = self.dial
-        return f"{dial.help}. " + ("← → choose" if dial.key.choices else "Type a number, or ← →")
+        dial, keymap = self.dial, keys.keymap_of(self.app)
+        turn = f"{keymap[f'{self.PLACES[0]}.less']} {keymap[f'{self.PLACES[0]}.more']}"
+        return f"{dial.help}. " + (f"{turn} choose" if dial.key.choices else f"Type a number, or {turn}")
 
     def key_line(self, place: str) -> None:
         """Show the keys."""
-        changes = getattr(self.app, "key_changes", None)
-        self.query_one(KeyLine).show(*keys.line((place, "page", "all"), replay=False, changes=changes))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line(place, "page", "all"))
 
 
 class Lines(CellWidget):

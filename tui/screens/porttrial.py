@@ -274,13 +274,12 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
                 self.query_one(TrialLines).show(tuple(self._reads), self._note(heard))
 
     def _keys(self) -> list[tuple[str, str]]:
+        keymap = keys.keymap_of(self.app)
         if self.listening:
-            idle = {"choose"} if self._given is not None else {"choose", "form"}
-            changes = getattr(self.app, "key_changes", None)
-            return [
-                one for one in keys.line(self.PLACES, replay=False, changes=changes) if one[1] not in idle
-            ]
-        return [("↑ ↓", "choose"), ("tab", "speed"), ("enter", "listen"), ("esc", "back")]
+            idle = ("up", "other", "listen", *(() if self._given is not None else ("use",)))
+            return keymap.line(*self.PLACES, without=idle)
+        told = keymap.line(*self.PLACES, without=("speed", "use", "hold", "take", "close"))
+        return [*told, (keymap["trial.close"], "back")]
 
     def _counts(self, heard: Heard) -> tuple[Piece, ...]:
         reader = self._reader

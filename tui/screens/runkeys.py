@@ -5,12 +5,13 @@ from typing import TYPE_CHECKING, cast
 
 from eastfall.io.safetext import safe
 from eastfall.tui import sight as look
-from eastfall.tui import words
+from eastfall.tui import typed, words
 from eastfall.tui.feed import Feed, LiveFeed
+from eastfall.tui.keys import keymap_of
 from eastfall.tui.people import LONGEST, user_name
 from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.screens.alarmboard import AlarmsScreen
-from eastfall.tui.screens.dialogs import AskText, ClearShaft, named
+from eastfall.tui.screens.dialogs import AskText, ClearShaft, named, taken
 from eastfall.tui.screens.start import Choice
 from eastfall.tui.screens.stations import StationsScreen
 from eastfall.tui.screens.steer import SteerScreen
@@ -46,6 +47,11 @@ class RunScreen(PaintedScreen[Choice | None]):
 
     def _look(self, sight: Sight) -> None:
         raise NotImplementedError
+
+    @property
+    def is_drop(self) -> bool:
+        """Whether bodies fall in this run."""
+        return self.session.assumptions.run.kind == "drop"
 
     # What the keys do: the source.
 
@@ -97,14 +103,16 @@ class RunScreen(PaintedScreen[Choice | None]):
                 self.who = safe(text.strip(), LONGEST)
                 then(self.who)
 
-        hint = "enter: it goes into the record with all that you acknowledge, note and put aside"
+        take = keymap_of(self.app)["dialog.take"]
+        hint = f"{take}: it goes into the record with all that you acknowledge, note and put aside"
         self.app.push_screen(AskText("Your name", hint, check=named, value=self.who), asked)
 
     def action_note(self) -> None:
         """Ask for a note and write it into the record."""
         if isinstance(self.feed, LiveFeed):
-            hint = "enter writes it, escape does not" + (
-                f"; by {self.who} (u changes it)" if self.who else ""
+            change = keymap_of(self.app)["watch.who"]
+            hint = taken(self.app, "writes it") + (
+                f"; by {self.who} ({change} changes it)" if self.who else ""
             )
             self.app.push_screen(AskText("Note for the record", hint), self._noted)
 
@@ -115,23 +123,35 @@ class RunScreen(PaintedScreen[Choice | None]):
 
     def action_mark(self) -> None:
         """Ask where a body landed; only an armed drop takes marks."""
-        if not isinstance(self.feed, LiveFeed) or self.session.assumptions.run.kind != "drop":
+        if not isinstance(self.feed, LiveFeed) or not self.is_drop:
             return
         if not self.latest.armed:
             self.action_arm()
             return
-        hint = "depth in m, east and north in mm, as 210 5.5 -3.2; enter records it, escape does not"
-        self.app.push_screen(AskText("Where did the body land?", hint, check=words.read_mark), self._marked)
+        units, example = self.session.units, typed.example_mark(self._deepest, self.session.units)
+        hint = (
+            f"depth in {units.long_name}, east and north in {units.short_name}, as {example}; "
+            f"{taken(self.app, 'records it')}"
+        )
+        self.app.push_screen(AskText("Where did the body land?", hint, check=self._mark), self._marked)
+
+    @property
+    def _deepest(self) -> float:
+        return self.session.assumptions.shaft.depth
+
+    def _mark(self, text: str) -> tuple[float, float, float]:
+        """Read where a body landed, in the reader's units."""
+        return typed.read_mark(text, self._deepest, self.session.units)
 
     def _marked(self, text: str | None) -> None:
         if text:
-            depth, east, north = words.read_mark(text)
+            depth, east, north = self._mark(text)
             self._named(lambda who: cast("LiveFeed", self.feed).mark(depth, east, north, who))
 
     def action_arm(self) -> None:
         """Ask whether the shaft is clear, and arm the run."""
         if isinstance(self.feed, LiveFeed) and not self.latest.armed:
-            self.app.push_screen(ClearShaft(), self._armed)
+            self.app.push_screen(ClearShaft(self.app), self._armed)
 
     def _armed(self, who: str | None) -> None:
         if who:
@@ -142,7 +162,7 @@ class RunScreen(PaintedScreen[Choice | None]):
         from eastfall.tui.screens.planner import PlannerScreen  # noqa: PLC0415 (the models only where asked for)
 
         session = self.session
-        if session.assumptions.run.kind == "drop":
+        if self.is_drop:
             self.app.push_screen(PlannerScreen(session.assumptions, name=session.title, units=session.units))
 
     def action_steer(self) -> None:
@@ -190,18 +210,20 @@ class RunScreen(PaintedScreen[Choice | None]):
 
     def action_jump(self) -> None:
         """Ask for a depth or, in a replay, a time."""
-        hint = f"depth: 612.5 {self.session.units.long}" + (
+        hint = f"depth: {self._example()}" + (
             "     time: 12:30 or 90 s" if self.session.mode == "replay" else ""
         )
         self.app.push_screen(AskText("Jump to", hint, check=self._moment), self._jumped)
 
+    def _example(self) -> str:
+        units = self.session.units
+        return f"{typed.example_depth(self._deepest, units)} {units.long}"
+
     def _moment(self, text: str) -> tuple[str, float]:
         """Read where to jump; a live run has no times to go to."""
-        what, value = words.read_moment(text, self.session.units)
+        what, value = typed.read_moment(text, self._deepest, self.session.units)
         if what == "time" and self.session.mode == "live":
-            raise ValueError(
-                f"A live run goes by its own clock: give a depth, as 612.5 {self.session.units.long}."
-            )
+            raise ValueError(f"A live run goes by its own clock: give a depth, as {self._example()}.")
         if what == "depth" and isinstance(self.feed, ReplayFeed):
             return "time", self._time_of(self.feed, value)
         return what, value

@@ -1,17 +1,18 @@
 """The settings screen: what is remembered, changed with the arrows and kept at once; the application applies it."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.preferences import Remembered
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText, plain
+from eastfall.tui.screens.help import KeyNames
 from eastfall.tui.units import UNITS
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine
@@ -58,12 +59,15 @@ SETTINGS = (
         values=tuple(round(1.5 + 0.1 * step, 1) for step in range(13)),
         shown=tuple(f"{1.5 + 0.1 * step:.1f}  (until circles are round)" for step in range(13)),
     ),
+    Setting(name="keys", says="keys", values=()),
     Setting(name="runs_folder", says="runs are recorded in", values=()),
 )
 
 
 def in_words(one: Setting, value: object) -> str:
     """Return a setting's value for a reader."""
+    if isinstance(value, Mapping):
+        return f"{f'{len(value)} moved' if value else 'as they were made'}; the list of their names"
     if not one.values:
         return safe(str(value), 60) or "eastfall-runs in the folder where the program is started"
     return one.shown[one.values.index(value)] if value in one.values else str(value)
@@ -88,11 +92,9 @@ class SettingsScreen(PaintedScreen[None]):
         Takes the name of a setting and its new value.
     """
 
-    PLACES = ("page",)
+    PLACES = ("settings", "page")
     BINDINGS: ClassVar[list[BindingType]] = [
-        *keys.bindings("page"),
-        Binding("left", "turn(-1)", show=False),
-        Binding("right", "turn(1)", show=False),
+        *keys.bindings("settings", "page"),
     ]
 
     def __init__(self, remembered: Remembered, change: Change) -> None:
@@ -109,7 +111,8 @@ class SettingsScreen(PaintedScreen[None]):
     def _kept(self) -> str:
         where = safe(str(self._remembered.path), 200) if self._remembered.path else "nowhere: not asked for"
         moved = 'Keys are moved in that file: [keys], then lines such as "watch.note" = "N".'
-        return "\n".join(filter(None, (f"file: {where}", moved, self._remembered.complaint)))
+        metric = "Records, reports, exports and printed tables stay in metres and millimetres."
+        return "\n".join(filter(None, (f"file: {where}", moved, metric, self._remembered.complaint)))
 
     def on_mount(self) -> None:
         """Take the keys."""
@@ -117,12 +120,7 @@ class SettingsScreen(PaintedScreen[None]):
         table.follows = False
         table.focus()
         self._fill()
-        self.query_one(KeyLine).show(
-            ("↑ ↓", "move"),
-            ("← →", "change"),
-            ("enter", "change"),
-            *keys.line(("page",), replay=False, changes=getattr(self.app, "key_changes", None)),
-        )
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("settings", "page"))
 
     def _fill(self) -> None:
         now = self._remembered.now
@@ -139,7 +137,14 @@ class SettingsScreen(PaintedScreen[None]):
         if one.values:
             self._set(one, after(one, getattr(self._remembered.now, one.name), by))
             return
-        hint = "enter takes it, empty for eastfall-runs where the program is started, escape leaves it"
+        if one.name == "keys":
+            self.app.push_screen(KeyNames())
+            return
+        keymap = keys.keymap_of(self.app)
+        hint = (
+            f"{keymap['dialog.take']} takes it, empty for eastfall-runs where the program is started, "
+            f"{keymap['dialog.leave']} leaves it"
+        )
         self.app.push_screen(AskText("Folder for new records", hint), lambda text: self._folder(one, text))
 
     def _folder(self, one: Setting, text: str | None) -> None:

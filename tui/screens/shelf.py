@@ -71,9 +71,7 @@ class ShelfScreen(PaintedScreen[Path | None]):
         table = self.query_one(LongTable)
         table.follows = False
         table.focus()
-        changes = getattr(self.app, "key_changes", None)
-        pairs = keys.line(("shelf", "page"), replay=False, changes=changes)
-        self.query_one(KeyLine).show(("enter", "replay"), *pairs)
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("shelf", "page"))
         self.paint()
         self._in_a_thread(self._list)
 
@@ -130,10 +128,9 @@ class ShelfScreen(PaintedScreen[Path | None]):
             lambda i: shelf.line(rows[i], picked=rows[i].path == self._picked, units=self._units),
         )
         table.follows = False
+        key = keys.keymap_of(self.app)["shelf.pick"]
         picked = (
-            f"* {safe(self._picked.name, 60)} is compared with the next one picked (c)"
-            if self._picked
-            else ""
+            f"{key} on another run compares it with {safe(self._picked.name, 60)}" if self._picked else ""
         )
         self.query_one("#shelf-help", TextLine).show((picked or self._where(), Role.DIM))
 
@@ -196,7 +193,10 @@ class ShelfScreen(PaintedScreen[Path | None]):
                 self._begin("writing", partial(write, log, shelf.new_file(text, suffixes)))
 
         check = partial(shelf.new_file, suffixes=suffixes)
-        hint = "enter writes it, never over another file; escape does not"
+        keymap = keys.keymap_of(self.app)
+        hint = (
+            f"{keymap['dialog.take']} writes it, never over another file; {keymap['dialog.leave']} does not"
+        )
         value = shelf.beside(log, suffixes[0])
         self.app.push_screen(AskText(question, hint, check=check, value=value), asked)
 

@@ -21,7 +21,7 @@ from eastfall.io.sitefile import LinkSettings, SiteFile, parse_site
 from eastfall.io.sitevalues import headings, key_of, shape, typed
 from eastfall.tui import formpages, keys
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import Confirm
+from eastfall.tui.screens.dialogs import Confirm, taken
 from eastfall.tui.screens.formdialogs import AskName, RowsDialog, free_name
 from eastfall.tui.screens.porttrial import PortTrial
 from eastfall.tui.widgets.cells import PaintedScreen
@@ -109,9 +109,7 @@ class SiteForm(PaintedScreen[Path | None]):
 
     def on_mount(self) -> None:
         """Take the keys."""
-        self.query_one(KeyLine).show(
-            *keys.line(self.PLACES, replay=False, changes=getattr(self.app, "key_changes", None))
-        )
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line(*self.PLACES))
         self.query_one(ValueInput).focus()
         self._load()
 
@@ -141,7 +139,8 @@ class SiteForm(PaintedScreen[Path | None]):
         path = self.key_path
         key = key_of(path) if path else None
         text = formpages.one_line(path, self.draft.value(path)) if path else ""
-        hint = formpages.hint(path) if path else "enter adds a link"
+        keymap = keys.keymap_of(self.app)
+        hint = formpages.hint(path, keymap) if path else f"{keymap['form.open']} adds a link"
         self.query_one(ValueInput).load(path, text, hint, key.choices if key else ())
         self.paint()
 
@@ -155,7 +154,7 @@ class SiteForm(PaintedScreen[Path | None]):
             self.query_one(SectionList).show(shown, self._page)
             full = page.label == formpages.FIRST
             rows = tuple(formpages.key_row(self.draft, one, self._faults, full=full) for one in page.paths)
-            nothing = (KeyRow(name="enter adds a link", value=""),)
+            nothing = (KeyRow(name=f"{keys.keymap_of(self.app)['form.open']} adds a link", value=""),)
             self.query_one(KeyList).show(rows or nothing, self._row)
             self._line("edit-name").show((safe(path, 29), Role.STRONG))
             key = key_of(path) if path else None
@@ -355,9 +354,7 @@ class SiteForm(PaintedScreen[Path | None]):
         self._take()
         proposal = self._path.name if self._path else formpages.file_name(self.draft)
         self.app.push_screen(
-            AskName(
-                "Save the site file as", "enter saves it, escape does not", safe(proposal, 60), self._free
-            ),
+            AskName("Save the site file as", taken(self.app, "saves it"), safe(proposal, 60), self._free),
             lambda name: self._write(self._free(name), over=False) if name else None,
         )
 

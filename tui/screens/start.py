@@ -109,11 +109,7 @@ class StartScreen(PaintedScreen[Choice | None]):
     def on_mount(self) -> None:
         """Take the keys."""
         self.query_one(OptionList).focus()
-        self.query_one(KeyLine).show(
-            ("↑ ↓", "move"),
-            ("enter", "choose"),
-            *keys.line(("start", "all"), replay=False, changes=getattr(self.app, "key_changes", None)),
-        )
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("start", "all"))
 
     def _options(self) -> list[Option | None]:
         options: list[Option | None] = [_head("Try it without an instrument")]
@@ -131,7 +127,10 @@ class StartScreen(PaintedScreen[Choice | None]):
         ]
         options += [
             Option(Text("  write a new site file"), id="new"),
-            Option(Text("  edit a site file (or e on one above)"), id="edit"),
+            Option(
+                Text(f"  edit a site file (or {keys.keymap_of(self.app)['start.edit']} on one above)"),
+                id="edit",
+            ),
         ]
         logs = recent(self._folder, (self._suffix,))
         options.append(_head("Replay: run logs here" if logs else "Replay: no run log in this folder"))
@@ -244,7 +243,8 @@ class StartScreen(PaintedScreen[Choice | None]):
         self.app.call_from_thread(self._show_ports, words)
 
     def _show_ports(self, words: str) -> None:
-        self.query_one(OptionList).replace_option_prompt("ports", Text(f"{words}\n  (enter looks again)"))
+        again = keys.keymap_of(self.app)["start.open"]
+        self.query_one(OptionList).replace_option_prompt("ports", Text(f"{words}\n  ({again} looks again)"))
 
 
 def _head(words: str) -> Option:

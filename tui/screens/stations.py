@@ -88,10 +88,7 @@ class StationsScreen(FollowingScreen[int | None]):
         """Fill the table."""
         self.query_one(LongTable).focus()
         self.show(self._snapshot)
-        self.query_one(KeyLine).show(
-            ("enter", "open"),
-            *keys.line(("stations", "page"), replay=False, changes=getattr(self.app, "key_changes", None)),
-        )
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("stations", "page"))
 
     def show(self, snapshot: Snapshot) -> None:
         """Show a newer snapshot."""
@@ -150,10 +147,7 @@ def budget(one: Station, units: Units = METRIC) -> str:
 class StationPage(ModalScreen[bool]):
     """One station; closes with True to look at it in the picture."""
 
-    BINDINGS: ClassVar[list[BindingType]] = [
-        *keys.bindings("page"),
-        ("enter", "look", "look at it"),
-    ]
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("station", "page"))
 
     def __init__(self, one: Station, units: Units = METRIC) -> None:
         super().__init__()
@@ -174,7 +168,10 @@ class StationPage(ModalScreen[bool]):
                 told = words.pair(one.spread_east, one.spread_north, units=self._units)
                 yield plain(f"single bodies scatter by {told} (standard deviation)\n")
             yield plain(budget(one, self._units))
-            yield plain("\nenter  look at it in the picture        esc  back")
+            keymap = keys.keymap_of(self.app)
+            yield plain(
+                f"\n{keymap['station.look']}  look at it in the picture        {keymap['page.close']}  back"
+            )
 
     def action_look(self) -> None:
         """Close and look at it."""

@@ -5,7 +5,7 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 
 from eastfall.tui import keys, views
 from eastfall.tui.roles import Role
@@ -39,8 +39,8 @@ class SteerScreen(FollowingScreen[None]):
         Acknowledges the alarm that is shown.
     """
 
-    PLACES = ("page",)
-    BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("page"), Binding("a", "seen", show=False)]
+    PLACES = ("steer", "page")
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("steer", "page"))
 
     def __init__(
         self,
@@ -66,8 +66,9 @@ class SteerScreen(FollowingScreen[None]):
         """Begin to beat."""
         self.query_one(BearingView).aspect = getattr(self.app, "cell_aspect", 2.0)
         self.show(self._snapshot)
-        changes = getattr(self.app, "key_changes", None)
-        self.query_one(KeyLine).show(("m", "sound"), *keys.line(("page",), replay=False, changes=changes))
+        keymap = keys.keymap_of(self.app)
+        told = keymap.line(*self.PLACES, replay=self._snapshot.mode == "replay")
+        self.query_one(KeyLine).show((keymap["all.mute"], "sound"), *told)
         self.set_interval(_TICK, self.beat)
 
     def show(self, snapshot: Snapshot) -> None:
@@ -78,7 +79,7 @@ class SteerScreen(FollowingScreen[None]):
         ink = Role.STRONG if under is None else Role.ON_GROUND
         self.query_one("#answer", TextLine).show((views.answer(snapshot, one, self._units), ink), under=under)
         self.query_one(BearingView).show(self._steer())
-        pieces, ground = views.alarm_line(snapshot)
+        pieces, ground = views.alarm_line(snapshot, keys.keymap_of(self.app), seen="steer.seen")
         self.query_one("#alarm", TextLine).show(*pieces, under=ground)
 
     def _steer(self) -> Steer:

@@ -111,25 +111,21 @@ class WatchScreen(RunScreen):
         under = views.answer_ground(shown, one)
         ink = Role.STRONG if under is None else Role.ON_GROUND
         self._line("answer").show((views.answer(shown, one, self.session.units), ink), under=under)
-        self._line("steer").show(*views.steer(self.session, latest, one))
+        keymap = keys.keymap_of(self.app)
+        self._line("steer").show(*views.steer(self.session, latest, one, keymap))
         for name, pieces in (
             ("swing", views.swing(self.session, one)),
             ("notes", views.notes(self.session, shown, one)),
         ):
             self._show_if_any(self._line(name), pieces)
-        pieces, ground = views.alarm_line(latest)
+        pieces, ground = views.alarm_line(latest, keymap)
         self._line("alarm").show(*pieces, under=ground)
         if told(latest) != self._told:
             self._told = told(latest)
             self._line("health").show(*health_line(latest))
             self.query_one(HealthList).show(latest)
-        self.query_one(KeyLine).show(
-            *keys.line(
-                ("watch", "all"),
-                replay=latest.mode == "replay",
-                changes=getattr(self.app, "key_changes", None),
-            )
-        )
+        pairs = keymap.line("watch", "all", replay=latest.mode == "replay", drop=self.is_drop)
+        self.query_one(KeyLine).show(*pairs)
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms, live=latest.mode == "live")
 

@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import ClassVar
 
 from textual.app import ComposeResult
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.containers import Horizontal
 from textual.message import Message
 
@@ -21,7 +21,7 @@ from eastfall.tui import keys, whatif
 from eastfall.tui.dials import Dial
 from eastfall.tui.inputs import Inputs
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import AskText
+from eastfall.tui.screens.dialogs import AskText, taken
 from eastfall.tui.screens.inputs import InputScreen, Lines, typing
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.dials import DialList
@@ -52,7 +52,6 @@ class WhatIfScreen(InputScreen):
     BINDINGS: ClassVar[list[BindingType]] = [
         *keys.bindings("whatif", "page"),
         *typing(),
-        Binding("enter", "use", show=False),
     ]
 
     class Opened(Message):
@@ -122,9 +121,7 @@ class WhatIfScreen(InputScreen):
         if not self.is_mounted:
             return
         self.paint_inputs()
-        changes = getattr(self.app, "key_changes", None)
-        pairs = keys.line(("whatif", "page"), replay=False, changes=changes)
-        self.query_one(KeyLine).show(("enter", "play with these"), *pairs)
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("whatif", "page"))
         busy = "" if self.found is not None else "  working it out"
         self.query_one("#title", TextLine).show(
             ("what if  ", Role.STRONG),
@@ -143,9 +140,8 @@ class WhatIfScreen(InputScreen):
 
     def action_other_site(self) -> None:
         """Ask for another site file to look at the record with."""
-        self.app.push_screen(
-            AskText("Another site file", "enter takes it, escape does not", check=_site_at), self._other
-        )
+        hint = taken(self.app, "takes it")
+        self.app.push_screen(AskText("Another site file", hint, check=_site_at), self._other)
 
     def _other(self, text: str | None) -> None:
         if text is not None:

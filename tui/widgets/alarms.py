@@ -6,6 +6,7 @@ from textual.message import Message
 
 from eastfall.physics.findings import AlarmView
 from eastfall.tui import words
+from eastfall.tui.keys import keymap_of
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import CellWidget
@@ -46,7 +47,7 @@ class AlarmList(CellWidget):
     def draw(self, sheet: Raster) -> None:
         """Write the list under its title."""
         waiting = sum(one.state in words.WANTS_ANSWER for one in self.alarms)
-        key = " (key a)" if self.live else ""
+        key = f" (key {keymap_of(self.app)['watch.acknowledge']})" if self.live else ""
         title = f"alarms: {waiting} to acknowledge{key}" if waiting else "alarms: none to acknowledge"
         sheet.text(0, 0, title, Role.STRONG)
         row = 1

@@ -4,7 +4,7 @@ from collections.abc import Callable, Sequence
 from typing import ClassVar
 
 from rich.segment import Segment
-from textual.binding import Binding, BindingType
+from textual.binding import BindingType
 from textual.events import Click
 from textual.geometry import Size
 from textual.message import Message
@@ -13,6 +13,7 @@ from textual.scrollbar import ScrollBar, ScrollBarRender
 from textual.strip import Strip
 from textual.widget import Widget
 
+from eastfall.tui import keys
 from eastfall.tui.glyphs import BRAILLE, in_ascii
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import role_style
@@ -45,15 +46,7 @@ class LongTable(ScrollView, can_focus=True):
     Posts `Opened` when a row is chosen with enter.
     """
 
-    BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("up,k", "move(-1)", show=False),
-        Binding("down", "move(1)", show=False),
-        Binding("pageup", "move(-20)", show=False),
-        Binding("pagedown", "move(20)", show=False),
-        Binding("home", "move(-1000000000)", show=False),
-        Binding("end", "move(1000000000)", show=False),
-        Binding("enter", "open", show=False),
-    ]
+    BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("list"))
 
     class Opened(Message):
         """A row was chosen."""
