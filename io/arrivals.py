@@ -5,6 +5,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from eastfall.io.framing import count_lines
 from eastfall.physics.errors import ParameterError
 
 STATE_EVENTS = frozenset({"acknowledge", "shelve", "condition", "mark", "armed", "end"})
@@ -35,7 +36,7 @@ class LineBlock:
     def __post_init__(self) -> None:
         if self.data and not self.data.endswith(b"\n"):
             raise ParameterError("data", self.data[-20:], "", "whole lines, the last ending in a line feed")
-        count = self.data.count(b"\n")
+        count = count_lines(self.data)
         if self.times.shape != (count,):
             raise ParameterError("times", self.times.shape, "", f"one time for each of the {count} lines")
 

@@ -10,7 +10,7 @@ from eastfall.io.arrivals import Arrival, LineBlock
 from eastfall.io.decoded import Example
 from eastfall.io.errors import CaptureError
 from eastfall.io.forms import decoder_for
-from eastfall.io.framing import Splitter
+from eastfall.io.framing import Splitter, count_lines
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import LinkSettings, SiteFile
 
@@ -67,7 +67,7 @@ class CaptureReader:
             yield from some
 
     def _block(self, data: bytes) -> LineBlock:
-        count = data.count(b"\n")
+        count = count_lines(data)
         times = np.round(np.arange(self.lines, self.lines + count) * self._interval, 6)
         block = LineBlock(data=data, times=times, first_line=self.lines + 1)
         self.lines += count

@@ -34,6 +34,7 @@ from eastfall.io.decoded import (
     Table,
     too_long,
 )
+from eastfall.io.framing import count_lines
 from eastfall.physics.errors import ParameterError
 
 _MANY = 50
@@ -100,10 +101,10 @@ class ColumnsDecoder:
     def decode(self, block: LineBlock) -> Decoded:
         """Decode a block of lines."""
         codes = too_long(block)
-        table = np.full((len(block), len(self._names)), np.nan)
+        table = np.full((len(block), len(self._names)), np.nan, order="F")  # column by column is quicker
         line = 0
         for piece in _pieces(block.data):
-            part = slice(line, line + piece.count(b"\n"))
+            part = slice(line, line + count_lines(piece))
             self._read(piece, table[part], codes[part])
             line = part.stop
         return self._assembler.decoded(table, codes, block)
@@ -124,27 +125,28 @@ class ColumnsDecoder:
     def _read_at_once(self, data: bytes, table: Table, codes: Codes) -> None:
         """Read what is plain all at once, and the rest line by line."""
         fields, ends = decimals.fields_of(data, self._delimiter[0])
-        stops = fields.stops[ends - 1] - decimals.LEAD
-        counts = np.diff(ends, prepend=0)
+        counts = ends.copy()
+        counts[1:] -= ends[:-1]
         fits = (counts == len(self._columns)) & (codes == 0)
-        if not fits.all():
-            fields = decimals.chosen(fields, np.repeat(fits, counts))
+        all_fit = bool(fits.all())
+        kept = fields if all_fit else decimals.chosen(fields, np.repeat(fits, counts))
         if not self._kept.all():
-            fields = decimals.chosen(fields, np.tile(self._kept, int(np.count_nonzero(fits))))
+            kept = decimals.chosen(kept, np.tile(self._kept, int(np.count_nonzero(fits))))
         if b" " in data or b"\t" in data:
-            fields = decimals.trimmed(fields)
-        values, plain = decimals.plain_numbers(fields)
-        shape = (-1, len(self._names))
+            kept = decimals.trimmed(kept)
+        values, plain = decimals.plain_numbers(kept)
+        values = values.reshape(-1, len(self._names))
+        if all_fit and plain.all():
+            table[:] = values
+            return
+        table[fits] = values
         done = np.zeros(len(codes), dtype=bool)
-        done[fits] = plain.reshape(shape).all(axis=1)
-        if done.all():
-            table[:] = values.reshape(shape)
-        else:
-            table[fits] = values.reshape(shape)
-            which = np.flatnonzero(~done & (codes == 0)).tolist()
-            begins = np.concatenate([[0], stops[:-1] + 1])
-            lines = [data[begins[one] : stops[one]] for one in which]
-            self._read_lines(lines, which, table, codes)
+        done[fits] = plain.reshape(values.shape).all(axis=1)
+        which = np.flatnonzero(~done & (codes == 0)).tolist()
+        stops = fields.stops[ends - 1] - decimals.LEAD
+        begins = np.concatenate([[0], stops[:-1] + 1])
+        lines = [data[begins[one] : stops[one]] for one in which]
+        self._read_lines(lines, which, table, codes)
 
     def _read_lines(self, lines: list[bytes], which: list[int], table: Table, codes: Codes) -> None:
         """Read lines one by one; `which` are their rows in the table."""

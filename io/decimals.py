@@ -23,12 +23,13 @@ _ZEROS = np.uint64(0x3030303030303030)
 _SIXES = np.uint64(0x0606060606060606)
 _HIGH = np.uint64(0xF0F0F0F0F0F0F0F0)
 _ALL = ~np.uint64(0)
+_BYTE = np.uint64(8)
 _STEPS = (
-    (np.uint64(10), np.uint64(8), np.uint64(0x00FF00FF00FF00FF)),
-    (np.uint64(100), np.uint64(16), np.uint64(0x0000FFFF0000FFFF)),
-    (np.uint64(10000), np.uint64(32), np.uint64(0x00000000FFFFFFFF)),
+    (np.uint64(10 * 2**8 + 1), np.uint64(8), np.uint64(0x00FF00FF00FF00FF)),
+    (np.uint64(100 * 2**16 + 1), np.uint64(16), np.uint64(0x0000FFFF0000FFFF)),
+    (np.uint64(10000 * 2**32 + 1), np.uint64(32), np.uint64(0x00000000FFFFFFFF)),
 )
-"""Pairs, fours, eights: factor of the digits before, where those behind stand, and what remains."""
+"""Pairs, fours, eights: what adds the digits before to those behind, where the sum stands, and what remains."""
 _POWERS = 10.0 ** np.arange(_WORD + 1)
 _WHOLE_POWERS = 10 ** np.arange(_WORD + 1)
 _EXACT = 1 << 53
@@ -71,17 +72,21 @@ def fields_of(data: bytes, delimiter: int) -> tuple[Fields, Places]:
     """
     buffer = bytes(LEAD) + data
     codes = np.frombuffer(buffer, np.uint8)
-    separates = (codes == delimiter) | (codes == ord("\n"))
-    separates[:LEAD] = False
-    marks = np.flatnonzero(separates | (codes == ord(".")))
-    order = np.flatnonzero(separates[marks])
+    marked = codes == delimiter
+    marked |= codes == ord("\n")
+    marked |= codes == ord(".")
+    marked[:LEAD] = False
+    marks = np.flatnonzero(marked)
+    is_point = codes[marks] == ord(".")
+    usual = marks.size % 2 == 0 and is_point[0::2].all() and not is_point[1::2].any()  # one in each field
+    order = np.arange(1, marks.size, 2) if usual else np.flatnonzero(~is_point)
     stops = marks[order]
-    before = marks[order - 1]  # for the first field this is the last mark of all, a line feed
-    points = np.where(codes[before] == ord("."), before, stops)
     starts = np.empty_like(stops)
     starts[:1] = LEAD
-    starts[1:] = stops[:-1] + 1
-    points = np.where(points < starts, stops, points)
+    np.add(stops[:-1], 1, out=starts[1:])
+    points = marks[order - 1]  # for the first field perhaps the last mark of all, a line feed
+    if not usual:
+        points = np.where(is_point[order - 1] & (points >= starts), points, stops)
     ends = np.flatnonzero(codes[stops] == ord("\n")) + 1
     return Fields(buffer, codes, starts, points, stops), ends
 
@@ -125,34 +130,83 @@ def plain_numbers(fields: Fields) -> tuple[NDArray[np.float64], NDArray[np.bool_
     sign = fields.codes[fields.starts]
     negative = sign == ord("-")
     starts = fields.starts + (negative | (sign == ord("+")))
-    whole_digits = fields.points - starts
-    part_digits = np.maximum(fields.stops - fields.points - 1, 0)
+    bounds = starts, fields.points, fields.stops
     words: NDArray[np.uint64] = np.ndarray(
         (len(fields.buffer) - _WORD + 1,), "<u8", buffer=fields.buffer, strides=(1,)
     )
-    whole, whole_wrong = _eight_digits(words, fields.points, whole_digits)
-    part, part_wrong = _eight_digits(words, fields.stops, part_digits)
+    short = np.maximum(fields.stops, fields.points + 1) - starts <= _WORD
+    if short.all():
+        values, plain = _in_one_word(words, *bounds)
+    else:
+        values, plain = np.empty(short.size), np.empty(short.size, dtype=bool)
+        for which, read in ((short, _in_one_word), (~short, _in_two_words)):
+            values[which], plain[which] = read(words, *(one[which] for one in bounds))
+    values *= 1.0 - 2.0 * negative
+    return values, plain
+
+
+def _in_one_word(
+    words: NDArray[np.uint64], starts: Places, points: Places, stops: Places
+) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+    """Read fields without sign that fill a word at most, what ends them taken for a point where there is none."""
+    ends = np.maximum(stops, points + 1)
+    decimals = ends - points
+    decimals -= 1
+    span = ends - starts
+    word = words[ends - _WORD]
+    word ^= _ZEROS
+    word &= _ALL << _bits(_WORD - span)
+    above_point = _bits(_WORD - decimals)
+    part = word & (_ALL << above_point)
+    above_point -= _BYTE
+    word &= ~(_ALL << above_point)
+    word <<= _BYTE  # the digits before the point move up into its place
+    word |= part
+    digits, wrong = _added_up(word)
+    plain = wrong == 0
+    plain &= span > 1
+    return digits / _POWERS[decimals], plain
+
+
+def _in_two_words(
+    words: NDArray[np.uint64], starts: Places, points: Places, stops: Places
+) -> tuple[NDArray[np.float64], NDArray[np.bool_]]:
+    """Read fields without sign of up to eight digits on each side of the point."""
+    whole_digits = points - starts
+    part_digits = np.maximum(stops - points - 1, 0)
+    whole, whole_wrong = _eight_digits(words, points, whole_digits)
+    part, part_wrong = _eight_digits(words, stops, part_digits)
     most = np.maximum(whole_digits, part_digits)
     plain = ((whole_wrong | part_wrong) == 0) & (most > 0) & (most <= _WORD) & (whole_digits >= 0)
     scale = np.minimum(part_digits, _WORD)
     digits = whole * _WHOLE_POWERS[scale] + part
     plain &= digits < _EXACT
-    values = digits / _POWERS[scale]
-    np.negative(values, out=values, where=negative)
-    return values, plain
+    return digits / _POWERS[scale], plain
 
 
 def _eight_digits(
     words: NDArray[np.uint64], stops: Places, counts: Places
 ) -> tuple[NDArray[np.int64], NDArray[np.uint64]]:
     """Read the `counts` digits, eight at most, that end before `stops`; not 0 in the second where one is no digit."""
-    # A shift by 64 bits or more leaves 0 in numpy: no digits, nothing kept.
-    kept = _ALL << ((_WORD - counts) << 3).astype(np.uint64)
     word = words[stops - _WORD]
     word ^= _ZEROS
-    word &= kept
-    wrong = (word | (word + _SIXES)) & _HIGH
+    word &= _ALL << _bits(_WORD - counts)
+    return _added_up(word)
+
+
+def _bits(count: Places) -> NDArray[np.uint64]:
+    """Return so many bytes in bits; a shift by 64 or more, or by less than 0, leaves 0 in numpy: nothing is kept."""
+    bits = count << 3
+    return bits.view(np.uint64)
+
+
+def _added_up(word: NDArray[np.uint64]) -> tuple[NDArray[np.int64], NDArray[np.uint64]]:
+    """Add up eight digits, the last in the highest byte, in place; not 0 in the second where one is no digit."""
+    wrong = word + _SIXES
+    wrong |= word
+    wrong &= _HIGH
     for factor, shift, mask in _STEPS:
-        word = word * factor + (word >> shift)
+        word *= factor
+        word >>= shift
         word &= mask
-    return word.astype(np.int64), wrong
+    return word.view(np.int64), wrong

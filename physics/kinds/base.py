@@ -62,6 +62,8 @@ class KindTracker(Protocol):
 
     unused: Counter[str]
     """Readings left aside, by reason."""
+    u_of_rows: bool
+    """Whether every row must state its uncertainty; else only stations and the newest row need."""
 
     def feed(self, readings: Readings) -> Batch:
         """Take a block."""
@@ -90,6 +92,8 @@ class KindTracker(Protocol):
 
 class Plain:
     """What a kind without a sum of its own answers."""
+
+    u_of_rows = True
 
     def jump(self, jump: Jump) -> None:
         """Do nothing: each reading stands for itself."""

@@ -46,6 +46,8 @@ class Guided:
         For the same assumptions.
     """
 
+    u_of_rows = True
+
     def __init__(self, assumptions: Assumptions, curve: ExpectedCurve) -> None:
         guide, run, instrument = assumptions.guide, assumptions.run, assumptions.instrument
         self._assumptions = assumptions
@@ -78,7 +80,8 @@ class Guided:
         readings = usable(readings, good, "no usable tilt", self.unused)
         if not len(readings):
             return Batch.none()
-        slopes, azimuth = slopes[:, good], azimuth[good]
+        if len(readings) < good.size:
+            slopes, azimuth = slopes[:, good], azimuth[good]
         found = []
         for begin, end in zip([0, *edges], [*edges, len(readings)], strict=True):
             if begin == end:
@@ -125,7 +128,10 @@ class Guided:
             at, summed = self._moving(readings, rows, slopes, ridden, azimuth, bend)
         else:
             at, summed = self._halting(self._still, rows, azimuth, rests)
-        rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(at, summed)
+        if self.u_of_rows:
+            rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(at, summed)
+        else:
+            self._shares.begin(summed)
         columns = (
             *(readings.time, depth, *rows[5:9], summed.weight, *summed.slope),
             *(summed.lever, summed.bend, readings.column("face")),

@@ -103,13 +103,18 @@ class Shares:
         parts[2] = instrument.u_scale * east, instrument.u_scale * north
         parts[3] = instrument.u_azimuth * north, instrument.u_azimuth * east
         parts[4] = instrument.u_depth_fraction * east, instrument.u_depth_fraction * north
-        first = self._first = summed.slope[:, :1].copy() if self._first is None else self._first
-        parts[5] = summed.bend * np.abs(summed.slope - 0.5 * first)
+        parts[5] = summed.bend * np.abs(summed.slope - 0.5 * self.begin(summed))
         if self._u_counter:
             parts[6] = self._u_counter * np.abs(summed.slope)
         for row, one in enumerate(reversed(self._added.values()), start=1):
             parts[-row] = one[:, None]
         return parts
+
+    def begin(self, summed: Summed) -> Array:
+        """Take note of the slope that the run begins with, of its first rows; return it, shape (2, 1) [m/m]."""
+        if self._first is None:
+            self._first = summed.slope[:, :1].copy()
+        return self._first
 
     def lean(self, east: float, north: float) -> None:
         """Take note of the mean slope between two stations [m/m]: how much the guide varies."""

@@ -7,9 +7,10 @@ from hypothesis import strategies as st
 from survey_help import journey, run, swinging
 from truth_help import DEPTH, capture
 
+from eastfall.physics.findings import ROW_FIELDS
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Guide, Instrument
-from eastfall.physics.survey import JUMP
+from eastfall.physics.survey import JUMP, Survey
 
 
 def marks():
@@ -71,3 +72,19 @@ def test_faults_halts_faces_and_jumps_do_not_depend_on_blocks_either(shaft, cuts
     if taken == "all":
         assert {one.name for one in whole.result().alarms} == {JUMP, "tilt frozen", "tilt at end of range"}
         assert whole.unused["depth spike"] == 3
+
+
+@pytest.mark.invariant
+@pytest.mark.parametrize("taken", ["all", "still"])
+def test_leaving_out_the_uncertainty_of_rows_changes_neither_stations_nor_alarms_nor_the_answer(shaft, taken):
+    """Without it only the two columns of the rows are missing."""
+    assumptions = shaft(depth=DEPTH, guide=Guide(readings=taken), instrument=Instrument(range=1.2))
+    whole, rows = run(assumptions, TROUBLED)
+    quick = Survey(assumptions, u_of_rows=False)
+    found = quick.feed(TROUBLED)
+    quick.close(float(TROUBLED.host_time[-1]))
+    assert repr(quick.result()) == repr(whole.result())
+    assert quick.standing() == whole.standing()
+    u = [ROW_FIELDS.index("u_east"), ROW_FIELDS.index("u_north")]
+    assert np.isnan(found.rows.data[u]).all() and np.isfinite(rows[u]).all()
+    np.testing.assert_array_equal(np.delete(found.rows.data, u, axis=0), np.delete(rows, u, axis=0))
