@@ -145,10 +145,22 @@ def crossings(stretch: Stretch, every: float, last: float) -> Iterator[tuple[flo
     sign = stretch.direction
     along = sign * stretch.extreme
     at_start = np.isnan(stretch.before)
-    begin = along[0] if at_start else sign * stretch.before
+    begin = float(along[0]) if at_start else sign * stretch.before
     # A station exactly at the first row of a run belongs to it; later on one exactly at the last extreme was taken.
-    first = int(np.ceil(begin / every)) if at_start else int(np.floor(begin / every)) + 1
-    for number in range(first, int(np.floor(along[-1] / every)) + 1):
-        depth = sign * number * every + 0.0
+    first = reached(begin, every)
+    first += not at_start or station_at(first, every) < begin
+    for number in range(first, reached(float(along[-1]), every) + 1):
+        depth = sign * station_at(number, every) + 0.0
         if 0.0 <= depth <= last:
-            yield depth, int(np.searchsorted(along, number * every))
+            yield depth, int(np.searchsorted(along, station_at(number, every)))
+
+
+def station_at(number: int, every: float) -> float:
+    """Return where a station is [m]: to the nanometre, so that the seventh of 0.2 m is the 1.4 that a probe reads."""
+    return round(number * every, 9) + 0.0
+
+
+def reached(along: float, every: float) -> int:
+    """Return the number of the last station at or before `along` [m], judged by what `station_at` says of it."""
+    number = round(along / every)
+    return number if station_at(number, every) <= along else number - 1

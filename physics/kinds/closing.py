@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.halts import Rest
-from eastfall.physics.passes import Passes, Stretch, crossings
+from eastfall.physics.passes import Passes, Stretch, crossings, reached, station_at
 from eastfall.physics.settings import Run
 
 Array = NDArray[np.float64]
@@ -135,7 +135,7 @@ class Closing:
         if self._extreme is None or not self._crossed:
             return
         depth = float(self._extreme[_DEPTH])
-        short_of = direction * (np.floor(direction * depth / self._every) + 1.0) * self._every + 0.0
+        short_of = direction * station_at(reached(direction * depth, self._every) + 1, self._every) + 0.0
         near = direction * (short_of - depth) <= self._near
         if near and 0.0 <= short_of <= self._last_station:
             readings, self._taken = self._taken, 0
@@ -143,7 +143,7 @@ class Closing:
 
     def _label(self, depth: float) -> float:
         """Return the station depth that a halt was made at, or its own."""
-        station = round(depth / self._every) * self._every
+        station = station_at(round(depth / self._every), self._every)
         return station if abs(station - depth) <= self._near and station >= 0.0 else depth
 
     def _numbered(self, due: list[Due]) -> Iterator[Due]:

@@ -59,6 +59,21 @@ def test_the_station_at_the_collar_is_a_plain_zero():
     assert [str(station) for _, station in crossed] == ["0.0", "10.0", "10.0", "0.0"]
 
 
+@pytest.mark.parametrize("every", [0.1, 0.2, 0.3, 0.7, 1.1, 2.2, 3.3])
+def test_stations_at_a_spacing_that_no_binary_number_holds_are_crossed_where_they_are_read(every):
+    """Read to a decimetre, each station is closed at the very row that reads it, down and up, by rows and at once."""
+    down = [number / 10.0 for number in range(661)]
+    depth = np.array([*down, *down[::-1]])
+    stations = [number * round(10 * every) / 10.0 for number in range(660 // round(10 * every) + 1)]
+    expected = [(0, one) for one in stations] + [(1, one) for one in stations[::-1] if one < depth.max()]
+    for cuts in ((), range(depth.size)):
+        _, crossed = walk(depth, cuts, every=every)
+        assert crossed == expected
+    for stretch in Passes(0.02, 50.0).stretches(depth):
+        for station, row in crossings(stretch, every, 100.0):
+            assert stretch.extreme[row] == station
+
+
 @pytest.mark.invariant
 @given(
     steps=st.lists(st.floats(-30.0, 30.0).map(lambda x: round(x, 3)), min_size=1, max_size=60),
