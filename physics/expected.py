@@ -11,7 +11,6 @@ from math import tau
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
-from scipy.integrate import cumulative_trapezoid
 
 from eastfall.physics.air import AirColumn, air_column
 from eastfall.physics.budget import Budget, combined
@@ -106,7 +105,8 @@ class Models:
         That is ∫ ε dz at 1 m/s, by the trapezoidal rule over `depth`, which rises from the collar.
         """
         angle = lean(1.0, self.assumptions.site.latitude, self.field.gravity_at(depth))
-        return np.asarray(cumulative_trapezoid(angle, depth, initial=0.0))
+        steps = np.diff(depth) * (0.5 * (angle[1:] + angle[:-1]))
+        return np.concatenate([[0.0], np.cumsum(steps)])
 
     def moving(self, depth: NDArray[np.float64], bob: Pair) -> NDArray[np.float64]:
         """Return how far east `plumb` moves for each metre a second of the line, shape (n,) [s].

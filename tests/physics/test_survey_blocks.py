@@ -86,5 +86,6 @@ def test_leaving_out_the_uncertainty_of_rows_changes_neither_stations_nor_alarms
     assert repr(quick.result()) == repr(whole.result())
     assert quick.standing() == whole.standing()
     u = [ROW_FIELDS.index("u_east"), ROW_FIELDS.index("u_north")]
-    assert np.isnan(found.rows.data[u]).all() and np.isfinite(rows[u]).all()
+    assert np.isnan(found.rows.data[u]).all()
+    assert np.isfinite(rows[u]).all()
     np.testing.assert_array_equal(np.delete(found.rows.data, u, axis=0), np.delete(rows, u, axis=0))
