@@ -53,7 +53,7 @@ def tabulated(assumptions: Assumptions, points: int) -> NDArray[np.float64]:
     flow = () if assumptions.air.is_vacuum else assumptions.air.cross_flow
     edges = [edge for row in flow for edge in row[:2] if 0.0 < edge < deepest]
     sides = [*edges, *np.nextafter(edges, 0.0)]
-    return np.union1d(graded(deepest, points), sides)
+    return np.array(sorted({*graded(deepest, points).tolist(), *map(float, sides)}))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -241,7 +241,7 @@ def _shifted(latitude: float, by: float) -> float:
 def _bent(assumptions: Assumptions, field: LocalField, row: int) -> tuple[tuple[float, float, float], ...]:
     """Return the deflections with the unknown bending added on one axis, growing in proportion to depth."""
     deepest = reach(assumptions)
-    depths = np.union1d([0.0, deepest], [one[0] for one in assumptions.site.deflections])
+    depths = np.array(sorted({0.0, deepest, *(one[0] for one in assumptions.site.deflections)}))
     north, east = field.slope(depths)
     bending = assumptions.site.u_deflection * depths / assumptions.shaft.depth
     columns = [depths, north, east]

@@ -138,7 +138,7 @@ def _evaluate(edges: Array, series: Array, sigma: Array) -> Array:
     start, end = edges[index], edges[index + 1]
     terms = chebyshev.chebvander((2.0 * sigma - start - end) / (end - start), series.shape[1] - 1)
     rows = np.empty((len(sigma), 6))
-    for i in np.unique(index):
+    for i in set(index.tolist()):
         chosen = index == i
         rows[chosen] = terms[chosen] @ series[i]
     return rows.T

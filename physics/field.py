@@ -88,7 +88,7 @@ class LocalField:
     @property
     def breaks(self) -> tuple[float, ...]:
         """Depths where the field has a kink, in rising order [m]."""
-        return tuple(float(d) for d in np.union1d(self.layer_tops[1:], self.knots[1:]))
+        return tuple(sorted({float(d) for d in (*self.layer_tops[1:], *self.knots[1:])}))
 
     def gravity_at(self, depth: npt.ArrayLike) -> Array:
         """Gravity on the straight vertical.

@@ -40,7 +40,7 @@ class Wire:
         check_line(line, self.air)
         kinks = (*field.breaks, *(self.air.breaks if self.air else ()))
         inner = [one for one in kinks if 0.0 < one < deepest]
-        self.edges = np.union1d(np.linspace(0.0, max(deepest, 1.0), _PIECES + 1), inner)
+        self.edges = np.array(sorted({*np.linspace(0.0, max(deepest, 1.0), _PIECES + 1).tolist(), *inner}))
         step = np.diff(self.edges)
         self.nodes = self.edges[:-1, None] + step[:, None] * _NODES
         loads = self.per_metre(self.nodes)
