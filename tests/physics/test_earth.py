@@ -33,6 +33,16 @@ def test_wgs84_eccentricity_agrees_with_the_standard() -> None:
     assert GRS80.eccentricity_squared == pytest.approx(0.00669438002290, abs=5e-15)
 
 
+@pytest.mark.independent
+@pytest.mark.parametrize(("ours", "theirs"), [(WGS84, boule.WGS84), (GRS80, boule.GRS80)])
+def test_the_four_constants_that_define_an_ellipsoid_are_those_boule_carries(
+    ours: Ellipsoid, theirs: boule.Ellipsoid
+) -> None:
+    """Semimajor axis, flattening, GM and rotation, to the last digit."""
+    assert (ours.semimajor_axis, ours.flattening) == (theirs.semimajor_axis, theirs.flattening)
+    assert (ours.gm, ours.rotation) == (theirs.geocentric_grav_const, theirs.angular_velocity)
+
+
 @pytest.mark.published
 def test_gravity_ratio_agrees_with_grs80() -> None:
     """Helmert's m is 0.00344978600308: Moritz (1980)."""

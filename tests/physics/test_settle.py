@@ -64,6 +64,33 @@ def test_a_worked_case():
     assert found.leans_to == "within"
 
 
+def test_the_remedy_that_asks_for_least_stands_first():
+    """26 mm against 25 mm, u ≤ 0.5 mm wanted, u² = 0.30 mm²: of three inputs the largest has the least way to go.
+
+    0.4, 0.3 and 0.223607 mm leave room for √(0.25 - 0.30 + p²): 0.331662, 0.2 and nothing.
+    """
+    found = settle(station(0.026, 0.0, [(3e-4, 0.0), (4e-4, 0.0), (5e-8**0.5, 0.0)]))
+    assert [one.name for one in found.remedies] == ["tilt, zero", "tilt, random"]
+    assert [one.factor for one in found.remedies] == pytest.approx([0.331662 / 0.4, 0.2 / 0.3], rel=1e-5)
+    assert found.leans_to == "over"
+
+
+@pytest.mark.parametrize("axes", [1, -1])
+def test_a_residual_inside_its_uncertainty_is_settled_on_the_axis_known_worse(axes):
+    """2 mm of residual, u of 10 mm on one axis and 1 mm on the other: the 10 mm of 6 and 8 are what must shrink.
+
+    A limit of 12 mm wants 5 mm, which neither input alone gives; one of 18 mm wants 8: √(8² - 6²) of the larger, and
+    nothing at all of the smaller.
+    """
+    parts = [pair[::axes] for pair in ((6e-3, 6e-4), (8e-3, 8e-4), (0.0, 0.0))]
+    found = settle(station(0.002, 0.0, parts, action=0.012))
+    assert found.u == pytest.approx(0.010)
+    assert (found.u_needed, found.remedies) == (pytest.approx(0.005), ())
+    found = settle(station(0.002, 0.0, parts, action=0.018))
+    assert [one.present for one in found.remedies] == pytest.approx([8e-3])
+    assert [one.needed for one in found.remedies] == pytest.approx([28e-6**0.5])
+
+
 def test_on_the_limit_itself_nothing_will_do():
     """A residual equal to the limit stays undecided at any uncertainty."""
     found = settle(station(0.025, 0.0, [(6e-4, 0.0)] * 3))
