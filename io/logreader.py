@@ -217,6 +217,8 @@ class LogReader:
 
     def _decoded(self, data: bytes) -> list[Arrival]:
         """Return the arrivals in record lines; stretches without events go through arrays, the rest through JSON."""
+        if data and self._merge and (found := plain_lines(data)) is not None:
+            return [self._block(*found, 0)]
         arrivals: list[Arrival] = []
         begin = 0
         while begin < len(data):

