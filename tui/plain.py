@@ -4,6 +4,7 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 from eastfall.tui import words
+from eastfall.tui.units import METRIC, Units
 
 if TYPE_CHECKING:
     from eastfall.io.run import RunUpdate
@@ -22,11 +23,16 @@ class PlainLines:
         Of the run.
     every : float
         Seconds of the run between two lines on how things stand.
+    units : Units
+        Of the reader.
     """
 
-    def __init__(self, write: Callable[[str], None], kind: "Kind", every: float = 5.0) -> None:
+    def __init__(
+        self, write: Callable[[str], None], kind: "Kind", every: float = 5.0, units: Units = METRIC
+    ) -> None:
         self._write = write
         self._kind = kind
+        self._units = units
         self._every = every
         self._next = 0.0
 
@@ -34,24 +40,24 @@ class PlainLines:
         """Write what an update brought."""
         for one in update.findings:
             for station in one.stations:
-                self._write(_station(station))
+                self._write(self._station(station))
             for change in one.alarms:
-                self._write(_alarm(change))
+                self._write(self._alarm(change))
         if update.time >= self._next:
             self._next = update.time + self._every
-            self._write(f"{words.clock(update.time)} {words.answer(update.standing)}")
+            self._write(f"{words.clock(update.time)} {words.answer(update.standing, self._units)}")
 
     def end(self, update: "RunUpdate") -> None:
         """Write how things stand at the end."""
         health = update.health
-        self._write(f"{words.clock(update.time)} {words.answer(update.standing)}")
-        self._write(words.steering(update.standing, self._kind))
+        self._write(f"{words.clock(update.time)} {words.answer(update.standing, self._units)}")
+        self._write(words.steering(update.standing, self._kind, self._units))
         self._write(f"{health.frames} readings used, {health.rejected} lines refused")
 
+    def _station(self, one: "Station") -> str:
+        at = f"{self._units.depth(one.depth)} {self._units.long}"
+        return f"station {at} {one.direction}: {words.answer(one, self._units)}"
 
-def _station(one: "Station") -> str:
-    return f"station {words.metres(one.depth)} m {one.direction}: {words.answer(one)}"
-
-
-def _alarm(one: "AlarmChange") -> str:
-    return f"alarm {words.clock(one.time)} {one.name}: {one.old} -> {one.new}; {one.message}"
+    def _alarm(self, one: "AlarmChange") -> str:
+        what = words.reworded(one.message, self._units)
+        return f"alarm {words.clock(one.time)} {one.name}: {one.old} -> {one.new}; {what}"

@@ -1,5 +1,6 @@
 """Lengths as a reader wants them: metres and millimetres, or feet and inches; files and records stay metric."""
 
+import re
 from dataclasses import dataclass
 from math import isfinite
 from typing import Literal
@@ -103,3 +104,37 @@ def size_of(mark: str, units: Units) -> tuple[str, float]:
         "m/s": (units.speed, units.long_size),
         "mm/s": (f"{units.short}/s", units.short_size * 1e3),
     }.get(mark, (mark, 1.0))
+
+
+_NUMBER = r"[+-]?\d+(?:\.\d+)?"
+_LENGTHS = re.compile(
+    rf"(?<![\w.:/+-])(?<!\d, )((?:(?<=\bat )(?:{_NUMBER}, )+)?{_NUMBER}) (mm/s|mm|m/s|m)(?![\w/²³])"
+)
+"""A number, or some behind "at", with a unit."""
+
+
+def lengths_in(sentence: str, units: Units) -> str:
+    """Return a sentence with its metric lengths and speeds in a reader's units, no coarser than they were written.
+
+    Parameters
+    ----------
+    sentence : str
+        Of the engine, which speaks in metres and millimetres: "at 212.3 m, 15.8 mm", "at 10, 20 m".
+    units : Units
+        Of the reader.
+    """
+    if units.name == "metric":
+        return sentence
+
+    def changed(found: re.Match[str]) -> str:
+        mark, size = size_of(found[2], units)
+        finer = units.finer if found[2].startswith("mm") else 0
+
+        def number(one: re.Match[str]) -> str:
+            places = len(one[0].partition(".")[2]) + finer
+            sign = "+" if one[0].startswith("+") else ""
+            return f"{float(one[0]) / size:{sign}.{places}f}"
+
+        return f"{re.sub(_NUMBER, number, found[1])} {mark}"
+
+    return _LENGTHS.sub(changed, sentence)

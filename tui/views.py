@@ -1,5 +1,6 @@
 """From a snapshot and a sight to what each part of the screen shows; decides words and places, draws nothing."""
 
+from dataclasses import dataclass
 from math import isfinite
 
 import numpy as np
@@ -11,7 +12,7 @@ from eastfall.tui.keys import AS_MADE, Keymap
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve, Session
 from eastfall.tui.store import Snapshot, worst_alarm
-from eastfall.tui.units import Units
+from eastfall.tui.units import METRIC, Units, lengths_in
 from eastfall.tui.widgets.figures import Figure
 from eastfall.tui.widgets.line import Piece
 from eastfall.tui.widgets.plan import PlanView, Point
@@ -114,7 +115,7 @@ def notes(session: Session, snapshot: Snapshot, one: Subject) -> tuple[Piece, ..
         found.insert(0, f"WHAT IF: {', '.join(session.differences)}")
     noted = [said for said in snapshot.said if said.is_note and snapshot.time - said.time <= _NOTE_SECONDS]
     fresh = tuple((f"note {words.clock(said.time)} {said.text}  ", Role.STRONG) for said in noted[-1:])
-    return (*fresh, *((f"! {note}  ", Role.WARNING) for note in found))
+    return (*fresh, *((f"! {lengths_in(note, session.units)}  ", Role.WARNING) for note in found))
 
 
 def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
@@ -216,18 +217,34 @@ def _at(curve: Curve | None, one: Subject) -> Point | None:
     return float(east[0]), float(north[0])
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class AlarmLine:
+    """The alarm to show first, what to do with it, and the colour under both."""
+
+    pieces: tuple[Piece, ...]
+    hint: tuple[Piece, ...] = ()
+    under: Role | None = None
+
+
 def alarm_line(
-    snapshot: Snapshot, keymap: Keymap = AS_MADE, seen: str = "watch.acknowledge"
-) -> tuple[tuple[Piece, ...], Role | None]:
-    """Return the alarm to show first and the colour under it; `seen` names the key that acknowledges it."""
+    snapshot: Snapshot,
+    units: Units = METRIC,
+    keymap: Keymap = AS_MADE,
+    *,
+    seen: str = "watch.acknowledge",
+    board: str = "watch.alarms",
+) -> AlarmLine:
+    """Return the line of the alarm to show first; `seen` and `board` name the keys that acknowledge and list it."""
     worst = worst_alarm(snapshot.alarms)
     if worst is None:
-        return (("no alarms", Role.DIM),), None
+        return AlarmLine(pieces=(("no alarms", Role.DIM),))
     waiting = sum(one.state in words.WANTS_ANSWER for one in snapshot.alarms)
-    text = words.alarm(worst)
+    text = words.alarm(worst, units)
     if not waiting:
-        return ((f"{text}  ", Role.TEXT), (f"{len(snapshot.alarms)} seen", Role.DIM)), None
-    more = f", {waiting - 1} more" if waiting > 1 else ""
+        return AlarmLine(pieces=((text, Role.TEXT),), hint=((f"{len(snapshot.alarms)} seen", Role.DIM),))
     under = Role.GROUND_WARNING if "warning" in worst.name else Role.GROUND_ACTION
-    key = f"   ({keymap[seen]}: seen)" if snapshot.mode == "live" else ""
-    return ((f"{text}{more}{key}", Role.ON_GROUND),), under
+    more = f"{waiting - 1} more  " if waiting > 1 else ""
+    keys = [f"{keymap[seen]}: seen"] if snapshot.mode == "live" else []
+    keys += [f"{keymap[board]}: all"] if board else []
+    told = f"({', '.join(keys)})" if keys else ""
+    return AlarmLine(pieces=((text, Role.ON_GROUND),), hint=((f"{more}{told}", Role.ON_GROUND),), under=under)

@@ -1,12 +1,13 @@
 """Findings as plain sentences: every number with its unit, its sign or direction, and the line it is reckoned from."""
 
+import re
 from math import atan2, degrees, hypot, isfinite, log
 from typing import TYPE_CHECKING, Protocol
 
 from eastfall.physics.budget import COVERAGE_FACTOR
-from eastfall.physics.findings import AlarmView, RestPoint, Standing
+from eastfall.physics.findings import AlarmChange, AlarmView, RestPoint, Standing
 from eastfall.physics.verdict import horizontal
-from eastfall.tui.units import METRIC, Units
+from eastfall.tui.units import METRIC, Units, lengths_in
 
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind, Reference
@@ -46,16 +47,6 @@ class Judged(Protocol):
     def action(self) -> float: ...  # noqa: D102
     @property
     def verdict(self) -> str: ...  # noqa: D102
-
-
-def mm(value: float, places: int = 1) -> str:
-    """Return metres as millimetres without the unit; a dash where there is no number."""
-    return f"{value * 1e3:.{places}f}" if isfinite(value) else "–"
-
-
-def metres(value: float, places: int = 1) -> str:
-    """Return metres without the unit; a dash where there is no number."""
-    return f"{value:.{places}f}" if isfinite(value) else "–"
 
 
 def bearing(east: float, north: float) -> str:
@@ -103,7 +94,8 @@ def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
     if one.hold_still is not None:
         return f"Hold still: {one.hold_still:.0f} s more closes this station."
     if kind == "hung" and one.rest_point is not None and not one.rest_point.fits:
-        return f"Let it swing: {one.rest_point.message or 'the swing does not fit a free pendulum yet'}."
+        why = reworded(one.rest_point.message, units) or "the swing does not fit a free pendulum yet"
+        return f"Let it swing: {why}."
     length = residual_length(one)
     if not isfinite(length):
         return "Nothing to steer by: the readings give no offset."
@@ -200,15 +192,35 @@ def clock(seconds: float) -> str:
     return f"{hours}:{minutes:02d}:{whole % 60:02d}" if hours else f"{minutes}:{whole % 60:02d}"
 
 
-def alarm(one: AlarmView) -> str:
+def alarm(one: AlarmView, units: Units = METRIC) -> str:
     """Return one alarm as a line: its state first, in words, then since when and what it is about."""
-    what = (
-        one.message if one.message.startswith(one.name) else f"{one.name}: {one.message}".removesuffix(": ")
-    )
-    return f"{ALARM_STATE.get(one.state, one.state.upper())} {clock(one.since)} {what}"
+    return f"{_state(one.state)} {clock(one.since)} {_about(one.name, one.message, units)}"
 
 
+def alarm_change(one: AlarmChange, units: Units = METRIC) -> str:
+    """Return what an alarm became and what it is about, in the words of `alarm`, without the time."""
+    return f"{_state(one.new)} {_about(one.name, one.message, units)}"
+
+
+def _state(state: str) -> str:
+    return ALARM_STATE.get(state, state.upper())
+
+
+def _about(name: str, message: str, units: Units) -> str:
+    what = message if message.startswith(name) else f"{name}: {message}".removesuffix(": ")
+    return reworded(what, units)
+
+
+def reworded(message: str, units: Units) -> str:
+    """Return what the engine says in a reader's units; what a person said of it behind that stays as it is."""
+    said = _BY_HAND.search(message)
+    end = said.start() if said else len(message)
+    return lengths_in(message[:end], units) + message[end:]
+
+
+_BY_HAND = re.compile(r"; (?:acknowledged|shelved)\b")
 ALARM_STATE = {
+    "normal": "GONE",
     "active": "NEW",
     "acknowledged": "SEEN",
     "returned": "WENT BACK, NOT SEEN",

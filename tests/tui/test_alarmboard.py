@@ -49,7 +49,7 @@ async def test_history_tells_changes_and_words_newest_first(session: Make, snaps
     rows = [row.strip() for row in text if "warning limit" in row]
     assert rows == [
         "1:35  acknowledge warning limit · Ada",
-        "1:30  warning limit: normal to active  15.8 mm",
+        "1:30  NEW warning limit: 15.8 mm",
     ]
 
 

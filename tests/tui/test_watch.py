@@ -384,3 +384,86 @@ async def test_trouble_of_the_source_is_told_in_the_picture(session: Make, snaps
     async with app.run_test(size=(80, 24)) as pilot:
         text = "\n".join(await shown(pilot, snapshot(trouble="port gone")))
     assert "STOPPED: port gone" in text
+
+
+LONG = (
+    "could not open port /dev/serial/by-id/usb-FTDI_USB-RS422_Cable_AU05XKQ2-if00-port0: device reports readiness "
+    "to read but returned no data, next try in 5 s; pull the plug and put it back"
+)
+
+
+def unspaced(rows: list[str]) -> str:
+    """Return text without blanks: a word may be parted at the end of a row."""
+    return "".join("".join(rows).split())
+
+
+@pytest.mark.parametrize(("width", "height"), [(80, 24), (120, 40), (200, 60)])
+@pytest.mark.parametrize("glyphs", ["braille", "ascii"])
+async def test_long_alarm_is_whole_on_the_screen(
+    session: Make,
+    snapshot: Snap,
+    alarm: Callable[..., AlarmView],
+    width: int,
+    height: int,
+    glyphs: str,
+) -> None:
+    """The line takes the rows it needs; the keys that answer it stand behind it, and the pictures stay."""
+    app = built(session(), AskedLive(), glyphs=GLYPHS[glyphs])
+    alarms = (alarm(name="link lost", message=LONG, since=390.0), alarm())
+    async with app.run_test(size=(width, height)) as pilot:
+        text = await shown(pilot, snapshot(alarms=alarms))
+    foot = unspaced(text[-6:])
+    assert unspaced([f"NEW 6:30 link lost: {LONG}"]) in foot
+    assert unspaced(["1 more (a: seen, l: all)"]) in foot
+    assert any("west" in row for row in text)
+    assert "WITHIN 60.0 m" in text[1]
+
+
+@pytest.mark.parametrize(("width", "height"), [(80, 24), (40, 12), (20, 5)])
+async def test_every_alarm_can_be_read_whole_by_keys_in_any_window(
+    session: Make, snapshot: Snap, alarm: Callable[..., AlarmView], width: int, height: int
+) -> None:
+    """In the list nothing is cut off: one key down after the other shows every word of every alarm."""
+    app = built(session(), AskedLive())
+    alarms = (alarm(name="link lost", message=LONG, since=390.0), alarm(name="second", message=LONG[::-1]))
+    async with app.run_test(size=(width, height)) as pilot:
+        await shown(pilot, snapshot(alarms=alarms))
+        await pilot.press("l")
+        rows: list[str] = []
+        for _ in range(60):
+            await pilot.press("down")
+            await pilot.pause()
+            rows += [cut for row in lines(app)[2:-1] if (cut := row[: width - 1]) not in rows]
+    for words in (LONG, LONG[::-1]):
+        assert unspaced([words]) in unspaced(rows)
+
+
+async def test_why_a_source_stopped_and_an_old_answer_are_told_whole(
+    session: Make, snapshot: Snap, standing, alarm: Callable[..., AlarmView]
+) -> None:
+    """Both are longer than 80 columns and take a second row."""
+    app = built(session())
+    silent = alarm(name="feed silent", state="acknowledged", message="no reading for 5 s")
+    warned = standing(measured_east=0.0201)
+    async with app.run_test(size=(80, 24)) as pilot:
+        text = await shown(pilot, snapshot(trouble=LONG, alarms=(silent,), standing=warned))
+    told = unspaced(text)
+    for words in (
+        f"STOPPED: {LONG}",
+        "OLD, no new reading: WITHIN, PAST WARNING 60.0 m: residual 18.8 ± 1.8 mm toward 088°, limit 30.0 mm",
+    ):
+        assert unspaced([words]) in told
+
+
+async def test_resize_alone_shares_the_rows_out_anew(session: Make, snapshot: Snap) -> None:
+    """A paused replay, to which nothing new comes, is whole again in a wider window."""
+    app = built(session(mode="replay"), AskedReplay())
+    async with app.run_test(size=(80, 24)) as pilot:
+        before = await shown(pilot, snapshot(mode="replay", trouble=LONG))
+        await pilot.resize_terminal(40, 24)
+        await pilot.pause()
+        narrow = " ".join(" ".join(lines(app)).split())
+        assert "limit 30.0 mm" in narrow
+        await pilot.resize_terminal(80, 24)
+        await pilot.pause()
+        assert lines(app) == before

@@ -13,8 +13,9 @@ from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText
 from eastfall.tui.screens.following import FollowingScreen
 from eastfall.tui.store import Snapshot
+from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.alarms import in_order, role_of
-from eastfall.tui.widgets.line import KeyLine, TextLine
+from eastfall.tui.widgets.line import KeyLine, TextLine, wrapped
 from eastfall.tui.widgets.table import LongTable
 
 Seen = Callable[[str], None]
@@ -24,12 +25,9 @@ Shelve = Callable[[str, float, str], None]
 Line = tuple[str, Role]
 
 
-def history(snapshot: Snapshot) -> list[Line]:
+def history(snapshot: Snapshot, units: Units = METRIC) -> list[Line]:
     """Return what alarms did and people said, the newest first."""
-    told = [
-        (one.time, 0, f"{one.name}: {one.old} to {one.new}  {one.message}".rstrip(), Role.TEXT)
-        for one in snapshot.changes
-    ]
+    told = [(one.time, 0, words.alarm_change(one, units), Role.TEXT) for one in snapshot.changes]
     told += [(one.time, 1, one.text, Role.STRONG) for one in snapshot.said]
     told.sort(key=lambda one: one[:2], reverse=True)
     return [(f"{words.clock(time):>8}  {text}", role) for time, _, text, role in told]
@@ -53,6 +51,8 @@ class AlarmsScreen(FollowingScreen[None]):
         super().__init__()
         self._snapshot, self._seen, self._shelve = snapshot, seen, shelve
         self._alarms: list[AlarmView] = []
+        self._owners: list[int] = []
+        """Which alarm each row is about."""
         self._shown: object = None
 
     def compose(self) -> ComposeResult:
@@ -76,21 +76,34 @@ class AlarmsScreen(FollowingScreen[None]):
         waiting = sum(one.state in words.WANTS_ANSWER for one in snapshot.alarms)
         title = f"alarms: {len(snapshot.alarms)} not normal, {waiting} to acknowledge"
         self.query_one("#alarms-title", TextLine).show((title, Role.STRONG))
-        known_by = (snapshot.alarms, snapshot.changes, snapshot.said)
+        units: Units = getattr(self.app, "units", METRIC)
+        width = max(self.size.width - _BAR, _INDENT + 1)
+        known_by = (snapshot.alarms, snapshot.changes, snapshot.said, units, width)
         if known_by == self._shown:
             return
         self._shown = known_by
         self._alarms = in_order(snapshot.alarms)
-        lines: list[Line] = [(words.alarm(one), role_of(one)) for one in self._alarms]
-        lines = lines or [("no alarms", Role.DIM)]
-        lines += [("", Role.TEXT), *(history(snapshot) or [("nothing happened yet", Role.DIM)])]
+        rows = [_rows(words.alarm(one, units), role_of(one), width) for one in self._alarms]
+        self._owners = [place for place, parts in enumerate(rows) for _ in parts]
+        lines = [part for parts in rows for part in parts] or [("no alarms", Role.DIM)]
+        past = history(snapshot, units) or [("nothing happened yet", Role.DIM)]
+        lines += [("", Role.TEXT), *(part for text, role in past for part in _rows(text, role, width))]
         table = self.query_one(LongTable)
         table.show(len(lines), lines.__getitem__)
         table.follows = False
 
+    def on_resize(self) -> None:
+        """Set the lines anew for another width."""
+        self.show(self._snapshot)
+
+    def reckon_in(self, units: Units) -> None:
+        """Tell lengths in other units."""
+        del units
+        self.show(self._snapshot)
+
     def _under_cursor(self) -> AlarmView | None:
         row = self.query_one(LongTable).cursor
-        return self._alarms[row] if row < len(self._alarms) else None
+        return self._alarms[self._owners[row]] if row < len(self._owners) else None
 
     def action_seen(self) -> None:
         """Acknowledge the alarm under the cursor."""
@@ -115,3 +128,14 @@ class AlarmsScreen(FollowingScreen[None]):
     def action_close(self) -> None:
         """Go back."""
         self.dismiss(None)
+
+
+_INDENT = 2
+_BAR = 1
+"""Columns that further rows of a line stand in, and that the scroll bar takes."""
+
+
+def _rows(text: str, role: Role, width: int) -> list[Line]:
+    """Return a line as rows of a width: nothing of it is cut off."""
+    first, *rest = wrapped(text, width, width - _INDENT)
+    return [(first, role), *((" " * _INDENT + part, role) for part in rest)]

@@ -10,11 +10,14 @@ from eastfall.io.compare import Comparison
 from eastfall.io.safetext import safe
 from eastfall.tui import differences, keys
 from eastfall.tui.roles import Role
-from eastfall.tui.units import METRIC, Units
+from eastfall.tui.units import METRIC, Units, lengths_in
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.shift import Shift
 from eastfall.tui.widgets.table import LongTable
+
+_MOST = 3
+"""Rows that the outcome, and the remarks, may take."""
 
 
 class CompareScreen(PaintedScreen[None]):
@@ -71,13 +74,19 @@ class CompareScreen(PaintedScreen[None]):
         self.query_one("#outcome", TextLine).show((words, Role.ON_GROUND), under=under)
         left_out = (f"stations of the first beyond the second: {one.left_out}",) if one.left_out else ()
         remarks = self.query_one("#remarks", TextLine)
-        told = "  ".join(f"! {safe(note)}" for note in (*one.notes, *left_out))
-        remarks.display = bool(told)
-        remarks.styles.height = 1 if len(told) <= self.size.width else 2
+        told = "  ".join(f"! {lengths_in(safe(note), self._units)}" for note in (*one.notes, *left_out))
         remarks.show((told, Role.WARNING))
+        for name in ("outcome", "remarks"):
+            self.query_one(f"#{name}", TextLine).fit(_MOST)
         self.query_one(Shift).show(one)
         rows = differences.chosen(one, self._order, only_moved=self._only_moved)
         self.query_one(LongTable).show(len(rows), lambda i: differences.row(rows[i], self._units))
+
+    def reckon_in(self, units: Units) -> None:
+        """Show lengths in other units."""
+        self._units = units
+        self.query_one(LongTable).head = differences.head(units)
+        self.paint()
 
     def action_other(self, by: int) -> None:
         """Take another comparison."""

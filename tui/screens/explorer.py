@@ -14,9 +14,9 @@ from eastfall.tui.inputs import Inputs
 from eastfall.tui.outlook import Prospect
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText, plain
-from eastfall.tui.screens.inputs import InputScreen, Lines, typing
+from eastfall.tui.screens.inputs import MOST, InputScreen, Lines, typing
 from eastfall.tui.typed import example_depths
-from eastfall.tui.units import METRIC, Units
+from eastfall.tui.units import METRIC, Units, lengths_in
 from eastfall.tui.widgets.curves import Curves, Prospects
 from eastfall.tui.widgets.dials import DialList
 from eastfall.tui.widgets.line import KeyLine, TextLine
@@ -121,10 +121,10 @@ class ExplorerScreen(InputScreen):
             (outlook.wall(one, self.inputs.units), Role.ACTION if met else Role.TEXT)
         )
         warnings = self.query_one("#warnings", TextLine)
-        told = "  ".join(f"! {text}" for text in one.curve.warnings)
-        warnings.display = bool(told)
-        warnings.styles.height = 1 if len(told) <= self.size.width else 2
+        told = "  ".join(f"! {lengths_in(text, self.inputs.units)}" for text in one.curve.warnings)
         warnings.show((told, Role.WARNING))
+        for name in ("answer", "wall", "warnings"):
+            self.query_one(f"#{name}", TextLine).fit(MOST)
 
     def action_keep(self) -> None:
         """Keep the prediction as B."""

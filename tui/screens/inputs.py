@@ -26,6 +26,10 @@ def typing() -> list[BindingType]:
     return [*letters, Binding("backspace", "rub", show=False), Binding("delete", "wipe", show=False)]
 
 
+MOST = 3
+"""Rows that a line of words may take."""
+
+
 class InputScreen(PaintedScreen[None]):
     """A screen of inputs with a cursor and a worker that follows them; subclasses say what is worked out and shown.
 

@@ -11,8 +11,8 @@ from eastfall.tui import drop, keys
 from eastfall.tui.dials import RELEASE, Dial
 from eastfall.tui.inputs import Inputs
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.inputs import InputScreen, typing
-from eastfall.tui.units import METRIC, Units, size_of
+from eastfall.tui.screens.inputs import MOST, InputScreen, typing
+from eastfall.tui.units import METRIC, Units, lengths_in, size_of
 from eastfall.tui.widgets.cloud import Cloud
 from eastfall.tui.widgets.dials import DialList
 from eastfall.tui.widgets.line import KeyLine, TextLine
@@ -92,10 +92,10 @@ class PlannerScreen(InputScreen):
         self.query_one("#wall", TextLine).show((text, Role.ACTION if in_the_way else Role.TEXT))
         self.query_one("#best", TextLine).show((drop.best(found, units), Role.TEXT))
         warnings = self.query_one("#warnings", TextLine)
-        told = "  ".join(f"! {one}" for one in found.warnings)
-        warnings.display = bool(told)
-        warnings.styles.height = 1 if len(told) <= self.size.width else 2
+        told = "  ".join(f"! {lengths_in(text, units)}" for text in found.warnings)
         warnings.show((told, Role.WARNING))
+        for name in ("answer", "wall", "best", "warnings"):
+            self.query_one(f"#{name}", TextLine).fit(MOST)
         self.query_one("#plan-view", Cloud).show(found, self.scope, units)
         other: Scope = "wall" if self.scope == "close" else "close"
         self.query_one("#other-plan", Cloud).show(found, other, units)

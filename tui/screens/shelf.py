@@ -115,6 +115,12 @@ class ShelfScreen(PaintedScreen[Path | None]):
                 self.cards = cards
         self.paint()
 
+    def reckon_in(self, units: Units) -> None:
+        """Show lengths in other units."""
+        self._units = units
+        self.query_one(LongTable).head = shelf.head(units)
+        self.paint()
+
     def paint(self) -> None:
         """Show the list."""
         self._rows = shelf.chosen(self.cards, self._order, self._only)

@@ -107,6 +107,12 @@ class StationsScreen(FollowingScreen[int | None]):
             lambda i: (row(one := stations[self._indices[i]], self._units), _ROLE[one.verdict]),
         )
 
+    def reckon_in(self, units: Units) -> None:
+        """Show lengths in other units."""
+        self._units = units
+        self.query_one(LongTable).head = head(units)
+        self.show(self._snapshot)
+
     def action_sort(self) -> None:
         """Take the next order."""
         self._order = ORDERS[(ORDERS.index(self._order) + 1) % len(ORDERS)]

@@ -20,6 +20,8 @@ if TYPE_CHECKING:
     from eastfall.physics.settings import Kind
 
 _TICK = 0.1
+_MOST = 3
+"""Rows that an alarm may take, and the answer."""
 
 
 class SteerScreen(FollowingScreen[None]):
@@ -77,10 +79,19 @@ class SteerScreen(FollowingScreen[None]):
         one = snapshot.standing
         under = views.answer_ground(snapshot, one)
         ink = Role.STRONG if under is None else Role.ON_GROUND
-        self.query_one("#answer", TextLine).show((views.answer(snapshot, one, self._units), ink), under=under)
+        answer = self.query_one("#answer", TextLine)
+        answer.show((views.answer(snapshot, one, self._units), ink), under=under)
+        answer.fit(_MOST)
         self.query_one(BearingView).show(self._steer())
-        pieces, ground = views.alarm_line(snapshot, keys.keymap_of(self.app), seen="steer.seen")
-        self.query_one("#alarm", TextLine).show(*pieces, under=ground)
+        told = views.alarm_line(snapshot, self._units, keys.keymap_of(self.app), seen="steer.seen", board="")
+        line = self.query_one("#alarm", TextLine)
+        line.show(*told.pieces, right=told.hint, under=told.under)
+        line.fit(_MOST)
+
+    def reckon_in(self, units: Units) -> None:
+        """Tell lengths in other units."""
+        self._units = units
+        self.show(self._snapshot)
 
     def _steer(self) -> Steer:
         """Return what to do; nothing to go by once the answer is old."""

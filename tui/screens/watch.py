@@ -9,9 +9,11 @@ from textual.binding import BindingType
 from textual.containers import Horizontal
 from textual.css.query import NoMatches
 from textual.events import Click
+from textual.widget import Widget
 
 from eastfall.tui import keys, views, words
 from eastfall.tui import sight as look
+from eastfall.tui.fit import shared
 from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.following import FollowingScreen
@@ -22,13 +24,19 @@ from eastfall.tui.store import Snapshot
 from eastfall.tui.widgets.alarms import AlarmList
 from eastfall.tui.widgets.figures import Figures
 from eastfall.tui.widgets.health import HealthList, health_line, told
-from eastfall.tui.widgets.line import KeyLine, Piece, TextLine, wrapped
+from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.panel import ProfileView
 from eastfall.tui.widgets.plan import Plan
 from eastfall.tui.widgets.profile import Profile
 from eastfall.tui.widgets.strip import Strip
 
 _LAYOUTS: tuple[look.Layout, ...] = ("all", "depth", "plan", "time")
+_LINES = {"answer": 5, "alarm": 4, "steer": 4, "title": 1, "keys": 1, "health": 1, "swing": 3, "notes": 3}
+"""Lines of text, what matters most first, and the most rows that each may take."""
+_CALM = {"answer": 5, "steer": 4, "title": 1, "keys": 1, "alarm": 1, "health": 1, "swing": 3, "notes": 3}
+"""The same while no alarm waits for an answer."""
+_WHOLE = frozenset({"steer"})
+"""Half of what to do would mislead."""
 
 
 class WatchScreen(RunScreen):
@@ -72,6 +80,10 @@ class WatchScreen(RunScreen):
         """Show the empty picture at once."""
         self.paint()
 
+    def on_resize(self) -> None:
+        """Share out the rows anew, once all parts have their width."""
+        self.call_after_refresh(self.paint)
+
     def on_screen_resume(self) -> None:
         """Catch up with what came while another screen was in front."""
         self.paint()
@@ -99,6 +111,7 @@ class WatchScreen(RunScreen):
         # While the application ends, the last pictures find only some of the parts, or none.
         with self.app.batch_update(), suppress(NoMatches):
             self._paint_lines(shown, one)
+            self._share()
             self._paint_evidence(shown, one)
 
     def _line(self, name: str) -> TextLine:
@@ -113,13 +126,10 @@ class WatchScreen(RunScreen):
         self._line("answer").show((views.answer(shown, one, self.session.units), ink), under=under)
         keymap = keys.keymap_of(self.app)
         self._line("steer").show(*views.steer(self.session, latest, one, keymap))
-        for name, pieces in (
-            ("swing", views.swing(self.session, one)),
-            ("notes", views.notes(self.session, shown, one)),
-        ):
-            self._show_if_any(self._line(name), pieces)
-        pieces, ground = views.alarm_line(latest, keymap)
-        self._line("alarm").show(*pieces, under=ground)
+        self._line("swing").show(*views.swing(self.session, one))
+        self._line("notes").show(*views.notes(self.session, shown, one))
+        told_first = views.alarm_line(latest, self.session.units, keymap)
+        self._line("alarm").show(*told_first.pieces, right=told_first.hint, under=told_first.under)
         if told(latest) != self._told:
             self._told = told(latest)
             self._line("health").show(*health_line(latest))
@@ -129,14 +139,26 @@ class WatchScreen(RunScreen):
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms, live=latest.mode == "live")
 
-    def _show_if_any(self, line: TextLine, pieces: tuple[Piece, ...]) -> None:
-        """Give a line the rows that its words need, three at most, and none without words."""
-        line.display = bool(pieces)
-        words = "".join(text for text, _ in pieces)
-        rows = min(len(wrapped(words, self.size.width, self.size.width)), 3)
-        if line.styles.height is None or line.styles.height.value != rows:
-            line.styles.height = rows
-        line.show(*pieces)
+    FOOT = "keys"
+    """The line at the bottom."""
+
+    def _share(self) -> None:
+        """Give each line the rows that its words need, as far as there are any, and the rest to the pictures."""
+        width, height = self.size
+        alarmed = any(one.state in words.WANTS_ANSWER for one in self.latest.alarms)
+        wants = []
+        for name, most in (_LINES if alarmed else _CALM).items():
+            rows = 1 if name == "keys" else self._line(name).rows_at(width)
+            wants.append((self.FOOT if name == "keys" else name, min(rows, most)))
+        shares = shared(height - _LOWER * self.query_one("#lower").display, wants, whole=_WHOLE)
+        for name, rows in shares.lines.items():
+            found = self.query_one(f"#{name}")
+            if isinstance(found, TextLine):
+                found.take(rows)
+            else:
+                _set(found, shown=rows > 0)
+        _set(self.query_one("#figures"), shown=shares.figures)
+        _set(self.query_one("#evidence"), shown=shares.evidence)
 
     def _paint_evidence(self, shown: Snapshot, one: views.Subject) -> None:
         session, sight = self.session, self.sight
@@ -231,3 +253,13 @@ class WatchScreen(RunScreen):
             return
         self.held = None if self.held is not None else self.latest
         self.paint()
+
+
+_LOWER = 10
+"""Rows of the strip, the alarms and the feed side by side, where the stylesheet shows them."""
+
+
+def _set(widget: Widget, *, shown: bool) -> None:
+    """Show or hide a part, without a new layout where nothing changes."""
+    if widget.display is not shown:
+        widget.display = shown

@@ -34,6 +34,8 @@ _PERIOD = 0.5  # s between looks for the parent
 class ViewScreen(WatchScreen, inherit_bindings=False):
     """The watch screen without a key."""
 
+    FOOT = "view-only"
+
     def compose(self) -> ComposeResult:
         """Put a line that says so in place of the keys."""
         yield from super().compose()

@@ -1,11 +1,12 @@
 """The verb that shows a recorded run again: `replay`."""
 
+from contextlib import closing
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
-from eastfall.tui.verbs.options import an_input
+from eastfall.tui.verbs.options import an_input, readers_units
 
 if TYPE_CHECKING:
     from eastfall.io.replay import Replay
@@ -36,10 +37,11 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
 def _plainly(found: "Replay") -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(click.echo, found.site.assumptions.run.kind)
-    update = found.step()
-    while not found.ended:
-        lines.take(update)
+    lines = PlainLines(click.echo, found.site.assumptions.run.kind, units=readers_units())
+    with closing(found):
         update = found.step()
-    lines.take(update)
+        while not found.ended:
+            lines.take(update)
+            update = found.step()
+        lines.take(update)
     lines.end(update)

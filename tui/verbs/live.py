@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING
 import click
 
 from eastfall.physics.errors import EastfallError
-from eastfall.tui.verbs.options import an_input, into
+from eastfall.tui.verbs.options import an_input, into, readers_units
 
 if TYPE_CHECKING:
     from eastfall.io.run import Health, Run, RunUpdate
@@ -129,7 +129,7 @@ def _plainly(
 ) -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(click.echo, site.assumptions.run.kind)
+    lines = PlainLines(click.echo, site.assumptions.run.kind, units=readers_units())
     with _recorded(site, links, folder, _cleared(site, shaft_clear)) as run, _signals() as stopped, run:
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):

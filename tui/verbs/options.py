@@ -6,9 +6,13 @@ import os
 import sys
 from collections.abc import Callable, Sequence
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import click
+
+if TYPE_CHECKING:
+    from eastfall.tui.preferences import Preferences
+    from eastfall.tui.units import Units
 
 RUNS_FOLDER = Path("eastfall-runs")
 """Where runs are recorded unless told otherwise: beside the person's work, in plain sight."""
@@ -32,13 +36,24 @@ as_format = click.option(
 
 def runs_folder() -> Path:
     """Return where runs are recorded: as the person's settings say, or beside the work."""
-    from eastfall.tui.preferences import Remembered  # noqa: PLC0415 (only for a run that is recorded)
+    named = _settings().runs_folder
+    return Path(named).expanduser() if named else RUNS_FOLDER
+
+
+def readers_units() -> "Units":
+    """Return what lengths are told in, line by line, as the person's settings say."""
+    from eastfall.tui.units import UNITS  # noqa: PLC0415 (as below)
+
+    return UNITS[_settings().units]
+
+
+def _settings() -> "Preferences":
+    from eastfall.tui.preferences import Remembered  # noqa: PLC0415 (only for a run)
 
     remembered = Remembered.of(os.environ)
     if remembered.complaint:
         click.echo(remembered.complaint, err=True)
-    named = remembered.now.runs_folder
-    return Path(named).expanduser() if named else RUNS_FOLDER
+    return remembered.now
 
 
 into = click.option(

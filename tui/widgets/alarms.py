@@ -52,10 +52,10 @@ class AlarmList(CellWidget):
         sheet.text(0, 0, title, Role.STRONG)
         row = 1
         for one in in_order(self.alarms):
-            for index, part in enumerate(wrapped(words.alarm(one), sheet.width, sheet.width - 2)):
+            told = self.letters(words.alarm(one, self.units))
+            for index, part in enumerate(wrapped(told, sheet.width, sheet.width - 2)):
                 sheet.text(2 if index else 0, row, part, role_of(one))
                 row += 1
         if row > sheet.height:
-            sheet.text(
-                0, sheet.height - 1, "more below: acknowledge these first".ljust(sheet.width), Role.STRONG
-            )
+            more = f"more below: {keymap_of(self.app)['watch.alarms']} lists all"
+            sheet.text(0, sheet.height - 1, more.ljust(sheet.width), Role.STRONG)

@@ -11,7 +11,7 @@ from textual.screen import Screen, ScreenResultType
 from textual.strip import Strip
 from textual.widget import Widget
 
-from eastfall.tui.glyphs import BRAILLE, Glyphs
+from eastfall.tui.glyphs import BRAILLE, Glyphs, in_ascii
 from eastfall.tui.raster import FILLER, Cells, Raster
 from eastfall.tui.roles import CLASS_OF, COMPONENT_CLASSES, Role
 from eastfall.tui.units import METRIC, Units
@@ -57,6 +57,10 @@ class CellWidget(Widget):
     def units(self) -> Units:
         """What lengths are shown in."""
         return getattr(self.app, "units", METRIC)
+
+    def letters(self, text: str) -> str:
+        """Return a text in the letters that this terminal shows, as long as it will be."""
+        return in_ascii(text) if self.glyphs.name == "ascii" else text
 
     def draw(self, sheet: Raster) -> None:
         """Put the picture on a sheet of the widget's size."""

@@ -97,7 +97,8 @@ class HealthList(CellWidget):
         for pieces in _lines(self.snapshot.health, self.snapshot.mode):
             column = 0
             for text, role in pieces:
-                for index, part in enumerate(wrapped(text, sheet.width - column, sheet.width - 2)):
+                told = self.letters(text)
+                for index, part in enumerate(wrapped(told, sheet.width - column, sheet.width - 2)):
                     column, row = (2, row + 1) if index else (column, row)
                     column += sheet.text(column, row, part, role)
             row += 1

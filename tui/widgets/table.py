@@ -57,7 +57,7 @@ class LongTable(ScrollView, can_focus=True):
 
     def __init__(self, head: str, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
         super().__init__(id=id)
-        self._head = head
+        self.head = head
         self._count = 0
         self._format: Formatter = lambda _: ("", Role.TEXT)
         self.cursor = 0
@@ -70,7 +70,7 @@ class LongTable(ScrollView, can_focus=True):
     def show(self, count: int, formatter: Formatter) -> None:
         """Show `count` rows; the cursor stays on the last one until it is moved off."""
         self._count, self._format = count, formatter
-        self.virtual_size = Size(max(len(self._head), 1), count + 1)
+        self.virtual_size = Size(max(len(self.head), 1), count + 1)
         if self.follows:
             self.cursor = max(0, count - 1)
         self.cursor = min(self.cursor, max(0, count - 1))
@@ -101,7 +101,7 @@ class LongTable(ScrollView, can_focus=True):
         """Return the head, or the row that is scrolled to this line."""
         width = self.size.width
         if y == 0:
-            return self._strip(self._head, Role.STRONG, width)
+            return self._strip(self.head, Role.STRONG, width)
         row = int(self.scroll_offset.y) + y - 1
         if row >= self._count:
             return Strip.blank(width, self.rich_style)

@@ -48,7 +48,7 @@ class Reasons(CellWidget):
     def draw(self, sheet: Raster) -> None:
         """Write them."""
         words, role = self.head
-        lines = [(one, role) for one in wrapped(words, sheet.width, sheet.width)]
+        lines = [(one, role) for one in wrapped(self.letters(words), sheet.width, sheet.width)]
         lines += [(f"  {one}", Role.TEXT) for one in self.reasons]
         if len(lines) > sheet.height:
             left = len(lines) - sheet.height + 1
