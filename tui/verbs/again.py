@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from eastfall.tui.verbs.options import an_input, readers_units
+from eastfall.tui.verbs.options import Number, an_input, readers_units
 
 if TYPE_CHECKING:
     from eastfall.io.replay import Replay
@@ -15,9 +15,7 @@ if TYPE_CHECKING:
 @click.command()
 @click.argument("log", type=an_input)
 @click.option("--site", type=an_input, help="Another site file: what if? The log is not changed.")
-@click.option(
-    "--speed", type=click.FloatRange(min=0.1), default=1.0, show_default=True, help="Run seconds a second."
-)
+@click.option("--speed", type=Number(min=0.1), default=1.0, show_default=True, help="Run seconds a second.")
 @click.option("--follow", is_flag=True, help="Go on with what another process is recording.")
 @click.option("--plain", is_flag=True, help="Lines of text, at once, instead of the dashboard.")
 def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool) -> None:
@@ -37,7 +35,7 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
 def _plainly(found: "Replay") -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(click.echo, found.site.assumptions.run.kind, units=readers_units())
+    lines = PlainLines(say, found.site.assumptions.run.kind, units=readers_units())
     with closing(found):
         update = found.step()
         while not found.ended:

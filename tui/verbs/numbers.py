@@ -9,6 +9,8 @@ import click
 
 from eastfall.tui import words
 from eastfall.tui.verbs.options import (
+    Number,
+    above_nothing,
     an_input,
     an_input_or_folder,
     as_format,
@@ -42,7 +44,7 @@ class _Depths(click.ParamType[tuple[float, ...]]):
 
 @click.command()
 @click.argument("site", type=an_input)
-@click.option("--every", type=click.FloatRange(min=0.001), metavar="M", help="A row every so many metres.")
+@click.option("--every", type=Number(min=0.001), metavar="M", help="A row every so many metres.")
 @click.option("--at", type=_Depths(), help="Rows at these depths.")
 @click.option("--budget", is_flag=True, help="What each input contributes to the uncertainty, instead.")
 @click.option("--explore", is_flag=True, help="A screen to change the inputs and see the curves move.")
@@ -51,20 +53,20 @@ class _Depths(click.ParamType[tuple[float, ...]]):
 )
 @click.option(
     "--apart",
-    type=click.FloatRange(min=0.0, min_open=True),
+    type=above_nothing,
     metavar="M",
     help="With --line: a second line this far off.",
 )
-@click.option("--toward", type=float, default=0.0, metavar="DEG", help="With --apart: its azimuth.")
+@click.option("--toward", type=Number(), default=0.0, metavar="DEG", help="With --apart: its azimuth.")
 @click.option(
     "--decay",
-    type=click.FloatRange(min=0.0, min_open=True),
+    type=above_nothing,
     metavar="S",
     help="With --line: a swing falls to 1/e in this time.",
 )
 @click.option(
     "--small",
-    type=click.FloatRange(min=0.0, min_open=True),
+    type=above_nothing,
     default=1.0,
     metavar="MM",
     show_default=True,
@@ -116,10 +118,10 @@ def expect(
         print_json(predicted.shape)
         return
     if form == "table":
-        click.echo(predicted.heading)
+        say(predicted.heading)
     print_rows(predicted.rows, form)
     for note in predicted.notes if form == "table" else ():
-        click.echo(note)
+        say(note)
 
 
 def _line(
@@ -143,7 +145,7 @@ def _line(
 @click.option("--site", type=an_input, help="Another site file; needed for a plain-text capture.")
 @click.option(
     "--interval",
-    type=click.FloatRange(min=0.0, min_open=True),
+    type=above_nothing,
     metavar="S",
     help="Between the lines of a capture without time_s.",
 )
@@ -179,10 +181,10 @@ def reduce(
         print_json(shape)
     else:
         if form == "table":
-            click.echo(_heading(found))
+            say(_heading(found))
         print_rows(_stations(shape), form)
         for line in _footing(found, shape) if form == "table" else ():
-            click.echo(line)
+            say(line)
     click.get_current_context().exit(1 if found.exceeded or found.seal_state == "changed" else 0)
 
 
@@ -199,7 +201,7 @@ def _many(
         print_rows((list(SUMMARY_KEYS), [[one[name] for name in SUMMARY_KEYS] for one in found]), form)
     unusable = [one for one in found if one["error"]]
     for one in unusable:
-        click.echo(f"eastfall: {one['error']}", err=True)
+        say(f"eastfall: {one['error']}", err=True)
     click.get_current_context().exit(2 if unusable else int(any(one["exceeded"] for one in found)))
 
 

@@ -5,6 +5,7 @@ import json
 import os
 import sys
 from collections.abc import Callable, Sequence
+from math import isfinite, nan
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -23,6 +24,36 @@ Table = tuple[Sequence[str], Sequence[Sequence[Any]]]
 an_input = click.Path(path_type=Path, dir_okay=False)
 an_input_or_folder = click.Path(path_type=Path)
 a_folder = click.Path(path_type=Path, file_okay=False)
+
+
+class Number(click.FloatRange):
+    """A finite number within bounds; the library's own range lets "nan" through, which no bound holds back."""
+
+    name = "number"
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> float:
+        """Read it."""
+        try:
+            number = float(value)
+        except ValueError:
+            number = nan
+        if not (isfinite(number) and self._holds(number)):
+            self.fail(f"{str(value)!r}; expected {self._expected()}", param, ctx)
+        return number
+
+    def _holds(self, number: float) -> bool:
+        above = self.min is None or (number > self.min if self.min_open else number >= self.min)
+        return above and (self.max is None or number <= self.max)
+
+    def _expected(self) -> str:
+        if self.min is None:
+            return "a number"
+        if self.max is not None:
+            return f"a number from {self.min:g} to {self.max:g}"
+        return f"a number more than {self.min:g}" if self.min_open else f"a number of at least {self.min:g}"
+
+
+above_nothing = Number(min=0.0, min_open=True)
 
 as_format = click.option(
     "--format",
@@ -52,7 +83,7 @@ def _settings() -> "Preferences":
 
     remembered = Remembered.of(os.environ)
     if remembered.complaint:
-        click.echo(remembered.complaint, err=True)
+        say(remembered.complaint, err=True)
     return remembered.now
 
 
@@ -96,12 +127,12 @@ def counted() -> Callable[[int, int], None] | None:
 
 def _count(done: int, total: int) -> None:
     """Say how far it is, and wipe it when it is done."""
-    click.echo(f"\r{done} of {total} runs" if done < total else "\r" + " " * 40 + "\r", nl=False, err=True)
+    say(f"\r{done} of {total} runs" if done < total else "\r" + " " * 40 + "\r", nl=False, err=True)
 
 
 def print_json(value: object) -> None:
     """Write JSON, with a null for what is absent, to standard output alone."""
-    click.echo(json.dumps(value, ensure_ascii=False, allow_nan=False, indent=1))
+    say(json.dumps(value, ensure_ascii=False, allow_nan=False, indent=1))
 
 
 def print_rows(table: Table, form: str) -> None:
@@ -114,7 +145,7 @@ def print_rows(table: Table, form: str) -> None:
     head, rows = list(table[0]), [[_cell(one) for one in row] for row in table[1]]
     widths = [max([len(name), *(len(row[at]) for row in rows)]) for at, name in enumerate(head)]
     for row in [head, *rows]:
-        click.echo("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
+        say("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
 
 
 def _cell(value: object) -> str:

@@ -5,7 +5,7 @@ from typing import Any
 
 import click
 
-from eastfall.tui.verbs.options import an_input, as_format, print_json, print_rows
+from eastfall.tui.verbs.options import Number, above_nothing, an_input, as_format, print_json, print_rows
 
 
 @click.command()
@@ -23,14 +23,14 @@ from eastfall.tui.verbs.options import an_input, as_format, print_json, print_ro
 )
 @click.option(
     "--rate",
-    type=click.FloatRange(min=0.0, min_open=True),
+    type=above_nothing,
     default=10.0,
     show_default=True,
     help="Readings a second.",
 )
 @click.option(
     "--pace",
-    type=click.FloatRange(min=0.0, min_open=True),
+    type=above_nothing,
     default=1.0,
     show_default=True,
     help="Emulated seconds a second.",
@@ -38,15 +38,13 @@ from eastfall.tui.verbs.options import an_input, as_format, print_json, print_ro
 @click.option("--seed", type=int, default=1, show_default=True, help="Everything random follows from it.")
 @click.option(
     "--broken",
-    type=click.FloatRange(0.0, 1.0),
+    type=Number(0.0, 1.0),
     default=0.0,
     show_default=True,
     help="Share of broken lines in between.",
 )
 @click.option("--errors", is_flag=True, help="Let the instrument err beyond what the site states.")
-@click.option(
-    "--until", type=click.FloatRange(min=0.0), metavar="S", help="Emulated time after which it falls silent."
-)
+@click.option("--until", type=Number(min=0.0), metavar="S", help="Emulated time after which it falls silent.")
 @click.option("--once", is_flag=True, help="End when everything has been shown once.")
 @click.option(
     "--report", type=click.Path(path_type=Path), help="At the end: what was sent and what is true (JSON)."
@@ -94,7 +92,7 @@ def ports(form: str) -> None:
         print_json({"ports": [{"device": device, "what": what} for device, what in rows]})
         return
     if not rows and form == "table":
-        click.echo("no serial port found", err=True)
+        say("no serial port found", err=True)
         return
     print_rows((["device", "what"], [list(one) for one in rows]), form)
 
@@ -139,8 +137,8 @@ def selfcheck(form: str) -> None:
     else:
         for name, mark, source, unit, expected, value, difference, ok in rows:
             head = "ok " if ok else "OFF"
-            click.echo(
+            say(
                 f"{head} {name}: {value:.9g} {unit}, {mark} {expected:.9g} ({difference:+.1e}); {source}"
             )
-        click.echo(f"{len(rows)} checks, {bad} off")
+        say(f"{len(rows)} checks, {bad} off")
     click.get_current_context().exit(1 if bad else 0)
