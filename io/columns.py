@@ -124,12 +124,13 @@ class ColumnsDecoder:
 
     def _read_at_once(self, data: bytes, table: Table, codes: Codes) -> None:
         """Read what is plain all at once, and the rest line by line."""
-        fields, ends = decimals.fields_of(data, self._delimiter[0])
-        counts = ends.copy()
-        counts[1:] -= ends[:-1]
-        fits = (counts == len(self._columns)) & (codes == 0)
+        fields = decimals.fields_of(data, self._delimiter[0])
+        counts = decimals.counts_of(fields, len(codes), len(self._columns))
+        fits = codes == 0 if counts is None else (counts == len(self._columns)) & (codes == 0)
         all_fit = bool(fits.all())
-        kept = fields if all_fit else decimals.chosen(fields, np.repeat(fits, counts))
+        kept = fields
+        if not all_fit:
+            kept = decimals.chosen(fields, np.repeat(fits, len(self._columns) if counts is None else counts))
         if not self._kept.all():
             kept = decimals.chosen(kept, np.tile(self._kept, int(np.count_nonzero(fits))))
         if b" " in data or b"\t" in data:
@@ -143,10 +144,7 @@ class ColumnsDecoder:
         done = np.zeros(len(codes), dtype=bool)
         done[fits] = plain.reshape(values.shape).all(axis=1)
         which = np.flatnonzero(~done & (codes == 0)).tolist()
-        stops = fields.stops[ends - 1] - decimals.LEAD
-        begins = np.concatenate([[0], stops[:-1] + 1])
-        lines = [data[begins[one] : stops[one]] for one in which]
-        self._read_lines(lines, which, table, codes)
+        self._read_lines(decimals.lines_of(data, fields, which), which, table, codes)
 
     def _read_lines(self, lines: list[bytes], which: list[int], table: Table, codes: Codes) -> None:
         """Read lines one by one; `which` are their rows in the table."""

@@ -54,7 +54,7 @@ class Fields:
     stops: Places
 
 
-def fields_of(data: bytes, delimiter: int) -> tuple[Fields, Places]:
+def fields_of(data: bytes, delimiter: int) -> Fields:
     """Find the fields of whole lines.
 
     Parameters
@@ -66,10 +66,8 @@ def fields_of(data: bytes, delimiter: int) -> tuple[Fields, Places]:
 
     Returns
     -------
-    fields : Fields
+    Fields
         All of them, in order.
-    ends : ndarray, shape (n,)
-        For each line, how many fields there are up to its end, from the start of the data.
     """
     buffer = bytes(LEAD) + data
     codes = np.frombuffer(buffer, np.uint8)
@@ -80,16 +78,36 @@ def fields_of(data: bytes, delimiter: int) -> tuple[Fields, Places]:
     marks = np.flatnonzero(marked)
     is_point = codes[marks] == ord(".")
     usual = marks.size % 2 == 0 and is_point[0::2].all() and not is_point[1::2].any()  # one in each field
-    order = np.arange(1, marks.size, 2) if usual else np.flatnonzero(~is_point)
-    stops = marks[order]
+    if usual:
+        points, stops = marks[0::2], marks[1::2]
+    else:
+        order = np.flatnonzero(~is_point)
+        stops = marks[order]
+        before = order - 1  # for the first field the last mark of all, a line feed
+        points = np.where(is_point[before], marks[before], stops)
     starts = np.empty_like(stops)
     starts[:1] = LEAD
     np.add(stops[:-1], 1, out=starts[1:])
-    points = marks[order - 1]  # for the first field perhaps the last mark of all, a line feed
-    if not usual:
-        points = np.where(is_point[order - 1] & (points >= starts), points, stops)
-    ends = np.flatnonzero(codes[stops] == ord("\n")) + 1
-    return Fields(buffer, codes, starts, points, stops), ends
+    return Fields(buffer, codes, starts, points, stops)
+
+
+def counts_of(fields: Fields, lines: int, usual: int) -> Places | None:
+    """Return how many fields each of the lines has, shape (lines,); None where each has the usual number."""
+    if fields.stops.size == lines * usual and _ends_line(fields)[usual - 1 :: usual].all():
+        return None
+    return np.diff(np.flatnonzero(_ends_line(fields)), prepend=-1)
+
+
+def lines_of(data: bytes, fields: Fields, which: list[int]) -> list[bytes]:
+    """Return some of the lines that the fields were found in."""
+    stops = fields.stops[_ends_line(fields)] - LEAD
+    begins = np.concatenate([[0], stops[:-1] + 1])
+    return [data[begins[one] : stops[one]] for one in which]
+
+
+def _ends_line(fields: Fields) -> NDArray[np.bool_]:
+    found: NDArray[np.bool_] = fields.codes[fields.stops] == ord("\n")
+    return found
 
 
 def chosen(fields: Fields, which: NDArray[np.bool_]) -> Fields:

@@ -5,7 +5,7 @@ import pytest
 from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
-from eastfall.io.decimals import fields_of, plain_numbers, trimmed
+from eastfall.io.decimals import counts_of, fields_of, plain_numbers, trimmed
 
 DIGITS = st.text("0123456789", max_size=9)
 PLAIN = st.builds(
@@ -31,8 +31,9 @@ def test_what_is_taken_for_plain_is_float_to_the_last_bit(words: list[str]) -> N
     """A field that is called plain is a decimal number and has the value of `float`; no plain number is refused."""
     words = [one.replace(",", "") for one in words]
     data = ",".join(words).encode("latin-1") + b"\n"
-    fields, ends = fields_of(data, ord(","))
-    assert ends.tolist() == [len(words)]
+    fields = fields_of(data, ord(","))
+    assert counts_of(fields, 1, len(words)) is None
+    assert counts_of(fields, 1, len(words) + 1).tolist() == [len(words)]
     values, plain = plain_numbers(fields)
     for word, value, good in zip(words, values.tolist(), plain.tolist(), strict=True):
         if good:
@@ -49,8 +50,8 @@ def test_blanks_around_a_field_are_trimmed(words: list[tuple[str, str, str]]) ->
     """Up to 24 blanks on either side change nothing; a wider field is left to the careful reader, never misread."""
     data = ",".join("".join(one) for one in words).encode() + b"\n"
     bare = ",".join(one[1] for one in words).encode() + b"\n"
-    values, plain = plain_numbers(trimmed(fields_of(data, ord(","))[0]))
-    expected, good = plain_numbers(fields_of(bare, ord(","))[0])
+    values, plain = plain_numbers(trimmed(fields_of(data, ord(","))))
+    expected, good = plain_numbers(fields_of(bare, ord(",")))
     narrow = np.array([max(len(one[0]), len(one[2])) <= 24 for one in words])
     assert not (plain & ~good).any()
     assert np.array_equal(plain[narrow], good[narrow])
@@ -68,6 +69,6 @@ def test_every_short_decimal_reads_as_float_does() -> None:
         for a, n, b in zip(whole, places, rng.integers(0, 10**8, 100_000), strict=True)
     ]
     words = [one for one in words if int(one.replace(".", "")) < 2**53]
-    values, plain = plain_numbers(fields_of("\n".join(words).encode() + b"\n", ord(","))[0])
+    values, plain = plain_numbers(fields_of("\n".join(words).encode() + b"\n", ord(",")))
     assert plain.all()
     assert values.tobytes() == np.array([float(one) for one in words]).tobytes()
