@@ -8,10 +8,14 @@ A leading reading waits until its partners have spoken at or after its instant. 
 either side of it are more than `gap` apart, or there is none before it, the partner is missing: a depth then makes the
 reading a counted fault, any other channel stays NaN and is counted. So the answer depends on the times alone, not on
 how lines were cut into blocks or in which order the links' blocks came.
+
+A bad line of any link waits likewise until every reading that came before it has gone on: what follows from it (when
+lines cannot be read too often) is dated by the reading before it, and that must not depend on the waiting.
 """
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from math import inf
 
 import numpy as np
 from numpy.typing import NDArray
@@ -40,8 +44,10 @@ class Joined:
     """What can be said now."""
 
     readings: Readings
-    missing: Column = field(default_factory=lambda: _NO_TIMES)
-    """Host times of the leading readings that had no depth [s]; they are counted faults."""
+    rejected: Column = field(default_factory=lambda: _NO_TIMES)
+    """Host times of bad lines, and of leading readings without a depth, that no earlier reading can follow [s]."""
+    missing: int = 0
+    """Leading readings that had no depth; they are counted faults."""
     bare: int = 0
     """Readings that are handed on without some channel of a partner."""
 
@@ -73,13 +79,20 @@ class Join:
         }
         self._latency = links[self._leader].latency if links else 0.0
         self._waiting = Readings.none()
+        self._bad = _NO_TIMES
+        self._heard = -inf
 
     @property
     def pending(self) -> int:
         """Leading readings that wait for a partner."""
         return len(self._waiting)
 
-    def push(self, link: int, readings: Readings) -> Joined:
+    @property
+    def oldest(self) -> float:
+        """Host time of the first leading reading that waits [s]; infinite if none does."""
+        return float(self._waiting.host_time[0]) if len(self._waiting) else inf
+
+    def push(self, link: int, readings: Readings, rejected: Column = _NO_TIMES) -> Joined:
         """Take readings of one link; return what is complete.
 
         Parameters
@@ -88,13 +101,18 @@ class Join:
             Which link they are from.
         readings : Readings
             In the order of arrival.
+        rejected : ndarray
+            Host times of the link's bad lines among them [s].
         """
         if not self._partners:
-            return Joined(readings=readings)
-        if link == self._leader:
-            self._waiting = Readings.joined([self._waiting, readings])
-        else:
+            return Joined(readings=readings, rejected=rejected)
+        if rejected.size:
+            self._bad = np.concatenate([self._bad, rejected])
+        if link != self._leader:
             self._partners[link].add(readings)
+        elif len(readings):
+            self._waiting = Readings.joined([self._waiting, readings])
+            self._heard = max(self._heard, float(readings.host_time[-1]))
         spoken = min(one.latest for one in self._partners.values())
         ready = int(np.searchsorted(self._instants(), spoken, side="right"))
         return self._complete(max(ready, len(self._waiting) - HELD))
@@ -107,14 +125,16 @@ class Join:
         host_time : float
             Now [s]; every line that arrived before has been pushed.
         """
-        if not len(self._waiting):
+        if not self._partners:
             return Joined(readings=Readings.none())
+        self._heard = max(self._heard, host_time)
         slowest = max(one.latency for one in self._partners.values())
         late = np.searchsorted(self._instants(), host_time - slowest - self._gap, side="left")
         return self._complete(int(late))
 
     def close(self) -> Joined:
         """End: what still waits goes without its partners."""
+        self._heard = inf
         return self._complete(len(self._waiting))
 
     def _instants(self) -> Column:
@@ -123,7 +143,7 @@ class Join:
     def _complete(self, count: int) -> Joined:
         """Take the first `count` waiting readings and give them their partners' channels."""
         if count <= 0:
-            return Joined(readings=Readings.none())
+            return Joined(readings=Readings.none(), rejected=self._settled())
         instants = self._instants()[:count]
         data = self._waiting.data[:, :count].copy()
         self._waiting = self._waiting[count:]
@@ -137,10 +157,24 @@ class Join:
                 kept &= ~lacking
             else:
                 bare |= lacking
-        missing = data[CHANNELS.index("host_time"), ~kept]
+        if not kept.all():
+            self._bad = np.concatenate([self._bad, data[CHANNELS.index("host_time"), ~kept]])
         return Joined(
-            readings=Readings(data[:, kept]), missing=missing, bare=int(np.count_nonzero(bare & kept))
+            readings=Readings(data[:, kept]),
+            rejected=self._settled(),
+            missing=count - int(np.count_nonzero(kept)),
+            bare=int(np.count_nonzero(bare & kept)),
         )
+
+    def _settled(self) -> Column:
+        """Take out the bad lines that no reading from before them can follow any more."""
+        if not self._bad.size:
+            return _NO_TIMES
+        bad = np.sort(self._bad)
+        count = int(np.searchsorted(bad, min(self.oldest, self._heard), side="left"))
+        count = max(count, bad.size - HELD) if self._heard < inf else bad.size
+        self._bad = bad[count:]
+        return bad[:count]
 
 
 def _channels(settings: LinkSettings) -> frozenset[str]:

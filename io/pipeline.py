@@ -5,7 +5,7 @@ Decoding is `io.forms`, joining links `io.join`, and what readings mean is `phys
 
 from collections import Counter
 from collections.abc import Iterable
-from math import isfinite
+from math import inf, isfinite, nextafter
 
 import numpy as np
 
@@ -91,7 +91,9 @@ class Pipeline:
         """Let time pass [s] without an arrival: only brings forward what is settled whatever comes next."""
         if not self.armed:
             return merged(())
-        return merged([self._feed(self._join.tick(host_time)), self.survey.tick(host_time)])
+        joined = self._feed(self._join.tick(host_time))
+        # A reading that waits for its partner is no silence: for the engine, time stands just before it.
+        return merged([joined, self.survey.tick(min(host_time, nextafter(self._join.oldest, -inf)))])
 
     def close(self, host_time: float) -> Findings:
         """End the run at `host_time` [s], NaN for a capture; as the "end" event does."""
@@ -113,21 +115,18 @@ class Pipeline:
             self.set_aside += len(decoded.readings)
             return merged(())
         self.rejected += decoded.rejected.size
-        return self._feed(self._join.push(block.link, decoded.readings), decoded.rejected)
+        return self._feed(self._join.push(block.link, decoded.readings, decoded.rejected))
 
-    def _feed(self, joined: Joined, rejected: np.ndarray | None = None) -> Findings:
-        if joined.missing.size:
-            self.faults[NO_DEPTH] += joined.missing.size
-            self.rejected += joined.missing.size
-            rejected = joined.missing if rejected is None else np.concatenate([rejected, joined.missing])
+    def _feed(self, joined: Joined) -> Findings:
+        if joined.missing:
+            self.faults[NO_DEPTH] += joined.missing
+            self.rejected += joined.missing
         if joined.bare:
             self.faults[NO_PARTNER] += joined.bare
         self.frames += len(joined.readings)
-        if rejected is None:
-            rejected = np.empty(0)
-        if not len(joined.readings) and not rejected.size:
+        if not len(joined.readings) and not joined.rejected.size:
             return merged(())
-        return self.survey.feed(joined.readings, rejected)
+        return self.survey.feed(joined.readings, joined.rejected)
 
     # -- events ----------------------------------------------------------------------------------------------------
 
@@ -154,7 +153,7 @@ class Pipeline:
             self.set_aside += 1
             return merged(())
         self.frames += 1
-        return self.survey.mark(event.time, *values)
+        return merged([self.tick(event.time), self.survey.mark(event.time, *values)])
 
     def _applied(self, event: RunEvent) -> Findings:
         try:

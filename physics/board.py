@@ -137,8 +137,10 @@ class Board:
             alarm = self._on_host[name] = self._new(name)
         if alarm.standing == on:
             return []
+        # What fell due before keeps the words that it had then.
+        due = self._dated(alarm.tick(host_time), name, self._messages.get(name, ""), rows)
         self._messages[name] = message
-        return self._dated(alarm.set(host_time, on=on), name, message, rows)
+        return due + self._dated(alarm.set(host_time, on=on), name, message, rows)
 
     def pass_time(self, host_time: float, rows: Array | None = None) -> list[AlarmChange]:
         """Let the host's clock go on to a time [s], past the readings `rows` as for `turn`."""
@@ -161,11 +163,11 @@ class Board:
     def _newest_at(self, host_time: float, rows: Array | None) -> Array:
         if rows is None or np.isnan(rows[1, -1]):
             return self.newest
-        known = rows[:, int(np.isnan(rows[1, 0])) :]
-        at = int(np.searchsorted(known[1], host_time))
-        if at == known.shape[1] or known[1, at] != host_time:
+        before = int(np.isnan(rows[1, 0]))  # the run before its first reading
+        at = before + int(np.searchsorted(rows[1, before:], host_time))
+        if at == rows.shape[1] or rows[1, at] != host_time:
             at = max(at - 1, 0)
-        return known[:, at]
+        return rows[:, at]
 
     # -- by hand ---------------------------------------------------------------------------------------------------
 

@@ -46,9 +46,10 @@ class FeedWatch:
             return []
         rows = np.concatenate([self._board.newest[:, None], readings.data[:3]], axis=1)
         changes = self._silences(rows) if self._may_be_silent(readings) else []
+        changes += self._unreadable(rejected, float(rows[1, -1]), rows)
         changes += self._board.pass_time(float(rows[1, -1]), rows)
         self._board.newest = rows[:, -1].copy()
-        return changes + self._unreadable(rejected, float(rows[1, -1]), rows)
+        return changes
 
     def _may_be_silent(self, readings: Readings) -> bool:
         longest = steps_from(self._board.newest[1], readings.host_time).max()

@@ -209,7 +209,7 @@ class Survey:
         self._board.keep(changes)
         return Findings(rows=Rows.none(), stations=stations, alarms=tuple(changes))
 
-    # -- time and people -------------------------------------------------------------------------------------------
+    # -- time and people: whoever hands on a word lets time pass up to it first ---------------------------------------
 
     def tick(self, host_time: float) -> Findings:
         """Let time pass without a reading.
@@ -239,13 +239,11 @@ class Survey:
             Offset from the run's reference line [m].
         """
         time, host, _ = self._board.newest
-        ahead = self.tick(host_time)
         apart = host - time if np.isfinite(host - time) else 0.0
         reading = Readings.of(
             time=[host_time - apart], host_time=[host_time], depth=[depth], east=[east], north=[north]
         )
-        found = self.feed(reading)
-        return Findings(rows=found.rows, stations=found.stations, alarms=ahead.alarms + found.alarms)
+        return self.feed(reading)
 
     def condition(self, host_time: float, name: str, on: bool, message: str) -> Findings:
         """Take a fault that only the edge knows, such as a lost link.
@@ -261,7 +259,6 @@ class Survey:
         message : str
             What it is about.
         """
-        self.tick(host_time)
         return self._keep((), self._board.turn(name, host_time, on=on, message=message))
 
     def acknowledge(self, host_time: float, name: str, who: str = "") -> Findings:
@@ -281,7 +278,6 @@ class Survey:
         ParameterError
             If there is no such alarm.
         """
-        self.tick(host_time)
         return self._keep((), self._board.acknowledge(host_time, name, who))
 
     def shelve(self, host_time: float, name: str, seconds: float, reason: str, who: str = "") -> Findings:
@@ -292,7 +288,6 @@ class Survey:
         ParameterError
             If there is no such alarm, the time is not positive, or there is no reason.
         """
-        self.tick(host_time)
         return self._keep((), self._board.shelve(host_time, name, seconds, reason, who))
 
     def close(self, host_time: float) -> Findings:

@@ -46,7 +46,7 @@ def test_a_gap_in_the_depth_is_a_fault_and_no_guess() -> None:
     join.push(0, depths((0.25, 1.0), (1.25, 2.0), (1.25 + GAP + 0.5, 9.0), (5.25, 10.0)))
     joined = join.push(1, tilts(1.0, 2.5, 5.0))
     assert joined.readings.host_time.tolist() == [1.0, 5.0]
-    assert joined.missing.tolist() == [2.5]
+    assert (joined.missing, joined.rejected.tolist()) == (1, [2.5])
 
 
 def test_a_tilt_before_the_first_depth_is_missing_its_depth() -> None:
@@ -54,7 +54,8 @@ def test_a_tilt_before_the_first_depth_is_missing_its_depth() -> None:
     join = Join([WINCH, PROBE])
     join.push(1, tilts(0.6))
     joined = join.push(0, depths((1.0, 5.0)))
-    assert (len(joined.readings), joined.missing.tolist()) == (0, [0.6])
+    assert (len(joined.readings), joined.missing) == (0, 1)
+    assert join.close().rejected.tolist() == [0.6]
 
 
 def test_a_depth_at_the_very_instant_needs_no_other() -> None:
@@ -70,9 +71,9 @@ def test_a_silent_partner_is_given_up_when_nothing_near_enough_can_come() -> Non
     join = Join([WINCH, PROBE])
     join.push(0, depths((0.3, 1.0)))
     join.push(1, tilts(1.0, 9.0))
-    assert join.tick(0.5 + GAP + 0.25).missing.tolist() == []
-    assert join.tick(0.51 + GAP + 0.25).missing.tolist() == [1.0]
-    assert join.close().missing.tolist() == [9.0]
+    assert join.tick(0.5 + GAP + 0.25).missing == 0
+    assert join.tick(0.51 + GAP + 0.25).rejected.tolist() == [1.0]
+    assert join.close().rejected.tolist() == [9.0]
 
 
 def test_other_channels_may_be_missing() -> None:
@@ -83,7 +84,7 @@ def test_other_channels_may_be_missing() -> None:
     found = join.close()
     assert found.readings.depth.tolist() == [1.5]
     assert np.isnan(found.readings.column("temperature")).all()
-    assert (found.bare, found.missing.size) == (1, 0)
+    assert (found.bare, found.missing) == (1, 0)
 
 
 def test_azimuth_goes_the_short_way_round_and_a_face_is_held() -> None:
@@ -102,7 +103,23 @@ def test_one_link_is_handed_through() -> None:
     """With a single link nothing waits and nothing is changed."""
     whole = LinkSettings(url="-")
     block = Readings.of(time=[1.0], depth=[2.0], tilt_a=[0.0])
-    assert Join([whole]).push(0, block).readings is block
+    joined = Join([whole]).push(0, block, np.array([7.0]))
+    assert joined.readings is block
+    assert joined.rejected.tolist() == [7.0]
+
+
+def test_a_bad_line_waits_until_no_reading_from_before_it_can_follow() -> None:
+    """A bad winch line of 2.0 s goes on behind the tilt of 1.9 s, whose depth comes only after it."""
+    join = Join([WINCH, PROBE])
+    join.push(0, depths((0.5, 1.0)))
+    assert join.push(0, Readings.none(), np.array([2.0])).rejected.size == 0
+    join.push(1, tilts(1.0, 1.9))
+    assert join.tick(2.1).rejected.size == 0
+    joined = join.push(0, depths((2.4, 5.0)))
+    assert (joined.readings.host_time.tolist(), joined.rejected.tolist()) == ([1.0, 1.9], [2.0])
+    join.push(0, depths((3.5, 6.0)), np.array([3.0]))
+    assert join.tick(3.0).rejected.size == 0
+    assert join.tick(3.1).rejected.tolist() == [3.0]
 
 
 @pytest.mark.parametrize(
@@ -151,7 +168,7 @@ def test_what_is_joined_does_not_depend_on_blocks_or_order(
         found = [join.push(*one) for one in _merge_order(mixed, parts[0], parts[1])]
         found.append(join.close())
         joined = Readings.joined([one.readings for one in found])
-        missing = [time for one in found for time in one.missing.tolist()]
+        missing = [time for one in found for time in one.rejected.tolist()]
         assert len(joined) + len(missing) == len(led)
         results.append((joined.data.tobytes(), missing))
     assert results[0] == results[1] == results[2]

@@ -145,6 +145,65 @@ def test_a_mark_typed_in_is_a_reading_like_any_other_once_the_shaft_is_clear() -
         pipeline.take(event(4.0, "mark", **{**mark, "east_m": "far"}))
 
 
+RUBBISH_OFTEN = GUIDED.replace("feed_silent_s = 2.0", "feed_silent_s = 2.0\nbad_lines_per_minute = 2")
+
+
+def _of_bad_lines(*blocks: LineBlock) -> list[tuple[float, str, float, str]]:
+    pipeline = Pipeline(site(text=RUBBISH_OFTEN))
+    pipeline.take(event(0.0, "condition", name="bad lines", on=False, message=""))
+    pipeline.take(event(0.0, "shelve", name="bad lines", seconds=1.0, reason="wet plug", who=""))
+    for one in blocks:
+        pipeline.take(one)
+    changes = pipeline.survey.result().alarms
+    return [(one.time, one.new, one.depth, one.message) for one in changes if one.name == "bad lines"][1:]
+
+
+@pytest.mark.invariant
+def test_a_shelved_alarm_that_comes_back_is_told_alike_from_one_block_and_from_single_lines() -> None:
+    """Rubbish at 0.4 s and 0.5 s under a shelf of 1 s: raised anew at 1.0 s, with the words and depth of then."""
+    texts = [
+        b"0.1,0,0",
+        b"0.2,0,0",
+        b"0.3,0,0",
+        b"0.4,0,0",
+        b"#",
+        b"#",
+        *(b"%d,0,0" % n for n in range(1, 7)),
+    ]
+    whole = _of_bad_lines(lines(*texts))
+    single = _of_bad_lines(*(lines(one, time=0.1 * n, first=n + 1) for n, one in enumerate(texts)))
+    assert single == whole
+    assert [one[:3] for one in whole] == [(1.0, "normal", 5.0), (1.0, "active", 5.0)]
+    assert all("2 or more unreadable lines" in one[3] for one in whole)
+
+
+@pytest.mark.invariant
+def test_rubbish_before_the_first_reading_is_dated_alike_from_one_block_and_from_single_lines() -> None:
+    """Two bad lines before any reading have no depth and the run's own time, also with readings in the block."""
+    texts = [b"#", b"#", b"1,0,0", b"2,0,0"]
+    found = []
+    for blocks in ([lines(*texts)], [lines(one, time=0.1 * n, first=n + 1) for n, one in enumerate(texts)]):
+        pipeline = Pipeline(site(text=RUBBISH_OFTEN))
+        for one in blocks:
+            pipeline.take(one)
+        found.append(pipeline.survey.result().alarms)
+    assert repr(found[0]) == repr(found[1])
+    assert (found[0][0].time, str(found[0][0].depth)) == (0.1, "nan")
+
+
+def test_a_reading_that_waits_for_its_depth_is_no_silence() -> None:
+    """Winch every 1.9 s and silence after 1 s: the probe speaks all the time, and no alarm is told or stays."""
+    pipeline = Pipeline(site(TWO_LINKS, GUIDED.replace("feed_silent_s = 2.0", "feed_silent_s = 1.0")))
+    for number in range(100):
+        now = round(0.1 * number, 6)
+        if number % 19 == 0:
+            pipeline.take(lines(b"%.2f" % (0.2 * now), time=now, first=number + 1))
+        pipeline.take(lines(b"0.01,0.01", time=now, first=number + 1, link=1))
+        assert pipeline.tick(now + 0.05).alarms == ()
+    assert pipeline.survey.alarms() == ()
+    assert pipeline.frames > 80
+
+
 @pytest.mark.invariant
 @settings(max_examples=25, deadline=None)
 @given(
