@@ -35,7 +35,7 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
 def _plainly(found: "Replay") -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(say, found.site.assumptions.run.kind, units=readers_units())
+    lines = PlainLines(click.echo, found.site.assumptions.run.kind, units=readers_units())
     with closing(found):
         update = found.step()
         while not found.ended:

@@ -93,13 +93,13 @@ def record(
 
     loaded = load_site(site)
     with _recorded(loaded, links, into, _cleared(loaded, shaft_clear)) as run, _signals() as stopped, run:
-        say_path(run.log_path)
+        click.echo(run.log_path)
         sys.stdout.flush()
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
             _tell(run.step(_STEP))
         last = run.stop()
-    say(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
+    click.echo(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
     judge_record(last.health)
 
 
@@ -112,7 +112,7 @@ def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
     # The links are opened before the screen: one that cannot be had is told in one line, here and now.
     with _recorded(site, links, folder, None) as run, run:
         status = run_live(site, run=run, curve=run.pipeline.survey.curve)
-    say_path(run.log_path)
+    click.echo(run.log_path)
     click.get_current_context().exit(status)
 
 
@@ -129,7 +129,7 @@ def _plainly(
 ) -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(say, site.assumptions.run.kind, units=readers_units())
+    lines = PlainLines(click.echo, site.assumptions.run.kind, units=readers_units())
     with _recorded(site, links, folder, _cleared(site, shaft_clear)) as run, _signals() as stopped, run:
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
@@ -137,14 +137,14 @@ def _plainly(
             sys.stdout.flush()
         last = run.stop()
         lines.end(last)
-    say_path(run.log_path)
+    click.echo(run.log_path)
     judge_record(last.health)
 
 
 def judge_record(health: "Health") -> None:
     """End with status 1 where lines that came are not in the log: a full disk, a folder that is gone."""
     if health.log_lost:
-        say(
+        click.echo(
             f"eastfall: {health.log_path}: incomplete, {health.log_lost} lines or events lost", err=True
         )
         click.get_current_context().exit(1)
@@ -187,7 +187,7 @@ def _tell(update: "RunUpdate") -> None:
     """Write alarm changes to standard error as they come."""
     for one in update.findings:
         for change in one.alarms:
-            say(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
+            click.echo(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
 
 
 @contextmanager

@@ -118,10 +118,10 @@ def expect(
         print_json(predicted.shape)
         return
     if form == "table":
-        say(predicted.heading)
+        click.echo(predicted.heading)
     print_rows(predicted.rows, form)
     for note in predicted.notes if form == "table" else ():
-        say(note)
+        click.echo(note)
 
 
 def _line(
@@ -181,10 +181,10 @@ def reduce(
         print_json(shape)
     else:
         if form == "table":
-            say(_heading(found))
+            click.echo(_heading(found))
         print_rows(_stations(shape), form)
         for line in _footing(found, shape) if form == "table" else ():
-            say(line)
+            click.echo(line)
     click.get_current_context().exit(1 if found.exceeded or found.seal_state == "changed" else 0)
 
 
@@ -201,7 +201,7 @@ def _many(
         print_rows((list(SUMMARY_KEYS), [[one[name] for name in SUMMARY_KEYS] for one in found]), form)
     unusable = [one for one in found if one["error"]]
     for one in unusable:
-        say(f"eastfall: {one['error']}", err=True)
+        click.echo(f"eastfall: {one['error']}", err=True)
     click.get_current_context().exit(2 if unusable else int(any(one["exceeded"] for one in found)))
 
 

@@ -83,7 +83,7 @@ def _settings() -> "Preferences":
 
     remembered = Remembered.of(os.environ)
     if remembered.complaint:
-        say(remembered.complaint, err=True)
+        click.echo(remembered.complaint, err=True)
     return remembered.now
 
 
@@ -127,12 +127,12 @@ def counted() -> Callable[[int, int], None] | None:
 
 def _count(done: int, total: int) -> None:
     """Say how far it is, and wipe it when it is done."""
-    say(f"\r{done} of {total} runs" if done < total else "\r" + " " * 40 + "\r", nl=False, err=True)
+    click.echo(f"\r{done} of {total} runs" if done < total else "\r" + " " * 40 + "\r", nl=False, err=True)
 
 
 def print_json(value: object) -> None:
     """Write JSON, with a null for what is absent, to standard output alone."""
-    say(json.dumps(value, ensure_ascii=False, allow_nan=False, indent=1))
+    click.echo(json.dumps(value, ensure_ascii=False, allow_nan=False, indent=1))
 
 
 def print_rows(table: Table, form: str) -> None:
@@ -145,7 +145,7 @@ def print_rows(table: Table, form: str) -> None:
     head, rows = list(table[0]), [[_cell(one) for one in row] for row in table[1]]
     widths = [max([len(name), *(len(row[at]) for row in rows)]) for at, name in enumerate(head)]
     for row in [head, *rows]:
-        say("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
+        click.echo("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
 
 
 def _cell(value: object) -> str:

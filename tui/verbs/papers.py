@@ -47,11 +47,11 @@ def report(
 
     found = reduce_file(log, site=load_site(site) if site else None, interval=interval)
     if out is None:
-        say(writer.report_text(found))
+        click.echo(writer.report_text(found))
         return
     beside = writer.compared(compare_runs(reduce_file(against), found)) if against else None
     writer.write_report(found, out, compared=beside, force=force)
-    say_path(out)
+    click.echo(out)
 
 
 @click.command()
@@ -80,8 +80,8 @@ def verify(log: Path, form: str) -> None:
     elif form == "csv":
         print_rows((list(row), [list(row.values())]), form)
     else:
-        say(f"{found.path}: {found.state}; {found.reason}")
-        say(
+        click.echo(f"{found.path}: {found.state}; {found.reason}")
+        click.echo(
             f"{found.good_lines} good lines, to {found.good_until_time:.1f} s; seal {found.seal or 'none'}"
         )
     click.get_current_context().exit(0 if found.state == "intact" else 1)
@@ -98,7 +98,7 @@ def export(log: Path, file: Path, site: Path | None, interval: float | None, for
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
     write(reduce_file(log, site=load_site(site) if site else None, interval=interval), file, force=force)
-    say_path(file)
+    click.echo(file)
 
 
 @click.command()
@@ -129,12 +129,12 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
         print_json({"first": found.first, "second": found.second, "left_out": found.left_out, "depths": rows})
         return
     if form == "table":
-        say(f"{found.second}\nless {found.first}; offsets in mm, u is the standard uncertainty")
+        click.echo(f"{found.second}\nless {found.first}; offsets in mm, u is the standard uncertainty")
     print_rows((list(DIFFERENCE_KEYS), [[row[name] for name in DIFFERENCE_KEYS] for row in rows]), form)
     if form == "table":
         for line in found.notes:
-            say(f"note: {line}")
-        say(
+            click.echo(f"note: {line}")
+        click.echo(
             f"{len(found.moved)} of {len(found.rows)} depths differ by more than their uncertainty explains"
         )
 

@@ -92,7 +92,7 @@ def ports(form: str) -> None:
         print_json({"ports": [{"device": device, "what": what} for device, what in rows]})
         return
     if not rows and form == "table":
-        say("no serial port found", err=True)
+        click.echo("no serial port found", err=True)
         return
     print_rows((["device", "what"], [list(one) for one in rows]), form)
 
@@ -137,8 +137,8 @@ def selfcheck(form: str) -> None:
     else:
         for name, mark, source, unit, expected, value, difference, ok in rows:
             head = "ok " if ok else "OFF"
-            say(
+            click.echo(
                 f"{head} {name}: {value:.9g} {unit}, {mark} {expected:.9g} ({difference:+.1e}); {source}"
             )
-        say(f"{len(rows)} checks, {bad} off")
+        click.echo(f"{len(rows)} checks, {bad} off")
     click.get_current_context().exit(1 if bad else 0)
