@@ -34,6 +34,7 @@ START = Release(east=0.01, speed_north=0.002)
         ({"speed_down": 0.5}, {"speed_down": 0.5}),
         ({"speed_down": -0.5}, {"speed_down": -0.5}),
         ({"spin_north": 0.5, "spin_down": 2.0}, {"spin_north": 0.5, "spin_down": 2.0}),
+        ({"spin_east": -0.3}, {"spin_east": -0.3}),
     ],
 )
 def test_varied_release_gives_the_fall_from_there(
