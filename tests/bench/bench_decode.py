@@ -1,8 +1,9 @@
 """How fast lines become readings, and bytes become findings, as ratios within one run; run by itself, it is no test.
 
 The yardstick of clean captures is numpy.loadtxt over the same file and nothing else: from one machine to another it
-gains more than array operations do: it took 3.8 times as long as decoding on one and 1.2 times on another. Broken and checked
-lines are held against clean ones for that reason. The yardstick of the live path is one core at 200 lines a second.
+gains more than array operations do: it took 3.8 times as long as decoding on one and 1.2 times on another. Broken and
+checked lines are held against clean ones for that reason. The yardstick of the live path is one core at 200 lines a
+second.
 """
 
 import tempfile
