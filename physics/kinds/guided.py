@@ -11,6 +11,7 @@ from eastfall.physics.expected import ExpectedCurve, reach
 from eastfall.physics.faces import FaceBins
 from eastfall.physics.findings import FaceSums, Halt, RestPoint, Rows, Station
 from eastfall.physics.halts import HaltFinder, Rest
+from eastfall.physics.kinds.azimuths import azimuth_of_a
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
@@ -102,9 +103,7 @@ class Guided:
         true = np.full(a.shape, instrument.a_azimuth + instrument.north_offset)
         if np.isnan(azimuth).all() and np.isnan(face).all():
             return np.stack(increments(a, b, true[:1])), true
-        # A probe that is turned about its own axis by its face carries its A axis with it; one that reads its own
-        # azimuth says so itself.
-        true += np.where(np.isnan(azimuth), np.nan_to_num(face), azimuth - instrument.a_azimuth)
+        true = azimuth_of_a(readings, instrument)
         return np.stack(increments(a, b, true)), true
 
     def _bridge(self, depth: float, slope: Array) -> None:

@@ -12,6 +12,7 @@ from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.hung import free_period, single_swing
+from eastfall.physics.kinds.azimuths import azimuth_of_a
 from eastfall.physics.kinds.base import (
     ROW,
     Array,
@@ -24,6 +25,7 @@ from eastfall.physics.kinds.base import (
     rows_of,
     usable,
 )
+from eastfall.physics.lineangle import LineAngle, line_angle
 from eastfall.physics.moving import LineSpeed
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
@@ -99,6 +101,7 @@ class Hung(Plain):
     def __init__(self, assumptions: Assumptions, curve: ExpectedCurve) -> None:
         self._assumptions = assumptions
         self._curve = curve
+        self._angles: LineAngle | None = None
         self._speed = LineSpeed()
         self._level: _Level | None = None
         self._final: _Level | None = None
@@ -115,8 +118,9 @@ class Hung(Plain):
         readings = usable(readings, good, "no offset and no usable tilt", self.unused)
         if not len(readings):
             return Batch.none()
-        rows, speed = self._rows(readings, offsets[:, good])
-        judged, stations = self._by_level(rows, np.abs(speed) > _RUNNING, direct[good])
+        direct = direct[good]
+        rows, speed = self._rows(readings, offsets[:, good], direct)
+        judged, stations = self._by_level(rows, np.abs(speed) > _RUNNING, direct)
         fill_limits(rows, self._assumptions.limits)
         self._last = rows[:, -1].copy()
         return Batch(rows=Rows(rows), judged=judged, stations=tuple(stations))
@@ -131,15 +135,12 @@ class Hung(Plain):
         a, b = corrected(
             readings.column("tilt_a"), readings.column("tilt_b"), readings.column("temperature"), instrument
         )
-        azimuth = np.where(
-            np.isfinite(readings.column("azimuth")), readings.column("azimuth"), instrument.a_azimuth
-        )
-        leaning = np.stack(increments(a, b, azimuth + instrument.north_offset)) * depth
+        leaning = np.stack(increments(a, b, azimuth_of_a(readings, instrument))) * depth
         # An angle is read against the vertical at the collar: bring it to the run's reference line.
         leaning = leaning - self._curve.look_up(self._curve.reference, depth)
         return np.where(is_direct, direct, leaning), is_direct
 
-    def _rows(self, readings: Readings, offsets: Array) -> tuple[Array, Array]:
+    def _rows(self, readings: Readings, offsets: Array, direct: Flags) -> tuple[Array, Array]:
         rows = rows_of(len(readings))
         depth = readings.depth
         speed = np.nan_to_num(self._speed.update(readings.time, depth)[0])
@@ -147,14 +148,28 @@ class Hung(Plain):
         rows[ROW["passing"]], rows[ROW["direction"]] = 0, np.where(speed < -_RUNNING, -1, 1)
         rows[ROW["measured_east"]], rows[ROW["measured_north"]] = offsets
         running = np.where(np.abs(speed) > _RUNNING, speed, 0.0)
-        expected = self._curve.look_up(self._curve.plumb, depth)
-        expected[0] += running * self._curve.look_up(self._curve.moving, depth)
-        rows[ROW["expected_east"]], rows[ROW["expected_north"]] = expected
-        single = self._single(depth, np.isfinite(readings.column("east")))
-        rows[ROW["u_east"]], rows[ROW["u_north"]] = np.hypot(
-            self._curve.look_up(self._curve.u, depth), single
-        )
+        rows[7:9], u = self._predicted(depth, running, direct)
+        rows[ROW["u_east"]], rows[ROW["u_north"]] = np.hypot(u, self._single(depth, direct))
         return rows, speed
+
+    def _predicted(self, depth: Array, running: Array, direct: Flags) -> tuple[Array, Array]:
+        """Return what is expected, of the bob or of the angle, and its standard uncertainty, shape (2, n) [m]."""
+        look_up = self._curve.look_up
+        expected, u = look_up(self._curve.plumb, depth), look_up(self._curve.u, depth)
+        moving = look_up(self._curve.moving, depth)
+        if not direct.all():
+            angles = self._line_angles()
+            expected = np.where(direct, expected, look_up(angles.plumb, depth))
+            u = np.where(direct, u, look_up(angles.u, depth))
+            moving = np.where(direct, moving, look_up(angles.moving, depth))
+        expected[0] += running * moving
+        return expected, u
+
+    def _line_angles(self) -> LineAngle:
+        """Return what angles show; worked out when the first one comes."""
+        if self._angles is None:
+            self._angles = line_angle(self._curve)
+        return self._angles
 
     def _single(self, depth: Array, direct: Flags) -> Array:
         """Return the standard uncertainty of one reading, each axis [m]."""
@@ -283,7 +298,7 @@ class Hung(Plain):
                 # A few readings near a turning point look like rest; nothing is known of the rest point yet.
                 u, name = np.full(2, np.nan), "swing not seen yet"
         names, parts = self._systematic(level, position)
-        budget = self._curve.budget
+        budget = self._curve.budget if level.direct else self._line_angles().budget
         return (
             position,
             (name, *names, *budget.names),

@@ -7,7 +7,7 @@ import pytest
 from survey_help import G, run, swinging
 
 from eastfall.physics.readings import Readings
-from eastfall.physics.settings import Instrument, Limits
+from eastfall.physics.settings import Air, Instrument, Limits, Line
 from eastfall.physics.survey import Survey
 
 SWINGING = swinging()
@@ -81,3 +81,49 @@ def test_a_line_angle_times_its_length_is_the_offset(shaft):
     _, rows = run(shaft("hung", depth=90.0, instrument=instrument), readings)
     assert rows[5, -1] == pytest.approx(0.050, rel=1e-6)
     assert rows[6, -1] == pytest.approx(0.0, abs=1e-12)
+
+
+def test_a_probe_turned_to_its_other_face_shows_the_same_line(shaft):
+    """The same lean of 10 mm on 50 m read in faces 0° and 180°, signs exchanged: 10 mm both times."""
+    lean = 0.010 / 50.0
+    for face, sign in ((0.0, 1.0), (np.pi, -1.0)):
+        readings = Readings.of(
+            time=np.arange(20.0), depth=np.full(20, 50.0), tilt_a=sign * lean, tilt_b=-sign * lean, face=face
+        )
+        survey, _ = run(shaft("hung", depth=90.0), readings)
+        station = survey.result().stations[-1]
+        assert station.measured_north == pytest.approx(0.010, rel=1e-6)
+        assert station.measured_east == pytest.approx(-0.010, rel=1e-6)
+
+
+def both_ways(assumptions):
+    """Give the stations of a still line of 90 m, read at its bob and by its angle at the collar."""
+    at = np.full(20, 90.0)
+    bob = Readings.of(time=np.arange(20.0), depth=at, east=0.0, north=0.0)
+    angle = Readings.of(time=np.arange(20.0), depth=at, tilt_a=0.0, tilt_b=0.0)
+    return [run(assumptions, one)[0].result().stations[-1] for one in (bob, angle)]
+
+
+def part(station, name):
+    """Give what one input puts into the uncertainty of a station, east and north [m]."""
+    return station.parts[station.inputs.index(name)]
+
+
+def test_the_angle_of_a_blown_line_is_expected_where_statics_puts_it_and_not_at_its_bob(shaft):
+    """Air from 40 to 60 m moves a bob at 90 m by F · 50 m/W; length times angle is F · 90 m/W, and so its uncertainty.
+
+    The triangle of forces of a weightless cord with a weight W at its end and a force F at 50 m (any text of statics).
+    """
+    air = Air(temperature_gradient=0.0, cross_flow=((40.0, 60.0, 0.5, np.pi / 2),))
+    bob, angle = both_ways(shaft("hung", depth=90.0, line=Line(), air=air))
+    assert bob.expected_east > 5e-4
+    assert angle.expected_east / bob.expected_east == pytest.approx(90.0 / 50.0, rel=1e-3)
+    assert part(angle, "cross-flow")[0] / part(bob, "cross-flow")[0] == pytest.approx(90.0 / 50.0, rel=1e-3)
+
+
+def test_a_bare_wire_shows_two_thirds_of_the_offset_of_its_end_by_its_angle(shaft):
+    """¾κL² at the end, ½κL² by the angle: T x' = ∫ λgκz dz from the collar down, with T = λgL, worked out by hand."""
+    line, air = Line(bob_mass=1e-6, mass_per_length=0.2), Air(density=0.0)
+    end, angle = both_ways(shaft("hung", depth=90.0, line=line, air=air))
+    assert end.expected_north > 1e-6
+    assert angle.expected_north / end.expected_north == pytest.approx(2.0 / 3.0, rel=1e-3)
