@@ -83,6 +83,8 @@ class Dashboard(App[int]):
         self.first = first
         self.choice: Choice | None = None
         self.feed: Feed | None = None
+        self.ends_after: float | None = None
+        """Leave by itself after so long [s]."""
         self._no_colour = no_colour
         self._newest: Snapshot | None = None
         self._told = False
@@ -109,6 +111,8 @@ class Dashboard(App[int]):
             self.notify(safe(complaint), markup=False, severity="warning", timeout=10)
         if self.feed is not None:
             self.feed.start()
+        if self.ends_after is not None:
+            self.set_timer(self.ends_after, self.exit)
 
     def _chosen(self, choice: Choice | None) -> None:
         """Leave with what the start screen was closed with."""

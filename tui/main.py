@@ -74,6 +74,7 @@ def cli(ctx: click.Context) -> None:
 
 def main() -> None:
     """Run the command line and end the process with its exit status."""
+    _open_missing_streams()
     # Nothing here multiplies large matrices: threads that wait for it took 50 ms of a core at every start.
     os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     try:
@@ -99,6 +100,16 @@ def main() -> None:
         click.echo(f"eastfall: {_one_line(f'{where}{error.strerror or error}')}", err=True)
         status = 2
     sys.exit(status if isinstance(status, int) else 0)
+
+
+def _open_missing_streams() -> None:
+    """Open nothing in place of a stream that was closed, as by a service or `<&-`: the lowest first, so in its place.
+
+    Otherwise the stream is None, and the next file that is opened, the run log, takes its number.
+    """
+    for name, mode in (("stdin", "r"), ("stdout", "w"), ("stderr", "w")):
+        if getattr(sys, name) is None:
+            setattr(sys, name, open(os.devnull, mode, encoding="utf-8"))  # noqa: PTH123, SIM115 (open as long as the program)
 
 
 def _where_help_is(error: click.ClickException) -> str:

@@ -44,7 +44,12 @@ def terminal_look() -> dict[str, object]:
 
 
 def run_live(
-    site: "SiteFile", *, run: "Run", curve: "ExpectedCurve | None" = None, theme: str | None = None
+    site: "SiteFile",
+    *,
+    run: "Run",
+    curve: "ExpectedCurve | None" = None,
+    theme: str | None = None,
+    seconds: float | None = None,
 ) -> int:
     """Show a live run until the user leaves.
 
@@ -58,6 +63,8 @@ def run_live(
         For where a bob would hang and a dropped body would be.
     theme : str, optional
         Name of a theme.
+    seconds : float, optional
+        Leave by itself after so long.
 
     Returns
     -------
@@ -75,6 +82,7 @@ def run_live(
         assumptions=site.assumptions, mode="live", title=safe(site.assumptions.site.name), bob=bob, fall=fall
     )
     app = watch_app(session, **look)
+    app.ends_after = seconds
     if Path(site.path).is_file():
         app.remembered.used(Path(site.path))
     return shown_over(app, LiveFeed(run, app.take))

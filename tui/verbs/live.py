@@ -5,7 +5,7 @@ import os
 import signal
 import sys
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager, suppress
 from datetime import UTC, datetime
 from pathlib import Path
@@ -53,7 +53,7 @@ def demo(kind: str, into: Path, plain: bool, seconds: float | None) -> None:
     if plain or not _screen_there():
         _plainly(site, (), into, seconds or 150.0, "nobody: it is an emulated shaft")
         return
-    watch_live(site, (), into)
+    watch_live(site, (), into, seconds)
 
 
 @click.command()
@@ -103,21 +103,31 @@ def record(
     judge_record(last.health)
 
 
-def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path) -> None:
+def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path, seconds: float | None = None) -> None:
     """Open the dashboard on a new run, and print the log's path when it has ended."""
     from eastfall.tui.opening import run_live  # noqa: PLC0415 (the screen library only where a screen opens)
     from eastfall.tui.terminal import refuse_unless_screen  # noqa: PLC0415
 
     refuse_unless_screen(os.environ, is_terminal=_screen_there())
+    _leave_keys_to_screen(links or tuple(one.url for one in site.links))
     # The links are opened before the screen: one that cannot be had is told in one line, here and now.
     with _recorded(site, links, folder, None) as run, run:
-        status = run_live(site, run=run, curve=run.pipeline.survey.curve)
+        status = run_live(site, run=run, curve=run.pipeline.survey.curve, seconds=seconds)
     click.echo(run.log_path)
     click.get_current_context().exit(status)
 
 
 def _screen_there() -> bool:
     return sys.stdin.isatty() and sys.stdout.isatty()
+
+
+def _leave_keys_to_screen(urls: Sequence[str]) -> None:
+    """Refuse to read lines from the terminal that the dashboard reads its keys from: not even `q` would reach it."""
+    if "-" in urls:
+        raise click.UsageError(
+            "a link is '-', standard input, and the dashboard takes its keys from there; expected another link, "
+            "or --plain to type or pipe the lines in"
+        )
 
 
 def _end_of(seconds: float | None) -> float:
