@@ -38,10 +38,8 @@ class LogReader:
     path : Path
         Any part of the log.
     merge : bool
-        Put lines that follow one another on one link into large blocks; else one block for each record.
-    by_link : bool
-        With `merge`: put the lines between events into one block for each link, though links then overtake one
-        another. What follows from the lines in the end does not depend on it.
+        Put the lines between events into large blocks, one for each link, though links then overtake one another: what
+        follows from the lines does not depend on it. Else one block for each record, in their order.
 
     Raises
     ------
@@ -62,9 +60,8 @@ class LogReader:
         The latest time read so far [s].
     """
 
-    def __init__(self, path: Path, *, merge: bool = True, by_link: bool = False) -> None:
+    def __init__(self, path: Path, *, merge: bool = True) -> None:
         self._merge = merge
-        self._by_link = by_link
         self._numbers: dict[int, int] = {}
         self._parts: list[Verification] = []
         self.bad_lines = 0
@@ -218,7 +215,7 @@ class LogReader:
     def _decoded(self, data: bytes) -> list[Arrival]:
         """Return the arrivals in record lines; stretches without events go through arrays, the rest through JSON."""
         if data and self._merge and (found := plain_lines(data)) is not None:
-            return [self._block(*found, 0)]
+            return [self._block(*one) for one in found]
         arrivals: list[Arrival] = []
         begin = 0
         while begin < len(data):
@@ -236,7 +233,7 @@ class LogReader:
         found = plain_lines(data) if self._merge else None
         if found is None:
             return self._records(data)
-        return [self._block(*found, 0)]
+        return [self._block(*one) for one in found]
 
     def _records(self, data: bytes) -> list[Arrival]:
         try:
@@ -259,7 +256,7 @@ class LogReader:
         arrivals: list[Arrival] = []
         waiting: dict[int, list[Record]] = {}
         for one in records:
-            if waiting and not self._may_join(one, waiting):
+            if waiting and (one.raw is None or not self._merge):
                 arrivals += [self._one_block(some) for some in waiting.values()]
                 waiting = {}
             if one.raw is not None:
@@ -271,16 +268,13 @@ class LogReader:
                 self.bad_lines += 1
         return [*arrivals, *(self._one_block(some) for some in waiting.values())]
 
-    def _may_join(self, record: Record, waiting: dict[int, list[Record]]) -> bool:
-        return self._merge and record.raw is not None and (self._by_link or record.link in waiting)
-
     def _one_block(self, records: list[Record]) -> LineBlock:
         lines = [line.replace("\n", " ") for one in records for line in one.raw or ()]
         text = "".join(line + "\n" for line in lines)
         times = np.repeat([one.t for one in records], [len(one.raw or ()) for one in records])
-        return self._block(text.encode("latin-1", "replace"), times, records[0].link)
+        return self._block(records[0].link, text.encode("latin-1", "replace"), times)
 
-    def _block(self, data: bytes, times: NDArray[np.float64], link: int) -> LineBlock:
+    def _block(self, link: int, data: bytes, times: NDArray[np.float64]) -> LineBlock:
         first = self._numbers.get(link, 0) + 1
         self._numbers[link] = first - 1 + times.size
         if times.size:
@@ -288,9 +282,9 @@ class LogReader:
         return LineBlock(data=data, times=times, first_line=first, link=link)
 
 
-def read_log(path: Path, *, merge: bool = True, by_link: bool = False) -> LogReader:
+def read_log(path: Path, *, merge: bool = True) -> LogReader:
     """Open a run log for reading; see `LogReader`."""
-    return LogReader(path, merge=merge, by_link=by_link)
+    return LogReader(path, merge=merge)
 
 
 def last_time(path: Path) -> float:

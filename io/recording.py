@@ -68,11 +68,9 @@ class Recording:
         """What is not as recorded."""
         return differences(self.recorded, self.site) if self.recorded is not None else ()
 
-    def source(self, *, by_link: bool = False) -> Source:
-        """Open the file and return its arrivals from the start; `by_link` as in `LogReader`."""
-        return (
-            LogReader(self.path, by_link=by_link) if self.is_log else CaptureReader(self.path, self.interval)
-        )
+    def source(self) -> Source:
+        """Open the file and return its arrivals from the start."""
+        return LogReader(self.path) if self.is_log else CaptureReader(self.path, self.interval)
 
     def pipeline(self, curve: ExpectedCurve | None = None, *, u_of_rows: bool = True) -> Pipeline:
         """Return a fresh pipeline for the settings in use, with their curve where it stands ready; see `Survey`."""

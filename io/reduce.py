@@ -111,7 +111,7 @@ def reduce_file(
     np.empty(_ROOM, dtype=np.uint8)
     recording = open_recording(path, site, interval)
     pipeline = recording.pipeline(curve_for(recording.site.assumptions), u_of_rows=False)
-    source = recording.source(by_link=True)
+    source = recording.source()
     try:
         events = run_through(source, pipeline, is_log=recording.is_log)
         if isinstance(source, CaptureReader) and not pipeline.survey.result().frames:

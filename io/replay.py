@@ -165,11 +165,9 @@ class Replay:
 
     def step(self) -> RunUpdate:
         """Play what arrived at the next instant of the recording."""
-        first = self._peek()
-        if first is None:
+        if self._peek() is None:
             return self.advance(self.duration)
-        begins = float(first.times[0]) if isinstance(first, LineBlock) else first.time
-        return self.advance(max(begins, self.time))
+        return self.advance(max(self._next_instant(), self.time))
 
     def seek(self, time: float) -> RunUpdate:
         """Go to an instant; backwards means from the start again, as fast as it goes.
@@ -198,22 +196,34 @@ class Replay:
             self._waiting += more
         return self._waiting[0]
 
+    def _next_instant(self) -> float:
+        """Return when the first of what waits arrived [s]: of one of the links, or the event before any line."""
+        begins = inf
+        for one in self._waiting:
+            if isinstance(one, RunEvent):
+                return min(begins, one.time)
+            begins = min(begins, float(one.times[0]) if len(one) else self.time)
+        return begins
+
     def _next(self, until: float) -> Arrival | None:
         """Return the next arrival, or the part of it that came by `until`."""
-        first = self._peek()
-        if isinstance(first, RunEvent):
-            return self._waiting.popleft() if first.time <= until else None
-        if first is None:
-            return None
-        late = np.flatnonzero(first.times > until)
-        count = int(late[0]) if late.size else len(first)
-        if count == len(first):
-            self._waiting.popleft()
-            return first
-        if count == 0:
-            return None
-        ready, self._waiting[0] = split(first, count)
-        return ready
+        self._peek()
+        later: set[int] = set()
+        for place, one in enumerate(self._waiting):
+            if isinstance(one, RunEvent):
+                return self._waiting.popleft() if place == 0 and one.time <= until else None
+            if one.link in later:
+                continue
+            late = np.flatnonzero(one.times > until)
+            count = int(late[0]) if late.size else len(one)
+            if count == len(one):
+                del self._waiting[place]
+                return one
+            if count:
+                ready, self._waiting[place] = split(one, count)
+                return ready
+            later.add(one.link)
+        return None
 
     def _take(self, arrival: Arrival) -> Findings:
         if isinstance(arrival, LineBlock):

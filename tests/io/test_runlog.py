@@ -31,7 +31,7 @@ def _flat(arrivals: list[Arrival]) -> list[tuple[object, ...]]:
 
 
 @pytest.mark.invariant
-@pytest.mark.parametrize(("merge", "by_link"), [(True, False), (True, True), (False, False)])
+@pytest.mark.parametrize("merge", [True, False])
 @given(
     batches=st.lists(
         st.tuples(
@@ -45,7 +45,6 @@ def test_any_bytes_on_any_link_come_back_with_their_times(
     tmp_path_factory: pytest.TempPathFactory,
     batches: list[tuple[list[bytes], int]],
     merge: bool,
-    by_link: bool,
 ) -> None:
     """Lines of arbitrary bytes on three links are read back to the byte, in order, with time, link and number."""
     log = writer(tmp_path_factory.mktemp("log"), seal_every=0.5)
@@ -57,10 +56,10 @@ def test_any_bytes_on_any_link_come_back_with_their_times(
         log.raw(one)
         put.append(one)
     log.close(3.0)
-    with read_log(log.path, merge=merge, by_link=by_link) as reader:
+    with read_log(log.path, merge=merge) as reader:
         got = list(reader)
     in_order = [_flat(got), _flat(put)]
-    if by_link:  # links are apart then; within one, the order is that of the file
+    if merge:  # links are apart then; within one, the order is that of the file
         in_order = [sorted(one, key=lambda row: str(row[0])) for one in in_order]
     assert in_order[0] == in_order[1]
     assert reader.verification().state == "intact"
@@ -80,7 +79,14 @@ def test_usual_records_are_read_as_one_block_with_events_in_place(tmp_path: Path
 @pytest.mark.parametrize(
     "line",
     [
-        b'{"t":1.5,"raw":["a","b"],"link":1,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a","b"],"link":0,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a","b"],"link":12,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a","b"],"link":-1,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a","b"],"lunk":1,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a","b"]"link":1,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a","b"],"link":1 "crc":"00000000"}\n',
+        b'{"t":1.5,"raw":[],"link":1,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["a";"b"],"link":1,"crc":"00000000"}\n',
         b'{"t":1.5,"raw":["a\\u0000"],"crc":"00000000"}\n',
         b'{"t":1.5,"raw":["\xc2\xb5"],"crc":"00000000"}\n',
         b'{"t":1e-06,"raw":["a"],"crc":"00000000"}\n',
@@ -102,10 +108,29 @@ def test_unusual_records_are_left_to_json_by_the_array_reader(line: bytes) -> No
     assert plain_lines(line) is None
     found = plain_lines(usual)
     assert found is not None
-    assert found[0] == b"1,2\n3,4\n"
-    assert found[1].tolist() == [1.25, 1.25]
+    ((link, lines, times),) = found
+    assert (link, lines, times.tolist()) == (0, b"1,2\n3,4\n", [1.25, 1.25])
     if line:
         assert plain_lines(usual + line) is None
+
+
+def test_usual_records_of_several_links_are_one_block_for_each_link() -> None:
+    """Brackets, numbers of lines and order of links as they come: nothing of it goes through JSON."""
+    records = [
+        b'{"t":1.0,"raw":["a"],"link":1,"crc":"00000000"}\n',
+        b'{"t":1.5,"raw":["[b]","c],"],"crc":"00000000"}\n',
+        b'{"t":2.0,"raw":["d","","e"],"link":1,"crc":"00000000"}\n',
+        b'{"t":2.5,"raw":["],link:1"],"link":9,"crc":"00000000"}\n',
+    ]
+    for some in (records, records[:1], records[::2], records[3:]):
+        found = plain_lines(b"".join(some))
+        assert found is not None
+        wanted: dict[int, list[tuple[bytes, float]]] = {}
+        for one in map(json.loads, some):
+            wanted.setdefault(one.get("link", 0), []).extend((line.encode(), one["t"]) for line in one["raw"])
+        assert [
+            (link, list(zip(data.split(b"\n"), times.tolist(), strict=False))) for link, data, times in found
+        ] == [(link, wanted[link]) for link in sorted(wanted)]
 
 
 @pytest.mark.independent
@@ -115,7 +140,7 @@ def test_array_reader_times_equal_those_of_the_json_module(microseconds: list[in
     data = b"".join(b'{"t":%s,"raw":["x"],"crc":"00000000"}\n' % repr(n / 1e6).encode() for n in microseconds)
     found = plain_lines(data)
     if found is not None:
-        assert found[1].tolist() == [json.loads(line)["t"] for line in data.splitlines()]
+        assert found[0][2].tolist() == [json.loads(line)["t"] for line in data.splitlines()]
     else:
         assert any("e" in repr(n / 1e6) for n in microseconds)
 
