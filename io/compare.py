@@ -1,8 +1,8 @@
 """Two surveys of one shaft held against each other by depth: has anything moved? Stations in, differences out."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from math import hypot
+from math import hypot, isfinite
 from typing import Any, Literal
 
 import numpy as np
@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from eastfall.io.errors import InputError
 from eastfall.io.reduce import Reduction
 from eastfall.io.tables import millimetres, number
+from eastfall.physics.apart import in_opposite_faces, u_apart
 from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import Station
 from eastfall.physics.verdict import horizontal
@@ -27,10 +28,12 @@ DIFFERENCE_KEYS = (
     "u_north_mm",
     "moved",
 )
-_FIELDS = ("residual_east", "residual_north", "u_east", "u_north")
+
+_ONE_PLACE = 1.7e-5
+"""Latitudes that differ by more than this are of different shafts [rad]: a tenth of a kilometre."""
 
 Column = NDArray[np.float64]
-Moved = Literal["yes", "no"]
+Moved = Literal["yes", "no", "unknown"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -57,8 +60,10 @@ class DepthDifference:
 
     @property
     def moved(self) -> Moved:
-        """Whether the horizontal difference exceeds its expanded uncertainty 2u."""
+        """Whether the horizontal difference exceeds its expanded uncertainty 2u; unknown where that is."""
         length, u = horizontal(self.east, self.north, self.u_east, self.u_north)
+        if not (isfinite(length) and isfinite(u)):
+            return "unknown"
         return "yes" if float(length) > COVERAGE_FACTOR * float(u) else "no"
 
 
@@ -98,19 +103,46 @@ def compare_runs(first: Reduction, second: Reduction) -> Comparison:
     InputError
         The runs have no depth in common.
     """
-    notes = []
-    if first.site.assumptions.run.reference != second.site.assumptions.run.reference:
-        notes.append("the runs are measured from different reference lines")
-    if first.kind != second.kind:
-        notes.append(f"the runs are of different kinds: {first.kind} and {second.kind}")
+    notes = _unlike(first, second)
     rows, left_out = _between(first.result.stations, second.result.stations)
     if not rows:
         raise InputError(
             f"{first.path} and {second.path} have no depth in common; expected runs of one shaft"
         )
     return Comparison(
-        first=_named(first), second=_named(second), rows=rows, left_out=left_out, notes=tuple(notes)
+        first=_named(first),
+        second=_named(second),
+        rows=rows,
+        left_out=left_out,
+        notes=(*notes, *_unknown(rows)),
     )
+
+
+def _unlike(first: Reduction, second: Reduction) -> list[str]:
+    """Return why the two may be no two surveys of one thing, or no survey to go by."""
+    here, there = first.site.assumptions, second.site.assumptions
+    notes = []
+    if here.site.name != there.site.name:
+        named = (one.site.name or "unnamed" for one in (here, there))
+        notes.append("the runs name different shafts: {} and {}".format(*named))
+    if abs(here.site.latitude - there.site.latitude) > _ONE_PLACE:
+        degrees = (f"{np.degrees(one.site.latitude):.4f}°" for one in (here, there))
+        notes.append("the runs are at different latitudes: {} and {}".format(*degrees))
+    if here.run.reference != there.run.reference:
+        notes.append("the runs are measured from different reference lines")
+    if first.kind != second.kind:
+        notes.append(f"the runs are of different kinds: {first.kind} and {second.kind}")
+    notes += [
+        f"the record {one.path.name} is changed: {one.verification.reason}"
+        for one in (first, second)
+        if one.verification is not None and one.verification.state == "changed"
+    ]
+    return notes
+
+
+def _unknown(rows: Sequence[DepthDifference]) -> list[str]:
+    count = sum(one.moved == "unknown" for one in rows)
+    return [f"no uncertainty is known at {count} of {len(rows)} depths"] if count else []
 
 
 def compare_passes(run: Reduction, first: int = 0, second: int = 1) -> Comparison:
@@ -128,9 +160,13 @@ def compare_passes(run: Reduction, first: int = 0, second: int = 1) -> Compariso
 def between_passes(
     stations: Sequence[Station], first: int, second: int, name: str = "this run"
 ) -> Comparison | None:
-    """Compare two passes of the stations of one run; passes count from 0, None without a depth in common."""
-    sides = [[one for one in stations if one.passing == number] for number in (first, second)]
-    rows, left_out = _between(*sides)
+    """Compare two passes of the stations of one run; passes count from 0, None without a depth in common.
+
+    What both passes share cancels in their difference and is no part of its uncertainty.
+    """
+    one, other = ([each for each in stations if each.passing == number] for number in (first, second))
+    opposite = in_opposite_faces(one, other)
+    rows, left_out = _between(one, other, lambda here, there: _of_one_run(here, there, opposite=opposite))
     if not rows:
         return None
     notes = ("both passes share the instrument's zero and scale: what is common to both does not show here",)
@@ -139,7 +175,7 @@ def between_passes(
         second=f"{name}, pass {second + 1}",
         rows=rows,
         left_out=left_out,
-        notes=notes,
+        notes=(*notes, *_unknown(rows)),
     )
 
 
@@ -148,34 +184,84 @@ def _named(run: Reduction) -> str:
     return f"{run.path.name}{started}"
 
 
-def _by_depth(stations: Sequence[Station]) -> tuple[Column, Column]:
-    """Return rising depths, shape (n,), and mean residuals with uncertainties there, shape (4, n)."""
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Side:
+    """One survey by rising depth: residual and u of shape (2, n), parts of u by input of the same shape."""
+
+    depth: Column
+    residual: Column
+    u: Column
+    parts: dict[str, Column]
+
+    def at(self, depth: Column) -> "_Side":
+        """Return what it says at other depths within its reach, linearly between its own."""
+
+        def read(rows: Column) -> Column:
+            return np.array([np.interp(depth, self.depth, row) for row in rows])
+
+        parts = {name: read(part) for name, part in self.parts.items()}
+        return _Side(depth=depth, residual=read(self.residual), u=read(self.u), parts=parts)
+
+
+def _by_depth(stations: Sequence[Station]) -> _Side:
+    """Put all visits to each depth together.
+
+    Visits to one depth share most of what makes them uncertain, so their mean is not taken to be any surer.
+    """
     depths = sorted({one.depth for one in stations})
     groups = [[one for one in stations if one.depth == depth] for depth in depths]
-    # Visits to one depth share most of what makes them uncertain, so their mean is not taken to be any surer.
-    table = [[float(np.mean([getattr(one, name) for one in group])) for group in groups] for name in _FIELDS]
-    return np.array(depths), np.array(table).reshape(len(_FIELDS), len(depths))
+
+    def mean(of: Callable[[Station], tuple[float, float]]) -> Column:
+        return np.array([np.mean([of(one) for one in group], axis=0) for group in groups]).T
+
+    def part_of(name: str) -> Callable[[Station], tuple[float, float]]:
+        return lambda one: dict(zip(one.inputs, one.parts, strict=True)).get(name, (0.0, 0.0))
+
+    return _Side(
+        depth=np.array(depths),
+        residual=mean(lambda one: (one.residual_east, one.residual_north)),
+        u=mean(lambda one: (one.u_east, one.u_north)),
+        parts={
+            name: mean(part_of(name)) for name in dict.fromkeys(n for one in stations for n in one.inputs)
+        },
+    )
 
 
-def _between(first: Sequence[Station], second: Sequence[Station]) -> tuple[tuple[DepthDifference, ...], int]:
+def _of_one_run(first: _Side, second: _Side, *, opposite: bool) -> Column:
+    if not first.parts and not second.parts:
+        return _uncorrelated(first, second)
+    return u_apart(first.parts, second.parts, opposite=opposite)
+
+
+def _uncorrelated(first: _Side, second: _Side) -> Column:
+    return np.hypot(first.u, second.u)
+
+
+def _between(
+    first: Sequence[Station],
+    second: Sequence[Station],
+    u_of: Callable[[_Side, _Side], Column] = _uncorrelated,
+) -> tuple[tuple[DepthDifference, ...], int]:
     if not first or not second:
         return (), len(first)
-    depth, own = _by_depth(first)
-    other_depth, other = _by_depth(second)
-    inside = (depth >= other_depth[0]) & (depth <= other_depth[-1])
-    there = np.array([np.interp(depth[inside], other_depth, row) for row in other])
-    own = own[:, inside]
+    whole, other = _by_depth(first), _by_depth(second)
+    inside = (whole.depth >= other.depth[0]) & (whole.depth <= other.depth[-1])
+    if not inside.any():
+        return (), len(whole.depth)
+    own = whole.at(whole.depth[inside])
+    there = other.at(own.depth)
+    table = np.vstack([own.depth, own.residual, there.residual, u_of(own, there)])
     rows = tuple(
         DepthDifference(
-            depth=float(z),
-            first_east=a[0],
-            first_north=a[1],
-            second_east=b[0],
-            second_north=b[1],
-            u_east=hypot(a[2], b[2]),
-            u_north=hypot(a[3], b[3]),
+            depth=z,
+            first_east=first_east,
+            first_north=first_north,
+            second_east=second_east,
+            second_north=second_north,
+            u_east=u_east,
+            u_north=u_north,
         )
-        for z, a, b in zip(depth[inside], own.T.tolist(), there.T.tolist(), strict=True)
+        for z, first_east, first_north, second_east, second_north, u_east, u_north in table.T.tolist()
     )
     return rows, int(np.count_nonzero(~inside))
 

@@ -25,9 +25,9 @@ _TOO_FAR = 3.0
 cases of a thousand."""
 _GRAIN = 1e-5
 """Passes that agree as well as this never disagree [m]: the corners of the winch's ramps."""
-_OWN = frozenset({RANDOM, MISSING, JUMPED})
+OWN = frozenset({RANDOM, MISSING, JUMPED})
 """What a pass gathers for itself."""
-_SPREAD = _OWN | {ZERO, SCALE, AZIMUTH, DEPTH, BENDS}
+_SPREAD = OWN | {ZERO, SCALE, AZIMUTH, DEPTH, BENDS}
 """Inputs of the measurement itself: a known end takes their part there away; what is expected stays as it is."""
 
 
@@ -158,12 +158,12 @@ def _two_passes(
     zeros = np.zeros(first.shape)
     for name in dict.fromkeys([*parts, *others]):
         alone = 0.5 * np.hypot(parts.get(name, zeros), _tied_part(others.get(name, zeros)))
-        kept[name] = alone if name in _OWN else parts.get(name, zeros)
+        kept[name] = alone if name in OWN else parts.get(name, zeros)
     best = first + 0.5 * apart
     if opposite:
         kept[ZERO] = zeros
         kept |= _proportional(best, assumptions)
-    own = [part for name, part in kept.items() if name in _OWN]
+    own = [part for name, part in kept.items() if name in OWN]
     u_apart = 2.0 * combined([*own, np.full(first.shape, _GRAIN)])
     odd = np.abs(_freed(depth, apart, opposite=opposite))
     disagree = odd > _TOO_FAR * u_apart

@@ -16,6 +16,7 @@ from eastfall.tui.widgets.table import fixed
 ORDERS = ("depth", "difference")
 _WIDTHS = (7, 13, 13, 14, 6, 6, 5)
 _MOST_PAIRS = 45
+_MOVED = {"yes": "MOVED", "no": "no", "unknown": "?"}
 
 
 def passes(stations: Sequence[Station]) -> tuple[Comparison, ...]:
@@ -70,7 +71,7 @@ def row(one: DepthDifference, units: Units = METRIC) -> tuple[str, Role]:
         f"{units.signed(one.east)} {units.signed(one.north)}",
         units.offset(length(one)),
         units.offset(expanded(one)),
-        "MOVED" if one.moved == "yes" else "no",
+        _MOVED[one.moved],
     )
     return fixed(tuple(zip(cells, _WIDTHS, strict=True))), Role.ACTION if one.moved == "yes" else Role.TEXT
 

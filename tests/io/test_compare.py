@@ -1,13 +1,15 @@
 """Comparing surveys: known movements are found, chance is not, and nothing is extrapolated."""
 
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pytest
-from results_help import RESULT, numbered, reduction, station
+from results_help import RESULT, SOUND, numbered, reduction, station
 
 from eastfall.io.compare import (
     DIFFERENCE_KEYS,
+    between_passes,
     compare_passes,
     compare_runs,
     difference_rows,
@@ -76,5 +78,49 @@ def test_the_table_has_fixed_keys_and_millimetres() -> None:
     rows = difference_rows(found)
     assert all(tuple(one) == DIFFERENCE_KEYS for one in rows)
     assert rows[0]["difference_east_mm"] == -2.0
-    assert any(one["first_north_mm"] is None for one in rows)
+    assert any(one["first_north_mm"] is None and one["moved"] == "unknown" for one in rows)
     assert found.left_out == 0
+    assert found.notes == ("no uncertainty is known at 1 of 3 depths",)
+
+
+def test_surveys_of_two_shafts_or_of_a_changed_record_are_told_apart() -> None:
+    """Another name, another place and a record that is not as it was written each stand in a note."""
+    one = _run(station(10.0, 0.0))
+    assert compare_runs(one, one).notes == ()
+    settings = one.site.assumptions
+    elsewhere = replace(settings.site, name="Cold Side", latitude=settings.site.latitude + 0.02)
+    other = replace(one, site=replace(one.site, assumptions=replace(settings, site=elsewhere)))
+    changed = replace(SOUND, state="changed", reason="line 726 is not as it was written")
+    notes = compare_runs(one, replace(other, path=Path("b.jsonl"), verification=changed)).notes
+    assert notes == (
+        "the runs name different shafts: Kestrel Hollow No. 2 and Cold Side",
+        "the runs are at different latitudes: 57.3000° and 58.4459°",
+        "the record b.jsonl is changed: line 726 is not as it was written",
+    )
+
+
+def _pass(face: float | None, number: int, **parts: tuple[float, float]) -> list[Station]:
+    names = tuple(name.replace("_", " ").replace("tilt ", "tilt, ") for name in parts)
+    return [station(20.0, 0.0, passing=number, face=face, inputs=names, parts=tuple(parts.values()))]
+
+
+@pytest.mark.invariant
+@pytest.mark.parametrize(
+    ("faces", "u"),
+    [
+        ((None, None), (0.5, 0.5)),
+        ((0.0, 0.0), (0.5, 0.5)),
+        ((0.0, np.pi), (6.02079729, 8.01561)),
+    ],
+)
+def test_what_two_passes_share_is_no_part_of_their_difference(faces, u) -> None:
+    """A zero of 3 and 4 mm cancels in one face and doubles in opposite ones; scale cancels; noise does not.
+
+    By hand [mm]: hypot(0.3, 0.4) = 0.5 in one face; in opposite ones hypot(2 x 3, 0.5) east, hypot(2 x 4, 0.5) north.
+    """
+    common = {"tilt_zero": (0.003, 0.004), "tilt_scale": (0.002, 0.001)}
+    down = _pass(faces[0], 0, **common, tilt_random=(0.0003, 0.0003))
+    up = _pass(faces[1], 1, **common, tilt_random=(0.0004, 0.0004))
+    found = between_passes(down + up, 0, 1)
+    assert found is not None
+    assert 1e3 * np.array([found.rows[0].u_east, found.rows[0].u_north]) == pytest.approx(u, rel=1e-6)
