@@ -13,6 +13,7 @@ from eastfall.physics.air import GAS_CONSTANT, air_column
 from eastfall.physics.earth import GRS80, normal_gravity, plumbline_curvature, shell_gravity
 from eastfall.physics.fall import Release, fall
 from eastfall.physics.field import LocalField, local_field
+from eastfall.physics.hung import hang
 from eastfall.physics.published.check import PublishedCheck
 from eastfall.physics.published.model_fields import (
     EARTH_RADIUS,
@@ -21,7 +22,7 @@ from eastfall.physics.published.model_fields import (
     prem_shells,
     turning_sphere,
 )
-from eastfall.physics.settings import ARCSECOND, Air, Body, Site
+from eastfall.physics.settings import ARCSECOND, Air, Body, Line, Site
 
 
 def _prem(radius: float) -> float:
@@ -42,7 +43,13 @@ def _curvature_arcsec_per_km() -> float:
 
 
 def _eastward_mm(height: float, latitude_deg: float) -> float:
-    return 1e3 * float(classical.eastward(height, radians(latitude_deg), _normal(latitude_deg)))
+    field = local_field(Site(latitude=radians(latitude_deg)), ellipsoid=GRS80)
+    return 1e3 * float(fall(field, to_depth=height).at(height).east)
+
+
+def _bob_north(field: LocalField, depth: float) -> float:
+    """Where a bob on a light line hangs [m]."""
+    return float(hang(field, Line(bob_mass=1.0, mass_per_length=0.0), depth).bob_north)
 
 
 def _thrown_up_ratio() -> float:
@@ -57,7 +64,7 @@ def _coefficient(field: LocalField, height: float, *, to_bob: bool) -> float:
     """C of the equatorward deflection of the integrated fall in a field."""
     south = -float(fall(field, to_depth=height).at(height).north)
     if to_bob:
-        south += field.curvature * height**2
+        south += _bob_north(field, height)
     return south / float(classical.equatorward(height, field.latitude, field.gravity, 1.0))
 
 
@@ -72,7 +79,7 @@ def _tower(what: str) -> float:
         "time": float(there.time),
         "east": 1e3 * float(there.east),
         "south": -1e6 * float(there.north),
-        "south of the bob": -1e6 * float(there.north - 2.0 * field.field_line(100.0)[0]),
+        "south of the bob": -1e6 * (float(there.north) - _bob_north(field, 100.0)),
     }[what]
 
 

@@ -10,12 +10,12 @@ import numpy as np
 
 from eastfall.physics.air import AirColumn, air_column
 from eastfall.physics.calibration import pair_faces
-from eastfall.physics.earth import EARTH_ROTATION
 from eastfall.physics.field import LocalField, local_field
 from eastfall.physics.hung import converge, free_period, hang, single_swing, stretch
 from eastfall.physics.moving import lean
 from eastfall.physics.published.check import PublishedCheck
 from eastfall.physics.settings import Air, Line, Site
+from eastfall.physics.swing import RestPointTracker
 from eastfall.physics.swing_checks import airy_precession, schuler_mean
 from eastfall.physics.tilt import direction, minimum_curvature_steps, ratio_factor
 
@@ -72,7 +72,7 @@ def _faces(part: str) -> float:
 
 def _swing_turn(latitude_deg: float) -> float:
     """Return the turning of the swing plane [°/h]."""
-    return float(np.degrees(EARTH_ROTATION * np.sin(radians(latitude_deg))) * 3600.0)
+    return float(np.degrees(RestPointTracker(radians(latitude_deg)).turn) * 3600.0)
 
 
 def _shaft_rule() -> float:
@@ -82,7 +82,7 @@ def _shaft_rule() -> float:
 
 CHECKS = (
     PublishedCheck(
-        name="Bob on a light wire, κL²",
+        name="bob on a light wire, κL²",
         source=_OWN,
         mark="calculation",
         unit="",
@@ -91,7 +91,7 @@ CHECKS = (
         compute=partial(_bob_ratio, 50.0, 0.0),
     ),
     PublishedCheck(
-        name="End of a wire without bob, 3/4 κL²",
+        name="end of a wire without bob, 3/4 κL²",
         source=_OWN + "; gravity taken as constant there, it grows by 6e-5 over the line",
         mark="calculation",
         unit="",
@@ -100,7 +100,7 @@ CHECKS = (
         compute=partial(_bob_ratio, 0.0, _STEEL),
     ),
     PublishedCheck(
-        name="Bob of 50 kg on 1000 m of 1 mm steel wire, in κL²",
+        name="bob of 50 kg on 1000 m of 1 mm steel wire, in κL²",
         source=_OWN,
         mark="calculation",
         unit="",
@@ -109,7 +109,7 @@ CHECKS = (
         compute=partial(_bob_ratio, 50.0, _STEEL),
     ),
     PublishedCheck(
-        name="Bob of 100 kg on 1000 m of 1 mm steel wire, in κL²",
+        name="bob of 100 kg on 1000 m of 1 mm steel wire, in κL²",
         source=_OWN,
         mark="calculation",
         unit="",
@@ -118,7 +118,7 @@ CHECKS = (
         compute=partial(_bob_ratio, 100.0, _STEEL),
     ),
     PublishedCheck(
-        name="Field line at 1000 m and 45°",
+        name="field line at 1000 m and 45°",
         source=_OWN,
         mark="calculation",
         unit="mm",
@@ -136,7 +136,7 @@ CHECKS = (
         compute=_blown,
     ),
     PublishedCheck(
-        name="Two lines 5 m apart, nearer at 1000 m",
+        name="two lines 5 m apart, nearer at 1000 m",
         source=_OWN + ", R 6371 km",
         mark="calculation",
         unit="mm",
@@ -145,7 +145,7 @@ CHECKS = (
         compute=lambda: 1e3 * float(converge(5.0, 1000.0, 6371e3)),
     ),
     PublishedCheck(
-        name="Stretch of 1000 m of 1 mm steel wire by 50 kg",
+        name="stretch of 1000 m of 1 mm steel wire by 50 kg",
         source=_OWN + ", g 9.81",
         mark="calculation",
         unit="m",
@@ -154,7 +154,7 @@ CHECKS = (
         compute=partial(_stretched, "bob"),
     ),
     PublishedCheck(
-        name="Stretch of the same wire by its own weight",
+        name="stretch of 1000 m of 1 mm steel wire by its own weight",
         source=_OWN + ", g 9.81",
         mark="calculation",
         unit="m",
@@ -163,7 +163,7 @@ CHECKS = (
         compute=partial(_stretched, "wire"),
     ),
     PublishedCheck(
-        name="Single swing of a free line in units of √L (m, s)",
+        name="single swing of a free line in units of √L (m, s)",
         source='Lueger (1904), Lexikon der gesamten Technik, "Schachtlotung": about √L',
         mark="published",
         unit="",
@@ -172,7 +172,7 @@ CHECKS = (
         compute=_shaft_rule,
     ),
     PublishedCheck(
-        name="Turning of the swing plane at the pole",
+        name="turning of the swing plane at the pole",
         source=_OWN + " for one turn in a sidereal day",
         mark="calculation",
         unit="°/h",
@@ -181,7 +181,7 @@ CHECKS = (
         compute=partial(_swing_turn, 90.0),
     ),
     PublishedCheck(
-        name="Turning of the swing plane at 45°",
+        name="turning of the swing plane at 45°",
         source=_OWN,
         mark="calculation",
         unit="°/h",
@@ -190,7 +190,7 @@ CHECKS = (
         compute=partial(_swing_turn, 45.0),
     ),
     PublishedCheck(
-        name="Turning of the ellipse of a 67 m pendulum, 3 m by 0.05 m",
+        name="turning of the ellipse of a 67 m pendulum, 3 m by 0.05 m",
         source="Airy (1851), Mon. Not. R. Astron. Soc. 11; formula from memory, value agrees with an integration",
         mark="memory",
         unit="µrad/s",
@@ -217,7 +217,7 @@ CHECKS = (
         compute=lambda: schuler_mean(_TURNS[:4]),
     ),
     PublishedCheck(
-        name="Lean of the felt vertical at 10 m/s and 60°",
+        name="lean of the felt vertical at 10 m/s and 60°",
         source=_OWN,
         mark="calculation",
         unit="µrad",
@@ -226,7 +226,7 @@ CHECKS = (
         compute=lambda: 1e6 * float(lean(10.0, radians(60.0), 9.81)),
     ),
     PublishedCheck(
-        name="Between a pass down and one up, 1000 m at 10 m/s and 60°",
+        name="between a pass down and one up, 1000 m at 10 m/s and 60°",
         source=_OWN,
         mark="calculation",
         unit="mm",
@@ -237,7 +237,7 @@ CHECKS = (
         ),
     ),
     PublishedCheck(
-        name="Minimum curvature, course 100, 15° to 25°, azimuth 20° to 45°: north",
+        name="minimum curvature, course 100, 15° to 25°, azimuth 20° to 45°: north",
         source="worked example of the method, printed in directional survey texts; formula Taylor & Mason (1972)",
         mark="published",
         unit="ft",
@@ -246,7 +246,7 @@ CHECKS = (
         compute=partial(_course, 1),
     ),
     PublishedCheck(
-        name="The same course: east",
+        name="minimum curvature, the same course: east",
         source="worked example of the method, printed in directional survey texts; formula Taylor & Mason (1972)",
         mark="published",
         unit="ft",
@@ -255,7 +255,7 @@ CHECKS = (
         compute=partial(_course, 0),
     ),
     PublishedCheck(
-        name="The same course: vertical",
+        name="minimum curvature, the same course: vertical",
         source="worked example of the method, printed in directional survey texts; formula Taylor & Mason (1972)",
         mark="published",
         unit="ft",
@@ -264,7 +264,7 @@ CHECKS = (
         compute=partial(_course, 2),
     ),
     PublishedCheck(
-        name="The same course: ratio factor",
+        name="minimum curvature, the same course: ratio factor",
         source=_OWN,
         mark="calculation",
         unit="",
@@ -273,7 +273,7 @@ CHECKS = (
         compute=_course_factor,
     ),
     PublishedCheck(
-        name="Face sum of the readings 359 and -339",
+        name="face sum of the readings 359 and -339",
         source="Mikkelsen (2007), short course on field measurements",
         mark="published",
         unit="1/20000",
@@ -282,7 +282,7 @@ CHECKS = (
         compute=partial(_faces, "sum"),
     ),
     PublishedCheck(
-        name="Deviation over 24 inches of the readings 359 and -339",
+        name="deviation over 24 inches of the readings 359 and -339",
         source="Mikkelsen (2007), short course on field measurements",
         mark="published",
         unit="in",
