@@ -12,7 +12,17 @@ from numpy.typing import NDArray
 from eastfall.physics.budget import combined
 from eastfall.physics.findings import Best, Closure, FaceSums, Station
 from eastfall.physics.kinds.base import RANDOM
-from eastfall.physics.kinds.shares import AZIMUTH, BENDS, DEPTH, JUMPED, MISSING, SCALE, ZERO
+from eastfall.physics.kinds.shares import (
+    AZIMUTH,
+    BENDS,
+    COUNTER,
+    DEPTH,
+    JUMPED,
+    MISSING,
+    SCALE,
+    ZERO,
+    of_axes,
+)
 from eastfall.physics.settings import DEGREE, Assumptions, Instrument
 from eastfall.physics.tilt import spread_misclosure
 from eastfall.physics.verdict import horizontal, verdicts
@@ -27,8 +37,8 @@ _GRAIN = 1e-5
 """Passes that agree as well as this never disagree [m]: the corners of the winch's ramps."""
 OWN = frozenset({RANDOM, MISSING, JUMPED})
 """What a pass gathers for itself."""
-_SPREAD = OWN | {ZERO, SCALE, AZIMUTH, DEPTH, BENDS}
-"""Inputs of the measurement itself: a known end takes their part there away; what is expected stays as it is."""
+_OF_SLOPE = frozenset({DEPTH, BENDS, COUNTER})
+"""What follows the slope of the guide at a station, whose sign is not kept."""
 
 
 def closure(stations: tuple[Station, ...]) -> Closure | None:
@@ -162,7 +172,7 @@ def _two_passes(
     best = first + 0.5 * apart
     if opposite:
         kept[ZERO] = zeros
-        kept |= _proportional(best, assumptions)
+        kept |= _of_axes(best, assumptions)
     own = [part for name, part in kept.items() if name in OWN]
     u_apart = 2.0 * combined([*own, np.full(first.shape, _GRAIN)])
     odd = np.abs(_freed(depth, apart, opposite=opposite))
@@ -176,15 +186,11 @@ def _two_passes(
     return _Line(depth=depth, residual=best, parts=kept, passes=2, apart=apart)
 
 
-def _proportional(best: Array, assumptions: Assumptions) -> dict[str, Array]:
-    """Return the parts that follow from an offset itself, for one that is free of a zero error."""
-    instrument, guide = assumptions.instrument, assumptions.guide
-    gone = np.abs(best - np.array([[guide.start_east], [guide.start_north]]))
-    return {
-        SCALE: instrument.u_scale * gone,
-        AZIMUTH: instrument.u_azimuth * gone[::-1],
-        DEPTH: instrument.u_depth_fraction * gone,
-    }
+def _of_axes(best: Array, assumptions: Assumptions) -> dict[str, Array]:
+    """Return what the axes put into an offset that is free of a zero error."""
+    guide = assumptions.guide
+    gone = best - np.array([[guide.start_east], [guide.start_north]])
+    return dict(zip((SCALE, AZIMUTH), of_axes(assumptions.instrument, gone), strict=True))
 
 
 def _tied_part(up: Array) -> Array:
@@ -218,9 +224,12 @@ def _tied(line: _Line, assumptions: Assumptions, notes: list[str]) -> _Line:
 
     Notes
     -----
-    What is taken away is the misclosure times t = (z - z0)/(Z - z0). An error in proportion to depth, such as a zero
-    offset, is taken away whole; of any other part p(z) there stays p(z) - t p(Z), of a random walk with variance v
-    the bridge v(z) (1 - 2t) + t² v(Z); the end's own uncertainty comes in by t.
+    What is taken away is the misclosure times t = (z - z0)/(Z - z0), whatever made it, also an error of what is
+    expected. One in proportion to depth, such as a zero offset, goes whole; of any other part p(z) there stays
+    p(z) - t p(Z), of a random walk with variance v the bridge v(z) (1 - 2t) + t² v(Z). Scale and azimuth err in
+    proportion to an offset, and stay with what of it is no straight line to the end. Parts that follow the slope at a
+    station have lost their sign: they are taken as correlated by t with that at the end. The end's own uncertainty
+    comes in by t.
     """
     guide = assumptions.guide
     if guide.end_east is None or guide.end_north is None or line.depth.size < 2:
@@ -238,7 +247,9 @@ def _tied(line: _Line, assumptions: Assumptions, notes: list[str]) -> _Line:
         line.depth, line.residual[0], line.residual[1], float(end[0]), float(end[1])
     )
     t = (line.depth - line.depth[0]) / (line.depth[-1] - line.depth[0])
-    parts = {name: _bridged(name, part, t) if name in _SPREAD else part for name, part in line.parts.items()}
+    parts = {name: _bridged(name, part, t) for name, part in line.parts.items()}
+    start = line.residual[:, :1]
+    parts |= _of_axes(line.residual - t * (line.residual[:, -1:] - start), assumptions)
     parts[END] = guide.u_end * np.stack([t, t])
     return replace(line, residual=np.stack([east, north]), parts=parts, tied=True)
 
@@ -247,7 +258,11 @@ def _bridged(name: str, part: Array, t: Array) -> Array:
     if name == RANDOM:
         left: Array = np.sqrt(np.maximum(part**2 * (1.0 - 2.0 * t) + t**2 * part[:, -1:] ** 2, 0.0))
         return left
-    return np.abs(part - t * part[:, -1:])
+    end = t * part[:, -1:]
+    if name in _OF_SLOPE:
+        open_: Array = np.sqrt(part**2 - 2.0 * t * part * end + end**2)
+        return open_
+    return np.abs(part - end)
 
 
 def _told(line: _Line, stations: tuple[Station, ...]) -> tuple[Best, ...]:

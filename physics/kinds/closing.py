@@ -32,7 +32,8 @@ KEPT = (
     "slope_east",
     "slope_north",
     "lever",
-    "bend",
+    "pull_east",
+    "pull_north",
     "face",
 )
 """What is known of a row for the station that may be closed there."""

@@ -28,6 +28,7 @@ from eastfall.physics.kinds.gaps import Gaps
 from eastfall.physics.kinds.lever import Lever
 from eastfall.physics.kinds.plumbguide import PlumbGuide
 from eastfall.physics.kinds.shares import Shares, Summed
+from eastfall.physics.kinds.sidepull import SidePull
 from eastfall.physics.kinds.stillsum import StillSum
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
@@ -62,6 +63,7 @@ class Guided:
         )
         self._faces = FaceBins(run.station_every, reach(assumptions))
         self._shares = Shares(assumptions)
+        self._pull = SidePull()
         self._lever = Lever(instrument.a_azimuth + instrument.north_offset)
         self._last: Array | None = None
         self._depth: float | None = None
@@ -122,18 +124,16 @@ class Guided:
         ridden, leaning = self._plumb.ride(depth, rows[ROW["speed"]], lag)
         self._gather(readings, slopes, leaning, azimuth, rests)
         speed = rows[ROW["speed"]]
-        bend = np.where(np.isnan(speed), 0.0, speed) ** 2 / self._curve.models.field.gravity
+        bend = speed * speed / self._curve.models.field.gravity
         if self._still is None:
             at, summed = self._moving(readings, rows, slopes, ridden, azimuth, bend)
         else:
             at, summed = self._halting(self._still, rows, azimuth, rests)
         if self.u_of_rows:
             rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(at, summed)
-        else:
-            self._shares.begin(summed)
         columns = (
             *(readings.time, depth, *rows[5:9], summed.weight, *summed.slope),
-            *(summed.lever, summed.bend, readings.column("face")),
+            *(summed.lever, *summed.pull, readings.column("face")),
         )
         rows[ROW["passing"]], rows[ROW["direction"]], due = self._closing.take(columns, rests)
         fill_limits(rows, self._assumptions.limits)
@@ -157,7 +157,10 @@ class Guided:
         rows[ROW["expected_east"]], rows[ROW["expected_north"]] = expected
         told = np.isfinite(readings.column("azimuth")) | np.isfinite(readings.column("face"))
         lever = self._lever.update(depth, azimuth, told)
-        return depth, Summed(offset=rows[5:7], weight=weight, slope=slopes, lever=lever, bend=bend)
+        pull = self._pull.update(bend, slopes)
+        return depth, Summed(
+            depth=depth, offset=rows[5:7], weight=weight, slope=slopes, lever=lever, pull=pull
+        )
 
     def _halting(
         self, still: StillSum, rows: Array, azimuth: Array, rests: list[tuple[int, Rest]]
@@ -173,7 +176,12 @@ class Guided:
             before, 0.0, self._plumb.at_rest(at)
         )
         return at, Summed(
-            offset=held[1:3], weight=held[3], slope=held[4:6], lever=held[6], bend=np.zeros(at.size)
+            depth=at,
+            offset=held[1:3],
+            weight=held[3],
+            slope=held[4:6],
+            lever=held[6],
+            pull=np.zeros((2, at.size)),
         )
 
     def _gather(
@@ -243,7 +251,7 @@ class Guided:
             names=(*self._shares.names, *self._curve.budget.names),
             parts=np.concatenate([self._shares.parts(_summed(kept)), self._curve.budget.at(at)]),
             halt=_halt(first.rest),
-            face=kept[11],
+            face=kept[12],
             before=before,
         )
         found = stations_of(facts, self._assumptions)
@@ -332,7 +340,9 @@ class Guided:
 
 def _summed(kept: Array) -> Summed:
     """Return where the sum stood at rows kept in the order of `KEPT`, shape (len(KEPT), n)."""
-    return Summed(offset=kept[2:4], weight=kept[6], slope=kept[7:9], lever=kept[9], bend=kept[10])
+    return Summed(
+        depth=kept[1], offset=kept[2:4], weight=kept[6], slope=kept[7:9], lever=kept[9], pull=kept[10:12]
+    )
 
 
 def _alike(one: Due, other: Due) -> bool:

@@ -25,6 +25,7 @@ from eastfall.physics.kinds.base import (
     rows_of,
     usable,
 )
+from eastfall.physics.kinds.shares import AZIMUTH, SCALE, ZERO, of_axes
 from eastfall.physics.lineangle import LineAngle, line_angle
 from eastfall.physics.moving import LineSpeed
 from eastfall.physics.readings import Readings
@@ -310,13 +311,9 @@ class Hung(Plain):
         if level.direct:
             return (), np.empty((0, 2, 1))
         instrument = self._assumptions.instrument
-        away = np.abs(position)
-        parts = [
-            np.full(2, instrument.u_zero * level.depth),
-            instrument.u_scale * away,
-            instrument.u_azimuth * away[::-1],
-        ]
-        return ("tilt, zero", "tilt, scale", "azimuth"), np.array(parts)[:, :, None]
+        zero = np.full((2, 1), instrument.u_zero * level.depth)
+        parts = np.stack([zero, *of_axes(instrument, position[:, None])])
+        return (ZERO, SCALE, AZIMUTH), parts
 
     def _station(self, level: _Level) -> Station:
         position, names, parts = self._position(level)

@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.kinds.base import RANDOM
-from eastfall.physics.settings import Assumptions
+from eastfall.physics.settings import Assumptions, Instrument
 
 Array = NDArray[np.float64]
 
@@ -22,6 +22,8 @@ class Summed:
 
     Parameters
     ----------
+    depth : ndarray, shape (n,)
+        That the offsets stand for [m].
     offset : ndarray, shape (2, n)
         Measured, east and north [m].
     weight : ndarray, shape (n,)
@@ -30,24 +32,53 @@ class Summed:
         East and north [m/m].
     lever : ndarray, shape (n,)
         What a zero offset is multiplied by: |∫ exp(iα) dz|, α the azimuth of A; the depth gone, where that stays [m].
-    bend : ndarray, shape (n,)
-        v²/g of the line [m].
+    pull : ndarray, shape (2, n)
+        What the bends of the guide have put into the sum, east and north [m]: see `sidepull`.
     """
 
+    depth: Array
     offset: Array
     weight: Array
     slope: Array
     lever: Array
-    bend: Array
+    pull: Array
 
     def __getitem__(self, part: slice) -> "Summed":
         return Summed(
+            depth=self.depth[part],
             offset=self.offset[:, part],
             weight=self.weight[part],
             slope=self.slope[:, part],
             lever=self.lever[part],
-            bend=self.bend[part],
+            pull=self.pull[:, part],
         )
+
+
+def of_axes(instrument: Instrument, offset: Array) -> tuple[Array, Array]:
+    """Give what the scales and the azimuth of the A axis put into an offset that was summed from tilts.
+
+    Parameters
+    ----------
+    instrument : Instrument
+    offset : ndarray, shape (2, n)
+        From the start of the sum, east and north [m].
+
+    Returns
+    -------
+    scale, azimuth : ndarray, shape (2, n)
+        Standard uncertainties [m].
+
+    Notes
+    -----
+    Each axis errs by a scale of its own: an offset p along A and q along B, A at azimuth α, is wrong by
+    u √(p² sin² α + q² cos² α) toward east and u √(p² cos² α + q² sin² α) toward north, so that an offset due north errs
+    east as well. An azimuth error turns the offset.
+    """
+    alpha = instrument.a_azimuth + instrument.north_offset
+    s, c = np.sin(alpha), np.cos(alpha)
+    along_a, along_b = s * offset[0] + c * offset[1], c * offset[0] - s * offset[1]
+    scale = np.hypot([s * along_a, c * along_a], [c * along_b, s * along_b])
+    return instrument.u_scale * scale, instrument.u_azimuth * np.abs(offset[::-1])
 
 
 class Shares:
@@ -62,10 +93,10 @@ class Shares:
     def __init__(self, assumptions: Assumptions) -> None:
         instrument = assumptions.instrument
         self._instrument = instrument
-        self._guide = assumptions.guide
+        guide = assumptions.guide
+        self._start = np.array([[guide.start_east], [guide.start_north]])
         self._u_counter = assumptions.depth.u_offset
-        self._random = instrument.u_tilt if assumptions.guide.readings == "all" else 1.0
-        self._first: Array | None = None
+        self._random = instrument.u_tilt if guide.readings == "all" else 1.0
         self._added: dict[str, Array] = {}
         self._leans = _Spread()
 
@@ -90,31 +121,23 @@ class Shares:
 
         Notes
         -----
-        A probe that follows a guide of slope P' at speed v is pulled sideways by v² P'' + a P', which it shows as a
-        tilt. Since a dz = ½ d(v²), the sum gains (v² P' - ½ v² P'(0))/g once the line has got up to speed. It is left
-        in, and counted as uncertainty.
+        A station stands at the depth that the counter shows. Where the counter errs by a share d of depth, the sum of
+        steps errs by d (P - P0), and the guide is met d z too high: together d |P - P0 - z P'|. What the bends of the
+        guide put into the sum is left in, and counted as uncertainty.
         """
         instrument = self._instrument
         parts = np.empty((len(self.names), 2, summed.weight.size))
-        east = np.abs(summed.offset[0] - self._guide.start_east)
-        north = np.abs(summed.offset[1] - self._guide.start_north)
+        gone = summed.offset - self._start
         parts[0] = self._random * np.sqrt(summed.weight)
         parts[1] = instrument.u_zero * summed.lever
-        parts[2] = instrument.u_scale * east, instrument.u_scale * north
-        parts[3] = instrument.u_azimuth * north, instrument.u_azimuth * east
-        parts[4] = instrument.u_depth_fraction * east, instrument.u_depth_fraction * north
-        parts[5] = summed.bend * np.abs(summed.slope - 0.5 * self.begin(summed))
+        parts[2], parts[3] = of_axes(instrument, gone)
+        parts[4] = instrument.u_depth_fraction * np.abs(gone - summed.depth * summed.slope)
+        parts[5] = np.abs(summed.pull)
         if self._u_counter:
             parts[6] = self._u_counter * np.abs(summed.slope)
         for row, one in enumerate(reversed(self._added.values()), start=1):
             parts[-row] = one[:, None]
         return parts
-
-    def begin(self, summed: Summed) -> Array:
-        """Take note of the slope that the run begins with, of its first rows; return it, shape (2, 1) [m/m]."""
-        if self._first is None:
-            self._first = summed.slope[:, :1].copy()
-        return self._first
 
     def lean(self, east: float, north: float) -> None:
         """Take note of the mean slope between two stations [m/m]: how much the guide varies."""
