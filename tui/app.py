@@ -5,12 +5,14 @@ import contextlib
 import os
 import signal
 import sys
+from collections.abc import Sequence
 from dataclasses import replace
-from typing import ClassVar
+from typing import Any, ClassVar
 
 from textual.app import App
 from textual.binding import BindingType
 from textual.driver import Driver
+from textual.filter import LineFilter
 from textual.message import Message
 from textual.screen import Screen
 
@@ -18,9 +20,10 @@ from eastfall.io.safetext import safe
 from eastfall.tui import keys
 from eastfall.tui.feed import Feed, LiveFeed
 from eastfall.tui.glyphs import BRAILLE, Glyphs
+from eastfall.tui.plainfilter import PlainFilter
 from eastfall.tui.preferences import Remembered
 from eastfall.tui.replayfeed import ReplayFeed
-from eastfall.tui.screens.dialogs import Confirm
+from eastfall.tui.screens.dialogs import Confirm, shown_in
 from eastfall.tui.screens.help import HelpScreen
 from eastfall.tui.screens.settings import SettingsScreen
 from eastfall.tui.screens.start import Choice
@@ -76,6 +79,7 @@ class Dashboard(App[int]):
         self.theme = MONO.name if no_colour else theme or theme_named(self.remembered.now.theme)
         self.glyphs = glyphs
         self.set_class(glyphs.name == "ascii", "-ascii")
+        self._sieve = PlainFilter()
         self.muted = not self.remembered.now.sound
         changes, self._refused = keys.moved(self.remembered.now.keys)
         self.keys_now = keys.Keymap(changes)
@@ -97,6 +101,11 @@ class Dashboard(App[int]):
         from eastfall.tui.driver import PatientDriver  # noqa: PLC0415 (POSIX alone has what it imports)
 
         return PatientDriver
+
+    def get_line_filters(self) -> Sequence[LineFilter]:
+        """Have nothing beyond ASCII drawn, by whatever widget, where the terminal has plain letters only."""
+        plain = (self._sieve,) if self.glyphs.name == "ascii" else ()
+        return (*super().get_line_filters(), *plain)
 
     def on_mount(self) -> None:
         """Leave cleanly on the signals that Textual does not catch, then show the first screen."""
@@ -148,6 +157,10 @@ class Dashboard(App[int]):
     def cell_aspect(self) -> float:
         """Height of a character cell over its width."""
         return self.remembered.now.cell_aspect
+
+    def notify(self, message: str, **how: Any) -> None:
+        """Say something for a while, in the letters of this terminal."""
+        super().notify(shown_in(self, message), **how)
 
     def remember(self, **settings: object) -> None:
         """Change settings and keep them; say so when they cannot be kept."""

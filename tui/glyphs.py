@@ -1,4 +1,4 @@
-"""The characters of a terminal: how dots become letters, and what plain letters stand for the finer ones."""
+"""The characters of a terminal: how dots become letters."""
 
 from dataclasses import dataclass
 from typing import Literal
@@ -27,9 +27,6 @@ ASCII_OF_ROLE = {
     Role.FALL: "d",
     Role.DIM: ".",
 }
-_PLAIN = str.maketrans(
-    {"±": "+-", "°": " deg", "–": "-", "↑": "up", "↓": "down", "←": "left", "→": "right", "²": "2", "³": "3"}
-)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -91,8 +88,3 @@ ASCII = Glyphs(
     samples=("#", ":", ".", "'", "|"),
 )
 GLYPHS: dict[str, Glyphs] = {one.name: one for one in (BRAILLE, HALF, ASCII)}
-
-
-def in_ascii(words: str) -> str:
-    """Return words in plain letters, as far as this program writes others."""
-    return words if words.isascii() else words.translate(_PLAIN)

@@ -11,6 +11,7 @@ import click
 
 from eastfall.io.cautions import CAUTIONS
 from eastfall.physics.errors import EastfallError
+from eastfall.tui.saying import never_fail, say
 
 VERBS: dict[str, tuple[str, str]] = {
     "demo": ("live", "run the whole job on a built-in emulated instrument"),
@@ -75,6 +76,7 @@ def cli(ctx: click.Context) -> None:
 def main() -> None:
     """Run the command line and end the process with its exit status."""
     _open_missing_streams()
+    never_fail()
     # Nothing here multiplies large matrices: threads that wait for it took 50 ms of a core at every start.
     os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")
     try:
@@ -82,10 +84,10 @@ def main() -> None:
     except click.exceptions.Abort:
         status = 130
     except click.ClickException as error:
-        click.echo(f"eastfall: {_one_line(error.format_message())}{_where_help_is(error)}", err=True)
+        say(f"eastfall: {_one_line(error.format_message())}{_where_help_is(error)}", err=True)
         status = 2
     except EastfallError as error:
-        click.echo(f"eastfall: {_one_line(str(error))}", err=True)
+        say(f"eastfall: {_one_line(str(error))}", err=True)
         status = 2
     except SystemExit:
         # The command-line library ends the process itself when whoever read the output has gone.
@@ -97,7 +99,7 @@ def main() -> None:
     except OSError as error:
         # What the verbs expect to fail they word themselves; this is the rest, as a full disk behind a pipe.
         where = f"{error.filename}: " if error.filename else ""
-        click.echo(f"eastfall: {_one_line(f'{where}{error.strerror or error}')}", err=True)
+        say(f"eastfall: {_one_line(f'{where}{error.strerror or error}')}", err=True)
         status = 2
     sys.exit(status if isinstance(status, int) else 0)
 

@@ -12,7 +12,8 @@ from typing import Any, Self
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.tui.glyphs import ASCII_OF_ROLE, BLANK, Glyphs, in_ascii
+from eastfall.tui.glyphs import ASCII_OF_ROLE, BLANK, Glyphs
+from eastfall.tui.letters import in_ascii
 from eastfall.tui.roles import Role
 
 Floats = NDArray[np.float64]
@@ -22,6 +23,7 @@ Packed = NDArray[np.uint16]
 FILLER = 0xE000
 """Second column of a wide letter; left out when the row becomes text."""
 _UNPRINTABLE = ord("·")
+_LAST_ASCII = 126
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -122,7 +124,10 @@ class Raster:
 
     def text(self, column: int, row: int, words: str, role: Role) -> int:
         """Write over whatever is there, leave out what falls outside, and return how many columns the words take."""
-        codes = columns(in_ascii(words) if self.glyphs.name == "ascii" else words)
+        plain = self.glyphs.name == "ascii"
+        codes = columns(in_ascii(words) if plain else words)
+        if plain and codes.size and codes.max() > _LAST_ASCII:
+            codes = np.where(codes > _LAST_ASCII, ord("?"), codes).astype(np.int32)
         start, stop = max(column, 0), min(column + len(codes), self.width)
         if start < stop and 0 <= row < self.height:
             self._letters[row, start:stop] = codes[start - column : stop - column]

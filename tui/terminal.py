@@ -4,6 +4,7 @@ from collections.abc import Mapping
 
 from eastfall.io.errors import InputError
 from eastfall.tui.glyphs import ASCII, BRAILLE, GLYPHS, HALF, Glyphs
+from eastfall.tui.letters import can, is_plain
 
 
 def refuse_unless_screen(environment: Mapping[str, str], *, is_terminal: bool) -> None:
@@ -28,17 +29,10 @@ def glyphs_for(environment: Mapping[str, str], encoding: str | None, wish: str =
     asked = environment.get("EASTFALL_GLYPHS") or wish
     if asked in GLYPHS:
         return GLYPHS[asked]
-    if not _can(encoding, "⣿"):
-        return ASCII if not _can(encoding, "▀") else HALF
-    return HALF if environment.get("TERM", "").startswith(("linux", "vt")) else BRAILLE
-
-
-def _can(encoding: str | None, letter: str) -> bool:
-    try:
-        letter.encode(encoding or "ascii")
-    except (UnicodeEncodeError, LookupError):
-        return False
-    return True
+    if is_plain(environment, encoding) or not can(encoding, "▀"):
+        return ASCII
+    # The text console of Linux has half blocks in its fonts, and no braille.
+    return HALF if environment.get("TERM", "").startswith("linux") or not can(encoding, "⣿") else BRAILLE
 
 
 def wants_no_colour(environment: Mapping[str, str]) -> bool:

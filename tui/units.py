@@ -46,15 +46,15 @@ class Units:
 
     def depth(self, value: float, places: int = 1) -> str:
         """Return metres in the long unit, without its mark."""
-        return f"{value / self.long_size:.{places}f}" if isfinite(value) else NONE
+        return _written(value / self.long_size, places)
 
     def offset(self, value: float, places: int = 1) -> str:
         """Return metres in the short unit, without its mark; `places` are those of millimetres."""
-        return f"{value / self.short_size:.{self._places(places)}f}" if isfinite(value) else NONE
+        return _written(value / self.short_size, self._places(places))
 
     def signed(self, value: float, places: int = 1) -> str:
         """Return metres in the short unit with their sign, without the mark."""
-        return f"{value / self.short_size:+.{self._places(places)}f}" if isfinite(value) else NONE
+        return _written(value / self.short_size, self._places(places), "+")
 
     def _places(self, places: int) -> int:
         return places + self.finer
@@ -72,6 +72,13 @@ class Units:
     def in_words(self) -> str:
         """Return both units as a sentence part."""
         return f"{self.long_name} and {self.short_name}" + (", decimal" if self.name == "feet" else "")
+
+
+def _written(value: float, places: int, sign: str = "") -> str:
+    """Return a number of so many places; nothing is written as minus nothing."""
+    if not isfinite(value):
+        return NONE
+    return f"{round(value, places) + 0.0:{sign}.{places}f}"
 
 
 METRIC = Units(name="metric", long="m", short="mm", long_size=1.0, short_size=1e-3, finer=0)

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Protocol
 from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.findings import AlarmChange, AlarmView, RestPoint, Standing
 from eastfall.physics.verdict import horizontal
-from eastfall.tui.units import METRIC, Units, lengths_in
+from eastfall.tui.units import METRIC, NONE, Units, lengths_in
 
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind, Reference
@@ -52,7 +52,7 @@ class Judged(Protocol):
 def bearing(east: float, north: float) -> str:
     """Return the direction of an offset, clockwise from north, as three digits and a degree sign."""
     if not (isfinite(east) and isfinite(north)) or (east == 0.0 and north == 0.0):
-        return "–"
+        return NONE
     return f"{round(degrees(atan2(east, north))) % 360:03d}°"
 
 
@@ -80,11 +80,19 @@ def answer(one: Judged | None, units: Units = METRIC) -> str:
     length = residual_length(one)
     if not isfinite(length):
         return f"NO ANSWER {units.depth(one.depth)} {units.long}: no offset in the readings"
+    way = bearing(one.residual_east, one.residual_north)
     return (
-        f"{decision(one)} {units.depth(one.depth)} {units.long}: residual {units.offset(length)} ± "
-        f"{units.offset(expanded(one))} {units.short} toward {bearing(one.residual_east, one.residual_north)}, "
-        f"limit {units.offset(one.action)} {units.short}"
+        f"{decision(one)} {units.depth(one.depth)} {units.long}: residual {_size(one, length, units)}"
+        f"{f' toward {way}' if way != NONE else ''}, limit {units.offset(one.action)} {units.short}"
     )
+
+
+def _size(one: Judged, length: float, units: Units) -> str:
+    """Return a residual with its uncertainty and the unit."""
+    u = expanded(one)
+    if not isfinite(u):
+        return f"{units.offset(length)} {units.short} (± not known)"
+    return f"{units.offset(length)} ± {units.offset(u)} {units.short}"
 
 
 def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
@@ -186,7 +194,7 @@ _WANTED = 0.0005
 def clock(seconds: float) -> str:
     """Return a time since the start as h:mm:ss, or m:ss below an hour."""
     if not isfinite(seconds):
-        return "–"
+        return NONE
     whole = int(seconds)
     hours, minutes = divmod(whole // 60, 60)
     return f"{hours}:{minutes:02d}:{whole % 60:02d}" if hours else f"{minutes}:{whole % 60:02d}"

@@ -111,3 +111,12 @@ def test_answer_that_is_no_number_leaves_axes_and_title(standing: Make) -> None:
     cells = drawn(PlanView(one=one, diameter=5.5))
     assert "plan, " in cells.lines()[0]
     assert not (cells.chars[:-1] == ord("●")).any()
+
+
+def test_wall_is_drawn_before_the_first_reading() -> None:
+    """A drop that waits for its arming shows the shaft and its width, not a bare cross."""
+    cells = drawn(PlanView(one=None, diameter=5.0, centre=(0.1, 0.0)), "wall")
+    assert "shaft, 5.4 m across" in cells.lines()[0]
+    across, down = extent(cells, Role.WALL)
+    assert across == pytest.approx(2 * down, abs=2)
+    assert across > 30

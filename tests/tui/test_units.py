@@ -96,6 +96,15 @@ def test_units_of_the_site_file_are_shown_in_the_readers(mark: str, shown: str, 
     assert size_of(mark, METRIC) == (mark, 1.0)
 
 
+@pytest.mark.parametrize("units", UNITS.values(), ids=UNITS)
+def test_nothing_is_not_written_with_a_minus(units) -> None:
+    """What rounds to nothing has no sign of its own; what is unknown is a dash."""
+    assert units.signed(-1e-9) == units.signed(0.0) == f"+{units.offset(0.0)}"
+    assert units.offset(-1e-9) == units.offset(0.0)
+    assert units.depth(-1e-9) == "0.0"
+    assert {units.signed(math.nan), units.offset(math.inf), units.depth(math.nan)} == {"–"}
+
+
 @pytest.mark.parametrize(
     ("said", "told"),
     [

@@ -12,7 +12,8 @@ from textual.widgets import Input, Static
 
 from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
-from eastfall.tui.glyphs import BRAILLE, Glyphs, in_ascii
+from eastfall.tui.glyphs import BRAILLE, Glyphs
+from eastfall.tui.letters import in_ascii
 
 
 class Plain(Static):

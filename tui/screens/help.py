@@ -1,5 +1,7 @@
 """The help page: the keys of the screen one came from, and how to read what is on it."""
 
+from collections.abc import Callable
+from functools import partial
 from typing import ClassVar
 
 from textual.app import ComposeResult
@@ -10,7 +12,7 @@ from textual.screen import Screen
 from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.screens.dialogs import plain, shown_in
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine
@@ -52,9 +54,17 @@ def reading(keymap: keys.Keymap, units: Units = METRIC) -> str:
     return _READING.format(steer=keymap["watch.steer"], long=units.long_name, short=units.short_name)
 
 
-def key_table(keymap: keys.Keymap, *places: str, replay: bool = False, drop: bool = False) -> str:
-    """Return the keys of some places, one a line."""
-    return "\n".join(f"{key:<10}{what}" for key, what in keymap.page(*places, replay=replay, drop=drop))
+def key_table(
+    keymap: keys.Keymap,
+    *places: str,
+    replay: bool = False,
+    drop: bool = False,
+    spelled: Callable[[str], str] = str,
+) -> str:
+    """Return the keys of some places, one a line; `spelled` puts a key into the letters of the terminal."""
+    told = [(spelled(key), what) for key, what in keymap.page(*places, replay=replay, drop=drop)]
+    width = max((len(key) for key, _ in told), default=0) + 1
+    return "\n".join(f"{key:<{width}}{what}" for key, what in told)
 
 
 class HelpScreen(Screen[None]):
@@ -70,7 +80,14 @@ class HelpScreen(Screen[None]):
         """Show the keys, how to read the picture, and the cautions."""
         keymap = keys.keymap_of(self.app)
         scroll = f"{keymap['list.up']} {keymap['list.down']}"
-        table = key_table(keymap, *self._places, "all", replay=self._replay, drop=self._drop)
+        table = key_table(
+            keymap,
+            *self._places,
+            "all",
+            replay=self._replay,
+            drop=self._drop,
+            spelled=partial(shown_in, self.app),
+        )
         with VerticalScroll(classes="page"):
             yield plain(f"Keys   ({keymap['page.close']} goes back, {scroll} scroll)\n\n" + table)
             yield plain("\n" + reading(keymap, getattr(self.app, "units", METRIC)))

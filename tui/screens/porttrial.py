@@ -23,9 +23,10 @@ from eastfall.io.trial import KEPT, Heard, LineRead, LineReader, Trial
 from eastfall.physics.errors import ParameterError
 from eastfall.tui import keys
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.screens.dialogs import plain, shown_in
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
+from eastfall.tui.widgets.table import fit_bar
 from eastfall.tui.widgets.trial import Reasons, TrialLines
 
 Ports = Callable[[], Sequence[str]]
@@ -118,6 +119,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
     def on_mount(self) -> None:
         """Look for ports, and draw from now on."""
         self.query_one(OptionList).can_focus = False
+        fit_bar(self.query_one(OptionList))
         self.query_one("#url", Input).focus()
         self.set_interval(_DRAW, self._tick)
         self._look_for_ports()
@@ -146,9 +148,13 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
     def _show_ports(self, found: Sequence[str], otherwise: str) -> None:
         options = self.query_one(OptionList)
         options.clear_options()
-        options.add_options([Option(Text(f"  {safe(one, 76)}"), id=f"port {one}") for one in found])
+        options.add_options(
+            [Option(Text(shown_in(self.app, f"  {safe(one, 76)}")), id=f"port {one}") for one in found]
+        )
         if not found:
-            options.add_option(Option(Text(f"  {otherwise}; type an address"), disabled=True))
+            options.add_option(
+                Option(Text(shown_in(self.app, f"  {otherwise}; type an address")), disabled=True)
+            )
 
     def action_move(self, by: int) -> None:
         """Take the next port of the list, or the next speed, where the line for it has the keyboard."""

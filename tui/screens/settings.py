@@ -69,7 +69,7 @@ def in_words(one: Setting, value: object) -> str:
     if isinstance(value, Mapping):
         return f"{f'{len(value)} moved' if value else 'as they were made'}; the list of their names"
     if not one.values:
-        return safe(str(value), 60) or "eastfall-runs in the folder where the program is started"
+        return safe(str(value), 60) or "eastfall-runs, where the program is started"
     return one.shown[one.values.index(value)] if value in one.values else str(value)
 
 

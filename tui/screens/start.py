@@ -16,10 +16,11 @@ from textual.widgets.option_list import Option
 from eastfall.io.cautions import CAUTIONS
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
-from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.screens.dialogs import plain, shown_in
 from eastfall.tui.units import METRIC
 from eastfall.tui.widgets.cells import PaintedScreen
 from eastfall.tui.widgets.line import KeyLine
+from eastfall.tui.widgets.table import fit_bar
 from eastfall.tui.words import size
 
 if TYPE_CHECKING:
@@ -108,32 +109,32 @@ class StartScreen(PaintedScreen[Choice | None]):
 
     def on_mount(self) -> None:
         """Take the keys."""
+        fit_bar(self.query_one(OptionList))
         self.query_one(OptionList).focus()
         self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("start", "all"))
 
     def _options(self) -> list[Option | None]:
-        options: list[Option | None] = [_head("Try it without an instrument")]
+        options: list[Option | None] = [self._head("Try it without an instrument")]
         options += [
             self._option(f"demo {kind}", f"demo, {what}", Choice(what="demo", kind=kind))
             for kind, what in _DEMO
         ]
         sites = self._sites()
         options.append(
-            _head("Watch live: site files" if sites else "Watch live: no site file in this folder")
+            self._head("Watch live: site files" if sites else "Watch live: no site file in this folder")
         )
         options += [
             self._option(f"watch {path}", self._shown(path), Choice(what="watch", path=path))
             for path in sites
         ]
         options += [
-            Option(Text("  write a new site file"), id="new"),
-            Option(
-                Text(f"  edit a site file (or {keys.keymap_of(self.app)['start.edit']} on one above)"),
-                id="edit",
+            self._line("write a new site file", "new"),
+            self._line(
+                f"edit a site file (or {keys.keymap_of(self.app)['start.edit']} on one above)", "edit"
             ),
         ]
         logs = recent(self._folder, (self._suffix,))
-        options.append(_head("Replay: run logs here" if logs else "Replay: no run log in this folder"))
+        options.append(self._head("Replay: run logs here" if logs else "Replay: no run log in this folder"))
         options += [
             self._option(
                 f"replay {path}",
@@ -142,10 +143,8 @@ class StartScreen(PaintedScreen[Choice | None]):
             )
             for path in logs
         ]
-        options.append(
-            Option(Text("  the shelf: all runs, verdicts; compare two, write reports"), id="shelf")
-        )
-        options.append(_head("Expect: change latitude, depth, body, wire, air; see the curves move"))
+        options.append(self._line("the shelf: all runs, verdicts; compare two, write reports", "shelf"))
+        options.append(self._head("Expect: change latitude, depth, body, wire, air; see the curves move"))
         options += [
             self._option(f"explore {path}", f"explore {self._shown(path)}", Choice(what="explore", path=path))
             for path in sites[:_EXPLORED]
@@ -153,9 +152,9 @@ class StartScreen(PaintedScreen[Choice | None]):
         options.append(self._option("explore", "explore an invented shaft", Choice(what="explore")))
         if self._ports is not None:
             options += [
-                _head("Instruments"),
-                Option(Text("  try a port: raw lines, and how they read"), id="trial"),
-                Option(Text("  check the serial ports of this machine"), id="ports"),
+                self._head("Instruments"),
+                self._line("try a port: raw lines, and how they read", "trial"),
+                self._line("check the serial ports of this machine", "ports"),
             ]
         return options
 
@@ -171,7 +170,13 @@ class StartScreen(PaintedScreen[Choice | None]):
 
     def _option(self, name: str, words: str, choice: Choice) -> Option:
         self._choices[name] = choice
-        return Option(Text(f"  {words}"), id=name)
+        return self._line(words, name)
+
+    def _line(self, words: str, name: str) -> Option:
+        return Option(Text(shown_in(self.app, f"  {words}")), id=name)
+
+    def _head(self, words: str) -> Option:
+        return Option(Text(shown_in(self.app, words), style="bold"), disabled=True)
 
     def on_option_list_option_selected(self, event: OptionList.OptionSelected) -> None:
         """Close with the choice, or look for ports."""
@@ -245,7 +250,3 @@ class StartScreen(PaintedScreen[Choice | None]):
     def _show_ports(self, words: str) -> None:
         again = keys.keymap_of(self.app)["start.open"]
         self.query_one(OptionList).replace_option_prompt("ports", Text(f"{words}\n  ({again} looks again)"))
-
-
-def _head(words: str) -> Option:
-    return Option(Text(words, style="bold"), disabled=True)

@@ -20,6 +20,7 @@ from eastfall.tui.app import Dashboard
 from eastfall.tui.opening import since_start
 from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.roles import Role
+from eastfall.tui.saying import say
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session, replay_session
 from eastfall.tui.terminal import glyphs_for, wants_no_colour
@@ -154,7 +155,7 @@ def main(log: Path, parent: int, theme: str) -> None:
     try:
         view(log, THEME_NAMES[theme])
     except EastfallError as error:
-        click.echo(f"eastfall: view: {error}", err=True)
+        say(f"eastfall: view: {error}", err=True)
         sys.exit(2)
 
 

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import click
 
+from eastfall.tui.saying import say
 from eastfall.tui.verbs.options import Number, an_input, readers_units
 
 if TYPE_CHECKING:
@@ -35,7 +36,7 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
 def _plainly(found: "Replay") -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(click.echo, found.site.assumptions.run.kind, units=readers_units())
+    lines = PlainLines(say, found.site.assumptions.run.kind, units=readers_units())
     with closing(found):
         update = found.step()
         while not found.ended:

@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 import click
 
 from eastfall.physics.errors import EastfallError
+from eastfall.tui.saying import say, say_path
 from eastfall.tui.verbs.options import above_nothing, an_input, into, readers_units
 
 if TYPE_CHECKING:
@@ -93,13 +94,13 @@ def record(
 
     loaded = load_site(site)
     with _recorded(loaded, links, into, _cleared(loaded, shaft_clear)) as run, _signals() as stopped, run:
-        click.echo(run.log_path)
+        say_path(run.log_path)
         sys.stdout.flush()
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
             _tell(run.step(_STEP))
         last = run.stop()
-    click.echo(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
+    say(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
     judge_record(last.health)
 
 
@@ -113,7 +114,7 @@ def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path, seconds: 
     # The links are opened before the screen: one that cannot be had is told in one line, here and now.
     with _recorded(site, links, folder, None) as run, run:
         status = run_live(site, run=run, curve=run.pipeline.survey.curve, seconds=seconds)
-    click.echo(run.log_path)
+    say_path(run.log_path)
     click.get_current_context().exit(status)
 
 
@@ -139,7 +140,7 @@ def _plainly(
 ) -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(click.echo, site.assumptions.run.kind, units=readers_units())
+    lines = PlainLines(say, site.assumptions.run.kind, units=readers_units())
     with _recorded(site, links, folder, _cleared(site, shaft_clear)) as run, _signals() as stopped, run:
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
@@ -147,16 +148,14 @@ def _plainly(
             sys.stdout.flush()
         last = run.stop()
         lines.end(last)
-    click.echo(run.log_path)
+    say_path(run.log_path)
     judge_record(last.health)
 
 
 def judge_record(health: "Health") -> None:
     """End with status 1 where lines that came are not in the log: a full disk, a folder that is gone."""
     if health.log_lost:
-        click.echo(
-            f"eastfall: {health.log_path}: incomplete, {health.log_lost} lines or events lost", err=True
-        )
+        say(f"eastfall: {health.log_path}: incomplete, {health.log_lost} lines or events lost", err=True)
         click.get_current_context().exit(1)
 
 
@@ -197,7 +196,7 @@ def _tell(update: "RunUpdate") -> None:
     """Write alarm changes to standard error as they come."""
     for one in update.findings:
         for change in one.alarms:
-            click.echo(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
+            say(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
 
 
 @contextmanager

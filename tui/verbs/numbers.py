@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from eastfall.tui import words
+from eastfall.tui.saying import say
 from eastfall.tui.verbs.options import (
     Number,
     above_nothing,
@@ -29,7 +30,7 @@ if TYPE_CHECKING:
 class _Depths(click.ParamType[tuple[float, ...]]):
     """Depths in metres, separated by commas."""
 
-    name = "m,m,…"
+    name = "m,m,..."
 
     def convert(
         self, value: Any, param: click.Parameter | None, ctx: click.Context | None
@@ -118,10 +119,10 @@ def expect(
         print_json(predicted.shape)
         return
     if form == "table":
-        click.echo(predicted.heading)
+        say(predicted.heading)
     print_rows(predicted.rows, form)
     for note in predicted.notes if form == "table" else ():
-        click.echo(note)
+        say(note)
 
 
 def _line(
@@ -181,10 +182,10 @@ def reduce(
         print_json(shape)
     else:
         if form == "table":
-            click.echo(_heading(found))
+            say(_heading(found))
         print_rows(_stations(shape), form)
         for line in _footing(found, shape) if form == "table" else ():
-            click.echo(line)
+            say(line)
     click.get_current_context().exit(1 if found.exceeded or found.seal_state == "changed" else 0)
 
 
@@ -201,7 +202,7 @@ def _many(
         print_rows((list(SUMMARY_KEYS), [[one[name] for name in SUMMARY_KEYS] for one in found]), form)
     unusable = [one for one in found if one["error"]]
     for one in unusable:
-        click.echo(f"eastfall: {one['error']}", err=True)
+        say(f"eastfall: {one['error']}", err=True)
     click.get_current_context().exit(2 if unusable else int(any(one["exceeded"] for one in found)))
 
 

@@ -11,6 +11,9 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
+from eastfall.tui.letters import in_ascii
+from eastfall.tui.saying import plain, say
+
 if TYPE_CHECKING:
     from eastfall.tui.preferences import Preferences
     from eastfall.tui.units import Units
@@ -83,7 +86,7 @@ def _settings() -> "Preferences":
 
     remembered = Remembered.of(os.environ)
     if remembered.complaint:
-        click.echo(remembered.complaint, err=True)
+        say(remembered.complaint, err=True)
     return remembered.now
 
 
@@ -132,7 +135,7 @@ def _count(done: int, total: int) -> None:
 
 def print_json(value: object) -> None:
     """Write JSON, with a null for what is absent, to standard output alone."""
-    click.echo(json.dumps(value, ensure_ascii=False, allow_nan=False, indent=1))
+    click.echo(json.dumps(value, ensure_ascii=plain(sys.stdout), allow_nan=False, indent=1))
 
 
 def print_rows(table: Table, form: str) -> None:
@@ -142,7 +145,8 @@ def print_rows(table: Table, form: str) -> None:
         writer.writerow(table[0])
         writer.writerows([["" if one is None else one for one in row] for row in table[1]])
         return
-    head, rows = list(table[0]), [[_cell(one) for one in row] for row in table[1]]
+    spelled = in_ascii if plain(sys.stdout) else str
+    head, rows = list(table[0]), [[spelled(_cell(one)) for one in row] for row in table[1]]
     widths = [max([len(name), *(len(row[at]) for row in rows)]) for at, name in enumerate(head)]
     for row in [head, *rows]:
         click.echo("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
@@ -152,5 +156,5 @@ def _cell(value: object) -> str:
     if value is None:
         return "-"
     if isinstance(value, float):
-        return f"{value:.3f}"
+        return f"{round(value, 3) + 0.0:.3f}"  # no -0.000
     return str(value)

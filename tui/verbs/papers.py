@@ -4,6 +4,7 @@ from pathlib import Path
 
 import click
 
+from eastfall.tui.saying import say, say_path
 from eastfall.tui.verbs.options import (
     above_nothing,
     an_input,
@@ -47,11 +48,11 @@ def report(
 
     found = reduce_file(log, site=load_site(site) if site else None, interval=interval)
     if out is None:
-        click.echo(writer.report_text(found))
+        say(writer.report_text(found))
         return
     beside = writer.compared(compare_runs(reduce_file(against), found)) if against else None
     writer.write_report(found, out, compared=beside, force=force)
-    click.echo(out)
+    say_path(out)
 
 
 @click.command()
@@ -63,6 +64,7 @@ def verify(log: Path, form: str) -> None:
     Exit status 1 unless it is intact.
     """
     from eastfall.io.runlog import verify_log  # noqa: PLC0415
+    from eastfall.io.safetext import safe  # noqa: PLC0415
 
     found = verify_log(log)
     row = {
@@ -80,10 +82,8 @@ def verify(log: Path, form: str) -> None:
     elif form == "csv":
         print_rows((list(row), [list(row.values())]), form)
     else:
-        click.echo(f"{found.path}: {found.state}; {found.reason}")
-        click.echo(
-            f"{found.good_lines} good lines, to {found.good_until_time:.1f} s; seal {found.seal or 'none'}"
-        )
+        say(f"{safe(str(found.path))}: {found.state}; {found.reason}")
+        say(f"{found.good_lines} good lines, to {found.good_until_time:.1f} s; seal {found.seal or 'none'}")
     click.get_current_context().exit(0 if found.state == "intact" else 1)
 
 
@@ -98,7 +98,7 @@ def export(log: Path, file: Path, site: Path | None, interval: float | None, for
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
     write(reduce_file(log, site=load_site(site) if site else None, interval=interval), file, force=force)
-    click.echo(file)
+    say_path(file)
 
 
 @click.command()
@@ -129,14 +129,12 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
         print_json({"first": found.first, "second": found.second, "left_out": found.left_out, "depths": rows})
         return
     if form == "table":
-        click.echo(f"{found.second}\nless {found.first}; offsets in mm, u is the standard uncertainty")
+        say(f"{found.second}\nless {found.first}; offsets in mm, u is the standard uncertainty")
     print_rows((list(DIFFERENCE_KEYS), [[row[name] for name in DIFFERENCE_KEYS] for row in rows]), form)
     if form == "table":
         for line in found.notes:
-            click.echo(f"note: {line}")
-        click.echo(
-            f"{len(found.moved)} of {len(found.rows)} depths differ by more than their uncertainty explains"
-        )
+            say(f"note: {line}")
+        say(f"{len(found.moved)} of {len(found.rows)} depths differ by more than their uncertainty explains")
 
 
 @click.command()

@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 
 import click
 
+from eastfall.tui.saying import say
 from eastfall.tui.verbs.options import an_input
 
 if TYPE_CHECKING:
@@ -101,8 +102,8 @@ def _address(host: str, names: tuple[str, ...], *, open_to_network: bool) -> IPv
 
 def _serve(server: "ShareServer") -> None:
     def ready() -> None:
-        click.echo(f"{server.public_url}/")
+        say(f"{server.public_url}/")
         sys.stdout.flush()
-        click.echo("view only; ends on Ctrl+C", err=True)
+        say("view only; ends on Ctrl+C", err=True)
 
     asyncio.run(server.run(ready))

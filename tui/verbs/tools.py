@@ -5,6 +5,7 @@ from typing import Any
 
 import click
 
+from eastfall.tui.saying import say
 from eastfall.tui.verbs.options import Number, above_nothing, an_input, as_format, print_json, print_rows
 
 
@@ -92,7 +93,7 @@ def ports(form: str) -> None:
         print_json({"ports": [{"device": device, "what": what} for device, what in rows]})
         return
     if not rows and form == "table":
-        click.echo("no serial port found", err=True)
+        say("no serial port found", err=True)
         return
     print_rows((["device", "what"], [list(one) for one in rows]), form)
 
@@ -137,8 +138,6 @@ def selfcheck(form: str) -> None:
     else:
         for name, mark, source, unit, expected, value, difference, ok in rows:
             head = "ok " if ok else "OFF"
-            click.echo(
-                f"{head} {name}: {value:.9g} {unit}, {mark} {expected:.9g} ({difference:+.1e}); {source}"
-            )
-        click.echo(f"{len(rows)} checks, {bad} off")
+            say(f"{head} {name}: {value:.9g} {unit}, {mark} {expected:.9g} ({difference:+.1e}); {source}")
+        say(f"{len(rows)} checks, {bad} off")
     click.get_current_context().exit(1 if bad else 0)

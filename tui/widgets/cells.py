@@ -11,7 +11,8 @@ from textual.screen import Screen, ScreenResultType
 from textual.strip import Strip
 from textual.widget import Widget
 
-from eastfall.tui.glyphs import BRAILLE, Glyphs, in_ascii
+from eastfall.tui.glyphs import BRAILLE, Glyphs
+from eastfall.tui.letters import in_ascii
 from eastfall.tui.raster import FILLER, Cells, Raster
 from eastfall.tui.roles import CLASS_OF, COMPONENT_CLASSES, Role
 from eastfall.tui.units import METRIC, Units

@@ -74,22 +74,32 @@ class Figures(CellWidget):
             self.redraw()
 
     def draw(self, sheet: Raster) -> None:
-        """Write every figure with its name above its unit at its right."""
+        """Write every figure with its name, unit and note: beside large ones, about those in plain letters."""
         column = 0
         for one in self.figures:
-            rows = (
-                large(one.value)
-                if sheet.glyphs.name != "ascii"
-                else ("", one.value.removesuffix("°") + " ", "")
-            )
-            width = max(map(len, rows))
-            beside = max(len(one.name), len(one.unit), len(one.note))
-            if column + width + beside > sheet.width:
+            parts = self._plain(one) if sheet.glyphs.name == "ascii" else self._large(one)
+            width = max(at + len(words) for at, _, words, _ in parts)
+            if column + width > sheet.width:
                 break
-            for row, words in enumerate(rows):
-                sheet.text(column, row, words, one.role)
-            for row, (words, role) in enumerate(
-                ((one.name, Role.DIM), (one.unit, Role.STRONG), (one.note, Role.TEXT))
-            ):
-                sheet.text(column + width, row, words, role)
-            column += width + beside + 2
+            for at, row, words, role in parts:
+                sheet.text(column + at, row, words, role)
+            column += width + 2
+
+    @staticmethod
+    def _large(one: Figure) -> list[tuple[int, int, str, Role]]:
+        """Return column, row, words and role of the parts of a figure three rows high."""
+        rows = large(one.value)
+        width = max(map(len, rows))
+        parts = [(0, row, words, one.role) for row, words in enumerate(rows)]
+        beside = ((one.name, Role.DIM), (one.unit, Role.STRONG), (one.note, Role.TEXT))
+        return [*parts, *((width, row, words, role) for row, (words, role) in enumerate(beside))]
+
+    def _plain(self, one: Figure) -> list[tuple[int, int, str, Role]]:
+        """Return the same for one in plain letters: its name above, its note below."""
+        value = self.letters(one.value)
+        return [
+            (0, 0, one.name, Role.DIM),
+            (0, 1, value, one.role),
+            (len(value) + 1, 1, self.letters(one.unit), Role.STRONG),
+            (0, 2, one.note, Role.TEXT),
+        ]

@@ -109,10 +109,10 @@ class PlanSheet:
     def _fit(self) -> tuple[Point, float]:
         """Return the point in the middle and the distance from it to the nearer edge [m]."""
         view = self.view
+        if view is not None and self.scope == "wall":
+            return view.centre, (view.diameter or 1.0) / 2.0 * 1.08
         if view is None or view.one is None:
             return (0.0, 0.0), 0.03
-        if self.scope == "wall":
-            return view.centre, (view.diameter or 1.0) / 2.0 * 1.08
         one = view.one
         middle = (one.expected_east, one.expected_north)
         if not all(map(isfinite, middle)):

@@ -14,7 +14,8 @@ from textual.strip import Strip
 from textual.widget import Widget
 
 from eastfall.tui import keys
-from eastfall.tui.glyphs import BRAILLE, in_ascii
+from eastfall.tui.glyphs import BRAILLE
+from eastfall.tui.letters import in_ascii
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import role_style
 

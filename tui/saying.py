@@ -1,0 +1,36 @@
+"""How the command line speaks: text in the letters that whoever listens can read, paths to the last byte."""
+
+import os
+import sys
+from pathlib import Path
+from typing import TextIO
+
+import click
+
+from eastfall.tui.letters import in_ascii, is_plain
+
+
+def say(text: str, *, err: bool = False) -> None:
+    """Write a line of text for a person."""
+    click.echo(in_ascii(text) if plain(sys.stderr if err else sys.stdout) else text, err=err)
+
+
+def say_path(path: Path | str) -> None:
+    """Write the path of a file as it is, for another program or a shell to take up."""
+    if sys.stdout.isatty() or os.name != "posix":
+        click.echo(str(path))
+    else:
+        click.echo(os.fsencode(path))
+
+
+def plain(stream: TextIO) -> bool:
+    """Tell whether a stream should be given ASCII alone."""
+    return is_plain(os.environ, getattr(stream, "encoding", None))
+
+
+def never_fail() -> None:
+    """Have both streams write an escape for a letter that they lack, in place of an error."""
+    for stream in (sys.stdout, sys.stderr):
+        reconfigure = getattr(stream, "reconfigure", None)
+        if reconfigure is not None and stream.errors in {"strict", "surrogateescape"}:
+            reconfigure(errors="backslashreplace")
