@@ -93,17 +93,17 @@ def form_in_words(link: LinkSettings) -> str:
     return f"the form columns ({', '.join(link.columns)}; delimiter {link.delimiter!r}{check})"
 
 
-def first_lines(path: Path, link: LinkSettings) -> list[tuple[str, Example | None]]:
-    """Return the first lines of a capture, made safe to show, each with what is wrong with it, if anything."""
+def _first_lines(path: Path, link: LinkSettings) -> list[tuple[int, str, Example | None]]:
+    """Return number, text made safe to show, and fault if any, of the first lines that are not empty."""
     splitter = Splitter()
     with path.open("rb") as file:
         data = splitter.feed(file.read(_HEAD)) or splitter.cut_off() + b"\n"
-    lines = data.split(b"\n")[:_SHOWN]
-    shown: list[tuple[str, Example | None]] = []
-    for number, line in enumerate(one for one in lines if one):
-        block = LineBlock(data=line + b"\n", times=np.zeros(1), first_line=number + 1)
+    numbered = [(number, line) for number, line in enumerate(data.split(b"\n"), start=1) if line]
+    shown: list[tuple[int, str, Example | None]] = []
+    for number, line in numbered[:_SHOWN]:
+        block = LineBlock(data=line + b"\n", times=np.zeros(1), first_line=number)
         examples = decoder_for(link).decode(block).examples
-        shown.append((safe(line, 60), examples[0] if examples else None))
+        shown.append((number, safe(line, 60), examples[0] if examples else None))
     return shown
 
 
@@ -113,11 +113,11 @@ def refuse(path: Path, site: SiteFile, lines: int) -> CaptureError:
         return CaptureError(f"{path}: is empty; expected instrument lines")
     link = site.links[0] if site.links else LinkSettings(url="-")
     told = [
-        f'line {number} "{text}": {_fault(example)}'
-        for number, (text, example) in enumerate(first_lines(path, link), start=1)
+        f'line {number} "{text}": {_fault(example)}' for number, text, example in _first_lines(path, link)
     ]
     return CaptureError(
-        f"{path}: none of its {lines} lines could be used, read by {form_in_words(link)}: " + "; ".join(told)
+        f"{path}: none of its {lines} lines could be used, read by {form_in_words(link)}: "
+        + ("; ".join(told) or "the first of them are empty")
     )
 
 

@@ -137,6 +137,8 @@ def test_links_read_otherwise_are_a_difference(tmp_path: Path) -> None:
             1.0,
             r'none of its 4 lines .* line 1 "hello": wrong number of fields',
         ),
+        (b"\n\nhello\n\nworld\n", 1.0, r'of its 5 lines .*: line 3 "hello": .*; line 5 "world": wrong'),
+        (b"\n\n", 1.0, "of its 2 lines .*: the first of them are empty"),
         (b"1;2;3\n", 1.0, r"the form columns \(depth_m, tilt_a_deg, tilt_b_deg; delimiter ','\)"),
         (b"\x1b[2J\x07,1,2\n", 1.0, r"\\x1b\[2J\\x07"),
         (b"\x00" * 9000, 1.0, "none of its 1 lines"),
