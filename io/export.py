@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from eastfall.io.errors import OutputError
-from eastfall.io.outputs import write_text
+from eastfall.io.outputs import refuse_sources, write_text
 from eastfall.io.reduce import Reduction
 from eastfall.io.tables import STATION_KEYS, reduce_table, station_row
 
@@ -195,9 +195,10 @@ def export(reduction: Reduction, path: Path, *, force: bool = False) -> None:
     Raises
     ------
     OutputError
-        The suffix is none of these, something stands there, or the file cannot be written.
+        The suffix is none of these, something stands there, it is the run itself, or the file cannot be written.
     """
     make = FORMATS.get(path.suffix.lower())
     if make is None:
         raise OutputError(f"{path}: ends in {path.suffix!r}; expected one of {', '.join(FORMATS)}")
+    refuse_sources(path, reduction.path, Path(reduction.site.path))
     write_text(path, make(reduction), force=force)

@@ -39,6 +39,19 @@ def refuse_existing(path: Path) -> None:
         raise OutputError(f"{path}: stands already; expected a new name, or --force to replace it")
 
 
+def refuse_sources(path: Path, *sources: Path) -> None:
+    """Raise `OutputError` if `path` is one of the files that the output is made from, under whatever name."""
+    if any(_same(path, one) for one in sources):
+        raise OutputError(f"{path}: is what this is made from; expected another name, forced or not")
+
+
+def _same(path: Path, other: Path) -> bool:
+    try:
+        return path.samefile(other)
+    except (OSError, ValueError):  # one of the two is no file
+        return False
+
+
 def _create(path: Path, data: bytes) -> None:
     with path.open("xb") as file:
         try:

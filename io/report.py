@@ -14,7 +14,8 @@ import numpy as np
 
 from eastfall.io import reportfindings, reportview
 from eastfall.io.compare import Comparison, in_words
-from eastfall.io.outputs import refuse_existing, write_text
+from eastfall.io.errors import OutputError
+from eastfall.io.outputs import refuse_existing, refuse_sources, write_text
 from eastfall.io.prediction import REFERENCE_LINES
 from eastfall.io.reduce import Reduction
 from eastfall.io.reportview import Table
@@ -23,6 +24,7 @@ from eastfall.io.sources import formulas
 from eastfall.physics.budget import COVERAGE_FACTOR
 
 _MARKDOWN_STATIONS = 60
+_SUFFIXES = (".html", ".htm")
 _DIFFERENCE = ("depth", "east", "north", "u_east", "u_north")
 
 
@@ -92,8 +94,11 @@ def write_report(
     Raises
     ------
     OutputError
-        Something stands there, or the file cannot be written.
+        The name does not end in .html, something stands there, it is the run itself, or the file cannot be written.
     """
+    if out.suffix.lower() not in _SUFFIXES:
+        raise OutputError(f"{out}: ends in {out.suffix!r}; expected {' or '.join(_SUFFIXES)}")
+    refuse_sources(out, reduction.path, Path(reduction.site.path))
     if not force:
         refuse_existing(out)  # before the figures are drawn
     write_text(out, report_html(reduction, compared=compared, made_at=made_at), force=force)

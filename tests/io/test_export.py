@@ -149,6 +149,18 @@ def test_an_existing_file_is_never_written_over_unasked(tmp_path: Path, suffix: 
     assert list(tmp_path.iterdir()) == [path]
 
 
+def test_an_export_never_replaces_the_run_that_it_is_made_from(tmp_path: Path) -> None:
+    """A capture may well be named .csv: forced or not, and by a hard link too, it stays."""
+    capture = tmp_path / "run.csv"
+    capture.write_text("0,0,0\n", encoding="utf-8")
+    (tmp_path / "same.csv").hardlink_to(capture)
+    one = replace(reduction(), path=capture)
+    for name in ("run.csv", "same.csv"):
+        with pytest.raises(OutputError, match="is what this is made from"):
+            export(one, tmp_path / name, force=True)
+    assert capture.read_text(encoding="utf-8") == "0,0,0\n"
+
+
 def test_bad_targets_are_one_clear_line(tmp_path: Path) -> None:
     """An unknown suffix, a missing folder and a folder in the place of the file end in the program's own error."""
     for path, expected in (

@@ -161,6 +161,22 @@ def test_each_kind_of_demo_run_is_reported(log: Path, tmp_path: Path) -> None:
         write_report(run, out)
 
 
+def test_a_report_is_html_and_never_written_over_its_own_run(tmp_path: Path) -> None:
+    """Another suffix would lie about what is in the file; the run is refused under whatever name, forced or not."""
+    log = tmp_path / "run.html"
+    log.write_bytes(LOGS[0].read_bytes())
+    (tmp_path / "link.html").symlink_to(log)
+    run = reduce_file(log)
+    for name in ("run.html", "link.html"):
+        with pytest.raises(OutputError, match="is what this is made from"):
+            write_report(run, tmp_path / name, force=True)
+    for name in ("report.pdf", "report"):
+        with pytest.raises(OutputError, match=r"expected \.html or \.htm"):
+            write_report(run, tmp_path / name)
+    assert log.read_bytes() == LOGS[0].read_bytes()
+    assert sorted(one.name for one in tmp_path.iterdir()) == ["link.html", "run.html"]
+
+
 def test_a_changed_record_and_other_settings_stand_at_the_top() -> None:
     """A log that is not intact, and settings that are not the recorded ones, are said beside the answer and listed."""
     other = site(SITE_TEXT.replace("57.30", "45.0"))
