@@ -66,6 +66,7 @@ class Guided:
         self._pull = SidePull()
         self._lever = Lever(instrument.a_azimuth + instrument.north_offset)
         self._last: Array | None = None
+        self._seen: Array | None = None
         self._depth: float | None = None
         self._slope: Array = np.zeros(2)
         self._gaps = Gaps(assumptions.limits.feed_silent)
@@ -196,20 +197,25 @@ class Guided:
         face = readings.column("face")
         if np.isnan(face).all():
             return
-        depth, weight = (
-            readings.depth,
-            np.abs(
-                np.diff(readings.depth, prepend=readings.depth[0] if self._last is None else self._last[1])
-            ),
-        )
-        east, north = slopes[0] + leaning, slopes[1]
-        if self._still is not None:
-            at = np.array([row for row, _ in rests], dtype=np.intp)
-            depth, weight, face, azimuth = depth[at], np.ones(at.size), face[at], azimuth[at]
-            east = np.array([rest.east.mean for _, rest in rests])
-            north = np.array([rest.north.mean for _, rest in rests])
         s, c = np.sin(azimuth), np.cos(azimuth)
-        self._faces.add(depth, weight, np.stack([east * s + north * c, east * c - north * s]), face)
+        if self._still is None:
+            # Where the speed is not known yet, the line has hardly begun to move.
+            east, north = slopes[0] + np.nan_to_num(leaning), slopes[1]
+            now = np.stack([readings.depth, east * s + north * c, east * c - north * s, face])
+            joined = np.concatenate([now[:, :1] if self._seen is None else self._seen, now], axis=1)
+            self._seen = now[:, -1:].copy()
+            # The middle of each step, so that a way down and up again stand for the same depths, at the ends as well.
+            # A step on which the probe was turned has no face of its own.
+            middle = 0.5 * (joined[:, 1:] + joined[:, :-1])
+            face = np.where(joined[3, 1:] == joined[3, :-1], face, np.nan)
+            self._faces.add(middle[0], np.abs(np.diff(joined[0])), middle[1:3], face)
+            return
+        at = np.array([row for row, _ in rests], dtype=np.intp)
+        east = np.array([rest.east.mean for _, rest in rests])
+        north = np.array([rest.north.mean for _, rest in rests])
+        s, c = s[at], c[at]
+        tilts = np.stack([east * s + north * c, east * c - north * s])
+        self._faces.add(readings.depth[at], np.ones(at.size), tilts, face[at])
 
     # -- stations --------------------------------------------------------------------------------------------------
 
@@ -285,6 +291,7 @@ class Guided:
             self._still.jump(by)
         self._plumb.jump(jump)
         self._lever.jump(by)
+        self._seen = None
         self._halts.moved()
         self._closing.jump(jump.after)
         self._gaps.jump(jump.after)

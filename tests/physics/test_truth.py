@@ -106,6 +106,19 @@ def test_an_instrument_with_every_error_stays_within_its_stated_uncertainty(shaf
     assert result.best[6].u_north < 0.1 * next(one.u_north for one in result.stations if one.depth == 60.0)
 
 
+def test_a_guide_that_bends_at_the_collar_lets_no_face_sum_stand_apart(shaft):
+    """A guide that turns by 3 mm/m within the first station, hardly any noise: face sums are twice the zero to 4 µrad.
+
+    Down and up, the rows of the first and of the last station lie on different sides of their steps.
+    """
+    quiet = Instrument(u_tilt=1e-5, u_zero=U_ZERO)
+    errors = Errors(zero_a=np.radians(0.01), noise=1e-7)
+    readings = capture(6, errors, guide=Guide(size=(0.012, -0.009), wave=(30.0, 23.0)), faces=True)
+    faces = found(shaft, readings, instrument=quiet).result().faces
+    assert faces.suspect_depths == ()
+    assert faces.sum_a == pytest.approx([np.radians(0.02)] * len(faces.depth), abs=4e-6)
+
+
 def test_a_zero_far_beyond_its_stated_uncertainty_is_pointed_out(shaft):
     """0.01° where 0.0005° is stated: the faces say so, and both passes together are still right."""
     claimed = Instrument(u_tilt=U_TILT, u_zero=np.radians(0.0005), u_scale=U_SCALE, u_azimuth=U_AZIMUTH)
