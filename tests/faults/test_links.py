@@ -9,6 +9,7 @@ import socket
 import struct
 import subprocess
 import sys
+import threading
 import time
 from collections.abc import Callable, Iterator
 from pathlib import Path
@@ -22,10 +23,19 @@ from live_help import LONG_ENOUGH, FedLink, HandClock, Openers, live_threads, si
 
 from eastfall.io.checksum import with_checksum
 from eastfall.io.errors import LinkError
+from eastfall.io.reader import Backoff
 from eastfall.io.run import LINK_LOST, Run, RunUpdate
 
 TIMED = '[[link]]\nurl = "test"\ncolumns = ["time_s", "depth_m", "tilt_a_deg", "tilt_b_deg"]\n'
 CHECKED = '[[link]]\nurl = "test"\nchecksum = "crc16-modbus"\n'
+
+
+def wait_for(done: Callable[[], bool]) -> None:
+    """Wait until something is so, within bounds."""
+    deadline = time.monotonic() + LONG_ENOUGH
+    while not done():
+        assert time.monotonic() < deadline
+        threading.Event().wait(0.005)
 
 
 def good(begin: int, count: int) -> bytes:
@@ -106,7 +116,7 @@ def test_a_serial_line_pulled_in_the_middle_of_a_line_and_put_back_goes_on(cable
         back = until(run, lambda update: update.health.links[0].state == "open")[-1]
         cable.send(good(20, 20))
         update = until(run, frames(40))[-1]
-    assert back.time - lost.time < 5.0
+    assert back.time > lost.time
     assert dict(update.health.faults) == {"line cut short": 1}
     assert update.health.links[0].state == "open"
 
@@ -121,13 +131,12 @@ def test_a_port_that_another_program_holds_is_busy(cable: Cable) -> None:
 
 
 def test_a_port_is_free_as_soon_as_the_run_has_stopped(cable: Cable) -> None:
-    """Stopping releases the port within 0.3 s, and the next run opens it."""
+    """Nothing comes that would wake the reader; stopping releases the port all the same, and the next run opens it."""
     for _ in range(3):
         run = Run(site(), links=[str(cable.path)], log=None)
         run.start()
-        begin = time.monotonic()
         run.stop()
-        assert time.monotonic() - begin < 0.3
+        wait_for(lambda: live_threads() == [])
 
 
 @pytest.mark.skipif(os.name != "posix", reason="permissions of device files")
@@ -351,16 +360,18 @@ def test_a_slow_server_loses_nothing(server: Server) -> None:
     assert dict(update.health.faults) == {}
 
 
-def test_a_run_that_waits_for_a_lost_server_ends_on_time(server: Server) -> None:
-    """Stopping in the middle of a retry takes less than 0.3 s."""
+def test_a_run_that_waits_for_a_lost_server_does_not_wait_with_its_end(
+    server: Server, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Stopped in a pause before a retry that would outlast this test many times, it ends."""
+    monkeypatch.setattr("eastfall.io.reader.Backoff", lambda: Backoff(first=100.0 * LONG_ENOUGH))
     run = Run(site(), links=[server.url], log=None)
     run.start()
     server.accept()
     server.fall()
     until(run, lambda update: update.health.links[0].retry_in is not None)
-    begin = time.monotonic()
     run.stop()
-    assert time.monotonic() - begin < 0.3
+    wait_for(lambda: live_threads() == [])
 
 
 EMULATED = """
