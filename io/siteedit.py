@@ -14,7 +14,7 @@ from tomlkit.items import AoT, Array, Comment, Float, Item, Table, Whitespace
 
 from eastfall.io import sitekeys
 from eastfall.io.errors import SiteFileError
-from eastfall.io.sitefile import LinkSettings, load_site, parse_site
+from eastfall.io.sitefile import LinkSettings, decoded, load_site, parse_site
 from eastfall.io.sitevalues import TOML_NUMBER, Typed, joined, key_of, parts, shape, typed, understood
 
 NEW_SITE = """\
@@ -303,7 +303,7 @@ def open_draft(path: Path) -> SiteDraft:
         It cannot be read, or is no TOML.
     """
     try:
-        return SiteDraft(path.read_bytes().decode("utf-8"), str(path))
+        return SiteDraft(decoded(path.read_bytes()), str(path))
     except (OSError, UnicodeDecodeError) as error:
         load_site(path)  # says it in the file's own words
         raise SiteFileError(f"{path}: {error}; expected a site file (TOML)") from error
@@ -323,7 +323,7 @@ def take_link(draft: SiteDraft, index: int, settings: LinkSettings) -> None:
 def changed_since(path: Path, text: str) -> str:
     """Return a warning if a file is no longer what it was when it was opened; empty if it is."""
     try:
-        same = path.read_bytes() == text.encode("utf-8")
-    except OSError:
+        same = decoded(path.read_bytes()) == text
+    except (OSError, UnicodeDecodeError):
         return "It cannot be read any more; it is written anew."
     return "" if same else "Another program changed it since it was opened: that change is lost."

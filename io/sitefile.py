@@ -7,9 +7,10 @@ import difflib
 import math
 import re
 import tomllib
+from codecs import BOM_UTF8
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
-from datetime import date
+from datetime import date, time
 from pathlib import Path
 from typing import Any
 
@@ -76,11 +77,16 @@ def load_site(path: Path, *, on: date | None = None) -> SiteFile:
     if len(raw) > _LARGEST:
         raise SiteFileError(f"{path}: too large; expected a site file of at most {_LARGEST} bytes")
     try:
-        text = raw.decode("utf-8")
+        text = decoded(raw)
     except UnicodeDecodeError as error:
         line = raw.count(b"\n", 0, error.start) + 1
         raise SiteFileError(f"{path}, line {line}: not UTF-8 text; expected a site file (TOML)") from error
     return parse_site(text, str(path), on=on)
+
+
+def decoded(raw: bytes) -> str:
+    """Return the text of a site file: UTF-8, with or without the mark that some editors put in front."""
+    return raw.removeprefix(BOM_UTF8).decode("utf-8")
 
 
 def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
@@ -107,6 +113,7 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
             f"{source}: not TOML: {error}; expected lines such as latitude_deg = 57.3"
         ) from error
     place = _Place(source, text)
+    _date_as_text(tree)
     for path, value in _leaves(tree, ""):
         if isinstance(value, float) and not math.isfinite(value):
             raise place.error(path, value, "a finite number")
@@ -125,6 +132,13 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
         ),
         notes=notes,
     )
+
+
+def _date_as_text(tree: dict[str, Any]) -> None:
+    """Take a date that stands without quotes, as TOML may have it, for its text."""
+    instrument = tree.get("instrument")
+    if isinstance(instrument, dict) and type(instrument.get("calibrated_on")) is date:
+        instrument["calibrated_on"] = instrument["calibrated_on"].isoformat()
 
 
 @dataclass(frozen=True, slots=True)
@@ -156,7 +170,11 @@ class _Place:
 
 
 def _shown(value: object) -> str:
-    text = repr(value)
+    """Return a value much as it stands in the file."""
+    if value is None:
+        return "missing"
+    text = str(value).lower() if isinstance(value, bool) else repr(value)
+    text = value.isoformat() if isinstance(value, date | time) else text
     return text if len(text) <= 60 else text[:57] + "..."
 
 
@@ -217,8 +235,14 @@ def _expectation(path: str, what: str) -> str:
     key = sitekeys.key(re.sub(r"\[\d+\]", "", path))
     if key is not None:
         return key.expectation
-    plain = what.replace("`", "").removeprefix("Expected ")
-    return f"a section ({plain})" if path in sitekeys.SECTIONS else plain
+    if path == "link":
+        return "[[link]], in double brackets, once for each link"
+    if re.fullmatch(r"link\[\d+\]", path):
+        return "a section [[link]] with url"
+    if path in sitekeys.SECTIONS:
+        needed = sitekeys.required_in(path)
+        return f"a section [{path}]" + (f" with {' and '.join(needed)}" if needed else "")
+    return what.replace("`", "").removeprefix("Expected ")
 
 
 def _assumptions(document: SiteDocument, tree: dict[str, Any], place: _Place) -> Assumptions:
@@ -231,7 +255,7 @@ def _assumptions(document: SiteDocument, tree: dict[str, Any], place: _Place) ->
             records[section] = record(**_si_fields(given))
         except ParameterError as error:
             # The record names its field; the key of the same name stands in this section.
-            keys = [key for key in tree[section] if sitekeys.si_name(key) == error.name]
+            keys = [key for key in sitekeys.names_in(section) if sitekeys.si_name(key) == error.name]
             path = f"{section}.{keys[0] if keys else error.name}"
             raise place.error(path, _at(tree, path), error.expected) from error
     return Assumptions(**records)

@@ -140,6 +140,12 @@ def names_in(section: str) -> list[str]:
     return list(struct.__struct_fields__) if struct is not None else list(SECTIONS)
 
 
+def required_in(section: str) -> list[str]:
+    """Return the keys that a section cannot do without."""
+    struct = SECTIONS[section]
+    return [name for name in struct.__struct_fields__ if _is_required(struct, name)]
+
+
 def key(path: str) -> Key | None:
     """Return what is known of "section.key"; None for anything else."""
     section, _, name = path.partition(".")
@@ -201,13 +207,15 @@ def _in_words(base: Any, meta: Meta, choices: tuple[str, ...], shown: str) -> st
         return (
             meta.description
             if meta.pattern and meta.description
+            else "one character"
+            if meta.max_length == 1
             else f"text of at most {meta.max_length} characters"
         )
     low, high = _range(meta)
     if base in {float, int} and low is not None and high is not None:
         what = "a whole number" if base is int else "a number"
-        between = f"more than {low:g} and at most" if meta.gt is not None else f"from {low:g} to"
-        return f"{what} {between} {high:g} {shown}".rstrip()
+        between = f"more than {low:.9g} and at most" if meta.gt is not None else f"from {low:.9g} to"
+        return f"{what} {between} {high:.9g} {shown}".rstrip()
     return meta.description or "another value"
 
 

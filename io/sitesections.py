@@ -105,9 +105,13 @@ class RunKeys(Section, frozen=True, kw_only=True):
 class DepthKeys(Section, frozen=True, kw_only=True):
     """[depth]."""
 
-    scale: Annotated[float, Meta(ge=0.5, le=2.0, description="True metres in a metre shown")] | UnsetType = (
-        UNSET
-    )
+    scale: (
+        Annotated[
+            float,
+            Meta(ge=0.1, le=10.0, description="True metres in one shown; 0.3048 for a counter in feet"),
+        ]
+        | UnsetType
+    ) = UNSET
     offset_m: (
         Annotated[float, Meta(ge=-1000.0, le=1000.0, description="True depth where the counter shows 0")]
         | UnsetType

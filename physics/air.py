@@ -156,8 +156,7 @@ def air_column(air: Air, field: LocalField) -> AirColumn:
     Raises
     ------
     ParameterError
-        If the density is negative, the temperature is outside 100 to 1900 K, or a cross-flow row ends above its
-        start.
+        If the density is negative or the temperature is outside 100 to 1900 K.
     """
     if air.density < 0.0:
         raise ParameterError("density", air.density, "kg/m³", "0 (vacuum) or more")
@@ -165,7 +164,4 @@ def air_column(air: Air, field: LocalField) -> AirColumn:
         raise ParameterError(
             "temperature", air.temperature, "K", "100 to 1900 K, the domain of Sutherland's formula"
         )
-    for row in air.cross_flow:
-        if not row[0] < row[1]:
-            raise ParameterError("cross_flow", row[:2], "m", "from above to: [from m, to m, ...]")
     return AirColumn(settings=air, field=field)

@@ -243,6 +243,11 @@ class Air(_Checked):
     u_cross_flow_fraction: float = 0.2
     """Relative, of every cross-flow speed."""
 
+    def __post_init__(self) -> None:
+        _Checked.__post_init__(self)
+        for row in self.cross_flow:
+            _refuse_unless(row[0] < row[1], "cross_flow", row[:2], "m", "from above to: [from m, to m, ...]")
+
     @property
     def is_vacuum(self) -> bool:
         """Whether there is no air at all."""

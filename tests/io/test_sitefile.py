@@ -285,3 +285,54 @@ def test_one_wrong_character_makes_nothing_but_a_site_or_its_own_error(at, lette
         parse_site(FULL[:at] + letter + FULL[at + 1 :], "any.toml")
     except SiteFileError as error:
         assert str(error)
+
+
+@pytest.mark.parametrize("mark", [b"", b"\xef\xbb\xbf"])
+@pytest.mark.parametrize("end", ["\n", "\r\n"])
+def test_what_editors_put_into_a_file_does_no_harm(tmp_path, mark, end):
+    """A byte order mark in front, and line ends of another system, are read over; the lines still count."""
+    path = tmp_path / "site.toml"
+    path.write_bytes(mark + LEAST.replace("\n", end).encode())
+    assert load_site(path).assumptions.shaft.depth == 400.0
+    path.write_bytes(mark + LEAST.replace("46.5", "95").replace("\n", end).encode())
+    with pytest.raises(
+        SiteFileError, match=r"line 3: site\.latitude_deg is 95; expected a number from -90 to 90"
+    ):
+        load_site(path)
+
+
+@pytest.mark.parametrize(
+    ("text", "message"),
+    [
+        ("", r"site is missing; expected a section \[site\] with latitude_deg"),
+        ("site = 3", r"line 1: site is 3; expected a section \[site\] with latitude_deg"),
+        (LEAST + "[link]\nurl = '-'", r"link is \{.*\}; expected \[\[link\]\], in double brackets"),
+        ("link = [3]" + LEAST, r"link\[0\] is 3; expected a section \[\[link\]\] with url"),
+        (LEAST + "[[link]]\nurl = '-'\nbaud = 3", "expected a whole number from 50 to 4000000$"),
+        (LEAST + "[[link]]\nurl = '-'\ndelimiter = ';;'", "expected one character$"),
+        (
+            LEAST + "[air]\ncross_flow = [[5, 2, 3, 4]]",
+            r"line 9: air.cross_flow is \[\[5, 2, 3, 4\]\]; expected from",
+        ),
+        (LEAST + "[guide]\nend_east_mm = 3", "guide.end_north_mm is missing; expected both ends or none"),
+        (
+            LEAST + "[instrument]\nazimuth_from = 'magnetic'",
+            "site.longitude_deg is missing; expected a longitude",
+        ),
+        (LEAST + "[instrument]\nscale_a = true", "instrument.scale_a is true; expected a number"),
+    ],
+)
+def test_what_is_expected_is_said_in_the_words_of_the_file(text, message):
+    """No message speaks of objects and arrays, of None and True, or of a key without its unit."""
+    with pytest.raises(SiteFileError, match=message):
+        parse_site(text, "site.toml")
+
+
+def test_a_date_may_stand_without_quotes():
+    """TOML has dates of its own."""
+    quoted, plain = (
+        parse_site(f"{LEAST}[instrument]\ncalibrated_on = {text}", "x", on=date(2026, 6, 1))
+        for text in ('"2026-03-01"', "2026-03-01")
+    )
+    assert quoted.assumptions == plain.assumptions
+    assert plain.assumptions.instrument.calibrated_on == "2026-03-01"
