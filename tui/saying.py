@@ -1,6 +1,7 @@
 """How the command line speaks: text in the letters that whoever listens can read, paths to the last byte."""
 
 import os
+import shutil
 import sys
 from pathlib import Path
 from typing import TextIO
@@ -8,11 +9,26 @@ from typing import TextIO
 import click
 
 from eastfall.tui.letters import in_ascii, is_plain
+from eastfall.tui.printed import prose
 
 
 def say(text: str, *, err: bool = False) -> None:
     """Write a line of text for a person."""
     click.echo(in_ascii(text) if plain(sys.stderr if err else sys.stdout) else text, err=err)
+
+
+def say_sentence(text: str) -> None:
+    """Write a sentence about a table, parted between words where it is too long for the window."""
+    told = in_ascii(text) if plain(sys.stdout) else text
+    for line in prose(told, window()):
+        click.echo(line)
+
+
+def window() -> int | None:
+    """Return how many columns a reader has; None where the output goes elsewhere and nobody said."""
+    if not (sys.stdout.isatty() or os.environ.get("COLUMNS")):
+        return None
+    return shutil.get_terminal_size().columns
 
 
 def say_path(path: Path | str) -> None:

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any
 import click
 
 from eastfall.tui import words
-from eastfall.tui.saying import say
+from eastfall.tui.saying import say, say_sentence
 from eastfall.tui.verbs.options import (
     Number,
     above_nothing,
@@ -119,10 +119,10 @@ def expect(
         print_json(predicted.shape)
         return
     if form == "table":
-        say(predicted.heading)
+        say_sentence(predicted.heading)
     print_rows(predicted.rows, form)
     for note in predicted.notes if form == "table" else ():
-        say(note)
+        say_sentence(note)
 
 
 def _line(
@@ -182,10 +182,10 @@ def reduce(
         print_json(shape)
     else:
         if form == "table":
-            say(_heading(found))
+            say_sentence(_heading(found))
         print_rows(_stations(shape), form)
         for line in _footing(found, shape) if form == "table" else ():
-            say(line)
+            say_sentence(line)
     click.get_current_context().exit(1 if found.exceeded or found.seal_state == "changed" else 0)
 
 

@@ -11,8 +11,10 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
+from eastfall.io.safetext import safe
 from eastfall.tui.letters import in_ascii
-from eastfall.tui.saying import plain, say
+from eastfall.tui.printed import listed, printed
+from eastfall.tui.saying import plain, say, window
 
 if TYPE_CHECKING:
     from eastfall.tui.preferences import Preferences
@@ -145,11 +147,15 @@ def print_rows(table: Table, form: str) -> None:
         writer.writerow(table[0])
         writer.writerows([["" if one is None else one for one in row] for row in table[1]])
         return
-    spelled = in_ascii if plain(sys.stdout) else str
-    head, rows = list(table[0]), [[spelled(_cell(one)) for one in row] for row in table[1]]
-    widths = [max([len(name), *(len(row[at]) for row in rows)]) for at, name in enumerate(head)]
-    for row in [head, *rows]:
-        click.echo("  ".join(cell.rjust(width) for cell, width in zip(row, widths, strict=True)).rstrip())
+    rows = [[_cell(one) for one in row] for row in table[1]]
+    for line in printed(table[0], rows, window()):
+        click.echo(line)
+
+
+def print_list(head: Sequence[str], rows: Sequence[Sequence[Any]]) -> None:
+    """Write rows of text as an aligned list, of which the last column may be long."""
+    for line in listed(head, [[_cell(one) for one in row] for row in rows], window()):
+        click.echo(line)
 
 
 def _cell(value: object) -> str:
@@ -157,4 +163,5 @@ def _cell(value: object) -> str:
         return "-"
     if isinstance(value, float):
         return f"{round(value, 3) + 0.0:.3f}"  # no -0.000
-    return str(value)
+    text = safe(str(value))
+    return in_ascii(text) if plain(sys.stdout) else text

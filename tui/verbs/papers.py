@@ -1,10 +1,11 @@
 """The verbs on what has been recorded: `report`, `verify`, `export`, `compare` and `runs`."""
 
 from pathlib import Path
+from typing import Any
 
 import click
 
-from eastfall.tui.saying import say, say_path
+from eastfall.tui.saying import say, say_path, say_sentence
 from eastfall.tui.verbs.options import (
     above_nothing,
     an_input,
@@ -12,6 +13,7 @@ from eastfall.tui.verbs.options import (
     counted,
     over_cores,
     print_json,
+    print_list,
     print_rows,
     with_options,
 )
@@ -133,7 +135,7 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
     print_rows((list(DIFFERENCE_KEYS), [[row[name] for name in DIFFERENCE_KEYS] for row in rows]), form)
     if form == "table":
         for line in found.notes:
-            say(f"note: {line}")
+            say_sentence(f"note: {line}")
         say(f"{len(found.moved)} of {len(found.rows)} depths differ by more than their uncertainty explains")
 
 
@@ -176,5 +178,29 @@ def runs(
     kept.sort(key=lambda one: (one[sort] is None, one[sort]))
     if form == "json":
         print_json({"runs": kept})
-    else:
+    elif form == "csv":
         print_rows((list(CARD_KEYS), [[one[name] for name in CARD_KEYS] for one in kept]), form)
+    else:
+        print_list(("started, UTC", "site", "run", "depth_m", "verdict", "record", "file"), _listed(kept))
+
+
+def _why(one: dict[str, Any]) -> str:
+    """Return why a log cannot be read, without the path that stands before it."""
+    why: str = one["error"]
+    return why.removeprefix(one["path"]).lstrip(",: ")
+
+
+def _listed(kept: list[dict[str, Any]]) -> list[list[Any]]:
+    """Return runs for a reader: the minute they began, and the name of the file with what hinders reading it."""
+    return [
+        [
+            (one["started_at"] or "-")[:16].replace("T", " "),
+            one["site"] or "-",
+            one["kind"] or "-",
+            one["depth_m"],
+            one["verdict"],
+            one["state"] or "unreadable",
+            Path(one["path"]).name + (f": {_why(one)}" if one["error"] else ""),
+        ]
+        for one in kept
+    ]
