@@ -13,10 +13,11 @@ import numpy as np
 
 from eastfall.io import checksum
 from eastfall.io.arrivals import LineBlock
+from eastfall.io.checksum import Checksum
 from eastfall.io.columnguess import Guess, guessed, numbers_in
 from eastfall.io.decoded import IGNORED, QUANTITIES
 from eastfall.io.forms import decoder_for
-from eastfall.io.readerkeys import CheckSum, Form
+from eastfall.io.readerkeys import Form
 from eastfall.io.sitefile import LinkSettings
 from eastfall.physics.errors import ParameterError
 
@@ -56,7 +57,7 @@ class Proposal:
     form: Form | None = None
     delimiter: str = ","
     columns: tuple[str, ...] = ()
-    checksum: CheckSum = "none"
+    checksum: Checksum = "none"
     fields: int = 0
     lines: int = 0
     read: int = 0
@@ -204,8 +205,8 @@ def _missing(guesses: Sequence[Guess]) -> tuple[str, ...]:
     return ()
 
 
-def _checksum_of(lines: list[bytes]) -> tuple[CheckSum, str]:
-    kinds: tuple[CheckSum, ...] = ("xor", "crc16-modbus")
+def _checksum_of(lines: list[bytes]) -> tuple[Checksum, str]:
+    kinds: tuple[Checksum, ...] = ("xor", "crc16-modbus")
     for kind in kinds:
         right = sum(not checksum.verified(kind, one)[1] for one in lines)
         if right >= _MOST * len(lines):

@@ -5,10 +5,10 @@ from typing import Annotated, Literal, get_args
 import msgspec
 from msgspec import UNSET, Meta, UnsetType
 
+from eastfall.io.checksum import Checksum
 from eastfall.physics import settings
 
 Form = Literal["columns", "iec61162"]
-CheckSum = Literal["none", "xor", "crc16-modbus"]
 ColumnName = Literal[
     "time_s",
     "depth_m",
@@ -222,5 +222,5 @@ class LinkKeys(Section, frozen=True, kw_only=True):
         str,
         Meta(min_length=1, max_length=1, description="Between fields; a blank stands for any white space"),
     ] = ","
-    checksum: Annotated[CheckSum, Meta(description="At the end of a line, after *")] = "none"
+    checksum: Annotated[Checksum, Meta(description="At the end of a line, after *")] = "none"
     latency_s: Annotated[float, Meta(ge=0.0, le=60.0, description="Age of a reading when it arrives")] = 0.0

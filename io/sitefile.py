@@ -17,8 +17,9 @@ from typing import Any
 import msgspec
 
 from eastfall.io import sitekeys
+from eastfall.io.checksum import Checksum
 from eastfall.io.errors import SiteFileError
-from eastfall.io.sitekeys import CheckSum, Form, SiteDocument
+from eastfall.io.sitekeys import Form, SiteDocument
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.settings import Assumptions
 
@@ -35,7 +36,7 @@ class LinkSettings:
     form: Form = "columns"
     columns: tuple[str, ...] = ("depth_m", "tilt_a_deg", "tilt_b_deg")
     delimiter: str = ","
-    checksum: CheckSum = "none"
+    checksum: Checksum = "none"
     latency: float = 0.0
     """How much older a reading is than its arrival [s]."""
 

@@ -12,14 +12,13 @@ from typing import Any, Literal, get_args
 import msgspec
 from msgspec import Meta
 
-from eastfall.io.readerkeys import CheckSum, ColumnName, Form, LinkKeys, Section
+from eastfall.io.readerkeys import ColumnName, Form, LinkKeys, Section
 from eastfall.io.sitesections import RECORDS, SECTIONS, SiteDocument
 from eastfall.physics.settings import ARCSECOND, DEGREE
 
 __all__ = [
     "RECORDS",
     "SECTIONS",
-    "CheckSum",
     "ColumnName",
     "Form",
     "Key",
