@@ -8,9 +8,6 @@ from numpy.typing import NDArray
 from eastfall.io.framing import count_lines
 from eastfall.physics.errors import ParameterError
 
-STATE_EVENTS = frozenset({"acknowledge", "shelve", "condition", "mark", "armed", "end"})
-"""Events that change the engine's state: their place among the lines matters, and no block is joined across one."""
-
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LineBlock:
@@ -57,7 +54,8 @@ class RunEvent:
     time : float
         Host time [s] since the start of the run.
     name : str
-        One of `STATE_EVENTS`, or one that leaves the engine as it is: "note", "link", "alarm", "start".
+        "acknowledge", "shelve", "condition", "mark", "armed" and "end" change the engine's state, so their place among
+        the lines matters; any other leaves it as it is: "note", "link", "alarm", "summary".
     fields : dict
         What belongs to the name; JSON values.
     """

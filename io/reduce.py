@@ -31,7 +31,7 @@ The C library of Linux gives the memory of each block of rows back to the system
 page, until a piece this large has been freed (M_MMAP_THRESHOLD of mallopt(3) is dynamic, up to 32 MiB). It saves a
 fifth of the time; smaller blocks, tried first, made it worse.
 """
-_KEPT = frozenset({"note", "acknowledge", "shelve", "mark", "armed", "setting", "condition", "start", "end"})
+_KEPT = frozenset({"note", "acknowledge", "shelve", "mark", "armed", "condition", "start", "end"})
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

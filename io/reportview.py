@@ -241,15 +241,12 @@ _SAID = {
     "shelve": "shelved",
     "armed": "shaft declared clear",
     "mark": "offset typed in",
-    "setting": "setting changed",
 }
-
-
-_WORDS = ("name", "text", "reason", "key", "from", "to", "depth_m", "east_m", "north_m")
+_WORDS = ("name", "text", "reason", "depth_m", "east_m", "north_m")
 
 
 def people(reduction: Reduction) -> Table:
-    """Return what people said and did: notes, acknowledgements, changed settings, and who."""
+    """Return what people said and did: notes, acknowledgements, offsets typed in, and who."""
     rows = []
     for one in reduction.events:
         if one.name in _SAID:
