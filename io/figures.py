@@ -115,7 +115,8 @@ def _limit_lines(axes: Axes, stations: Sequence[Station]) -> None:
         limit = _MM * _column(rows, name)
         for sign in (-1.0, 1.0):
             (line,) = axes.plot(sign * limit, depth, color=colour, linewidth=1.0)
-            line.set_dashes(dashes) if dashes else None
+            if dashes:
+                line.set_dashes(dashes)
             if sign > 0:
                 line.set_label(f"{name} limit")
 

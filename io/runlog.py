@@ -252,9 +252,8 @@ class RunLogWriter:
         now = self._clock()
         if now - self._synced_at < self._policy.sync_every:
             return
-        self._synced_at = (
-            now  # before it can fail: then it is tried again an interval later, not at every line
-        )
+        # Before it can fail: then it is tried again an interval later, not at every line.
+        self._synced_at = now
         try:
             if self._part.is_gone():
                 self._part.rescue()

@@ -1,6 +1,6 @@
 """What the instruments of an emulated shaft feel: from the hidden truth and the physics to readings in SI units.
 
-How a reading is worded as a line is `io.emulator`; time comes in with the call, randomness as a generator.
+How a reading is worded as a line is `io.wording`; time comes in with the call, randomness as a generator.
 """
 
 from dataclasses import replace

@@ -6,11 +6,11 @@ import numpy as np
 import numpy.typing as npt
 
 from eastfall.physics.errors import ParameterError
+from eastfall.physics.robust import MAD_TO_SIGMA
 from eastfall.physics.settings import Instrument
 
 Array = npt.NDArray[np.float64]
 
-_MAD_TO_SIGMA = 1.482602218505602  # 1/Φ⁻¹(3/4), for the normal distribution
 _SUSPECT = 3.5
 """Robust deviations; Iglewicz, B. & Hoaglin, D. C. (1993), How to Detect and Handle Outliers, section 3."""
 
@@ -225,5 +225,5 @@ def _stands_apart(values: Array, floor: float) -> npt.NDArray[np.bool_]:
     away = np.abs(values - np.median(values))
     # A few ulp of the median's rounding are no deviation, even where all the others agree exactly.
     rounding = 8.0 * np.finfo(np.float64).eps * float(np.abs(values).max())
-    limit = max(_SUSPECT * max(_MAD_TO_SIGMA * float(np.median(away)), floor), rounding)
+    limit = max(_SUSPECT * max(MAD_TO_SIGMA * float(np.median(away)), floor), rounding)
     return np.asarray(away > limit)

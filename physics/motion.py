@@ -1,6 +1,7 @@
 """The equation of motion of a body falling through air on the turning Earth, for one body or many at once.
 
-It states the forces; integrating them is `fall`.
+It states the forces; `descent` integrates them down the shaft, `throw` for a body thrown up or aside, `ensemble` for
+many bodies at once.
 """
 
 from dataclasses import dataclass, fields

@@ -53,9 +53,8 @@ class TiltSpikes:
         spiky = np.zeros(joined.shape[1], dtype=bool)
         rows = joined.shape[1] - _BEFORE
         before = np.array([joined[1:, first : first + rows] for first in range(_BEFORE)])
-        before.sort(
-            axis=0
-        )  # the median by its middle row: numpy.median costs six times as much on a live block
+        # The median is the middle row: numpy.median costs six times as much on a live block.
+        before.sort(axis=0)
         away = np.abs(joined[1:, _BEFORE:] - before[_BEFORE // 2])
         depth = joined[0]
         near = (np.abs(depth[_BEFORE:] - depth[_BEFORE - 1 : -1]) <= _STEP) & (
