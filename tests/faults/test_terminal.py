@@ -7,201 +7,39 @@ import os
 import random
 import re
 import signal
-import socket
 import sys
 import threading
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from pathlib import Path
 
 import pytest
 
 pytest.importorskip("termios", reason="pseudo-terminals and job control are POSIX")
+sys.path.insert(0, str(Path(__file__).parent))
+
 import termios
 
-HERE = Path(__file__).parent
-sys.path[:0] = [str(HERE), str(HERE.parent / "tui")]
+import shell_help as shell
+from window_help import (
+    ANSWER,
+    EASTFALL,
+    PATIENCE,
+    RATE,
+    STEP,
+    Instrument,
+    Terminal,
+    Window,
+    assert_whole,
+    log_of,
+    recorded,
+)
 
-import shell_help as shell  # noqa: E402 - the parts of these tests that stand in no package
-from terminal_harness import EASTFALL, PATIENCE, Terminal  # noqa: E402
-
-from eastfall.io.arrivals import LineBlock  # noqa: E402
-from eastfall.io.errors import LogError  # noqa: E402
-from eastfall.io.runlog import read_log, verify_log  # noqa: E402
+from eastfall.io.errors import LogError
 
 pytestmark = pytest.mark.invariant
 
-SITE = """\
-[site]
-name = "Tarn Howe"
-latitude_deg = 54.6
-[shaft]
-depth_m = 900.0
-[run]
-kind = "guided"
-[[link]]
-url = "-"
-"""
-RATE = 100
-"""Lines a second."""
-STEP = 0.1
-"""Depth from line to line [m]: the depth on the screen tells which line it has seen."""
-ANSWER = re.compile(r"(?:WITHIN|OVER|UNDECIDED) (\d+\.\d) m")
 COLOUR = re.compile(rb"\x1b\[[0-9;]*\b(?:3[0-7]|4[0-7]|38|48|9[0-7]|10[0-7])(?:;[0-9;]*)?m")
-
-
-class Instrument(threading.Thread):
-    """A TCP device server that sends line after line to each connection."""
-
-    def __init__(self) -> None:
-        super().__init__(daemon=True)
-        self._listener = socket.create_server(("127.0.0.1", 0))
-        self.url = f"socket://127.0.0.1:{self._listener.getsockname()[1]}"
-        self._over = threading.Event()
-
-    def run(self) -> None:
-        """Serve one connection after the other."""
-        while not self._over.is_set():
-            try:
-                peer, _ = self._listener.accept()
-            except OSError:
-                return
-            with peer:
-                self._serve(peer)
-
-    def _serve(self, peer: socket.socket) -> None:
-        number = 0
-        while not self._over.wait(1.0 / RATE):
-            try:
-                peer.sendall(b"%.1f,0.00%02d,0.0010\r\n" % (number * STEP, number % 97))
-            except OSError:
-                return
-            number += 1
-
-    def close(self) -> None:
-        """Stop serving."""
-        self._over.set()
-        self._listener.shutdown(socket.SHUT_RDWR)
-        self._listener.close()
-        self.join(PATIENCE)
-
-
-class Window(Terminal):
-    """A window with a shell in it that runs the program."""
-
-    def __init__(self, folder: Path, *arguments: str, **environment: str) -> None:
-        self._job = folder / "job"
-        self._job.unlink(missing_ok=True)
-        command = [sys.executable, shell.__file__, str(self._job), *EASTFALL, *arguments]
-        super().__init__(command, 80, 24, **environment)
-        self.closed = False
-        self.before = termios.tcgetattr(self._ours)
-
-    @property
-    def job(self) -> int:
-        """The process number of the program."""
-        self.until(lambda: self._job.exists() and self._job.read_text().endswith("\n"))
-        return int(self._job.read_text())
-
-    def until(self, done: Callable[[], bool]) -> None:
-        """Read on until something holds."""
-        end = time.monotonic() + PATIENCE
-        while not done():
-            assert time.monotonic() < end, self.text
-            self.read(0.02)
-
-    def state(self) -> str:
-        """Return the letter of the program's state, as the system gives it; X when there is none."""
-        try:
-            return Path(f"/proc/{self.job}/stat").read_text().rsplit(")", 1)[1].split()[0]
-        except OSError:
-            return "X"
-
-    def flag(self, which: int) -> bool:
-        """Tell whether a local mode of the terminal is on."""
-        return bool(termios.tcgetattr(self._ours)[3] & which)
-
-    def shown(self) -> float:
-        """Return the depth that the screen answers for [m]; -1 without an answer."""
-        found = ANSWER.search(self.text)
-        return float(found[1]) if found else -1.0
-
-    def hang_up(self) -> None:
-        """Close the window."""
-        os.close(self._ours)
-        self.closed = True
-
-    def close(self) -> None:
-        """End what is left."""
-        if self._job.exists() and self.state() not in "XZ":
-            os.kill(self.job, signal.SIGKILL)
-        if not self.closed:
-            self.closed = True
-            super().close()
-        elif self.process.poll() is None:
-            self.process.kill()
-            self.process.wait(PATIENCE)
-
-
-@pytest.fixture
-def instrument() -> Iterator[Instrument]:
-    """Yield a server of numbered lines."""
-    one = Instrument()
-    one.start()
-    yield one
-    one.close()
-
-
-@pytest.fixture
-def site(tmp_path: Path) -> Path:
-    """Return a site file."""
-    path = tmp_path / "tarn.toml"
-    path.write_text(SITE, encoding="utf-8")
-    return path
-
-
-@pytest.fixture
-def window(instrument: Instrument, site: Path, tmp_path: Path) -> Iterator[Callable[..., Window]]:
-    """Open windows in which the instrument is watched, and close what is left."""
-    opened: list[Window] = []
-
-    def build(folder: Path | None = None, **environment: str) -> Window:
-        into = folder or tmp_path / "runs"
-        into.mkdir(exist_ok=True)
-        arguments = ("watch", str(site), "--link", instrument.url, "--into", str(into))
-        opened.append(Window(into, *arguments, **environment))
-        return opened[-1]
-
-    yield build
-    for one in opened:
-        one.close()
-
-
-def log_of(folder: Path) -> Path | None:
-    """Return the run log in a folder, if it was begun."""
-    return next(iter(folder.glob("*.eastfall.jsonl")), None)
-
-
-def recorded(path: Path) -> list[int]:
-    """Return the numbers of the lines in a log."""
-    with read_log(path) as reader:
-        return [
-            round(float(line.split(b",")[0]) / STEP)
-            for one in reader
-            if isinstance(one, LineBlock)
-            for line in one.lines()
-        ]
-
-
-def assert_whole(folder: Path, shown: float, state: str) -> int:
-    """Assert that a log holds every line from the first to the one on the screen at least; return how many."""
-    path = log_of(folder)
-    assert path is not None
-    numbers = recorded(path)
-    assert numbers == list(range(len(numbers)))
-    assert len(numbers) * STEP > shown
-    assert verify_log(path).state == state
-    return len(numbers)
 
 
 def test_a_closed_window_ends_the_run_and_closes_the_record(
@@ -220,11 +58,11 @@ def test_a_closed_window_ends_the_run_and_closes_the_record(
 
 
 def test_a_terminal_that_is_gone_without_a_signal_ends_the_run(
-    instrument: Instrument, site: Path, tmp_path: Path
+    instrument: Instrument, tarn: Path, tmp_path: Path
 ) -> None:
     """A terminal that is not the controlling one sends no SIGHUP; its end is noticed, and the log is sealed."""
     into = tmp_path / "runs"
-    command = (*EASTFALL, "watch", str(site), "--link", instrument.url, "--into", str(into))
+    command = (*EASTFALL, "watch", str(tarn), "--link", instrument.url, "--into", str(into))
     one = Terminal(command, 80, 24)
     try:
         one.wait("WITHIN")
@@ -346,16 +184,6 @@ def test_resized_to_20x5_and_back_in_ascii_without_colour_or_mouse(window: Calla
     assert "Traceback" not in one.raw.decode("ascii")
 
 
-def _usable(one: Window) -> None:
-    """Reset the terminal as a person would, and work in it."""
-    one.press("\nstty sane; tput reset; echo reset-$((2 * 3))\n")
-    one.wait("reset-6")
-    assert all(one.flag(mode) for mode in (termios.ICANON, termios.ECHO, termios.ISIG))
-    one.press("echo back-$((6 * 7))\r")
-    text = one.wait("back-42")
-    assert "$((6 * 7))" in text  # what is typed can be seen
-
-
 def _kill_many(window: Callable[..., Window], folder: Path, times: int, rng: random.Random) -> int:
     total = 0
     for attempt in range(times):
@@ -370,7 +198,7 @@ def _kill_many(window: Callable[..., Window], folder: Path, times: int, rng: ran
         os.kill(one.job, signal.SIGKILL)
         one.until(lambda one=one: f"{shell.ENDED} -9".encode() in one.raw)
         total += _after_kill(into, shown)
-        _usable(one)
+        one.make_usable()
         one.close()
     return total
 

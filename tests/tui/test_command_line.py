@@ -13,6 +13,7 @@ import click
 import pytest
 
 from eastfall.tui.main import VERBS
+from eastfall.tui.patient import PatientLines
 from eastfall.tui.verbs import live
 
 PROGRAM = str(Path(sys.executable).parent / "eastfall")
@@ -310,15 +311,15 @@ def test_the_demo_runs_without_a_screen_as_lines_of_text(place):
 
 
 @pytest.mark.parametrize(("lost", "status"), [(0, None), (3, 1)])
-def test_a_run_whose_record_lost_lines_ends_with_status_1(lost, status, capsys):
+def test_a_run_whose_record_lost_lines_ends_with_status_1(lost, status, capfd):
     """A full disk: the log's path and the count on standard error, and the status of a log that is not intact."""
     health = SimpleNamespace(log_path="run.eastfall.jsonl", log_lost=lost)
     left = None
     with click.Context(live.record):
         try:
-            live.judge_record(health)
+            live.finish(health, PatientLines(sys.stdout), PatientLines(sys.stderr), hurried=False)
         except click.exceptions.Exit as over:
             left = over.exit_code
-    said = capsys.readouterr()
+    said = capfd.readouterr()
     assert (left, said.out) == (status, "")
     assert ("run.eastfall.jsonl: incomplete, 3 lines" in said.err) is bool(lost)

@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING
 import click
 
 from eastfall.physics.errors import EastfallError
-from eastfall.tui.saying import say, say_path
+from eastfall.tui.patient import HOLD, PatientLines
 from eastfall.tui.verbs.options import above_nothing, an_input, into, readers_units
 
 if TYPE_CHECKING:
@@ -93,15 +93,16 @@ def record(
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
     loaded = load_site(site)
+    out, told = PatientLines(sys.stdout), PatientLines(sys.stderr)
     with _recorded(loaded, links, into, _cleared(loaded, shaft_clear)) as run, _signals() as stopped, run:
-        say_path(run.log_path)
-        sys.stdout.flush()
+        out.path(run.log_path)
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
-            _tell(run.step(_STEP))
+            _tell(run.step(_STEP), told)
         last = run.stop()
-    say(f"{last.health.frames} readings used, {last.health.rejected} lines refused", err=True)
-    judge_record(last.health)
+    told.keep_all()
+    told.line(f"{last.health.frames} readings used, {last.health.rejected} lines refused")
+    finish(last.health, out, told, hurried=stopped())
 
 
 def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path, seconds: float | None = None) -> None:
@@ -114,7 +115,9 @@ def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path, seconds: 
     # The links are opened before the screen: one that cannot be had is told in one line, here and now.
     with _recorded(site, links, folder, None) as run, run:
         status = run_live(site, run=run, curve=run.pipeline.survey.curve, seconds=seconds)
-    say_path(run.log_path)
+    out = PatientLines(sys.stdout)
+    out.path(run.log_path)
+    out.end()
     click.get_current_context().exit(status)
 
 
@@ -140,23 +143,35 @@ def _plainly(
 ) -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
-    lines = PlainLines(say, site.assumptions.run.kind, units=readers_units())
+    out, told = PatientLines(sys.stdout), PatientLines(sys.stderr)
+    lines = PlainLines(out.line, site.assumptions.run.kind, units=readers_units())
     with _recorded(site, links, folder, _cleared(site, shaft_clear)) as run, _signals() as stopped, run:
         end = _end_of(seconds)
         while not (stopped() or run.ended or time.monotonic() >= end):
             lines.take(run.step(_STEP))
-            sys.stdout.flush()
+            if out.error is not None:  # who read it has gone
+                raise out.error
         last = run.stop()
-        lines.end(last)
-    say_path(run.log_path)
-    judge_record(last.health)
+    out.keep_all()
+    lines.end(last)
+    out.path(run.log_path)
+    finish(last.health, out, told, hurried=stopped())
 
 
-def judge_record(health: "Health") -> None:
-    """End with status 1 where lines that came are not in the log: a full disk, a folder that is gone."""
+def finish(health: "Health", out: PatientLines, told: PatientLines, *, hurried: bool) -> None:
+    """Have the last words written, the record being closed; who told the program to end waits a moment at most.
+
+    The status is 1 where lines that came are not in the log: a full disk, a folder that is gone.
+    """
     if health.log_lost:
-        say(f"eastfall: {health.log_path}: incomplete, {health.log_lost} lines or events lost", err=True)
-        click.get_current_context().exit(1)
+        told.keep_all()
+        told.line(f"eastfall: {health.log_path}: incomplete, {health.log_lost} lines or events lost")
+    try:
+        for one in (told, out):
+            one.end(HOLD if hurried else float("inf"))
+    finally:
+        if health.log_lost:
+            click.get_current_context().exit(1)
 
 
 @contextmanager
@@ -192,11 +207,11 @@ def _cleared(site: "SiteFile", name: str | None) -> str | None:
     return getpass.getuser()
 
 
-def _tell(update: "RunUpdate") -> None:
+def _tell(update: "RunUpdate", told: PatientLines) -> None:
     """Write alarm changes to standard error as they come."""
     for one in update.findings:
         for change in one.alarms:
-            say(f"{change.name}: {change.old} -> {change.new}; {change.message}", err=True)
+            told.line(f"{change.name}: {change.old} -> {change.new}; {change.message}")
 
 
 @contextmanager
