@@ -29,8 +29,11 @@ def passes(stations: Sequence[Station]) -> tuple[Comparison, ...]:
 
 def outcome(one: Comparison, units: Units = METRIC) -> str:
     """Return what came out in one line."""
+    known = sum(row.moved != "unknown" for row in one.rows)
+    if not known:
+        return f"NOT KNOWN whether anything moved: no uncertainty at any of {len(one.rows)} depths"
     if not one.moved:
-        return f"NOTHING MOVED beyond its uncertainty at any of {len(one.rows)} depths"
+        return f"NOTHING MOVED beyond its uncertainty at any of {known} depths"
     most = max(one.moved, key=length)
     return (
         f"MOVED at {len(one.moved)} of {len(one.rows)} depths, most at {units.depth(most.depth)} {units.long}: "

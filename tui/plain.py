@@ -56,7 +56,8 @@ class PlainLines:
 
     def _station(self, one: "Station") -> str:
         at = f"{self._units.depth(one.depth)} {self._units.long}"
-        return f"station {at} {one.direction}: {words.answer(one, self._units)}"
+        how = words.taken(one, self._kind) if self._kind == "drop" else one.direction
+        return f"station {at} {how}: {words.answer(one, self._units)}"
 
     def _alarm(self, one: "AlarmChange") -> str:
         what = words.reworded(one.message, self._units)

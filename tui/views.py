@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 from math import isfinite
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -16,6 +17,9 @@ from eastfall.tui.units import METRIC, Units, lengths_in
 from eastfall.tui.widgets.figures import Figure
 from eastfall.tui.widgets.line import Piece
 from eastfall.tui.widgets.plan import PlanView, Point
+
+if TYPE_CHECKING:
+    from eastfall.physics.settings import Kind
 
 Subject = Standing | Station | None
 
@@ -92,9 +96,9 @@ def steer(session: Session, snapshot: Snapshot, one: Subject, keymap: Keymap = A
         told = f"Not armed. Clear the shaft, then press {arm} to say so. {planner} plans the release."
         return ((told, Role.WARNING),)
     if isinstance(one, Station):
-        rest = "at rest" if one.still else "in passing"
+        how = words.taken(one, session.assumptions.run.kind)
         follow = f"Press {keymap['watch.follow']} to follow the newest."
-        return ((f"Station {one.number}, {one.direction}, {rest}. {follow}", Role.TEXT),)
+        return ((f"Station {one.number}, {how}. {follow}", Role.TEXT),)
     if is_old(snapshot, one):
         return (("Do not go by this: wait until the feed is back.", Role.WARNING),)
     return ((words.steering(one, session.assumptions.run.kind, session.units), Role.STRONG),)
@@ -130,7 +134,7 @@ def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
             name="depth",
             value=units.depth(one.depth, int(one.depth < _DEEP * units.long_size)),
             unit=units.long,
-            note=_motion(one, units),
+            note=_motion(one, session.assumptions.run.kind, units),
         ),
         Figure(
             name="residual",
@@ -165,10 +169,11 @@ def figures(session: Session, one: Subject) -> tuple[Figure, ...]:
     return tuple(shown)
 
 
-def _motion(one: Standing | Station, units: Units) -> str:
+def _motion(one: Standing | Station, kind: "Kind", units: Units) -> str:
+    """Return how the line moves; of a body that fell, nothing does any more."""
     if isinstance(one, Station):
-        return one.direction
-    if not isfinite(one.speed):
+        return words.taken(one, kind).partition(",")[0]
+    if kind == "drop" or not isfinite(one.speed):
         return ""
     if abs(one.speed) < 0.005:
         return "line still"

@@ -5,7 +5,7 @@ from math import atan2, degrees, hypot, isfinite, log
 from typing import TYPE_CHECKING, Protocol
 
 from eastfall.physics.budget import COVERAGE_FACTOR
-from eastfall.physics.findings import AlarmChange, AlarmView, RestPoint, Standing
+from eastfall.physics.findings import AlarmChange, AlarmView, RestPoint, Standing, Station
 from eastfall.physics.verdict import horizontal
 from eastfall.tui.units import METRIC, NONE, Units, lengths_in
 
@@ -136,6 +136,13 @@ def pair(east: float, north: float, places: int = 1, units: Units = METRIC) -> s
     if not (isfinite(east) and isfinite(north)):
         return f"E – N – {units.short}"
     return f"E {units.signed(east, places)} N {units.signed(north, places)} {units.short}"
+
+
+def taken(one: Station, kind: "Kind") -> str:
+    """Return how a station came about: on which pass and whether at rest, or from how many bodies that fell."""
+    if kind == "drop":
+        return "1 body" if one.readings == 1 else f"{one.readings} bodies"
+    return f"{one.direction}, {'at rest' if one.still else 'in passing'}"
 
 
 def swing(rest: RestPoint | None, units: Units = METRIC) -> str:

@@ -467,3 +467,21 @@ async def test_resize_alone_shares_the_rows_out_anew(session: Make, snapshot: Sn
         await pilot.resize_terminal(80, 24)
         await pilot.pause()
         assert lines(app) == before
+
+
+@pytest.mark.parametrize("kind", ["guided", "hung", "drop"])
+async def test_no_screen_speaks_of_passes_where_bodies_fell(session: Make, snapshot: Snap, kind: str) -> None:
+    """Looking back at a station, its line in the table and its page: a drop has bodies and landings."""
+    app = built(session(kind))
+    async with app.run_test(size=(120, 40)) as pilot:
+        text = "\n".join(await shown(pilot, snapshot(standing=None)))
+        for keys in (("up",), ("s",), ("enter",)):
+            await pilot.press(*keys)
+            await pilot.pause()
+            text += "\n".join(lines(app))
+    fell = kind == "drop"
+    assert ("12 bodies" in text) is fell
+    assert ("12 landings" in text) is fell
+    for words in ("at rest", "down, ", "up, ", " down ", "12 readings"):
+        assert not (fell and words in text), words
+    assert ("at rest" in text) is not fell

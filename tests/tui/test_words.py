@@ -166,3 +166,17 @@ def test_nobody_is_told_to_move_nothing(standing: Make) -> None:
     assert words.steering(tiny, "guided") == "Leave it: it is off by less than this screen shows."
     told = steer(tiny, "guided")
     assert (told.angle, told.beat) == (None, None)
+
+
+@pytest.mark.parametrize(
+    ("kind", "changes", "told"),
+    [
+        ("guided", {"still": True, "direction": "down"}, "down, at rest"),
+        ("guided", {"still": False, "direction": "up"}, "up, in passing"),
+        ("drop", {"readings": 1, "still": True}, "1 body"),
+        ("drop", {"readings": 12, "still": True}, "12 bodies"),
+    ],
+)
+def test_stations_of_a_drop_are_told_by_their_bodies(station, kind, changes, told: str) -> None:
+    """A body that fell made no pass and came to no rest: what counts is how many fell."""
+    assert words.taken(station(**changes), kind) == told

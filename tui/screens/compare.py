@@ -20,6 +20,10 @@ _MOST = 3
 """Rows that the outcome, and the remarks, may take."""
 
 
+_BOTH = 110
+"""Columns from which plot and table stand side by side."""
+
+
 class CompareScreen(PaintedScreen[None]):
     """One comparison of several.
 
@@ -33,7 +37,7 @@ class CompareScreen(PaintedScreen[None]):
 
     PLACES = ("compare", "page")
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page", "compare"))
-    HORIZONTAL_BREAKPOINTS = [(0, "-small"), (110, "-normal")]  # noqa: RUF012
+    HORIZONTAL_BREAKPOINTS = [(0, "-small"), (_BOTH, "-normal")]  # noqa: RUF012
 
     def __init__(self, comparisons: tuple[Comparison, ...], units: Units = METRIC) -> None:
         super().__init__()
@@ -56,12 +60,15 @@ class CompareScreen(PaintedScreen[None]):
         table = self.query_one(LongTable)
         table.follows = False
         table.focus()
-        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("compare", "page"))
         self.paint()
 
     def paint(self) -> None:
         """Show the comparison in view."""
+        if not self.is_mounted:
+            return
         one = self._all[self._at]
+        idle = (*(("turn",) if self._both else ()), *(("other", "other-back") if len(self._all) < 2 else ()))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("compare", "page", without=idle))
         which = f"{self._at + 1} of {len(self._all)}" if len(self._all) > 1 else ""
         self.query_one("#compared", TextLine).show(
             (safe(one.second), Role.STRONG),
@@ -69,7 +76,8 @@ class CompareScreen(PaintedScreen[None]):
             (safe(one.first), Role.STRONG),
             right=((which, Role.STRONG),) if which else (),
         )
-        under = Role.GROUND_WARNING if one.moved else Role.GROUND_OK
+        calm = not one.moved and any(row.moved == "no" for row in one.rows)
+        under = Role.GROUND_OK if calm else Role.GROUND_WARNING
         words = differences.outcome(one, self._units)
         self.query_one("#outcome", TextLine).show((words, Role.ON_GROUND), under=under)
         left_out = (f"stations of the first beyond the second: {one.left_out}",) if one.left_out else ()
@@ -81,6 +89,14 @@ class CompareScreen(PaintedScreen[None]):
         self.query_one(Shift).show(one)
         rows = differences.chosen(one, self._order, only_moved=self._only_moved)
         self.query_one(LongTable).show(len(rows), lambda i: differences.row(rows[i], self._units))
+
+    @property
+    def _both(self) -> bool:
+        return self.size.width >= _BOTH
+
+    def on_resize(self) -> None:
+        """Tell the keys that mean something in this window."""
+        self.paint()
 
     def reckon_in(self, units: Units) -> None:
         """Show lengths in other units."""
@@ -106,7 +122,10 @@ class CompareScreen(PaintedScreen[None]):
 
     def action_turn(self) -> None:
         """Show the table instead of the plot, or the plot instead of the table, where both do not fit."""
-        self.query_one("#shown").toggle_class("-table")
+        if self._both:
+            self.app.notify("Plot and table both stand here.", markup=False, timeout=3)
+        else:
+            self.query_one("#shown").toggle_class("-table")
 
     def action_close(self) -> None:
         """Go back."""

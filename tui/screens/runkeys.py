@@ -203,7 +203,8 @@ class RunScreen(PaintedScreen[Choice | None]):
 
     def action_stations(self) -> None:
         """Open the table of stations."""
-        self.app.push_screen(StationsScreen(self.latest, self.session.units), self._chosen)
+        kind = self.session.assumptions.run.kind
+        self.app.push_screen(StationsScreen(self.latest, self.session.units, kind), self._chosen)
 
     def _chosen(self, index: int | None) -> None:
         self._look(replace(self.sight, station=index) if index is not None else self.sight)

@@ -1,6 +1,6 @@
 """The table of stations: every one that closed, ordered and filtered, one opened to its budget."""
 
-from typing import ClassVar
+from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
@@ -13,9 +13,12 @@ from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain
 from eastfall.tui.screens.following import FollowingScreen
 from eastfall.tui.store import Snapshot
-from eastfall.tui.units import METRIC, Units
+from eastfall.tui.units import METRIC, NONE, Units
 from eastfall.tui.widgets.line import KeyLine, TextLine
 from eastfall.tui.widgets.table import LongTable, fixed
+
+if TYPE_CHECKING:
+    from eastfall.physics.settings import Kind
 
 ORDERS = ("time", "depth", "residual")
 _WIDTHS = (7, 4, 13, 13, 8, 6, 6, 9, 4)
@@ -38,11 +41,11 @@ def head(units: Units = METRIC) -> str:
     return fixed(tuple(zip(names, _WIDTHS, strict=True)))
 
 
-def row(one: Station, units: Units = METRIC) -> str:
-    """Return a station as a line of the table."""
+def row(one: Station, units: Units = METRIC, kind: "Kind" = "guided") -> str:
+    """Return a station as a line of the table; bodies that fall make no passes."""
     cells = (
         units.depth(one.depth),
-        one.direction,
+        NONE if kind == "drop" else one.direction,
         f"{units.offset(one.measured_east)} {units.offset(one.measured_north)}",
         f"{units.offset(one.expected_east)} {units.offset(one.expected_north)}",
         units.offset(words.residual_length(one)),
@@ -70,9 +73,9 @@ class StationsScreen(FollowingScreen[int | None]):
     PLACES = ("stations", "page")
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page", "stations"))
 
-    def __init__(self, snapshot: Snapshot, units: Units = METRIC) -> None:
+    def __init__(self, snapshot: Snapshot, units: Units = METRIC, kind: "Kind" = "guided") -> None:
         super().__init__()
-        self._units = units
+        self._units, self._kind = units, kind
         self._snapshot = snapshot
         self._order = ORDERS[0]
         self._only_open = False
@@ -104,7 +107,7 @@ class StationsScreen(FollowingScreen[int | None]):
         stations = snapshot.stations
         self.query_one(LongTable).show(
             len(self._indices),
-            lambda i: (row(one := stations[self._indices[i]], self._units), _ROLE[one.verdict]),
+            lambda i: (row(one := stations[self._indices[i]], self._units, self._kind), _ROLE[one.verdict]),
         )
 
     def reckon_in(self, units: Units) -> None:
@@ -131,7 +134,7 @@ class StationsScreen(FollowingScreen[int | None]):
             if look:
                 self.dismiss(index)
 
-        self.app.push_screen(StationPage(self._snapshot.stations[index], self._units), after)
+        self.app.push_screen(StationPage(self._snapshot.stations[index], self._units, self._kind), after)
 
     def action_close(self) -> None:
         """Go back."""
@@ -155,21 +158,20 @@ class StationPage(ModalScreen[bool]):
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("station", "page"))
 
-    def __init__(self, one: Station, units: Units = METRIC) -> None:
+    def __init__(self, one: Station, units: Units = METRIC, kind: "Kind" = "guided") -> None:
         super().__init__()
-        self._one, self._units = one, units
+        self._one, self._units, self._kind = one, units, kind
 
     def compose(self) -> ComposeResult:
         """Show the answer, both offsets and the budget."""
         one = self._one
         with Vertical(classes="dialog"):
-            yield plain(
-                f"Station {one.number}, {one.direction}, {'at rest' if one.still else 'in passing'}", "title"
-            )
+            yield plain(f"Station {one.number}, {words.taken(one, self._kind)}", "title")
             yield plain(words.answer(one, self._units))
             yield plain(f"measured {words.pair(one.measured_east, one.measured_north, units=self._units)}")
             yield plain(f"expected {words.pair(one.expected_east, one.expected_north, units=self._units)}")
-            yield plain(f"from {one.readings} readings, closed {words.clock(one.time)} after the start\n")
+            what = "landings" if self._kind == "drop" else "readings"
+            yield plain(f"from {one.readings} {what}, closed {words.clock(one.time)} after the start\n")
             if one.spread_east is not None and one.spread_north is not None:
                 told = words.pair(one.spread_east, one.spread_north, units=self._units)
                 yield plain(f"single bodies scatter by {told} (standard deviation)\n")
