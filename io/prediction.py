@@ -70,12 +70,11 @@ def depths(assumptions: Assumptions, *, every: float | None, at: tuple[float, ..
 def predict(assumptions: Assumptions, at: list[float]) -> Prediction:
     """Work out the prediction at depths [m]."""
     curve = expected_curve(assumptions)
-    kind = assumptions.run.kind
-    speed = {"guided": assumptions.guide.line_speed, "hung": assumptions.line.line_speed}.get(kind, 0.0)
+    speed = assumptions.line_speed
     stations = _stations(curve, at, speed)
     contact = curve.wall_contact_depth
     shape = {
-        "kind": kind,
+        "kind": assumptions.run.kind,
         "site": assumptions.site.name,
         "reference": assumptions.run.reference,
         "stations": stations,
@@ -97,7 +96,7 @@ def predict(assumptions: Assumptions, at: list[float]) -> Prediction:
         shape=shape,
         rows=(names, [list(one.values()) for one in stations]),
         heading=(
-            f"{safe(assumptions.site.name) or 'unnamed site'}: {kind} run{running}; offsets in mm from "
+            f"{safe(assumptions.site.name) or 'unnamed site'}: {assumptions.run.kind} run{running}; offsets in mm from "
             f"{REFERENCE_LINES[assumptions.run.reference]}; u is the standard uncertainty"
         ),
         notes=notes,

@@ -125,6 +125,8 @@ class Key:
     choices: tuple[str, ...]
     low: float | None
     high: float | None
+    low_is_out: bool
+    """Whether `low` itself is not accepted."""
     required: bool
     default: Any
     """In the unit of the key; None where there is none."""
@@ -177,6 +179,7 @@ def _described(section: str, name: str, struct: type[Section]) -> Key:
         choices=tuple(choices),
         low=low,
         high=high,
+        low_is_out=meta.gt is not None,
         required=_is_required(struct, name),
         default=_default(section, name),
         expectation=_in_words(base, meta, tuple(choices), unit(name)),

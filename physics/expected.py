@@ -90,11 +90,6 @@ class Models:
         air = self.air if self.assumptions.body else None
         return fall(self.field, to_depth=to_depth, body=self.assumptions.body, air=air)
 
-    def body_at(self, depth: NDArray[np.float64]) -> Pair:
-        """Return where the body is at rising depths, shape (2, n) [m]."""
-        there = self.body(float(depth[-1])).at(depth)
-        return np.stack([there.east, there.north])
-
     def riding(self, depth: NDArray[np.float64], bob: Pair) -> NDArray[np.float64]:
         """Return how far east of its rest `bob` rides for each metre a second of its line, shape (n,) [s]."""
         return self._hung(depth, 1.0)[0] - bob[0]
@@ -131,30 +126,16 @@ class Models:
             case _:
                 return np.zeros((2, depth.size))
 
-    def plumb(self, depth: NDArray[np.float64]) -> Pair:
-        """Return what the run's own measurement shows in a plumb shaft, line at rest, shape (2, n) [m].
-
-        Guided: tilt is summed from the felt vertical, that is from the field line, so a guide along the reference
-        line shows the reference less the field line. Hung and drop: the bob, or the body, against the reference.
-        """
-        match self.assumptions.run.kind:
-            case "guided":
-                return self.reference(depth) - self.field_line(depth)
-            case "hung":
-                return self.bob(depth) - self.reference(depth)
-            case _:
-                return self.body_at(depth) - self.reference(depth)
-
     def stated(self, depth: NDArray[np.float64]) -> Pair:
         """Return what a plumb shaft shows with the line at the speed that the site states, shape (2, n) [m].
 
-        Guided or hung, at depths that rise from the collar.
+        Guided or hung, at depths that rise from the collar; at rest it is the `plumb` of `expected_curve`.
         """
-        given = self.assumptions
-        if given.run.kind == "hung":
-            return self._hung(depth, given.line.line_speed) - self.reference(depth)
-        shown = self.plumb(depth)
-        shown[0] -= given.guide.line_speed * self.seeming(depth)
+        speed = self.assumptions.line_speed
+        if self.assumptions.run.kind == "hung":
+            return self._hung(depth, speed) - self.reference(depth)
+        shown = self.reference(depth) - self.field_line(depth)
+        shown[0] -= speed * self.seeming(depth)
         return shown
 
 
@@ -352,6 +333,8 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
     bob = models.bob(depth)
     field_line = models.field_line(depth)
     body = np.stack([there.east, there.north])
+    # Tilt is summed from the felt vertical, that is from the field line: a guide along the reference line shows the
+    # reference less the field line. A bob and a body are seen against the reference itself.
     plumb = {"guided": reference - field_line, "hung": bob - reference, "drop": body - reference}
     budget = expected_budget(models)
     return ExpectedCurve(

@@ -342,3 +342,8 @@ class Assumptions:
     air: Air = field(default_factory=Air)
     instrument: Instrument = field(default_factory=Instrument)
     limits: Limits = field(default_factory=Limits)
+
+    @property
+    def line_speed(self) -> float:
+        """Speed of probe or line that a prediction is for [m/s], down positive; a falling body has none, so 0."""
+        return {"guided": self.guide.line_speed, "hung": self.line.line_speed, "drop": 0.0}[self.run.kind]

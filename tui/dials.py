@@ -64,15 +64,27 @@ class Dial:
         """Smallest and largest value, in the unit of the key."""
         return _SPANS.get(self.path, (self.key.low, self.key.high))
 
-    @property
-    def lowest_is_out(self) -> bool:
-        """Whether the smallest value itself is not accepted."""
-        return "more than" in self.key.expectation
-
 
 _SPANS = {FLOW_TOWARD: (-360.0, 360.0), FLOW_SPEED: (0.0, 40.0), "body.drag_coefficient": (0.0, 5.0)}
 
-
+_AIR = (
+    Dial(path="air.density_kgm3", says="air density", step=0.01),
+    Dial(
+        path=FLOW_SPEED,
+        says="air across",
+        step=0.1,
+        like="air.vertical_mps",
+        about="Cross-flow from collar to bottom",
+    ),
+    Dial(
+        path=FLOW_TOWARD,
+        says="  toward",
+        step=15.0,
+        like="instrument.a_azimuth_deg",
+        about="Where that air goes, from north",
+    ),
+    Dial(path="air.vertical_mps", says="air downward", step=0.5),
+)
 CONDITIONS = (
     Dial(path="run.kind", says="run"),
     Dial(path="run.reference", says="offsets from"),
@@ -93,22 +105,7 @@ CONDITIONS = (
     Dial(path="line.bob_density_kgm3", says="bob density", step=100.0),
     Dial(path="line.diameter_mm", says="wire diameter", step=0.1),
     Dial(path="line.mass_per_length_kgpm", says="wire mass", step=0.001),
-    Dial(path="air.density_kgm3", says="air density", step=0.01),
-    Dial(
-        path=FLOW_SPEED,
-        says="air across",
-        step=0.1,
-        like="air.vertical_mps",
-        about="Cross-flow from collar to bottom",
-    ),
-    Dial(
-        path=FLOW_TOWARD,
-        says="  toward",
-        step=15.0,
-        like="instrument.a_azimuth_deg",
-        about="Where that air goes, from north",
-    ),
-    Dial(path="air.vertical_mps", says="air downward", step=0.5),
+    *_AIR,
 )
 """Inputs of the prediction explorer."""
 RELEASE = (
@@ -125,22 +122,7 @@ RELEASE = (
     Dial(path="shaft.diameter_m", says="shaft diameter", step=0.1),
     Dial(path="shaft.centre_east_m", says="its centre east", step=0.1),
     Dial(path="shaft.centre_north_m", says="its centre north", step=0.1),
-    Dial(path="air.density_kgm3", says="air density", step=0.01),
-    Dial(
-        path=FLOW_SPEED,
-        says="air across",
-        step=0.1,
-        like="air.vertical_mps",
-        about="Cross-flow from collar to bottom",
-    ),
-    Dial(
-        path=FLOW_TOWARD,
-        says="  toward",
-        step=15.0,
-        like="instrument.a_azimuth_deg",
-        about="Where that air goes, from north",
-    ),
-    Dial(path="air.vertical_mps", says="air downward", step=0.5),
+    *_AIR,
 )
 """Inputs of the drop planner."""
 OPTIONAL = {"shaft.diameter_m": "not given", "body.mass_kg": "not given", "body.diameter_mm": "not given"}
@@ -148,24 +130,22 @@ OPTIONAL = {"shaft.diameter_m": "not given", "body.mass_kg": "not given", "body.
 IN_FILE = "as in file"
 
 
-def line_speed(assumptions: Assumptions) -> float:
-    """Return the speed that a prediction is for [m/s], down positive; of a drop there is none."""
-    speeds = {"guided": assumptions.guide.line_speed, "hung": assumptions.line.line_speed}
-    return speeds.get(assumptions.run.kind, 0.0)
+def _flow(table: tuple[tuple[float, float, float, float], ...], path: str) -> float | None:
+    """Return speed or direction of one stretch of air across, 0 without any; None of several stretches."""
+    if len(table) > 1:
+        return None
+    _, _, speed, toward = table[0] if table else (0.0, 0.0, 0.0, 0.0)
+    return speed if path == FLOW_SPEED else degrees(toward)
 
 
 def value_of(assumptions: Assumptions, dial: Dial) -> Any:
     """Return what assumptions say for a dial, in the unit of its key; None where they say nothing."""
-    flow = assumptions.air.cross_flow
-    match dial.path:
-        case "line speed":
-            return line_speed(assumptions)
-        case "cross-flow speed":
-            return (flow[0][2] if flow else 0.0) if len(flow) < 2 else None
-        case "cross-flow toward":
-            return (degrees(flow[0][3]) if flow else 0.0) if len(flow) < 2 else None
-        case "level":
-            return assumptions.shaft.depth
+    if dial.path == LINE_SPEED:
+        return assumptions.line_speed
+    if dial.path == LEVEL:
+        return assumptions.shaft.depth
+    if dial.path in {FLOW_SPEED, FLOW_TOWARD}:
+        return _flow(assumptions.air.cross_flow, dial.path)
     section, _, name = dial.path.partition(".")
     record = getattr(assumptions, section)
     if record is None:

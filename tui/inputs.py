@@ -87,7 +87,7 @@ class Inputs:
         turned = start + by * dial.step * size
         turned = min(turned, high) if high is not None else turned
         turned = max(turned, low) if low is not None else turned
-        if dial.lowest_is_out and low is not None and turned <= low:
+        if dial.key.low_is_out and low is not None and turned <= low:
             return self
         return self.put(dial, _number(dial, turned, self.units))
 
@@ -115,9 +115,9 @@ class Inputs:
             value = float(text) * size
         except ValueError:
             value = float("nan")
-        short = low is not None and (value < low or (value == low and dial.lowest_is_out))
+        short = low is not None and (value < low or (value == low and dial.key.low_is_out))
         if not isfinite(value) or short or (high is not None and value > high):
-            begin = "more than" if dial.lowest_is_out else "from"
+            begin = "more than" if dial.key.low_is_out else "from"
             span = f"{begin} {_round(low, size)} to {_round(high, size)} {mark}".rstrip()
             raise ValueError(f"{dial.says.strip()}: {text or 'nothing'}; expected a number {span}")
         return value

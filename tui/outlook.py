@@ -12,7 +12,6 @@ from eastfall.physics.budget import COVERAGE_FACTOR, combined
 from eastfall.physics.expected import ExpectedCurve, Pair, expected_curve
 from eastfall.physics.settings import Assumptions
 from eastfall.tui import words
-from eastfall.tui.dials import line_speed
 from eastfall.tui.typed import example_depths, read_depth
 from eastfall.tui.units import METRIC, Units
 
@@ -31,7 +30,7 @@ class Prospect:
     @classmethod
     def of(cls, assumptions: Assumptions) -> "Prospect":
         """Work it out; raises ParameterError for assumptions outside the models' domain."""
-        return cls(curve=expected_curve(assumptions), speed=line_speed(assumptions))
+        return cls(curve=expected_curve(assumptions), speed=assumptions.line_speed)
 
     @property
     def assumptions(self) -> Assumptions:
@@ -50,7 +49,7 @@ class Prospect:
             return self.curve.expected(z, self.speed)
         return self.curve.look_up(self.curve.bob if what == "bob" else self.curve.body, z)
 
-    def u(self, depth: Sequence[float]) -> Pair:
+    def expanded(self, depth: Sequence[float]) -> Pair:
         """Return the expanded uncertainty (k = 2) of what is expected at depths [m], shape (2, n)."""
         return COVERAGE_FACTOR * self.curve.look_up(self.curve.u, np.asarray(depth, dtype=float))
 
@@ -69,12 +68,10 @@ def title(one: Prospect) -> str:
 def answer(one: Prospect, units: Units = METRIC) -> str:
     """Return what a plumb shaft would show at the bottom, as one line."""
     east, north = one.offsets("expected", [one.deepest])[:, 0]
-    u = float(np.max(one.u([one.deepest])))
+    wide = float(np.max(one.expanded([one.deepest])))
     offset = f"E {units.signed(float(east))} N {units.signed(float(north))}"
     riding = f", line at {units.depth(one.speed)} {units.speed}" if one.speed else ""
-    return (
-        f"EXPECT {units.depth(one.deepest)} {units.long}: {offset} ± {units.offset(u)} {units.short}{riding}"
-    )
+    return f"EXPECT {units.depth(one.deepest)} {units.long}: {offset} ± {units.offset(wide)} {units.short}{riding}"
 
 
 def least_gap(one: Prospect) -> float | None:
@@ -121,7 +118,7 @@ def table(
     if other is None:
         columns = [one.offsets(which, depths) for which in WHATS]
         heads = ["expected E N", "± E N", "bob E N", "dropped E N"]
-        columns.insert(1, one.u(depths))
+        columns.insert(1, one.expanded(depths))
     else:
         mine, its = one.offsets(what, depths), other.offsets(what, depths)
         columns, heads = [mine, its, mine - its], [f"A {SAYS[what]}", "B", "A less B"]

@@ -87,7 +87,7 @@ class _CurvePanel(PanelGround):
         self.view = view
         self.depths = np.linspace(0.0, view.deepest, _POINTS) ** 2 / view.deepest
         self.mine, self.its = self._curves(view.one), self._curves(view.other)
-        self.u = view.one.u(self.depths.tolist())[which]
+        self.u = view.one.expanded(self.depths.tolist())[which]
 
     def _curves(self, one: Prospect | None) -> dict[str, Floats]:
         """Return offset by depth [m] of what is shown, by name."""
