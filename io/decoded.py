@@ -129,7 +129,7 @@ class Decoded:
     rejected: NDArray[np.float64] = field(default_factory=lambda: np.empty(0))
     """Host times of the bad lines [s], shape (m,)."""
     examples: tuple[Example, ...] = ()
-    """A few of the bad: (line number, kind of fault, safe text, what was expected)."""
+    """A few bad lines, the first and the last among them: (line number, kind of fault, safe text, what was expected)."""
     unused: int = 0
     partners: int = 0
 
@@ -262,7 +262,7 @@ def _with_faults(
         readings=readings,
         faults=faults,
         rejected=block.times[bad],
-        examples=_examples(bad[:EXAMPLES], codes, block, numbers),
+        examples=_examples(bad, codes, block, numbers),
         unused=int(np.count_nonzero(codes == UNUSED)),
         partners=int(np.count_nonzero(codes == PARTNER)),
     )
@@ -273,6 +273,8 @@ def _examples(
 ) -> tuple[Example, ...]:
     if not bad.size:
         return ()
+    if bad.size > EXAMPLES:  # the last one always: it is shown as the latest bad line of its link
+        bad = np.append(bad[: EXAMPLES - 1], bad[-1])
     lines = block.lines()
     return tuple(
         (

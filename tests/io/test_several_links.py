@@ -115,12 +115,25 @@ def _told(pipeline: Pipeline, found: list[Findings]) -> tuple[object, ...]:
     )
 
 
+def _time(arrival: Arrival) -> float:
+    return arrival.time if isinstance(arrival, RunEvent) else float(arrival.times[0])
+
+
+def _recorded(folder: Path, arrivals: list[Arrival], end: float) -> Path:
+    """Write arrivals to a run log."""
+    log = RunLogWriter.create(folder, parse_site(SITE, "gannet.toml"), started_at=STARTED)
+    for one in [*arrivals, RunEvent(time=end, name="end")]:
+        log.raw(one) if isinstance(one, LineBlock) else log.event(one)
+    log.close(end)
+    return log.path
+
+
 def _live(arrivals: list[Arrival], ticks: list[float], end: float) -> tuple[object, ...]:
     """Take arrivals one by one, and let time pass between them as a live run does."""
     pipeline = Pipeline(parse_site(SITE, "gannet.toml"))
     found, before = [], 0.0
     for one in [*arrivals, RunEvent(time=end, name="end")]:
-        now = one.time if isinstance(one, RunEvent) else float(one.times[0])
+        now = _time(one)
         found += [pipeline.tick(before + share * (now - before)) for share in ticks]
         found.append(pipeline.take(one))
         before = now
@@ -165,16 +178,60 @@ def test_live_replay_and_reduce_of_several_links_agree_to_the_last_bit(
 ) -> None:
     """Bad lines, silences and words in any place; the probe's clock runs a quarter fast; feed silence is soon told."""
     arrivals, end = _arrivals(_lines(seed, bad, silence), said), 26.0
-    log = RunLogWriter.create(
-        tmp_path_factory.mktemp("log"), parse_site(SITE, "gannet.toml"), started_at=STARTED
-    )
-    for one in arrivals:
-        log.raw(one) if isinstance(one, LineBlock) else log.event(one)
-    log.event(RunEvent(time=end, name="end"))
-    log.close(end)
+    path = _recorded(tmp_path_factory.mktemp("log"), arrivals, end)
     live = _live(arrivals, ticks, end)
-    assert _record_by_record(log.path) == live
-    assert _replayed(log.path, pace) == live
-    reduced = reduce_file(log.path)
+    assert _record_by_record(path) == live
+    assert _replayed(path, pace) == live
+    reduced = reduce_file(path)
     assert (repr(reduced.result), reduced.frames, reduced.rejected) == (live[0], live[2], live[3])
     assert sorted(reduced.faults.items()) == live[4]
+
+
+def _stands(pipeline: Pipeline) -> str:
+    """Return what a screen shows at an instant, to the last bit."""
+    survey = pipeline.survey
+    counts = pipeline.frames, pipeline.rejected, sorted(pipeline.faults.items())
+    return repr((survey.standing(), survey.alarms(), counts, sorted(pipeline.last_faults.items())))
+
+
+@pytest.mark.invariant
+@settings(max_examples=15, deadline=None)
+@given(
+    seed=st.integers(0, 10**6),
+    silence=st.sampled_from([0.0, 1.6, 3.5]),
+    said=events(),
+    instants=st.lists(st.floats(0.5, 20.5), min_size=1, max_size=4).map(sorted),
+)
+def test_what_stands_at_an_instant_of_a_replay_is_what_stood_there_live(
+    tmp_path_factory: pytest.TempPathFactory,
+    seed: int,
+    silence: float,
+    said: list[RunEvent],
+    instants: list[float],
+) -> None:
+    """Walked to or jumped to, forwards or back, an instant shows the answer, alarms and counts of the live run."""
+    arrivals = _arrivals(_lines(seed, 8, silence), said)
+    log = _recorded(tmp_path_factory.mktemp("log"), arrivals, 26.0)
+    pipeline, live, waiting = Pipeline(parse_site(SITE, "gannet.toml")), [], list(arrivals)
+    for instant in instants:
+        while waiting and _time(waiting[0]) <= instant:
+            pipeline.take(waiting.pop(0))
+        pipeline.tick(instant)
+        live.append(_stands(pipeline))
+    walked, jumping = Replay(log), Replay(log)
+    for instant, stood in zip(instants, live, strict=True):
+        walked.advance(instant)
+        assert _stands(walked.pipeline) == stood
+    for instant, stood in reversed(list(zip(instants, live, strict=True))):
+        jumping.seek(instant)
+        assert _stands(jumping.pipeline) == stood
+    walked.close()
+    jumping.close()
+
+
+def test_a_step_goes_to_the_next_instant_of_any_link(tmp_path: Path) -> None:
+    """Stepping from the start visits the instants of all links in their order, each in blocks of its own."""
+    arrivals = _arrivals(_lines(1, 0, 0.0), [RunEvent(time=5.0, name="note", fields={"text": "water"})])
+    replay = Replay(_recorded(tmp_path, arrivals, 26.0))
+    assert [replay.step().time for _ in range(120)] == [_time(one) for one in arrivals[:120]]
+    replay.close()
