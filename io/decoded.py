@@ -129,7 +129,7 @@ class Decoded:
     rejected: NDArray[np.float64] = field(default_factory=lambda: np.empty(0))
     """Host times of the bad lines [s], shape (m,)."""
     examples: tuple[Example, ...] = ()
-    """A few bad lines, the first and the last among them: (line number, kind of fault, safe text, what was expected)."""
+    """The first bad lines and the last: (line number, kind of fault, safe text, what was expected)."""
     unused: int = 0
     partners: int = 0
 
