@@ -15,6 +15,7 @@ from eastfall.io.forms import decoder_for
 from eastfall.io.join import NO_DEPTH, NO_PARTNER, Join, Joined
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import LinkSettings, SiteFile
+from eastfall.io.siteplace import refusals_of
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.findings import AlarmChange, Findings, Rows, Station
 from eastfall.physics.survey import Survey
@@ -57,7 +58,8 @@ class Pipeline:
 
     def __init__(self, site: SiteFile, survey: Survey | None = None, *, armed: bool | None = None) -> None:
         links = site.links or (_DEFAULT_LINK,)
-        self.survey = Survey(site.assumptions, notes=site.notes) if survey is None else survey
+        with refusals_of(site):
+            self.survey = Survey(site.assumptions, notes=site.notes) if survey is None else survey
         self.armed = site.assumptions.run.kind != "drop" if armed is None else armed
         self.faults: Counter[str] = Counter()
         self.frames = 0

@@ -13,6 +13,7 @@ from eastfall.io.logformat import is_run_log
 from eastfall.io.logreader import LogReader
 from eastfall.io.pipeline import Pipeline
 from eastfall.io.sitefile import SiteFile
+from eastfall.io.siteplace import refusals_of
 from eastfall.io.whatif import Difference, differences, with_lines_of
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.survey import Survey
@@ -74,13 +75,14 @@ class Recording:
 
     def pipeline(self, curve: ExpectedCurve | None = None, *, u_of_rows: bool = True) -> Pipeline:
         """Return a fresh pipeline for the settings in use, with their curve where it stands ready; see `Survey`."""
-        survey = Survey(
-            self.site.assumptions,
-            curve=curve,
-            feed_watched=self.is_log,
-            notes=self.site.notes,
-            u_of_rows=u_of_rows,
-        )
+        with refusals_of(self.site):
+            survey = Survey(
+                self.site.assumptions,
+                curve=curve,
+                feed_watched=self.is_log,
+                notes=self.site.notes,
+                u_of_rows=u_of_rows,
+            )
         return Pipeline(self.site, survey, armed=None if self.is_log else True)
 
 

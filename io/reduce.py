@@ -16,6 +16,7 @@ from eastfall.io.pipeline import Pipeline
 from eastfall.io.recording import Recording, Source, open_recording
 from eastfall.io.seal import Verification
 from eastfall.io.sitefile import SiteFile
+from eastfall.io.siteplace import refusals_of
 from eastfall.io.whatif import Difference
 from eastfall.physics.board import ACTION
 from eastfall.physics.expected import ExpectedCurve, expected_curve
@@ -110,7 +111,9 @@ def reduce_file(
     """
     np.empty(_ROOM, dtype=np.uint8)
     recording = open_recording(path, site, interval)
-    pipeline = recording.pipeline(curve_for(recording.site.assumptions), u_of_rows=False)
+    with refusals_of(recording.site):
+        curve = curve_for(recording.site.assumptions)
+    pipeline = recording.pipeline(curve, u_of_rows=False)
     source = recording.source()
     try:
         events = run_through(source, pipeline, is_log=recording.is_log)

@@ -10,7 +10,7 @@ import tomllib
 from codecs import BOM_UTF8
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
-from datetime import date, time
+from datetime import date
 from pathlib import Path
 from typing import Any
 
@@ -20,6 +20,7 @@ from eastfall.io import sitekeys
 from eastfall.io.checksum import Checksum
 from eastfall.io.errors import SiteFileError
 from eastfall.io.sitekeys import Form, SiteDocument
+from eastfall.io.siteplace import Place
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.settings import Assumptions
 
@@ -113,7 +114,7 @@ def parse_site(text: str, source: str, *, on: date | None = None) -> SiteFile:
         raise SiteFileError(
             f"{source}: not TOML: {error}; expected lines such as latitude_deg = 57.3"
         ) from error
-    place = _Place(source, text)
+    place = Place(source, text)
     _date_as_text(tree)
     for path, value in _leaves(tree, ""):
         if isinstance(value, float) and not math.isfinite(value):
@@ -142,43 +143,6 @@ def _date_as_text(tree: dict[str, Any]) -> None:
         instrument["calibrated_on"] = instrument["calibrated_on"].isoformat()
 
 
-@dataclass(frozen=True, slots=True)
-class _Place:
-    """Where in the file a key stands, for messages."""
-
-    source: str
-    text: str
-
-    def line_of(self, path: str) -> int | None:
-        """Return the line of a dotted key path, as well as it can be found in the text."""
-        section, _, key = path.rpartition(".")
-        name = re.escape(re.sub(r"\[\d+\]", "", key))
-        inside = section == ""
-        for number, line in enumerate(self.text.splitlines(), start=1):
-            if heading := re.match(r"\s*\[+\s*([\w-]+)\s*\]+", line):
-                inside = heading[1] == re.sub(r"\[\d+\]", "", section)
-                if section == "" and heading[1] == key:
-                    return number
-            elif inside and re.match(rf"\s*\"?{name}\"?\s*=", line):
-                return number
-        return None
-
-    def error(self, path: str, value: object, expected: str) -> SiteFileError:
-        """Return the one clear line."""
-        line = self.line_of(path)
-        where = f"{self.source}, line {line}" if line else self.source
-        return SiteFileError(f"{where}: {path} is {_shown(value)}; expected {expected}", key=path)
-
-
-def _shown(value: object) -> str:
-    """Return a value much as it stands in the file."""
-    if value is None:
-        return "missing"
-    text = str(value).lower() if isinstance(value, bool) else repr(value)
-    text = value.isoformat() if isinstance(value, date | time) else text
-    return text if len(text) <= 60 else text[:57] + "..."
-
-
 def _leaves(tree: object, path: str) -> Iterator[tuple[str, object]]:
     if isinstance(tree, dict):
         for key, value in tree.items():
@@ -201,7 +165,7 @@ def _at(tree: object, path: str) -> object:
     return tree
 
 
-def _converted(tree: dict[str, Any], place: _Place) -> SiteDocument:
+def _converted(tree: dict[str, Any], place: Place) -> SiteDocument:
     try:
         return msgspec.convert(tree, SiteDocument)
     except msgspec.ValidationError as error:
@@ -219,7 +183,7 @@ def _converted(tree: dict[str, Any], place: _Place) -> SiteDocument:
     raise place.error(path, _at(tree, path), _expectation(path, what))
 
 
-def _unknown_key(key: str, section: str, place: _Place) -> SiteFileError:
+def _unknown_key(key: str, section: str, place: Place) -> SiteFileError:
     known = sitekeys.names_in(section)
     near = difflib.get_close_matches(key, known, n=1)
     hint = f"did you mean {near[0]}? " if near else ""
@@ -246,7 +210,7 @@ def _expectation(path: str, what: str) -> str:
     return what.replace("`", "").removeprefix("Expected ")
 
 
-def _assumptions(document: SiteDocument, tree: dict[str, Any], place: _Place) -> Assumptions:
+def _assumptions(document: SiteDocument, tree: dict[str, Any], place: Place) -> Assumptions:
     records: dict[str, Any] = {}
     for section, record in sitekeys.RECORDS.items():
         given = getattr(document, section)
@@ -291,7 +255,7 @@ _NEEDED = {
 """Per kind of run: groups of columns, of each of which at least one must be read."""
 
 
-def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], place: _Place) -> None:
+def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], place: Place) -> None:
     if not links or any(one.form == "iec61162" for one in links):
         return
     present = {column for one in links for column in one.columns}
@@ -302,7 +266,7 @@ def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], pl
             raise place.error("link.columns", sorted(present), f"{wanted} among them in a {kind} run")
 
 
-def _calibration_notes(assumptions: Assumptions, place: _Place, on: date | None) -> tuple[str, ...]:
+def _calibration_notes(assumptions: Assumptions, place: Place, on: date | None) -> tuple[str, ...]:
     """Point out a calibration that is too old on the day of the run, or lies in its future."""
     instrument = assumptions.instrument
     if not instrument.calibrated_on:
@@ -323,7 +287,7 @@ def _calibration_notes(assumptions: Assumptions, place: _Place, on: date | None)
     return ()
 
 
-def _with_true_north(assumptions: Assumptions, place: _Place, on: date | None) -> Assumptions:
+def _with_true_north(assumptions: Assumptions, place: Place, on: date | None) -> Assumptions:
     """Put the angle from the stated north to true north beside the instrument's azimuth."""
     instrument, site = assumptions.instrument, assumptions.site
     if instrument.azimuth_from == "true":

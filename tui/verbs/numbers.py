@@ -93,28 +93,33 @@ def expect(
     """
     from eastfall.io import prediction  # noqa: PLC0415 (the numerical library only where numbers are made)
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
+    from eastfall.io.siteplace import refusals_of  # noqa: PLC0415
 
     if explore:
         from eastfall.tui.opening import run_explorer  # noqa: PLC0415 (the screen library only where a screen opens)
 
         click.get_current_context().exit(run_explorer(load_site(site)))
-    assumptions = load_site(site).assumptions
+    loaded = load_site(site)
+    assumptions = loaded.assumptions
     depths = prediction.depths(assumptions, every=every, at=at)
     if line:
-        found = _line(assumptions, depths, apart=apart, toward=toward, decay=decay, small=small)
+        with refusals_of(loaded):
+            found = _line(assumptions, depths, apart=apart, toward=toward, decay=decay, small=small)
         if form == "json":
             print_json(found)
         else:
             print_rows((list(found["line"][0]), [list(one.values()) for one in found["line"]]), form)
         return
     if budget:
-        rows = prediction.budget(assumptions, depths)
+        with refusals_of(loaded):
+            rows = prediction.budget(assumptions, depths)
         if form == "json":
             print_json(rows)
         else:
             print_rows(prediction.budget_rows(rows), form)
         return
-    predicted = prediction.predict(assumptions, depths)
+    with refusals_of(loaded):
+        predicted = prediction.predict(assumptions, depths)
     if form == "json":
         print_json(predicted.shape)
         return
