@@ -5,12 +5,8 @@ from math import ceil, hypot, sqrt
 from typing import Protocol
 
 from eastfall.physics.budget import COVERAGE_FACTOR
+from eastfall.physics.kinds.base import BY_READINGS
 from eastfall.physics.verdict import horizontal
-
-RANDOM = frozenset(
-    {"tilt, random", "tilt at rest", "readings", "rest point", "reading of the mark", "scatter of the marks"}
-)
-"""Inputs whose part falls with the square root of the number of readings."""
 
 
 class _Decided(Protocol):
@@ -133,7 +129,7 @@ def _along(station: _Decided, length: float) -> dict[str, float]:
 
 
 def _more(station: _Decided, parts: dict[str, float], u: float, needed: float) -> int | None:
-    random = sum(part**2 for name, part in parts.items() if name in RANDOM)
+    random = sum(part**2 for name, part in parts.items() if name in BY_READINGS)
     room = needed**2 - (u**2 - random)
     if random <= 0.0 or room <= 1e-12 * u**2:
         return None

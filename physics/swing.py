@@ -89,16 +89,6 @@ class RestPoint:
         """Standard uncertainty of `north` [m]."""
         return sqrt(float(self.covariance[1, 1]))
 
-    @property
-    def period_s(self) -> float:
-        """`period` [s]."""
-        return self.period
-
-    @property
-    def decay_s(self) -> float:
-        """`decay` [s]."""
-        return self.decay
-
     def swings_needed(self, for_uncertainty: float) -> float:
         """Full swings after which both standard uncertainties should be under a value.
 

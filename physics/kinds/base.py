@@ -259,6 +259,16 @@ def from_wall(assumptions: Assumptions, away: Array) -> Array:
 
 RANDOM = "tilt, random"
 """The input that gains with every reading, so that its part between two stations is a difference of squares."""
+READINGS, REST_POINT = "readings", "rest point"
+"""Of a bob: the mean of quiet readings, and what a swing says."""
+MARK, MARKS = "reading of the mark", "scatter of the marks"
+"""Of falling bodies: what is assumed of each landing mark, and what a series of them shows."""
+OF_A_RELEASE = frozenset(
+    {"release point east", "release point north", "release speed east", "release speed north", MARK}
+)
+"""Inputs that are drawn anew with every body."""
+BY_READINGS = frozenset({RANDOM, READINGS, REST_POINT, MARKS}) | OF_A_RELEASE
+"""Inputs whose part falls with the square root of the number of readings."""
 
 
 def _leans(facts: StationFacts, residual: Array, limits: Limits) -> list[_Judgement]:

@@ -10,6 +10,9 @@ from eastfall.physics.budget import combined
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.kinds.base import (
+    MARK,
+    MARKS,
+    OF_A_RELEASE,
     ROW,
     Array,
     Batch,
@@ -26,8 +29,6 @@ from eastfall.physics.settings import Assumptions
 
 _SAME_LEVEL = 0.05
 """Marks within this depth of each other were made at one level [m]."""
-_OF_A_RELEASE = ("release point east", "release point north", "release speed east", "release speed north")
-"""Inputs that are drawn anew with every body, so that their part shrinks with the number of marks."""
 
 
 @dataclass(slots=True)
@@ -116,14 +117,14 @@ class Drop(Plain):
         """
         count, budget = level.count, self._curve.budget
         parts = np.concatenate([budget.at(level.depth), np.full((1, 2, 1), self._u_offset)])
-        names = (*budget.names, "reading of the mark")
-        single = np.array([name in _OF_A_RELEASE or name == names[-1] for name in names])
+        names = (*budget.names, MARK)
+        single = np.array([name in OF_A_RELEASE for name in names])
         assumed = combined(parts[single])[:, 0]
         seen = np.sqrt(level.squares / (count - 1)) if count > 1 else np.zeros(2)
         if np.any(seen > assumed):
             scatter = (np.maximum(seen, assumed) / np.sqrt(count)).reshape(1, 2, 1)
             kept = tuple(name for name, one in zip(names, single, strict=True) if not one)
-            return (*kept, "scatter of the marks"), np.concatenate([parts[~single], scatter])
+            return (*kept, MARKS), np.concatenate([parts[~single], scatter])
         parts[single] /= np.sqrt(count)
         return names, parts
 

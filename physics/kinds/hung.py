@@ -14,6 +14,8 @@ from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.hung import free_period, single_swing
 from eastfall.physics.kinds.azimuths import azimuth_of_a
 from eastfall.physics.kinds.base import (
+    READINGS,
+    REST_POINT,
     ROW,
     Array,
     Batch,
@@ -287,14 +289,14 @@ class Hung(Plain):
             position, u, name = (
                 np.array([rest.east, rest.north]),
                 np.array([rest.u_east, rest.u_north]),
-                "rest point",
+                REST_POINT,
             )
         else:
             position, scatter = level.mean(), level.scatter()
             quiet = bool((scatter <= self._quiet(level)).all())
             # A swing that does not fit the model leaves only its scatter, all of it, to say where the rest is.
             u = np.maximum(scatter, self._random(level)) / (np.sqrt(level.count) if quiet else 1.0)
-            name = "readings" if quiet else "swing not resolved"
+            name = READINGS if quiet else "swing not resolved"
             if not level.swing_seen:
                 # A few readings near a turning point look like rest; nothing is known of the rest point yet.
                 u, name = np.full(2, np.nan), "swing not seen yet"
@@ -343,8 +345,8 @@ class Hung(Plain):
             u_east=float(rest.u_east),
             u_north=float(rest.u_north),
             covariance_east_north=float(rest.covariance[0, 1]),
-            period=float(rest.period_s),
-            decay=float(rest.decay_s),
+            period=float(rest.period),
+            decay=float(rest.decay),
             swings=float(rest.swings),
             fits=rest.fits,
             message=rest.message,

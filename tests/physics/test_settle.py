@@ -2,12 +2,16 @@
 
 from dataclasses import replace
 
+import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from survey_help import run
 
 from eastfall.physics.findings import Station
-from eastfall.physics.settle import RANDOM, settle
+from eastfall.physics.readings import Readings
+from eastfall.physics.settings import Body
+from eastfall.physics.settle import settle
 from eastfall.physics.verdict import horizontal, verdict
 
 NAMES = ("tilt, random", "tilt, zero", "azimuth")
@@ -117,4 +121,23 @@ def test_doing_what_it_says_decides(east, north, parts):
         more = replace(one, readings=one.readings + found.more_readings)
         better = with_part(more, 0, (one.readings / more.readings) ** 0.5 * (1.0 - 1e-9))
         assert better.verdict == found.leans_to
-    assert NAMES[0] in RANDOM
+
+
+@pytest.mark.invariant
+def test_a_series_of_drops_is_decided_by_as_many_bodies_more_as_it_says_and_not_by_one_less(shaft):
+    """Every body is released anew, so the release's part falls with their number too, as that of the marks does."""
+    assumptions = shaft("drop", body=Body(mass=0.5, diameter=0.05, u_release_speed=0.002))
+
+    def landed(count, east):
+        marks = Readings.of(
+            time=np.arange(float(count)), depth=[300.0] * count, east=[east] * count, north=[0.0] * count
+        )
+        return run(assumptions, marks)[0].result().stations[0]
+
+    first = landed(1, 0.0)
+    east = first.expected_east + 0.9 * first.action
+    found = settle(landed(2, east))
+    assert found is not None
+    assert found.more_readings
+    assert landed(2 + found.more_readings, east).verdict == found.leans_to
+    assert landed(1 + found.more_readings, east).verdict == "undecided"
