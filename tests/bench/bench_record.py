@@ -1,4 +1,4 @@
-"""Speed of the record, as ratios in one run: reduce of a sealed log, verify, the writer's cost, the shelf.
+"""Speed of the record, as ratios in one run: reduce of sealed logs, verify, jumps, the writer's cost, the shelf.
 
 Run with `python tests/bench/bench_record.py [--lines 2000000] [--logs 1000]`; it prints one table. Works of long logs
 are processes of their own, timed whole in CPU seconds, so that other work on the machine does not count. Captures and
@@ -44,6 +44,29 @@ import sys, numpy as np
 depth, a, b = np.loadtxt(sys.argv[1], delimiter=",", unpack=True)
 step = np.diff(depth)
 print(np.sum(step * np.sin(np.radians(a[1:]))), np.sum(step * np.sin(np.radians(b[1:]))))
+"""
+TWO_LINKS = """\
+[[link]]
+url = "winch"
+columns = ["depth_m"]
+[[link]]
+url = "probe"
+columns = ["tilt_a_deg", "tilt_b_deg"]
+"""
+LOADTXT_OF_TWO = """
+import sys, numpy as np
+time, depth = np.loadtxt(sys.argv[1], delimiter=",", unpack=True)
+when, a, b = np.loadtxt(sys.argv[2], delimiter=",", unpack=True)
+step = np.diff(np.interp(when, time, depth))
+print(np.sum(step * np.sin(np.radians(a[1:]))), np.sum(step * np.sin(np.radians(b[1:]))))
+"""
+JUMP = """
+import sys
+from pathlib import Path
+from eastfall.io.replay import Replay
+replay = Replay(Path(sys.argv[1]))
+standing = replay.seek(0.9 * replay.duration).standing
+assert standing is not None and abs(replay.time - 0.9 * replay.duration) < 1.0
 """
 REDUCE = """
 import sys
@@ -100,6 +123,26 @@ def write_log(folder: Path, lines: list[bytes], batch: int) -> tuple[Path, float
     return log.path, time.process_time() - begun
 
 
+def write_two_links(folder: Path, count: int) -> tuple[Path, Path, Path]:
+    """Record winch and probe in turn, a line a record, `count` lines in all; return the log, and each as a table."""
+    site = parse_site(SITE_TEXT.replace('[[link]]\nurl = "-"\n', TWO_LINKS), "bench.toml")
+    log = RunLogWriter.create(folder, site, started_at=datetime(2026, 1, 14, tzinfo=UTC))
+    tables: tuple[list[bytes], list[bytes]] = ([], [])
+    for number, line in enumerate(make_lines(count)):
+        link, now = number % 2, round(number / RATE, 6)
+        said = line.split(b",", 1)[link]
+        tables[link].append(b"%.3f,%s\n" % (now, said))
+        block = LineBlock(data=said + b"\n", times=np.array([now]), first_line=number // 2 + 1, link=link)
+        log.raw(block)
+        log.tick(now)
+    log.event(RunEvent(time=count / RATE, name="end"))
+    log.close(count / RATE)
+    winch, probe = folder / "winch.csv", folder / "probe.csv"
+    winch.write_bytes(b"".join(tables[0]))
+    probe.write_bytes(b"".join(tables[1]))
+    return log.path, winch, probe
+
+
 def cost(script: str, *arguments: str) -> tuple[float, float, str]:
     """Run a script; return its CPU time [s], the time on the clock [s], and what it said."""
     begun = time.perf_counter()
@@ -126,6 +169,7 @@ def rows(count: int = LINES, logs: int = LOGS) -> list[Row]:
         batched, _ = write_log(folder / "batched", lines, 4)
         return [
             *_reductions(bare, single, batched),
+            *_of_two_links(*write_two_links(folder / "two", count), single),
             ("record one line", f"2 % of a core at {RATE} a second", 0.02 * count / (RATE * spent), 1.0),
             *_shelf(folder, lines, logs),
         ]
@@ -149,6 +193,33 @@ def _reductions(bare: Path, single: Path, batched: Path) -> list[Row]:
             1.0 / 2.5,
         ),
         ("verify a sealed log", "reduce of it", reduced / verified, 1.0),
+    ]
+
+
+def _of_two_links(log: Path, winch: Path, probe: Path, of_one: Path) -> list[Row]:
+    """Reduce and jump in a log of two links; work and yardsticks by turns, the median of the ratios."""
+    turns = [
+        [
+            cost(*one)[0]
+            for one in (
+                (LOADTXT_OF_TWO, str(winch), str(probe)),
+                (REDUCE, str(of_one)),
+                (REDUCE, str(log)),
+                (JUMP, str(log)),
+            )
+        ]
+        for _ in range(4)
+    ][1:]  # the first warms up
+    script, one, two, jump = np.array(turns).T
+    return [
+        (
+            "reduce a sealed log of two links",
+            "a script with numpy.loadtxt",
+            np.median(script / two),
+            1.0 / 2.5,
+        ),
+        ("reduce a sealed log of two links", "reduce of one of one link", np.median(one / two), 0.8),
+        ("jump to nine tenths of it in a replay", "reduce of it", np.median(two / jump), 0.5),
     ]
 
 
