@@ -215,8 +215,8 @@ def rest_point(reduction: Reduction) -> str | None:
     fit = "" if one.fits else " The swing does not follow the model: " + safe(one.message, 200)
     return (
         f"The bob comes to rest {mm(one.east)} mm east and {mm(one.north)} mm north of the reference line, "
-        f"U {plain_mm(2 * one.u_east)} and {plain_mm(2 * one.u_north)} mm, from {float(one.swings):.1f} full "
-        f"swings of period {float(one.period):.2f} s, {_fading(float(one.decay))}.{fit}"
+        f"U {plain_mm(COVERAGE_FACTOR * one.u_east)} and {plain_mm(COVERAGE_FACTOR * one.u_north)} mm, from "
+        f"{float(one.swings):.1f} full swings of period {float(one.period):.2f} s, {_fading(float(one.decay))}.{fit}"
     )
 
 

@@ -9,7 +9,7 @@ from math import hypot, isfinite, pi
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.physics.budget import combined
+from eastfall.physics.budget import COVERAGE_FACTOR, combined
 from eastfall.physics.findings import Best, Closure, FaceSums, Station
 from eastfall.physics.kinds.base import RANDOM
 from eastfall.physics.kinds.shares import (
@@ -174,6 +174,7 @@ def _two_passes(
         kept[ZERO] = zeros
         kept |= _of_axes(best, assumptions)
     own = [part for name, part in kept.items() if name in OWN]
+    # The parts kept are those of the mean of both, half of what their difference has.
     u_apart = 2.0 * combined([*own, np.full(first.shape, _GRAIN)])
     odd = np.abs(_freed(depth, apart, opposite=opposite))
     disagree = odd > _TOO_FAR * u_apart
@@ -303,8 +304,8 @@ def face_notes(faces: FaceSums | None, instrument: Instrument) -> tuple[str, ...
     for axis, zero, u in (("A", faces.zero_a, faces.u_zero_a), ("B", faces.zero_b, faces.u_zero_b)):
         if isfinite(zero) and abs(zero) > _TOO_FAR * hypot(u, instrument.u_zero):
             notes.append(
-                f"the faces show a zero on {axis} of {zero / DEGREE:.4f} ± {2.0 * u / DEGREE:.4f}°, beyond its stated "
-                "uncertainty: single passes are off by it, both together are not"
+                f"the faces show a zero on {axis} of {zero / DEGREE:.4f} ± {COVERAGE_FACTOR * u / DEGREE:.4f}°, "
+                "beyond its stated uncertainty: single passes are off by it, both together are not"
             )
     if faces.suspect_depths:
         shown = ", ".join(f"{z:g}" for z in faces.suspect_depths[:8])
