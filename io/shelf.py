@@ -3,7 +3,7 @@
 import os
 import tomllib
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from datetime import datetime
 from functools import lru_cache, partial
 from importlib.metadata import version
@@ -31,16 +31,16 @@ class RunCard:
     """One run, at a glance; all text is safe to show."""
 
     path: Path
-    site: str
-    started_at: datetime | None
-    kind: str
-    depth: float | None
+    site: str = ""
+    started_at: datetime | None = None
+    kind: str = ""
+    depth: float | None = None
     """Deepest station [m]."""
-    verdict: str
+    verdict: str = ""
     """The worst of any station; empty without stations or where it was not asked for."""
-    state: str
+    state: str = ""
     """intact, cut short, or changed."""
-    error: str
+    error: str = ""
     """Why the file cannot be read; empty if it can."""
 
 
@@ -68,31 +68,28 @@ def card(path: Path, *, judged: bool = True) -> RunCard:
         Whether to reduce it for depth and verdict; else only the header and the seals are read.
     """
     site, started, kind = "", None, ""
-    depth, verdict = None, ""
     try:
         header = header_of(path)
         kind, started = safe(header.kind, 20), _instant(header.started_at)
-        state = verify_log(path).state
+        site = _site_name(header.site)
+        known = RunCard(path=path, site=site, started_at=started, kind=kind, state=verify_log(path).state)
         if not judged:
-            return _card(path, _site_name(header.site), started, kind, None, "", state, "")
-        if state == "intact" and header.program == version("eastfall"):
+            return known
+        if known.state == "intact" and header.program == version("eastfall"):
             told = last_event(path, "summary")
             if told is not None:
                 # Sealed with the run, and by this very program: working through the run would say the same.
-                return _card(path, _site_name(header.site), started, kind, *_told(told), state, "")
+                depth, verdict = _told(told)
+                return replace(known, depth=depth, verdict=verdict)
         reduction = reduce_file(path, curve_for=curve_of)
     except (EastfallError, OSError) as error:
-        return _card(path, site, started, kind, depth, verdict, "", safe(str(error), 300))
-    stations = reduction.result.stations
-    return _card(
-        path,
-        safe(reduction.site.assumptions.site.name, 200),
-        started,
-        kind,
-        max((one.depth for one in stations), default=None),
-        reduction.verdict or "",
-        reduction.seal_state,
-        "",
+        return RunCard(path=path, site=site, started_at=started, kind=kind, error=safe(str(error), 300))
+    return replace(
+        known,
+        site=safe(reduction.site.assumptions.site.name, 200),
+        depth=max((one.depth for one in reduction.result.stations), default=None),
+        verdict=reduction.verdict or "",
+        state=reduction.seal_state,
     )
 
 
@@ -102,28 +99,6 @@ def _told(summary: RunEvent) -> tuple[float | None, str]:
     return (
         float(depth) if isinstance(depth, int | float) else None,
         verdict if verdict in {"within", "over", "undecided"} else "",
-    )
-
-
-def _card(
-    path: Path,
-    site: str,
-    started: datetime | None,
-    kind: str,
-    depth: float | None,
-    verdict: str,
-    state: str,
-    error: str,
-) -> RunCard:
-    return RunCard(
-        path=path,
-        site=site,
-        started_at=started,
-        kind=kind,
-        depth=depth,
-        verdict=verdict,
-        state=state,
-        error=error,
     )
 
 
@@ -193,7 +168,7 @@ def _age(one: RunCard) -> float:
 
 
 def _lost(path: Path, why: str) -> RunCard:
-    return _card(path, "", None, "", None, "", "", safe(why, 300))
+    return RunCard(path=path, error=safe(why, 300))
 
 
 def card_row(one: RunCard) -> dict[str, Any]:
