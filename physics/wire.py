@@ -156,8 +156,8 @@ def cylinder_drag(reynolds: npt.ArrayLike) -> Array:
     References
     ----------
     Sucker, D. & Brauer, H. (1975), Fluiddynamik bei quer angeströmten Zylindern, Wärme- und Stoffübertragung 8,
-    149-158; also in White, F. M. (1991), Viscous Fluid Flow, 2nd ed. The coefficients are from memory, unconfirmed
-    but for the first two terms.
+    149-158; also in White, F. M. (1991), Viscous Fluid Flow, 2nd ed. Neither was seen: the coefficients were recalled,
+    and agree with those that three public programs have, one of which names White.
     """
     re = np.asarray(reynolds, dtype=np.float64)
     known = np.where((re >= 1e-4) & (re <= 2e5), re, np.nan)
