@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 
 from eastfall.physics.findings import ROW_FIELDS, AlarmChange, AlarmView, Rows, Standing, Station
+from eastfall.tui.words import WANTS_ANSWER
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
@@ -194,12 +195,9 @@ class History:
         )
 
 
-def worst_alarm(alarms: Sequence[AlarmView]) -> AlarmView | None:
-    """Return the alarm to show first: one that waits for an answer, the newest among those; None without any."""
-    from eastfall.tui.words import WANTS_ANSWER  # noqa: PLC0415
-
-    ranked = sorted(alarms, key=lambda one: (one.state in WANTS_ANSWER, one.since))
-    return ranked[-1] if ranked else None
+def in_order(alarms: Sequence[AlarmView]) -> list[AlarmView]:
+    """Return those that wait for an answer first, newest first among equals."""
+    return sorted(alarms, key=lambda one: (one.state not in WANTS_ANSWER, -one.since))
 
 
 def last_pass(rows: Rows) -> int:

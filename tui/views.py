@@ -12,7 +12,7 @@ from eastfall.tui import words
 from eastfall.tui.keys import AS_MADE, Keymap
 from eastfall.tui.roles import Role
 from eastfall.tui.session import Curve, Session
-from eastfall.tui.store import Snapshot, worst_alarm
+from eastfall.tui.store import Snapshot, in_order
 from eastfall.tui.units import METRIC, Units, lengths_in
 from eastfall.tui.widgets.figures import Figure
 from eastfall.tui.widgets.line import Piece
@@ -240,9 +240,9 @@ def alarm_line(
     board: str = "watch.alarms",
 ) -> AlarmLine:
     """Return the line of the alarm to show first; `seen` and `board` name the keys that acknowledge and list it."""
-    worst = worst_alarm(snapshot.alarms)
-    if worst is None:
+    if not snapshot.alarms:
         return AlarmLine(pieces=(("no alarms", Role.DIM),))
+    worst = in_order(snapshot.alarms)[0]
     waiting = sum(one.state in words.WANTS_ANSWER for one in snapshot.alarms)
     text = words.alarm(worst, units)
     if not waiting:

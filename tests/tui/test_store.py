@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from eastfall.physics.findings import AlarmChange, AlarmView, Findings, Rows, Station
-from eastfall.tui.store import GrowingRows, History, last_pass, worst_alarm
+from eastfall.tui.store import GrowingRows, History, in_order, last_pass
 
 pytestmark = pytest.mark.invariant
 MakeRows = Callable[[int], Rows]
@@ -106,10 +106,10 @@ def test_last_pass_begins_where_the_pass_number_last_changed(rows: MakeRows) -> 
 def test_alarm_that_waits_for_an_answer_comes_before_one_that_does_not(
     alarm: Callable[..., AlarmView],
 ) -> None:
-    """An old unseen alarm is shown before a newer acknowledged one."""
+    """An old unseen alarm is shown before a newer acknowledged one, and of two unseen ones the newer."""
     seen, waiting = alarm(state="acknowledged", since=90.0), alarm(state="returned", since=10.0)
-    assert worst_alarm([seen, waiting]) is waiting
-    assert worst_alarm([]) is None
+    newer = alarm(state="active", since=20.0)
+    assert in_order([seen, waiting, newer]) == [newer, waiting, seen]
 
 
 def test_alarm_is_dated_on_the_clock_that_the_screen_shows(

@@ -12,9 +12,9 @@ from eastfall.tui.people import read_shelving
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText
 from eastfall.tui.screens.following import FollowingScreen
-from eastfall.tui.store import Snapshot
+from eastfall.tui.store import Snapshot, in_order
 from eastfall.tui.units import METRIC, Units
-from eastfall.tui.widgets.alarms import in_order, role_of
+from eastfall.tui.widgets.alarms import role_of
 from eastfall.tui.widgets.line import KeyLine, TextLine, wrapped
 from eastfall.tui.widgets.table import LongTable
 

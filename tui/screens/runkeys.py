@@ -17,8 +17,7 @@ from eastfall.tui.screens.stations import StationsScreen
 from eastfall.tui.screens.steer import SteerScreen
 from eastfall.tui.session import Session, replay_session
 from eastfall.tui.sight import Sight
-from eastfall.tui.store import Snapshot
-from eastfall.tui.widgets.alarms import in_order
+from eastfall.tui.store import Snapshot, in_order
 from eastfall.tui.widgets.cells import PaintedScreen
 
 if TYPE_CHECKING:

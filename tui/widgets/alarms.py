@@ -1,7 +1,5 @@
 """The alarm list: every alarm that is not normal, those that wait for an answer first; they stay until acknowledged."""
 
-from collections.abc import Sequence
-
 from textual.message import Message
 
 from eastfall.physics.findings import AlarmView
@@ -9,13 +7,9 @@ from eastfall.tui import words
 from eastfall.tui.keys import keymap_of
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
+from eastfall.tui.store import in_order
 from eastfall.tui.widgets.cells import CellWidget
 from eastfall.tui.widgets.line import wrapped
-
-
-def in_order(alarms: Sequence[AlarmView]) -> list[AlarmView]:
-    """Return those that wait for an answer first, newest first among equals."""
-    return sorted(alarms, key=lambda one: (one.state not in words.WANTS_ANSWER, -one.since))
 
 
 def role_of(one: AlarmView) -> Role:
