@@ -119,10 +119,11 @@ class Guided:
         depth = readings.depth
         rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
+        rows[ROW["host_time"]] = readings.host_time
         rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
         timed = not np.isnan(readings.time).any()
         rests = self._halts.feed(np.array([readings.time, depth, *slopes])) if timed else []
-        ridden, leaning = self._plumb.ride(depth, rows[ROW["speed"]], lag)
+        ridden, leaning = self._plumb.ride(readings.time, depth, rows[ROW["speed"]], lag)
         self._gather(readings, slopes, leaning, azimuth, rests)
         speed = rows[ROW["speed"]]
         bend = speed * speed / self._curve.models.field.gravity
