@@ -119,7 +119,6 @@ class Guided:
         depth = readings.depth
         rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
-        rows[ROW["host_time"]] = readings.host_time
         rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
         timed = not np.isnan(readings.time).any()
         rests = self._halts.feed(np.array([readings.time, depth, *slopes])) if timed else []
