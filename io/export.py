@@ -11,6 +11,7 @@ from typing import Any
 from eastfall.io.errors import OutputError
 from eastfall.io.outputs import refuse_sources, write_text
 from eastfall.io.reduce import Reduction
+from eastfall.io.safetext import guarded, safe_json
 from eastfall.io.tables import STATION_KEYS, reduce_table, station_row
 
 LAS_NULL = -999.25
@@ -24,17 +25,6 @@ _LAS_CURVES = (
     ("UE", "u_east_mm", "standard uncertainty of the residual east"),
     ("UN", "u_north_mm", "standard uncertainty of the residual north"),
 )
-_FORMULA = ("=", "+", "-", "@", "\t", "\r", "\n", "\0")
-"""What makes a spreadsheet take a text cell for a formula, or hides such a beginning."""
-
-
-def guarded(cell: object) -> object:
-    """Return a CSV cell: numbers as they are, None as empty, text that could start a formula behind an apostrophe."""
-    if cell is None:
-        return ""
-    if isinstance(cell, str):
-        return "'" + cell if cell.lstrip(" ").startswith(_FORMULA) else cell
-    return cell
 
 
 def table_csv(rows: Iterable[Mapping[str, Any]], names: Sequence[str]) -> str:
@@ -62,7 +52,7 @@ def stations_csv(reduction: Reduction) -> str:
 
 def table_json(table: object) -> str:
     """Return a table as JSON; what JSON has no word for (NaN) is refused, not written."""
-    return json.dumps(table, ensure_ascii=False, allow_nan=False, indent=1) + "\n"
+    return safe_json(json.dumps(table, ensure_ascii=False, allow_nan=False, indent=1)) + "\n"
 
 
 def reduction_json(reduction: Reduction) -> str:

@@ -191,10 +191,11 @@ def merged(findings: Iterable[Findings]) -> Findings:
 
 
 def _text(event: RunEvent, key: str, otherwise: str | None = None) -> str:
+    """Return a name or words of an alarm; those in someone's log may have been made to act on a terminal."""
     value = event.fields.get(key, otherwise)
     if not isinstance(value, str):
         raise _not_ours(event, key, "text")
-    return value
+    return safe(value)
 
 
 def _number(event: RunEvent, key: str) -> float:

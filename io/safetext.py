@@ -5,8 +5,11 @@ Every character that is not plainly printable becomes a visible escape, so that 
 message and typed again.
 """
 
+import json
 import re
 
+_FORMULA = ("=", "+", "-", "@", "\t", "\r", "\n", "\0")
+"""What makes a spreadsheet take a text cell for a formula, or hides such a beginning."""
 # Besides the two control blocks: formatting characters that reorder or hide text (category Cf: zero width, bidi
 # overrides, tags, soft hyphen), line and paragraph separators, lone surrogates, private use and unassigned planes.
 _SAFE_ASCII = re.compile(r"[ -~]*\Z")
@@ -43,3 +46,22 @@ def safe(text: str | bytes, width: int | None = None) -> str:
     if width is not None and len(plain) > width:
         return plain[: max(width - len(_ELLIPSIS), 0)] + _ELLIPSIS
     return plain
+
+
+def safe_json(text: str) -> str:
+    r"""Return JSON with a \u escape for every character that a terminal could act on: it reads as the same.
+
+    JSON itself escapes only the first of the two control blocks.
+    """
+    if _SAFE_ASCII.match(text.replace("\n", "")):
+        return text
+    return "".join(one if one.isprintable() or one == "\n" else json.dumps(one)[1:-1] for one in text)
+
+
+def guarded(cell: object) -> object:
+    """Return a CSV cell: numbers as they are, None as empty, text that could start a formula behind an apostrophe."""
+    if cell is None:
+        return ""
+    if isinstance(cell, str):
+        return "'" + cell if cell.lstrip(" ").startswith(_FORMULA) else cell
+    return cell

@@ -12,6 +12,7 @@ from collections.abc import Callable
 from contextlib import suppress
 from typing import TextIO
 
+from eastfall.io.safetext import safe
 from eastfall.tui.letters import in_ascii
 from eastfall.tui.saying import plain
 
@@ -199,7 +200,7 @@ class PatientLines:
     def line(self, text: str) -> None:
         """Write a line for a person."""
         gap = f"({self._left_out} lines left out: nobody took them)\n" if self._left_out else ""
-        words = f"{gap}{in_ascii(text) if self._plain else text}\n"
+        words = f"{gap}{in_ascii(safe(text)) if self._plain else safe(text)}\n"
         if self._put(
             words.encode(self._file.encoding or "ascii", self._file.errors or "strict"), always=self._keep
         ):

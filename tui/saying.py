@@ -1,4 +1,7 @@
-"""How the command line speaks: text in the letters that whoever listens can read, paths to the last byte."""
+"""How the command line speaks: text in the letters that whoever listens can read, paths to the last byte.
+
+Whatever stands in a text, such as the name of an alarm in someone's log, it does nothing to a terminal.
+"""
 
 import os
 import shutil
@@ -8,19 +11,23 @@ from typing import TextIO
 
 import click
 
+from eastfall.io.safetext import safe
 from eastfall.tui.letters import in_ascii, is_plain
 from eastfall.tui.printed import prose
 
 
 def say(text: str, *, err: bool = False) -> None:
     """Write a line of text for a person."""
-    click.echo(in_ascii(text) if plain(sys.stderr if err else sys.stdout) else text, err=err)
+    click.echo(_told(text, sys.stderr if err else sys.stdout), err=err)
+
+
+def _told(text: str, stream: TextIO) -> str:
+    return in_ascii(safe(text)) if plain(stream) else safe(text)
 
 
 def say_sentence(text: str) -> None:
     """Write a sentence about a table, parted between words where it is too long for the window."""
-    told = in_ascii(text) if plain(sys.stdout) else text
-    for line in prose(told, window()):
+    for line in prose(_told(text, sys.stdout), window()):
         click.echo(line)
 
 

@@ -1,10 +1,12 @@
 """Text made harmless: nothing that a terminal acts on comes out of `safe`."""
 
+import json
+
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from eastfall.io.safetext import safe
+from eastfall.io.safetext import safe, safe_json
 
 
 @pytest.mark.parametrize(
@@ -40,3 +42,14 @@ def test_longer_text_ends_in_dots() -> None:
     """Text that does not fit says so."""
     assert safe("0123456789", 8) == "01234..."
     assert safe("01234567", 8) == "01234567"
+
+
+@pytest.mark.invariant
+@given(
+    st.recursive(st.text(), lambda inner: st.dictionaries(st.text(), inner) | st.lists(inner), max_leaves=5)
+)
+def test_json_without_control_characters_reads_as_the_same(value: object) -> None:
+    """Escapes of both control blocks and of what turns or hides text stand for the very characters."""
+    text = safe_json(json.dumps(value, ensure_ascii=False, indent=1))
+    assert json.loads(text) == value
+    assert text.replace("\n", "").isprintable()

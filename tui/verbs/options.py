@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 import click
 
-from eastfall.io.safetext import safe
+from eastfall.io.safetext import guarded, safe, safe_json
 from eastfall.tui.letters import in_ascii
 from eastfall.tui.printed import listed, printed
 from eastfall.tui.saying import plain, say, window
@@ -137,15 +137,14 @@ def _count(done: int, total: int) -> None:
 
 def print_json(value: object) -> None:
     """Write JSON, with a null for what is absent, to standard output alone."""
-    click.echo(json.dumps(value, ensure_ascii=plain(sys.stdout), allow_nan=False, indent=1))
+    click.echo(safe_json(json.dumps(value, ensure_ascii=plain(sys.stdout), allow_nan=False, indent=1)))
 
 
 def print_rows(table: Table, form: str) -> None:
     """Write rows as CSV or as an aligned table."""
     if form == "csv":
         writer = csv.writer(sys.stdout, lineterminator="\n")
-        writer.writerow(table[0])
-        writer.writerows([["" if one is None else one for one in row] for row in table[1]])
+        writer.writerows([_csv_cell(one) for one in row] for row in (table[0], *table[1]))
         return
     rows = [[_cell(one) for one in row] for row in table[1]]
     for line in printed(table[0], rows, window()):
@@ -156,6 +155,10 @@ def print_list(head: Sequence[str], rows: Sequence[Sequence[Any]]) -> None:
     """Write rows of text as an aligned list, of which the last column may be long."""
     for line in listed(head, [[_cell(one) for one in row] for row in rows], window()):
         click.echo(line)
+
+
+def _csv_cell(value: object) -> object:
+    return guarded(safe(value) if isinstance(value, str) else value)
 
 
 def _cell(value: object) -> str:

@@ -50,7 +50,8 @@ def report(
 
     found = reduce_file(log, site=load_site(site) if site else None, interval=interval)
     if out is None:
-        say(writer.report_text(found))
+        for line in writer.report_text(found).split("\n"):
+            say(line)
         return
     beside = writer.compared(compare_runs(reduce_file(against), found)) if against else None
     writer.write_report(found, out, compared=beside, force=force)
@@ -131,7 +132,8 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
         print_json({"first": found.first, "second": found.second, "left_out": found.left_out, "depths": rows})
         return
     if form == "table":
-        say(f"{found.second}\nless {found.first}; offsets in mm, u is the standard uncertainty")
+        say(found.second)
+        say(f"less {found.first}; offsets in mm, u is the standard uncertainty")
     print_rows((list(DIFFERENCE_KEYS), [[row[name] for name in DIFFERENCE_KEYS] for row in rows]), form)
     if form == "table":
         for line in found.notes:
