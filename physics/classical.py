@@ -1,4 +1,4 @@
-"""Published closed forms for falling bodies: what the integration is checked against; the program uses no other."""
+"""Published closed forms for falling bodies, which checks hold the integration against; no prediction uses them."""
 
 from math import pi
 

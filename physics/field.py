@@ -16,7 +16,6 @@ from eastfall.physics.earth import (
     WGS84,
     Array,
     Ellipsoid,
-    free_air_gradient,
     meridian_radius,
     normal_gravity,
     plumbline_curvature,
@@ -79,11 +78,6 @@ class LocalField:
     def mean_radius(self) -> float:
         """Radius of a sphere with the level surface's mean curvature [m]."""
         return 2.0 / (1.0 / self.meridian_radius + 1.0 / self.prime_vertical_radius)
-
-    @property
-    def free_air_gradient(self) -> float:
-        """F at the collar [1/s²]: growth of gravity with depth in open air."""
-        return float(free_air_gradient(self.gravity, self.meridian_radius, self.prime_vertical_radius))
 
     @property
     def breaks(self) -> tuple[float, ...]:

@@ -259,36 +259,6 @@ def radius_toward(field: LocalField, azimuth: npt.ArrayLike) -> Array:
     return radius
 
 
-def gathered(
-    field: LocalField, east: npt.ArrayLike, north: npt.ArrayLike, length: npt.ArrayLike
-) -> tuple[Array, Array]:
-    """Drift of bobs toward each other, for any number of lines beside the reference line.
-
-    Parameters
-    ----------
-    field : LocalField
-    east, north : array_like
-        Where the lines are suspended, from the reference point at the collar [m].
-    length : array_like
-        L of each [m].
-
-    Returns
-    -------
-    east, north : array
-        To be added to the offset that `hang` gives for a line at the reference point [m], broadcast: -x L/R along
-        each principal direction, because each line follows the vertical of its own place.
-
-    Notes
-    -----
-    Light wires; that of a heavy wire is smaller by the ratio of its bob's offset to κL².
-    """
-    L = np.asarray(length, dtype=np.float64)
-    return (
-        -np.asarray(east, dtype=np.float64) * L / field.prime_vertical_radius,
-        -np.asarray(north, dtype=np.float64) * L / field.meridian_radius,
-    )
-
-
 def swing_wait(amplitude: npt.ArrayLike, decay: npt.ArrayLike, below: npt.ArrayLike) -> Array:
     """Time until a swing has died down to a size.
 

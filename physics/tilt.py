@@ -1,4 +1,4 @@
-"""From tilt to offset: steps per metre of line, station formulas, and a running sum for a stream of rows.
+"""From tilt to offset: steps per metre of line, and their running sum for a stream of rows.
 
 The tilts are true ones (see `calibration`), already freed from the lean of a moving line (see `moving`).
 """
@@ -57,90 +57,18 @@ def direction(inclination: npt.ArrayLike, azimuth: npt.ArrayLike) -> tuple[Array
     return np.sin(lean) * np.sin(toward), np.sin(lean) * np.cos(toward)
 
 
-def average_steps(
-    length: npt.ArrayLike, east: npt.ArrayLike, north: npt.ArrayLike
-) -> tuple[Array, Array, Array]:
-    """Step from station to station by the mean of the two directions.
+def ratio_factor(first: Array, second: Array) -> Array:
+    """(2/β) tan(β/2) for the angle β between unit vectors, shape (3, n) each; 1 for parallel ones.
 
-    Parameters
-    ----------
-    length : array_like, shape (n,)
-        Along the line at each station [m].
-    east, north : array_like, shape (n,)
-        Offset per metre there [m/m], from `increments` or `direction`. NaN gives NaN in the steps beside it.
-
-    Returns
-    -------
-    east, north, down : array, shape (n-1,)
-        [m].
-
-    Raises
-    ------
-    ParameterError
-        If the arrays differ in shape, or a direction is longer than 1.
-
-    Notes
-    -----
-    Δ = ½ Δs (t1 + t2), t the unit vectors along the line; the mean of two unit vectors is shorter than one,
-    by 1 - cos(β/2) for an angle β between them.
-    """
-    span, first, second = _stations(length, east, north)
-    mean = 0.5 * span * (first + second)
-    return mean[0], mean[1], mean[2]
-
-
-def minimum_curvature_steps(
-    length: npt.ArrayLike, east: npt.ArrayLike, north: npt.ArrayLike
-) -> tuple[Array, Array, Array]:
-    """Step from station to station along circular arcs.
-
-    Parameters
-    ----------
-    length : array_like, shape (n,)
-        Along the line at each station [m].
-    east, north : array_like, shape (n,)
-        Offset per metre there [m/m], from `increments` or `direction`. NaN gives NaN in the steps beside it.
-
-    Returns
-    -------
-    east, north, down : array, shape (n-1,)
-        [m].
-
-    Raises
-    ------
-    ParameterError
-        If the arrays differ in shape, or a direction is longer than 1.
-
-    Notes
-    -----
-    Δ = ½ Δs (t1 + t2) (2/β) tan(β/2), cos β = t1·t2.
+    β comes from the chord, 2 arcsin(|t2 - t1|/2), which keeps its digits where cos β is close to 1.
 
     References
     ----------
     Taylor, H. L. & Mason, C. M. (1972), A systematic approach to well surveying calculations, SPE Journal 12(6).
     """
-    span, first, second = _stations(length, east, north)
-    mean = 0.5 * span * ratio_factor(first, second) * (first + second)
-    return mean[0], mean[1], mean[2]
-
-
-def ratio_factor(first: Array, second: Array) -> Array:
-    """(2/β) tan(β/2) for the angle β between unit vectors, shape (3, n) each; 1 for parallel ones.
-
-    β comes from the chord, 2 arcsin(|t2 - t1|/2), which keeps its digits where cos β is close to 1.
-    """
     half = np.arcsin(np.minimum(0.5 * np.sqrt(np.sum((second - first) ** 2, axis=0)), 1.0))
     safe = np.where(half == 0.0, 1.0, half)
     return np.where(half == 0.0, 1.0, np.tan(safe) / safe)
-
-
-def _stations(length: npt.ArrayLike, east: npt.ArrayLike, north: npt.ArrayLike) -> tuple[Array, Array, Array]:
-    s = np.asarray(length, dtype=np.float64)
-    e, n = np.asarray(east, dtype=np.float64), np.asarray(north, dtype=np.float64)
-    if s.ndim != 1 or s.shape != e.shape or s.shape != n.shape:
-        raise ParameterError("east, north", (e.shape, n.shape), "", f"the shape of length, {s.shape}")
-    unit = _unit(e, n)
-    return np.diff(s), unit[:, :-1], unit[:, 1:]
 
 
 def _unit(east: Array, north: Array) -> Array:
@@ -196,7 +124,8 @@ class OffsetSum:
     start_east, start_north : float
         Offset at the first good row [m].
     method : {"average", "minimum-curvature"}
-        How a step is taken from the slopes at its ends.
+        How a step Δs is taken from the unit vectors t1, t2 along the line at its ends: ½ Δs (t1 + t2), or that times
+        (2/β) tan(β/2), the arc of a circle, β the angle between them.
     """
 
     def __init__(
@@ -238,8 +167,9 @@ class OffsetSum:
             If the arrays differ in length, or a direction is longer than 1 (minimum curvature only).
         """
         given = [np.asarray(one, dtype=np.float64) for one in (depth, east_slope, north_slope)]
-        if not given[0].shape == given[1].shape == given[2].shape:
-            given = list(np.broadcast_arrays(*given))
+        shapes = tuple(one.shape for one in given)
+        if len(set(shapes)) > 1:
+            raise ParameterError("depth, east_slope, north_slope", shapes, "", "three of one shape")
         rows = np.array(given)
         finite = np.isfinite(rows)
         if finite.all() and finite.size:

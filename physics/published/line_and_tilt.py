@@ -17,7 +17,7 @@ from eastfall.physics.published.check import PublishedCheck
 from eastfall.physics.settings import Air, Line, Site
 from eastfall.physics.swing import RestPointTracker
 from eastfall.physics.swing_checks import airy_precession, schuler_mean
-from eastfall.physics.tilt import direction, minimum_curvature_steps, ratio_factor
+from eastfall.physics.tilt import OffsetSum, direction, ratio_factor
 
 _OWN = "reckoned from the formula, apart from the program"
 _STEEL = 0.006165  # kg/m of 1 mm steel wire
@@ -50,16 +50,23 @@ def _stretched(part: str) -> float:
     return float(getattr(found, part))
 
 
+_LEAN, _TOWARD = np.radians([15.0, 25.0]), np.radians([20.0, 45.0])
+
+
 def _course(axis: int) -> float:
-    """Step of the course 100, inclination 15° to 25°, azimuth 20° to 45°: 0 east, 1 north, 2 down."""
-    east, north = direction(np.radians([15.0, 25.0]), np.radians([20.0, 45.0]))
-    return float(minimum_curvature_steps(np.array([0.0, 100.0]), east, north)[axis][0])
+    """Step of the course 100, inclination 15° to 25°, azimuth 20° to 45°: 0 east, 1 north."""
+    east, north = direction(_LEAN, _TOWARD)
+    return float(OffsetSum(method="minimum-curvature").update([0.0, 100.0], north, east)[axis][-1])
 
 
 def _course_factor() -> float:
-    east, north = direction(np.radians([15.0, 25.0]), np.radians([20.0, 45.0]))
-    unit = np.stack([east, north, np.cos(np.radians([15.0, 25.0]))])
+    unit = np.stack([*direction(_LEAN, _TOWARD), np.cos(_LEAN)])
     return float(ratio_factor(unit[:, :1], unit[:, 1:])[0])
+
+
+def _course_down() -> float:
+    """Return the vertical step by the program's factor; the program sums no verticals itself."""
+    return 50.0 * float(np.sum(np.cos(_LEAN))) * _course_factor()
 
 
 def _faces(part: str) -> float:
@@ -261,7 +268,7 @@ CHECKS = (
         unit="ft",
         expected=94.01,
         tolerance=5e-3,
-        compute=partial(_course, 2),
+        compute=_course_down,
     ),
     PublishedCheck(
         name="minimum curvature, the same course: ratio factor",

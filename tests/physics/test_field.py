@@ -12,6 +12,7 @@ from eastfall.physics.earth import (
     GRAVITATIONAL_CONSTANT,
     GRS80,
     Shell,
+    free_air_gradient,
     normal_gravity,
     plumbline_curvature,
     shell_gravity,
@@ -80,8 +81,9 @@ def test_above_the_collar_is_open_air() -> None:
     """Above the first layer g falls by the free-air gradient, whatever the rock below."""
     field = _field(rock_density=((10.0, 2670.0),))
     steps = field.gravity_at(np.array([-1.0, 0.0, 9.0, 10.0]))
-    assert steps[1] - steps[0] == pytest.approx(field.free_air_gradient, rel=1e-5)
-    assert steps[3] - steps[2] == pytest.approx(field.free_air_gradient, rel=1e-5)
+    gradient = free_air_gradient(field.gravity, field.meridian_radius, field.prime_vertical_radius)
+    assert steps[1] - steps[0] == pytest.approx(gradient, rel=1e-5)
+    assert steps[3] - steps[2] == pytest.approx(gradient, rel=1e-5)
     assert field.gravity_at(0.0) == pytest.approx(field.gravity, rel=1e-15)
 
 

@@ -14,7 +14,6 @@ from eastfall.physics.field import local_field
 from eastfall.physics.hung import (
     converge,
     free_period,
-    gathered,
     hang,
     radius_toward,
     shape,
@@ -309,18 +308,6 @@ def test_the_radius_toward_any_azimuth_is_how_the_ellipsoid_falls_away_there(azi
         drops.append((here - np.array(to_space.transform(lon, lat, 0.0))) @ up / 1000.0)
     radius = radius_toward(FIELD, radians(azimuth))
     assert 5000.0**2 / (drops[0] + drops[1]) == pytest.approx(radius, rel=1e-6)
-
-
-@pytest.mark.invariant
-def test_many_lines_gather_as_each_pair_converges():
-    """Three lines hang nearer to each other by sL/R for every pair along a principal direction."""
-    east, north = gathered(FIELD, np.array([0.0, 5.0, 0.0]), np.array([0.0, 0.0, 4.0]), 1000.0)
-    assert east[0] - east[1] == pytest.approx(converge(5.0, 1000.0, radius_toward(FIELD, pi / 2)), rel=1e-14)
-    assert north[0] - north[2] == pytest.approx(converge(4.0, 1000.0, radius_toward(FIELD, 0.0)), rel=1e-14)
-    pull_north, pull_east, _ = FIELD.acceleration(4.0, 5.0, 0.0)
-    # The field's own horizontal pull beside the collar against its gravity is the lean of the vertical there.
-    assert east[1] == pytest.approx(1000.0 * pull_east / FIELD.gravity, rel=1e-12)
-    assert north[2] == pytest.approx(1000.0 * pull_north / FIELD.gravity, rel=1e-12)
 
 
 @pytest.mark.invariant

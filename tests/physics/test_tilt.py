@@ -10,10 +10,8 @@ from hypothesis import strategies as st
 from eastfall.physics.errors import ParameterError
 from eastfall.physics.tilt import (
     OffsetSum,
-    average_steps,
     direction,
     increments,
-    minimum_curvature_steps,
     spread_misclosure,
 )
 
@@ -39,51 +37,38 @@ def test_missing_tilt_gives_missing_steps():
     assert np.isnan(increments(np.nan, 0.0, 0.3)).all()
 
 
-@pytest.mark.published
-def test_minimum_curvature_reproduces_the_worked_course():
-    """Course 100, 15° to 25°, azimuth 20° to 45°: N 27.22, E 19.45, vertical 94.01, as printed in survey texts."""
-    east, north = direction(np.radians([15.0, 25.0]), np.radians([20.0, 45.0]))
-    found = minimum_curvature_steps(np.array([0.0, 100.0]), east, north)
-    np.testing.assert_allclose(np.concatenate(found), (19.45, 27.22, 94.01), atol=5e-3)
-
-
 @pytest.mark.independent
 def test_minimum_curvature_follows_a_circle_exactly():
     """Stations on a circular arc in one plane lie where the circle's own equation puts them."""
     radius, toward = 700.0, radians(33.0)
     inclination = np.linspace(0.0, 1.2, 7)
     east, north = direction(inclination, toward)
-    de, dn, dz = minimum_curvature_steps(radius * inclination, east, north)
-    away = radius * (1.0 - np.cos(inclination[1:]))
-    np.testing.assert_allclose(np.cumsum(de), away * np.sin(toward), atol=1e-10)
-    np.testing.assert_allclose(np.cumsum(dn), away * np.cos(toward), atol=1e-10)
-    np.testing.assert_allclose(np.cumsum(dz), radius * np.sin(inclination[1:]), atol=1e-10)
+    found = OffsetSum(method="minimum-curvature").update(radius * inclination, north, east)
+    away = radius * (1.0 - np.cos(inclination))
+    np.testing.assert_allclose(found[0], away * np.sin(toward), atol=1e-10)
+    np.testing.assert_allclose(found[1], away * np.cos(toward), atol=1e-10)
 
 
 @pytest.mark.invariant
 def test_both_methods_agree_on_a_straight_line_and_part_by_the_second_order():
     """Parallel stations give one step; for an angle β the average is shorter by β²/12."""
-    straight = average_steps([0.0, 30.0], [0.1, 0.1], [0.2, 0.2])
-    np.testing.assert_allclose(
-        straight, minimum_curvature_steps([0.0, 30.0], [0.1, 0.1], [0.2, 0.2]), rtol=1e-15
-    )
-    np.testing.assert_allclose(np.concatenate(straight), (3.0, 6.0, 30.0 * np.sqrt(0.95)), rtol=1e-15)
-    beta = 1e-3
-    tilted = [0.0, np.sin(beta)]
-    ratio = (
-        minimum_curvature_steps([0.0, 1.0], tilted, [0.0, 0.0])[0]
-        / average_steps([0.0, 1.0], tilted, [0.0, 0.0])[0]
-    )
+    ends = {}
+    for method in ("average", "minimum-curvature"):
+        straight = OffsetSum(method=method).update([0.0, 30.0], [0.2, 0.2], [0.1, 0.1])
+        np.testing.assert_allclose((straight[0][-1], straight[1][-1]), (3.0, 6.0), rtol=1e-15)
+        bent = OffsetSum(method=method).update([0.0, 1.0], [0.0, 0.0], [0.0, np.sin(1e-3)])
+        ends[method] = bent[0][-1]
     # 1e-12 are the β⁴/120 and the rounding of a difference of 1e-7.
-    assert ratio[0] - 1.0 == pytest.approx(beta**2 / 12.0, abs=1e-12)
+    ratio = ends["minimum-curvature"] / ends["average"]
+    assert ratio - 1.0 == pytest.approx(1e-3**2 / 12.0, abs=1e-12)
 
 
 def test_directions_longer_than_one_and_odd_shapes_are_refused():
     """Slopes that together exceed a unit vector, and arrays of different shapes, raise."""
     with pytest.raises(ParameterError, match="together at most 1 m/m"):
-        average_steps([0.0, 1.0], [0.9, 0.0], [0.9, 0.0])
-    with pytest.raises(ParameterError, match="the shape of length"):
-        average_steps([0.0, 1.0], [0.0], [0.0])
+        OffsetSum(method="minimum-curvature").update([0.0, 1.0], [0.9, 0.0], [0.9, 0.0])
+    with pytest.raises(ParameterError, match="expected three of one shape"):
+        OffsetSum().update([0.0, 1.0], [0.0], [0.0, 0.0])
 
 
 @pytest.mark.invariant
@@ -166,17 +151,6 @@ def test_the_sum_does_not_depend_on_the_cutting_to_the_last_bit(rows, cuts, meth
     blocks = np.split(table, sorted(min(c, table.shape[1]) for c in cuts), axis=1)
     parts = [np.stack(running.update(*part)) for part in blocks]
     np.testing.assert_array_equal(np.concatenate(parts, axis=1), whole)
-
-
-@pytest.mark.invariant
-def test_the_running_minimum_curvature_is_that_of_the_stations():
-    """The stream and the station formula agree on a steep bend."""
-    depth = np.array([0.0, 10.0, 25.0, 60.0])
-    slope_east, slope_north = np.array([0.0, 0.3, 0.5, 0.1]), np.array([0.1, 0.2, -0.2, 0.4])
-    east, north, _ = OffsetSum(method="minimum-curvature").update(depth, slope_north, slope_east)
-    steps = minimum_curvature_steps(depth, slope_east, slope_north)
-    np.testing.assert_allclose(east[1:], np.cumsum(steps[0]), atol=1e-14)
-    np.testing.assert_allclose(north[1:], np.cumsum(steps[1]), atol=1e-14)
 
 
 def test_an_unknown_method_is_refused():
