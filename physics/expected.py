@@ -175,6 +175,7 @@ def _site_shifts(given: Assumptions, field: LocalField) -> Iterator[Shift]:
     )
     moved = {
         "latitude": replace(site, latitude=_shifted(site.latitude, site.u_latitude)),
+        "elevation": replace(site, elevation=site.elevation + site.u_elevation),
         "gravity": replace(site, gravity=field.gravity + site.u_gravity),
         "rock density": replace(site, rock_density=rock),
         "vertical bent north": replace(site, deflections=_bent(given, field, 1)),

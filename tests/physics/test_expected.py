@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 
 from eastfall.physics.expected import Models, expected_curve, reach
-from eastfall.physics.settings import Air, Guide, Line, Run, Site
+from eastfall.physics.settings import Air, Body, Guide, Line, Run, Site
 
 OMEGA = 7.292115e-5  # GRS80, Moritz (1980)
 DEPTHS = np.array([0.0, 3.7, 50.0, 123.4, 299.0, 300.0])
@@ -98,25 +98,61 @@ def test_nothing_is_extrapolated(shaft):
     assert np.isnan(found[:, 2]).all()
 
 
-@pytest.mark.independent
-def test_the_budget_of_a_drop_agrees_with_a_whole_new_prediction_for_each_input(shaft):
-    """Latitude, air and release each moved by their uncertainty in the site: the body moves by the stated part."""
-    base = shaft("drop")
-    curve = expected_curve(base)
-    site, body, air = base.site, base.body, base.air
-    moved = {
+FLOWS = ((20.0, 90.0, 0.5, radians(70.0)), (200.0, 260.0, 0.3, radians(200.0)))
+
+
+def with_one_input_moved(base, gravity):
+    """Give the assumptions of an own prediction for each input, moved by its standard uncertainty; gravity as it is."""
+    site, body, air, line = base.site, base.body, base.air, base.line
+    stronger = 1.0 + air.u_cross_flow_fraction
+    return {
         "latitude": replace(base, site=replace(site, latitude=site.latitude + site.u_latitude)),
+        "gravity": replace(base, site=replace(site, gravity=gravity + site.u_gravity)),
+        "elevation": replace(base, site=replace(site, elevation=site.elevation + site.u_elevation)),
+        "rock density": replace(
+            base, site=replace(site, rock_density=((0.0, 2670.0 + site.u_rock_density),))
+        ),
         "air density": replace(base, air=replace(air, density=air.density + air.u_density)),
+        "air moving in the shaft": replace(base, air=replace(air, vertical=air.vertical + air.u_vertical)),
+        "cross-flow": replace(
+            base, air=replace(air, cross_flow=tuple((a, b, v * stronger, to) for a, b, v, to in FLOWS))
+        ),
+        "bob mass": replace(base, line=replace(line, bob_mass=line.bob_mass + line.u_bob_mass)),
         "release speed east": replace(base, body=replace(body, release_speed_east=body.u_release_speed)),
+        "release speed north": replace(base, body=replace(body, release_speed_north=body.u_release_speed)),
+        "release point east": replace(base, body=replace(body, release_east=body.u_release)),
         "release point north": replace(base, body=replace(body, release_north=body.u_release)),
+        "drag": replace(
+            base, body=replace(body, drag_coefficient=body.drag_coefficient * (1.0 + body.u_drag_fraction))
+        ),
     }
-    depth = [300.0]
-    parts = dict(zip(curve.budget.names, curve.budget.at(depth)[:, :, 0], strict=True))
-    for name, changed in moved.items():
-        other = expected_curve(changed)
-        step = (other.look_up(other.plumb, depth) - curve.look_up(curve.plumb, depth))[:, 0]
-        # The two are the same derivative by two roads; second order in the step is far below a hundredth of it.
-        np.testing.assert_allclose(parts[name], step, rtol=0.01, atol=2e-8, err_msg=name)
+
+
+@pytest.mark.independent
+@pytest.mark.parametrize("reference", ["straight", "field-line", "hung-line"])
+@pytest.mark.parametrize("kind", ["guided", "hung", "drop"])
+def test_each_part_of_a_budget_is_what_a_whole_new_prediction_moves_by(shaft, kind, reference):
+    """Every input moved by its uncertainty in the site itself: the stated part is the step of what is expected.
+
+    In windy air with the line at its stated speed; inputs that move nothing are not in the budget.
+    """
+    base = shaft(
+        kind,
+        site=Site(latitude=radians(57.3), elevation=210.0, u_elevation=400.0),
+        body=Body(mass=0.514, diameter=0.05, drag_coefficient=0.45),
+        line=Line(mass_per_length=0.006165, line_speed=1.5, u_bob_mass=0.5),
+        guide=Guide(line_speed=10.0),
+        air=Air(temperature=281.15, cross_flow=FLOWS, u_vertical=0.5),
+        run=Run(kind=kind, reference=reference),
+    )
+    curve, depth, speed = expected_curve(base), [240.0, 300.0], base.line_speed
+    parts = dict(zip(curve.budget.names, curve.budget.at(depth), strict=True))
+    for name, changed in with_one_input_moved(base, curve.models.field.gravity).items():
+        step = expected_curve(changed).expected(depth, speed) - curve.expected(depth, speed)
+        # Between the 65 depths of the budget, and for a body to second order in the step.
+        np.testing.assert_allclose(
+            parts.get(name, np.zeros((2, 2))), step, rtol=0.01, atol=2e-8, err_msg=name
+        )
 
 
 def test_the_lean_of_the_moving_line_is_in_the_budget_of_a_guided_run(shaft):

@@ -111,6 +111,19 @@ def test_the_readings_of_a_running_line_are_held_against_the_same(shaft):
 
 
 @pytest.mark.invariant
+def test_air_across_a_line_moves_its_rest_and_not_how_far_it_rides(shaft):
+    """A wire blown 14 mm east rides as far from there as a calm one does from where it hangs: the loads add up."""
+    calm, blown = (
+        expected_curve(shaft("hung", depth=1000.0, air=Air(cross_flow=flow)))
+        for flow in ((), ((300.0, 320.0, 1.0, radians(90.0)),))
+    )
+    assert blown.expected([900.0])[0, 0] - calm.expected([900.0])[0, 0] > 0.01
+    rides = [(one.expected([900.0], 2.0) - one.expected([900.0]))[0, 0] for one in (calm, blown)]
+    assert rides[0] == pytest.approx(rides[1], rel=1e-9)
+    assert rides[0] > 0.0
+
+
+@pytest.mark.invariant
 def test_a_falling_body_has_no_line(shaft):
     """The speed of a line changes nothing of what is expected in a drop."""
     curve = expected_curve(shaft("drop"))
