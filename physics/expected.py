@@ -14,6 +14,7 @@ from numpy.typing import ArrayLike, NDArray
 
 from eastfall.physics.air import AirColumn, air_column
 from eastfall.physics.budget import Budget, combined
+from eastfall.physics.errors import ParameterError
 from eastfall.physics.fall import Trajectory, Variation, fall, fall_ensemble
 from eastfall.physics.field import LocalField, local_field
 from eastfall.physics.hung import hang
@@ -29,6 +30,8 @@ _POINTS = 2049
 within 0.4 µm for 4 km (checked in the tests against the models themselves)."""
 _COARSE = 65
 """Depths at which uncertainty is worked out; it bends far less than the curve."""
+_COLDEST, _HOTTEST = 173.15, 473.15
+"""Of air in a shaft [K]; far inside the domain of its viscosity, 100 to 1900 K."""
 _ABOVE = -1.0
 """Readings up to a metre above the collar are taken as at the collar, where every curve is zero [m]."""
 
@@ -69,6 +72,16 @@ class Models:
         """Build the models."""
         field = local_field(assumptions.site)
         air = None if assumptions.air.is_vacuum else air_column(assumptions.air, field)
+        if (
+            air is not None
+            and not _COLDEST <= (bottom := float(air.temperature(reach(assumptions)))) <= _HOTTEST
+        ):
+            raise ParameterError(
+                "temperature_gradient",
+                assumptions.air.temperature_gradient,
+                "K/m",
+                "air of -100 to 200 °C at the bottom of the shaft",
+            )
         return cls(assumptions=assumptions, field=field, air=air)
 
     def field_line(self, depth: NDArray[np.float64]) -> Pair:

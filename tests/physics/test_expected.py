@@ -6,6 +6,7 @@ from math import cos, radians, sin
 import numpy as np
 import pytest
 
+from eastfall.physics.errors import ParameterError
 from eastfall.physics.expected import Models, expected_curve, reach
 from eastfall.physics.settings import Air, Body, Guide, Line, Run, Site
 
@@ -235,3 +236,14 @@ def test_the_uncertainty_at_any_depth_is_what_its_budget_adds_up_to(shaft):
     depth = np.array([470.0, 485.0, 505.0, 550.0, 710.0, 800.0, 910.0, 1000.0])
     combined = np.sqrt(np.sum(curve.budget.at(depth) ** 2, axis=0))
     assert curve.look_up(curve.u, depth) == pytest.approx(combined, rel=1e-4)
+
+
+@pytest.mark.parametrize("gradient", [-0.05, 0.08])
+def test_air_that_no_shaft_has_at_its_bottom_is_refused(shaft, gradient):
+    """50 K colder a kilometre would pass absolute zero at 5.6 km: refused, where there was NaN without a word."""
+    air = Air(temperature=281.15, temperature_gradient=gradient)
+    with pytest.raises(
+        ParameterError, match="temperature_gradient .* expected air of -100 to 200 °C at the bottom"
+    ):
+        Models.of(shaft("hung", depth=6000.0, air=air))
+    assert Models.of(shaft("hung", depth=1000.0, air=air)).air is not None
