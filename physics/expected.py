@@ -72,10 +72,7 @@ class Models:
         """Build the models."""
         field = local_field(assumptions.site)
         air = None if assumptions.air.is_vacuum else air_column(assumptions.air, field)
-        if (
-            air is not None
-            and not _COLDEST <= (bottom := float(air.temperature(reach(assumptions)))) <= _HOTTEST
-        ):
+        if air is not None and not _COLDEST <= float(air.temperature(reach(assumptions))) <= _HOTTEST:
             raise ParameterError(
                 "temperature_gradient",
                 assumptions.air.temperature_gradient,

@@ -243,7 +243,7 @@ def test_air_that_no_shaft_has_at_its_bottom_is_refused(shaft, gradient):
     """50 K colder a kilometre would pass absolute zero at 5.6 km: refused, where there was NaN without a word."""
     air = Air(temperature=281.15, temperature_gradient=gradient)
     with pytest.raises(
-        ParameterError, match="temperature_gradient .* expected air of -100 to 200 °C at the bottom"
+        ParameterError, match=r"temperature_gradient .* expected air of -100 to 200 °C at the bottom"
     ):
         Models.of(shaft("hung", depth=6000.0, air=air))
     assert Models.of(shaft("hung", depth=1000.0, air=air)).air is not None
