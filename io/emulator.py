@@ -18,6 +18,7 @@ from eastfall.io.errors import LinkError
 from eastfall.io.journey import Winch
 from eastfall.io.scenes import Scene, scene_for
 from eastfall.io.sitefile import LinkSettings, SiteFile, parse_site
+from eastfall.io.siteplace import refusals_of
 from eastfall.io.truth import Truth, draw_truth
 from eastfall.io.wording import LineWriter
 from eastfall.physics.errors import ParameterError
@@ -298,9 +299,10 @@ def options_of(url: str) -> EmulateOptions:
 def emulator_for(site: SiteFile, options: EmulateOptions, truth: Truth | None = None) -> Emulator:
     """Return the emulator that the options ask for; a truth that is not given is drawn from the seed."""
     real = truth or draw_truth(site.assumptions, options.seed, errors=options.errors)
-    emulator = Emulator(
-        site, seed=options.seed, rate=options.rate, truth=real, broken=options.broken, until=options.until
-    )
+    with refusals_of(site):
+        emulator = Emulator(
+            site, seed=options.seed, rate=options.rate, truth=real, broken=options.broken, until=options.until
+        )
     if options.once and options.until is None:
         return emulator_for(site, replace(options, until=emulator.duration), real)
     return emulator

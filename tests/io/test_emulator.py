@@ -20,12 +20,12 @@ from eastfall.io.emulator import (
     emulator_for,
     options_of,
 )
-from eastfall.io.errors import LinkError
+from eastfall.io.errors import LinkError, SiteFileError
 from eastfall.io.forms import Decoded, decoder_for
 from eastfall.io.framing import Splitter
 from eastfall.io.journey import Winch, down_and_up
 from eastfall.io.scenes import DropScene, GuidedScene, HungScene, felt_tilt
-from eastfall.io.sitefile import LinkSettings, SiteFile
+from eastfall.io.sitefile import LinkSettings, SiteFile, parse_site
 from eastfall.io.truth import Bend, Bulge, Truth, Wave, draw_truth
 from eastfall.physics.earth import EARTH_ROTATION
 from eastfall.physics.errors import ParameterError
@@ -428,6 +428,23 @@ def test_every_demo_site_is_read_by_its_own_decoder(kind: str) -> None:
     said = decoded(site.links[0], emulator.take(0, np.inf))
     assert len(said.readings) == emulator.counts(0)["good"] >= 36
     assert not said.faults
+
+
+def test_a_site_that_the_models_refuse_says_so_with_its_key_and_unit() -> None:
+    """A deflection that is not zero at the collar: the key in seconds of arc as it stands, not radians."""
+    text = """
+[site]
+latitude_deg = 50.0
+deflections_arcsec = [[0.0, 1.0, 0.0]]
+[shaft]
+depth_m = 100.0
+[run]
+kind = "guided"
+"""
+    with pytest.raises(
+        SiteFileError, match=r"site\.deflections_arcsec is \[\[0\.0, 1\.0, 0\.0\]\]; expected zero"
+    ):
+        emulator_for(parse_site(text, "bent.toml"), EmulateOptions())
 
 
 def test_a_truth_that_cannot_be_is_refused() -> None:
