@@ -6,7 +6,7 @@ The file itself is `io.runlog`. Nothing here raises: a disk that is full must no
 import os
 from collections import deque
 
-from eastfall.io.arrivals import Arrival, LineBlock
+from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
 from eastfall.io.runlog import RunLogWriter
 from eastfall.io.safetext import safe
 
@@ -33,13 +33,16 @@ class Recorder:
     trouble : str
         What is wrong; empty while recording works.
     lost : int
-        Lines and events that the record lacks because the memory was full: then a replay cannot repeat the run.
+        Lines and events that the record lacks because the memory was full: then a replay cannot repeat the run. The
+        record itself says so, in the place where they are missing, by the event "lost" with their count.
     """
 
     def __init__(self, log: RunLogWriter | None, limit: int = HELD) -> None:
         self.log = log
         self.trouble = ""
         self.lost = 0
+        self._told = 0
+        """How many of the lost the record speaks of."""
         self._limit = limit
         self._held: deque[Arrival] = deque()
         self._size = 0
@@ -68,7 +71,7 @@ class Recorder:
         if self.log is None or (self.trouble and time < self._retry_at):
             return
         self._retry_at = time + RETRY
-        while self._held and self._written(self._held[0]):
+        while self._held and self._owned_up(_stamp(self._held[0])) and self._written(self._held[0]):
             self._size -= _size(self._held.popleft())
         if not self._held:
             self._ticked(time)
@@ -81,10 +84,21 @@ class Recorder:
         self.tick(time)
         self.lost += sum(len(one) if isinstance(one, LineBlock) else 1 for one in self._held)
         self._held.clear()
+        self._owned_up(time)
         try:
             self.log.close(time)
         except OSError as error:
             self._failed(error)
+
+    def _owned_up(self, time: float) -> bool:
+        """Write how many lines and events are missing here, if any; return whether that is done."""
+        missing = self.lost - self._told
+        if not missing:
+            return True
+        message = f"{missing} lines or events are missing here: they could not be written"
+        done = self._written(RunEvent(time=time, name="lost", fields={"count": missing, "message": message}))
+        self._told += missing if done else 0
+        return done
 
     def _ticked(self, time: float) -> None:
         try:
@@ -112,6 +126,10 @@ class Recorder:
         # The reason first: on a narrow screen the end of a long path is what may be cut.
         reason = f"{os.strerror(error.errno)}: " if error.errno else ""
         self.trouble = safe(f"{reason}{error}", 200)
+
+
+def _stamp(arrival: Arrival) -> float:
+    return float(arrival.times[0]) if isinstance(arrival, LineBlock) else arrival.time
 
 
 def _size(arrival: Arrival) -> int:

@@ -7,13 +7,15 @@ import resource
 import signal
 import subprocess
 import sys
+import threading
+import time
 from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import numpy as np
 import pytest
 
-from eastfall.io.arrivals import LineBlock
+from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.errors import OutputError
 from eastfall.io.runlog import LogPolicy, RunLogWriter, read_log, verify_log
 from eastfall.io.sitefile import parse_site
@@ -21,6 +23,8 @@ from eastfall.io.sitefile import parse_site
 IO_TESTS = Path(__file__).parents[1] / "io"
 RECORDER = f"""
 import sys
+import threading
+import time
 sys.path.insert(0, {str(IO_TESTS)!r})
 from pathlib import Path
 from record_help import block, writer
@@ -301,3 +305,130 @@ def test_a_device_that_is_always_full_is_refused(tmp_path: Path, monkeypatch: py
     log.raw(_block(0))
     log.close(1.0)
     assert _numbers(log.path) == [0]
+
+
+SITE = """\
+[site]
+name = "Full Well"
+latitude_deg = 54.6
+[shaft]
+depth_m = 900.0
+[run]
+kind = "guided"
+[[link]]
+url = "{url}"
+"""
+PROGRAM = (sys.executable, "-c", "from eastfall.tui.main import main; main()")
+PATIENCE = 30.0
+
+
+class Feed:
+    """A pipe with the program `record` at its other end."""
+
+    def __init__(self, folder: Path, into: Path) -> None:
+        self.sent = 0
+        os.mkfifo(folder / "feed")
+        (folder / "site.toml").write_text(SITE.format(url=folder / "feed"), encoding="utf-8")
+        words = ("record", str(folder / "site.toml"), "--into", str(into))
+        self._said = folder / "said"
+        with self._said.open("wb") as said:
+            self.program = subprocess.Popen(
+                [*PROGRAM, *words], stdout=subprocess.PIPE, stderr=said, text=True
+            )
+        self._pen = (folder / "feed").open("wb", buffering=0)
+        assert self.program.stdout is not None
+        self.log = Path(self.program.stdout.readline().strip())
+
+    def send(self, lines: int) -> None:
+        """Send so many lines of a probe that goes down a millimetre a line."""
+        for number in range(self.sent, self.sent + lines):
+            self._pen.write(b"%.3f,0.0010,0.0010\r\n" % (0.001 * number))
+        self.sent += lines
+
+    def until_told(self, words: str) -> None:
+        """Send on until the program says something."""
+        end = time.monotonic() + PATIENCE
+        while words not in (said := self._said.read_text(encoding="utf-8")):
+            assert time.monotonic() < end, said
+            self.send(20)
+            threading.Event().wait(0.01)
+
+    def end(self) -> int:
+        """Close the pipe and wait for the program."""
+        self._pen.close()
+        return self.program.wait(PATIENCE)
+
+    def close(self) -> None:
+        """End what is left."""
+        self.program.kill()
+        self.program.wait(PATIENCE)
+        self._pen.close()
+        assert self.program.stdout is not None
+        self.program.stdout.close()
+
+    def numbers(self) -> list[int]:
+        """Return the numbers of the lines in the log."""
+        with read_log(self.log) as reader:
+            lines = [line for one in reader if isinstance(one, LineBlock) for line in one.lines()]
+        return [round(1000.0 * float(line.split(b",")[0])) for line in lines]
+
+
+def test_the_program_on_a_full_disk_says_so_measures_on_and_has_all_in_the_log_when_space_is_made(
+    small_disk: Path, tmp_path: Path
+) -> None:
+    """An alarm while it is full, its end when there is room, every line in the log, status 0."""
+    ballast = small_disk / "ballast"
+    ballast.write_bytes(bytes(200_000))
+    feed = Feed(tmp_path, small_disk)
+    try:
+        feed.until_told("record failing: normal -> active; No space left on device")
+        feed.send(500)
+        ballast.unlink()
+        feed.until_told("record failing: active -> ")
+        assert feed.end() == 0
+    finally:
+        feed.close()
+    assert feed.numbers() == list(range(feed.sent))
+    assert verify_log(feed.log).state == "intact"
+
+
+def test_the_program_on_a_disk_that_stays_full_ends_with_status_1_and_a_readable_log(
+    small_disk: Path, tmp_path: Path
+) -> None:
+    """What was recorded is readable and without a gap; the status says that it is not all, and so does the log."""
+    (small_disk / "ballast").write_bytes(bytes(200_000))
+    feed = Feed(tmp_path, small_disk)
+    try:
+        feed.until_told("record failing: normal -> active")
+        feed.send(500)
+        assert feed.end() == 1
+    finally:
+        feed.close()
+    numbers = feed.numbers()
+    assert 0 < len(numbers) < feed.sent
+    assert numbers == list(range(len(numbers)))
+    with read_log(feed.log) as reader:
+        told = [one.fields["count"] for one in reader if isinstance(one, RunEvent) and one.name == "lost"]
+    # The few bytes that are left may take the words, and even the seal: without the words it is cut short at least.
+    assert told or verify_log(feed.log).state == "cut short"
+    assert not told or told[0] >= feed.sent - len(numbers)
+
+
+@pytest.mark.parametrize("where", ["/proc/nowhere", "/dev/null/logs", "/sys"])
+@pytest.mark.skipif(not sys.platform.startswith("linux"), reason="Linux paths")
+def test_the_program_in_a_folder_that_cannot_be_written_ends_with_one_line(
+    tmp_path: Path, where: str
+) -> None:
+    """Status 2, the folder in the line, nothing on standard output."""
+    (tmp_path / "site.toml").write_text(SITE.format(url="emulate:"), encoding="utf-8")
+    words = ("record", str(tmp_path / "site.toml"), "--into", where)
+    done = subprocess.run(
+        [*PROGRAM, *words],
+        capture_output=True,
+        text=True,
+        timeout=PATIENCE,
+        check=False,
+        stdin=subprocess.DEVNULL,
+    )
+    assert (done.returncode, done.stdout, done.stderr.count("\n")) == (2, "", 1)
+    assert done.stderr.startswith(f"eastfall: {where}")

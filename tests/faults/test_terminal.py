@@ -76,7 +76,7 @@ def test_a_terminal_that_is_gone_without_a_signal_ends_the_run(
     assert_whole(into, float(found[1]), "intact")
 
 
-@pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGHUP])
+@pytest.mark.parametrize("number", [signal.SIGTERM, signal.SIGHUP, signal.SIGINT])
 def test_a_signal_leaves_modes_and_record_in_order(
     window: Callable[..., Window], tmp_path: Path, number: signal.Signals
 ) -> None:

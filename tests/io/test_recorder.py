@@ -8,10 +8,11 @@ from eastfall.io.recorder import RETRY, Recorder
 
 
 class FailingLog:
-    """A log that refuses while `full` is set."""
+    """A log that refuses while `full` is set; with `only_events` it has room for these."""
 
     def __init__(self) -> None:
         self.full = False
+        self.only_events = False
         self.written: list[Arrival] = []
         self.closed = False
 
@@ -24,7 +25,7 @@ class FailingLog:
         self._take(event)
 
     def _take(self, one: Arrival) -> None:
-        if self.full:
+        if self.full and not (self.only_events and isinstance(one, RunEvent)):
             raise OutputError("/mnt/log: No space left on device")
         self.written.append(one)
 
@@ -92,9 +93,13 @@ def test_memory_is_bounded_and_what_is_lost_is_counted() -> None:
     assert (recorder.held, recorder.lost) == (4, 6)
     log.full = False
     recorder.tick(100.0)
-    assert [one.data for one in log.written if isinstance(one, LineBlock)] == [
-        block(n).data for n in range(6, 10)
-    ]
+    said, *rest = log.written
+    assert isinstance(said, RunEvent)
+    assert (said.name, said.time, said.fields["count"]) == ("lost", 6.0, 6)
+    assert [one.data for one in rest if isinstance(one, LineBlock)] == [block(n).data for n in range(6, 10)]
+    recorder.put(block(10))
+    recorder.close(101.0)
+    assert [one for one in log.written if isinstance(one, RunEvent)] == [said]
 
 
 def test_closing_a_log_that_cannot_be_written_counts_what_is_missing() -> None:
@@ -105,6 +110,20 @@ def test_closing_a_log_that_cannot_be_written_counts_what_is_missing() -> None:
     recorder.put(block(0))
     recorder.close(5.0)
     assert (recorder.lost, recorder.trouble) == (1, "/mnt/log: No space left on device")
+
+
+def test_a_record_that_is_closed_with_lines_missing_says_how_many() -> None:
+    """Where no more than a few bytes are left on a disk: the last that the record says is what it lacks."""
+    log = FailingLog()
+    recorder = over(log)
+    log.full = True
+    for number in range(7):
+        recorder.put(block(number))
+    log.only_events = True
+    recorder.close(8.0)
+    (said,) = log.written
+    assert isinstance(said, RunEvent)
+    assert (said.name, said.time, said.fields["count"]) == ("lost", 8.0, 7)
 
 
 def test_trouble_with_sealing_is_trouble() -> None:
