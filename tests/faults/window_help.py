@@ -48,32 +48,36 @@ class Instrument(threading.Thread):
         self._listener = socket.create_server(("127.0.0.1", 0))
         self.url = f"socket://127.0.0.1:{self._listener.getsockname()[1]}"
         self._over = threading.Event()
+        self._serving: list[threading.Thread] = []
 
     def run(self) -> None:
-        """Serve one connection after the other."""
+        """Serve every connection in a thread of its own."""
         while not self._over.is_set():
             try:
                 peer, _ = self._listener.accept()
             except OSError:
                 return
-            with peer:
-                self._serve(peer)
+            self._serving = [one for one in self._serving if one.is_alive()]
+            self._serving.append(threading.Thread(target=self._serve, args=(peer,), daemon=True))
+            self._serving[-1].start()
 
     def _serve(self, peer: socket.socket) -> None:
         number = 0
-        while not self._over.wait(1.0 / RATE):
-            try:
-                peer.sendall(b"%.1f,0.00%02d,0.0010\r\n" % (number * STEP, number % 97))
-            except OSError:
-                return
-            number += 1
+        with peer:
+            while not self._over.wait(1.0 / RATE):
+                try:
+                    peer.sendall(b"%.1f,0.00%02d,0.0010\r\n" % (number * STEP, number % 97))
+                except OSError:
+                    return
+                number += 1
 
     def close(self) -> None:
         """Stop serving."""
         self._over.set()
         self._listener.shutdown(socket.SHUT_RDWR)
         self._listener.close()
-        self.join(PATIENCE)
+        for one in (self, *self._serving):
+            one.join(PATIENCE)
 
 
 class Window(Terminal):
