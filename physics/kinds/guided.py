@@ -2,6 +2,7 @@
 
 from collections import Counter
 from dataclasses import replace
+from itertools import pairwise
 
 import numpy as np
 
@@ -23,7 +24,7 @@ from eastfall.physics.kinds.base import (
     stations_of,
     usable,
 )
-from eastfall.physics.kinds.closing import Closing, Due
+from eastfall.physics.kinds.closing import KEPT, Closing, Due
 from eastfall.physics.kinds.gaps import Gaps
 from eastfall.physics.kinds.lever import Lever
 from eastfall.physics.kinds.plumbguide import PlumbGuide
@@ -35,6 +36,7 @@ from eastfall.physics.settings import Assumptions
 from eastfall.physics.tilt import OffsetSum, increments
 
 _PIECE = 4096
+_FACE = KEPT.index("face")
 
 
 class Guided:
@@ -120,8 +122,7 @@ class Guided:
         rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
         rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
-        timed = not np.isnan(readings.time).any()
-        rests = self._halts.feed(np.array([readings.time, depth, *slopes])) if timed else []
+        rests = self._rests(readings, slopes)
         ridden, leaning = self._plumb.ride(readings.time, depth, rows[ROW["speed"]], lag)
         self._gather(readings, slopes, leaning, azimuth, rests)
         speed = rows[ROW["speed"]]
@@ -144,6 +145,22 @@ class Guided:
         found = Rows(rows)
         judged = rows[5:7] - rows[7:9]
         return Batch(rows=found, judged=judged, stations=self._stations(due))
+
+    def _rests(self, readings: Readings, slopes: Array) -> list[tuple[int, Rest]]:
+        """Return the halts that rows complete; a probe that is turned to its other face at rest begins another."""
+        if np.isnan(readings.time).any():
+            return []
+        rows = np.array([readings.time, readings.depth, *slopes])
+        face = readings.column("face")
+        before = face[0] if self._last is None else self._last[_FACE]
+        turns = np.flatnonzero(np.abs(np.diff(face, prepend=before)) > 0.0).tolist()
+        found: list[tuple[int, Rest]] = []
+        for begin, end in pairwise([0, *turns, len(readings)]):
+            if begin in turns:
+                self._halts.moved()
+            if end > begin:
+                found += [(begin + row, rest) for row, rest in self._halts.feed(rows[:, begin:end])]
+        return found
 
     def _moving(
         self, readings: Readings, rows: Array, slopes: Array, ridden: Array, azimuth: Array, bend: Array
@@ -257,7 +274,7 @@ class Guided:
             names=(*self._shares.names, *self._curve.budget.names),
             parts=np.concatenate([self._shares.parts(_summed(kept)), self._curve.budget.at(at)]),
             halt=_halt(first.rest),
-            face=kept[12],
+            face=kept[_FACE],
             before=before,
         )
         found = stations_of(facts, self._assumptions)

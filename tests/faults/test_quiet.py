@@ -125,7 +125,9 @@ def test_the_emulators_port_is_on_the_loopback_alone(started: Callable[..., "sub
     assert {one.split(":")[0] for one in listening} <= LOOPBACK
 
 
-def test_the_emulators_port_is_elsewhere_only_when_told(started: Callable[..., "subprocess.Popen[str]"]) -> None:
+def test_the_emulators_port_is_elsewhere_only_when_told(
+    started: Callable[..., "subprocess.Popen[str]"],
+) -> None:
     """Told another address it listens at that one alone (here one more of this machine's own)."""
     running = started("emulate", "site.toml", "--tcp", "0", "--host", "127.0.0.9")
     listening = [address for _, address, state in internet_sockets(running.pid) if state == LISTENS]

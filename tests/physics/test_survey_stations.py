@@ -9,7 +9,7 @@ from survey_help import journey, run
 from truth_help import DEPTH, capture
 
 from eastfall.physics.readings import Readings
-from eastfall.physics.settings import Depth, Limits
+from eastfall.physics.settings import Depth, Guide, Limits
 from eastfall.physics.survey import Survey
 
 
@@ -74,3 +74,28 @@ def test_marks_on_the_line_move_readings_to_their_true_depth(shaft):
     for one, other in zip(right.result().stations, marked.result().stations, strict=True):
         assert other.depth == one.depth
         assert other.residual_east == pytest.approx(one.residual_east, abs=1e-9)
+
+
+@pytest.mark.parametrize("blocks", [(), tuple(range(1, 31 * 16)), (5, 8, 9, 100)])
+def test_both_faces_read_at_each_halt_free_the_sum_of_the_zero(shaft, blocks):
+    """Eight readings a face at halts 10 m apart, zeros of 0.05° and -0.03°: 262 mm in one face, nothing in both.
+
+    True tilt is (a0 - a180)/2; Mikkelsen, P. E. (2007), short course on inclinometer data.
+    """
+    halts, turned = np.repeat(np.arange(31), 16), np.tile(np.repeat([False, True], 8), 31)
+    zero_a, zero_b, sign = np.radians(0.05), np.radians(-0.03), np.where(turned, -1.0, 1.0)
+    readings = Readings.of(
+        time=halts * 22.0 + np.tile(np.arange(16.0), 31),
+        depth=halts * 10.0,
+        tilt_a=zero_a + sign * 1e-3,
+        tilt_b=zero_b - sign * 5e-4,
+        face=np.where(turned, np.pi, 0.0),
+    )
+    survey, _ = run(shaft(latitude=0.0, guide=Guide(readings="still")), readings, blocks)
+    result = survey.result()
+    last = result.stations[-1]
+    assert (last.depth, last.still) == (300.0, True)
+    # The slope as the tilts give it: 1 mrad north and 0.5 mrad west.
+    assert (last.residual_east, last.residual_north) == pytest.approx((-0.15, 0.3), abs=1e-6)
+    assert (result.faces.zero_a, result.faces.zero_b) == pytest.approx((zero_a, zero_b), abs=1e-9)
+    assert any("the faces show a zero on A of 0.0500" in one for one in result.notes)
