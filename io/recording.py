@@ -116,7 +116,8 @@ def open_recording(path: Path, site: SiteFile | None = None, interval: float | N
 def _capture(path: Path, site: SiteFile | None, interval: float | None) -> Recording:
     if site is None:
         raise CaptureError(
-            f"{path}: is no run log; expected one, or a site file (--site) that says how its lines are read"
+            f"{path}: is no run log; expected one, or a capture with a site file that says how its lines are read "
+            "(--site of reduce, replay, report and export)"
         )
     if interval is not None and not interval > 0.0:
         raise CaptureError(f"{path}: an interval of {interval:g} s; expected more than 0 s")

@@ -25,10 +25,10 @@ def _told(text: str, stream: TextIO) -> str:
     return in_ascii(safe(text)) if plain(stream) else safe(text)
 
 
-def say_sentence(text: str) -> None:
+def say_sentence(text: str, *, err: bool = False) -> None:
     """Write a sentence about a table, parted between words where it is too long for the window."""
-    for line in prose(_told(text, sys.stdout), window()):
-        click.echo(line)
+    for line in prose(_told(text, sys.stderr if err else sys.stdout), window()):
+        click.echo(line, err=err)
 
 
 def window() -> int | None:

@@ -73,3 +73,31 @@ def test_runs_and_reduce_agree_on_verdict_and_depth(shelf: Path) -> None:
     assert sorted([[one[name] for name in names] for one in found]) == sorted(
         [[one[name] for name in names] for one in cards]
     )
+
+
+def _changed(log: Path) -> Path:
+    """Return a copy of a log in which one digit of one reading is another."""
+    copy = log.with_name("tampered.eastfall.jsonl")
+    lines = log.read_text(encoding="utf-8").splitlines(keepends=True)
+    at = next(n for n, one in enumerate(lines) if n > len(lines) // 2 and '"raw":["' in one)
+    head, mark, rest = lines[at].partition('"raw":["')
+    lines[at] = head + mark + ("8" if rest[0] != "8" else "9") + rest[1:]
+    copy.write_text("".join(lines), encoding="utf-8")
+    return copy
+
+
+def test_a_changed_log_is_told_by_every_verb_that_makes_something_of_it(shelf: Path) -> None:
+    """Status 1 of a folder as of the log alone; a note of a comparison in every form; a line beside an export."""
+    log = next(shelf.glob("sandrigg*"))
+    copy = _changed(log)
+    assert called("reduce", copy).return_value == 1
+    assert called("reduce", shelf, "--workers", 1).return_value == 1
+    said = "the record tampered.eastfall.jsonl is changed: line"
+    assert said in " ".join(called("compare", log, copy).stdout.split())
+    assert said in " ".join(called("compare", log, copy, "--format", "csv").stderr.split())
+    assert any(
+        said in one for one in json.loads(called("compare", log, copy, "--format", "json").stdout)["notes"]
+    )
+    exported = called("export", copy, shelf / "out.csv")
+    assert "the record is changed: line" in exported.stderr
+    assert called("export", log, shelf / "sound.csv").stderr == ""

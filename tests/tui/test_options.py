@@ -65,3 +65,19 @@ def test_a_refused_number_names_what_was_expected(kind, text, words):
 def test_a_number_at_its_bound_is_taken(kind, text):
     """Bounds that are not open belong to the range."""
     assert kind.convert(text, None, None) == float(text)
+
+
+@pytest.mark.parametrize(
+    ("words", "message"),
+    [
+        (["--every", "10", "--at", "5"], "--every and --at both say the depths"),
+        (["--budget", "--line"], "--budget and --line are two tables"),
+        (["--apart", "5"], "--apart speaks of the plumb line; give --line with it"),
+        (["--decay", "60", "--budget"], "--decay speaks of the plumb line; give --line with it"),
+    ],
+)
+def test_no_option_of_expect_is_left_aside_in_silence(words, message):
+    """An option that the table asked for has no use for is refused."""
+    outcome = CliRunner().invoke(cli, ["expect", "anything", *words])
+    assert outcome.exit_code == 2
+    assert message in outcome.output

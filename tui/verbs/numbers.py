@@ -95,6 +95,9 @@ def expect(
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
     from eastfall.io.siteplace import refusals_of  # noqa: PLC0415
 
+    _refuse_what_would_be_left_aside(
+        every, at, budget=budget, line=line, of_line={"--apart": apart, "--decay": decay}
+    )
     if explore:
         from eastfall.tui.opening import run_explorer  # noqa: PLC0415 (the screen library only where a screen opens)
 
@@ -128,6 +131,23 @@ def expect(
     print_rows(predicted.rows, form)
     for note in predicted.notes if form == "table" else ():
         say_sentence(note)
+
+
+def _refuse_what_would_be_left_aside(
+    every: float | None,
+    at: tuple[float, ...] | None,
+    *,
+    budget: bool,
+    line: bool,
+    of_line: dict[str, float | None],
+) -> None:
+    if every is not None and at is not None:
+        raise click.UsageError("--every and --at both say the depths; give one of them")
+    if budget and line:
+        raise click.UsageError("--budget and --line are two tables; give one of them")
+    for name, value in of_line.items():
+        if value is not None and not line:
+            raise click.UsageError(f"{name} speaks of the plumb line; give --line with it")
 
 
 def _line(
@@ -169,7 +189,7 @@ def reduce(
 
     LOG is a run log, a plain-text capture (with --site), or a folder: then every run log in it is worked through, and
     a row for each is printed (with --format json, a list of all that each comes to). Exit status 1 if a limit is
-    exceeded, 2 if something cannot be used.
+    exceeded or a log was changed, 2 if something cannot be used.
     """
     from eastfall.io.reduce import reduce_file  # noqa: PLC0415
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
@@ -208,7 +228,8 @@ def _many(
     unusable = [one for one in found if one["error"]]
     for one in unusable:
         say(f"eastfall: {one['error']}", err=True)
-    click.get_current_context().exit(2 if unusable else int(any(one["exceeded"] for one in found)))
+    bad = any(one["exceeded"] or one["state"] == "changed" for one in found)
+    click.get_current_context().exit(2 if unusable else int(bad))
 
 
 def _stations(shape: dict[str, Any]) -> tuple[list[str], list[list[Any]]]:

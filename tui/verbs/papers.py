@@ -98,9 +98,14 @@ def export(log: Path, file: Path, site: Path | None, interval: float | None, for
     """Write the stations of a run to FILE; its suffix picks csv, json or las."""
     from eastfall.io.export import export as write  # noqa: PLC0415
     from eastfall.io.reduce import reduce_file  # noqa: PLC0415
+    from eastfall.io.safetext import safe  # noqa: PLC0415
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
-    write(reduce_file(log, site=load_site(site) if site else None, interval=interval), file, force=force)
+    found = reduce_file(log, site=load_site(site) if site else None, interval=interval)
+    write(found, file, force=force)
+    if found.verification is not None and found.seal_state == "changed":
+        # A spreadsheet has no place for it.
+        say(f"note: {safe(str(log))}: the record is changed: {found.verification.reason}", err=True)
     say_path(file)
 
 
@@ -129,15 +134,23 @@ def compare(first: Path, second: Path | None, passes: tuple[int, int] | None, fo
         found = compare_passes(run, one - 1, other - 1)
     rows = difference_rows(found)
     if form == "json":
-        print_json({"first": found.first, "second": found.second, "left_out": found.left_out, "depths": rows})
+        print_json(
+            {
+                "first": found.first,
+                "second": found.second,
+                "left_out": found.left_out,
+                "depths": rows,
+                "notes": found.notes,
+            }
+        )
         return
     if form == "table":
         say(found.second)
         say(f"less {found.first}; offsets in mm, u is the standard uncertainty")
     print_rows((list(DIFFERENCE_KEYS), [[row[name] for name in DIFFERENCE_KEYS] for row in rows]), form)
+    for line in found.notes:
+        say_sentence(f"note: {line}", err=form == "csv")
     if form == "table":
-        for line in found.notes:
-            say_sentence(f"note: {line}")
         say(f"{len(found.moved)} of {len(found.rows)} depths differ by more than their uncertainty explains")
 
 

@@ -46,7 +46,7 @@ from eastfall.tui.verbs.options import Number, above_nothing, an_input, as_forma
 )
 @click.option("--errors", is_flag=True, help="Let the instrument err beyond what the site states.")
 @click.option("--until", type=Number(min=0.0), metavar="S", help="Emulated time after which it falls silent.")
-@click.option("--once", is_flag=True, help="End when everything has been shown once.")
+@click.option("--once", is_flag=True, help="Show everything once; end when nobody listens any more.")
 @click.option(
     "--report", type=click.Path(path_type=Path), help="At the end: what was sent and what is true (JSON)."
 )
