@@ -305,7 +305,7 @@ def face_notes(faces: FaceSums | None, instrument: Instrument) -> tuple[str, ...
         if isfinite(zero) and abs(zero) > _TOO_FAR * hypot(u, instrument.u_zero):
             notes.append(
                 f"the faces show a zero on {axis} of {zero / DEGREE:.4f} ± {COVERAGE_FACTOR * u / DEGREE:.4f}°, "
-                "beyond its stated uncertainty: single passes are off by it, both together are not"
+                "beyond its stated uncertainty: what was summed in one face is off by it, both together are not"
             )
     if faces.suspect_depths:
         shown = ", ".join(f"{z:g}" for z in faces.suspect_depths[:8])
