@@ -62,6 +62,16 @@ class Reduction:
     """What the seals say; None for a capture."""
 
     @property
+    def is_log(self) -> bool:
+        """Whether the recording says when its lines arrived: a run log does, a capture does not."""
+        return self.verification is not None
+
+    @property
+    def own_clock(self) -> bool:
+        """Whether the instrument's lines carry a time of their own, which alarms then go by."""
+        return any("time_s" in one.columns for one in self.site.links)
+
+    @property
     def seal_state(self) -> str:
         """Intact, cut short or changed; empty for a capture, which has no seals."""
         return self.verification.state if self.verification is not None else ""

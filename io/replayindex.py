@@ -1,13 +1,12 @@
 """What a replay can jump to: stations, alarms, passes, events and depths, each at its instant of the recording."""
 
-from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
+from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.recording import Recording
 from eastfall.io.safetext import safe
 from eastfall.physics.findings import Findings, Rows
@@ -15,8 +14,8 @@ from eastfall.physics.findings import Findings, Rows
 What = Literal["station", "alarm", "pass", "note", "event"]
 Column = NDArray[np.float64]
 
-_PIECE = 1000
-"""Lines at a time: how finely the two clocks are held against each other."""
+_OF_A_BLOCK = 2000
+"""Rows kept of each block on the way."""
 _TRACK = 200_000
 """Points kept of depth against time."""
 
@@ -95,19 +94,16 @@ def split(block: LineBlock, count: int) -> tuple[LineBlock, LineBlock]:
 
 
 class _Clocks:
-    """Turns the survey's time into the recording's, by what each piece of the recording showed of both."""
+    """Turns the survey's time into the recording's, by what rows showed of both."""
 
-    def __init__(self) -> None:
-        self._survey: list[float] = []
-        self._host: list[float] = []
-
-    def note(self, survey: float, host: float) -> None:
-        if np.isfinite(survey) and (not self._survey or survey > self._survey[-1]):
-            self._survey.append(survey)
-            self._host.append(host)
+    def __init__(self, rows: Rows) -> None:
+        survey, host = rows.column("time"), rows.column("host_time")
+        before = np.fmax.accumulate(np.concatenate([[-np.inf], survey]))[:-1]
+        forward = np.isfinite(survey) & np.isfinite(host) & (survey > before)
+        self._survey, self._host = survey[forward], host[forward]
 
     def host(self, survey: Column) -> Column:
-        if not self._survey:
+        if not self._survey.size:
             return survey
         # Beyond the first and last pair the clocks are taken to run side by side.
         first, last = self._survey[0], self._survey[-1]
@@ -116,55 +112,34 @@ class _Clocks:
         return np.asarray(np.maximum(inside + before + after, 0.0))
 
 
-def _pieces(source: Iterator[Arrival]) -> Iterator[Arrival]:
-    for arrival in source:
-        if isinstance(arrival, LineBlock):
-            yield from _cut(arrival)
-        else:
-            yield arrival
-
-
-def _cut(block: LineBlock) -> Iterator[LineBlock]:
-    ends = np.flatnonzero(np.frombuffer(block.data, np.uint8) == ord("\n")) + 1
-    begin = 0
-    for first in range(0, len(block), _PIECE):
-        times = block.times[first : first + _PIECE]
-        end = int(ends[first + times.size - 1])
-        yield LineBlock(
-            data=block.data[begin:end], times=times, first_line=block.first_line + first, link=block.link
-        )
-        begin = end
-
-
 def build_index(recording: Recording) -> Index:
     """Run through a recording and note what can be jumped to."""
     pipeline, source = recording.pipeline(), recording.source()
-    clocks, events = _Clocks(), []
+    events: list[RunEvent] = []
     found: list[Findings] = []
-    for arrival in _pieces(iter(source)):
+    for arrival in source:
         one = pipeline.take(arrival)
         found.append(Findings(rows=_thinned(one.rows), stations=one.stations, alarms=one.alarms))
         if isinstance(arrival, RunEvent):
             events.append(arrival)
-        elif len(one.rows):
-            clocks.note(float(one.rows.column("time")[-1]), float(arrival.times[-1]))
     found.append(pipeline.close(source.last_time if recording.is_log else float("nan")))
     source.close()
-    return _index(found, events, clocks)
+    return _index(found, events)
 
 
 def _thinned(rows: Rows) -> Rows:
-    return Rows(rows.data[:, :: max(1, len(rows) // 100)])
+    return Rows(rows.data[:, :: max(1, len(rows) // _OF_A_BLOCK)])
 
 
-def _index(found: list[Findings], events: list[RunEvent], clocks: _Clocks) -> Index:
+def _index(found: list[Findings], events: list[RunEvent]) -> Index:
     rows = np.concatenate([one.rows.data for one in found], axis=1)
     rows = rows[:, :: max(1, rows.shape[1] // _TRACK)]
     table = Rows(rows)
-    times = clocks.host(table.column("time"))
-    marks = [*_stations(found, clocks), *_alarms(found, clocks), *_passes(table, times), *_said(events)]
+    marks = [*_stations(found, _Clocks(table)), *_alarms(found), *_passes(table), *_said(events)]
     return Index(
-        marks=tuple(sorted(marks, key=lambda one: one.time)), times=times, depths=table.column("depth")
+        marks=tuple(sorted(marks, key=lambda one: one.time)),
+        times=table.column("host_time"),
+        depths=table.column("depth"),
     )
 
 
@@ -182,17 +157,21 @@ def _stations(found: list[Findings], clocks: _Clocks) -> list[Mark]:
     ]
 
 
-def _alarms(found: list[Findings], clocks: _Clocks) -> list[Mark]:
+def _alarms(found: list[Findings]) -> list[Mark]:
     alarms = [one for findings in found for one in findings.alarms]
-    times = clocks.host(np.array([one.time for one in alarms]))
     return [
-        Mark(time=time, depth=one.depth, what="alarm", text=f"{one.name}: {one.old} to {one.new}")
-        for one, time in zip(alarms, times.tolist(), strict=True)
+        Mark(
+            time=max(0.0, one.host_time),
+            depth=one.depth,
+            what="alarm",
+            text=f"{one.name}: {one.old} to {one.new}",
+        )
+        for one in alarms
     ]
 
 
-def _passes(rows: Rows, times: Column) -> list[Mark]:
-    numbers = rows.column("passing")
+def _passes(rows: Rows) -> list[Mark]:
+    numbers, times = rows.column("passing"), rows.column("host_time")
     begins = np.flatnonzero(np.diff(numbers, prepend=np.nan) != 0.0)
     depths, directions = rows.column("depth"), rows.column("direction")
     return [

@@ -221,10 +221,15 @@ def rest_point(reduction: Reduction) -> str | None:
 
 
 def alarms(reduction: Reduction) -> Table:
-    """Return every change of every alarm."""
+    """Return every change of every alarm, with its instant on each clock that it has."""
+    clocks = {
+        "time s": reduction.is_log or not reduction.own_clock,
+        "instrument's time s": reduction.own_clock,
+    }
     rows = tuple(
         (
-            f"{one.time:.1f}",
+            *((f"{one.host_time if reduction.is_log else one.time:.1f}",) if clocks["time s"] else ()),
+            *((f"{one.time:.1f}",) if reduction.own_clock else ()),
             f"{one.depth:.1f}" if isfinite(one.depth) else "–",
             safe(one.name, 80),
             f"{one.old} → {one.new}",
@@ -232,7 +237,8 @@ def alarms(reduction: Reduction) -> Table:
         )
         for one in reduction.result.alarms
     )
-    return Table(heads=("time s", "depth m", "alarm", "change", "about"), rows=rows)
+    heads = [name for name, there in clocks.items() if there]
+    return Table(heads=(*heads, "depth m", "alarm", "change", "about"), rows=rows)
 
 
 _SAID = {

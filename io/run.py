@@ -249,12 +249,14 @@ class Run:
     def _found(self, findings: Findings, now: float) -> None:
         """Keep findings for the next update; a change of an alarm goes to the log, stamped by the host's clock.
 
-        Its instant by the readings' clock is a field: in the place of the stamp it would hold up a replay.
+        Its instants by the readings' clock and the host's are fields: in the place of the stamp one of them would hold
+        up a replay.
         """
         for one in findings.alarms:
             fields: dict[str, object] = {
                 "name": one.name,
                 "at": one.time,
+                "host_at": one.host_time,
                 "from": one.old,
                 "to": one.new,
                 "depth": one.depth,

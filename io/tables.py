@@ -58,10 +58,15 @@ def station_row(station: Station) -> dict[str, Any]:
     }
 
 
-def alarm_row(change: AlarmChange) -> dict[str, Any]:
-    """Return one transition of an alarm."""
+def alarm_row(change: AlarmChange, *, on_host: bool = True) -> dict[str, Any]:
+    """Return one transition of an alarm.
+
+    `time_s` is by the instrument's clock where its lines carry a time; `host_time_s` by that of the machine that
+    recorded, from the start of the run, null for a capture, of which nobody knows when its lines arrived.
+    """
     return {
         "time_s": number(change.time),
+        "host_time_s": number(change.host_time) if on_host else None,
         "depth_m": number(change.depth),
         "name": change.name,
         "from": change.old,
@@ -137,7 +142,7 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "frames": reduction.frames,
         "rejected": reduction.rejected,
         "stations": [station_row(one) for one in result.stations],
-        "alarms": [alarm_row(one) for one in result.alarms],
+        "alarms": [alarm_row(one, on_host=reduction.is_log) for one in result.alarms],
         "closure": closure_row(result.closure),
         "rest_point": rest_point_row(result.rest_point),
         "best": [best_row(one) for one in result.best],

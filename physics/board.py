@@ -1,11 +1,11 @@
 """The alarms of a run on their two clocks, in words and with a depth; what raises them is known to others.
 
-Limits and guards are judged on the time of the readings. What only this machine knows comes on the host's clock,
-and is shown on the readings' clock by the difference that the newest reading had.
+Limits and guards are judged on the time of the readings. What only this machine knows comes on the host's clock. Each
+change bears both: the other clock by the difference that the reading before it had.
 """
 
 from collections.abc import Callable
-from math import isfinite
+from math import isfinite, nan
 
 import numpy as np
 from numpy.typing import NDArray
@@ -58,7 +58,7 @@ class Board:
         }
         self._on_host: dict[str, Alarm] = {name: self._new(name) for name in _ON_HOST}
         self._messages: dict[str, str] = {}
-        self._held: dict[str, tuple[float, float]] = {}
+        self._held: dict[str, tuple[float, float, float]] = {}
         self.changes: list[AlarmChange] = []
         self._latest: dict[str, AlarmChange] = {}
         self.newest: Array = np.full(3, np.nan)
@@ -92,25 +92,25 @@ class Board:
         alarm = self._on_readings[seen.name]
         changes = [] if alarm.idle and seen.quiet else alarm.sample(seen.time, seen.placed)
         told = [self._worded(one, seen) for one in changes]
-        self._held[seen.name] = float(seen.depth[-1]), float(seen.value[-1])
+        self._held[seen.name] = _at(seen, -1)
         return told
 
     def _worded(self, change: Change, seen: Sighting) -> AlarmChange:
         at = int(np.searchsorted(seen.time, change.time, side="right")) - 1
-        here = float(seen.depth[max(at, 0)]), float(seen.value[max(at, 0)])
-        depth, value = here if at >= 0 else self._held.get(seen.name, here)
+        here = _at(seen, max(at, 0))
+        depth, value, apart = here if at >= 0 else self._held.get(seen.name, here)
         shown = _SHOWN.get(seen.name, _in_mm)(value) if isfinite(value) else ""
         message = f"{seen.name} at {depth:.1f} m" + (f", {shown}" if shown else "")
         self._messages[seen.name] = message
-        return _told(seen.name, change, change.time, depth, message)
+        return _told(seen.name, change, (change.time, change.time + apart), depth, message)
 
-    def jumped(self, time: float, before: float, after: float) -> list[AlarmChange]:
+    def jumped(self, time: float, before: float, after: float, host_time: float = nan) -> list[AlarmChange]:
         """Raise the alarm of a depth that jumped [m] at a time [s]; its condition is over at once."""
         alarm = self._on_readings[JUMP]
         message = f"depth jumped from {before:.2f} m to {after:.2f} m; not summed across"
         self._messages[JUMP] = message
         changes = alarm.set(time, on=True) + alarm.set(time, on=False)
-        return [_told(JUMP, one, one.time, after, message) for one in changes]
+        return [_told(JUMP, one, (one.time, host_time), after, message) for one in changes]
 
     # -- on the host's clock ---------------------------------------------------------------------------------------
 
@@ -157,7 +157,7 @@ class Board:
         for one in changes:
             time, host, depth = self._newest_at(one.time, rows).tolist()
             apart = host - time if isfinite(host - time) else 0.0
-            told.append(_told(name, one, one.time - apart, depth, message))
+            told.append(_told(name, one, (one.time - apart, one.time), depth, message))
         return told
 
     def _newest_at(self, host_time: float, rows: Array | None) -> Array:
@@ -175,7 +175,7 @@ class Board:
         """Acknowledge an alarm at a host time [s]."""
         alarm, at = self._named(name, host_time)
         words = f"acknowledged by {who}" if who else "acknowledged"
-        return self._by_hand(name, alarm.acknowledge(at), words)
+        return self._by_hand(name, alarm.acknowledge(at), words, host_time - at)
 
     def shelve(self, host_time: float, name: str, seconds: float, reason: str, who: str) -> list[AlarmChange]:
         """Shelve an alarm at a host time [s] for some seconds, with a reason."""
@@ -183,7 +183,8 @@ class Board:
             raise ParameterError("reason", reason, "", "a few words on why the alarm is shelved")
         alarm, at = self._named(name, host_time)
         by = f" by {who}" if who else ""
-        return self._by_hand(name, alarm.shelve(at, seconds), f"shelved{by} for {seconds:g} s: {reason}")
+        words = f"shelved{by} for {seconds:g} s: {reason}"
+        return self._by_hand(name, alarm.shelve(at, seconds), words, host_time - at)
 
     def _named(self, name: str, host_time: float) -> tuple[Alarm, float]:
         """Return an alarm and the instant on its own clock."""
@@ -194,11 +195,11 @@ class Board:
         known = ", ".join([*self._on_readings, *self._on_host])
         raise ParameterError("alarm", name, "", f"one of {known}")
 
-    def _by_hand(self, name: str, changes: list[Change], words: str) -> list[AlarmChange]:
+    def _by_hand(self, name: str, changes: list[Change], words: str, apart: float) -> list[AlarmChange]:
         message = f"{self._messages.get(name, name)}; {words}"
         if name in self._on_host:
             return self._dated(changes, name, message)
-        return [_told(name, one, one.time, self.depth, message) for one in changes]
+        return [_told(name, one, (one.time, one.time + apart), self.depth, message) for one in changes]
 
     # -- looking ---------------------------------------------------------------------------------------------------
 
@@ -216,7 +217,7 @@ class Board:
             AlarmView(
                 name=name,
                 state=alarm.state,
-                since=newest[name].time if name in newest else alarm.since,
+                since=newest[name].host_time if name in newest else alarm.since,
                 depth=newest[name].depth if name in newest else float("nan"),
                 message=self._messages.get(name, ""),
             )
@@ -225,5 +226,20 @@ class Board:
         return tuple(sorted(views, key=lambda one: -one.since))
 
 
-def _told(name: str, change: Change, time: float, depth: float, message: str) -> AlarmChange:
-    return AlarmChange(time=time, depth=depth, name=name, old=change.old, new=change.new, message=message)
+def _at(seen: Sighting, row: int) -> tuple[float, float, float]:
+    """Return depth, value, and how far this machine's clock is ahead of the readings', at a row."""
+    apart = 0.0 if seen.host is None else float(seen.host[row] - seen.time[row])
+    return float(seen.depth[row]), float(seen.value[row]), apart if isfinite(apart) else 0.0
+
+
+def _told(name: str, change: Change, at: tuple[float, float], depth: float, message: str) -> AlarmChange:
+    """Return a change in words; `at` is its instant on the readings' clock and on this machine's [s]."""
+    return AlarmChange(
+        time=at[0],
+        depth=depth,
+        name=name,
+        old=change.old,
+        new=change.new,
+        message=message,
+        host_time=at[1],
+    )

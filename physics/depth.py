@@ -87,11 +87,12 @@ def _table(depth: Depth) -> Array:
 
 
 class Jump(NamedTuple):
-    """A jump: instant [s], depth before and after it [m]."""
+    """A jump: instant [s], depth before and after it [m], and the instant on this machine's clock [s]."""
 
     time: float
     before: float
     after: float
+    host_time: float = np.nan
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -301,9 +302,8 @@ class _Walk:
         """Take the rows that wait for the new truth."""
         first, track = self._run[0], self._state.track
         before = track.depth if track else float("nan")
-        self._jumps[first] = Jump(
-            float(self._readings.time[first]), before, float(self._readings.depth[first])
-        )
+        time, host, depth = self._readings.data[:3, first].tolist()
+        self._jumps[first] = Jump(time, before, depth, host)
         self._keep[self._run] = True
         self._state.track, self._state.settled, self._run = self._state.waiting, True, []
         self._forget()

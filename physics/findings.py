@@ -11,7 +11,7 @@ Verdict = Literal["within", "over", "undecided"]
 Pass = Literal["down", "up"]
 
 ROW_FIELDS = (
-    "time",  # [s]
+    "time",  # on the clock of the instrument's lines, or of their arrival where they carry none [s]
     "depth",  # [m]
     "speed",  # of the line [m/s], down positive
     "passing",  # number of the pass, from 0; even down, odd up when the run starts downward
@@ -24,6 +24,7 @@ ROW_FIELDS = (
     "u_north",
     "warning",  # limit in force at that depth [m]
     "action",
+    "host_time",  # of the arrival, on this machine's clock, from the start of the run [s]
 )
 _ROW = {name: row for row, name in enumerate(ROW_FIELDS)}
 
@@ -147,12 +148,15 @@ class AlarmChange:
     """One transition of one alarm."""
 
     time: float
+    """On the clock of the readings: the instrument's, where its lines carry a time [s]."""
     depth: float
     name: str
     old: str
     new: str
     message: str = ""
     """What it is about, in words with numbers and units."""
+    host_time: float = nan
+    """The same instant on this machine's clock, from the start of the run [s]."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -303,6 +307,7 @@ class AlarmView:
     name: str
     state: str
     since: float
+    """On this machine's clock, from the start of the run [s]."""
     depth: float
     message: str
 

@@ -47,13 +47,17 @@ _WARMTH_BAND, _SUPPLY_BAND = 0.5, 0.01
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Sighting:
-    """What one guard says of a block: instants, placements, depths and values, shape (n,) each, in SI units."""
+    """What one guard says of a block: instants, placements, depths and values, shape (n,) each, in SI units.
+
+    `host` are the instants on this machine's clock; the same as `time` where it is None.
+    """
 
     name: AlarmName
     time: Array
     placed: Placed
     depth: Array
     value: Array
+    host: Array | None = None
 
     @property
     def quiet(self) -> bool:
@@ -113,7 +117,8 @@ class Guards:
     def _sighting(
         name: AlarmName, readings: Readings, placed: NDArray[np.integer[Any]], value: Array
     ) -> Sighting:
-        return Sighting(name, readings.time, placed.astype(np.int8, copy=False), readings.depth, value)
+        sides = placed.astype(np.int8, copy=False)
+        return Sighting(name, readings.time, sides, readings.depth, value, readings.host_time)
 
     def _saturated(self, readings: Readings, found: list[Sighting]) -> Flags | None:
         bound = self._instrument.range

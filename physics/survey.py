@@ -167,7 +167,7 @@ class Survey:
         if not len(batch.rows):
             return []
         rows, limits = batch.rows.data, self.assumptions.limits
-        time, depth = rows[ROW["time"]], rows[ROW["depth"]]
+        time, depth, host = rows[ROW["time"]], rows[ROW["depth"]], rows[ROW["host_time"]]
         if np.isnan(time).any():
             time = np.full(time.shape, np.nan_to_num(self._board.newest[0]))
         self._frames += len(batch.rows)
@@ -177,13 +177,13 @@ class Survey:
         east, north = batch.judged
         length = np.sqrt(east * east + north * north)  # a quarter of the time of numpy.hypot
         seen = [
-            Sighting(name, time, against_limit(length, rows[ROW[row]], limits.dead_band), depth, length)
+            Sighting(name, time, against_limit(length, rows[ROW[row]], limits.dead_band), depth, length, host)
             for name, row in ((ACTION, "action"), (WARNING, "warning"))
         ]
         if limits.wall_clearance is not None:
             clearance = self._clearance(batch)
             placed = against_limit(-clearance, -limits.wall_clearance, limits.dead_band)
-            seen.append(Sighting(WALL, time, placed, depth, clearance))
+            seen.append(Sighting(WALL, time, placed, depth, clearance, host))
         changes = [change for one in seen for change in self._board.see(one)]
         return sorted(changes, key=lambda one: one.time)
 

@@ -61,4 +61,4 @@ class PlainLines:
 
     def _alarm(self, one: "AlarmChange") -> str:
         what = words.reworded(one.message, self._units)
-        return f"alarm {words.clock(one.time)} {one.name}: {one.old} -> {one.new}; {what}"
+        return f"alarm {words.clock(one.host_time)} {one.name}: {one.old} -> {one.new}; {what}"

@@ -6,6 +6,7 @@ The worker thread owns the history and appends; a snapshot holds read-only views
 from collections import deque
 from collections.abc import Sequence
 from dataclasses import dataclass, field, replace
+from math import isfinite
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -142,10 +143,8 @@ class History:
         """Forget everything, as when a replay starts over."""
         self._rows = GrowingRows(self._keep)
         self._stations: dict[int, Station] = {}
-        self._since: dict[str, float] = {}
         self._changes: deque[AlarmChange] = deque(maxlen=REMEMBERED)
         self._changed: tuple[AlarmChange, ...] | None = ()
-        self._until = 0.0
         self._frozen: tuple[Station, ...] | None = ()
 
     def add(self, findings: "Sequence[Findings]", until: float = 0.0) -> None:
@@ -156,26 +155,13 @@ class History:
                 self._stations[station.number] = station
                 self._frozen = None
         self._date(findings, until)
-        self._until = until
 
     def _date(self, findings: "Sequence[Findings]", until: float) -> None:
-        """Put alarm changes, which are told on the instrument's clock, on the clock that the screen shows.
-
-        Within one step the two clocks are taken to run evenly.
-        """
-        times = np.concatenate([np.empty(0), *(one.rows.column("time") for one in findings)])
-        times = times[np.isfinite(times)]
+        """Put alarm changes on the run's clock; what has no instant there came by now."""
         for change in (change for one in findings for change in one.alarms):
-            part = 1.0
-            if times.size and times[-1] > times[0]:
-                part = min(max((change.time - times[0]) / (times[-1] - times[0]), 0.0), 1.0)
-            moment = self._until + float(part) * (until - self._until)
-            self._since[change.name] = moment
+            moment = change.host_time if isfinite(change.host_time) else until
             self._changes.append(replace(change, time=moment))
             self._changed = None
-
-    def _on_our_clock(self, alarms: tuple[AlarmView, ...]) -> tuple[AlarmView, ...]:
-        return tuple(replace(one, since=self._since.get(one.name, one.since)) for one in alarms)
 
     def snapshot(self, *, alarms: tuple[AlarmView, ...] = (), **state: object) -> Snapshot:
         """Freeze what stands now; `state` are further fields of `Snapshot`."""
@@ -188,7 +174,7 @@ class History:
             mode=self._mode,
             rows=self._rows.view(),
             stations=self._frozen,
-            alarms=self._on_our_clock(alarms),
+            alarms=alarms,
             changes=self._changed,
             serial=self._serial,
             **state,  # type: ignore[arg-type]  # the caller names fields of Snapshot; a wrong name raises

@@ -78,6 +78,7 @@ class Drop(Plain):
             return Batch.none()
         rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, readings.depth
+        rows[ROW["host_time"]] = readings.host_time
         rows[ROW["passing"]], rows[ROW["direction"]] = 0, 1
         rows[ROW["measured_east"]] = readings.column("east")
         rows[ROW["measured_north"]] = readings.column("north")

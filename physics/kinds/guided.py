@@ -121,6 +121,7 @@ class Guided:
         depth = readings.depth
         rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
+        rows[ROW["host_time"]] = readings.host_time
         rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
         rests = self._rests(readings, slopes)
         ridden, leaning = self._plumb.ride(readings.time, depth, rows[ROW["speed"]], lag)

@@ -148,6 +148,7 @@ class Hung(Plain):
         depth = readings.depth
         speed = np.nan_to_num(self._speed.update(readings.time, depth)[0])
         rows[ROW["time"]], rows[ROW["depth"]], rows[ROW["speed"]] = readings.time, depth, speed
+        rows[ROW["host_time"]] = readings.host_time
         rows[ROW["passing"]], rows[ROW["direction"]] = 0, np.where(speed < -_RUNNING, -1, 1)
         rows[ROW["measured_east"]], rows[ROW["measured_north"]] = offsets
         running = np.where(np.abs(speed) > _RUNNING, speed, 0.0)

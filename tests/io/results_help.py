@@ -53,8 +53,23 @@ RESULT = Result(
     frames=400,
     stations=STATIONS,
     alarms=(
-        AlarmChange(time=3.5, depth=30.1, name="action limit", old="normal", new="active", message="26.2 mm"),
-        AlarmChange(time=4.0, depth=float("nan"), name="feed silent", old="active", new="acknowledged"),
+        AlarmChange(
+            time=1003.5,
+            depth=30.1,
+            name="action limit",
+            old="normal",
+            new="active",
+            message="26.2 mm",
+            host_time=3.5,
+        ),
+        AlarmChange(
+            time=1004.0,
+            depth=float("nan"),
+            name="feed silent",
+            old="active",
+            new="acknowledged",
+            host_time=4.0,
+        ),
     ),
     closure=Closure(depth=20.0, east=-0.003, north=0.0, expected_east=-0.0025, expected_north=0.0),
     rest_point=RestPoint(

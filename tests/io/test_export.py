@@ -108,7 +108,8 @@ def test_json_has_the_agreed_shape_with_null_for_absent() -> None:
     assert table["stations"][2]["measured_north_mm"] is None
     assert table["stations"][1]["residual_east_mm"] == 7.1234
     assert table["alarms"][1] == {
-        "time_s": 4.0,
+        "time_s": 1004.0,
+        "host_time_s": 4.0,
         "depth_m": None,
         "name": "feed silent",
         "from": "active",

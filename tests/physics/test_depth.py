@@ -109,7 +109,7 @@ def test_a_jump_that_lasts_is_told_once_with_its_ends(size):
     assert spikes == 0
     assert kept.size == len(readings)
     (jump,) = jumps
-    assert jump == pytest.approx((30.0, 59.9, 60.0 + size))
+    assert jump == pytest.approx((30.0, 59.9, 60.0 + size, 30.0))
 
 
 @pytest.mark.parametrize("speed", [0.05, 2.0, 18.0])

@@ -127,6 +127,7 @@ def make_rows(count: int) -> Rows:
                 1e-3 + 4e-3 * depth / 300.0,
                 still + WARNING,
                 still + ACTION,
+                time,
             ]
         )
     )

@@ -112,14 +112,10 @@ def test_alarm_that_waits_for_an_answer_comes_before_one_that_does_not(
     assert in_order([seen, waiting, newer]) == [newer, waiting, seen]
 
 
-def test_alarm_is_dated_on_the_clock_that_the_screen_shows(
-    rows: MakeRows, alarm: Callable[..., AlarmView]
-) -> None:
+def test_alarm_is_dated_on_the_clock_that_the_screen_shows(rows: MakeRows) -> None:
     """An instrument clock that runs four times as fast and began elsewhere does not show in the alarm list."""
     history = History("live")
-    block = rows(100).data.copy()
-    block[0] = 5000.0 + 4.0 * np.linspace(0.0, 10.0, 100)
-    change = AlarmChange(time=5010.0, depth=3.0, name="warning limit", old="normal", new="active")
-    history.add([Findings(rows=Rows(block), alarms=(change,))], until=10.0)
-    (shown,) = history.snapshot(alarms=(alarm(since=5010.0),)).alarms
-    assert shown.since == pytest.approx(2.5)
+    told = {"depth": 3.0, "name": "warning limit", "old": "normal", "new": "active"}
+    changes = (AlarmChange(time=5010.0, host_time=2.5, **told), AlarmChange(time=5020.0, **told))
+    history.add([Findings(rows=rows(100), alarms=changes)], until=10.0)
+    assert [one.time for one in history.snapshot().changes] == [2.5, 10.0]

@@ -247,6 +247,22 @@ def _heading(found: "Reduction") -> str:
     return f"{name}: {found.kind} run; offsets in mm from {reference}; u is the standard uncertainty of the residual"
 
 
+def _alarms(found: "Reduction") -> list[str]:
+    """Return the changes of alarms, and by whose clock they are told."""
+    changes = found.result.alarms
+    if not changes:
+        return []
+    if found.is_log:
+        whose = "by the clock of the machine that recorded, from the start of the run"
+    else:
+        whose = "as the lines of the capture state it" if found.own_clock else "by the interval between lines"
+    return [f"time of alarms: {whose}"] + [
+        f"alarm {words.clock(one.host_time if found.is_log else one.time)} {one.name}: {one.old} -> {one.new}; "
+        + one.message
+        for one in changes
+    ]
+
+
 def _footing(found: "Reduction", shape: dict[str, Any]) -> list[str]:
     """Return what stands below the table of stations."""
     faults = ", ".join(f"{name}: {count}" for name, count in sorted(found.faults.items()))
@@ -263,10 +279,7 @@ def _footing(found: "Reduction", shape: dict[str, Any]) -> list[str]:
         )
     if rest := found.result.rest_point:
         lines.append(words.swing(rest))
-    lines += [
-        f"alarm {words.clock(one.time)} {one.name}: {one.old} -> {one.new}; {one.message}"
-        for one in found.result.alarms
-    ]
+    lines += _alarms(found)
     lines += [f"note: {one}" for one in (found.standing.notes if found.standing else ())]
     lines += [f"not as recorded: {one.key} {one.recorded} -> {one.used}" for one in found.differences]
     if found.verification is not None:
