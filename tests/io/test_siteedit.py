@@ -46,7 +46,18 @@ columns = ["depth_m", "tilt_a_deg", "tilt_b_deg"] # in this order
 url = "socket://10.0.0.7:4001"   # the winch
 columns = ["depth_m"]
 """
-KEYS = [joined(one.section, 0 if one.section == "link" else None, one.name) for one in sitekeys.all_keys()]
+
+
+def _path(one: sitekeys.Key) -> str:
+    return joined(one.section, 0 if one.section == "link" else None, one.name)
+
+
+KEYS = [_path(one) for one in sitekeys.all_keys()]
+WITH_DEFAULT = [
+    (_path(one), one.default)
+    for one in sitekeys.all_keys()
+    if not one.required and one.default not in (None, "", [], ())
+]
 
 
 @pytest.fixture
@@ -245,17 +256,11 @@ def test_link_taken_over_writes_only_what_is_not_by_default() -> None:
     assert "form" not in draft.text
 
 
-@pytest.mark.parametrize("path", KEYS)
-def test_default_as_typed_is_understood_as_itself(path: str) -> None:
-    """For every key the default shown can be typed in, and then the file says the same as without it."""
-    section, _, name = path.replace("[0]", "").partition(".")
-    key = sitekeys.key(f"{section}.{name}")
-    assert key is not None
-    if key.default in (None, "", [], ()) or key.required:
-        return
-    text = typed(path, key.default)
-    plain = list(key.default) if isinstance(key.default, tuple) else key.default
-    assert understood(path, text) == plain
+@pytest.mark.parametrize(("path", "default"), WITH_DEFAULT)
+def test_default_as_typed_is_understood_as_itself(path: str, default: object) -> None:
+    """For every key with a default, what is shown of it can be typed in, and then the file says the same."""
+    plain = list(default) if isinstance(default, tuple) else default
+    assert understood(path, typed(path, default)) == plain
 
 
 @pytest.mark.parametrize(
