@@ -230,6 +230,15 @@ CHECKS: tuple[PublishedCheck, ...] = (
         compute=partial(_eastward_mm, 100.0, 0.0),
     ),
     PublishedCheck(
+        name="predicted deflection in the Three Brothers shaft, 1831, 158.5 m at 50.9°",
+        source="Reich (1831); the prediction as told by Arago and Wolf (28.3 mm were observed)",
+        mark="published",
+        unit="mm",
+        expected=27.6,
+        tolerance=0.05,
+        compute=partial(_eastward_mm, 158.5, 50.9),
+    ),
+    PublishedCheck(
         name="thrown up and back: westward, in eastward falls from the same height",
         source="Goldstein, Classical Mechanics, chapter 4: 4/3 ω cos φ √(8h³/g)",
         mark="published",
