@@ -60,6 +60,9 @@ class Dashboard(App[int]):
     CSS_PATH = "app.tcss"
     TITLE = "eastfall"
     ENABLE_COMMAND_PALETTE = False
+    # For dialogs and pages; screens with pictures have their own.
+    VERTICAL_BREAKPOINTS = [(0, "-tiny"), (12, "-roomy")]  # noqa: RUF012
+    HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (40, "-broad")]  # noqa: RUF012
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("all"))
 
     def __init__(

@@ -11,10 +11,12 @@ from eastfall.physics.verdict import horizontal
 from eastfall.tui import words
 from eastfall.tui.roles import Role
 from eastfall.tui.units import METRIC, Units
-from eastfall.tui.widgets.table import fixed
+from eastfall.tui.widgets.table import fitting, fixed
 
 ORDERS = ("depth", "difference")
 _WIDTHS = (7, 13, 13, 14, 6, 6, 5)
+_RANKS = (0, 6, 5, 4, 2, 3, 1)
+"""What stays the longest in a narrow window: depth, whether it moved, how far."""
 _MOST_PAIRS = 45
 _MOVED = {"yes": "MOVED", "no": "no", "unknown": "?"}
 
@@ -51,21 +53,21 @@ def expanded(one: DepthDifference) -> float:
     return COVERAGE_FACTOR * float(horizontal(one.east, one.north, one.u_east, one.u_north)[1])
 
 
-def head(units: Units = METRIC) -> str:
-    """Return the line over the table."""
+def head(units: Units = METRIC, room: int = 72) -> str:
+    """Return the line over the table, as far as there is room."""
     names = (
         units.depth_head,
-        "first E N",
-        "second E N",
-        "difference E N",
+        f"first E N {units.short}",
+        f"second E N {units.short}",
+        f"change E N {units.short}",
         units.short,
         f"± {units.short}",
         "moved",
     )
-    return fixed(tuple(zip(names, _WIDTHS, strict=True)))
+    return fixed(names, _WIDTHS, fitting(_WIDTHS, _RANKS, room))
 
 
-def row(one: DepthDifference, units: Units = METRIC) -> tuple[str, Role]:
+def row(one: DepthDifference, units: Units = METRIC, room: int = 72) -> tuple[str, Role]:
     """Return one depth as a line of the table."""
     cells = (
         units.depth(one.depth),
@@ -76,7 +78,8 @@ def row(one: DepthDifference, units: Units = METRIC) -> tuple[str, Role]:
         units.offset(expanded(one)),
         _MOVED[one.moved],
     )
-    return fixed(tuple(zip(cells, _WIDTHS, strict=True))), Role.ACTION if one.moved == "yes" else Role.TEXT
+    shown = fitting(_WIDTHS, _RANKS, room)
+    return fixed(cells, _WIDTHS, shown), Role.ACTION if one.moved == "yes" else Role.TEXT
 
 
 def chosen(one: Comparison, order: str, *, only_moved: bool) -> list[DepthDifference]:

@@ -44,6 +44,10 @@ _WATCH = (
     Key("mark", "x", "mark", "mark", "Drop run: type in where a body landed"),
     Key("arm", "g", "arm", "", "Drop run: declare the shaft clear and arm"),
     Key("planner", "p", "planner", "plan", "Drop run: plan the release: wall, spread, best point"),
+    Key("steer", "d", "steer", "steer", "Direction and distance in large figures, with a sound"),
+    Key("stations", "s", "stations", "stations", "The table of stations"),
+    Key("alarms", "l", "alarms", "alarms", "The list of alarms, each whole, with its history; shelve one"),
+    Key("layout", "v", "layout", "view", "Change the view: all, depth, plan, time"),
     Key(
         "up",
         "up,k",
@@ -56,18 +60,15 @@ _WATCH = (
     Key("page-up", "pageup", "look(-10)", "", "Ten stations up or down", mate="page-down"),
     Key("page-down", "pagedown", "look(10)", "", "Ten stations down"),
     Key("follow", "f,end", "follow", "follow", "Follow the newest reading again"),
+    _fixed("now", "escape", "now", "", "Back from looking back, or from a held picture", "watch"),
     Key(
         "closer", "plus,equals_sign", "zoom(0.5)", "zoom", "Half or twice as much depth in view", mate="wider"
     ),
     Key("wider", "minus", "zoom(2)", "", "Twice as much depth in view"),
     Key("whole", "0", "whole", "", "The whole shaft in view"),
-    Key("layout", "v", "layout", "view", "Change the view: all, depth, plan, time"),
     Key("residual", "r", "residual", "residual", "Draw the residual, or measured and expected"),
     Key("wall", "w", "wall", "wall", "Plan at the scale of the wall, or close by"),
     Key("extras", "b", "extras", "", "Show or hide where a bob would hang and a dropped body would be"),
-    Key("stations", "s", "stations", "stations", "The table of stations"),
-    Key("alarms", "l", "alarms", "alarms", "The list of alarms, each whole, with its history; shelve one"),
-    Key("steer", "d", "steer", "steer", "Direction and distance in large figures, with a sound"),
     Key("passes", "c", "passes", "passes", "Compare the passes of this run by depth"),
     Key("whatif", "i", "what_if", "what if", "Replay: other settings, and what follows from them"),
     Key("who", "u", "who", "", "Your name, as it goes into the record"),
@@ -94,7 +95,7 @@ _EVERYWHERE = (
     Key("help", "question_mark,f1,h", "keys", "help", "This page", "all"),
     Key("settings", "f2", "settings", "", "Settings: units, glyphs, sound, colours", "all"),
     Key("quit", "q,ctrl+c", "leave", "quit", "Leave; a recording is asked about first", "all"),
-    Key("close", "escape,q", "close", "close", "Back to the screen before", "page"),
+    Key("close", "escape,q", "close", "back", "Back to the screen before", "page"),
 )
 _LISTS = (
     _fixed("up", "up,k", "move(-1)", "", "The line above or below", "list", mate="down"),
@@ -174,6 +175,7 @@ _BEFORE_A_RUN = (
     _fixed("down", "down", "", "", "", "start"),
     _fixed("open", "enter", "", "choose", "Do what the line under the cursor says", "start"),
     Key("edit", "e", "edit", "edit", "Edit the site file under the cursor", "start"),
+    _fixed("help", "f1", "", "help", "This page", "form"),
     Key("up", "up", "move(-1)", "key", "The key above or below", "form", mate="down"),
     Key("down", "down", "move(1)", "", "The key below", "form"),
     Key(
@@ -195,7 +197,8 @@ _BEFORE_A_RUN = (
     Key("add", "f5", "add_link", "", "Add a link", "form"),
     Key("remove", "f8", "remove_link", "", "Take the link in view out; asks first", "form"),
     Key("save-as", "f9", "save_as", "", "Save under another name", "form"),
-    Key("close", "escape", "close", "leave", "Leave the form; asks when something is not saved", "form"),
+    Key("close", "escape", "close", "back", "Leave the form; asks when something is not saved", "form"),
+    _fixed("help", "f1", "", "help", "This page", "trial"),
     Key("speed", "plus,equals_sign", "speed(1)", "speed", "Another serial speed", "trial", mate="speed-down"),
     Key("speed-down", "minus", "speed(-1)", "", "A lower serial speed", "trial"),
     Key("up", "up", "move(-1)", "choose", "The port or the speed above or below", "trial", mate="down"),
@@ -246,7 +249,7 @@ TOGETHER = (
     ("trial", "all"),
 )
 """Places whose keys hold at the same time."""
-STAYS = {"all.quit": "ctrl+c", "page.close": "escape"}
-"""Keys that no setting takes away: there is always a way out."""
+STAYS = {"all.quit": "ctrl+c", "page.close": "escape", "all.help": "f1"}
+"""Keys that no setting takes away: there is always a way out, and a page that tells all others."""
 TYPING = (*"0123456789", "full_stop", "comma", "minus", "backspace", "delete")
 """Keys that type a number where inputs are changed."""

@@ -36,7 +36,7 @@ def demo_snapshot(site: "SiteFile", at: float) -> tuple[Pipeline, Snapshot]:
     """
     from eastfall.io.arrivals import LineBlock  # noqa: PLC0415 (a few lines of the edge, used here alone)
 
-    pipeline, history = Pipeline(site), History("live")
+    pipeline, history = Pipeline(site, armed=True), History("live")
     lines = emulator_for(site, options_of(site.links[0].url)).lines(0, at)
     block = LineBlock(
         data=b"".join(line for _, line in lines).replace(b"\r\n", b"\n"),

@@ -12,6 +12,7 @@ from eastfall.io.safetext import safe
 from eastfall.io.shelf import RunCard, list_runs, log_files
 from eastfall.tui.roles import Role
 from eastfall.tui.units import METRIC, Units
+from eastfall.tui.widgets.table import fitting
 
 ORDERS = ("date", "site", "verdict", "depth", "state")
 FILTERS = ("all", "over", "undecided", "not intact")
@@ -82,27 +83,45 @@ def _passes(one: RunCard, only: str) -> bool:
     return only in ("all", one.verdict)
 
 
-def head(units: Units = METRIC) -> str:
-    """Return the line over the list."""
-    return (
-        f"  {'started, UTC':<17}{'site':<{_SITE}} {'run':<7}{units.depth_head:>8} {'verdict':<10}{'record'}"
-    )
+_WIDTHS = (1, 16, _SITE, 6, 7, 9, 9)
+_RANKS = (0, 3, 0, 5, 4, 1, 2)
+"""What stays the longest in a narrow window: the site, its verdict, the state of the record."""
 
 
-def line(one: RunCard, *, picked: bool, units: Units = METRIC) -> tuple[str, Role]:
+def head(units: Units = METRIC, room: int = 80) -> str:
+    """Return the line over the list, as far as there is room."""
+    return _line(("", "started, UTC", "site", "run", units.depth_head, "verdict", "record"), room)
+
+
+def _line(cells: Sequence[str], room: int) -> str:
+    site = max(8, min(_SITE, room - 2))
+    widths = [site if width == _SITE else width for width in _WIDTHS]
+    shown = fitting(widths, _RANKS, room)
+    set_right = cells[_DEPTH].rjust(widths[_DEPTH])
+    told = [set_right if at == _DEPTH else cells[at][: widths[at]].ljust(widths[at]) for at in shown]
+    return " ".join(told).rstrip()
+
+
+_DEPTH = 4
+
+
+def line(one: RunCard, *, picked: bool, units: Units = METRIC, room: int = 80) -> tuple[str, Role]:
     """Return a card as a line; a file that cannot be read tells why."""
     mark = "*" if picked else " "
     if one.error:
         why = one.error.removeprefix(safe(str(one.path), 300)).lstrip(",: ")
         return f"{mark} {safe(one.path.name, 40)}: {why}", Role.WARNING
-    started = f"{one.started_at:%Y-%m-%d %H:%M}" if one.started_at else ""
-    depth = units.depth(one.depth) if one.depth is not None else ""
-    site = (one.site or one.path.name)[: _SITE - 1]
-    text = (
-        f"{mark} {started:<17}{site:<{_SITE}} {one.kind:<7}{depth:>8} {one.verdict.upper():<10}"
-        f"{one.state if one.state == 'intact' else one.state.upper()}"
+    cells = (
+        mark,
+        f"{one.started_at:%Y-%m-%d %H:%M}" if one.started_at else "",
+        one.site or one.path.name,
+        one.kind,
+        units.depth(one.depth) if one.depth is not None else "",
+        one.verdict.upper(),
+        one.state if one.state == "intact" else one.state.upper(),
     )
-    return text, Role.ACTION if one.state == "changed" else _ROLES.get(one.verdict, Role.TEXT)
+    role = Role.ACTION if one.state == "changed" else _ROLES.get(one.verdict, Role.TEXT)
+    return _line(cells, room), role
 
 
 def beside(log: Path, suffix: str) -> str:

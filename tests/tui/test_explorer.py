@@ -375,7 +375,7 @@ async def test_two_predictions_stand_side_by_side_with_their_differences() -> No
         text = await settled(pilot, "x")
         assert [float(one) for one in bottom(text)[1:5:2]] == [b, a]
         assert "B has latitude 0 deg" in text
-        assert "A alone" in await settled(pilot, "n")
+        assert "A, no B kept" in await settled(pilot, "n")
 
 
 def bottom(text: str) -> list[str]:

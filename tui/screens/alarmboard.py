@@ -74,7 +74,7 @@ class AlarmsScreen(FollowingScreen[None]):
         """Show a newer snapshot; the table is filled anew only when something changed."""
         self._snapshot = snapshot
         waiting = sum(one.state in words.WANTS_ANSWER for one in snapshot.alarms)
-        title = f"alarms: {len(snapshot.alarms)} not normal, {waiting} to acknowledge"
+        title = f"alarms: {len(snapshot.alarms)} open, {waiting} to acknowledge"
         self.query_one("#alarms-title", TextLine).show((title, Role.STRONG))
         units: Units = getattr(self.app, "units", METRIC)
         width = max(self.size.width - _BAR, _INDENT + 1)
@@ -122,8 +122,9 @@ class AlarmsScreen(FollowingScreen[None]):
             if text is not None:
                 shelve(name, *read_shelving(text))
 
-        question = f"Put aside: {name}. For how many minutes, and why?"
-        self.app.push_screen(AskText(question, "as: 10 fan being mended", check=read_shelving), asked)
+        question = f"Shelve {name}: for how many minutes, and why?"
+        hint = "as: 10 fan being mended"
+        self.app.push_screen(AskText(question, hint, does="shelves it", check=read_shelving), asked)
 
     def action_close(self) -> None:
         """Go back."""

@@ -88,7 +88,10 @@ class CompareScreen(PaintedScreen[None]):
             self.query_one(f"#{name}", TextLine).fit(_MOST)
         self.query_one(Shift).show(one)
         rows = differences.chosen(one, self._order, only_moved=self._only_moved)
-        self.query_one(LongTable).show(len(rows), lambda i: differences.row(rows[i], self._units))
+        table, room = self.query_one(LongTable), min(self.size.width - 1, 72)
+        table.head = differences.head(self._units, room)
+        table.empty = "nothing moved beyond its uncertainty" if self._only_moved else ""
+        table.show(len(rows), lambda i: differences.row(rows[i], self._units, room))
 
     @property
     def _both(self) -> bool:
@@ -101,7 +104,6 @@ class CompareScreen(PaintedScreen[None]):
     def reckon_in(self, units: Units) -> None:
         """Show lengths in other units."""
         self._units = units
-        self.query_one(LongTable).head = differences.head(units)
         self.paint()
 
     def action_other(self, by: int) -> None:

@@ -7,7 +7,6 @@ from typing import TYPE_CHECKING
 from eastfall.io.errors import SiteFileError
 from eastfall.io.safetext import safe
 from eastfall.io.siteedit import take_link
-from eastfall.tui.screens.dialogs import taken
 from eastfall.tui.screens.formdialogs import AskName
 from eastfall.tui.screens.porttrial import PortTrial
 from eastfall.tui.screens.siteform import SiteForm
@@ -50,7 +49,7 @@ def ask_site(app: "App[int]", folder: Path, newest: str, ports: Ports, after: Af
         if name:
             edit_site(app, path_of(name), ports, after)
 
-    app.push_screen(AskName("Edit which site file?", taken(app, "opens it"), newest, path_of), named)
+    app.push_screen(AskName("Edit which site file?", "opens it", newest, path_of), named)
 
 
 def try_port(app: "App[int]", folder: Path, ports: Ports, after: After) -> None:

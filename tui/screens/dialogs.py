@@ -5,7 +5,7 @@ from typing import ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
-from textual.containers import Vertical
+from textual.containers import VerticalScroll
 from textual.screen import ModalScreen
 from textual.visual import VisualType
 from textual.widgets import Input, Static
@@ -14,6 +14,7 @@ from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
 from eastfall.tui.glyphs import BRAILLE, Glyphs
 from eastfall.tui.letters import in_ascii
+from eastfall.tui.widgets.table import fit_bar
 
 
 class Plain(Static):
@@ -44,6 +45,17 @@ def plain(text: str, classes: str = "") -> Plain:
     return Plain(text, classes)
 
 
+class Page(VerticalScroll):
+    """The frame of a dialog; what is too long for the window is scrolled by keys."""
+
+    def __init__(self) -> None:
+        super().__init__(classes="dialog")
+
+    def on_mount(self) -> None:
+        """Fit the scroll bar to the terminal."""
+        fit_bar(self)
+
+
 class Confirm(ModalScreen[bool]):
     """A question with yes and no; anything but the one key is no."""
 
@@ -55,11 +67,11 @@ class Confirm(ModalScreen[bool]):
 
     def compose(self) -> ComposeResult:
         """Show question, consequence and the two keys."""
-        with Vertical(classes="dialog"):
+        with Page():
             yield plain(self._question, "title")
-            yield plain(self._consequence)
             told = keys.keymap_of(self.app).line("confirm")
             yield plain("        ".join(f"{key}  {name}" for key, name in told))
+            yield plain(self._consequence)
 
     def action_answer(self, answer: bool) -> None:
         """Close with the answer."""
@@ -67,33 +79,52 @@ class Confirm(ModalScreen[bool]):
 
 
 class AskText(ModalScreen[str | None]):
-    """One line to type; enter takes it when it is understood, escape leaves it."""
+    """One line to type; enter takes it when it is understood, escape leaves it.
+
+    Parameters
+    ----------
+    question, hint : str
+        What is asked for, and how it is typed.
+    does : str
+        What taking it comes to.
+    check : callable, optional
+        Refuses by a ValueError.
+    warning : str
+        Stands above the line.
+    value : str
+        To begin with.
+    """
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("dialog"))
 
     def __init__(
         self,
         question: str,
-        hint: str,
+        hint: str = "",
         *,
+        does: str = "takes it",
         check: Callable[[str], object] | None = None,
         warning: str = "",
         value: str = "",
     ) -> None:
         super().__init__()
         self._question, self._hint, self._check, self._warning = question, hint, check, warning
-        self._value = value
+        self._value, self._does = value, does
 
     def compose(self) -> ComposeResult:
         """Show the question over the line to type in."""
-        with Vertical(classes="dialog"):
+        with Page() as page:
+            page.can_focus = False  # the line that is typed in has the keyboard
             yield plain(self._question, "title")
             if self._warning:
                 yield plain(self._warning)
             field = Input(self._value, id="field", select_on_focus=False)
             field.cursor_blink = False
             yield field
-            yield plain(self._hint)
+            if self._hint:
+                yield plain(self._hint)
+            keymap = keys.keymap_of(self.app)
+            yield plain(f"{keymap['dialog.take']} {self._does}, {keymap['dialog.leave']} does not")
             complaint = plain("", "complaint")
             complaint.display = False
             yield complaint
@@ -119,12 +150,6 @@ class AskText(ModalScreen[str | None]):
         self.dismiss(None)
 
 
-def taken(app: object, does: str) -> str:
-    """Return the hint of a line to type in: which key takes it, and which leaves it."""
-    keymap = keys.keymap_of(app)
-    return f"{keymap['dialog.take']} {does}, {keymap['dialog.leave']} does not"
-
-
 def named(text: str) -> str:
     """Return a person's name, or refuse an empty one.
 
@@ -141,12 +166,11 @@ def named(text: str) -> str:
 class ClearShaft(AskText):
     """Asks who declares the shaft clear before a drop run is armed."""
 
-    def __init__(self, app: object) -> None:
-        keymap = keys.keymap_of(app)
+    def __init__(self) -> None:
         super().__init__(
             "Is the shaft clear, from collar to bottom?",
-            f"Your name and {keymap['dialog.take']}: the shaft is clear, arm the run.   "
-            f"{keymap['dialog.leave']}: do not arm.",
+            "Type your name: it goes into the record as the one who declared it clear.",
+            does="declares the shaft clear and arms the run",
             check=named,
-            warning=f"{CAUTIONS[1]}\nYour name goes into the record as the one who declared it clear.",
+            warning=CAUTIONS[1],
         )

@@ -4,7 +4,7 @@ from typing import ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
-from textual.containers import Horizontal, Vertical
+from textual.containers import Horizontal
 from textual.screen import ModalScreen
 
 from eastfall.physics.settings import Assumptions
@@ -13,7 +13,7 @@ from eastfall.tui.dials import CONDITIONS
 from eastfall.tui.inputs import Inputs
 from eastfall.tui.outlook import Prospect
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import AskText, plain
+from eastfall.tui.screens.dialogs import AskText, Page, plain
 from eastfall.tui.screens.inputs import MOST, InputScreen, Lines, typing
 from eastfall.tui.typed import example_depths
 from eastfall.tui.units import METRIC, Units, lengths_in
@@ -107,11 +107,11 @@ class ExplorerScreen(InputScreen):
         numbers.show(tuple(lines))
 
     def _paint_lines(self, one: Prospect) -> None:
-        kept = "A, with B kept" if self.other is not None else "A alone"
+        kept = "A, with B kept" if self.other is not None else "A, no B kept"
         self.query_one("#title", TextLine).show(
             (f"expect  {outlook.title(one)}", Role.STRONG),
             (f"  {self._site_name}", Role.TEXT),
-            right=((f"{kept}  {self.inputs.units.short}", Role.STRONG),),
+            right=((f"{kept}  offsets in {self.inputs.units.short}", Role.STRONG),),
         )
         self.query_one("#answer", TextLine).show(
             (outlook.answer(one, self.inputs.units), Role.DIM if self.complaint else Role.STRONG)
@@ -158,11 +158,8 @@ class ExplorerScreen(InputScreen):
     def action_depths(self) -> None:
         """Ask for the depths of the table."""
         if self.one is not None:
-            leave = keys.keymap_of(self.app)["dialog.leave"]
             example = example_depths(self.one.deepest, self.inputs.units)
-            hint = (
-                f"{self.inputs.units.long}, as {example}; nothing: quarters of the shaft; {leave} leaves them"
-            )
+            hint = f"{self.inputs.units.long_name}, as {example}; nothing: quarters of the shaft"
             self.app.push_screen(AskText("Depths of the table", hint, check=self._read), self._asked)
 
     def _read(self, text: str) -> tuple[float, ...]:
@@ -200,7 +197,7 @@ class BudgetPage(ModalScreen[None]):
 
     def compose(self) -> ComposeResult:
         """Show the lines."""
-        with Vertical(classes="dialog"):
+        with Page():
             yield plain("Where the uncertainty of the expected offset comes from", "title")
             yield plain("\n".join(self._lines))
             back = f"{keys.keymap_of(self.app)['page.close']}  back"

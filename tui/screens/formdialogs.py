@@ -6,13 +6,12 @@ from typing import ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
-from textual.containers import Vertical
 from textual.screen import ModalScreen
 from textual.widgets import Input, Static, TextArea
 
 from eastfall.io.safetext import safe
 from eastfall.tui import keys
-from eastfall.tui.screens.dialogs import AskText, plain
+from eastfall.tui.screens.dialogs import AskText, Page, plain
 
 Check = Callable[[str], str]
 """From what is typed to what is wrong with it; empty when nothing is."""
@@ -47,7 +46,8 @@ class RowsDialog(ModalScreen[str | None]):
 
     def compose(self) -> ComposeResult:
         """Show the headings over the rows, and what is wrong beneath."""
-        with Vertical(classes="dialog"):
+        with Page() as page:
+            page.can_focus = False  # the rows that are typed have the keyboard
             yield plain(self._title, "title")
             yield plain("a line for each row:  " + "   ".join(self._headings))
             yield TextArea(self._text, tab_behavior="focus", show_line_numbers=False, id="rows")
@@ -87,8 +87,8 @@ class RowsDialog(ModalScreen[str | None]):
 class AskName(AskText):
     """Asks for the name of a file, with a proposal to change or take."""
 
-    def __init__(self, question: str, hint: str, proposal: str, check: Callable[[str], object]) -> None:
-        super().__init__(question, hint, check=check)
+    def __init__(self, question: str, does: str, proposal: str, check: Callable[[str], object]) -> None:
+        super().__init__(question, does=does, check=check)
         self._proposal = proposal
 
     def on_mount(self) -> None:

@@ -7,7 +7,6 @@ from typing import ClassVar
 from textual.app import ComposeResult
 from textual.binding import BindingType
 from textual.containers import VerticalScroll
-from textual.screen import Screen
 
 from eastfall.io.cautions import CAUTIONS
 from eastfall.tui import keys
@@ -49,6 +48,28 @@ Plan, north up
   x         rest point of a swing, in its 95 % ellipse"""
 
 
+_INPUTS = """Marks of the inputs
+  *  changed against the site file
+  !  out of its range: the line below says what is accepted"""
+_MARKS = {
+    "form": """Marks of the keys
+  *  given in the file; without a mark: the default
+  ?  required, and missing
+  !  wrong: the line at the bottom says why""",
+    "explorer": _INPUTS,
+    "planner": _INPUTS,
+    "whatif": _INPUTS,
+    "trial": """Marks of the lines
+  =  good
+  !  bad
+  -  not used
+  ~  waiting for the rest""",
+    "shelf": """Marks of the runs
+  *  picked to be compared""",
+}
+"""How to read what is on a screen that is no picture, by its place."""
+
+
 def reading(keymap: keys.Keymap, units: Units = METRIC) -> str:
     """Return how to read what is on the watch screen."""
     return _READING.format(steer=keymap["watch.steer"], long=units.long_name, short=units.short_name)
@@ -67,7 +88,7 @@ def key_table(
     return "\n".join(f"{key:<{width}}{what}" for key, what in told)
 
 
-class HelpScreen(Screen[None]):
+class HelpScreen(PaintedScreen[None]):
     """Keys and reading of one screen."""
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
@@ -79,7 +100,6 @@ class HelpScreen(Screen[None]):
     def compose(self) -> ComposeResult:
         """Show the keys, how to read the picture, and the cautions."""
         keymap = keys.keymap_of(self.app)
-        scroll = f"{keymap['list.up']} {keymap['list.down']}"
         table = key_table(
             keymap,
             *self._places,
@@ -89,13 +109,29 @@ class HelpScreen(Screen[None]):
             spelled=partial(shown_in, self.app),
         )
         with VerticalScroll(classes="page"):
-            yield plain(f"Keys   ({keymap['page.close']} goes back, {scroll} scroll)\n\n" + table)
-            yield plain("\n" + reading(keymap, getattr(self.app, "units", METRIC)))
+            yield plain("Keys\n\n" + table)
+            if told := self._about(keymap):
+                yield plain("\n" + told)
             yield plain("\nCautions\n\n" + "\n".join(CAUTIONS))
+        yield KeyLine(id="keys")
+
+    def _about(self, keymap: keys.Keymap) -> str:
+        """Return how to read what is on the screen that this page was opened over."""
+        for place in self._places:
+            if place in _MARKS:
+                return _MARKS[place]
+        return reading(keymap, getattr(self.app, "units", METRIC)) if "watch" in self._places else ""
 
     def on_mount(self) -> None:
-        """Fit the scroll bar to the terminal."""
-        fit_bar(self.query_one(VerticalScroll))
+        """Fit the scroll bar to the terminal, and tell the ways on and back."""
+        page = self.query_one(VerticalScroll)
+        fit_bar(page)
+        page.focus()
+        keymap = keys.keymap_of(self.app)
+        scroll = (
+            f"{keymap['list.up']} {keymap['list.down']} {keymap['list.page-up']} {keymap['list.page-down']}"
+        )
+        self.query_one(KeyLine).show(*keymap.line("page"), (scroll, "scroll"))
 
     def action_close(self) -> None:
         """Go back."""

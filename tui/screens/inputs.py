@@ -11,6 +11,7 @@ from eastfall.tui.inputs import Inputs
 from eastfall.tui.newest import Newest
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
+from eastfall.tui.screens.dialogs import Confirm
 from eastfall.tui.units import Units
 from eastfall.tui.widgets.cells import CellWidget, PaintedScreen
 from eastfall.tui.widgets.dials import DialList
@@ -140,6 +141,17 @@ class InputScreen(PaintedScreen[None]):
         self.change(self.inputs.restored(self.dial))
 
     def action_restore_all(self) -> None:
+        """Take all inputs as in the site file; what was changed in several is asked about first."""
+        if len(self.inputs.typed) > 1:
+            count = len(self.inputs.typed)
+            question = Confirm(
+                "All inputs as in the site file?", f"What was changed in {count} of them is lost."
+            )
+            self.app.push_screen(question, lambda sure: self.restore_all() if sure else None)
+        else:
+            self.restore_all()
+
+    def restore_all(self) -> None:
         """Take all inputs as in the site file."""
         self._fresh = True
         self.change(self.inputs.restored())

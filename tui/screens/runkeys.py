@@ -11,7 +11,7 @@ from eastfall.tui.keys import keymap_of
 from eastfall.tui.people import LONGEST, user_name
 from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.screens.alarmboard import AlarmsScreen
-from eastfall.tui.screens.dialogs import AskText, ClearShaft, named, taken
+from eastfall.tui.screens.dialogs import AskText, ClearShaft, named
 from eastfall.tui.screens.start import Choice
 from eastfall.tui.screens.stations import StationsScreen
 from eastfall.tui.screens.steer import SteerScreen
@@ -102,18 +102,15 @@ class RunScreen(PaintedScreen[Choice | None]):
                 self.who = safe(text.strip(), LONGEST)
                 then(self.who)
 
-        take = keymap_of(self.app)["dialog.take"]
-        hint = f"{take}: it goes into the record with all that you acknowledge, note and put aside"
+        hint = "It goes into the record with all that you acknowledge, note and shelve."
         self.app.push_screen(AskText("Your name", hint, check=named, value=self.who), asked)
 
     def action_note(self) -> None:
         """Ask for a note and write it into the record."""
         if isinstance(self.feed, LiveFeed):
             change = keymap_of(self.app)["watch.who"]
-            hint = taken(self.app, "writes it") + (
-                f"; by {self.who} ({change} changes it)" if self.who else ""
-            )
-            self.app.push_screen(AskText("Note for the record", hint), self._noted)
+            hint = f"by {self.who} ({change} changes it)" if self.who else ""
+            self.app.push_screen(AskText("Note for the record", hint, does="writes it"), self._noted)
 
     def _noted(self, text: str | None) -> None:
         if text and text.strip():
@@ -128,11 +125,9 @@ class RunScreen(PaintedScreen[Choice | None]):
             self.action_arm()
             return
         units, example = self.session.units, typed.example_mark(self._deepest, self.session.units)
-        hint = (
-            f"depth in {units.long_name}, east and north in {units.short_name}, as {example}; "
-            f"{taken(self.app, 'records it')}"
-        )
-        self.app.push_screen(AskText("Where did the body land?", hint, check=self._mark), self._marked)
+        hint = f"depth in {units.long_name}, east and north in {units.short_name}, as {example}"
+        dialog = AskText("Where did the body land?", hint, does="records it", check=self._mark)
+        self.app.push_screen(dialog, self._marked)
 
     @property
     def _deepest(self) -> float:
@@ -150,7 +145,7 @@ class RunScreen(PaintedScreen[Choice | None]):
     def action_arm(self) -> None:
         """Ask whether the shaft is clear, and arm the run."""
         if isinstance(self.feed, LiveFeed) and not self.latest.armed:
-            self.app.push_screen(ClearShaft(self.app), self._armed)
+            self.app.push_screen(ClearShaft(), self._armed)
 
     def _armed(self, who: str | None) -> None:
         if who:
@@ -213,7 +208,7 @@ class RunScreen(PaintedScreen[Choice | None]):
         hint = f"depth: {self._example()}" + (
             "     time: 12:30 or 90 s" if self.session.mode == "replay" else ""
         )
-        self.app.push_screen(AskText("Jump to", hint, check=self._moment), self._jumped)
+        self.app.push_screen(AskText("Jump to", hint, does="goes there", check=self._moment), self._jumped)
 
     def _example(self) -> str:
         units = self.session.units

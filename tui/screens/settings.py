@@ -140,11 +140,7 @@ class SettingsScreen(PaintedScreen[None]):
         if one.name == "keys":
             self.app.push_screen(KeyNames())
             return
-        keymap = keys.keymap_of(self.app)
-        hint = (
-            f"{keymap['dialog.take']} takes it, empty for eastfall-runs where the program is started, "
-            f"{keymap['dialog.leave']} leaves it"
-        )
+        hint = "empty: eastfall-runs, where the program is started"
         self.app.push_screen(AskText("Folder for new records", hint), lambda text: self._folder(one, text))
 
     def _folder(self, one: Setting, text: str | None) -> None:

@@ -118,7 +118,10 @@ class ShelfScreen(PaintedScreen[Path | None]):
     def reckon_in(self, units: Units) -> None:
         """Show lengths in other units."""
         self._units = units
-        self.query_one(LongTable).head = shelf.head(units)
+        self.paint()
+
+    def on_resize(self) -> None:
+        """Take the columns that fit."""
         self.paint()
 
     def paint(self) -> None:
@@ -127,11 +130,13 @@ class ShelfScreen(PaintedScreen[Path | None]):
         title = f"runs: {len(self._rows)} of {len(self.cards)} ({self._only}), by {self._order}"
         busy = ((f"working: {self._busy}", Role.WARNING),) if self._busy else ()
         self.query_one("#shelf-title", TextLine).show((title, Role.STRONG), right=busy)
-        rows = self._rows
+        rows, room = self._rows, self.size.width - 1
         table = self.query_one(LongTable)
+        table.head = shelf.head(self._units, room)
+        table.empty = f"no run is {self._only}" if self.cards else ""
         table.show(
             len(rows),
-            lambda i: shelf.line(rows[i], picked=rows[i].path == self._picked, units=self._units),
+            lambda i: shelf.line(rows[i], picked=rows[i].path == self._picked, units=self._units, room=room),
         )
         table.follows = False
         key = keys.keymap_of(self.app)["shelf.pick"]
@@ -199,12 +204,9 @@ class ShelfScreen(PaintedScreen[Path | None]):
                 self._begin("writing", partial(write, log, shelf.new_file(text, suffixes)))
 
         check = partial(shelf.new_file, suffixes=suffixes)
-        keymap = keys.keymap_of(self.app)
-        hint = (
-            f"{keymap['dialog.take']} writes it, never over another file; {keymap['dialog.leave']} does not"
-        )
+        hint = "Nothing is ever written over."
         value = shelf.beside(log, suffixes[0])
-        self.app.push_screen(AskText(question, hint, check=check, value=value), asked)
+        self.app.push_screen(AskText(question, hint, does="writes it", check=check, value=value), asked)
 
     def _begin(self, what: str, work: Callable[[], object]) -> None:
         self._busy = what

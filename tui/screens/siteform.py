@@ -21,7 +21,7 @@ from eastfall.io.sitefile import LinkSettings, SiteFile, parse_site
 from eastfall.io.sitevalues import headings, key_of, shape, typed
 from eastfall.tui import formpages, keys
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import Confirm, taken
+from eastfall.tui.screens.dialogs import Confirm
 from eastfall.tui.screens.formdialogs import AskName, RowsDialog, free_name
 from eastfall.tui.screens.porttrial import PortTrial
 from eastfall.tui.widgets.cells import PaintedScreen
@@ -354,7 +354,7 @@ class SiteForm(PaintedScreen[Path | None]):
         self._take()
         proposal = self._path.name if self._path else formpages.file_name(self.draft)
         self.app.push_screen(
-            AskName("Save the site file as", taken(self.app, "saves it"), safe(proposal, 60), self._free),
+            AskName("Save the site file as", "saves it", safe(proposal, 60), self._free),
             lambda name: self._write(self._free(name), over=False) if name else None,
         )
 

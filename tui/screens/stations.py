@@ -4,29 +4,30 @@ from typing import TYPE_CHECKING, ClassVar
 
 from textual.app import ComposeResult
 from textual.binding import BindingType
-from textual.containers import Vertical
 from textual.screen import ModalScreen
 
 from eastfall.physics.findings import Station
 from eastfall.tui import keys, words
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import plain
+from eastfall.tui.screens.dialogs import Page, plain
 from eastfall.tui.screens.following import FollowingScreen
 from eastfall.tui.store import Snapshot
 from eastfall.tui.units import METRIC, NONE, Units
 from eastfall.tui.widgets.line import KeyLine, TextLine
-from eastfall.tui.widgets.table import LongTable, fixed
+from eastfall.tui.widgets.table import LongTable, fitting, fixed
 
 if TYPE_CHECKING:
     from eastfall.physics.settings import Kind
 
 ORDERS = ("time", "depth", "residual")
 _WIDTHS = (7, 4, 13, 13, 8, 6, 6, 9, 4)
+_RANKS = (0, 5, 6, 7, 2, 4, 3, 1, 8)
+"""What stays the longest in a narrow window: depth, verdict, residual, its uncertainty."""
 _ROLE = {"within": Role.TEXT, "over": Role.ACTION, "undecided": Role.WARNING}
 
 
-def head(units: Units = METRIC) -> str:
-    """Return the line over the table."""
+def head(units: Units = METRIC, room: int = 80) -> str:
+    """Return the line over the table, as far as there is room."""
     names = (
         units.depth_head,
         "pass",
@@ -38,23 +39,23 @@ def head(units: Units = METRIC) -> str:
         "verdict",
         "n",
     )
-    return fixed(tuple(zip(names, _WIDTHS, strict=True)))
+    return fixed(names, _WIDTHS, fitting(_WIDTHS, _RANKS, room))
 
 
-def row(one: Station, units: Units = METRIC, kind: "Kind" = "guided") -> str:
+def row(one: Station, units: Units = METRIC, kind: "Kind" = "guided", room: int = 80) -> str:
     """Return a station as a line of the table; bodies that fall make no passes."""
     cells = (
         units.depth(one.depth),
         NONE if kind == "drop" else one.direction,
-        f"{units.offset(one.measured_east)} {units.offset(one.measured_north)}",
-        f"{units.offset(one.expected_east)} {units.offset(one.expected_north)}",
+        f"{units.signed(one.measured_east)} {units.signed(one.measured_north)}",
+        f"{units.signed(one.expected_east)} {units.signed(one.expected_north)}",
         units.offset(words.residual_length(one)),
         words.bearing(one.residual_east, one.residual_north),
         units.offset(words.expanded(one)),
         words.VERDICT[one.verdict],
         str(one.readings),
     )
-    return fixed(tuple(zip(cells, _WIDTHS, strict=True)))
+    return fixed(cells, _WIDTHS, fitting(_WIDTHS, _RANKS, room))
 
 
 def chosen(stations: tuple[Station, ...], order: str, only_open: bool) -> list[int]:
@@ -98,22 +99,31 @@ class StationsScreen(FollowingScreen[int | None]):
         self._snapshot = snapshot
         self._indices = chosen(snapshot.stations, self._order, self._only_open)
         what = "over or undecided" if self._only_open else "all"
+        told = f"stations: {len(self._indices)} of {len(snapshot.stations)} ({what}), by {self._order}"
         self.query_one("#station-title", TextLine).show(
-            (
-                f"stations: {len(self._indices)} of {len(snapshot.stations)} ({what}), by {self._order}",
-                Role.STRONG,
-            )
+            (told, Role.STRONG), right=((f"E N: east, north {self._units.short}", Role.TEXT),)
         )
-        stations = snapshot.stations
-        self.query_one(LongTable).show(
+        room, stations = self.size.width - 1, snapshot.stations
+        table = self.query_one(LongTable)
+        table.head = head(self._units, room)
+        table.empty = (
+            "none of them is over or undecided" if snapshot.stations else "no station has closed yet"
+        )
+        table.show(
             len(self._indices),
-            lambda i: (row(one := stations[self._indices[i]], self._units, self._kind), _ROLE[one.verdict]),
+            lambda i: (
+                row(one := stations[self._indices[i]], self._units, self._kind, room),
+                _ROLE[one.verdict],
+            ),
         )
+
+    def on_resize(self) -> None:
+        """Take the columns that fit."""
+        self.show(self._snapshot)
 
     def reckon_in(self, units: Units) -> None:
         """Show lengths in other units."""
         self._units = units
-        self.query_one(LongTable).head = head(units)
         self.show(self._snapshot)
 
     def action_sort(self) -> None:
@@ -165,7 +175,7 @@ class StationPage(ModalScreen[bool]):
     def compose(self) -> ComposeResult:
         """Show the answer, both offsets and the budget."""
         one = self._one
-        with Vertical(classes="dialog"):
+        with Page():
             yield plain(f"Station {one.number}, {words.taken(one, self._kind)}", "title")
             yield plain(words.answer(one, self._units))
             yield plain(f"measured {words.pair(one.measured_east, one.measured_north, units=self._units)}")

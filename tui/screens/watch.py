@@ -201,6 +201,11 @@ class WatchScreen(RunScreen):
             self.feed.newest()
         self._look(replace(self.sight, station=None, top=None))
 
+    def action_now(self) -> None:
+        """Go back to the picture as it is now; a replay stays where it is."""
+        self.held = None
+        self._look(replace(self.sight, station=None, top=None))
+
     def action_zoom(self, factor: float) -> None:
         """Change how much depth is in view."""
         self._look(look.zoomed(self.sight, self.session.assumptions.shaft.depth, factor))

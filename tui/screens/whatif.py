@@ -21,7 +21,7 @@ from eastfall.tui import keys, whatif
 from eastfall.tui.dials import Dial
 from eastfall.tui.inputs import Inputs
 from eastfall.tui.roles import Role
-from eastfall.tui.screens.dialogs import AskText, taken
+from eastfall.tui.screens.dialogs import AskText
 from eastfall.tui.screens.inputs import InputScreen, Lines, typing
 from eastfall.tui.units import METRIC, Units
 from eastfall.tui.widgets.dials import DialList
@@ -140,8 +140,7 @@ class WhatIfScreen(InputScreen):
 
     def action_other_site(self) -> None:
         """Ask for another site file to look at the record with."""
-        hint = taken(self.app, "takes it")
-        self.app.push_screen(AskText("Another site file", hint, check=_site_at), self._other)
+        self.app.push_screen(AskText("Another site file", check=_site_at), self._other)
 
     def _other(self, text: str | None) -> None:
         if text is not None:
@@ -150,7 +149,7 @@ class WhatIfScreen(InputScreen):
             self._fresh = True
             self.change(Inputs(base=self._base.assumptions, units=self.inputs.units))
 
-    def action_restore_all(self) -> None:
+    def restore_all(self) -> None:
         """Take all settings as they were recorded, also after another site file."""
         self._base, self._fresh = self._recorded, True
         self.change(Inputs(base=self._base.assumptions, units=self.inputs.units))

@@ -163,7 +163,10 @@ class PanelGround:
         """Name the panel's directions at the top and write the scale below."""
         left, right = _SIDES[self.which]
         title = f"{left} – {right}  {self.units.short}"
-        self.sheet.text(self.column + (self.width - len(title)) // 2, 0, title, Role.STRONG)
+        start = self.column + (self.width - len(title)) // 2
+        if self.which == 0:
+            start = max(start, len(self.units.depth_head) + 1)  # clear of what stands over the depths
+        self.sheet.text(start, 0, title, Role.STRONG)
         size = self.units.short_size
         ticks = self.axis.ticks(max(4, self.width // 5), size)
         step = (ticks[1] - ticks[0]) if len(ticks) > 1 else size

@@ -278,11 +278,17 @@ class PlanSheet:
         title = "shaft" if self.scope == "wall" else "plan"
         self.sheet.text(0, 0, f"{title}, {span} across", Role.STRONG)
         self.sheet.text(width // 2, 1, "N", Role.STRONG)
-        place = 0
+        # What finds no room at the bottom stands at the top, from the right.
+        place, end = 0, width
+        used = len(f"{title}, {span} across") + 1
         for words, role in self._legend():
             if place + len(words) <= width:
                 self.sheet.text(place, self.sheet.height - 1, words, role)
                 place += len(words) + 1
+            elif end - len(words) >= used:
+                end -= len(words)
+                self.sheet.text(end, 0, words, role)
+                end -= 1
 
     def _legend(self) -> Iterable[tuple[str, Role]]:
         view, glyphs = self.view, self.sheet.glyphs

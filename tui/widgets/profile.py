@@ -102,7 +102,7 @@ def _legend(sheet: Raster, view: ProfileView) -> None:
     solid, dashed, dotted, broken, heavy = sheet.glyphs.samples
     parts = [(f"{solid}measured", Role.MEASURED), (f"{dashed}expected", Role.EXPECTED)]
     if view.sight.residual:
-        parts = [(f"{solid}measured less expected", Role.MEASURED)]
+        parts = [(f"{solid}residual", Role.MEASURED)]
     parts += [(f"{dotted}±U", Role.BAND), (f"{broken}warning", Role.WARNING), (f"{heavy}action", Role.ACTION)]
     names = {"b": "b bob", "d": "d dropped"}
     parts += [(names[letter], role) for letter, role, _ in view.extras]

@@ -19,6 +19,7 @@ from eastfall.tui.letters import in_ascii
 from eastfall.tui.roles import Role
 from eastfall.tui.widgets.cells import role_style
 
+CUT = "..."
 Formatter = Callable[[int], tuple[str, Role]]
 """From a row's number to its text and how it is drawn."""
 
@@ -59,6 +60,8 @@ class LongTable(ScrollView, can_focus=True):
     def __init__(self, head: str, *, id: str | None = None) -> None:  # noqa: A002 (Textual's name)
         super().__init__(id=id)
         self.head = head
+        self.empty = ""
+        """What is said where there is no row."""
         self._count = 0
         self._format: Formatter = lambda _: ("", Role.TEXT)
         self.cursor = 0
@@ -105,7 +108,8 @@ class LongTable(ScrollView, can_focus=True):
             return self._strip(self.head, Role.STRONG, width)
         row = int(self.scroll_offset.y) + y - 1
         if row >= self._count:
-            return Strip.blank(width, self.rich_style)
+            said = self.empty if row == 0 else ""
+            return self._strip(said, Role.DIM, width)
         text, role = self._format(row)
         return self._strip(text, Role.CURSOR if row == self.cursor else role, width)
 
@@ -122,10 +126,33 @@ class LongTable(ScrollView, can_focus=True):
     def _strip(self, text: str, role: Role, width: int) -> Strip:
         if getattr(self.app, "glyphs", BRAILLE).name == "ascii":
             text = in_ascii(text)
+        if len(text) > width > len(CUT):
+            text = text[: width - len(CUT)] + CUT
         style = self.rich_style + role_style(self, role)
         return Strip([Segment(text, style)]).adjust_cell_length(width, style)
 
 
-def fixed(parts: Sequence[tuple[str, int]]) -> str:
-    """Return texts set to the right in columns of given widths."""
-    return " ".join(f"{text:>{width}}" for text, width in parts)
+def fixed(cells: Sequence[str], widths: Sequence[int], shown: Sequence[int] | None = None) -> str:
+    """Return texts set to the right in columns of given widths, all or those that are shown."""
+    return " ".join(
+        f"{cells[at]:>{widths[at]}}" for at in (shown if shown is not None else range(len(cells)))
+    )
+
+
+def fitting(widths: Sequence[int], ranks: Sequence[int], room: int) -> list[int]:
+    """Return which columns stand side by side in a room, in their order; of the others those of higher rank go first.
+
+    Parameters
+    ----------
+    widths, ranks : sequence of int
+        Of each column; rank 0 is there in any room.
+    room : int
+        Columns of letters.
+    """
+    shown, used = set(), -1
+    for at in sorted(range(len(widths)), key=ranks.__getitem__):
+        if ranks[at] and used + 1 + widths[at] > room:
+            break
+        shown.add(at)
+        used += 1 + widths[at]
+    return sorted(shown)
