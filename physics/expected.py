@@ -198,13 +198,12 @@ def _site_shifts(given: Assumptions, field: LocalField) -> Iterator[Shift]:
 def _line_and_air_shifts(given: Assumptions) -> Iterator[Shift]:
     air, line = given.air, given.line
     if not air.is_vacuum:
-        denser, faster = replace(air, density=air.density + air.u_density), air.vertical + air.u_vertical
+        denser = replace(air, density=air.density + air.u_density)
         factor = {"air_density_factor": 1.0 + air.u_density / air.density}
         yield Shift(name="air density", assumptions=replace(given, air=denser), of_fall=factor)
-        moving = replace(given, air=replace(air, vertical=faster))
-        yield Shift(
-            name="air moving in the shaft", assumptions=moving, of_fall={"air_vertical": air.u_vertical}
-        )
+        # Air that moves along a hanging line pushes it nowhere; only a falling body feels it.
+        along = {"air_vertical": air.u_vertical}
+        yield Shift(name="air moving in the shaft", assumptions=given, of_fall=along)
     stronger = 1.0 + air.u_cross_flow_fraction
     flow = tuple((top, end, speed * stronger, toward) for top, end, speed, toward in air.cross_flow)
     blown = replace(given, air=replace(air, cross_flow=flow))

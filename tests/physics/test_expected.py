@@ -156,6 +156,30 @@ def test_each_part_of_a_budget_is_what_a_whole_new_prediction_moves_by(shaft, ki
         )
 
 
+@pytest.mark.parametrize(("latitude", "moved"), [(90.0, 88.0), (89.0, 87.0), (87.0, 89.0), (-89.0, -87.0)])
+def test_a_latitude_that_could_lie_beyond_the_pole_is_moved_toward_the_equator(shaft, latitude, moved):
+    """Known to 2°, at 90° and 89° it is moved to 88° and 87°: there is no latitude beyond the pole."""
+    base = shaft("hung", depth=1000.0, line=Line(line_speed=1.0))
+    site = replace(base.site, latitude=radians(latitude), u_latitude=radians(2.0))
+    budget = expected_curve(replace(base, site=site)).budget
+    found = budget.at([1000.0])[budget.names.index("latitude"), :, 0]
+    here, there = (
+        expected_curve(replace(base, site=replace(site, latitude=radians(one)))).expected([1000.0], 1.0)[:, 0]
+        for one in (latitude, moved)
+    )
+    # Between the 65 depths of the budget a parabola is read along its chord.
+    np.testing.assert_allclose(found, there - here, rtol=1e-3, atol=1e-12)
+
+
+def test_the_bottom_of_any_shaft_is_in_the_table_and_what_lies_below_it_is_no_matter(shaft):
+    """3 m or 4 km: there is an answer at the stated depth. Air that blows below it swamps nothing."""
+    for depth in (3.0, 90.0, 4000.0):
+        assert np.isfinite(expected_curve(shaft("hung", depth=depth)).expected([depth], 1.0)).all()
+    below = Air(cross_flow=((100.5, 104.0, 5.0, 0.0),))
+    assert expected_curve(shaft("hung", depth=100.0, air=below)).warnings == ()
+    assert expected_curve(shaft("hung", depth=103.0, air=below)).warnings != ()
+
+
 def test_the_lean_of_the_moving_line_is_in_the_budget_of_a_guided_run(shaft):
     """2 m/s over 1000 m at 57.3°, latitude known to 1°: d/dφ of 2ωv cos φ·z/g is 0.44 mm."""
     base = shaft(depth=1000.0, guide=Guide(line_speed=2.0))
