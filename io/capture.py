@@ -90,7 +90,8 @@ def form_in_words(link: LinkSettings) -> str:
     if link.form == "iec61162":
         return "the form iec61162 (sentences such as $--XDR and $--DPT)"
     check = "" if link.checksum == "none" else f", checksum {link.checksum}"
-    return f"the form columns ({', '.join(link.columns)}; delimiter {link.delimiter!r}{check})"
+    sign = "" if link.decimal == "point" else ", decimal comma"
+    return f"the form columns ({', '.join(link.columns)}; delimiter {link.delimiter!r}{check}{sign})"
 
 
 def _first_lines(path: Path, link: LinkSettings) -> list[tuple[int, str, Example | None]]:

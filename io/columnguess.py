@@ -3,6 +3,7 @@
 import re
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import partial
 from itertools import pairwise
 
 import numpy as np
@@ -21,6 +22,8 @@ _FEW = 1.6
 """The same, times the number of steps, where these are few: a steady walk has 1."""
 _CLOCKLIKE = 0.01
 """Spread over size of the steps, below which a column may be a clock."""
+_OTHER_CLOCK = 3.0
+"""A column that runs faster or slower than the clock of this machine by this factor counts no seconds."""
 _ABOVE_COLLAR = -5.0
 """Metres: what swings about zero goes farther to the other side than a depth goes above the collar."""
 
@@ -97,7 +100,7 @@ def numbers_in(rows: Sequence[Sequence[bytes]]) -> Column:
     )
 
 
-def guessed(table: Column, rows: Sequence[Sequence[bytes]]) -> list[Guess]:
+def guessed(table: Column, rows: Sequence[Sequence[bytes]], rate: float | None = None) -> list[Guess]:
     """Name the columns of a table.
 
     Parameters
@@ -106,6 +109,8 @@ def guessed(table: Column, rows: Sequence[Sequence[bytes]]) -> list[Guess]:
         Numbers; NaN where a field is none.
     rows : sequence of n rows of k fields
         The same as text.
+    rate : float, optional
+        Lines in a second, as they came.
 
     Returns
     -------
@@ -115,7 +120,7 @@ def guessed(table: Column, rows: Sequence[Sequence[bytes]]) -> list[Guess]:
     left = [_looks(table, rows, place) for place in range(table.shape[1])]
     named = {one.place: Guess(IGNORED, "not a number") for one in left if not one.numeric}
     left = [one for one in left if one.numeric]
-    for rule in (_face, _time, _depth, _sideways, _azimuth, _temperature, _supply):
+    for rule in (_face, partial(_time, rate=rate), _depth, _sideways, _azimuth, _temperature, _supply):
         named |= rule(left)
         left = [one for one in left if one.place not in named]
     named |= {one.place: Guess(IGNORED, "not recognised: name it if it is needed") for one in left}
@@ -142,13 +147,18 @@ def _face(left: list[_Looks]) -> Named:
     return {}
 
 
-def _time(left: list[_Looks]) -> Named:
-    """Take the column that rises most evenly, if another is left that may be the depth."""
+def _time(left: list[_Looks], rate: float | None) -> Named:
+    """Take the column that rises most evenly, if another is left that may be the depth and it counts seconds."""
     rising = [one for one in left if one.rises and one.inside("time_s")]
     if not rising:
         return {}
     best = min(rising, key=lambda one: (one.size < _EPOCH, round(one.unevenness, 9), one.place))
     others = [one for one in left if one is not best and _may_be_depth(one)]
+    a_second = float(np.mean(best.steps)) * rate if rate else 1.0
+    if (others or best.size >= _EPOCH) and not 1.0 / _OTHER_CLOCK <= a_second <= _OTHER_CLOCK:
+        return {
+            best.place: Guess(IGNORED, f"rises by {a_second:.3g} a second: a counter, or no clock in seconds")
+        }
     if best.size >= _EPOCH:
         return {best.place: Guess("time_s", "rises, counted from a calendar date")}
     if not others:

@@ -5,7 +5,7 @@ Conventions of this form:
 - Fields stand between single delimiters; blanks and tabs around a number are ignored. With a blank as the delimiter
   any run of blanks and tabs is one delimiter, and blanks at either end of the line are ignored.
 - A number is an optional sign, decimal digits with at most one point, and an optional exponent. Words (nan, inf) are
-  no numbers.
+  no numbers. Where the site file says so the sign before the fraction is a comma; a point is no part of a number then.
 - An empty field means that the channel did not speak: NaN for azimuth, temperature, supply and face; a fault for time,
   depth, tilts and offsets, which a reading is nothing without.
 - A line with a field too many or too few is refused whole: which of them is missing would be a guess. So is a line
@@ -18,6 +18,7 @@ careful reader here. Both give the same numbers to the last bit.
 
 import re
 from collections.abc import Iterator, Sequence
+from typing import Literal
 
 import numpy as np
 
@@ -43,6 +44,9 @@ _MANY = 50
 _NUMBER = rb"[+-]?(?:\d++(?:\.\d*+)?|\.\d++)(?:[eE][+-]?\d++)?"
 _NOT_TEXT = re.compile(rb"[^\t -~]")
 _CANNOT_DELIMIT = frozenset(b"0123456789+-.eE*$\n\r\0")
+_COMMA_FOR_POINT = bytes.maketrans(b",.", b".,")
+"""Both are changed over, so that 1.234,5 is as little a number as 1,234.5 is with points."""
+DecimalSign = Literal["point", "comma"]
 _CHECKSUM_CODES = np.array([CODE[one] for one in checksum.CHECKSUM_FAULTS], dtype=np.int8)
 
 
@@ -57,6 +61,8 @@ class ColumnsDecoder:
         One ASCII character that no number holds.
     kind : str
         Of the checksum.
+    decimal : str
+        Sign before the fraction of a number.
 
     Raises
     ------
@@ -67,7 +73,11 @@ class ColumnsDecoder:
     pending = 0
 
     def __init__(
-        self, columns: Sequence[str], delimiter: str = ",", kind: checksum.Checksum = "none"
+        self,
+        columns: Sequence[str],
+        delimiter: str = ",",
+        kind: checksum.Checksum = "none",
+        decimal: DecimalSign = "point",
     ) -> None:
         names = [name for name in columns if name != IGNORED]
         if not names or len(set(names)) < len(names) or not set(names) <= QUANTITIES.keys():
@@ -76,6 +86,9 @@ class ColumnsDecoder:
             )
         if len(delimiter) != 1 or not delimiter.isascii() or ord(delimiter) in _CANNOT_DELIMIT:
             raise ParameterError("delimiter", repr(delimiter), "", "one character that no number holds")
+        self._comma = decimal == "comma"
+        if self._comma and delimiter == ",":
+            raise ParameterError("delimiter", repr(delimiter), "", "another one than the decimal comma")
         self._names = names
         self._columns = tuple(columns)
         self._kept = np.array([name != IGNORED for name in columns])
@@ -113,6 +126,8 @@ class ColumnsDecoder:
         if self._kind != "none":
             data, wrong = checksum.bodies(self._kind, data)
             codes[:] = np.where(codes == 0, _CHECKSUM_CODES[wrong], codes)
+        if self._comma:
+            data = data.translate(_COMMA_FOR_POINT)
         if self._blank:
             data = _with_single_blanks(data)
         if len(codes) < _MANY:

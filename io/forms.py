@@ -14,7 +14,7 @@ def decoder_for(settings: LinkSettings) -> Decoder:
     Parameters
     ----------
     settings : LinkSettings
-        Form, columns, delimiter and checksum.
+        Form, columns, delimiter, checksum and decimal sign.
 
     Raises
     ------
@@ -23,4 +23,4 @@ def decoder_for(settings: LinkSettings) -> Decoder:
     """
     if settings.form == "iec61162":
         return SentenceDecoder(settings.columns)
-    return ColumnsDecoder(settings.columns, settings.delimiter, settings.checksum)
+    return ColumnsDecoder(settings.columns, settings.delimiter, settings.checksum, settings.decimal)

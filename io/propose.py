@@ -5,6 +5,7 @@ clock rises evenly, depth moves smoothly and goes far, tilts are small and restl
 practice, no source), and each is told with the proposal.
 """
 
+import re
 from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
@@ -15,6 +16,7 @@ from eastfall.io import checksum
 from eastfall.io.arrivals import LineBlock
 from eastfall.io.checksum import Checksum
 from eastfall.io.columnguess import Guess, guessed, numbers_in
+from eastfall.io.columns import DecimalSign
 from eastfall.io.decoded import IGNORED, QUANTITIES
 from eastfall.io.forms import decoder_for
 from eastfall.io.readerkeys import Form
@@ -31,6 +33,8 @@ _MOST = 0.8
 """Share of the lines that must agree on a checksum, or on the number of fields."""
 _DELIMITERS = ",;\t|/:!#&@~_ "
 """Tried in this order; a blank comes last because it also stands beside other delimiters."""
+_COMMA_NUMBER = re.compile(rb"[+-]?\d*,\d+(?:[eE][+-]?\d+)?")
+_COMMA_FOR_POINT = bytes.maketrans(b",.", b".,")
 _SPOKEN = {" ": "blank", "\t": "tab"}
 
 
@@ -58,6 +62,7 @@ class Proposal:
     delimiter: str = ","
     columns: tuple[str, ...] = ()
     checksum: Checksum = "none"
+    decimal: DecimalSign = "point"
     fields: int = 0
     lines: int = 0
     read: int = 0
@@ -75,16 +80,19 @@ class Proposal:
             columns=self.columns,
             delimiter=self.delimiter,
             checksum=self.checksum,
+            decimal=self.decimal,
         )
 
 
-def propose(lines: Sequence[bytes]) -> Proposal:
+def propose(lines: Sequence[bytes], rate: float | None = None) -> Proposal:
     r"""Propose a line form.
 
     Parameters
     ----------
     lines : sequence of bytes
         As they came, oldest first, with or without line ends; any bytes at all.
+    rate : float, optional
+        Lines in a second, as they came: tells a clock from a counter.
 
     Returns
     -------
@@ -104,7 +112,7 @@ def propose(lines: Sequence[bytes]) -> Proposal:
             ),
         )
     text = [one for one in kept if _is_text(one)]
-    return _with_check(_sentences(text) or _columns(text), kept)
+    return _with_check(_sentences(text) or _columns(text, rate), kept)
 
 
 def _is_text(line: bytes) -> bool:
@@ -172,20 +180,27 @@ def _speaks(lines: list[bytes], name: str) -> bool:
 # Columns.
 
 
-def _columns(lines: list[bytes]) -> Proposal:
+def _columns(lines: list[bytes], rate: float | None) -> Proposal:
     kind, why_sum = _checksum_of(lines)
     bodies = lines
     if kind != "none":
         bodies = [body for body, fault in (checksum.verified(kind, one) for one in lines) if not fault]
     delimiter, fields, why_cut = _delimiter_of(bodies)
     why = (why_sum, *why_cut)
+    decimal, why_sign = _decimal_of(bodies, delimiter)
+    why = (*why, *why_sign)
     rows = [row for one in bodies if len(row := _cut(one, delimiter)) == fields]
+    if decimal == "comma":
+        rows = [[one.translate(_COMMA_FOR_POINT) for one in row] for row in rows]
     if len(rows) < _FEWEST:
         more = f"{len(rows)} lines alike; {_FEWEST} are needed to tell what the fields are"
-        return Proposal(checksum=kind, delimiter=delimiter, fields=fields, reasons=(*why, more))
-    guesses = guessed(numbers_in(rows), rows)
+        return Proposal(
+            checksum=kind, delimiter=delimiter, decimal=decimal, fields=fields, reasons=(*why, more)
+        )
+    guesses = guessed(numbers_in(rows), rows, rate)
     return Proposal(
         form="columns",
+        decimal=decimal,
         columns=tuple(one.name for one in guesses),
         checksum=kind,
         delimiter=delimiter,
@@ -232,10 +247,19 @@ def _delimiter_of(lines: list[bytes]) -> tuple[str, int, tuple[str, ...]]:
     shown = _SPOKEN.get(delimiter, delimiter)
     if fields == 1:
         return ",", 1, ("one field a line: no delimiter is seen",)
-    why = [f"{alike} of {len(lines)} lines have {fields} fields with {shown!r} between"]
-    if delimiter != "," and sum(b"," in one for one in lines) == len(lines):
-        why.append("commas inside the fields: set the instrument to decimal points, commas are not read")
-    return delimiter, fields, tuple(why)
+    return delimiter, fields, (f"{alike} of {len(lines)} lines have {fields} fields with {shown!r} between",)
+
+
+def _decimal_of(lines: list[bytes], delimiter: str) -> tuple[DecimalSign, tuple[str, ...]]:
+    """Return the sign before the fraction, and why: a comma where more fields are numbers with it than with a point."""
+    if delimiter == ",":
+        return "point", ()
+    fields = [field for one in lines[-_CUT_UP:] for field in _cut(one, delimiter)]
+    commas = sum(bool(_COMMA_NUMBER.fullmatch(one)) for one in fields)
+    points = sum(b"." in one and _is_number(one, ",") for one in fields)
+    if commas <= points:
+        return "point", ()
+    return "comma", (f"{commas} of {len(fields)} fields are numbers with a decimal comma",)
 
 
 def _cut(line: bytes, delimiter: str) -> list[bytes]:

@@ -6,6 +6,7 @@ import msgspec
 from msgspec import UNSET, Meta, UnsetType
 
 from eastfall.io.checksum import Checksum
+from eastfall.io.columns import DecimalSign
 from eastfall.physics import settings
 
 Form = Literal["columns", "iec61162"]
@@ -223,4 +224,5 @@ class LinkKeys(Section, frozen=True, kw_only=True):
         Meta(min_length=1, max_length=1, description="Between fields; a blank stands for any white space"),
     ] = ","
     checksum: Annotated[Checksum, Meta(description="At the end of a line, after *")] = "none"
+    decimal: Annotated[DecimalSign, Meta(description="Before the fraction of a number")] = "point"
     latency_s: Annotated[float, Meta(ge=0.0, le=60.0, description="Age of a reading when it arrives")] = 0.0

@@ -311,7 +311,7 @@ def open_draft(path: Path) -> SiteDraft:
 
 def take_link(draft: SiteDraft, index: int, settings: LinkSettings) -> None:
     """Write the port and line form of `settings` into a link; what is as by default and not given stays out."""
-    for name in ("url", "baud", "form", "columns", "delimiter", "checksum"):
+    for name in ("url", "baud", "form", "columns", "delimiter", "checksum", "decimal"):
         value = getattr(settings, name)
         path = joined("link", index, name)
         key = key_of(path)

@@ -18,6 +18,7 @@ import msgspec
 
 from eastfall.io import sitekeys
 from eastfall.io.checksum import Checksum
+from eastfall.io.columns import ColumnsDecoder, DecimalSign
 from eastfall.io.errors import SiteFileError
 from eastfall.io.sitekeys import Form, SiteDocument
 from eastfall.io.siteplace import Place
@@ -38,6 +39,7 @@ class LinkSettings:
     columns: tuple[str, ...] = ("depth_m", "tilt_a_deg", "tilt_b_deg")
     delimiter: str = ","
     checksum: Checksum = "none"
+    decimal: DecimalSign = "point"
     latency: float = 0.0
     """How much older a reading is than its arrival [s]."""
 
@@ -243,6 +245,7 @@ def _link(section: sitekeys.LinkKeys) -> LinkSettings:
         columns=section.columns,
         delimiter=section.delimiter,
         checksum=section.checksum,
+        decimal=section.decimal,
         latency=section.latency_s,
     )
 
@@ -258,6 +261,13 @@ _NEEDED = {
 def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], place: Place) -> None:
     if not links or any(one.form == "iec61162" for one in links):
         return
+    for number, one in enumerate(links):
+        try:
+            ColumnsDecoder(one.columns, one.delimiter, one.checksum, one.decimal)
+        except ParameterError as error:
+            value = getattr(one, error.name)
+            shown = list(value) if isinstance(value, tuple) else value
+            raise place.error(f"link[{number}].{error.name}", shown, error.expected) from error
     present = {column for one in links for column in one.columns}
     for group in _NEEDED[assumptions.run.kind]:
         if not present & set(group):

@@ -30,6 +30,8 @@ RELEASED_IN = 0.3
 """The port is let go of within this [s] after a stop."""
 PENDING = 200
 """Bytes without a line end that are shown."""
+_RATE_AFTER, _RATE_LINES = 3.0, 20
+"""Seconds and lines before a rate is told: what waited in the port's buffer comes all at once."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -48,6 +50,14 @@ class Heard:
     """What came after the last line end."""
     seconds: float = 0.0
     """Since the port is open."""
+    as_sent: bool = False
+    """Whether lines come when an instrument sends them, and not out of a file or an emulator."""
+
+    @property
+    def rate(self) -> float | None:
+        """Lines in a second as an instrument sends them; None as long as that cannot be told."""
+        told = self.as_sent and self.seconds >= _RATE_AFTER and self.count >= _RATE_LINES
+        return self.count / self.seconds if told else None
 
 
 class Trial:
@@ -83,6 +93,7 @@ class Trial:
         self._pending = b""
         self._state, self._trouble = "opening", ""
         self._opened: float | None = None
+        self._as_sent = False
         self._thread = threading.Thread(target=self._listen, name="port trial", daemon=True)
 
     def start(self) -> None:
@@ -107,6 +118,7 @@ class Trial:
                 count=self._count,
                 pending=self._pending,
                 seconds=since,
+                as_sent=self._as_sent,
             )
 
     def _listen(self) -> None:
@@ -123,6 +135,7 @@ class Trial:
             return
         try:
             self._opened = self._clock()
+            self._as_sent = not (getattr(link, "patient", False) or self.settings.url.startswith("emulate:"))
             self._say("open")
             self._take_all(link)
         except LinkError as error:

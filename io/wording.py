@@ -54,6 +54,8 @@ class LineWriter:
         if self._settings.form == "iec61162":
             return self._sentences(reading)
         words = [_WORDS[column](reading) for column in self._settings.columns]
+        if self._settings.decimal == "comma":
+            words = [one.replace(".", ",") for one in words]
         body = self._settings.delimiter.join(words).encode("ascii")
         return (with_checksum(self._settings.checksum, body),)
 

@@ -318,3 +318,28 @@ def test_unusable_settings_are_refused(names: tuple[str, ...], delimiter: str, w
     """Columns that say nothing or one thing twice, and delimiters that numbers hold, are refused in words."""
     with pytest.raises(ParameterError, match=words):
         ColumnsDecoder(names, delimiter)
+
+
+@given(data=st.data())
+def test_decimal_commas_are_read_as_points_are(data: st.DataObject) -> None:
+    """Comma and point changed over in every line, few or many: the same numbers and the same faults, to the bit."""
+    field = st.sampled_from(
+        [b"512.30", b"-0.0213", b"+.4", b"18", b"1,5", b"1.5.2", b"", b"x", b" 7.25 ", b"1e2"]
+    )
+    lines = data.draw(st.lists(st.lists(field, min_size=3, max_size=5), max_size=2 * _MANY))
+    text = b"".join(b";".join(one) + b"\n" for one in lines)
+    points = decode(text, delimiter=";")
+    commas = decode(text.translate(bytes.maketrans(b",.", b".,")), delimiter=";", decimal="comma")
+    assert same(points.readings, commas.readings)
+    assert points.faults == commas.faults
+
+
+def test_a_decimal_comma_comes_after_the_checksum_and_leaves_points_out() -> None:
+    """The sum is that of the line as sent; a number with points in it is none; the comma cannot part fields too."""
+    line = with_checksum("crc16-modbus", b"512,30;-0,5;1.234,5;18") + b"\n"
+    good = with_checksum("crc16-modbus", b"512,30;-0,5;0,25;18") + b"\n"
+    found = decode(good + line, delimiter=";", decimal="comma", checksum="crc16-modbus")
+    assert found.readings.depth.tolist() == [512.3]
+    assert found.faults == {"not a number": 1}
+    with pytest.raises(ParameterError, match="another one than the decimal comma"):
+        ColumnsDecoder(NAMES, ",", decimal="comma")

@@ -183,10 +183,7 @@ def test_whatever_comes_a_proposal_can_be_used(lines: list[bytes]) -> None:
     [
         ([], "no line has come yet"),
         ([b"", b"\r\n"], "no line has come yet"),
-        (
-            [b"12,5;3,4;1,0"] * 6,
-            "commas inside the fields: set the instrument to decimal points, commas are not read",
-        ),
+        ([b"12,5;3,4;1,0"] * 6, "18 of 18 fields are numbers with a decimal comma"),
         ([b"1.0,2.0*ZZ"] * 6, "the lines end in * and something that is neither checksum known here"),
         ([b"1.0,2.0"] * 4, "4 lines alike; 5 are needed to tell what the fields are"),
         ([b"7"] * 6, "one field a line: no delimiter is seen"),
@@ -219,3 +216,34 @@ def test_empty_fields_are_left_to_quantities_that_may_be_empty() -> None:
 def test_proposal_without_a_named_column_is_no_link() -> None:
     """A form of ignored fields alone could read nothing."""
     assert Proposal(form="columns", columns=("-", "-")).link("x", 9600) is None
+
+
+@pytest.mark.parametrize(
+    ("rate", "name"), [(None, "time_s"), (0.5, "time_s"), (1.0, "time_s"), (10.0, "-"), (0.1, "-")]
+)
+def test_a_counter_is_no_clock(rate: float | None, name: str) -> None:
+    """What rises by one a line, ten lines in a second, would make a line ten times too slow."""
+    lines = [
+        b"%d,%.3f,%.4f,%.4f" % (row, one["depth"], one["tilt_a"], one["tilt_b"])
+        for row, one in enumerate(sent("guided"))
+    ]
+    found = propose(lines, rate)
+    assert found.columns == (name, "depth_m", "tilt_a_deg", "tilt_b_deg")
+    assert any("a counter, or no clock in seconds" in one for one in found.reasons) == (name == "-")
+
+
+def test_decimal_commas_are_proposed_and_read() -> None:
+    """The lines of a form with decimal commas, another column order and a checksum give that form back."""
+    form = LinkSettings(
+        url="x",
+        columns=("temperature_c", "depth_m", "tilt_a_deg", "tilt_b_deg"),
+        delimiter=";",
+        decimal="comma",
+        checksum="xor",
+    )
+    found = propose(worded("guided", form))
+    assert found.decimal == "comma"
+    assert found.delimiter == ";"
+    assert found.checksum == "xor"
+    assert found.columns[1:] == form.columns[1:]
+    assert found.read == found.lines

@@ -171,7 +171,7 @@ def test_files_that_are_not_there_or_need_a_site_are_one_clear_line(tmp_path: Pa
     """A missing file, a folder, and a capture without a site file are each refused with their path."""
     capture = tmp_path / "capture.txt"
     capture.write_bytes(b"1,2,3\n")
-    with pytest.raises(CaptureError, match="expected one, or a site file"):
+    with pytest.raises(CaptureError, match="expected one, or a capture with a site file"):
         reduce_file(capture)
     for path in (tmp_path / "none.jsonl", tmp_path):
         with pytest.raises(LogError, match="cannot be read"):

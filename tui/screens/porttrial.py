@@ -242,7 +242,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
             self._news = True
         if self._turn % _THINK == 0 and self._news:
             self._news = False
-            self.proposal = propose(heard.lines or ((heard.pending,) if heard.pending else ()))
+            self.proposal = propose(heard.lines or ((heard.pending,) if heard.pending else ()), heard.rate)
         self._turn += 1
         form = self._form()
         if form != self._read_by:
@@ -319,6 +319,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
         what = f"Proposed, to be checked: {form.form}, {', '.join(form.columns)}"
         if form.form == "columns":
             what += f"; delimiter {_named(form.delimiter)}; checksum {form.checksum}"
+            what += "; decimal comma" if form.decimal == "comma" else ""
         return (f"Read by {by}. {safe(what)}", Role.MEASURED), reasons
 
     # What the keys do.
