@@ -39,11 +39,24 @@ class SidePull:
             What the sum has gained so far, east and north [m].
         """
         good = np.isfinite(bend)
-        rows = np.concatenate([self._last, np.concatenate([bend[None], slope])[:, good]], axis=1)
-        change, middle = np.diff(rows, axis=1), 0.5 * (rows[:, 1:] + rows[:, :-1])
-        steps = middle[0] * change[1:] + 0.5 * middle[1:] * change[0]
-        sums = np.cumsum(np.concatenate([self._gained, steps], axis=1), axis=1)
-        first = 1 if self._last.shape[1] or not rows.shape[1] else 0
+        if good.all():
+            return self._sum(bend, slope)
+        before = self._gained
+        gained: Array = np.concatenate([before, self._sum(bend[good], slope[:, good])], axis=1)
+        return gained[:, np.cumsum(good)]
+
+    def _sum(self, bend: Array, slope: Array) -> Array:
+        known = self._last.shape[1]
+        rows = np.concatenate([self._last, [bend, *slope]], axis=1)
+        if not rows.size:
+            return rows[1:]
+        middle = 0.5 * (rows[:, 1:] + rows[:, :-1])
+        change = rows[:, 1:] - rows[:, :-1]
+        terms = np.empty((2, rows.shape[1]))
+        terms[:, :1] = self._gained
+        np.multiply(middle[0], change[1:], out=terms[:, 1:])
+        middle[1:] *= 0.5 * change[0]
+        terms[:, 1:] += middle[1:]
+        sums = np.cumsum(terms, axis=1)
         self._last, self._gained = rows[:, -1:].copy(), sums[:, -1:].copy()
-        gained: Array = sums[:, np.maximum(np.cumsum(good) - 1 + first, 0)]
-        return gained
+        return sums[:, known:]
