@@ -173,6 +173,8 @@ def test_bad_parameters_are_refused_with_their_range() -> None:
     """A latitude beyond the pole, a radius of zero and shells that overlap raise with value, unit and range."""
     with pytest.raises(ParameterError, match=r"latitude is 1\.6 rad; expected -pi/2 to pi/2"):
         normal_gravity(1.6)
+    with pytest.raises(ParameterError, match=r"latitude is -1\.6 rad"):
+        normal_gravity(-1.6)
     with pytest.raises(ParameterError, match=r"radius is 0\.0 m; expected more than 0 m"):
         shell_gravity(0.0, prem_shells())
     with pytest.raises(ParameterError, match="shells that do not overlap"):

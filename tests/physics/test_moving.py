@@ -49,6 +49,8 @@ def test_lean_refuses_what_is_no_gravity_or_latitude():
         lean(1.0, 0.0, -9.8)
     with pytest.raises(ParameterError, match=r"latitude is 2\.0 rad"):
         lean(1.0, 2.0, 9.8)
+    with pytest.raises(ParameterError, match=r"latitude is -1\.6 rad"):
+        lean(1.0, -1.6, 9.8)
 
 
 @pytest.mark.invariant
@@ -119,7 +121,21 @@ def test_the_first_knots_and_a_long_pause_leave_the_speed_unknown():
     assert np.isnan(speed[:3]).all()
     assert np.isnan(speed[50:53]).all()
     assert np.isnan(acceleration[50:53]).all()
-    np.testing.assert_allclose(np.concatenate([speed[10:50], speed[60:]]), 2.0, atol=1e-9)
+    # From the second knot on, at 0.4 s, a steady line's speed is right at once, and taken for steady.
+    for start in (0, 50):
+        np.testing.assert_allclose(speed[start + 5 : start + 50], 2.0, atol=1e-9)
+        np.testing.assert_allclose(acceleration[start + 5 : start + 50], 0.0, atol=1e-8)
+
+
+@pytest.mark.invariant
+def test_a_pause_inside_a_later_block_starts_afresh_as_in_one_block():
+    """Nine knots are known when a block brings more of them, a pause and a line that has slowed down meanwhile."""
+    time = np.concatenate([np.arange(80) * 0.1, 40.0 + np.arange(50) * 0.1])
+    depth = np.where(time < 30.0, 2.0 * time, 30.0 + 0.1 * time)
+    whole, tracker = np.stack(_speed(time, depth)), LineSpeed()
+    parts = [np.stack(tracker.update(time[part], depth[part])) for part in (slice(40), slice(40, None))]
+    np.testing.assert_array_equal(np.concatenate(parts, axis=1), whole)
+    np.testing.assert_allclose(whole[0, 86:], 0.1, atol=1e-9)
 
 
 def test_missing_and_backward_rows_are_left_out():
@@ -137,6 +153,15 @@ def test_missing_and_backward_rows_are_left_out():
     assert np.isnan(speed[bad]).all()
     np.testing.assert_array_equal(speed[~bad], whole[0])
     np.testing.assert_array_equal(acceleration[~bad], whole[1])
+
+
+def test_a_backward_row_alone_in_its_block_is_left_out_too():
+    """Nothing is missing and one time steps back: NaN there, and the rest as if it had not come."""
+    time = np.arange(100) / 10.0
+    whole = _speed(time, 1.5 * time)[0]
+    speed = _speed(np.insert(time, 60, 4.0), np.insert(1.5 * time, 60, 80.0))[0]
+    assert np.isnan(speed[60])
+    np.testing.assert_array_equal(np.delete(speed, 60), whole)
 
 
 @pytest.mark.invariant
