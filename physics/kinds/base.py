@@ -18,6 +18,9 @@ from eastfall.physics.verdict import horizontal, verdicts
 
 Array = NDArray[np.float64]
 ROW = {name: number for number, name in enumerate(ROW_FIELDS)}
+MEASURED = slice(ROW["measured_east"], ROW["measured_north"] + 1)
+EXPECTED = slice(ROW["expected_east"], ROW["expected_north"] + 1)
+"""East and north of a row, which stand beside each other in `ROW_FIELDS`."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

@@ -4,7 +4,7 @@ What a station says follows from its row and is worked out by the kind.
 """
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -37,7 +37,11 @@ KEPT = (
     "face",
 )
 """What is known of a row for the station that may be closed there."""
-_DEPTH, _FACE = KEPT.index("depth"), KEPT.index("face")
+TIME, DEPTH, WEIGHT, LEVER, FACE = (KEPT.index(one) for one in ("time", "depth", "weight", "lever", "face"))
+MEASURED, EXPECTED, SLOPE, PULL = (
+    slice(KEPT.index(f"{one}_east"), KEPT.index(f"{one}_north") + 1)
+    for one in ("measured", "expected", "slope", "pull")
+)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -92,9 +96,9 @@ class Closing:
         due : list of Due
             In the order in which the rows bring them about.
         """
-        passes = np.empty((2, columns[_DEPTH].size))
+        passes = np.empty((2, columns[DEPTH].size))
         due: list[Due] = []
-        for stretch in self._passes.stretches(columns[_DEPTH]):
+        for stretch in self._passes.stretches(columns[DEPTH]):
             passes[:, stretch.rows] = [[stretch.passing], [stretch.direction]]
             if self._crossed:
                 due += self._crossings(stretch, columns)
@@ -122,12 +126,12 @@ class Closing:
         self._taken += stretch.extreme.size - done
 
     def _remember(self, stretch: Stretch, columns: tuple[Array, ...]) -> None:
-        depth = columns[_DEPTH][stretch.rows]
+        depth = columns[DEPTH][stretch.rows]
         if not depth.size:
             return
         at = int(np.argmax(stretch.direction * depth))
         extreme = self._extreme
-        if stretch.first or extreme is None or stretch.direction * (depth[at] - extreme[_DEPTH]) > 0.0:
+        if stretch.first or extreme is None or stretch.direction * (depth[at] - extreme[DEPTH]) > 0.0:
             self._extreme = _column(columns, stretch.rows.start + at)
         self._before = _column(columns, stretch.rows.stop - 1)
 
@@ -135,7 +139,7 @@ class Closing:
         """Close the station that a pass stopped just short of."""
         if self._extreme is None or not self._crossed:
             return
-        depth = float(self._extreme[_DEPTH])
+        depth = float(self._extreme[DEPTH])
         short_of = direction * station_at(reached(direction * depth, self._every) + 1, self._every) + 0.0
         near = direction * (short_of - depth) <= self._near
         if near and 0.0 <= short_of <= self._last_station:
@@ -161,24 +165,14 @@ class Closing:
             if self._numbers and next(iter(self._numbers))[0] != one.passing:
                 self._numbers = {}
             self._numbers[one.passing, one.depth] = number, still
-            yield Due(
-                one.row,
-                one.order,
-                one.depth,
-                one.at,
-                one.readings,
-                one.passing,
-                one.direction,
-                one.rest,
-                number,
-            )
+            yield replace(one, number=number)
 
     def jump(self, depth: float) -> None:
         """Go on from another depth [m]: no station between is taken."""
         self._passes.jump(depth)
         if self._before is not None:
             self._before = self._before.copy()
-            self._before[_DEPTH] = depth
+            self._before[DEPTH] = depth
             self._extreme = self._before
 
     def close(self) -> list[Due]:
@@ -193,9 +187,9 @@ def _column(columns: tuple[Array, ...], row: int) -> Array:
 
 def _between(before: Array | None, after: Array, depth: float) -> Array:
     """Interpolate a row at a depth between two rows; without a row before, the row itself."""
-    if before is None or after[_DEPTH] == before[_DEPTH]:
+    if before is None or after[DEPTH] == before[DEPTH]:
         return after
-    share = (depth - before[_DEPTH]) / (after[_DEPTH] - before[_DEPTH])
+    share = (depth - before[DEPTH]) / (after[DEPTH] - before[DEPTH])
     at = before + share * (after - before)
-    at[_FACE] = after[_FACE]
+    at[FACE] = after[FACE]
     return at

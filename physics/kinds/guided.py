@@ -12,6 +12,7 @@ from eastfall.physics.expected import ExpectedCurve, reach
 from eastfall.physics.faces import FaceBins
 from eastfall.physics.findings import FaceSums, Halt, RestPoint, Rows, Station
 from eastfall.physics.halts import HaltFinder, Rest
+from eastfall.physics.kinds import base, closing
 from eastfall.physics.kinds.azimuths import azimuth_of_a
 from eastfall.physics.kinds.base import (
     ROW,
@@ -24,7 +25,7 @@ from eastfall.physics.kinds.base import (
     stations_of,
     usable,
 )
-from eastfall.physics.kinds.closing import KEPT, Closing, Due
+from eastfall.physics.kinds.closing import Closing, Due
 from eastfall.physics.kinds.gaps import Gaps
 from eastfall.physics.kinds.lever import Lever
 from eastfall.physics.kinds.plumbguide import PlumbGuide
@@ -36,7 +37,6 @@ from eastfall.physics.settings import Assumptions
 from eastfall.physics.tilt import OffsetSum, increments
 
 _PIECE = 4096
-_FACE = KEPT.index("face")
 
 
 class Guided:
@@ -122,9 +122,9 @@ class Guided:
         rows = rows_of(len(readings))
         rows[ROW["time"]], rows[ROW["depth"]] = readings.time, depth
         rows[ROW["host_time"]] = readings.host_time
-        rows[ROW["speed"]], lag = self._plumb.line_speed(readings)
+        rows[ROW["speed"]], acceleration = self._plumb.line_speed(readings)
         rests = self._rests(readings, slopes)
-        ridden, leaning = self._plumb.ride(readings.time, depth, rows[ROW["speed"]], lag)
+        ridden, leaning = self._plumb.ride(readings.time, depth, rows[ROW["speed"]], acceleration)
         self._gather(readings, slopes, leaning, azimuth, rests)
         speed = rows[ROW["speed"]]
         bend = speed * speed / self._curve.models.field.gravity
@@ -135,16 +135,23 @@ class Guided:
         if self.u_of_rows:
             rows[ROW["u_east"]], rows[ROW["u_north"]] = self._uncertainty(at, summed)
         columns = (
-            *(readings.time, depth, *rows[5:9], summed.weight, *summed.slope),
-            *(summed.lever, *summed.pull, readings.column("face")),
+            readings.time,
+            depth,
+            *rows[base.MEASURED],
+            *rows[base.EXPECTED],
+            summed.weight,
+            *summed.slope,
+            summed.lever,
+            *summed.pull,
+            readings.column("face"),
         )
         rows[ROW["passing"]], rows[ROW["direction"]], due = self._closing.take(columns, rests)
         fill_limits(rows, self._assumptions.limits)
         self._last = np.array([one[-1] for one in columns])
-        self._last[1], self._depth = at[-1], float(depth[-1])
-        self._slope = self._last[7:9]
+        self._last[closing.DEPTH], self._depth = at[-1], float(depth[-1])
+        self._slope = self._last[closing.SLOPE]
         found = Rows(rows)
-        judged = rows[5:7] - rows[7:9]
+        judged = rows[base.MEASURED] - rows[base.EXPECTED]
         return Batch(rows=found, judged=judged, stations=self._stations(due))
 
     def _rests(self, readings: Readings, slopes: Array) -> list[tuple[int, Rest]]:
@@ -153,7 +160,7 @@ class Guided:
             return []
         rows = np.array([readings.time, readings.depth, *slopes])
         face = readings.column("face")
-        before = face[0] if self._last is None else self._last[_FACE]
+        before = face[0] if self._last is None else self._last[closing.FACE]
         turns = np.flatnonzero(np.abs(np.diff(face, prepend=before)) > 0.0).tolist()
         found: list[tuple[int, Rest]] = []
         for begin, end in pairwise([0, *turns, len(readings)]):
@@ -178,7 +185,7 @@ class Guided:
         lever = self._lever.update(depth, azimuth, told)
         pull = self._pull.update(bend, slopes)
         return depth, Summed(
-            depth=depth, offset=rows[5:7], weight=weight, slope=slopes, lever=lever, pull=pull
+            depth=depth, offset=rows[base.MEASURED], weight=weight, slope=slopes, lever=lever, pull=pull
         )
 
     def _halting(
@@ -260,22 +267,22 @@ class Guided:
     def _closed(self, due: list[Due]) -> list[Station]:
         """Close stations taken in passing one after the other, or one at rest."""
         kept = np.stack([one.at for one in due], axis=1)
-        at, first = kept[1], due[0]
+        at, first = kept[closing.DEPTH], due[0]
         before = self._before(first)
         facts = StationFacts(
             numbers=[one.number for one in due],
             depth=np.array([one.depth for one in due]),
-            time=kept[0],
+            time=kept[closing.TIME],
             passing=first.passing,
             direction=first.direction,
-            measured=kept[2:4],
-            expected=kept[4:6],
+            measured=kept[closing.MEASURED],
+            expected=kept[closing.EXPECTED],
             readings=[one.readings for one in due],
             still=first.rest is not None,
             names=(*self._shares.names, *self._curve.budget.names),
             parts=np.concatenate([self._shares.parts(_summed(kept)), self._curve.budget.at(at)]),
             halt=_halt(first.rest),
-            face=kept[_FACE],
+            face=kept[closing.FACE],
             before=before,
         )
         found = stations_of(facts, self._assumptions)
@@ -325,10 +332,12 @@ class Guided:
         """Return the newest row."""
         if self._last is None:
             return None
-        u = self._uncertainty(self._last[1:2], _summed(self._last[:, None]))
-        depth, east, north, expected_east, expected_north = self._last[1:6].tolist()
+        at = _summed(self._last[:, None])
+        u = self._uncertainty(at.depth, at)
+        east, north = self._last[closing.MEASURED].tolist()
+        expected_east, expected_north = self._last[closing.EXPECTED].tolist()
         return Judged(
-            depth=depth,
+            depth=float(at.depth[0]),
             measured_east=east,
             measured_north=north,
             expected_east=expected_east,
@@ -339,7 +348,7 @@ class Guided:
 
     def hold_still(self) -> float | None:
         """Return the seconds until a halt closes a station."""
-        return None if self._last is None else self._halts.to_go(float(self._last[0]))
+        return None if self._last is None else self._halts.to_go(float(self._last[closing.TIME]))
 
     def faces(self) -> FaceSums | None:
         """Return the sums of readings in two faces."""
@@ -355,7 +364,7 @@ class Guided:
         if self._plumb.without_clock:
             found.append("no clock in the readings: line speed taken from guide.line_speed_mps")
         if self._still is not None and self._last is not None:
-            found.append(f"summed from halt to halt: the answer is that at {self._last[1]:.1f} m")
+            found.append(f"summed from halt to halt: the answer is that at {self._last[closing.DEPTH]:.1f} m")
         if self._shares.is_bridged:
             found.append(
                 "readings are missing over more than half a metre: bridged, with a larger uncertainty"
@@ -366,7 +375,12 @@ class Guided:
 def _summed(kept: Array) -> Summed:
     """Return where the sum stood at rows kept in the order of `KEPT`, shape (len(KEPT), n)."""
     return Summed(
-        depth=kept[1], offset=kept[2:4], weight=kept[6], slope=kept[7:9], lever=kept[9], pull=kept[10:12]
+        depth=kept[closing.DEPTH],
+        offset=kept[closing.MEASURED],
+        weight=kept[closing.WEIGHT],
+        slope=kept[closing.SLOPE],
+        lever=kept[closing.LEVER],
+        pull=kept[closing.PULL],
     )
 
 

@@ -14,6 +14,7 @@ from eastfall.physics.findings import RestPoint, Rows, Station
 from eastfall.physics.hung import free_period, single_swing
 from eastfall.physics.kinds.azimuths import azimuth_of_a
 from eastfall.physics.kinds.base import (
+    EXPECTED,
     READINGS,
     REST_POINT,
     ROW,
@@ -152,7 +153,7 @@ class Hung(Plain):
         rows[ROW["passing"]], rows[ROW["direction"]] = 0, np.where(speed < -_RUNNING, -1, 1)
         rows[ROW["measured_east"]], rows[ROW["measured_north"]] = offsets
         running = np.where(np.abs(speed) > _RUNNING, speed, 0.0)
-        rows[7:9], u = self._predicted(depth, running, direct)
+        rows[EXPECTED], u = self._predicted(depth, running, direct)
         rows[ROW["u_east"]], rows[ROW["u_north"]] = np.hypot(u, self._single(depth, direct))
         return rows, speed
 
