@@ -21,6 +21,9 @@ Array = NDArray[np.float64]
 SPIKE = "depth spike"
 SLACK = 0.5
 """Smaller steps are never called a jump [m]: the grain of a coarse counter, and of rows that share a time stamp."""
+EARLY = 0.1
+"""So much sooner after the one before it may a row bear its stamp than it was read [s]: stamps of arrival are as
+uneven as the way from the instrument."""
 LASTS = 5
 """So many rows in line with each other, away from those before, are a jump; fewer that come back are a spike."""
 _TIME, _DEPTH = 0, 2
@@ -144,10 +147,11 @@ class DepthWatch:
     """Tell spikes and jumps of depth from the line's own movement; the same however rows are cut into blocks.
 
     A step of more than `SLACK` is out of line if the line would have to be faster than `max_speed`, or more than twice
-    as fast as in the step before and `max_acceleration` on top. Rows out of line wait: if the depth comes back they
-    were a spike and are left aside; if `LASTS` of them agree with each other the depth has jumped. Rows that share
-    a time stamp are held against the last one before it. Rows without a time are not judged, and none is where the
-    first `LASTS` steps of a run are all out of line: then the times are not those of the movement.
+    as fast as in the step before and `max_acceleration` on top; `EARLY` is granted to either. Rows out of line wait:
+    if the depth comes back they were a spike and are left aside; if `LASTS` of them agree with each other the depth
+    has jumped. Rows that share a time stamp are held against the last one before it. Rows without a time are not
+    judged, and none is where the first `LASTS` steps of a run are all out of line: then the times are not those of
+    the movement.
 
     Parameters
     ----------
@@ -228,10 +232,9 @@ def _in_line(limits: Depth, track: _Track, time: float, depth: float) -> bool:
     step, lasted = abs(depth - track.depth), time - track.time
     if step <= SLACK:
         return True
-    ratio = max(1.0, lasted / track.lasted) if track.lasted > 0.0 else np.inf
-    likely = 2.0 * track.step * ratio if track.step else 0.0
+    likely = 2.0 * track.step * max(1.0, (lasted + EARLY) / (track.lasted + EARLY))
     smooth = track.lasted <= 0.0 or step <= likely + limits.max_acceleration * lasted**2 + SLACK
-    if step <= limits.max_speed * lasted + SLACK and smooth:
+    if step <= limits.max_speed * (lasted + EARLY) + SLACK and smooth:
         return True
     away = abs(depth - track.earlier_depth)
     return lasted == 0.0 and away <= limits.max_speed * (time - track.earlier_time) + SLACK

@@ -125,6 +125,21 @@ def test_a_line_that_starts_stops_and_reverses_never_jumps(speed):
     assert (jumps, spikes, kept.size) == ([], 0, kept_rows.size)
 
 
+@pytest.mark.parametrize("late", [0.03, 0.1])
+@pytest.mark.parametrize("speed", [2.0, 8.0, 12.0])
+def test_rows_stamped_as_they_arrive_over_an_uneven_link_are_in_line(speed, late):
+    """Delays of 30 or 100 ms in the mean, spread as those of a busy network are: no jump but the one that is there."""
+    rng = np.random.default_rng(4)
+    readings = ride(speed=speed, rate=10.0, to=900.0)
+    readings.data[0] = np.maximum.accumulate(readings.time + rng.exponential(late, len(readings)))
+    kept, jumps, spikes = watched(readings)
+    assert (jumps, spikes, kept.size) == ([], 0, len(readings))
+    readings.data[2, 400:] += 12.0
+    _, (jump,), spikes = watched(readings)
+    assert jump.after - jump.before == pytest.approx(12.0 + speed / 10.0)
+    assert spikes == 0
+
+
 def test_rows_that_arrive_in_a_burst_with_one_stamp_are_no_jump():
     """Three seconds at 10 m/s arrive at once: every row bears the same host time, and nothing is out of line."""
     readings = ride(speed=10.0, rate=10.0, to=200.0)
