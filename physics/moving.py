@@ -20,7 +20,8 @@ KNOT = 0.2
 GROUP = 3
 """Knots in each of the three groups of a full estimate."""
 LONGEST_GAP = 10.0
-"""A pause longer than this [s] starts the estimate afresh: nothing is known of the speed inside it."""
+"""A pause longer than this [s] starts the estimate afresh, unless told otherwise: nothing is known of the speed
+inside it."""
 _MEMORY = 3 * GROUP - 1
 _CHUNK = 16384  # rows handled at a time, so that the work stays in the cache
 
@@ -75,10 +76,15 @@ class LineSpeed:
     speed or constant acceleration, whatever the spacing of the rows. Until nine knots have closed the groups are
     smaller; two knots give a speed with acceleration zero; fewer give NaN, as do rows with a missing or
     earlier time or a missing depth (these are left out of the estimate too), and rows after a pause longer than
-    `LONGEST_GAP` until two knots have closed again.
+    `longest_gap` until two knots have closed again.
 
     The estimate of a row uses only rows before it, and does not depend, to the last bit, on how the rows
     are cut into blocks. Copy it with `copy.deepcopy`.
+
+    Parameters
+    ----------
+    longest_gap : float
+        A pause longer than this starts the estimate afresh [s].
 
     Notes
     -----
@@ -87,7 +93,8 @@ class LineSpeed:
     rows) that is 8 mm/s, or 0.1 µrad of lean, and 8 mm/s².
     """
 
-    def __init__(self) -> None:
+    def __init__(self, longest_gap: float = LONGEST_GAP) -> None:
+        self._longest_gap = longest_gap
         self._bins = TimeBins(KNOT, 1)
         self._latest = -np.inf
         self._run = 0
@@ -140,8 +147,8 @@ class LineSpeed:
     def _rows(self, time: Array, depth: Array, steps: Array, out: Array) -> None:
         index, closed = self._bins.add(time, depth[None])
         runs = None
-        if steps.max() > LONGEST_GAP:
-            runs = self._run + np.cumsum(steps > LONGEST_GAP)
+        if steps.max() > self._longest_gap:
+            runs = self._run + np.cumsum(steps > self._longest_gap)
         fits = self._fits(closed, self._runs_of(closed, index, runs)) if closed.rows.size else self._fit
         self._latest = float(time[-1])
         self._run = self._run if runs is None else int(runs[-1])

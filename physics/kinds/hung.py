@@ -30,9 +30,10 @@ from eastfall.physics.kinds.base import (
 )
 from eastfall.physics.kinds.shares import AZIMUTH, SCALE, ZERO, of_axes
 from eastfall.physics.lineangle import LineAngle, line_angle
-from eastfall.physics.moving import LineSpeed
+from eastfall.physics.moving import LONGEST_GAP, LineSpeed
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
+from eastfall.physics.steps import steps_from
 from eastfall.physics.tilt import increments
 
 Flags = NDArray[np.bool_]
@@ -47,6 +48,11 @@ _LATER = 0.02
 uncertainty shrinks no faster, and the cost of an hour stays bounded."""
 _SETTLED = 2.0
 """A line that runs on sooner than this has made no halt [s]."""
+_APART = 2.0
+"""Readings further apart than this, from one level to another, say nothing of a running line: it may have run and
+stopped in between, as where a person reads a scale at each level [s]."""
+_PASSING = "read once in passing"
+_UNSEEN = "swing not seen yet"
 _BY_HAND = 10.0
 """Readings at least this far apart are taken by hand, from a bob that a person saw at rest [s]."""
 _WANTED = 0.00025
@@ -70,6 +76,8 @@ class _Level:
         self.rest: swing.RestPoint | None = None
         self.direct = True
         self.expected: Array = np.zeros(2)
+        self.hurried = False
+        """Come to at once from another level."""
 
     @property
     def swing_seen(self) -> bool:
@@ -106,11 +114,15 @@ class Hung(Plain):
         self._assumptions = assumptions
         self._curve = curve
         self._angles: LineAngle | None = None
-        self._speed = LineSpeed()
+        self._speed = LineSpeed(_APART)
+        self._before = (nan, nan)
+        """Time [s] and depth [m] of the last reading."""
         self._level: _Level | None = None
         self._final: _Level | None = None
         self._closed = 0
         self._rest: RestPoint | None = None
+        self._unseen: list[float] = []
+        """Levels that were left before a swing was seen [m]."""
         self._last: Array | None = None
         self.unused: Counter[str] = Counter()
         self._messages: tuple[str, ...] = ()
@@ -124,10 +136,18 @@ class Hung(Plain):
             return Batch.none()
         direct = direct[good]
         rows, speed = self._rows(readings, offsets[:, good], direct)
-        judged, stations = self._by_level(rows, np.abs(speed) > _RUNNING, direct)
+        creeping, hurried = self._apart(readings.time, readings.depth)
+        judged, stations = self._by_level(rows, (np.abs(speed) > _RUNNING) | creeping, direct, hurried)
         fill_limits(rows, self._assumptions.limits)
         self._last = rows[:, -1].copy()
         return Batch(rows=Rows(rows), judged=judged, stations=tuple(stations))
+
+    def _apart(self, time: Array, depth: Array) -> tuple[Flags, Flags]:
+        """Tell what readings far apart show: which creep on by less than a level, which came at once from another."""
+        gap, way = steps_from(self._before[0], time), np.abs(steps_from(self._before[1], depth))
+        self._before = float(time[-1]), float(depth[-1])
+        apart, same = gap > _APART, way <= _SAME_LEVEL
+        return apart & same & (way > _RUNNING * gap), apart & ~same & (gap <= LONGEST_GAP)
 
     def _offsets(self, readings: Readings) -> tuple[Array, Flags]:
         """Return offsets, shape (2, n) [m], read directly or from the line's angle; and which were direct."""
@@ -181,7 +201,9 @@ class Hung(Plain):
         instrument = self._assumptions.instrument
         return np.where(direct, instrument.u_offset, np.hypot(instrument.u_tilt, instrument.u_zero) * depth)
 
-    def _by_level(self, rows: Array, running: Flags, direct: Flags) -> tuple[Array, list[Station]]:
+    def _by_level(
+        self, rows: Array, running: Flags, direct: Flags, hurried: Flags
+    ) -> tuple[Array, list[Station]]:
         """Send each reading to its level; return the residual to judge at each row, and the stations closed."""
         judged = np.full((2, rows.shape[1]), np.nan)
         stations: list[Station] = []
@@ -197,13 +219,22 @@ class Hung(Plain):
                 judged[:, part] = rows[5:7, part] - rows[7:9, part]
             else:
                 if self._level is None or abs(depth[0] - self._level.depth) > _SAME_LEVEL:
+                    if self._level is not None and self._level.hurried and hurried[start]:
+                        self._forget_passing(self._level)
                     stations += self._leave()
                     self._level = self._new_level(rows[:, start])
+                    self._level.hurried = bool(hurried[start])
                 stay = _run_length(~running[start:] & (np.abs(depth - self._level.depth) <= _SAME_LEVEL))
                 part = slice(start, start + stay)
                 self._dwell(self._level, rows[:, part], direct[part], judged[:, part])
             start += stay
         return judged, stations
+
+    def _forget_passing(self, level: _Level) -> None:
+        """Make no station of one reading between two moves: the line may never have stopped."""
+        if level.count == 1:
+            self.unused[_PASSING] += 1
+            self._level = None
 
     def _new_level(self, row: Array) -> _Level:
         depth, time = float(row[ROW["depth"]]), float(row[ROW["time"]])
@@ -301,7 +332,7 @@ class Hung(Plain):
             name = READINGS if quiet else "swing not resolved"
             if not level.swing_seen:
                 # A few readings near a turning point look like rest; nothing is known of the rest point yet.
-                u, name = np.full(2, np.nan), "swing not seen yet"
+                u, name = np.full(2, np.nan), _UNSEEN
         names, parts = self._systematic(level, position)
         budget = self._curve.budget if level.direct else self._line_angles().budget
         return (
@@ -321,6 +352,8 @@ class Hung(Plain):
 
     def _station(self, level: _Level) -> Station:
         position, names, parts = self._position(level)
+        if _UNSEEN in names:
+            self._unseen.append(level.depth)
         facts = StationFacts(
             numbers=[self._closed],
             depth=np.array([level.depth]),
@@ -396,7 +429,15 @@ class Hung(Plain):
     def notes(self) -> tuple[str, ...]:
         """Say what the swing says of itself, and where the model ends."""
         rest = self.rest_point()
-        return (*self._curve.warnings, rest.message) if rest and rest.message else self._curve.warnings
+        told = [rest.message] if rest and rest.message else []
+        if self._unseen:
+            shown = ", ".join(f"{depth:g}" for depth in self._unseen[:8])
+            more = f" and {len(self._unseen) - 8} more" if len(self._unseen) > 8 else ""
+            told.append(
+                f"no single swing was seen at {shown}{more} m, so that rest is not known there: stay for longer than "
+                f"one, or read by eye {_BY_HAND:g} s apart"
+            )
+        return (*self._curve.warnings, *told)
 
 
 def _whole(pairs: Array) -> Flags:

@@ -74,6 +74,44 @@ def test_hand_readings_of_a_still_bob_make_a_station_a_level(shaft):
     assert stations[2].measured_east == pytest.approx(3e-3, rel=1e-12)
 
 
+def _by_eye(*levels: tuple[float, float, int]) -> Readings:
+    """Return readings by eye: for each level when the first is read, its depth, and how many follow 4 s apart."""
+    rows = [(start + 4.0 * n, depth) for start, depth, count in levels for n in range(count)]
+    time, depth = np.array(rows).T
+    return Readings.of(time=time, depth=depth, east=1e-4 * depth, north=0.0)
+
+
+@pytest.mark.invariant
+@pytest.mark.parametrize("block", [1, 2, 100])
+def test_levels_read_by_eye_in_quick_turn_are_all_stations(shaft, block):
+    """Three readings a level, ten seconds from level to level: no line was running while a person read the scale."""
+    readings = _by_eye((0.0, 10.0, 3), (18.0, 20.0, 3), (36.0, 30.0, 3), (53.0, 40.0, 2))
+    survey = Survey(shaft("hung", depth=90.0))
+    for start in range(0, len(readings), block):
+        survey.feed(readings[start : start + block])
+    survey.close(nan)
+    stations = survey.result().stations
+    assert [(one.depth, one.readings) for one in stations] == [(10.0, 3), (20.0, 3), (30.0, 3), (40.0, 2)]
+    assert [one.measured_east for one in stations] == pytest.approx([1e-3, 2e-3, 3e-3, 4e-3], abs=1e-12)
+    # A swing of 40 m of line takes 6.3 s to one side; the two readings there are 4 s apart.
+    assert [one.verdict for one in stations] == ["within", "within", "within", "undecided"]
+    assert any(note.startswith("no single swing was seen at 40 m") for note in survey.standing().notes)
+
+
+@pytest.mark.invariant
+def test_readings_far_apart_of_a_line_that_runs_on_are_no_stations(shaft):
+    """A line lowered at 1 m/s or 0.04 m/s and read every five seconds: but for its ends no level is closed."""
+    for speed in (1.0, 0.04):
+        time = 5.0 * np.arange(12)
+        survey = Survey(shaft("hung", depth=90.0))
+        survey.feed(Readings.of(time=time, depth=10.0 + speed * time, east=1e-3, north=0.0))
+        survey.close(nan)
+        stations = survey.result().stations
+        assert {one.depth for one in stations} <= {10.0, 10.0 + speed * time[-1]}
+        assert all(one.readings == 1 for one in stations)
+        assert survey.unused["read once in passing"] == (10 if speed == 1.0 else 0)
+
+
 def test_a_line_angle_times_its_length_is_the_offset(shaft):
     """1 mrad toward A at azimuth 90° on 50 m of line: 50 mm east."""
     instrument = Instrument(a_azimuth=radians(90.0))
