@@ -20,7 +20,7 @@ from eastfall.physics.field import LocalField, local_field
 from eastfall.physics.hung import hang
 from eastfall.physics.moving import lean
 from eastfall.physics.settings import Assumptions, Body
-from eastfall.physics.spread import wall_contact
+from eastfall.physics.wall import wall_contact
 
 Pair = NDArray[np.float64]
 """East in row 0, north in row 1, shape (2, n) [m]."""

@@ -1,10 +1,10 @@
-"""How release errors spread the landing, where a falling body meets the wall, and from where it would keep clear.
+"""How release errors spread the landing of a falling body.
 
-One fall and ensembles of falls come from `fall`; the uncertainty of the expected curve is reckoned elsewhere.
+One fall and ensembles of falls come from `fall`; the uncertainty of the expected curve is reckoned elsewhere, and what
+the wall does is `wall`.
 """
 
 from dataclasses import dataclass
-from itertools import combinations
 
 import numpy as np
 import numpy.typing as npt
@@ -14,15 +14,12 @@ from eastfall.physics.budget import covariance
 from eastfall.physics.earth import Array
 from eastfall.physics.ensemble import COARSE
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.fall import Release, Trajectory, Variation, fall_ensemble
+from eastfall.physics.fall import Release, Variation, fall_ensemble
 from eastfall.physics.field import LocalField
-from eastfall.physics.settings import Body, Shaft
+from eastfall.physics.settings import Body
 
 SAMPLING = 1e-7
 """To which Monte Carlo members are iterated [m]; far below the sampling error of any number of them."""
-
-_GRID = 1025
-_ROUNDING = 1e-12
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -74,26 +71,6 @@ class Landings:
         )
         covariance = np.einsum("imd,jmd->dij", apart, apart) / (len(self.east) - 1)
         return LandingSpread(depth=self.depth, covariance=covariance)
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class BestRelease:
-    """The release that keeps a falling body farthest from the wall.
-
-    Parameters
-    ----------
-    east, north : float
-        Of the release, from the reference point [m].
-    clearance : float
-        Least gap between body and wall on the way [m]; negative if no release keeps clear.
-    depth : float
-        Where the gap is least [m]; the shallowest such place.
-    """
-
-    east: float
-    north: float
-    clearance: float
-    depth: float
 
 
 def landing_spread(
@@ -223,145 +200,3 @@ def monte_carlo(
         rule=COARSE,
     )
     return Landings(depth=falls.depth, east=falls.east, north=falls.north)
-
-
-def _check_round(shaft: Shaft, body_diameter: float) -> float:
-    """Radius in which the centre of the body may be [m]."""
-    if not body_diameter >= 0.0:
-        raise ParameterError("body_diameter", body_diameter, "m", "0 m or more")
-    if shaft.diameter is None:
-        raise ParameterError("diameter", None, "m", "the diameter of the shaft")
-    return 0.5 * (shaft.diameter - body_diameter)
-
-
-def wall_contact(trajectory: Trajectory, shaft: Shaft, body_diameter: float = 0.0) -> float | None:
-    """Depth where a falling body first touches the wall of a round, straight, plumb shaft.
-
-    Parameters
-    ----------
-    trajectory : Trajectory
-    shaft : settings.Shaft
-        Its diameter, and its centre from the reference point.
-    body_diameter : float
-        [m]; 0 is a point.
-
-    Returns
-    -------
-    float or None
-        Depth [m] at which the body's surface meets the wall; the release depth if it does so from the start; None
-        if it stays clear to the shaft's depth or the trajectory's, or the shaft's diameter is not known.
-
-    Raises
-    ------
-    ParameterError
-        If the body's diameter is negative.
-    """
-    if shaft.diameter is None:
-        return None
-    room = _check_round(shaft, body_diameter)
-
-    def gap(depth: Array) -> Array:
-        there = trajectory.at(depth)
-        return room - np.hypot(there.east - shaft.centre_east, there.north - shaft.centre_north)
-
-    top, bottom = float(trajectory.depth[0]), min(trajectory.max_depth, shaft.depth)
-    depth = top + (bottom - top) * np.linspace(0.0, 1.0, _GRID) ** 2
-    while True:
-        touching = np.flatnonzero(gap(depth) <= 0.0)
-        if touching.size == 0:
-            return None
-        first = int(touching[0])
-        if first == 0 or depth[first] - depth[first - 1] < 1e-9 * max(bottom, 1.0):
-            return float(depth[first])
-        depth = np.linspace(depth[first - 1], depth[first], 65)
-
-
-def best_release(trajectory: Trajectory, shaft: Shaft, body_diameter: float = 0.0) -> BestRelease:
-    """Release point from which a body keeps farthest from the wall of a round, straight, plumb shaft.
-
-    Parameters
-    ----------
-    trajectory : Trajectory
-        From any release; its path is shifted as a whole. Verticals converge, so that a path shifted by one metre is
-        off by the convergence, less than 0.2 mm after 1 km.
-    shaft : settings.Shaft
-        Its diameter must be known.
-    body_diameter : float
-        [m]; 0 is a point.
-
-    Returns
-    -------
-    BestRelease
-
-    Raises
-    ------
-    ParameterError
-        If the shaft's diameter is not known, or the body's is negative.
-
-    Notes
-    -----
-    The centre of the smallest circle that holds the whole path, seen from above, is laid on the shaft's centre.
-    """
-    room = _check_round(shaft, body_diameter)
-    top, bottom = float(trajectory.depth[0]), min(trajectory.max_depth, shaft.depth)
-    depth = top + (bottom - top) * np.linspace(0.0, 1.0, _GRID) ** 2
-    there = trajectory.at(depth)
-    path = np.stack([there.east - there.east[0], there.north - there.north[0]], axis=1)
-    centre, radius = smallest_circle(path)
-    distance = np.hypot(*(path - centre).T)
-    return BestRelease(
-        east=shaft.centre_east - float(centre[0]),
-        north=shaft.centre_north - float(centre[1]),
-        clearance=room - radius,
-        depth=float(depth[int(np.argmax(distance >= radius - 1e-9))]),
-    )
-
-
-def smallest_circle(points: Array) -> tuple[Array, float]:
-    """Smallest circle that holds all points of a plane.
-
-    Parameters
-    ----------
-    points : array, shape (n, 2)
-        At least one.
-
-    Returns
-    -------
-    tuple
-        Centre, shape (2,), and radius, in the unit of the points.
-
-    Notes
-    -----
-    The circle rests on two or three of the points. Starting from two, the farthest point outside joins and the
-    smallest circle around the four or fewer is sought among all pairs and triples; the radius grows every time.
-    """
-    far = int(np.argmax(np.hypot(*(points - points[0]).T)))
-    held = points[[0, far]]
-    centre, radius = _around(held)
-    while True:
-        distance = np.hypot(*(points - centre).T)
-        out = int(np.argmax(distance))
-        if distance[out] <= radius * (1.0 + _ROUNDING) + _ROUNDING:
-            return centre, float(distance[out])
-        held = np.vstack([held, points[out]])
-        few = (held[list(chosen)] for size in (2, 3) for chosen in combinations(range(len(held)), size))
-        circles = [(*_around(some), some) for some in few]
-        holding = [
-            one for one in circles if np.all(np.hypot(*(held - one[0]).T) <= one[1] * (1.0 + 1e-10) + 1e-15)
-        ]
-        centre, radius, held = min(holding, key=lambda one: one[1])
-
-
-def _around(points: Array) -> tuple[Array, float]:
-    """Circle with two points as diameter, or through three; three in a line give one that holds nothing."""
-    first, *others = points
-    if len(others) == 1:
-        centre = 0.5 * (first + others[0])
-        return centre, float(np.hypot(*(first - centre)))
-    b, c = others[0] - first, others[1] - first
-    twice_area = 2.0 * (b[0] * c[1] - b[1] * c[0])
-    if twice_area == 0.0:
-        return first, 0.0
-    b2, c2 = float(b @ b), float(c @ c)
-    offset = np.array([c[1] * b2 - b[1] * c2, b[0] * c2 - c[0] * b2]) / twice_area
-    return first + offset, float(np.hypot(*offset))

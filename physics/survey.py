@@ -18,7 +18,16 @@ from eastfall.physics.expected import ExpectedCurve, expected_curve
 from eastfall.physics.feedwatch import FeedWatch
 from eastfall.physics.findings import AlarmChange, AlarmView, Findings, Result, Rows, Standing, Station
 from eastfall.physics.guards import Guards, Sighting
-from eastfall.physics.kinds.base import ROW, Batch, Judged, KindTracker, from_wall, inside_shaft
+from eastfall.physics.kinds.base import (
+    EXPECTED,
+    MEASURED,
+    ROW,
+    Batch,
+    Judged,
+    KindTracker,
+    body_width,
+    inside_shaft,
+)
 from eastfall.physics.kinds.drop import Drop
 from eastfall.physics.kinds.guided import Guided
 from eastfall.physics.kinds.hung import Hung
@@ -26,6 +35,7 @@ from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import CHANNELS, Readings
 from eastfall.physics.settings import Assumptions
 from eastfall.physics.verdict import horizontal, verdict
+from eastfall.physics.wall import gap, place
 
 __all__ = ["ACTION", "BAD_LINES", "JUMP", "SILENT", "WALL", "WARNING", "Survey", "closure"]
 
@@ -189,19 +199,12 @@ class Survey:
 
     def _clearance(self, batch: Batch) -> Array:
         """Return the distance from the shaft wall at each row [m]; NaN without a diameter."""
-        shaft = self.assumptions.shaft
-        if shaft.diameter is None:
-            return np.full(len(batch.rows), np.nan)
-        rows = batch.rows
-        east, north = rows.column("measured_east"), rows.column("measured_north")
-        if self.assumptions.run.kind == "guided":
-            # What the sum shows holds the lean of the moving line; where the guide is, is the residual.
-            east, north = batch.judged
-        return self._from_wall(east, north)
+        return self._from_wall(batch.rows.data[MEASURED], batch.rows.data[EXPECTED])
 
-    def _from_wall(self, east: Array, north: Array) -> Array:
-        shaft = self.assumptions.shaft
-        return from_wall(self.assumptions, np.hypot(east - shaft.centre_east, north - shaft.centre_north))
+    def _from_wall(self, measured: Array, expected: Array) -> Array:
+        given = self.assumptions
+        east, north = place(given.run.kind, measured, expected)
+        return gap(given.shaft, east, north, body_width(given))
 
     def _keep(self, stations: tuple[Station, ...], changes: list[AlarmChange]) -> Findings:
         for one in stations:
@@ -343,12 +346,8 @@ class Survey:
         )
 
     def _wall_now(self, now: Judged) -> float | None:
-        if self.assumptions.shaft.diameter is None:
-            return None
-        east, north = now.measured_east, now.measured_north
-        if self.assumptions.run.kind == "guided":
-            east, north = east - now.expected_east, north - now.expected_north
-        found = float(self._from_wall(np.array(east), np.array(north)))
+        measured, expected = (now.measured_east, now.measured_north), (now.expected_east, now.expected_north)
+        found = float(self._from_wall(np.array(measured), np.array(expected)))
         return found if isfinite(found) else None
 
     def _all_notes(self) -> tuple[str, ...]:

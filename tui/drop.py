@@ -8,7 +8,8 @@ from eastfall.physics.errors import ParameterError
 from eastfall.physics.expected import Models, graded
 from eastfall.physics.fall import Trajectory
 from eastfall.physics.settings import Assumptions, Body
-from eastfall.physics.spread import BestRelease, best_release, landing_spread, monte_carlo, wall_contact
+from eastfall.physics.spread import landing_spread, monte_carlo
+from eastfall.physics.wall import BestRelease, best_release, gap, wall_contact
 from eastfall.tui import words
 from eastfall.tui.raster import Floats
 from eastfall.tui.units import METRIC, Units
@@ -123,12 +124,9 @@ def plan(assumptions: Assumptions, level: float) -> Plan:
 
 def _gaps(assumptions: Assumptions, body: Body, east: Floats, north: Floats) -> Floats | None:
     """Return the gaps between body and wall where its centre is at offsets [m]; None without a diameter."""
-    shaft = assumptions.shaft
-    if shaft.diameter is None:
+    if assumptions.shaft.diameter is None:
         return None
-    room = (shaft.diameter - body.diameter) / 2.0
-    gaps: Floats = room - np.hypot(east - shaft.centre_east, north - shaft.centre_north)
-    return gaps
+    return gap(assumptions.shaft, east, north, body.diameter)
 
 
 def _contact(path: Trajectory, assumptions: Assumptions, body: Body) -> float | None:

@@ -15,6 +15,7 @@ from eastfall.physics.limits import limits_at
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions, Limits
 from eastfall.physics.verdict import horizontal, verdicts
+from eastfall.physics.wall import gap, place
 
 Array = NDArray[np.float64]
 ROW = {name: number for number, name in enumerate(ROW_FIELDS)}
@@ -245,19 +246,17 @@ def _clearances(facts: StationFacts, u: Array, assumptions: Assumptions) -> list
     shaft = assumptions.shaft
     if shaft.diameter is None:
         return [_NOTHING] * len(facts.numbers)
-    at = facts.measured - facts.expected if assumptions.run.kind == "guided" else facts.measured
-    east, north = at[0] - shaft.centre_east, at[1] - shaft.centre_north
-    away, u_away = horizontal(east, north, *u)
-    clear, bound = from_wall(assumptions, away), assumptions.limits.wall_clearance
-    words = [None] * away.size if bound is None else verdicts(-clear, u_away, -bound)
+    east, north = place(assumptions.run.kind, facts.measured, facts.expected)
+    clear, bound = gap(shaft, east, north, body_width(assumptions)), assumptions.limits.wall_clearance
+    _, u_away = horizontal(east - shaft.centre_east, north - shaft.centre_north, *u)
+    words = [None] * clear.size if bound is None else verdicts(-clear, u_away, -bound)
     return list(zip(clear.tolist(), u_away.tolist(), words, strict=True))
 
 
-def from_wall(assumptions: Assumptions, away: Array) -> Array:
-    """Return the clearance [m] of what is `away` from the shaft's centre [m]; NaN without a diameter."""
-    shaft, body = assumptions.shaft, assumptions.body
-    size = body.diameter / 2.0 if body and assumptions.run.kind == "drop" else 0.0
-    return (np.nan if shaft.diameter is None else shaft.diameter) / 2.0 - size - away
+def body_width(assumptions: Assumptions) -> float:
+    """Return the diameter of the body that falls [m]; a probe and a bob are taken as points."""
+    body = assumptions.body
+    return body.diameter if body and assumptions.run.kind == "drop" else 0.0
 
 
 RANDOM = "tilt, random"
