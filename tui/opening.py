@@ -13,7 +13,7 @@ from eastfall.tui.app import Dashboard, settings_of, watch_app
 from eastfall.tui.feed import Feed, LiveFeed
 from eastfall.tui.preferences import Remembered
 from eastfall.tui.replayfeed import ReplayFeed
-from eastfall.tui.screens.start import Choice, Ports, StartScreen
+from eastfall.tui.screens.start import Choice, StartScreen
 from eastfall.tui.screens.watch import WatchScreen
 from eastfall.tui.session import Session, curves_of, replay_session
 from eastfall.tui.terminal import glyphs_for, refuse_unless_screen, wants_no_colour
@@ -23,7 +23,6 @@ if TYPE_CHECKING:
     from eastfall.io.replay import Replay
     from eastfall.io.run import Run
     from eastfall.io.sitefile import SiteFile
-    from eastfall.physics.expected import ExpectedCurve
 
 
 def terminal_look() -> dict[str, object]:
@@ -43,14 +42,7 @@ def terminal_look() -> dict[str, object]:
     }
 
 
-def run_live(
-    site: "SiteFile",
-    *,
-    run: "Run",
-    curve: "ExpectedCurve | None" = None,
-    theme: str | None = None,
-    seconds: float | None = None,
-) -> int:
+def run_live(site: "SiteFile", *, run: "Run", seconds: float | None = None) -> int:
     """Show a live run until the user leaves.
 
     Parameters
@@ -59,10 +51,6 @@ def run_live(
         What the run rests on.
     run : Run
         Not yet started; it is started, stepped and stopped here.
-    curve : ExpectedCurve, optional
-        For where a bob would hang and a dropped body would be.
-    theme : str, optional
-        Name of a theme.
     seconds : float, optional
         Leave by itself after so long.
 
@@ -76,8 +64,8 @@ def run_live(
     InputError
         When this terminal has no screen; or what stopped the run before its first reading.
     """
-    look = terminal_look() | ({"theme": theme} if theme else {})
-    bob, fall = curves_of(curve or run.pipeline.survey.curve)
+    look = terminal_look()
+    bob, fall = curves_of(run.pipeline.survey.curve)
     session = Session(
         assumptions=site.assumptions, mode="live", title=safe(site.assumptions.site.name), bob=bob, fall=fall
     )
@@ -88,9 +76,7 @@ def run_live(
     return shown_over(app, LiveFeed(run, app.take))
 
 
-def run_replay(
-    replay: "Replay", *, speed: float = 1.0, curve: "ExpectedCurve | None" = None, theme: str | None = None
-) -> int:
+def run_replay(replay: "Replay", *, speed: float = 1.0) -> int:
     """Show a record until the user leaves.
 
     Parameters
@@ -99,10 +85,6 @@ def run_replay(
         At its beginning.
     speed : float
         Record seconds per second.
-    curve : ExpectedCurve, optional
-        For where a bob would hang and a dropped body would be.
-    theme : str, optional
-        Name of a theme.
 
     Returns
     -------
@@ -114,8 +96,8 @@ def run_replay(
     InputError
         When this terminal has no screen, or the record cannot be read.
     """
-    look = terminal_look() | ({"theme": theme} if theme else {})
-    session = replay_session(replay, curve)
+    look = terminal_look()
+    session = replay_session(replay)
     app = watch_app(session, **look)
     return shown_over(app, ReplayFeed(replay, app.take, speed=speed, now=since_start(replay)))
 
@@ -146,15 +128,13 @@ def shown_over(app: Dashboard, feed: Feed) -> int:
     return status if status is not None else app.return_code or 0
 
 
-def run_explorer(site: "SiteFile", *, theme: str | None = None) -> int:
+def run_explorer(site: "SiteFile") -> int:
     """Show the prediction explorer of a site until the user leaves.
 
     Parameters
     ----------
     site : SiteFile
         What the inputs begin with.
-    theme : str, optional
-        Name of a theme.
 
     Returns
     -------
@@ -168,33 +148,15 @@ def run_explorer(site: "SiteFile", *, theme: str | None = None) -> int:
     """
     from eastfall.tui.screens.explorer import ExplorerScreen  # noqa: PLC0415 (the models only where asked for)
 
-    look = terminal_look() | ({"theme": theme} if theme else {})
+    look = terminal_look()
     units = UNITS[settings_of(look).now.units]
     screen = ExplorerScreen(site.assumptions, name=safe(site.assumptions.site.name), units=units)
     app = Dashboard(screen, **look)  # type: ignore[arg-type]  # as in watch_app
     return app.run() or app.return_code or 0
 
 
-def run_start(
-    act: Callable[[Choice], int] | None = None,
-    *,
-    folder: Path | None = None,
-    ports: Ports | None = None,
-    theme: str | None = None,
-) -> int:
-    """Show the start screen, do what is chosen, and come back to it until the user leaves.
-
-    Parameters
-    ----------
-    act : callable, optional
-        Does what was chosen (demo, watch, replay) with the terminal free for it, and returns an exit status; the verb
-        of that name by default.
-    folder : Path, optional
-        Where sites and runs are looked for; the current folder.
-    ports : callable, optional
-        Names the serial ports of this machine, one line each; as pyserial lists them by default.
-    theme : str, optional
-        Name of a theme.
+def run_start() -> int:
+    """Show the start screen, do what is chosen with the terminal free for it, and come back until the user leaves.
 
     Returns
     -------
@@ -204,18 +166,18 @@ def run_start(
     Raises
     ------
     InputError
-        When this terminal has no screen; or what `act` raises.
+        When this terminal has no screen; or what the verb that was chosen raises.
     """
-    status, act = 0, act or by_verb
+    status = 0
     while True:
         # Read anew each time round: what was done in between may have changed the settings.
-        look = terminal_look() | ({"theme": theme} if theme else {})
+        look = terminal_look()
         used = [Path(one) for one in settings_of(look).now.recent_sites]
         kept = settings_of(look).now.runs_folder
         screen = StartScreen(
-            folder or Path.cwd(),
+            Path.cwd(),
             log_suffix=SUFFIX,
-            ports=ports or port_names,
+            ports=port_names,
             used=used,
             shelves=[Path(kept).expanduser()] if kept else [],
         )
@@ -223,7 +185,7 @@ def run_start(
         app.run()
         if app.choice is None:
             return status
-        status = act(app.choice)
+        status = by_verb(app.choice)
 
 
 def by_verb(choice: Choice) -> int:

@@ -60,13 +60,11 @@ def _pair(curve: "ExpectedCurve", table: Floats, depth: Floats) -> tuple[Floats,
     return east, north
 
 
-def replay_session(
-    replay: "Replay", curve: "ExpectedCurve | None" = None, *, units: Units = METRIC
-) -> Session:
+def replay_session(replay: "Replay", *, units: Units = METRIC) -> Session:
     """Return what is known of a recorded run before its first reading."""
     from eastfall.tui.whatif import told  # noqa: PLC0415 (the reducing of records only where there is one)
 
-    bob, fall = curves_of(curve or replay.pipeline.survey.curve)
+    bob, fall = curves_of(replay.pipeline.survey.curve)
     return Session(
         assumptions=replay.site.assumptions,
         mode="replay",

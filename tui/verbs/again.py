@@ -30,7 +30,7 @@ def replay(log: Path, site: Path | None, speed: float, follow: bool, plain: bool
         return
     from eastfall.tui.opening import run_replay  # noqa: PLC0415
 
-    click.get_current_context().exit(run_replay(found, speed=speed, curve=found.pipeline.survey.curve))
+    click.get_current_context().exit(run_replay(found, speed=speed))
 
 
 def _plainly(found: "Replay") -> None:

@@ -114,7 +114,7 @@ def watch_live(site: "SiteFile", links: tuple[str, ...], folder: Path, seconds: 
     _leave_keys_to_screen(links or tuple(one.url for one in site.links))
     # The links are opened before the screen: one that cannot be had is told in one line, here and now.
     with _recorded(site, links, folder, None) as run, run:
-        status = run_live(site, run=run, curve=run.pipeline.survey.curve, seconds=seconds)
+        status = run_live(site, run=run, seconds=seconds)
     out = PatientLines(sys.stdout)
     out.path(run.log_path)
     out.end()
