@@ -53,16 +53,17 @@ def steer(one: "Standing | None", kind: "Kind", units: Units = METRIC) -> Steer:
     )
     if length <= max(words.expanded(one), words.UNSEEN):
         return told
+    bearing = words.bearing(-one.residual_east, -one.residual_north)
     angle = atan2(-one.residual_east, -one.residual_north) % (2.0 * pi)
     place = round(degrees(angle) / 45.0) % 8
     return Steer(
         angle=angle,
         wind=WINDS[place],
-        bearing=words.bearing(-one.residual_east, -one.residual_north),
+        bearing=bearing,
         distance=told.distance,
         unit=told.unit,
         verdict=told.verdict,
-        line=f"{line.removesuffix('.')}: {IN_WORDS[place]}.",
+        line=line.replace(bearing, f"{bearing} ({IN_WORDS[place]})", 1),
         beat=told.beat,
     )
 

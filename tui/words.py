@@ -109,11 +109,15 @@ def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
         return "Nothing to steer by: the readings give no offset."
     if kind == "drop" or not isfinite(expanded(one)):
         return _NO_MOVE[kind]
-    return _move(one, length, units)
+    return _move(one, length, units, of_line=kind == "hung")
 
 
-def _move(one: Judged, length: float, units: Units) -> str:
-    """Return which way and how far to bring a residual to nothing."""
+def _move(one: Judged, length: float, units: Units, *, of_line: bool) -> str:
+    """Return which way and how far to bring a residual to nothing.
+
+    A guide that stands out is moved back. A bob reads the same whether its line hangs off to one side or the mark under
+    it stands off to the other, so it is said which of the two goes which way.
+    """
     if length <= expanded(one) and one.verdict != "within":
         return (
             f"Do not move it yet: {units.offset(length)} {units.short} is less than its uncertainty, "
@@ -128,7 +132,11 @@ def _move(one: Judged, length: float, units: Units) -> str:
         return "Leave it: it is off by less than this screen shows."
     back = bearing(-one.residual_east, -one.residual_north)
     places = 0 if length >= 0.002 else 1
-    return f"Move {units.offset(length, places)} {units.short} toward {back} to meet the expected line."
+    far = f"{units.offset(length, places)} {units.short}"
+    if of_line:
+        way = bearing(one.residual_east, one.residual_north)
+        return f"Move the top of the line {far} toward {back}, or the mark here toward {way}."
+    return f"Move {far} toward {back} to meet the expected line."
 
 
 def pair(east: float, north: float, places: int = 1, units: Units = METRIC) -> str:

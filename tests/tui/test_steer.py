@@ -35,7 +35,12 @@ def test_the_way_to_move_is_against_the_residual(standing: Make, place: int) -> 
     told = steer(off(standing, 0.02 * np.sin(turn), 0.02 * np.cos(turn)), "guided")
     back = (place + 4) % 8
     assert (told.wind, told.bearing) == (WINDS[back], f"{45 * back:03d}°")
-    assert told.line.endswith(f": {IN_WORDS[back]}.")
+    assert f"toward {45 * back:03d}° ({IN_WORDS[back]}) to meet" in told.line
+    # A hung line: the arrow and its wind are the way of the top; the mark goes the other way.
+    hung = steer(off(standing, 0.02 * np.sin(turn), 0.02 * np.cos(turn)), "hung")
+    assert f"the top of the line 20 mm toward {45 * back:03d}° ({IN_WORDS[back]}), or" in hung.line
+    assert hung.line.endswith(f"the mark here toward {45 * place:03d}°.")
+    assert hung.angle == told.angle
     assert told.distance == "20.0"
     assert told.angle is not None
     assert np.cos(told.angle - turn) == pytest.approx(-1.0, abs=1e-12)
@@ -107,7 +112,7 @@ async def test_it_fills_the_screen_and_says_the_same_in_words(
     text = "\n".join(found)
     assert "WITHIN 60.0 m" in text
     assert "toward 265" in text
-    assert " west." in text
+    assert "(west)" in text
     solid = "#" if glyphs == "ascii" else "█"
     assert sum(solid in row for row in found) >= 5 or width == 40
     assert glyphs != "ascii" or text.isascii()

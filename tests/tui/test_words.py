@@ -52,6 +52,13 @@ def test_steering_points_back_along_the_residual(standing: Make) -> None:
     assert words.steering(standing(), "guided") == "Move 9 mm toward 265° to meet the expected line."
 
 
+def test_steering_by_a_bob_says_what_goes_which_way(standing: Make) -> None:
+    """A bob that reads 085° of its mark: the line's top goes back, or the mark goes after the bob."""
+    said = words.steering(standing(), "hung")
+    assert said == "Move the top of the line 9 mm toward 265°, or the mark here toward 085°."
+    assert len(said) <= 80
+
+
 def test_steering_leaves_alone_what_the_instrument_cannot_tell(standing: Make) -> None:
     """A residual smaller than its expanded uncertainty is no reason to move."""
     said = words.steering(standing(measured_east=0.0018, measured_north=0.0), "guided")
