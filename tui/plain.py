@@ -35,6 +35,7 @@ class PlainLines:
         self._units = units
         self._every = every
         self._next = 0.0
+        self._refused, self._next_refusal = 0, 0.0
 
     def take(self, update: "RunUpdate") -> None:
         """Write what an update brought."""
@@ -43,6 +44,7 @@ class PlainLines:
                 self._write(self._station(station))
             for change in one.alarms:
                 self._write(self._alarm(change))
+        self._tell_refusal(update)
         if update.time >= self._next:
             self._next = update.time + self._every
             self._write(f"{words.clock(update.time)} {words.answer(update.standing, self._units)}")
@@ -53,6 +55,15 @@ class PlainLines:
         self._write(f"{words.clock(update.time)} {words.answer(update.standing, self._units)}")
         self._write(words.steering(update.standing, self._kind, self._units))
         self._write(f"{health.frames} readings used, {health.rejected} lines refused")
+
+    def _tell_refusal(self, update: "RunUpdate") -> None:
+        """Say what is wrong with the newest line that was refused: whoever types readings wants to know at once."""
+        health = update.health
+        if health.rejected <= self._refused or update.time < self._next_refusal:
+            return
+        self._refused, self._next_refusal = health.rejected, update.time + self._every
+        for fault in filter(None, (one.last_fault for one in health.links)):
+            self._write(f"refused {fault}")
 
     def _station(self, one: "Station") -> str:
         at = f"{self._units.depth(one.depth)} {self._units.long}"
