@@ -4,8 +4,8 @@ from typing import Any
 
 import numpy as np
 
-from eastfall.physics.expected import Models
 from eastfall.physics.hung import converge, free_period, radius_toward, stretch, swing_wait
+from eastfall.physics.models import Models
 from eastfall.physics.settings import Assumptions
 
 _MM = 1000.0
@@ -60,7 +60,10 @@ def line_table(
         if apart is None
         else (converge(apart, depth, radius_toward(field, toward)) * _MM).tolist(),
     }
-    rows = [dict(zip(columns, row, strict=True)) for row in zip(*columns.values(), strict=True)]
+    rows = [
+        {name: or_none(one) for name, one in zip(columns, row, strict=True)}
+        for row in zip(*columns.values(), strict=True)
+    ]
     return {"kind": assumptions.run.kind, "site": assumptions.site.name, "line": rows}
 
 

@@ -207,7 +207,7 @@ class HungScene:
         self._truth = truth
         self._probe = real_instrument(assumptions.instrument, truth)
         self._field = local_field(assumptions.site)
-        from eastfall.physics.expected import Models  # noqa: PLC0415 (a guided run needs nothing that hangs or falls)
+        from eastfall.physics.models import Models  # noqa: PLC0415 (a guided run needs nothing that hangs or falls)
 
         models, length = Models.of(assumptions), np.array([self.length])
         self.rest = models.bob(length) + np.array([[truth.rest_east], [truth.rest_north]])
@@ -281,7 +281,7 @@ class DropScene:
         self.duration = self.interval * truth.bodies * len(levels)
         self._site = assumptions
         self._truth = truth
-        from eastfall.physics.expected import Models  # noqa: PLC0415 (as above)
+        from eastfall.physics.models import Models  # noqa: PLC0415 (as above)
 
         models = Models.of(assumptions)
         there = models.body(float(self.levels.max())).at(self.levels)

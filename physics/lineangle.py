@@ -10,8 +10,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.budget import Budget, combined
-from eastfall.physics.expected import ExpectedCurve, Models, Pair, shifts
+from eastfall.physics.contributions import shifts
+from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.hung import hang
+from eastfall.physics.models import Models, Pair
 
 Array = NDArray[np.float64]
 

@@ -5,8 +5,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.expected import Models, graded
 from eastfall.physics.fall import Trajectory
+from eastfall.physics.models import Models, graded
 from eastfall.physics.settings import Assumptions, Body
 from eastfall.physics.spread import landing_spread, monte_carlo
 from eastfall.physics.wall import BestRelease, best_release, gap, wall_contact

@@ -9,7 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics.budget import COVERAGE_FACTOR, combined
-from eastfall.physics.expected import ExpectedCurve, Pair, expected_curve
+from eastfall.physics.expected import ExpectedCurve, expected_curve
+from eastfall.physics.models import Pair
 from eastfall.physics.settings import Assumptions
 from eastfall.tui import words
 from eastfall.tui.typed import example_depths, read_depth

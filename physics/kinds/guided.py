@@ -8,7 +8,7 @@ import numpy as np
 
 from eastfall.physics.calibration import corrected
 from eastfall.physics.depth import Jump
-from eastfall.physics.expected import ExpectedCurve, reach
+from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.faces import FaceBins
 from eastfall.physics.findings import FaceSums, Halt, RestPoint, Rows, Station
 from eastfall.physics.halts import HaltFinder, Rest
@@ -32,6 +32,7 @@ from eastfall.physics.kinds.plumbguide import PlumbGuide
 from eastfall.physics.kinds.shares import Shares, Summed
 from eastfall.physics.kinds.sidepull import SidePull
 from eastfall.physics.kinds.stillsum import StillSum
+from eastfall.physics.models import reach
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
 from eastfall.physics.tilt import OffsetSum, increments

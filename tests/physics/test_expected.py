@@ -7,7 +7,8 @@ import numpy as np
 import pytest
 
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.expected import Models, expected_curve, reach
+from eastfall.physics.expected import expected_curve
+from eastfall.physics.models import Models, reach
 from eastfall.physics.settings import Air, Body, Guide, Line, Run, Site
 
 OMEGA = 7.292115e-5  # GRS80, Moritz (1980)

@@ -8,7 +8,8 @@ from screen_harness import settled, text_of
 
 from eastfall.io.sitefile import parse_site
 from eastfall.physics.errors import ParameterError
-from eastfall.physics.expected import Models, expected_curve
+from eastfall.physics.expected import expected_curve
+from eastfall.physics.models import Models
 from eastfall.physics.settings import Shaft
 from eastfall.tui import drop
 from eastfall.tui.app import Dashboard
