@@ -60,10 +60,7 @@ def line_table(
         if apart is None
         else (converge(apart, depth, radius_toward(field, toward)) * _MM).tolist(),
     }
-    rows = [
-        {name: or_none(one) for name, one in zip(columns, row, strict=True)}
-        for row in zip(*columns.values(), strict=True)
-    ]
+    rows = [dict(zip(columns, row, strict=True)) for row in zip(*columns.values(), strict=True)]
     return {"kind": assumptions.run.kind, "site": assumptions.site.name, "line": rows}
 
 
