@@ -1,5 +1,6 @@
 """A plain-text capture read as arrivals: raw instrument lines, one a line, without times of arrival."""
 
+from codecs import BOM_UTF8
 from collections.abc import Iterator
 from pathlib import Path
 from typing import Self
@@ -48,11 +49,15 @@ class CaptureReader:
         self.last_time = 0.0
         self._interval = interval or 0.0
         self._splitter = Splitter()
+        self._at_start = True
 
     def more(self) -> list[Arrival] | None:
         """Return the next block of lines; None at the end of the file."""
         try:
             while chunk := self._file.read(_CHUNK):
+                if self._at_start:
+                    # What some editors put in front is no part of the first line.
+                    chunk, self._at_start = chunk.removeprefix(BOM_UTF8), False
                 if data := self._splitter.feed(chunk):
                     return [self._block(data)]
         except OSError as cause:
@@ -98,7 +103,7 @@ def _first_lines(path: Path, link: LinkSettings) -> list[tuple[int, str, Example
     """Return number, text made safe to show, and fault if any, of the first lines that are not empty."""
     splitter = Splitter()
     with path.open("rb") as file:
-        data = splitter.feed(file.read(_HEAD)) or splitter.cut_off() + b"\n"
+        data = splitter.feed(file.read(_HEAD).removeprefix(BOM_UTF8)) or splitter.cut_off() + b"\n"
     numbered = [(number, line) for number, line in enumerate(data.split(b"\n"), start=1) if line]
     shown: list[tuple[int, str, Example | None]] = []
     for number, line in numbered[:_SHOWN]:

@@ -262,3 +262,14 @@ def test_a_log_of_any_bytes_gives_a_result_or_the_programs_own_error(
     else:
         assert found.seal_state in {"intact", "cut short", "changed"}
         assert (found.seal_state == "intact") == (path.read_bytes() == small_log)
+
+
+def test_a_mark_in_front_of_a_capture_costs_no_reading(tmp_path: Path) -> None:
+    """An editor's byte order mark is no part of the first line: with and without it the same stations come out."""
+    plain, marked = tmp_path / "plain.txt", tmp_path / "marked.txt"
+    text = b"".join(one.rstrip(b"\n") + b"\r\n" for one in _lines(200))
+    plain.write_bytes(text)
+    marked.write_bytes(b"\xef\xbb\xbf" + text)
+    found = [reduce_file(path, site=site(), interval=0.25) for path in (plain, marked)]
+    assert [one.frames for one in found] == [200, 200]
+    assert found[0].result.stations == found[1].result.stations
