@@ -109,6 +109,8 @@ def reduce_folder(
         raise InputError(f"{folder}: no run log in it; expected files that end in .eastfall.jsonl")
     found = []
     work = partial(summary, site=site)
+    if progress is not None:
+        progress(0, len(files))
     for one in spread(work, files, lost=unusable, workers=workers, scheduler=scheduler):
         found.append(one)
         if progress is not None:

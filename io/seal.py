@@ -9,6 +9,7 @@ differs from the printed one is not the log that was reported.
 """
 
 import hashlib
+import stat
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from pathlib import Path
@@ -256,9 +257,12 @@ def opened(path: Path) -> BinaryIO:
     Raises
     ------
     LogError
-        It cannot be opened.
+        It cannot be opened, or is no file but a pipe or a device, of which a reader could wait for ever.
     """
     try:
+        mode = path.stat().st_mode
+        if not (stat.S_ISREG(mode) or stat.S_ISDIR(mode)):
+            raise LogError(f"{path}: cannot be read: a pipe or a device; expected a run log")
         return path.open("rb")
     except OSError as cause:
         raise LogError(f"{path}: cannot be read: {cause.strerror}; expected a run log") from cause

@@ -153,6 +153,8 @@ def list_runs(
     files = log_files(folder.absolute() if scheduler else folder)  # workers stand in a folder of their own
     found = []
     work = partial(card, judged=judged)
+    if progress is not None:
+        progress(0, len(files))
     for one in spread(work, files, lost=_lost, workers=workers, scheduler=scheduler):
         found.append(one)
         if progress is not None:

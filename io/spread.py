@@ -16,7 +16,6 @@ Made = TypeVar("Made")
 
 WORTH_A_POOL = 64
 """Files from which on other processes are worth their start."""
-_BATCH = 8
 _PATIENCE = 10.0
 """Longest wait for a scheduler to answer [s]."""
 
@@ -38,7 +37,8 @@ def spread(
         be pickled.
     files : sequence of Path
     lost : callable
-        Gives the result of a file whose worker was lost again and again, from the file and what happened.
+        Gives the result of a file over which something unforeseen happened, or whose worker was lost, from the file and
+        what happened; the others are done all the same.
     workers : int, optional
         Processes of this machine; by default as many as there are cores if there are many files. 1 stays in this one.
     scheduler : str, optional
@@ -62,16 +62,20 @@ def spread(
         return
     count = workers or ((os.cpu_count() or 1) if len(files) >= WORTH_A_POOL else 1)
     if count == 1:
-        yield from map(make, files)
+        for path in files:
+            yield _here(make, path, lost)
         return
     # Only where other processes are started: the import takes a tenth of a second.
-    import multiprocessing  # noqa: PLC0415
-    from concurrent.futures import ProcessPoolExecutor  # noqa: PLC0415
+    from eastfall.io.crew import each  # noqa: PLC0415
 
-    # A fork would carry over a screen's threads and locks; a fresh interpreter takes nothing along.
-    context = multiprocessing.get_context("spawn")
-    with ProcessPoolExecutor(max_workers=count, mp_context=context) as pool:
-        yield from pool.map(make, files, chunksize=_BATCH)
+    yield from each(make, files, lambda path, why: lost(path, f"{path}: {why}"), count)
+
+
+def _here(make: Callable[[Path], Made], path: Path, lost: Callable[[Path, str], Made]) -> Made:
+    try:
+        return make(path)
+    except Exception as error:  # noqa: BLE001 - whatever happens over a file belongs to that file
+        return lost(path, f"{path}: {type(error).__name__}: {error}")
 
 
 def _on_cluster(
@@ -85,7 +89,7 @@ def _on_cluster(
             try:
                 yield future.result()
             except Exception as error:  # noqa: BLE001 - whatever the cluster met with this file belongs to this file
-                yield lost(path, f"not done on the cluster: {type(error).__name__}: {error}")
+                yield lost(path, f"{path}: not done on the cluster: {type(error).__name__}: {error}")
 
 
 def _client(scheduler: str) -> Any:
