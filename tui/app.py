@@ -61,8 +61,8 @@ class Dashboard(App[int]):
     TITLE = "eastfall"
     ENABLE_COMMAND_PALETTE = False
     # For dialogs and pages; screens with pictures have their own.
-    VERTICAL_BREAKPOINTS = [(0, "-tiny"), (12, "-roomy")]  # noqa: RUF012
-    HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (40, "-broad")]  # noqa: RUF012
+    VERTICAL_BREAKPOINTS = [(0, "-tiny"), (16, "-roomy")]  # noqa: RUF012
+    HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (62, "-broad")]  # noqa: RUF012
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("all"))
 
     def __init__(

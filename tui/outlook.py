@@ -140,27 +140,43 @@ def _number(value: float, units: Units, head: str) -> str:
     return f"{units.offset(value) if head.startswith('±') else units.signed(value):>8}"
 
 
-def budget(one: Prospect, depths: Sequence[float], units: Units = METRIC) -> list[str]:
-    """Return what each input contributes to the uncertainty of what is expected, the largest first, as lines."""
-    shown = [depth for depth in depths if depth <= one.deepest][-3:]
+def budget(one: Prospect, depths: Sequence[float], units: Units = METRIC, room: int = 70) -> list[str]:
+    """Return what each input contributes to the uncertainty of what is expected, the largest first, as lines.
+
+    Parameters
+    ----------
+    one : Prospect
+        The prediction.
+    depths : sequence of float
+        At most the three deepest are shown, as far as there is room [m].
+    units : Units
+        Of the reader.
+    room : int
+        Columns.
+    """
+    count = max(1, min(3, (room - _NAME) // _PAIR))
+    name_room = min(_NAME, max(room - count * _PAIR, 8))
+    shown = [depth for depth in depths if depth <= one.deepest][-count:]
     parts = np.abs(one.curve.budget.at(shown))
     named = zip(one.curve.budget.names, parts, strict=True)
     rows = sorted(named, key=lambda row: -hypot(*row[1][:, -1]))
     seen = [(name, part) for name, part in rows if part.max() >= _SMALL]
     seen.append(("together", combined(parts)))
     lines = [
-        f"{units.short:<22}" + "".join(f"{f'{units.depth(depth)} {units.long}':>13}" for depth in shown),
-        f"{'':<22}" + "".join(f"{'E':>6}{'N':>7}" for _ in shown),
+        f"{units.short:<{name_room}}"
+        + "".join(f"{f'{units.depth(depth)} {units.long}':>{_PAIR}}" for depth in shown),
+        f"{'':<{name_room}}" + "".join(f"{'E':>6}{'N':>7}" for _ in shown),
     ]
     for name, part in seen:
         numbers = "".join(_pair_of(part[:, at], units) for at in range(len(shown)))
-        lines.append(f"{name[:22]:<22}{numbers}")
+        lines.append(f"{name[: name_room - 1]:<{name_room}}{numbers}")
     small = [name for name, part in rows if part.max() < _SMALL]
     if small:
         lines.append(f"below {units.offset(_SMALL, 2)} {units.short}: {', '.join(small)}")
     return lines
 
 
+_NAME, _PAIR = 22, 13
 _SMALL = 1e-5
 """Parts below a hundredth of a millimetre are only named [m]."""
 

@@ -146,6 +146,25 @@ def test_drop_waits_for_a_name_before_bodies_count(opened: Open, tmp_path: Path)
     assert '"who":"Ada Moor"' in record_of(tmp_path).read_text()
 
 
+def test_where_one_types_is_seen_without_colour(opened: Open, tmp_path: Path) -> None:
+    """With NO_COLOR the place of the next letter is reversed, also in a dialog."""
+    live = opened(["demo", "--into", str(tmp_path)], NO_COLOR="1")
+    live.wait("WITHIN")
+    live.press("n")
+    live.wait("Note for the record")
+    live.press("fan")
+
+    def marked(text: str) -> bool:
+        rows = text.splitlines()
+        row = next((at for at, line in enumerate(rows) if "fan" in line), None)
+        return row is not None and bool(live.screen.buffer[row][rows[row].index("fan") + 3].reverse)
+
+    live.wait(marked)
+    live.process.send_signal(signal.SIGTERM)
+    live.ended()
+    assert not COLOUR.search(live.raw)
+
+
 @pytest.mark.parametrize("arguments", [[], ["replay", "LOG"]])
 def test_dumb_terminal_is_refused_in_one_line(opened: Open, arguments: list[str]) -> None:
     """TERM=dumb gets exit status 2 and one line that names the way without a screen; nothing is drawn."""

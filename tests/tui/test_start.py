@@ -107,3 +107,26 @@ def test_file_that_cannot_be_read_is_no_site(tmp_path: Path) -> None:
     """A folder or a missing file is left out of the list."""
     assert not looks_like_site(tmp_path)
     assert not looks_like_site(tmp_path / "missing.toml")
+
+
+@pytest.mark.skipif(os.name != "posix", reason="pseudo-terminals are POSIX")
+def test_cursor_is_seen_without_colour(folder: Path) -> None:
+    """With NO_COLOR the line under the cursor, and only that one, is reversed in the terminal; it moves by keys."""
+    from terminal_harness import EASTFALL, Terminal
+
+    command = ["env", "-C", str(folder), *EASTFALL]
+    with Terminal(command, 80, 24, NO_COLOR="1") as terminal:
+
+        def reversed_lines() -> list[str]:
+            return [
+                line.strip()
+                for row, line in enumerate(terminal.text.splitlines())
+                if any(terminal.screen.buffer[row][column].reverse for column in range(3, 30))
+            ]
+
+        terminal.wait("demo, a probe run")
+        terminal.wait(lambda _: reversed_lines() == ["demo, a probe run down guides and back up"])
+        terminal.press("\x1b[B")
+        terminal.wait(lambda _: reversed_lines() == ["demo, a plumb line swinging to rest"])
+        terminal.press("q")
+        assert terminal.ended() == 0

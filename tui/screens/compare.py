@@ -17,7 +17,8 @@ from eastfall.tui.widgets.shift import Shift
 from eastfall.tui.widgets.table import LongTable
 
 _MOST = 3
-"""Rows that the outcome, and the remarks, may take."""
+"""Rows that the outcome, and the remarks, may take; one in a low window."""
+_LOW = 20
 
 
 _BOTH = 110
@@ -85,7 +86,7 @@ class CompareScreen(PaintedScreen[None]):
         told = "  ".join(f"! {lengths_in(safe(note), self._units)}" for note in (*one.notes, *left_out))
         remarks.show((told, Role.WARNING))
         for name in ("outcome", "remarks"):
-            self.query_one(f"#{name}", TextLine).fit(_MOST)
+            self.query_one(f"#{name}", TextLine).fit(_MOST if self.size.height >= _LOW else 1)
         self.query_one(Shift).show(one)
         rows = differences.chosen(one, self._order, only_moved=self._only_moved)
         table, room = self.query_one(LongTable), min(self.size.width - 1, 72)

@@ -130,8 +130,10 @@ class AskText(ModalScreen[str | None]):
             yield complaint
 
     def on_mount(self) -> None:
-        """Take the keys."""
-        self.query_one(Input).focus()
+        """Take the keys; in a low window the line that is typed in stays in view."""
+        field = self.query_one(Input)
+        field.focus()
+        self.call_after_refresh(field.scroll_visible, animate=False)
 
     def on_input_submitted(self, event: Input.Submitted) -> None:
         """Close with the text, or say what is wrong with it."""
@@ -169,8 +171,8 @@ class ClearShaft(AskText):
     def __init__(self) -> None:
         super().__init__(
             "Is the shaft clear, from collar to bottom?",
-            "Type your name: it goes into the record as the one who declared it clear.",
-            does="declares the shaft clear and arms the run",
+            "Your name: it goes into the record.",
+            does="declares it clear and arms the run",
             check=named,
             warning=CAUTIONS[1],
         )

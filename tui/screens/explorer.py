@@ -14,12 +14,15 @@ from eastfall.tui.inputs import Inputs
 from eastfall.tui.outlook import Prospect
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import AskText, Page, plain
-from eastfall.tui.screens.inputs import MOST, InputScreen, Lines, typing
+from eastfall.tui.screens.inputs import InputScreen, Lines, typing
 from eastfall.tui.typed import example_depths
 from eastfall.tui.units import METRIC, Units, lengths_in
 from eastfall.tui.widgets.curves import Curves, Prospects
 from eastfall.tui.widgets.dials import DialList
 from eastfall.tui.widgets.line import KeyLine, TextLine
+
+_FRAME = 7
+"""Columns that frame and scroll bar of a page take."""
 
 
 class ExplorerScreen(InputScreen):
@@ -124,7 +127,7 @@ class ExplorerScreen(InputScreen):
         told = "  ".join(f"! {lengths_in(text, self.inputs.units)}" for text in one.curve.warnings)
         warnings.show((told, Role.WARNING))
         for name in ("answer", "wall", "warnings"):
-            self.query_one(f"#{name}", TextLine).fit(MOST)
+            self.query_one(f"#{name}", TextLine).fit(self.most)
 
     def action_keep(self) -> None:
         """Keep the prediction as B."""
@@ -174,7 +177,10 @@ class ExplorerScreen(InputScreen):
     def action_budget(self) -> None:
         """Open the uncertainty budget."""
         if self.one is not None:
-            self.app.push_screen(BudgetPage(outlook.budget(self.one, self.shown_depths(), self.inputs.units)))
+            room = min(self.size.width, 70) - _FRAME
+            self.app.push_screen(
+                BudgetPage(outlook.budget(self.one, self.shown_depths(), self.inputs.units, room))
+            )
 
     def action_plan(self) -> None:
         """Open the drop planner with these inputs."""

@@ -28,7 +28,8 @@ def typing() -> list[BindingType]:
 
 
 MOST = 3
-"""Rows that a line of words may take."""
+"""Rows that a line of words may take, where there are some to spare."""
+_LOW = 20
 
 
 class InputScreen(PaintedScreen[None]):
@@ -94,6 +95,15 @@ class InputScreen(PaintedScreen[None]):
         self.inputs = inputs
         self._newest.ask(inputs)
         self.paint()
+
+    @property
+    def most(self) -> int:
+        """Rows that a line of words may take in this window."""
+        return MOST if self.size.height >= _LOW else 1
+
+    def on_resize(self) -> None:
+        """Share out the rows anew."""
+        self.call_after_refresh(self.paint)
 
     @property
     def dial(self) -> Dial:

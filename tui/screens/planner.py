@@ -39,7 +39,7 @@ class PlannerScreen(InputScreen):
     PLACES = ("planner", "page")
     BINDINGS: ClassVar[list[BindingType]] = [*keys.bindings("planner", "page"), *typing()]
     DIALS: ClassVar[tuple[Dial, ...]] = RELEASE
-    HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (110, "-normal")]  # noqa: RUF012
+    HORIZONTAL_BREAKPOINTS = [(0, "-slim"), (62, "-narrow"), (110, "-normal")]  # noqa: RUF012
 
     def __init__(self, base: Assumptions, *, name: str = "", units: Units = METRIC) -> None:
         super().__init__(Inputs(base=base, units=units))
@@ -79,7 +79,9 @@ class PlannerScreen(InputScreen):
         self.query_one("#title", TextLine).show(
             ("plan a drop, from the straight vertical", Role.STRONG), (f"  {self._site_name}", Role.TEXT)
         )
-        self.query_one("#caution", TextLine).show((CLEAR, Role.ON_GROUND), under=Role.GROUND_WARNING)
+        caution = self.query_one("#caution", TextLine)
+        caution.show((CLEAR, Role.ON_GROUND), under=Role.GROUND_WARNING)
+        caution.fit(MOST)
         if self.found is not None:
             self._paint_found(self.found)
 
@@ -95,7 +97,7 @@ class PlannerScreen(InputScreen):
         told = "  ".join(f"! {lengths_in(text, units)}" for text in found.warnings)
         warnings.show((told, Role.WARNING))
         for name in ("answer", "wall", "best", "warnings"):
-            self.query_one(f"#{name}", TextLine).fit(MOST)
+            self.query_one(f"#{name}", TextLine).fit(self.most)
         self.query_one("#plan-view", Cloud).show(found, self.scope, units)
         other: Scope = "wall" if self.scope == "close" else "close"
         self.query_one("#other-plan", Cloud).show(found, other, units)

@@ -25,8 +25,8 @@ from eastfall.tui import keys
 from eastfall.tui.roles import Role
 from eastfall.tui.screens.dialogs import plain, shown_in
 from eastfall.tui.widgets.cells import PaintedScreen
+from eastfall.tui.widgets.choices import Choices
 from eastfall.tui.widgets.line import KeyLine, Piece, TextLine
-from eastfall.tui.widgets.table import fit_bar
 from eastfall.tui.widgets.trial import Reasons, TrialLines
 
 Ports = Callable[[], Sequence[str]]
@@ -60,6 +60,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
 
     PLACES = ("trial",)
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("trial"))
+    VERTICAL_BREAKPOINTS = [(0, "-low"), (18, "-mid"), (32, "-tall")]  # noqa: RUF012
     CSS = """
     PortTrial #where { height: 1; }
     PortTrial #where Static { width: auto; }
@@ -73,7 +74,6 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
     PortTrial.-listening #ports { display: none; }
     PortTrial #counts { height: 1; }
     PortTrial #proposal { height: 10; }
-    .-tall PortTrial #proposal { height: 16; }
     """
 
     def __init__(
@@ -111,7 +111,7 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
             yield plain("  speed ")
             yield _line("baud", str(self._given.baud if self._given else 9600))
         yield TextLine(id="counts")
-        yield OptionList(id="ports")
+        yield Choices(id="ports")
         yield TrialLines(id="trial-lines")
         yield Reasons(id="proposal")
         yield KeyLine(id="keys")
@@ -119,7 +119,6 @@ class PortTrial(PaintedScreen[LinkSettings | None]):
     def on_mount(self) -> None:
         """Look for ports, and draw from now on."""
         self.query_one(OptionList).can_focus = False
-        fit_bar(self.query_one(OptionList))
         self.query_one("#url", Input).focus()
         self.set_interval(_DRAW, self._tick)
         self._look_for_ports()

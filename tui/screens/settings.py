@@ -19,6 +19,8 @@ from eastfall.tui.widgets.line import KeyLine
 from eastfall.tui.widgets.table import LongTable
 
 Change = Callable[[str, object], None]
+_WIDE = 70
+"""Columns from which the values stand under each other."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -127,7 +129,9 @@ class SettingsScreen(PaintedScreen[None]):
 
         def line(row: int) -> tuple[str, Role]:
             one = SETTINGS[row]
-            return f"  {one.says:<34}{in_words(one, getattr(now, one.name))}", Role.TEXT
+            value = in_words(one, getattr(now, one.name))
+            told = f"{one.says:<34}{value}" if self.size.width >= _WIDE else f"{one.says}: {value}"
+            return f"  {told}", Role.TEXT
 
         self.query_one(LongTable).show(len(SETTINGS), line)
 

@@ -19,8 +19,8 @@ from eastfall.tui import keys
 from eastfall.tui.screens.dialogs import plain, shown_in
 from eastfall.tui.units import METRIC
 from eastfall.tui.widgets.cells import PaintedScreen
+from eastfall.tui.widgets.choices import Choices
 from eastfall.tui.widgets.line import KeyLine
-from eastfall.tui.widgets.table import fit_bar
 from eastfall.tui.words import size
 
 if TYPE_CHECKING:
@@ -104,12 +104,11 @@ class StartScreen(PaintedScreen[Choice | None]):
         yield plain("eastfall   measured against expected in a deep shaft, on a turning Earth", "title")
         with Vertical(id="cautions"):
             yield plain("\n".join(CAUTIONS))
-        yield OptionList(*self._options(), id="start-list")
+        yield Choices(*self._options(), id="start-list")
         yield KeyLine(id="keys")
 
     def on_mount(self) -> None:
         """Take the keys."""
-        fit_bar(self.query_one(OptionList))
         self.query_one(OptionList).focus()
         self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("start", "all"))
 

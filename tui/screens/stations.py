@@ -23,6 +23,8 @@ ORDERS = ("time", "depth", "residual")
 _WIDTHS = (7, 4, 13, 13, 8, 6, 6, 9, 4)
 _RANKS = (0, 5, 6, 7, 2, 4, 3, 1, 8)
 """What stays the longest in a narrow window: depth, verdict, residual, its uncertainty."""
+_WIDE = 60
+"""Columns from which the table has offsets, and the title their unit."""
 _ROLE = {"within": Role.TEXT, "over": Role.ACTION, "undecided": Role.WARNING}
 
 
@@ -101,7 +103,8 @@ class StationsScreen(FollowingScreen[int | None]):
         what = "over or undecided" if self._only_open else "all"
         told = f"stations: {len(self._indices)} of {len(snapshot.stations)} ({what}), by {self._order}"
         self.query_one("#station-title", TextLine).show(
-            (told, Role.STRONG), right=((f"E N: east, north {self._units.short}", Role.TEXT),)
+            (told, Role.STRONG),
+            right=((f"E N: east, north {self._units.short}", Role.TEXT),) if self.size.width >= _WIDE else (),
         )
         room, stations = self.size.width - 1, snapshot.stations
         table = self.query_one(LongTable)
@@ -151,16 +154,23 @@ class StationsScreen(FollowingScreen[int | None]):
         self.dismiss(None)
 
 
-def budget(one: Station, units: Units = METRIC) -> str:
+def budget(one: Station, units: Units = METRIC, room: int = 70) -> str:
     """Return a station's uncertainty budget as lines, largest first."""
     if not one.shares:
         return "no budget with this station"
-    lines = [f"{f'standard uncertainty, {units.short}':<34}{'east':>8}{'north':>8}"]
-    lines += [
-        f"{s.name[:33]:<34}{units.offset(s.east, 3):>8}{units.offset(s.north, 3):>8}" for s in one.shares
-    ]
-    lines.append(f"{'together':<34}{units.offset(one.u_east, 3):>8}{units.offset(one.u_north, 3):>8}")
+    wide = min(34, max(room - 16, 8))
+
+    def line(name: str, east: str, north: str) -> str:
+        return f"{name[: wide - 1]:<{wide}}{east:>8}{north:>8}"
+
+    lines = [line(f"standard uncertainty, {units.short}", "east", "north")]
+    lines += [line(s.name, units.offset(s.east, 3), units.offset(s.north, 3)) for s in one.shares]
+    lines.append(line("together", units.offset(one.u_east, 3), units.offset(one.u_north, 3)))
     return "\n".join(lines)
+
+
+_FRAME = 7
+"""Columns that frame and scroll bar of a page take."""
 
 
 class StationPage(ModalScreen[bool]):
@@ -185,7 +195,7 @@ class StationPage(ModalScreen[bool]):
             if one.spread_east is not None and one.spread_north is not None:
                 told = words.pair(one.spread_east, one.spread_north, units=self._units)
                 yield plain(f"single bodies scatter by {told} (standard deviation)\n")
-            yield plain(budget(one, self._units))
+            yield plain(budget(one, self._units, min(self.app.size.width, 70) - _FRAME))
             keymap = keys.keymap_of(self.app)
             yield plain(
                 f"\n{keymap['station.look']}  look at it in the picture        {keymap['page.close']}  back"

@@ -21,7 +21,8 @@ if TYPE_CHECKING:
 
 _TICK = 0.1
 _MOST = 3
-"""Rows that an alarm may take, and the answer."""
+"""Rows that an alarm may take, and the answer; one in a low window."""
+_LOW = 10
 
 
 class SteerScreen(FollowingScreen[None]):
@@ -81,12 +82,20 @@ class SteerScreen(FollowingScreen[None]):
         ink = Role.STRONG if under is None else Role.ON_GROUND
         answer = self.query_one("#answer", TextLine)
         answer.show((views.answer(snapshot, one, self._units), ink), under=under)
-        answer.fit(_MOST)
+        answer.fit(self._most)
         self.query_one(BearingView).show(self._steer())
         told = views.alarm_line(snapshot, self._units, keys.keymap_of(self.app), seen="steer.seen", board="")
         line = self.query_one("#alarm", TextLine)
         line.show(*told.pieces, right=told.hint, under=told.under)
-        line.fit(_MOST)
+        line.fit(self._most)
+
+    @property
+    def _most(self) -> int:
+        return _MOST if self.size.height >= _LOW else 1
+
+    def on_resize(self) -> None:
+        """Share out the rows anew."""
+        self.show(self._snapshot)
 
     def reckon_in(self, units: Units) -> None:
         """Tell lengths in other units."""

@@ -129,7 +129,8 @@ class WatchScreen(RunScreen):
         self._line("swing").show(*views.swing(self.session, one))
         self._line("notes").show(*views.notes(self.session, shown, one))
         told_first = views.alarm_line(latest, self.session.units, keymap)
-        self._line("alarm").show(*told_first.pieces, right=told_first.hint, under=told_first.under)
+        hint = told_first.hint if self.size.width >= _HINTS else ()
+        self._line("alarm").show(*told_first.pieces, right=hint, under=told_first.under)
         if told(latest) != self._told:
             self._told = told(latest)
             self._line("health").show(*health_line(latest))
@@ -260,6 +261,8 @@ class WatchScreen(RunScreen):
         self.paint()
 
 
+_HINTS = 40
+"""Columns below which an alarm does not share its line with keys."""
 _LOWER = 10
 """Rows of the strip, the alarms and the feed side by side, where the stylesheet shows them."""
 

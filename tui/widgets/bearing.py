@@ -81,7 +81,7 @@ class BearingView(CellWidget):
     def draw(self, sheet: Raster) -> None:
         """Put arrow and figures on the sheet; without a number only the sentence."""
         told = self.steer
-        foot = wrapped(self.letters(told.line), sheet.width, sheet.width)[:3]
+        foot = wrapped(self.letters(told.line), sheet.width, sheet.width)[: min(3, sheet.height)]
         room = sheet.height - len(foot) - 1
         for row, words in enumerate(foot):
             sheet.text(0, sheet.height - len(foot) + row, words, Role.STRONG)

@@ -131,7 +131,7 @@ class KeyList(RowList):
             sheet.text(0, line, f"{words:<{sheet.width}}", role)
         below = self.count - self._top - sheet.height
         if below > 0:
-            sheet.text(sheet.width - 8, sheet.height - 1, f" {below} more", Role.DIM)
+            sheet.text(sheet.width - 8, sheet.height - 1, f" {below} more".rjust(8), Role.DIM)
 
 
 class ValueInput(Input):

@@ -27,7 +27,10 @@ class Shift(CellWidget):
 
     def draw(self, sheet: Raster) -> None:
         """Draw both panels with a common depth axis."""
-        if self.comparison is None or sheet.width < LEAST_WIDTH or sheet.height < LEAST_HEIGHT:
+        if sheet.width < LEAST_WIDTH or sheet.height < LEAST_HEIGHT:
+            sheet.text(0, 0, "window too small", Role.DIM)
+            return
+        if self.comparison is None:
             return
         depths = np.array([one.depth for one in self.comparison.rows])
         bottom = float(depths.max())
