@@ -10,6 +10,7 @@ import re
 import select
 import stat
 import sys
+import threading
 import time
 from collections.abc import Callable, Iterator
 from pathlib import Path
@@ -18,7 +19,7 @@ from typing import Any, Protocol
 from eastfall.io.errors import LinkError, LogError
 from eastfall.io.linkerror import link_error, lost_error
 from eastfall.io.safetext import safe
-from eastfall.io.sitefile import LinkSettings, SiteFile
+from eastfall.io.sitefile import HAND, LinkSettings, SiteFile
 from eastfall.io.sockets import CHUNK, Cancelled, SocketLink
 
 __all__ = ["Cancelled", "FileLink", "Link", "SerialLink", "SocketLink", "StreamLink", "open_link"]
@@ -27,7 +28,7 @@ _LOG_BEGINS = b'{"eastfall":"run log"'
 _BY_PYSERIAL = ("rfc2217", "loop", "hwgrep")
 _HAS_SCHEME = re.compile(r"emulate:|[A-Za-z][A-Za-z0-9]+://")
 _DEVICE = re.compile(r"/dev/|COM\d+\Z|\\\\\.\\", re.IGNORECASE)
-_SCHEMES = "a serial device, COM port, socket://host:port, rfc2217://host:port, emulate:, - or a file"
+_SCHEMES = "a serial device, COM port, socket://host:port, rfc2217://host:port, emulate:, hand:, - or a file"
 
 
 class Link(Protocol):
@@ -85,6 +86,8 @@ def open_link(
     scheme = url.partition(":")[0].lower() if _HAS_SCHEME.match(url) else ""
     if url == "-":
         return StreamLink(sys.stdin.fileno(), "-")
+    if url == HAND:
+        return HandLink()
     if scheme == "emulate":
         from eastfall.io.emulator import emulated_link  # noqa: PLC0415 (the emulator only where it is used)
 
@@ -216,6 +219,25 @@ class StreamLink:
         if self._own:
             self._own = False
             os.close(self._descriptor)
+
+
+class HandLink:
+    """A link that nothing comes over: a person types what they read."""
+
+    name = HAND
+    patient = True
+
+    def __init__(self) -> None:
+        self._closed = threading.Event()
+
+    def read(self, timeout: float) -> bytes | None:
+        """Wait."""
+        self._closed.wait(timeout)
+        return b""
+
+    def close(self) -> None:
+        """End the waiting."""
+        self._closed.set()
 
 
 class FileLink:

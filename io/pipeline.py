@@ -59,7 +59,7 @@ class Pipeline:
     def __init__(self, site: SiteFile, survey: Survey | None = None, *, armed: bool | None = None) -> None:
         links = site.links or (_DEFAULT_LINK,)
         with refusals_of(site):
-            self.survey = Survey(site.assumptions, notes=site.notes) if survey is None else survey
+            self.survey = survey or Survey(site.assumptions, notes=site.notes, feed_watched=not site.by_hand)
         self.armed = site.assumptions.run.kind != "drop" if armed is None else armed
         self.faults: Counter[str] = Counter()
         self.frames = 0

@@ -206,7 +206,7 @@ class LinkKeys(Section, frozen=True, kw_only=True):
         Meta(
             min_length=1,
             max_length=500,
-            description="Serial device, COM port, socket://host:port, emulate:, -, a file",
+            description="Serial device, COM port, socket://host:port, emulate:, hand:, -, a file",
         ),
     ]
     baud: Annotated[int, Meta(ge=50, le=4_000_000, description="Serial speed")] = 9600

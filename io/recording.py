@@ -79,7 +79,7 @@ class Recording:
             survey = Survey(
                 self.site.assumptions,
                 curve=curve,
-                feed_watched=self.is_log,
+                feed_watched=self.is_log and not (self.recorded or self.site).by_hand,
                 notes=self.site.notes,
                 u_of_rows=u_of_rows,
             )

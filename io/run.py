@@ -22,7 +22,7 @@ from eastfall.io.reader import Clock, Inbox, Item, LinkNews, Reader
 from eastfall.io.recorder import Recorder
 from eastfall.io.runlog import RunLogWriter
 from eastfall.io.safetext import safe
-from eastfall.io.sitefile import LinkSettings, SiteFile
+from eastfall.io.sitefile import HAND, LinkSettings, SiteFile
 from eastfall.physics.findings import Findings
 from eastfall.physics.verdict import worst
 
@@ -378,4 +378,8 @@ def _with_urls(site: SiteFile, urls: Sequence[str] | None) -> SiteFile:
         raise LinkError(
             f"{len(urls)} link URLs given; expected {len(links)}, one for each [[link]] of the site file"
         )
-    return replace(site, links=tuple(replace(one, url=url) for one, url in zip(links, urls, strict=True)))
+    found = replace(site, links=tuple(replace(one, url=url) for one, url in zip(links, urls, strict=True)))
+    if found.by_hand != site.by_hand:
+        # A replay knows the site file alone, and must know whether silence is a fault.
+        raise LinkError(f"{' '.join(urls)}: expected {HAND} in the site file and here, or in neither")
+    return found

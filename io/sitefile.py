@@ -29,6 +29,10 @@ _LARGEST = 1_000_000
 """Bytes of a site file; a larger file is something else."""
 
 
+HAND = "hand:"
+"""The URL of a link without an instrument: a person reads offsets by eye and types them on the dashboard."""
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LinkSettings:
     """One instrument link and the form of its lines."""
@@ -56,6 +60,11 @@ class SiteFile:
     """The keys that stand in the file, as "section.key"; all others are defaults."""
     notes: tuple[str, ...] = ()
     """What a reader of the answer must know of the site's own statements on that day."""
+
+    @property
+    def by_hand(self) -> bool:
+        """Whether no instrument speaks: silence is no fault then."""
+        return bool(self.links) and all(one.url == HAND for one in self.links)
 
 
 def load_site(path: Path, *, on: date | None = None) -> SiteFile:

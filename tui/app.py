@@ -206,8 +206,8 @@ class Dashboard(App[int]):
         """Open the help page of the screen in front; a dialog or the help page itself has none."""
         if not self.screen.is_modal and not isinstance(self.screen, HelpScreen):
             places: tuple[str, ...] = getattr(self.screen, "PLACES", ())
-            drop = isinstance(self.first, WatchScreen) and self.first.is_drop
-            self.push_screen(HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed), drop=drop))
+            kind = self.first.kind if isinstance(self.first, WatchScreen) else "guided"
+            self.push_screen(HelpScreen(*places, replay=isinstance(self.feed, ReplayFeed), kind=kind))
 
     def action_leave(self) -> None:
         """Leave; a run that is being recorded is asked about first."""

@@ -8,7 +8,7 @@ from textual.binding import Binding
 from textual.keys import Keys as NamedKeys
 from textual.keys import _character_to_key
 
-from eastfall.tui.keytable import DROP_ONLY, LIVE_ONLY, REPLAY_ONLY, STAYS, TABLE, TOGETHER, TYPING, Key
+from eastfall.tui.keytable import KINDS, LIVE_ONLY, REPLAY_ONLY, STAYS, TABLE, TOGETHER, TYPING, Key
 
 _NAMED = {one.full_id: one for one in TABLE}
 _MATES = frozenset(f"{one.where}.{one.mate}" for one in TABLE if one.mate)
@@ -77,7 +77,7 @@ class Keymap:
         return self[one.full_id] + mate
 
     def line(
-        self, *places: str, replay: bool = False, drop: bool = False, without: tuple[str, ...] = ()
+        self, *places: str, replay: bool = False, kind: str = "guided", without: tuple[str, ...] = ()
     ) -> list[tuple[str, str]]:
         """Return key and name for the key line: help, quit and pause, then those of a replay, then the others.
 
@@ -85,22 +85,24 @@ class Keymap:
         ----------
         places : str
             Where the keys hold.
-        replay, drop : bool
-            Leave out what means nothing for a record, or for a live run; and what only a drop run has.
+        replay : bool
+            Leave out what means nothing for a record, or for a live run.
+        kind : str
+            Leave out what this kind of run does not have.
         without : tuple of str
             Ids that mean nothing just now.
         """
         named = [
             one
-            for one in usable(places, replay=replay, drop=drop)
+            for one in usable(places, replay=replay, kind=kind)
             if one.name and one.id not in without and one.full_id not in _MATES
         ]
         named.sort(key=lambda one: _FIRST.index(one.id) if one.id in _FIRST else 9 - (one.id in REPLAY_ONLY))
         return [(self.told(one), one.name) for one in named]
 
-    def page(self, *places: str, replay: bool = False, drop: bool = False) -> list[tuple[str, str]]:
+    def page(self, *places: str, replay: bool = False, kind: str = "guided") -> list[tuple[str, str]]:
         """Return key and help for the help page; the second key of a pair is told with the first."""
-        shown = usable(places, replay=replay, drop=drop)
+        shown = usable(places, replay=replay, kind=kind)
         return [(self.told(one), one.help) for one in shown if one.help and one.full_id not in _MATES]
 
     def names(self) -> list[tuple[str, str, str]]:
@@ -117,12 +119,14 @@ def keymap_of(app: object) -> Keymap:
 AS_MADE = Keymap()
 
 
-def usable(places: tuple[str, ...], *, replay: bool, drop: bool) -> list[Key]:
-    """Return the keys of some places that mean something for a replay or a live run, of a drop or another kind.
+def usable(places: tuple[str, ...], *, replay: bool, kind: str) -> list[Key]:
+    """Return the keys of some places that mean something for a replay or a live run of that kind.
 
     On a page the key that quits is one of those that close.
     """
-    hidden = (LIVE_ONLY if replay else REPLAY_ONLY) | (frozenset() if drop else DROP_ONLY)
+    hidden = (LIVE_ONLY if replay else REPLAY_ONLY) | {
+        name for name, kinds in KINDS.items() if kind not in kinds
+    }
     hidden |= {"quit"} if "page" in places else frozenset()
     return [one for one in TABLE if one.where in places and one.id not in hidden]
 

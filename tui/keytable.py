@@ -41,7 +41,7 @@ _WATCH = (
         "pause",
         "Hold the picture while recording goes on; stop or play a replay",
     ),
-    Key("mark", "x", "mark", "mark", "Drop run: type in where a body landed"),
+    Key("mark", "x", "mark", "mark", "Drop or hung run: type in where a body landed or a bob hangs"),
     Key("arm", "g", "arm", "", "Drop run: declare the shaft clear and arm"),
     Key("planner", "p", "planner", "plan", "Drop run: plan the release: wall, spread, best point"),
     Key("steer", "d", "steer", "steer", "Direction and distance in large figures, with a sound"),
@@ -231,7 +231,8 @@ TABLE = (
 
 REPLAY_ONLY = frozenset({"back", "on", "step", "slower", "faster", "next", "previous", "whatif"})
 LIVE_ONLY = frozenset({"note", "arm", "mark", "acknowledge", "acknowledge-all", "who", "seen", "shelve"})
-DROP_ONLY = frozenset({"arm", "mark", "planner"})
+KINDS = {"arm": ("drop",), "planner": ("drop",), "mark": ("drop", "hung")}
+"""Keys that only some kinds of run have."""
 TOGETHER = (
     ("watch", "all"),
     ("stations", "list", "page", "all"),

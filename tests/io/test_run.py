@@ -10,6 +10,7 @@ from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.errors import LinkError, OutputError
 from eastfall.io.logreader import last_time
 from eastfall.io.pipeline import Pipeline
+from eastfall.io.reduce import reduce_file
 from eastfall.io.run import LINK_LOST, RECORD_FAILING, Run
 from eastfall.io.runlog import RunLogWriter, read_log
 from eastfall.io.sitefile import SiteFile
@@ -311,3 +312,35 @@ def test_a_url_can_be_given_for_a_site_without_links() -> None:
     run = Run(site(""), links=["loop://"], log=None)
     assert [one.url for one in run.site.links] == ["loop://"]
     assert site(ONE_LINK).links[0].columns == run.site.links[0].columns
+
+
+HUNG = GUIDED.replace('"guided"', '"hung"')
+HAND_LINK = '[[link]]\nurl = "hand:"\n'
+
+
+def test_offsets_typed_without_an_instrument_are_a_run_and_silence_is_no_fault(tmp_path: Path) -> None:
+    """Three levels typed half a minute apart: stations as typed, no silent feed, live and from the log alike."""
+    where, clock = site(HAND_LINK, HUNG), HandClock()
+    run = Run(where, log=log_for(tmp_path, where), clock=clock, wait=lambda _seconds: False)
+    with run:
+        for level in (10.0, 20.0, 30.0):
+            run.mark(level, 1e-4 * level, -2e-4 * level, "A. Roe")
+            clock.time += 30.0
+            run.step(0.0)
+        last = run.stop()
+    found = run.pipeline.survey.result()
+    assert [one.depth for one in found.stations] == [10.0, 20.0, 30.0]
+    assert [one.measured_east for one in found.stations] == pytest.approx([1e-3, 2e-3, 3e-3], abs=1e-15)
+    assert not any(one.name == "feed silent" for one in found.alarms)
+    assert last.health.frames == 3
+    again = reduce_file(Path(run.log_path))
+    assert again.result.stations == found.stations
+    assert again.result.alarms == found.alarms
+
+
+def test_a_port_in_place_of_typing_and_typing_in_place_of_a_port_are_refused() -> None:
+    """The log holds the site file alone: a replay could not know whether silence was a fault."""
+    with pytest.raises(LinkError, match="expected hand: in the site file and here, or in neither"):
+        Run(site(HAND_LINK, HUNG), links=["/dev/ttyUSB0"])
+    with pytest.raises(LinkError, match="expected hand: in the site file and here, or in neither"):
+        Run(site(ONE_LINK, HUNG), links=["hand:"])

@@ -324,10 +324,11 @@ async def test_names_of_keys_stand_in_the_settings(session: Make) -> None:
     }
 
 
-@pytest.mark.parametrize(("kind", "told"), [("guided", False), ("drop", True)])
-async def test_keys_of_a_drop_are_told_in_a_drop_alone(session: Make, kind: str, told: bool) -> None:
-    """Marking a landing and planning a release stand in the key line and on the help page of a drop run."""
+@pytest.mark.parametrize(("kind", "told"), [("guided", False), ("hung", True), ("drop", True)])
+async def test_keys_of_a_kind_of_run_are_told_in_it_alone(session: Make, kind: str, told: bool) -> None:
+    """Typing in a mark stands in the key line and on the help page of a drop and a hung run, planning in a drop's."""
     app = built(session(kind), AskedLive())
     async with app.run_test(size=(120, 40)) as pilot:
         assert ("x mark" in text_of(app)) is told
+        assert ("p plan" in text_of(app)) is (kind == "drop")
         assert ("type in where a body landed" in await settled(pilot, "f1")) is told

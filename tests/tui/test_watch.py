@@ -246,6 +246,22 @@ async def test_where_a_body_landed_is_typed_in_and_goes_to_the_run(session: Make
     assert feed.calls == [("mark", 210.0, 0.0055, -0.0032, "Ada")]
 
 
+async def test_where_a_bob_hangs_is_typed_in_as_well(session: Make, snapshot: Snap) -> None:
+    """A hung run asks for it in its own words; a guided one has nothing to type in."""
+    for kind, calls in (("hung", [("mark", 30.0, 0.0015, -0.002, "Ada")]), ("guided", [])):
+        feed = AskedLive()
+        app = built(session(kind), feed)
+        async with app.run_test(size=(80, 24)) as pilot:
+            await shown(pilot, snapshot())
+            assert isinstance(app.screen, WatchScreen)
+            app.screen.who = "Ada"
+            await pilot.press("x")
+            assert ("Where does the bob hang, from its mark?" in "\n".join(lines(app))) is (kind == "hung")
+            if kind == "hung":
+                await pilot.press(*"30", "space", *"1.5", "space", "minus", "2", "enter")
+        assert feed.calls == calls
+
+
 async def test_quitting_a_recording_is_asked_about(session: Make, snapshot: Snap) -> None:
     """The quit key asks; anything but y goes on; y leaves with status 0."""
     app = built(session(), AskedLive())

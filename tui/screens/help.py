@@ -79,11 +79,11 @@ def key_table(
     keymap: keys.Keymap,
     *places: str,
     replay: bool = False,
-    drop: bool = False,
+    kind: str = "guided",
     spelled: Callable[[str], str] = str,
 ) -> str:
     """Return the keys of some places, one a line; `spelled` puts a key into the letters of the terminal."""
-    told = [(spelled(key), what) for key, what in keymap.page(*places, replay=replay, drop=drop)]
+    told = [(spelled(key), what) for key, what in keymap.page(*places, replay=replay, kind=kind)]
     width = max((len(key) for key, _ in told), default=0) + 1
     return "\n".join(f"{key:<{width}}{what}" for key, what in told)
 
@@ -93,9 +93,9 @@ class HelpScreen(PaintedScreen[None]):
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("page"))
 
-    def __init__(self, *places: str, replay: bool = False, drop: bool = False) -> None:
+    def __init__(self, *places: str, replay: bool = False, kind: str = "guided") -> None:
         super().__init__()
-        self._places, self._replay, self._drop = places, replay, drop
+        self._places, self._replay, self._kind = places, replay, kind
 
     def compose(self) -> ComposeResult:
         """Show the keys, how to read the picture, and the cautions."""
@@ -105,7 +105,7 @@ class HelpScreen(PaintedScreen[None]):
             *self._places,
             "all",
             replay=self._replay,
-            drop=self._drop,
+            kind=self._kind,
             spelled=partial(shown_in, self.app),
         )
         with VerticalScroll(classes="page"):

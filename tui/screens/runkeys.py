@@ -8,6 +8,7 @@ from eastfall.tui import sight as look
 from eastfall.tui import typed, words
 from eastfall.tui.feed import Feed, LiveFeed
 from eastfall.tui.keys import keymap_of
+from eastfall.tui.keytable import KINDS
 from eastfall.tui.people import LONGEST, user_name
 from eastfall.tui.replayfeed import ReplayFeed
 from eastfall.tui.screens.alarmboard import AlarmsScreen
@@ -24,6 +25,7 @@ if TYPE_CHECKING:
     from collections.abc import Callable
 
     from eastfall.io.replay import Replay
+    from eastfall.physics.settings import Kind
 
 
 class RunScreen(PaintedScreen[Choice | None]):
@@ -48,9 +50,9 @@ class RunScreen(PaintedScreen[Choice | None]):
         raise NotImplementedError
 
     @property
-    def is_drop(self) -> bool:
-        """Whether bodies fall in this run."""
-        return self.session.assumptions.run.kind == "drop"
+    def kind(self) -> "Kind":
+        """What is in the shaft."""
+        return self.session.assumptions.run.kind
 
     # What the keys do: the source.
 
@@ -118,15 +120,18 @@ class RunScreen(PaintedScreen[Choice | None]):
             self._named(lambda who: cast("LiveFeed", self.feed).note(note, who))
 
     def action_mark(self) -> None:
-        """Ask where a body landed; only an armed drop takes marks."""
-        if not isinstance(self.feed, LiveFeed) or not self.is_drop:
+        """Ask where a body landed or a bob hangs; an armed drop and a hung run take marks."""
+        if not isinstance(self.feed, LiveFeed) or self.kind not in KINDS["mark"]:
             return
         if not self.latest.armed:
             self.action_arm()
             return
         units, example = self.session.units, typed.example_mark(self._deepest, self.session.units)
         hint = f"depth in {units.long_name}, east and north in {units.short_name}, as {example}"
-        dialog = AskText("Where did the body land?", hint, does="records it", check=self._mark)
+        question = (
+            "Where did the body land?" if self.kind == "drop" else "Where does the bob hang, from its mark?"
+        )
+        dialog = AskText(question, hint, does="records it", check=self._mark)
         self.app.push_screen(dialog, self._marked)
 
     @property
@@ -134,7 +139,7 @@ class RunScreen(PaintedScreen[Choice | None]):
         return self.session.assumptions.shaft.depth
 
     def _mark(self, text: str) -> tuple[float, float, float]:
-        """Read where a body landed, in the reader's units."""
+        """Read where a body landed or a bob hangs, in the reader's units."""
         return typed.read_mark(text, self._deepest, self.session.units)
 
     def _marked(self, text: str | None) -> None:
@@ -156,7 +161,7 @@ class RunScreen(PaintedScreen[Choice | None]):
         from eastfall.tui.screens.planner import PlannerScreen  # noqa: PLC0415 (the models only where asked for)
 
         session = self.session
-        if self.is_drop:
+        if self.kind in KINDS["planner"]:
             self.app.push_screen(PlannerScreen(session.assumptions, name=session.title, units=session.units))
 
     def action_steer(self) -> None:

@@ -135,7 +135,7 @@ class WatchScreen(RunScreen):
             self._told = told(latest)
             self._line("health").show(*health_line(latest))
             self.query_one(HealthList).show(latest)
-        pairs = keymap.line("watch", "all", replay=latest.mode == "replay", drop=self.is_drop)
+        pairs = keymap.line("watch", "all", replay=latest.mode == "replay", kind=self.kind)
         self.query_one(KeyLine).show(*pairs)
         self.query_one(Figures).show(*views.figures(self.session, one))
         self.query_one(AlarmList).show(latest.alarms, live=latest.mode == "live")

@@ -3,6 +3,7 @@
 from pathlib import PurePath
 from typing import TYPE_CHECKING
 
+from eastfall.io.sitefile import HAND
 from eastfall.tui import words
 from eastfall.tui.raster import Raster
 from eastfall.tui.roles import Role
@@ -30,6 +31,8 @@ def link_words(one: "LinkHealth") -> Piece:
         return f"LOST{retry}", Role.ACTION
     if one.state == "ended":
         return "ended", Role.DIM
+    if one.url == HAND:
+        return "by eye, typed", Role.OK
     if one.silent_for > _SILENT:
         return f"SILENT {one.silent_for:.0f} s", Role.WARNING
     return f"{one.rate:.1f} lines/s", Role.OK
