@@ -268,6 +268,11 @@ _NEEDED = {
 
 
 def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], place: Place) -> None:
+    kind = assumptions.run.kind
+    if any(one.url == HAND for one in links):
+        if kind == "guided":
+            raise place.error("link.url", HAND, "an instrument: a guided run has nothing to read by eye")
+        return
     if not links or any(one.form == "iec61162" for one in links):
         return
     for number, one in enumerate(links):
@@ -281,7 +286,6 @@ def _check_columns(assumptions: Assumptions, links: tuple[LinkSettings, ...], pl
     for group in _NEEDED[assumptions.run.kind]:
         if not present & set(group):
             wanted = " or ".join(group)
-            kind = assumptions.run.kind
             raise place.error("link.columns", sorted(present), f"{wanted} among them in a {kind} run")
 
 

@@ -314,6 +314,18 @@ def test_what_editors_put_into_a_file_does_no_harm(tmp_path, mark, end):
             LEAST + "[air]\ncross_flow = [[5, 2, 3, 4]]",
             r"line 9: air.cross_flow is \[\[5, 2, 3, 4\]\]; expected from",
         ),
+        (
+            LEAST + "[[link]]\nurl = 'hand:'",
+            r"link.url is 'hand:'; expected an instrument: a guided run has nothing",
+        ),
+        (
+            LEAST + "[[link]]\nurl = '-'\ndecimal = 'comma'",
+            r"link\[0\].delimiter is ','; expected another one than",
+        ),
+        (
+            LEAST + "[[link]]\nurl = '-'\ndelimiter = '.'",
+            r"line 10: link\[0\].delimiter is '.'; expected one character",
+        ),
         (LEAST + "[guide]\nend_east_mm = 3", "guide.end_north_mm is missing; expected both ends or none"),
         (
             LEAST + "[instrument]\nazimuth_from = 'magnetic'",

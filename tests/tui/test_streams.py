@@ -45,6 +45,16 @@ def test_the_dashboard_does_not_share_its_keys_with_a_link(hung, tmp_path, monke
     assert not (tmp_path / "runs").exists()
 
 
+@pytest.mark.parametrize("words", [["record"], ["watch", "--plain"]])
+def test_what_is_typed_on_the_dashboard_needs_it(hung, tmp_path, words):
+    """A run without an instrument and without a screen would wait for nothing."""
+    hung.write_text(hung.read_text(encoding="utf-8").replace('"-"', '"hand:"'), encoding="utf-8")
+    outcome = CliRunner().invoke(cli, [*words, str(hung), "--into", str(tmp_path / "runs")])
+    assert outcome.exit_code == 2, outcome.output
+    assert "readings are typed on the dashboard" in outcome.output
+    assert not (tmp_path / "runs").exists()
+
+
 @pytest.mark.parametrize(
     ("words", "closed", "status"),
     [

@@ -93,6 +93,7 @@ def record(
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
 
     loaded = load_site(site)
+    _leave_typing_to_screen(loaded)
     out, told = PatientLines(sys.stdout), PatientLines(sys.stderr)
     with _recorded(loaded, links, into, _cleared(loaded, shaft_clear)) as run, _signals() as stopped, run:
         out.path(run.log_path)
@@ -134,6 +135,14 @@ def _leave_keys_to_screen(urls: Sequence[str]) -> None:
         )
 
 
+def _leave_typing_to_screen(site: "SiteFile") -> None:
+    if site.by_hand:
+        raise click.UsageError(
+            f"{site.path}: its link is hand:, and readings are typed on the dashboard; expected watch without --plain, "
+            "or the link - in the site file"
+        )
+
+
 def _end_of(seconds: float | None) -> float:
     return time.monotonic() + seconds if seconds is not None else float("inf")
 
@@ -143,6 +152,7 @@ def _plainly(
 ) -> None:
     from eastfall.tui.plain import PlainLines  # noqa: PLC0415
 
+    _leave_typing_to_screen(site)
     out, told = PatientLines(sys.stdout), PatientLines(sys.stderr)
     lines = PlainLines(out.line, site.assumptions.run.kind, units=readers_units())
     with _recorded(site, links, folder, _cleared(site, shaft_clear)) as run, _signals() as stopped, run:
