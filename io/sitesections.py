@@ -69,7 +69,7 @@ class SiteKeys(Section, frozen=True, kw_only=True):
 class ShaftKeys(Section, frozen=True, kw_only=True):
     """[shaft]."""
 
-    depth_m: Annotated[float, Meta(gt=0.0, le=12000.0, description="Collar to the deepest point of the run")]
+    depth_m: Annotated[float, Meta(ge=0.1, le=12000.0, description="Collar to the deepest point of the run")]
     diameter_m: (
         Annotated[float, Meta(gt=0.0, le=100.0, description="Round; allows wall contact and clearance")]
         | UnsetType
@@ -185,7 +185,7 @@ class GuideKeys(Section, frozen=True, kw_only=True):
 class LineKeys(Section, frozen=True, kw_only=True):
     """[line]."""
 
-    bob_mass_kg: Annotated[float, Meta(gt=0.0, le=5000.0, description="Mass of the bob")] | UnsetType = UNSET
+    bob_mass_kg: Annotated[float, Meta(ge=1e-6, le=5000.0, description="Mass of the bob")] | UnsetType = UNSET
     bob_density_kgm3: (
         Annotated[float, Meta(gt=500.0, le=23000.0, description="Of the bob's material, for buoyancy")]
         | UnsetType
@@ -193,9 +193,9 @@ class LineKeys(Section, frozen=True, kw_only=True):
     mass_per_length_kgpm: (
         Annotated[float, Meta(ge=0.0, le=5.0, description="Of the wire; 0 is weightless")] | UnsetType
     ) = UNSET
-    diameter_mm: Annotated[float, Meta(gt=0.0, le=50.0, description="Of the wire")] | UnsetType = UNSET
+    diameter_mm: Annotated[float, Meta(ge=0.001, le=50.0, description="Of the wire")] | UnsetType = UNSET
     young_gpa: (
-        Annotated[float, Meta(gt=0.0, le=1000.0, description="Young's modulus of the wire")] | UnsetType
+        Annotated[float, Meta(ge=0.001, le=1000.0, description="Young's modulus of the wire")] | UnsetType
     ) = UNSET
     thermal_expansion_ppmpc: (
         Annotated[float, Meta(ge=0.0, le=100.0, description="Of the wire, millionths per degree")] | UnsetType
@@ -212,9 +212,9 @@ class LineKeys(Section, frozen=True, kw_only=True):
 class BodyKeys(Section, frozen=True, kw_only=True):
     """[body]."""
 
-    mass_kg: Annotated[float, Meta(gt=0.0, le=10000.0, description="Mass of the falling body")]
+    mass_kg: Annotated[float, Meta(ge=1e-6, le=10000.0, description="Mass of the falling body")]
     diameter_mm: Annotated[
-        float, Meta(gt=0.0, le=5000.0, description="Its diameter, for drag and wall contact")
+        float, Meta(ge=0.01, le=5000.0, description="Its diameter, for drag and wall contact")
     ]
     drag_coefficient: (
         Annotated[

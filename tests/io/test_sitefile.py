@@ -124,8 +124,9 @@ CASES = [
         "dept_m = 940.0",
         r"line 11: unknown key dept_m in \[shaft\]; did you mean depth_m\?",
     ),
-    ("depth_m = 940.0", "", r"line 10: shaft.depth_m is missing; expected a number more than 0"),
-    ("depth_m = 940.0", "depth_m = -1", r"shaft.depth_m is -1; expected a number more than 0"),
+    ("depth_m = 940.0", "", r"line 10: shaft.depth_m is missing; expected a number from 0.1 to 12000 m"),
+    ("depth_m = 940.0", "depth_m = -1", r"shaft.depth_m is -1; expected a number from 0.1 to 12000 m"),
+    ("depth_m = 940.0", "depth_m = 1e-300", r"shaft.depth_m is 1e-300; expected a number from 0.1"),
     ('kind = "guided"', 'kind = "lowered"', r"run.kind is 'lowered'; expected one of guided, hung, drop"),
     (
         "[410.0, 2810.0]",
