@@ -66,7 +66,7 @@ class _Level:
 
     def __init__(self, depth: float, time: float, tracker: swing.RestPointTracker) -> None:
         self.depth = depth
-        self.single_swing = float(single_swing(depth))
+        self.single_swing = float(single_swing(max(depth, 0.0)))
         self.tracker = tracker
         self.began = self.time = time
         self.due = time + _FIRST_ESTIMATE
