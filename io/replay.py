@@ -53,6 +53,8 @@ class Replay:
         Where the replay stands, from the start of the run [s].
     restarts : int
         How often it went back. After that, findings are those from the start of the run: a picture starts anew.
+    on_the_way : bool
+        Whether the last step stopped before its end, because it had played as many lines as it was to.
     """
 
     def __init__(
@@ -86,6 +88,7 @@ class Replay:
         self._lines: Counter[int] = Counter()
         self._recent: dict[int, deque[tuple[float, int]]] = {}
         self._closed = False
+        self.on_the_way = False
         self.time = 0.0
         self.restarts += 1
 
@@ -116,13 +119,16 @@ class Replay:
             self._index = build_index(self.recording)
         return self._index
 
-    def advance(self, to_time: float) -> RunUpdate:
+    def advance(self, to_time: float, *, most: float = inf) -> RunUpdate:
         """Play up to an instant.
 
         Parameters
         ----------
         to_time : float
             [s]; an instant before `time` plays nothing.
+        most : float
+            Lines after which to stop on the way (see `on_the_way`), so that a jump over a long recording needs no more
+            memory than one over a short one; the same call again goes on.
 
         Returns
         -------
@@ -130,9 +136,9 @@ class Replay:
             What it brought; at the end of the recording the run is closed.
         """
         to_time = max(to_time, self.time)
-        found = []
-        while (arrival := self._next(to_time)) is not None:
-            found.append(self._take(arrival))
+        found = self._play(to_time, most)
+        if self.on_the_way:
+            return self._update(found)
         if not self._closed and self._all_played() and to_time >= self.duration:
             self._closed = True
             found.append(self.pipeline.close(self._source.last_time if self.recording.is_log else nan))
@@ -142,7 +148,19 @@ class Replay:
         self.time = min(to_time, self.duration) if self._closed or not self.follow else to_time
         return self._update(found)
 
-    def catch_up(self, now: float) -> RunUpdate:
+    def _play(self, until: float, most: float) -> list[Findings]:
+        """Take what came by an instant, or the first `most` lines of it."""
+        found: list[Findings] = []
+        taken = 0
+        while taken < most and (arrival := self._next(until)) is not None:
+            found.append(self._take(arrival))
+            taken += len(arrival) if isinstance(arrival, LineBlock) else 0
+        self.on_the_way = taken >= most and self._peek() is not None and self._next_instant() <= until
+        if self.on_the_way:
+            self.time = max(self.time, self._next_instant())
+        return found
+
+    def catch_up(self, now: float, *, most: float = inf) -> RunUpdate:
         """Play everything that is there, for a log that is being written.
 
         Parameters
@@ -150,10 +168,12 @@ class Replay:
         now : float
             Time since the start of the run by this machine's clock [s]; what is already due by then (a silent feed)
             is found even where no line tells of it.
+        most : float
+            As for `advance`.
         """
-        found = []
-        while (arrival := self._next(inf)) is not None:
-            found.append(self._take(arrival))
+        found = self._play(inf, most)
+        if self.on_the_way:
+            return self._update(found)
         if self._all_played() and not self._closed:
             self._closed = True
             found.append(self.pipeline.close(self._source.last_time if self.recording.is_log else nan))
@@ -169,18 +189,20 @@ class Replay:
             return self.advance(self.duration)
         return self.advance(max(self._next_instant(), self.time))
 
-    def seek(self, time: float) -> RunUpdate:
+    def seek(self, time: float, *, most: float = inf) -> RunUpdate:
         """Go to an instant; backwards means from the start again, as fast as it goes.
 
         Parameters
         ----------
         time : float
             [s]; held inside the recording.
+        most : float
+            As for `advance`, which goes on from there.
         """
         time = min(max(time, 0.0), self.duration)
         if time < self.time or self._closed:
             self._restart()
-        return self.advance(time)
+        return self.advance(time, most=most)
 
     def close(self) -> None:
         """Let go of the file."""

@@ -16,6 +16,8 @@ if TYPE_CHECKING:
     from eastfall.io.run import RunUpdate
 
 SLOWEST, FASTEST = 0.25, 256.0
+AT_ONCE = 100_000
+"""Lines after which a jump hands on what it found: memory stays flat over a recording of any length."""
 
 
 class ReplayFeed(Feed):
@@ -122,7 +124,10 @@ class ReplayFeed(Feed):
 
     def _go(self, moment: float) -> None:
         self._keeping_up = False
-        self._take(self._replay.seek(min(max(moment, 0.0), self._replay.duration)))
+        moment = min(max(moment, 0.0), self._replay.duration)
+        self._take(self._replay.seek(moment, most=AT_ONCE))
+        while self._replay.on_the_way:
+            self._take(self._replay.advance(moment, most=AT_ONCE))
 
     def _at_end(self) -> bool:
         return self._replay.time >= self._replay.duration
@@ -150,7 +155,7 @@ class ReplayFeed(Feed):
         now = self._clock()
         passed, self._last = now - self._last, now
         if self._keeping_up and self._now is not None:
-            self._take(self._replay.catch_up(self._now()))
+            self._take(self._replay.catch_up(self._now(), most=AT_ONCE))
         elif self._playing:
             target = min(self._replay.time + passed * self._speed, self._replay.duration)
             self._take(self._replay.advance(target))

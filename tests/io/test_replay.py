@@ -159,6 +159,28 @@ def test_a_follower_sees_what_the_writer_writes_and_the_end(tmp_path: Path) -> N
     replay.close()
 
 
+@pytest.mark.invariant
+def test_a_jump_in_pieces_ends_where_a_jump_at_once_does(tmp_path: Path) -> None:
+    """Stopped every so many lines on the way, a jump brings the same findings, none of its steps more than a block."""
+    log = writer(tmp_path)
+    for n in range(60_000):
+        log.raw(block(b"%.2f,0.0100,0.0050" % (0.01 * (n % 20_000)), time=n / 200, first=n + 1))
+    log.close(300.0)
+    at_once, in_pieces = Replay(log.path), Replay(log.path)
+    whole = at_once.seek(290.0)
+    updates = [in_pieces.seek(290.0, most=5000)]
+    while in_pieces.on_the_way:
+        assert updates[-1].time < 290.0
+        updates.append(in_pieces.advance(290.0, most=5000))
+    assert 2 < len(updates) < 12
+    assert max(len(one) for update in updates for one in [_all([update]).rows]) < 40_000
+    _same(_all(updates), _all([whole]))
+    assert updates[-1].time == whole.time == 290.0
+    assert (updates[-1].standing, updates[-1].health) == (whole.standing, whole.health)
+    at_once.close()
+    in_pieces.close()
+
+
 def test_what_if_lists_the_differences_and_leaves_the_recording_alone() -> None:
     """Another latitude gives another expected offset and is named; the file's bytes stay."""
     before = GUIDED.read_bytes()

@@ -87,6 +87,7 @@ class _FakeReplay:
 
     duration = 100.0
     restarts = 0
+    on_the_way = False
     index = None
 
     def __init__(self, block: Rows) -> None:
@@ -94,12 +95,12 @@ class _FakeReplay:
         self.time = 0.0
         self.closed = False
 
-    def advance(self, to_time: float) -> Any:
+    def advance(self, to_time: float, **_: float) -> Any:
         new = max(0, int(to_time) - int(self.time))
         self.time = to_time
         return self._update(new)
 
-    def seek(self, time: float) -> Any:
+    def seek(self, time: float, **_: float) -> Any:
         self.restarts += time < self.time
         start = 0.0 if time < self.time else self.time
         new = int(time) - int(start)
@@ -109,7 +110,7 @@ class _FakeReplay:
     def step(self) -> Any:
         return self.advance(min(self.time + 1.0, self.duration))
 
-    def catch_up(self, now: float) -> Any:
+    def catch_up(self, now: float, **_: float) -> Any:
         return self.advance(min(now, self.duration))
 
     def close(self) -> None:
@@ -254,6 +255,34 @@ def test_going_back_starts_the_picture_over(rows: MakeRows, shown: Collected, fi
     assert len(shown.wait(lambda one: one.time == 30.0).rows) == 30
     feed.skip(5.0)
     assert len(shown.wait(lambda one: one.time == 35.0).rows) == 35
+
+
+class _InPieces(_FakeReplay):
+    """A record of which no call plays more than 20 s."""
+
+    def advance(self, to_time: float, **_: float) -> Any:
+        self.on_the_way = to_time - self.time > 20.0
+        return super().advance(min(to_time, self.time + 20.0))
+
+    def seek(self, time: float, **_: float) -> Any:
+        self.restarts += time < self.time
+        self.time = 0.0 if time < self.time else self.time
+        return self.advance(time)
+
+
+def test_jump_that_stops_on_the_way_goes_on_to_its_end(
+    rows: MakeRows, shown: Collected, finished: list[Feed]
+) -> None:
+    """However many lines a record gives at once, the picture is that of the moment asked for, and of none before it."""
+    feed = ReplayFeed(_InPieces(rows(100)), shown, clock=lambda: 0.0)  # type: ignore[arg-type]
+    finished.append(feed)
+    feed.play(on=False)
+    feed.seek(90.0)
+    feed.start()
+    assert len(shown.wait(lambda one: one.time == 90.0).rows) == 90
+    feed.seek(50.0)
+    assert len(shown.wait(lambda one: one.time == 50.0).rows) == 50
+    assert {one.time for one in shown.all} <= {0.0, 90.0, 50.0}
 
 
 def test_step_takes_one_block_and_stands_still(
