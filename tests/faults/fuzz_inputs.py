@@ -1,6 +1,15 @@
 """Coverage-guided fuzzing of everything that comes from outside, on demand; no test, and not run with them.
 
-    python tests/faults/fuzz_inputs.py lines|site|log|capture [FOLDER] [-max_total_time=60] [-timeout=10] …
+    python tests/faults/fuzz_inputs.py TARGET [FOLDER] [-max_total_time=60] [-timeout=10] …
+
+TARGET is one of
+    lines    instrument lines, decoded whole and in pieces
+    propose  lines heard in a port trial
+    site     the text of a site file
+    values   site files whose keys are known: every key with values in and out of its range, and what follows from them
+    log      the bytes of a run log
+    events   run logs that are whole, sealed and hold anything a log can say
+    capture  plain-text captures
 
 It needs atheris (`pip install atheris`; CPython on Linux or macOS), which is no dependency of the program. What is
 found to widen the coverage is kept in FOLDER, if one is given. Whatever comes in, the outcome is a result, or the
@@ -11,6 +20,7 @@ stops it with the input written to a file.
 import json
 import sys
 import tempfile
+import warnings
 from collections.abc import Callable
 from pathlib import Path
 
@@ -18,10 +28,12 @@ import atheris
 
 with atheris.instrument_imports(include=["eastfall"]):
     import numpy as np
+    from fuzz_shapes import SITE, any_run, any_site
 
     from eastfall.io.arrivals import LineBlock
     from eastfall.io.forms import decoder_for
     from eastfall.io.framing import Splitter
+    from eastfall.io.propose import propose
     from eastfall.io.reduce import reduce_file
     from eastfall.io.runlog import read_log, verify_log
     from eastfall.io.safetext import safe
@@ -31,17 +43,6 @@ with atheris.instrument_imports(include=["eastfall"]):
     from eastfall.physics.expected import expected_curve
 
 ROOT = Path(__file__).parents[2]
-SITE = """\
-[site]
-name = "Fuzz"
-latitude_deg = 57.3
-[shaft]
-depth_m = 300.0
-[run]
-kind = "guided"
-[[link]]
-url = "-"
-"""
 TIMED = ("time_s", "depth_m", "tilt_a_deg", "tilt_b_deg", "azimuth_deg", "face_deg")
 SIDEWAYS = ("depth_m", "east_mm", "north_mm", "-", "temperature_c", "supply_v")
 SETTINGS = (
@@ -106,6 +107,41 @@ def capture(data: bytes) -> None:
     json.dumps(reduce_table(found), allow_nan=False)
 
 
+def heard(data: bytes) -> None:
+    """Propose settings for lines, and read them by what is proposed."""
+    lines = data.split(b"\n")
+    found = propose(lines)
+    link = found.link("-", 9600)
+    assert all(safe(one) == one for one in found.reasons)
+    if link is not None:
+        decoded(link, data, len(data) + 1)
+
+
+class Provided:
+    """Whole numbers and others, out of the fuzzer's bytes."""
+
+    def __init__(self, data: bytes) -> None:
+        self._data = atheris.FuzzedDataProvider(data)
+
+    def whole(self, low: int, high: int) -> int:
+        """Return a whole number from `low` to `high`."""
+        return self._data.ConsumeIntInRange(low, high)
+
+    def number(self, low: float, high: float) -> float:
+        """Return a number from `low` to `high`."""
+        return self._data.ConsumeFloatInRange(low, high)
+
+
+def values(data: bytes) -> None:
+    """Give known keys values."""
+    any_site(Provided(data))
+
+
+def events(data: bytes) -> None:
+    """Write a log of lines and events, and look at it in every way."""
+    any_run(Provided(data), FOLDER)
+
+
 def seeds(target: str) -> list[bytes]:
     """Return inputs to begin with."""
     row = b"1.0,0.01,-0.02\r\n2.0,0.01,nan\n"
@@ -117,6 +153,9 @@ def seeds(target: str) -> list[bytes]:
         "site": [SITE.encode(), *sites],
         "log": logs,
         "capture": [row, b"1,0,0\n" * 40],
+        "propose": [row * 20, sentences * 9, b"D 12.3 A 0.1 B -0.2\r\n" * 20],
+        "values": [bytes(range(60)), bytes(200)],
+        "events": [bytes(range(90)), bytes(200)],
     }[target]
 
 
@@ -134,10 +173,19 @@ def guarded(target: Callable[[bytes], None]) -> Callable[[bytes], None]:
 
 def main() -> None:
     """Fuzz what the first argument names."""
-    targets = {"lines": lines, "site": site, "log": log, "capture": capture}
+    targets = {
+        "lines": lines,
+        "propose": heard,
+        "site": site,
+        "values": values,
+        "log": log,
+        "events": events,
+        "capture": capture,
+    }
     if len(sys.argv) < 2 or sys.argv[1] not in targets:
         sys.exit(__doc__)
     name = sys.argv.pop(1)
+    warnings.simplefilter("error", RuntimeWarning)  # the program would print it across its answers
     start = FOLDER / "seeds"
     start.mkdir()
     for number, seed in enumerate(seeds(name)):

@@ -3,9 +3,14 @@
 import csv
 import io
 import json
+import sys
 from pathlib import Path
 
 import pytest
+
+sys.path.insert(0, str(Path(__file__).parent))
+
+from fuzz_shapes import any_run, any_site
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
@@ -165,3 +170,40 @@ def test_a_site_name_never_leaves_the_folder_of_the_log(tmp_path, name):
     assert log.path.name.isascii()
     assert log.path.name.isprintable()
     assert not set(log.path.name) & set('/\\:*?"<>|=[]')
+
+
+class Drawn:
+    """Choices of a property test."""
+
+    def __init__(self, data: st.DataObject) -> None:
+        self._data = data
+
+    def whole(self, low: int, high: int) -> int:
+        """Return a whole number from `low` to `high`."""
+        return self._data.draw(st.integers(low, high))
+
+    def number(self, low: float, high: float) -> float:
+        """Return a number from `low` to `high`."""
+        return self._data.draw(st.floats(low, high))
+
+
+@pytest.mark.invariant
+@FUZZ
+@given(st.data())
+def test_any_settings_within_their_ranges_give_numbers_that_json_holds_or_one_line(data):
+    """Known keys with values from end to end of their range: predictions, budget, line and a run, or a refusal."""
+    try:
+        any_site(Drawn(data))
+    except EastfallError as error:
+        assert safe(str(error)) == str(error)
+
+
+@pytest.mark.invariant
+@FUZZ
+@given(st.data())
+def test_any_events_and_lines_in_a_log_that_is_whole_are_worked_through_or_refused(tmp_path, data):
+    """Reduced, reported and replayed, forth and back; what a log can say at its worst comes out printable."""
+    try:
+        any_run(Drawn(data), tmp_path)
+    except EastfallError as error:
+        assert safe(str(error)) == str(error)
