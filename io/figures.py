@@ -3,20 +3,24 @@
 Text stays text, so a figure can be searched and copied; no words of the user's get into a figure.
 """
 
+import logging
 import re
 from collections.abc import Sequence
 from io import StringIO
 from typing import Any
 
-import matplotlib as mpl
 import numpy as np
-from matplotlib.axes import Axes
-from matplotlib.figure import Figure
 from numpy.typing import NDArray
 
-from eastfall.physics.budget import COVERAGE_FACTOR
-from eastfall.physics.findings import Station
-from eastfall.physics.settings import Shaft
+# Said at its import, where it finds no folder of its own to write to; fonts are looked up anew then, no more.
+logging.getLogger("matplotlib").setLevel(logging.ERROR)
+import matplotlib as mpl  # noqa: E402
+from matplotlib.axes import Axes  # noqa: E402
+from matplotlib.figure import Figure  # noqa: E402
+
+from eastfall.physics.budget import COVERAGE_FACTOR  # noqa: E402
+from eastfall.physics.findings import Station  # noqa: E402
+from eastfall.physics.settings import Shaft  # noqa: E402
 
 _MM = 1000.0
 _INK, _EAST, _LIMIT, _WARN, _QUIET = "#1a1a1a", "#0b4f8a", "#b3261e", "#b26a00", "#7a7a7a"

@@ -1,7 +1,10 @@
 """The report: everything a reader needs is in it, it needs nothing else, and hostile text comes out inert."""
 
 import html.parser
+import os
 import re
+import subprocess
+import sys
 from dataclasses import replace
 from datetime import UTC, datetime
 from pathlib import Path
@@ -245,3 +248,18 @@ def test_markdown_says_the_same_as_the_page() -> None:
     rows = [line for line in text.splitlines() if line.startswith("| 20.00")]
     assert len(rows) == 2
     assert len({len(line) for line in rows}) == 1
+
+
+def test_a_report_says_nothing_of_a_home_that_cannot_be_written(tmp_path: Path) -> None:
+    """The figures' library would tell at length that it keeps its list of fonts elsewhere."""
+    file = tmp_path / "file"
+    file.touch()
+    kept = {name: value for name, value in os.environ.items() if not name.startswith(("XDG_", "MPL"))}
+    outcome = subprocess.run(
+        [sys.executable, "-c", "import eastfall.io.figures"],
+        env={**kept, "HOME": str(file / "x"), "TMPDIR": str(tmp_path)},
+        capture_output=True,
+        check=True,
+        timeout=60,
+    )
+    assert outcome.stderr == b""

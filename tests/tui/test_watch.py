@@ -262,6 +262,18 @@ async def test_where_a_bob_hangs_is_typed_in_as_well(session: Make, snapshot: Sn
         assert feed.calls == calls
 
 
+async def test_a_name_typed_takes_the_place_of_the_old_one(session: Make, snapshot: Snap) -> None:
+    """The account's name stands there to begin with, and is not lengthened."""
+    app = built(session(), AskedLive())
+    async with app.run_test(size=(80, 24)) as pilot:
+        await shown(pilot, snapshot())
+        assert isinstance(app.screen, WatchScreen)
+        watch = app.screen
+        watch.who = "root"
+        await pilot.press("u", *"Ada", "enter")
+        assert watch.who == "Ada"
+
+
 async def test_quitting_a_recording_is_asked_about(session: Make, snapshot: Snap) -> None:
     """The quit key asks; anything but y goes on; y leaves with status 0."""
     app = built(session(), AskedLive())

@@ -93,6 +93,8 @@ class AskText(ModalScreen[str | None]):
         Stands above the line.
     value : str
         To begin with.
+    replaced : bool
+        Whether the first letter typed takes its place.
     """
 
     BINDINGS: ClassVar[list[BindingType]] = list(keys.bindings("dialog"))
@@ -106,10 +108,11 @@ class AskText(ModalScreen[str | None]):
         check: Callable[[str], object] | None = None,
         warning: str = "",
         value: str = "",
+        replaced: bool = False,
     ) -> None:
         super().__init__()
         self._question, self._hint, self._check, self._warning = question, hint, check, warning
-        self._value, self._does = value, does
+        self._value, self._does, self._replaced = value, does, replaced
 
     def compose(self) -> ComposeResult:
         """Show the question over the line to type in."""
@@ -118,7 +121,7 @@ class AskText(ModalScreen[str | None]):
             yield plain(self._question, "title")
             if self._warning:
                 yield plain(self._warning)
-            field = Input(self._value, id="field", select_on_focus=False)
+            field = Input(self._value, id="field", select_on_focus=self._replaced)
             field.cursor_blink = False
             yield field
             if self._hint:

@@ -105,7 +105,7 @@ class RunScreen(PaintedScreen[Choice | None]):
                 then(self.who)
 
         hint = "It goes into the record with all that you acknowledge, note and shelve."
-        self.app.push_screen(AskText("Your name", hint, check=named, value=self.who), asked)
+        self.app.push_screen(AskText("Your name", hint, check=named, value=self.who, replaced=True), asked)
 
     def action_note(self) -> None:
         """Ask for a note and write it into the record."""
