@@ -62,7 +62,7 @@ async def test_a_name_that_the_machine_does_not_know_is_asked_for_once(
     app = built(session(), feed)
     async with app.run_test(size=(80, 24)) as pilot:
         await shown(pilot, snapshot(alarms=(alarm(name="one"),)))
-        await pilot.press("a", *"Bo", "enter", "a", "u", *"b", "enter", "a")
+        await pilot.press("a", *"Bo", "enter", "a", "u", *"Bob", "enter", "a")
     assert feed.calls == [("acknowledge", "one", who) for who in ("Bo", "Bo", "Bob")]
 
 
