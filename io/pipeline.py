@@ -25,6 +25,7 @@ CUT_SHORT = "line cut short"
 NOT_APPLIED = "event not applied"
 """The fault of an event that the engine refuses, such as an acknowledgement of an alarm that does not exist."""
 UNKNOWN_LINK = "line of an unknown link"
+_UNARMED = "read before the run was armed"
 _DEFAULT_LINK = LinkSettings(url="-")
 
 
@@ -113,11 +114,15 @@ class Pipeline:
         self.faults.update(decoded.faults)
         if decoded.examples:
             self.last_faults[block.link] = decoded.examples[-1]
-        if not self.armed:
-            self.set_aside += len(decoded.readings)
-            return merged(())
         self.rejected += decoded.rejected.size
+        if not self.armed:
+            self._set_aside(len(decoded.readings))
+            return merged(())
         return self._feed(self._join.push(block.link, decoded.readings, decoded.rejected))
+
+    def _set_aside(self, count: int) -> None:
+        self.set_aside += count
+        self.survey.unused[_UNARMED] += count
 
     def _feed(self, joined: Joined) -> Findings:
         if joined.missing:
@@ -152,7 +157,7 @@ class Pipeline:
         """Take an offset that a person typed in, as a reading like any other."""
         values = [_number(event, name) for name in ("depth_m", "east_m", "north_m")]
         if not self.armed:
-            self.set_aside += 1
+            self._set_aside(1)
             return merged(())
         self.frames += 1
         return merged([self.tick(event.time), self.survey.mark(event.time, *values)])

@@ -62,10 +62,13 @@ def test_a_line_cut_short_by_a_lost_link_is_counted() -> None:
 
 
 def test_a_drop_uses_nothing_before_it_is_armed() -> None:
-    """Lines before the "armed" event are decoded and set aside; those after it count."""
+    """Lines before the "armed" event are decoded, set aside and told as such; those after it count."""
     pipeline = Pipeline(parse_site(DROP, "drop.toml"))
     pipeline.take(lines(b"10,0.1,0.0"))
+    pipeline.take(lines(b"no numbers", time=2.0))
     assert (pipeline.frames, pipeline.set_aside, pipeline.armed) == (0, 1, False)
+    assert pipeline.rejected == sum(pipeline.faults.values()) == 1
+    assert dict(pipeline.survey.unused) == {"read before the run was armed": 1}
     pipeline.take(event(3.0, "armed", who="R. Vane"))
     pipeline.take(lines(b"10,0.1,0.0", time=4.0))
     assert (pipeline.frames, pipeline.set_aside, pipeline.armed) == (1, 1, True)

@@ -266,10 +266,10 @@ def _alarms(found: "Reduction") -> list[str]:
 def _footing(found: "Reduction", shape: dict[str, Any]) -> list[str]:
     """Return what stands below the table of stations."""
     faults = ", ".join(f"{name}: {count}" for name, count in sorted(found.faults.items()))
-    aside = "".join(f", {count} {name}" for name, count in sorted(found.unused.items()))
+    aside = ", ".join(f"{count} {name}" for name, count in sorted(found.unused.items()))
     lines = [
         f"readings used {found.frames}, lines refused {found.rejected}{f' ({faults})' if faults else ''}"
-        + (f"; readings left aside{aside}" if aside else "")
+        + (f"; readings left aside: {aside}" if aside else "")
     ]
     if closure := shape["closure"]:
         lines.append(
