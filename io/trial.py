@@ -30,8 +30,9 @@ RELEASED_IN = 0.3
 """The port is let go of within this [s] after a stop."""
 PENDING = 200
 """Bytes without a line end that are shown."""
-_RATE_AFTER, _RATE_LINES = 3.0, 20
-"""Seconds and lines before a rate is told: what waited in the port's buffer comes all at once."""
+_SETTLED, _RATE_AFTER, _RATE_LINES = 1.0, 3.0, 3
+"""Lines are counted after the first of these times, for what waited in a port's buffer comes all at once; a rate is told
+so long [s] and so many lines later."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -50,14 +51,8 @@ class Heard:
     """What came after the last line end."""
     seconds: float = 0.0
     """Since the port is open."""
-    as_sent: bool = False
-    """Whether lines come when an instrument sends them, and not out of a file or an emulator."""
-
-    @property
-    def rate(self) -> float | None:
-        """Lines in a second as an instrument sends them; None as long as that cannot be told."""
-        told = self.as_sent and self.seconds >= _RATE_AFTER and self.count >= _RATE_LINES
-        return self.count / self.seconds if told else None
+    rate: float | None = None
+    """Lines in a second as an instrument sends them; None as long as that cannot be told, and for files."""
 
 
 class Trial:
@@ -94,6 +89,7 @@ class Trial:
         self._state, self._trouble = "opening", ""
         self._opened: float | None = None
         self._as_sent = False
+        self._early: tuple[float, int] | None = None
         self._thread = threading.Thread(target=self._listen, name="port trial", daemon=True)
 
     def start(self) -> None:
@@ -118,8 +114,16 @@ class Trial:
                 count=self._count,
                 pending=self._pending,
                 seconds=since,
-                as_sent=self._as_sent,
+                rate=self._rate(since),
             )
+
+    def _rate(self, since: float) -> float | None:
+        if not self._as_sent or since < _SETTLED:
+            return None
+        if self._early is None:
+            self._early = since, self._count
+        seconds, count = since - self._early[0], self._count - self._early[1]
+        return count / seconds if seconds >= _RATE_AFTER and count >= _RATE_LINES else None
 
     def _listen(self) -> None:
         try:

@@ -185,3 +185,35 @@ def test_form_that_cannot_be_used_is_refused() -> None:
     """A repeated column is no form."""
     with pytest.raises(ParameterError, match="columns"):
         LineReader(LinkSettings(url="x", columns=("depth_m", "depth_m")))
+
+
+def test_what_waited_in_a_buffer_does_not_quicken_the_rate(server: socket.socket) -> None:
+    """Eighty old lines at once and then one a second are one line a second; before that no rate is told."""
+    now = [0.0]
+    trial = Trial(LinkSettings(url=f"socket://127.0.0.1:{server.getsockname()[1]}"), clock=lambda: now[0])
+    trial.start()
+    there, _ = server.accept()
+    with there:
+        there.sendall(b"old\n" * 80)
+        wait(trial, lambda one: one.count == 80)
+        now[0] = 1.0
+        assert trial.heard().rate is None
+        for second in range(2, 7):
+            now[0] = float(second)
+            there.sendall(b"new\n")
+            wait(trial, lambda one, count=79 + second: one.count == count)
+        assert trial.heard().rate == pytest.approx(1.0)
+        assert trial.stop()
+
+
+def test_a_file_has_no_rate(tmp_path: Path) -> None:
+    """Its lines come as fast as they are read."""
+    path = tmp_path / "capture.txt"
+    path.write_bytes(b"1,2,3\n" * 100)
+    now = [0.0]
+    trial = Trial(LinkSettings(url=str(path)), clock=lambda: now[0])
+    trial.start()
+    wait(trial, lambda one: one.state == "ended")
+    now[0] = 60.0
+    assert trial.heard().rate is None
+    assert trial.stop()
