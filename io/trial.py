@@ -31,8 +31,8 @@ RELEASED_IN = 0.3
 PENDING = 200
 """Bytes without a line end that are shown."""
 _SETTLED, _RATE_AFTER, _RATE_LINES = 1.0, 3.0, 3
-"""Lines are counted after the first of these times, for what waited in a port's buffer comes all at once; a rate is told
-so long [s] and so many lines later."""
+"""Lines are counted after the first of these times, since what waited in a port's buffer comes all at once; a rate is
+told so long [s] and so many lines later."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
