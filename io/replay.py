@@ -14,7 +14,7 @@ import numpy as np
 from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
 from eastfall.io.logreader import LogReader, last_time
 from eastfall.io.recording import Recording, open_recording
-from eastfall.io.replayindex import Index, Mark, build_index, split
+from eastfall.io.replayindex import Index, Mark, build_index, changed_in, split
 from eastfall.io.run import Health, LinkHealth, RunUpdate
 from eastfall.io.safetext import safe
 from eastfall.io.sitefile import SiteFile
@@ -106,6 +106,13 @@ class Replay:
     def duration(self) -> float:
         """Last time of the recording so far [s]."""
         return max(self._duration, self._source.last_time)
+
+    @property
+    def changed(self) -> str:
+        """In what the record is not as it was written, once all of it was read; empty if it is."""
+        if self._index is not None:
+            return self._index.changed
+        return changed_in(self._source) if self._closed else ""
 
     @property
     def ended(self) -> bool:
@@ -291,7 +298,7 @@ class Replay:
             faults=MappingProxyType(dict(self.pipeline.faults)),
             log_path=str(self.recording.path),
             log_bytes=0,
-            log_state="following" if self.follow else "replay",
+            log_state="following" if self.follow else "changed" if self.changed else "replay",
             set_aside=self.pipeline.set_aside,
         )
 

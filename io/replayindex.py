@@ -7,7 +7,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.io.arrivals import LineBlock, RunEvent
-from eastfall.io.recording import Recording
+from eastfall.io.logreader import LogReader
+from eastfall.io.recording import Recording, Source
 from eastfall.io.safetext import safe
 from eastfall.physics.findings import Findings, Rows
 
@@ -42,11 +43,14 @@ class Index:
         In the order of time.
     times, depths : ndarray, shape (n,)
         Where the reading was when: instants of the recording [s] and depths [m].
+    changed : str
+        In what the record is not as it was written; empty if it is, or has no seals.
     """
 
     marks: tuple[Mark, ...]
     times: Column
     depths: Column
+    changed: str = ""
 
     def of(self, what: What) -> tuple[Mark, ...]:
         """Return the marks of one sort."""
@@ -124,14 +128,22 @@ def build_index(recording: Recording) -> Index:
             events.append(arrival)
     found.append(pipeline.close(source.last_time if recording.is_log else float("nan")))
     source.close()
-    return _index(found, events)
+    return _index(found, events, changed_in(source))
+
+
+def changed_in(source: Source) -> str:
+    """Return in what a log that was read to its end is not as it was written; empty if it is, and for a capture."""
+    if not isinstance(source, LogReader):
+        return ""
+    found = source.verification()
+    return found.reason if found.state == "changed" else ""
 
 
 def _thinned(rows: Rows) -> Rows:
     return Rows(rows.data[:, :: max(1, len(rows) // _OF_A_BLOCK)])
 
 
-def _index(found: list[Findings], events: list[RunEvent]) -> Index:
+def _index(found: list[Findings], events: list[RunEvent], changed: str) -> Index:
     rows = np.concatenate([one.rows.data for one in found], axis=1)
     rows = rows[:, :: max(1, rows.shape[1] // _TRACK)]
     table = Rows(rows)
@@ -140,6 +152,7 @@ def _index(found: list[Findings], events: list[RunEvent]) -> Index:
         marks=tuple(sorted(marks, key=lambda one: one.time)),
         times=table.column("host_time"),
         depths=table.column("depth"),
+        changed=changed,
     )
 
 

@@ -243,3 +243,22 @@ def test_depth_is_found_between_samples() -> None:
     assert index.time_of_depth(10.0) == 1.0
     assert index.time_of_depth(11.0) is None
     assert Index(marks=(), times=np.empty(0), depths=np.empty(0)).time_of_depth(1.0) is None
+
+
+def test_a_changed_record_is_told_once_all_of_it_was_read(tmp_path: Path) -> None:
+    """Played to its end, or read through for its index: one digit in one line is another."""
+    copy = tmp_path / "copy.eastfall.jsonl"
+    lines = GUIDED.read_bytes().splitlines(keepends=True)
+    at = len(lines) // 2
+    lines[at] = lines[at].replace(b'"t":', b'"t": ', 1)
+    copy.write_bytes(b"".join(lines))
+    for path, words in ((GUIDED, ""), (copy, f"line {at + 1} is not as it was written")):
+        played, indexed = Replay(path), Replay(path)
+        assert played.advance(1.0).health.log_state == "replay"
+        last = played.seek(played.duration + 1.0)
+        assert played.ended
+        assert played.changed == indexed.index.changed == words
+        state = "changed" if words else "replay"
+        assert last.health.log_state == indexed.advance(1.0).health.log_state == state
+        played.close()
+        indexed.close()

@@ -98,6 +98,8 @@ def test_a_changed_log_is_told_by_every_verb_that_makes_something_of_it(shelf: P
     assert any(
         said in one for one in json.loads(called("compare", log, copy, "--format", "json").stdout)["notes"]
     )
+    assert "RECORD CHANGED: line" in called("replay", copy, "--plain").stdout
+    assert "CHANGED" not in called("replay", log, "--plain").stdout
     exported = called("export", copy, shelf / "out.csv")
     assert "the record is changed: line" in exported.stderr
     assert called("export", log, shelf / "sound.csv").stderr == ""

@@ -43,4 +43,7 @@ def _plainly(found: "Replay") -> None:
             lines.take(update)
             update = found.step()
         lines.take(update)
+        changed = found.changed
     lines.end(update)
+    if changed:
+        say(f"RECORD CHANGED: {changed}")

@@ -16,6 +16,7 @@ if TYPE_CHECKING:
 
 _SILENT = 2.0  # s without a line, from which the silence is told in words
 _LONGEST_NAME = 20
+_PLAYED = {"changed": ("RECORD CHANGED since it was written", Role.ACTION)}
 
 
 def short_name(url: str) -> str:
@@ -41,7 +42,7 @@ def link_words(one: "LinkHealth") -> Piece:
 def record_words(health: "Health", mode: str) -> Piece:
     """Return the state of the record."""
     if mode == "replay":
-        return "replay of a record", Role.TEXT
+        return _PLAYED.get(health.log_state, ("replay of a record", Role.TEXT))
     if health.log_lost:
         return f"RECORD INCOMPLETE, {health.log_lost} LOST", Role.ACTION
     if not health.log_path:
