@@ -5,6 +5,7 @@ import io as text_io
 import json
 from collections import Counter
 from collections.abc import Callable, Iterable, Mapping, Sequence
+from datetime import UTC
 from pathlib import Path
 from typing import Any
 
@@ -140,7 +141,8 @@ def _las_version() -> str:
 
 def _las_well(reduction: Reduction, depths: list[float]) -> str:
     start, stop = (depths[0], depths[-1]) if depths else (0.0, 0.0)
-    started = reduction.started_at.isoformat() if reduction.started_at else ""
+    # The basic form of ISO 8601: a header line has no room for colons.
+    started = f"{reduction.started_at.astimezone(UTC):%Y%m%dT%H%M%SZ}" if reduction.started_at else ""
     run = reduction.site.assumptions.run
     return "\n".join(
         [

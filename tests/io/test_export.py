@@ -48,6 +48,12 @@ def test_lasio_reads_every_value_back_to_the_digit() -> None:
 
 
 @pytest.mark.independent
+def test_lasio_reads_the_start_of_the_run_whole() -> None:
+    """A colon ends a header's value: the start stands in the basic form of ISO 8601, which has none."""
+    assert _las(stations_las(reduction())).well["DATE"].value == "20260114T083005Z"
+
+
+@pytest.mark.independent
 def test_las_keeps_repeated_visits_apart_and_lasio_reads_an_empty_run() -> None:
     """Two stations at one depth in one pass have curves of their own; no stations is an empty log, not an error."""
     twice = replace(RESULT, stations=numbered(station(5.0, 0.001), station(5.0, 0.002)))
