@@ -102,13 +102,6 @@ class Fit:
             return np.asarray(np.array([[d, -b], [-b, a]]) / determinant)
         return np.asarray(np.linalg.pinv(self.normal, hermitian=True))
 
-    def at(self, time: npt.ArrayLike) -> Complex:
-        """Return the modelled position east + i north [m] at times [s]."""
-        tau = np.asarray(time, dtype=np.float64) - self.middle
-        turning = np.exp(-(self.gamma + 1j * self.turn) * tau)
-        swing = self.forward * np.exp(1j * self.omega * tau) + self.backward * np.exp(-1j * self.omega * tau)
-        return np.asarray(self.centre + turning * swing)
-
 
 class _Model:
     """The samples prepared for many trial values of ω and γ."""
