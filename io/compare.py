@@ -47,6 +47,8 @@ class DepthDifference:
     second_north: float
     u_east: float
     u_north: float
+    covariance: float = 0.0
+    """Of the difference east and north [m²]."""
 
     @property
     def east(self) -> float:
@@ -61,7 +63,7 @@ class DepthDifference:
     @property
     def moved(self) -> Moved:
         """Whether the horizontal difference exceeds its expanded uncertainty 2u; unknown where that is."""
-        length, u = horizontal(self.east, self.north, self.u_east, self.u_north)
+        length, u = horizontal(self.east, self.north, self.u_east, self.u_north, self.covariance)
         if not (isfinite(length) and isfinite(u)):
             return "unknown"
         return "yes" if float(length) > COVERAGE_FACTOR * float(u) else "no"
@@ -186,21 +188,35 @@ def _named(run: Reduction) -> str:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Side:
-    """One survey by rising depth: residual and u of shape (2, n), parts of u by input of the same shape."""
+    """One survey by rising depth: residual and u of shape (2, n), parts of u by input of the same shape.
+
+    Of residual and of each part the correlation of east and north, shape (n,): read between depths it stays one.
+    """
 
     depth: Column
     residual: Column
     u: Column
+    correlation: Column
     parts: dict[str, Column]
+    correlations: dict[str, Column]
 
     def at(self, depth: Column) -> "_Side":
         """Return what it says at other depths within its reach, linearly between its own."""
 
-        def read(rows: Column) -> Column:
-            return np.array([np.interp(depth, self.depth, row) for row in rows])
+        def one(row: Column) -> Column:
+            return np.interp(depth, self.depth, row)
 
-        parts = {name: read(part) for name, part in self.parts.items()}
-        return _Side(depth=depth, residual=read(self.residual), u=read(self.u), parts=parts)
+        def read(rows: Column) -> Column:
+            return np.array([one(row) for row in rows])
+
+        return _Side(
+            depth=depth,
+            residual=read(self.residual),
+            u=read(self.u),
+            correlation=one(self.correlation),
+            parts={name: read(part) for name, part in self.parts.items()},
+            correlations={name: one(part) for name, part in self.correlations.items()},
+        )
 
 
 def _by_depth(stations: Sequence[Station]) -> _Side:
@@ -211,36 +227,47 @@ def _by_depth(stations: Sequence[Station]) -> _Side:
     depths = sorted({one.depth for one in stations})
     groups = [[one for one in stations if one.depth == depth] for depth in depths]
 
-    def mean(of: Callable[[Station], tuple[float, float]]) -> Column:
+    def mean(of: Callable[[Station], tuple[float, float] | float]) -> Column:
         return np.array([np.mean([of(one) for one in group], axis=0) for group in groups]).T
 
     def part_of(name: str) -> Callable[[Station], tuple[float, float]]:
         return lambda one: dict(zip(one.inputs, one.parts, strict=True)).get(name, (0.0, 0.0))
 
+    def correlation_of(name: str) -> Callable[[Station], float]:
+        return lambda one: dict(zip(one.inputs, one.correlations, strict=False)).get(name, 0.0)
+
+    names = dict.fromkeys(name for one in stations for name in one.inputs)
     return _Side(
         depth=np.array(depths),
         residual=mean(lambda one: (one.residual_east, one.residual_north)),
         u=mean(lambda one: (one.u_east, one.u_north)),
-        parts={
-            name: mean(part_of(name)) for name in dict.fromkeys(n for one in stations for n in one.inputs)
-        },
+        correlation=mean(_correlation),
+        parts={name: mean(part_of(name)) for name in names},
+        correlations={name: mean(correlation_of(name)) for name in names},
     )
 
 
-def _of_one_run(first: _Side, second: _Side, *, opposite: bool) -> Column:
+def _correlation(one: Station) -> float:
+    sizes = one.u_east * one.u_north
+    return one.covariance / sizes if sizes else 0.0
+
+
+def _of_one_run(first: _Side, second: _Side, *, opposite: bool) -> tuple[Column, Column]:
     if not first.parts and not second.parts:
         return _uncorrelated(first, second)
-    return u_apart(first.parts, second.parts, opposite=opposite)
+    together = {**second.correlations, **first.correlations}
+    return u_apart(first.parts, second.parts, together, opposite=opposite)
 
 
-def _uncorrelated(first: _Side, second: _Side) -> Column:
-    return np.hypot(first.u, second.u)
+def _uncorrelated(first: _Side, second: _Side) -> tuple[Column, Column]:
+    """Return u and the covariance of the difference of two surveys that have nothing in common."""
+    return np.hypot(first.u, second.u), sum(one.correlation * one.u[0] * one.u[1] for one in (first, second))
 
 
 def _between(
     first: Sequence[Station],
     second: Sequence[Station],
-    u_of: Callable[[_Side, _Side], Column] = _uncorrelated,
+    u_of: Callable[[_Side, _Side], tuple[Column, Column]] = _uncorrelated,
 ) -> tuple[tuple[DepthDifference, ...], int]:
     if not first or not second:
         return (), len(first)
@@ -250,7 +277,8 @@ def _between(
         return (), len(whole.depth)
     own = whole.at(whole.depth[inside])
     there = other.at(own.depth)
-    table = np.vstack([own.depth, own.residual, there.residual, u_of(own, there)])
+    u, shared = u_of(own, there)
+    table = np.vstack([own.depth, own.residual, there.residual, u, shared])
     rows = tuple(
         DepthDifference(
             depth=z,
@@ -260,8 +288,9 @@ def _between(
             second_north=second_north,
             u_east=u_east,
             u_north=u_north,
+            covariance=covariance,
         )
-        for z, first_east, first_north, second_east, second_north, u_east, u_north in table.T.tolist()
+        for z, first_east, first_north, second_east, second_north, u_east, u_north, covariance in table.T.tolist()
     )
     return rows, int(np.count_nonzero(~inside))
 

@@ -75,6 +75,11 @@ _JUDGING = (
         "JCGM 100:2008 (GUM), eq. 10 and 6.3",
     ),
     Formula(
+        "Standard uncertainty of the length r of the horizontal residual (e, n)",
+        "u² = (e² u_e² + n² u_n² + 2 e n u_en)/r²",
+        "JCGM 100:2008 (GUM), eq. 13",
+    ),
+    Formula(
         "Verdict on the length r of the horizontal residual against the action limit T",
         "r + U ≤ T: within;  r − U > T: over;  else undecided",
         "JCGM 106:2012, 8.3; ISO 14253-1:2017",

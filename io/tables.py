@@ -55,6 +55,7 @@ def station_row(station: Station) -> dict[str, Any]:
         "clearance_verdict": station.clearance_verdict,
         "spread_east_mm": millimetres(station.spread_east),
         "spread_north_mm": millimetres(station.spread_north),
+        "covariance_mm2": number(station.covariance, 1e6),
     }
 
 
@@ -114,6 +115,7 @@ def best_row(one: Best) -> dict[str, Any]:
         "apart_east_mm": millimetres(one.apart_east),
         "apart_north_mm": millimetres(one.apart_north),
         "verdict": one.verdict,
+        "covariance_mm2": number(one.covariance, 1e6),
     }
 
 

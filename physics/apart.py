@@ -6,7 +6,7 @@ from math import pi
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.physics.budget import combined
+from eastfall.physics.budget import combined, joint
 from eastfall.physics.combine import OWN
 from eastfall.physics.findings import Station
 from eastfall.physics.kinds.shares import ZERO
@@ -23,20 +23,30 @@ def in_opposite_faces(first: Sequence[Station], second: Sequence[Station]) -> bo
     return abs(apart - pi) < pi / 4.0
 
 
-def u_apart(first: Mapping[str, Array], second: Mapping[str, Array], *, opposite: bool = False) -> Array:
-    """Return the standard uncertainty of the difference of two passes of one run.
+def u_apart(
+    first: Mapping[str, Array],
+    second: Mapping[str, Array],
+    correlations: Mapping[str, Array] | None = None,
+    *,
+    opposite: bool = False,
+) -> tuple[Array, Array]:
+    """Return the standard uncertainty of the difference of two passes of one run, and its covariance.
 
     Parameters
     ----------
     first, second : mapping of str to ndarray, shape (2, n)
         Parts of the uncertainty of each pass at n depths, east and north, by input [m].
+    correlations : mapping of str to ndarray, shape (n,), optional
+        Of the two parts of each input; 0 where it is not told.
     opposite : bool
         Whether the passes were made in opposite faces.
 
     Returns
     -------
-    ndarray, shape (2, n)
-        [m].
+    u : ndarray, shape (2, n)
+        East and north [m].
+    covariance : ndarray, shape (n,)
+        Of the two [m²].
 
     Notes
     -----
@@ -47,11 +57,13 @@ def u_apart(first: Mapping[str, Array], second: Mapping[str, Array], *, opposite
     """
     some = next(iter({**first, **second}.values()))
     none = np.zeros(some.shape)
-    parts = []
+    told = correlations or {}
+    parts: list[Array] = []
+    together: list[Array] = []
     for name in dict.fromkeys([*first, *second]):
         one, other = first.get(name, none), second.get(name, none)
-        if name in OWN:
-            parts += [one, other]
-        else:
-            parts.append(one + other if opposite and name == ZERO else other - one)
-    return combined(np.stack(parts))
+        difference = one + other if opposite and name == ZERO else other - one
+        found = [one, other] if name in OWN else [difference]
+        parts += found
+        together += [told.get(name, none[0])] * len(found)
+    return combined(np.stack(parts)), joint(np.stack(parts), np.stack(together))

@@ -57,6 +57,31 @@ def covariance(parts: ArrayLike) -> Array:
     return np.einsum("kin,kjn->nij", shared, shared)
 
 
+def joint(parts: ArrayLike, correlation: ArrayLike) -> Array:
+    """Give the covariance of east and north alone, where not every input moves both of them as one cause.
+
+    Parameters
+    ----------
+    parts : array_like, shape (k, 2, n)
+        c u of each input, its sign kept.
+    correlation : array_like, shape (k, n)
+        Of what each input puts into east and into north: 1 of one cause that moves both, 0 of two that are independent.
+
+    Returns
+    -------
+    array, shape (n,)
+        In the square of the unit; zero of no inputs.
+
+    References
+    ----------
+    JCGM 100:2008 (GUM), 5.2.2, eq. 13 and 14.
+    """
+    shares = np.asarray(parts, dtype=np.float64)
+    terms = np.asarray(correlation) * shares[:, 0] * shares[:, 1]
+    # One after the other: a plain sum takes a single column in another order than several.
+    return np.add.accumulate(terms)[-1] if len(terms) else np.zeros(shares.shape[2:])
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Budget:
     """What each input contributes to the uncertainty of an offset, by depth.
@@ -68,7 +93,8 @@ class Budget:
     names : tuple of str
         The inputs.
     parts : ndarray, shape (len(names), 2, m)
-        Standard uncertainty from each alone [m], east and north; the sign is that of the sensitivity.
+        Standard uncertainty from each alone [m], east and north; the sign is that of the sensitivity. Each is one
+        cause, which moves east and north together.
     """
 
     depth: Array

@@ -9,7 +9,7 @@ from math import hypot, isfinite, pi
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.physics.budget import COVERAGE_FACTOR, combined
+from eastfall.physics.budget import COVERAGE_FACTOR, combined, joint
 from eastfall.physics.findings import Best, Closure, FaceSums, Station
 from eastfall.physics.kinds.base import RANDOM
 from eastfall.physics.kinds.shares import (
@@ -21,6 +21,7 @@ from eastfall.physics.kinds.shares import (
     MISSING,
     SCALE,
     ZERO,
+    correlation_of_scales,
     of_axes,
 )
 from eastfall.physics.settings import DEGREE, Assumptions, Instrument
@@ -38,7 +39,7 @@ _GRAIN = 1e-5
 OWN = frozenset({RANDOM, MISSING, JUMPED})
 """What a pass gathers for itself."""
 _OF_SLOPE = frozenset({DEPTH, BENDS, COUNTER})
-"""What follows the slope of the guide at a station, whose sign is not kept."""
+"""What follows the slope of the guide at a station, which says little of the slope at another."""
 
 
 def closure(stations: tuple[Station, ...]) -> Closure | None:
@@ -83,11 +84,15 @@ def _pair(stations: tuple[Station, ...]) -> tuple[dict[float, Station], dict[flo
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class _Line:
-    """A best estimate in the making, by depth: residual and apart of shape (2, n), parts of shape (2, n) by name."""
+    """A best estimate in the making, by depth: residual and apart of shape (2, n), by name parts of shape (2, n) [m].
+
+    And by name the correlation of the two parts, shape (n,); 0 of what is not named there.
+    """
 
     depth: Array
     residual: Array
     parts: dict[str, Array]
+    correlations: dict[str, Array]
     passes: int
     apart: Array
     tied: bool = False
@@ -137,31 +142,42 @@ def best_estimate(
     return _told(line, stations), tuple(notes)
 
 
-def _table(stations: list[Station]) -> tuple[Array, Array, dict[str, Array]]:
-    """Return depth, residual and parts by input of stations."""
+def _table(stations: list[Station]) -> tuple[Array, Array, dict[str, Array], dict[str, Array]]:
+    """Return depth, residual, and by input parts and their correlation of stations."""
     names = dict.fromkeys(name for one in stations for name in one.inputs)
     parts = {name: np.zeros((2, len(stations))) for name in names}
+    correlations = {name: np.zeros(len(stations)) for name in names}
     for at, one in enumerate(stations):
         for name, part in zip(one.inputs, one.parts, strict=True):
             parts[name][:, at] = part
+        for name, together in zip(one.inputs, one.correlations, strict=False):
+            correlations[name][at] = together
     residual = np.array([[one.residual_east, one.residual_north] for one in stations]).T
-    return np.array([one.depth for one in stations]), residual, parts
+    return np.array([one.depth for one in stations]), residual, parts, correlations
 
 
 def _one_pass(stations: tuple[Station, ...]) -> _Line | None:
     only = sorted((one for one in stations if one.passing == 0), key=lambda one: one.depth)
     if not only:
         return None
-    depth, residual, parts = _table(only)
-    return _Line(depth=depth, residual=residual, parts=parts, passes=1, apart=np.zeros(residual.shape))
+    depth, residual, parts, correlations = _table(only)
+    return _Line(
+        depth=depth,
+        residual=residual,
+        parts=parts,
+        correlations=correlations,
+        passes=1,
+        apart=np.zeros(residual.shape),
+    )
 
 
 def _two_passes(
     pair: tuple[dict[float, Station], dict[float, Station]], assumptions: Assumptions, notes: list[str]
 ) -> _Line:
     down, up = (list(one.values()) for one in pair)
-    depth, first, parts = _table(down)
-    _, second, others = _table(up)
+    depth, first, parts, correlations = _table(down)
+    _, second, others, together = _table(up)
+    correlations = {**together, **correlations}
     apart = second - second[:, :1] - (first - first[:, :1])
     opposite = _opposite(down, up)
     kept: dict[str, Array] = {}
@@ -172,26 +188,30 @@ def _two_passes(
     best = first + 0.5 * apart
     if opposite:
         kept[ZERO] = zeros
-        kept |= _of_axes(best, assumptions)
+        axes, correlations[SCALE] = _of_axes(best, assumptions)
+        kept |= axes
     own = [part for name, part in kept.items() if name in OWN]
     # The parts kept are those of the mean of both, half of what their difference has.
     u_apart = 2.0 * combined([*own, np.full(first.shape, _GRAIN)])
-    odd = np.abs(_freed(depth, apart, opposite=opposite))
-    disagree = odd > _TOO_FAR * u_apart
+    odd = _freed(depth, apart, opposite=opposite)
+    disagree = np.abs(odd) > _TOO_FAR * u_apart
     if disagree.any():
-        kept[APART] = np.where(disagree, 0.5 * odd, 0.0)
+        # Either pass may be the wrong one: the truth lies to one side or to the other along what parts them.
+        kept[APART] = np.where(disagree, -0.5 * odd, 0.0)
+        correlations[APART] = np.ones(depth.size)
         far = depth[disagree.any(axis=0)]
         notes.append(
             f"down and up pass disagree at {far.size} of {depth.size} stations, first at {far[0]:g} m"
         )
-    return _Line(depth=depth, residual=best, parts=kept, passes=2, apart=apart)
+    return _Line(depth=depth, residual=best, parts=kept, correlations=correlations, passes=2, apart=apart)
 
 
-def _of_axes(best: Array, assumptions: Assumptions) -> dict[str, Array]:
-    """Return what the axes put into an offset that is free of a zero error."""
+def _of_axes(best: Array, assumptions: Assumptions) -> tuple[dict[str, Array], Array]:
+    """Return what the axes put into an offset that is free of a zero error, and the scales' correlation."""
     guide = assumptions.guide
     gone = best - np.array([[guide.start_east], [guide.start_north]])
-    return dict(zip((SCALE, AZIMUTH), of_axes(assumptions.instrument, gone), strict=True))
+    parts = dict(zip((SCALE, AZIMUTH), of_axes(assumptions.instrument, gone), strict=True))
+    return parts, correlation_of_scales(assumptions.instrument, gone)
 
 
 def _tied_part(up: Array) -> Array:
@@ -229,8 +249,8 @@ def _tied(line: _Line, assumptions: Assumptions, notes: list[str]) -> _Line:
     expected. One in proportion to depth, such as a zero offset, goes whole; of any other part p(z) there stays
     p(z) - t p(Z), of a random walk with variance v the bridge v(z) (1 - 2t) + t² v(Z). Scale and azimuth err in
     proportion to an offset, and stay with what of it is no straight line to the end. Parts that follow the slope at a
-    station have lost their sign: they are taken as correlated by t with that at the end. The end's own uncertainty
-    comes in by t.
+    station are taken as correlated by t with that at the end; east and north keep the signs that they have at the
+    station. The end's own uncertainty comes in by t.
     """
     guide = assumptions.guide
     if guide.end_east is None or guide.end_north is None or line.depth.size < 2:
@@ -250,9 +270,11 @@ def _tied(line: _Line, assumptions: Assumptions, notes: list[str]) -> _Line:
     t = (line.depth - line.depth[0]) / (line.depth[-1] - line.depth[0])
     parts = {name: _bridged(name, part, t) for name, part in line.parts.items()}
     start = line.residual[:, :1]
-    parts |= _of_axes(line.residual - t * (line.residual[:, -1:] - start), assumptions)
+    axes, scales = _of_axes(line.residual - t * (line.residual[:, -1:] - start), assumptions)
+    parts |= axes
     parts[END] = guide.u_end * np.stack([t, t])
-    return replace(line, residual=np.stack([east, north]), parts=parts, tied=True)
+    correlations = {**line.correlations, SCALE: scales, AZIMUTH: np.ones(t.size)}
+    return replace(line, residual=np.stack([east, north]), parts=parts, correlations=correlations, tied=True)
 
 
 def _bridged(name: str, part: Array, t: Array) -> Array:
@@ -261,20 +283,22 @@ def _bridged(name: str, part: Array, t: Array) -> Array:
         return left
     end = t * part[:, -1:]
     if name in _OF_SLOPE:
-        open_: Array = np.sqrt(part**2 - 2.0 * t * part * end + end**2)
-        return open_
-    return np.abs(part - end)
+        open_: Array = np.sqrt(part**2 - 2.0 * t * np.abs(part * end) + end**2)
+        return np.copysign(open_, part)
+    return part - end
 
 
 def _told(line: _Line, stations: tuple[Station, ...]) -> tuple[Best, ...]:
     limits = {one.depth: (one.warning, one.action) for one in stations}
     parts = np.stack(list(line.parts.values()))
     u = combined(parts)
-    length, u_length = horizontal(*line.residual, *u)
+    none = np.zeros(line.depth.size)
+    shared = joint(parts, np.stack([line.correlations.get(name, none) for name in line.parts]))
+    length, u_length = horizontal(line.residual[0], line.residual[1], u[0], u[1], shared)
     words = verdicts(length, u_length, [limits[z][1] for z in line.depth.tolist()])
     names = tuple(line.parts)
     by_station = parts.transpose(2, 0, 1).tolist()
-    rows = np.stack([line.depth, *line.residual, *u, *line.apart]).T.tolist()
+    rows = np.stack([line.depth, *line.residual, *u, *line.apart, shared]).T.tolist()
     return tuple(
         Best(
             depth=row[0],
@@ -291,6 +315,7 @@ def _told(line: _Line, stations: tuple[Station, ...]) -> tuple[Best, ...]:
             tied=line.tied,
             inputs=names,
             parts=tuple((east, north) for east, north in by_station[at]),
+            covariance=row[7],
         )
         for at, row in enumerate(rows)
     )

@@ -10,7 +10,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from eastfall.physics.budget import Budget, combined
+from eastfall.physics.budget import Budget, combined, joint
 from eastfall.physics.contributions import expected_budget
 from eastfall.physics.fall import Trajectory
 from eastfall.physics.hung import hang
@@ -43,6 +43,8 @@ class ExpectedCurve:
         [m/s²].
     u : ndarray, shape (2, n)
         Standard uncertainty of `plumb` [m].
+    covariance : ndarray, shape (n,)
+        Of its east and north [m²].
     budget : Budget
         What it is made of.
     fall_time, fall_speed : ndarray, shape (n,)
@@ -64,6 +66,7 @@ class ExpectedCurve:
     moving: NDArray[np.float64]
     gravity: NDArray[np.float64]
     u: Pair
+    covariance: NDArray[np.float64]
     budget: Budget
     fall_time: NDArray[np.float64]
     fall_speed: NDArray[np.float64]
@@ -132,6 +135,7 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
     # reference less the field line. A bob and a body are seen against the reference itself.
     plumb = {"guided": reference - field_line, "hung": bob - reference, "drop": body - reference}
     budget = expected_budget(models)
+    parts = budget.at(depth)
     return ExpectedCurve(
         assumptions=assumptions,
         models=models,
@@ -143,7 +147,8 @@ def expected_curve(assumptions: Assumptions) -> ExpectedCurve:
         reference=reference,
         moving=models.moving(depth, bob),
         gravity=models.field.gravity_at(depth),
-        u=combined(budget.at(depth)),
+        u=combined(parts),
+        covariance=joint(parts, np.ones((len(parts), depth.size))),
         budget=budget,
         fall_time=there.time,
         fall_speed=there.speed,

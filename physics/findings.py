@@ -108,7 +108,11 @@ class Station:
     inputs: tuple[str, ...] = ()
     """What the uncertainty comes from."""
     parts: tuple[tuple[float, float], ...] = ()
-    """Standard uncertainty from each input alone, east and north [m]."""
+    """Standard uncertainty from each input alone, east and north [m]; where one cause moves both, with its signs."""
+    correlations: tuple[float, ...] = ()
+    """Of the two parts of each input: 1 of one cause, 0 of two independent ones; none given is 0 of all."""
+    covariance: float = 0.0
+    """Of residual east and north [m²]."""
     halt: Halt | None = None
     """The readings at rest that a still station was closed from."""
     face: float | None = None
@@ -139,7 +143,11 @@ class Station:
     def shares(self) -> tuple[Share, ...]:
         """The budget of `u_east` and `u_north`: inputs that matter, largest first."""
         named = zip(self.inputs, self.parts, strict=True)
-        found = [Share(name=name, east=east, north=north) for name, (east, north) in named if east or north]
+        found = [
+            Share(name=name, east=abs(east), north=abs(north))
+            for name, (east, north) in named
+            if east or north
+        ]
         return tuple(sorted(found, key=lambda one: -(one.east**2 + one.north**2)))
 
 
@@ -229,7 +237,9 @@ class Best:
     """Whether the misclosure at a known end was distributed over depth."""
     inputs: tuple[str, ...] = ()
     parts: tuple[tuple[float, float], ...] = ()
-    """Standard uncertainty from each input alone, east and north [m]."""
+    """Standard uncertainty from each input alone, east and north [m]; where one cause moves both, with its signs."""
+    covariance: float = 0.0
+    """Of residual east and north [m²]."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -288,6 +298,8 @@ class Standing:
     """Readings used so far."""
     notes: tuple[str, ...] = ()
     """What a reader must know of the answer: outside the model, line touching, air."""
+    covariance: float = 0.0
+    """Of residual east and north [m²]."""
 
     @property
     def residual_east(self) -> float:

@@ -9,7 +9,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.physics.budget import Budget, combined
+from eastfall.physics.budget import Budget, combined, joint
 from eastfall.physics.contributions import shifts
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.hung import hang
@@ -30,6 +30,8 @@ class LineAngle:
         How far east that moves for each metre a second of the line, down positive [s].
     u : ndarray, shape (2, n)
         Standard uncertainty of `plumb` [m].
+    covariance : ndarray, shape (n,)
+        Of its east and north [m²].
     budget : Budget
         What it is made of.
     """
@@ -37,6 +39,7 @@ class LineAngle:
     plumb: Pair
     moving: Array
     u: Pair
+    covariance: Array
     budget: Budget
 
 
@@ -61,10 +64,12 @@ def line_angle(curve: ExpectedCurve) -> LineAngle:
     models, depth = curve.models, curve.depth
     plumb = _shown(models, depth, 0.0)
     budget = _budget(curve)
+    parts = budget.at(depth)
     return LineAngle(
         plumb=plumb,
         moving=_shown(models, depth, 1.0)[0] - plumb[0],
-        u=combined(budget.at(depth)),
+        u=combined(parts),
+        covariance=joint(parts, np.ones((len(parts), depth.size))),
         budget=budget,
     )
 

@@ -1,12 +1,12 @@
 """What would settle an undecided verdict: more readings, or a better known input; the words are the screen's."""
 
 from dataclasses import dataclass
-from math import ceil, hypot, sqrt
+from math import ceil, sqrt
 from typing import Protocol
 
 from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.kinds.base import BY_READINGS
-from eastfall.physics.verdict import horizontal
+from eastfall.physics.verdict import direction, horizontal
 
 
 class _Decided(Protocol):
@@ -19,6 +19,8 @@ class _Decided(Protocol):
     @property
     def u_north(self) -> float: ...
     @property
+    def covariance(self) -> float: ...
+    @property
     def action(self) -> float: ...
     @property
     def readings(self) -> int: ...
@@ -26,6 +28,8 @@ class _Decided(Protocol):
     def inputs(self) -> tuple[str, ...]: ...
     @property
     def parts(self) -> tuple[tuple[float, float], ...]: ...
+    @property
+    def correlations(self) -> tuple[float, ...]: ...
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -92,14 +96,11 @@ def settle(station: _Decided) -> Settling | None:
     is taken to stay where it is; a part p_i of u² = Σ p_i² (along the residual) alone decides if it can be brought to
     √((T - r)²/4 - u² + p_i²).
     """
-    length, u = (
-        float(one)
-        for one in horizontal(station.residual_east, station.residual_north, station.u_east, station.u_north)
-    )
+    length, u = (float(one) for one in horizontal(*_of(station)))
     needed = abs(station.action - length) / COVERAGE_FACTOR
     if not u > needed:
         return None
-    parts = _along(station, length)
+    parts = _along(station)
     found = []
     for name, part in parts.items():
         room = needed**2 - (u**2 - part**2)
@@ -115,17 +116,25 @@ def settle(station: _Decided) -> Settling | None:
     )
 
 
-def _along(station: _Decided, length: float) -> dict[str, float]:
+def _of(station: _Decided) -> tuple[float, float, float, float, float]:
+    return (
+        station.residual_east,
+        station.residual_north,
+        station.u_east,
+        station.u_north,
+        station.covariance,
+    )
+
+
+def _along(station: _Decided) -> dict[str, float]:
     """Return each input's part of the uncertainty of the length [m]."""
-    east, north = station.residual_east, station.residual_north
-    largest = max(station.u_east, station.u_north)
-    if length > largest:
-        return {
-            name: hypot(east * one[0], north * one[1]) / length
-            for name, one in zip(station.inputs, station.parts, strict=True)
-        }
-    row = 0 if station.u_east >= station.u_north else 1
-    return {name: one[row] for name, one in zip(station.inputs, station.parts, strict=True)}
+    toward_east, toward_north = direction(*_of(station))
+    correlations = station.correlations or (0.0,) * len(station.inputs)
+    found = {}
+    for name, part, together in zip(station.inputs, station.parts, correlations, strict=True):
+        east, north = toward_east * part[0], toward_north * part[1]
+        found[name] = sqrt(max(east**2 + north**2 + 2.0 * together * east * north, 0.0))
+    return found
 
 
 def _more(station: _Decided, parts: dict[str, float], u: float, needed: float) -> int | None:

@@ -1,7 +1,7 @@
 """Which way and how far to bring a residual to nothing; how a crew is told is the screen's business."""
 
 from dataclasses import dataclass
-from math import atan2, hypot, inf, nan, pi
+from math import atan2, inf, nan, pi, sqrt
 
 from eastfall.physics.budget import COVERAGE_FACTOR
 from eastfall.physics.verdict import horizontal
@@ -29,7 +29,7 @@ class Steer:
     worth: bool
 
 
-def steer(east: float, north: float, u_east: float, u_north: float) -> Steer:
+def steer(east: float, north: float, u_east: float, u_north: float, covariance: float = 0.0) -> Steer:
     """Give the move that brings a residual to nothing.
 
     Parameters
@@ -37,16 +37,20 @@ def steer(east: float, north: float, u_east: float, u_north: float) -> Steer:
     east, north : float
         Residual [m].
     u_east, u_north : float
-        Standard uncertainties [m], taken as uncorrelated.
+        Standard uncertainties [m].
+    covariance : float
+        Of the two [m²].
 
     Returns
     -------
     Steer
-        Opposite to the residual. u of the direction by the law of propagation (GUM, eq. 10):
-        √((n u_e)² + (e u_n)²)/r².
+        Opposite to the residual. u of the direction by the law of propagation (GUM, eq. 13):
+        √(n² u_e² + e² u_n² - 2 e n u_en)/r²; infinite where r is not larger than the uncertainty.
     """
-    length, u = (float(one) for one in horizontal(east, north, u_east, u_north))
-    u_azimuth = hypot(north * u_east, east * u_north) / length**2 if length > max(u_east, u_north) else inf
+    length, u = (float(one) for one in horizontal(east, north, u_east, u_north, covariance))
+    across = (north * u_east) ** 2 + (east * u_north) ** 2 - 2.0 * east * north * covariance
+    worst = float(horizontal(0.0, 0.0, u_east, u_north, covariance)[1])
+    u_azimuth = sqrt(max(across, 0.0)) / length**2 if length > worst else inf
     return Steer(
         distance=length,
         u_distance=u,

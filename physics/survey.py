@@ -321,7 +321,7 @@ class Survey:
             return None
         warning, action = (float(one[0]) for one in limits_at(self.assumptions.limits, np.array([now.depth])))
         east, north = now.measured_east - now.expected_east, now.measured_north - now.expected_north
-        length, u = horizontal(east, north, now.u_east, now.u_north)
+        length, u = horizontal(east, north, now.u_east, now.u_north, now.covariance)
         direction = self._row[ROW["direction"]]
         return Standing(
             time=float(self._board.newest[0]),
@@ -343,6 +343,7 @@ class Survey:
             wall_clearance=self._wall_now(now),
             frames=self._frames,
             notes=self._all_notes(),
+            covariance=now.covariance,
         )
 
     def _wall_now(self, now: Judged) -> float | None:

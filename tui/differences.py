@@ -50,7 +50,9 @@ def length(one: DepthDifference) -> float:
 
 def expanded(one: DepthDifference) -> float:
     """Return the expanded uncertainty (k = 2) of that length [m]."""
-    return COVERAGE_FACTOR * float(horizontal(one.east, one.north, one.u_east, one.u_north)[1])
+    return COVERAGE_FACTOR * float(
+        horizontal(one.east, one.north, one.u_east, one.u_north, one.covariance)[1]
+    )
 
 
 def head(units: Units = METRIC, room: int = 72) -> str:

@@ -42,6 +42,8 @@ class Judged(Protocol):
     @property
     def u_north(self) -> float: ...  # noqa: D102
     @property
+    def covariance(self) -> float: ...  # noqa: D102
+    @property
     def warning(self) -> float: ...  # noqa: D102
     @property
     def action(self) -> float: ...  # noqa: D102
@@ -63,7 +65,7 @@ def residual_length(one: Judged) -> float:
 
 def expanded(one: Judged) -> float:
     """Return the expanded uncertainty (k = 2) of the length of the residual [m]."""
-    _, u = horizontal(one.residual_east, one.residual_north, one.u_east, one.u_north)
+    _, u = horizontal(one.residual_east, one.residual_north, one.u_east, one.u_north, one.covariance)
     return COVERAGE_FACTOR * float(u)
 
 

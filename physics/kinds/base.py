@@ -7,7 +7,7 @@ from typing import Protocol
 import numpy as np
 from numpy.typing import NDArray
 
-from eastfall.physics.budget import combined
+from eastfall.physics.budget import combined, joint
 from eastfall.physics.depth import Jump
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import ROW_FIELDS, FaceSums, Halt, RestPoint, Rows, Station, Verdict
@@ -59,6 +59,8 @@ class Judged:
     expected_north: float
     u_east: float
     u_north: float
+    covariance: float = 0.0
+    """Of the two [m²]."""
 
 
 class KindTracker(Protocol):
@@ -159,7 +161,10 @@ class StationFacts:
     names : tuple of str
         Of the inputs of the uncertainty.
     parts : ndarray, shape (len(names), 2, n)
-        Standard uncertainty from each input, taken as uncorrelated [m].
+        Standard uncertainty from each input [m], signs kept where one cause moves east and north together. Inputs are
+        uncorrelated with each other.
+    correlation : ndarray, shape (len(names), n)
+        Of the east and the north part of each: 1 of one cause, 0 of two independent ones.
     halt : Halt, optional
         What a single station at rest was closed from.
     face : ndarray, shape (n,), optional
@@ -179,6 +184,7 @@ class StationFacts:
     still: bool
     names: tuple[str, ...]
     parts: Array
+    correlation: Array
     halt: Halt | None = None
     face: Array | None = None
     before: Station | None = None
@@ -191,15 +197,18 @@ def one_station(facts: StationFacts, assumptions: Assumptions) -> Station:
 
 def stations_of(facts: StationFacts, assumptions: Assumptions) -> list[Station]:
     """Judge stations: combined uncertainty of the residual, and the verdicts."""
-    u = combined(facts.parts)
+    u, shared = combined(facts.parts), joint(facts.parts, facts.correlation)
     residual = facts.measured - facts.expected
-    length, u_length = horizontal(residual[0], residual[1], u[0], u[1])
+    length, u_length = horizontal(residual[0], residual[1], u[0], u[1], shared)
     warning, action = limits_at(assumptions.limits, facts.depth)
     words = verdicts(length, u_length, action)
-    columns = np.stack([facts.depth, facts.time, *facts.measured, *facts.expected, *u, warning, action])
-    parts = np.abs(facts.parts).transpose(2, 0, 1).tolist()
+    columns = np.stack(
+        [facts.depth, facts.time, *facts.measured, *facts.expected, *u, warning, action, shared]
+    )
+    parts, correlations = facts.parts.transpose(2, 0, 1).tolist(), facts.correlation.T.tolist()
     face = [None] * len(words) if facts.face is None else [_known(one) for one in facts.face.tolist()]
-    walls, leans = _clearances(facts, u, assumptions), _leans(facts, residual, assumptions.limits)
+    walls = _clearances(facts, u, shared, assumptions)
+    leans = _leans(facts, residual, assumptions.limits)
     return [
         Station(
             number=facts.numbers[at],
@@ -220,6 +229,8 @@ def stations_of(facts: StationFacts, assumptions: Assumptions) -> list[Station]:
             still=facts.still,
             inputs=facts.names,
             parts=tuple((east, north) for east, north in parts[at]),
+            correlations=tuple(correlations[at]),
+            covariance=row[10],
             halt=facts.halt,
             face=face[at],
             lean=leans[at][0],
@@ -241,14 +252,14 @@ def _known(value: float) -> float | None:
     return None if value != value else value  # noqa: PLR0124 (NaN, without an import)
 
 
-def _clearances(facts: StationFacts, u: Array, assumptions: Assumptions) -> list[_Judgement]:
+def _clearances(facts: StationFacts, u: Array, shared: Array, assumptions: Assumptions) -> list[_Judgement]:
     """Return clearance from the wall, its standard uncertainty [m] and the verdict at each station."""
     shaft = assumptions.shaft
     if shaft.diameter is None:
         return [_NOTHING] * len(facts.numbers)
     east, north = place(assumptions.run.kind, facts.measured, facts.expected)
     clear, bound = gap(shaft, east, north, body_width(assumptions)), assumptions.limits.wall_clearance
-    _, u_away = horizontal(east - shaft.centre_east, north - shaft.centre_north, *u)
+    _, u_away = horizontal(east - shaft.centre_east, north - shaft.centre_north, u[0], u[1], shared)
     words = [None] * clear.size if bound is None else verdicts(-clear, u_away, -bound)
     return list(zip(clear.tolist(), u_away.tolist(), words, strict=True))
 
@@ -285,12 +296,13 @@ def _leans(facts: StationFacts, residual: Array, limits: Limits) -> list[_Judgem
         first, earlier, top = residual[:, :1], facts.parts[:, :, :1], float(facts.depth[0])
     step = np.abs(np.diff(facts.depth, prepend=top))
     change = np.diff(residual, axis=1, prepend=first)
-    parts = np.abs(np.diff(np.abs(facts.parts), axis=2, prepend=earlier))
+    parts = np.diff(facts.parts, axis=2, prepend=earlier)
     if RANDOM in facts.names:
         row = facts.names.index(RANDOM)
         squares = np.diff(facts.parts[row] ** 2, axis=1, prepend=earlier[row] ** 2)
         parts[row] = np.sqrt(np.abs(squares))
-    length, u = horizontal(*change, *combined(parts))
+    u_east, u_north = combined(parts)
+    length, u = horizontal(change[0], change[1], u_east, u_north, joint(parts, facts.correlation))
     with np.errstate(divide="ignore", invalid="ignore"):
         lean, u_lean = length / step, u / step
     words = [None] * step.size if limits.lean is None else verdicts(lean, u_lean, limits.lean)

@@ -27,6 +27,8 @@ from eastfall.physics.kinds.base import (
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Assumptions
 
+_EACH_AXIS = frozenset({MARK, MARKS})
+"""Inputs that err in east and in north each for itself; a release is two inputs, and all else moves both as one."""
 _SAME_LEVEL = 0.05
 """Marks within this depth of each other were made at one level [m]."""
 
@@ -147,6 +149,7 @@ class Drop(Plain):
             still=True,
             names=names,
             parts=parts,
+            correlation=np.array([[name not in _EACH_AXIS] for name in names], dtype=float),
         )
         found = one_station(facts, self._assumptions)
         if level.count < 2:
@@ -171,6 +174,7 @@ class Drop(Plain):
             expected_north=mean.expected_north,
             u_east=mean.u_east,
             u_north=mean.u_north,
+            covariance=mean.covariance,
         )
 
     def rest_point(self) -> RestPoint | None:

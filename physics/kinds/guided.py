@@ -6,6 +6,7 @@ from itertools import pairwise
 
 import numpy as np
 
+from eastfall.physics.budget import joint
 from eastfall.physics.calibration import corrected
 from eastfall.physics.depth import Jump
 from eastfall.physics.expected import ExpectedCurve
@@ -270,6 +271,7 @@ class Guided:
         kept = np.stack([one.at for one in due], axis=1)
         at, first = kept[closing.DEPTH], due[0]
         before = self._before(first)
+        summed, expected = _summed(kept), self._curve.budget.at(at)
         facts = StationFacts(
             numbers=[one.number for one in due],
             depth=np.array([one.depth for one in due]),
@@ -281,7 +283,8 @@ class Guided:
             readings=[one.readings for one in due],
             still=first.rest is not None,
             names=(*self._shares.names, *self._curve.budget.names),
-            parts=np.concatenate([self._shares.parts(_summed(kept)), self._curve.budget.at(at)]),
+            parts=np.concatenate([self._shares.parts(summed), expected]),
+            correlation=np.concatenate([self._shares.correlation(summed), np.ones((len(expected), at.size))]),
             halt=_halt(first.rest),
             face=kept[closing.FACE],
             before=before,
@@ -335,6 +338,8 @@ class Guided:
             return None
         at = _summed(self._last[:, None])
         u = self._uncertainty(at.depth, at)
+        shared = self._curve.look_up(self._curve.covariance, at.depth)
+        shared = shared + joint(self._shares.parts(at), self._shares.correlation(at))
         east, north = self._last[closing.MEASURED].tolist()
         expected_east, expected_north = self._last[closing.EXPECTED].tolist()
         return Judged(
@@ -345,6 +350,7 @@ class Guided:
             expected_north=expected_north,
             u_east=float(u[0, 0]),
             u_north=float(u[1, 0]),
+            covariance=float(shared[0]),
         )
 
     def hold_still(self) -> float | None:

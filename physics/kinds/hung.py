@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from eastfall.physics import swing
-from eastfall.physics.budget import combined
+from eastfall.physics.budget import combined, joint
 from eastfall.physics.calibration import corrected
 from eastfall.physics.expected import ExpectedCurve
 from eastfall.physics.findings import RestPoint, Rows, Station
@@ -28,7 +28,7 @@ from eastfall.physics.kinds.base import (
     rows_of,
     usable,
 )
-from eastfall.physics.kinds.shares import AZIMUTH, SCALE, ZERO, of_axes
+from eastfall.physics.kinds.shares import AZIMUTH, SCALE, ZERO, correlation_of_scales, of_axes
 from eastfall.physics.lineangle import LineAngle, line_angle
 from eastfall.physics.moving import LONGEST_GAP, LineSpeed
 from eastfall.physics.readings import Readings
@@ -59,6 +59,7 @@ _WANTED = 0.00025
 """Standard uncertainty of a rest point for which the swings needed are told [m]: ±0.5 mm expanded."""
 _QUIET = 3.0
 """Readings that scatter by less than this many times their own uncertainty show a bob at rest."""
+_OF_A_ROW = tuple(name for name in Judged.__slots__ if name in ROW)
 
 
 class _Level:
@@ -72,7 +73,8 @@ class _Level:
         self.due = time + _FIRST_ESTIMATE
         self.count = 0
         self.origin: Array = np.zeros(2)
-        self.sums: Array = np.zeros((4, 1))
+        self.sums: Array = np.zeros((5, 1))
+        """Of offsets from `origin`, of their squares, and of east times north."""
         self.rest: swing.RestPoint | None = None
         self.direct = True
         self.expected: Array = np.zeros(2)
@@ -95,8 +97,16 @@ class _Level:
             return np.zeros(2)
         mean = self.sums[:2, 0] / self.count
         return np.sqrt(
-            np.maximum(self.sums[2:, 0] / self.count - mean**2, 0.0) * self.count / (self.count - 1)
+            np.maximum(self.sums[2:4, 0] / self.count - mean**2, 0.0) * self.count / (self.count - 1)
         )
+
+    def correlation(self) -> float:
+        """Return the correlation of east and north among the readings; 0 where there is none to tell."""
+        east, north = self.scatter().tolist()
+        if not east * north > 0.0:
+            return 0.0
+        shared = self.sums[4, 0] - self.sums[0, 0] * self.sums[1, 0] / self.count
+        return float(np.clip(shared / (self.count - 1) / (east * north), -1.0, 1.0))
 
 
 class Hung(Plain):
@@ -124,6 +134,7 @@ class Hung(Plain):
         self._unseen: list[float] = []
         """Levels that were left before a swing was seen [m]."""
         self._last: Array | None = None
+        self._last_direct = True
         self.unused: Counter[str] = Counter()
         self._messages: tuple[str, ...] = ()
 
@@ -139,7 +150,7 @@ class Hung(Plain):
         creeping, hurried = self._apart(readings.time, readings.depth)
         judged, stations = self._by_level(rows, (np.abs(speed) > _RUNNING) | creeping, direct, hurried)
         fill_limits(rows, self._assumptions.limits)
-        self._last = rows[:, -1].copy()
+        self._last, self._last_direct = rows[:, -1].copy(), bool(direct[-1])
         return Batch(rows=Rows(rows), judged=judged, stations=tuple(stations))
 
     def _apart(self, time: Array, depth: Array) -> tuple[Flags, Flags]:
@@ -279,7 +290,7 @@ class Hung(Plain):
         if np.isfinite(rows[ROW["time"]]).all():
             level.tracker.update(rows[ROW["time"]], offsets[0], offsets[1])
         away = offsets - level.origin[:, None]
-        terms = np.concatenate([level.sums, np.concatenate([away, away * away])], axis=1)
+        terms = np.concatenate([level.sums, np.concatenate([away, away * away, away[:1] * away[1:]])], axis=1)
         sums = np.cumsum(terms, axis=1)[:, 1:]
         numbers = level.count + np.arange(1, rows.shape[1] + 1)
         level.sums, level.count, level.time = (
@@ -291,7 +302,7 @@ class Hung(Plain):
             judged[:] = (np.array([level.rest.east, level.rest.north]) - level.expected)[:, None]
             return
         mean = sums[:2] / numbers
-        spread = np.sqrt(np.maximum(sums[2:] / numbers - mean**2, 0.0))
+        spread = np.sqrt(np.maximum(sums[2:4] / numbers - mean**2, 0.0))
         dwelt = rows[ROW["time"]] - level.began
         seen = ~(dwelt < level.single_swing) | ((dwelt >= _BY_HAND * (numbers - 1)) & (numbers > 1))
         quiet = (spread <= self._quiet(level)).all(axis=0) & seen
@@ -315,8 +326,12 @@ class Hung(Plain):
         self._closed += 1
         return [found]
 
-    def _position(self, level: _Level) -> tuple[Array, tuple[str, ...], Array]:
-        """Return where the bob is taken to rest, shape (2,), and the budget: names, parts of shape (n, 2, 1)."""
+    def _position(self, level: _Level) -> tuple[Array, tuple[str, ...], Array, Array]:
+        """Return where the bob is taken to rest, shape (2,), and the budget.
+
+        That is names, parts of shape (n, 2, 1), and the correlation of the two parts of each, shape (n, 1).
+        """
+        together = 0.0
         rest = level.rest
         if rest is not None and rest.fits:
             position, u, name = (
@@ -324,34 +339,39 @@ class Hung(Plain):
                 np.array([rest.u_east, rest.u_north]),
                 REST_POINT,
             )
+            together = _correlation(rest.covariance)
         else:
             position, scatter = level.mean(), level.scatter()
             quiet = bool((scatter <= self._quiet(level)).all())
             # A swing that does not fit the model leaves only its scatter, all of it, to say where the rest is.
             u = np.maximum(scatter, self._random(level)) / (np.sqrt(level.count) if quiet else 1.0)
             name = READINGS if quiet else "swing not resolved"
+            # A swing has a plane; the noise of quiet readings has none.
+            together = 0.0 if quiet else level.correlation()
             if not level.swing_seen:
                 # A few readings near a turning point look like rest; nothing is known of the rest point yet.
                 u, name = np.full(2, np.nan), _UNSEEN
-        names, parts = self._systematic(level, position)
+        names, parts, correlation = self._systematic(level, position)
         budget = self._curve.budget if level.direct else self._line_angles().budget
         return (
             position,
             (name, *names, *budget.names),
             np.concatenate([u.reshape(1, 2, 1), parts, budget.at(level.depth)]),
+            np.array([[together], *correlation, *([1.0] for _ in budget.names)]),
         )
 
-    def _systematic(self, level: _Level, position: Array) -> tuple[tuple[str, ...], Array]:
-        """Return what does not average out of an angle: names, parts of shape (n, 2, 1) [m]."""
+    def _systematic(self, level: _Level, position: Array) -> tuple[tuple[str, ...], Array, Array]:
+        """Return what does not average out of an angle: names, parts and correlation as `_position` does."""
         if level.direct:
-            return (), np.empty((0, 2, 1))
+            return (), np.empty((0, 2, 1)), np.empty((0, 1))
         instrument = self._assumptions.instrument
         zero = np.full((2, 1), instrument.u_zero * level.depth)
         parts = np.stack([zero, *of_axes(instrument, position[:, None])])
-        return (ZERO, SCALE, AZIMUTH), parts
+        scales = correlation_of_scales(instrument, position[:, None])
+        return (ZERO, SCALE, AZIMUTH), parts, np.stack([np.zeros(1), scales, np.ones(1)])
 
     def _station(self, level: _Level) -> Station:
-        position, names, parts = self._position(level)
+        position, names, parts, correlation = self._position(level)
         if _UNSEEN in names:
             self._unseen.append(level.depth)
         facts = StationFacts(
@@ -366,6 +386,7 @@ class Hung(Plain):
             still=True,
             names=names,
             parts=parts,
+            correlation=correlation,
         )
         return one_station(facts, self._assumptions)
 
@@ -406,9 +427,12 @@ class Hung(Plain):
         level = self._level or self._final
         if level is None:
             row = dict(zip(ROW, self._last.tolist(), strict=True))
-            names = Judged.__slots__
-            return Judged(**{name: row[name] for name in names})
-        position, _, parts = self._position(level)
+            shared = self._curve.covariance if self._last_direct else self._line_angles().covariance
+            return Judged(
+                **{name: row[name] for name in _OF_A_ROW},
+                covariance=float(self._curve.look_up(shared, [row["depth"]])[0]),
+            )
+        position, _, parts, correlation = self._position(level)
         u_east, u_north = combined(parts)[:, 0]
         return Judged(
             depth=level.depth,
@@ -418,6 +442,7 @@ class Hung(Plain):
             expected_north=float(level.expected[1]),
             u_east=float(u_east),
             u_north=float(u_north),
+            covariance=float(joint(parts, correlation)[0]),
         )
 
     def rest_point(self) -> RestPoint | None:
@@ -443,6 +468,12 @@ class Hung(Plain):
 def _whole(pairs: Array) -> Flags:
     """Return which columns have no missing value."""
     return np.asarray(np.isfinite(pairs).all(axis=0))
+
+
+def _correlation(covariance: Array) -> float:
+    """Return the correlation of two coordinates; 0 where either is known exactly."""
+    sizes = float(np.sqrt(covariance[0, 0] * covariance[1, 1]))
+    return float(covariance[0, 1]) / sizes if sizes else 0.0
 
 
 def _run_length(flags: Flags) -> int:

@@ -1,7 +1,7 @@
 """What each input puts into the uncertainty of a sum of tilts; how the sum is made is the guided kind's business."""
 
 from dataclasses import dataclass
-from math import sqrt
+from math import cos, sin, sqrt
 
 import numpy as np
 from numpy.typing import NDArray
@@ -66,7 +66,7 @@ def of_axes(instrument: Instrument, offset: Array) -> tuple[Array, Array]:
     Returns
     -------
     scale, azimuth : ndarray, shape (2, n)
-        Standard uncertainties [m].
+        Standard uncertainties [m]; that of the azimuth with its signs.
 
     Notes
     -----
@@ -74,11 +74,38 @@ def of_axes(instrument: Instrument, offset: Array) -> tuple[Array, Array]:
     u √(p² sin² α + q² cos² α) toward east and u √(p² cos² α + q² sin² α) toward north, so that an offset due north errs
     east as well. An azimuth error turns the offset.
     """
-    alpha = instrument.a_azimuth + instrument.north_offset
-    s, c = np.sin(alpha), np.cos(alpha)
-    along_a, along_b = s * offset[0] + c * offset[1], c * offset[0] - s * offset[1]
+    s, c, along_a, along_b = _axes(instrument, offset)
     scale = np.hypot([s * along_a, c * along_a], [c * along_b, s * along_b])
-    return instrument.u_scale * scale, instrument.u_azimuth * np.abs(offset[::-1])
+    turned = np.stack([offset[1], -offset[0]])
+    return instrument.u_scale * scale, instrument.u_azimuth * turned
+
+
+def correlation_of_scales(instrument: Instrument, offset: Array) -> Array:
+    """Give the correlation of what the scales of both axes put into east and into north of an offset.
+
+    Parameters
+    ----------
+    instrument : Instrument
+    offset : ndarray, shape (2, n)
+        From the start of the sum, east and north [m].
+
+    Returns
+    -------
+    ndarray, shape (n,)
+        With the p, q and α of `of_axes` the covariance is u² sin α cos α (p² - q²); 0 where a part is.
+    """
+    s, c, along_a, along_b = _axes(instrument, offset)
+    a, b = along_a * along_a, along_b * along_b
+    shared, east, north = s * c * (a - b), s * s * a + c * c * b, c * c * a + s * s * b
+    sizes = np.sqrt(east * north)
+    return np.divide(shared, sizes, out=np.zeros_like(sizes), where=sizes > 0.0)
+
+
+def _axes(instrument: Instrument, offset: Array) -> tuple[float, float, Array, Array]:
+    """Return sine and cosine of the azimuth of A, and the offset along A and along B [m]."""
+    alpha = instrument.a_azimuth + instrument.north_offset
+    s, c = sin(alpha), cos(alpha)
+    return s, c, s * offset[0] + c * offset[1], c * offset[0] - s * offset[1]
 
 
 class Shares:
@@ -98,6 +125,7 @@ class Shares:
         self._u_counter = assumptions.depth.u_offset
         self._random = instrument.u_tilt if guide.readings == "all" else 1.0
         self._added: dict[str, Array] = {}
+        self._jumps_shared = 0.0
         self._leans = _Spread()
 
     @property
@@ -117,7 +145,7 @@ class Shares:
         Returns
         -------
         ndarray, shape (len(names), 2, n)
-            Standard uncertainties [m].
+            Standard uncertainties [m]; signed where one cause moves east and north together.
 
         Notes
         -----
@@ -131,13 +159,34 @@ class Shares:
         parts[0] = self._random * np.sqrt(summed.weight)
         parts[1] = instrument.u_zero * summed.lever
         parts[2], parts[3] = of_axes(instrument, gone)
-        parts[4] = instrument.u_depth_fraction * np.abs(gone - summed.depth * summed.slope)
-        parts[5] = np.abs(summed.pull)
+        parts[4] = instrument.u_depth_fraction * (gone - summed.depth * summed.slope)
+        parts[5] = summed.pull
         if self._u_counter:
-            parts[6] = self._u_counter * np.abs(summed.slope)
+            parts[6] = self._u_counter * summed.slope
         for row, one in enumerate(reversed(self._added.values()), start=1):
             parts[-row] = one[:, None]
         return parts
+
+    def correlation(self, summed: Summed) -> Array:
+        """Return the correlation of the east and the north part of each input.
+
+        Returns
+        -------
+        ndarray, shape (len(names), n)
+
+        Notes
+        -----
+        What both axes err by alike and each for itself, noise and zeros, stays uncorrelated however they are turned.
+        The azimuth, the counter and the pull of the bends move the offset along one line. A stretch without readings
+        is bridged in east and in north by themselves.
+        """
+        found = np.zeros((len(self.names), summed.weight.size))
+        found[2] = correlation_of_scales(self._instrument, summed.offset - self._start)
+        found[3 : 7 if self._u_counter else 6] = 1.0
+        if JUMPED in self._added:
+            sizes = float(np.prod(self._added[JUMPED]))
+            found[self.names.index(JUMPED)] = self._jumps_shared / sizes if sizes else 0.0
+        return found
 
     def lean(self, east: float, north: float) -> None:
         """Take note of the mean slope between two stations [m/m]: how much the guide varies."""
@@ -163,6 +212,7 @@ class Shares:
 
     def jumped(self, length: float, slope: Array) -> None:
         """Add what a jump of depth [m] leaves open: by so much of the guide the sum, or its depth, may be wrong."""
+        self._jumps_shared += length**2 * float(slope[0] * slope[1])
         self._add(JUMPED, abs(length) * np.hypot(slope, self._instrument.u_tilt))
 
     def _add(self, name: str, u: Array) -> None:

@@ -18,6 +18,7 @@ from eastfall.io.compare import (
 from eastfall.io.errors import InputError
 from eastfall.io.reduce import Reduction, reduce_file
 from eastfall.physics.findings import Result, Station
+from eastfall.physics.verdict import horizontal
 
 GUIDED = next((Path(__file__).parents[2] / "replay_logs").glob("sandrigg*.jsonl"))
 
@@ -102,6 +103,33 @@ def test_surveys_of_two_shafts_or_of_a_changed_record_are_told_apart() -> None:
 def _pass(face: float | None, number: int, **parts: tuple[float, float]) -> list[Station]:
     names = tuple(name.replace("_", " ").replace("tilt ", "tilt, ") for name in parts)
     return [station(20.0, 0.0, passing=number, face=face, inputs=names, parts=tuple(parts.values()))]
+
+
+def test_what_one_cause_moves_in_both_coordinates_counts_along_the_difference() -> None:
+    """By hand [mm]: (1, 1.2) of one cause in both surveys, 2.5 east and 3.0 north apart: u = √2 · 1.5621 along it.
+
+    Apart across it, 3.0 east and -2.5 north, that cause is nothing. As uncorrelated it were 1.6 of 3.9, and 1.5.
+    """
+    one_cause = {"covariance": 1e-3 * 1.2e-3}
+    first = _run(station(20.0, 0.0, 0.0, **one_cause))
+    for east, north, u in ((2.5e-3, 3.0e-3, 2**0.5 * np.hypot(1.0, 1.2)), (3.0e-3, -2.5e-3, 0.0)):
+        (row,) = compare_runs(first, _run(station(20.0, east, north, **one_cause))).rows
+        assert (row.u_east, row.u_north) == pytest.approx((1e-3 * 2**0.5, 1.2e-3 * 2**0.5))
+        assert 1e3 * horizontal(row.east, row.north, row.u_east, row.u_north, row.covariance)[
+            1
+        ] == pytest.approx(u, abs=1e-6)
+        assert row.moved == ("no" if u else "yes")
+
+
+def test_a_part_that_turned_between_two_passes_shows_with_its_sign() -> None:
+    """By hand [mm]: one cause of (0.3, 0.4) in the first pass and (0.3, -0.2) in the second: (0, 0.6) apart."""
+    down = _pass(None, 0, azimuth=(3e-4, 4e-4), depth=(1e-4, 1e-4))
+    up = _pass(None, 1, azimuth=(3e-4, -2e-4), depth=(2e-4, 3e-4))
+    stations = [replace(one, correlations=(1.0, 1.0)) for one in down + up]
+    found = between_passes(stations, 0, 1)
+    assert found is not None
+    assert (found.rows[0].u_east, found.rows[0].u_north) == pytest.approx((1e-4, np.hypot(6e-4, 2e-4)))
+    assert found.rows[0].covariance == pytest.approx(1e-4 * 2e-4)
 
 
 @pytest.mark.invariant

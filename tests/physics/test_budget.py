@@ -4,7 +4,7 @@ import GTC
 import numpy as np
 import pytest
 
-from eastfall.physics.budget import Budget, combined, covariance
+from eastfall.physics.budget import Budget, combined, covariance, joint
 
 
 @pytest.mark.published
@@ -40,6 +40,20 @@ def test_covariance_of_shared_inputs_agrees_with_gtc():
         east, north = length * GTC.sin(azimuth), length * GTC.cos(azimuth)
         shared = GTC.get_covariance(east, north)
         np.testing.assert_allclose(found, [[east.u**2, shared], [shared, north.u**2]], rtol=1e-13)
+
+
+@pytest.mark.invariant
+def test_the_covariance_of_both_coordinates_counts_each_input_by_its_correlation():
+    """All of one cause is the covariance of shared inputs, none is nothing; one column is what it is beside others."""
+    parts = np.random.default_rng(2).normal(size=(17, 2, 9))
+    ones = np.ones((17, 9))
+    assert joint(parts, ones) == pytest.approx(covariance(parts)[:, 0, 1], rel=1e-13)
+    assert joint(parts, 0.0 * ones).tolist() == [0.0] * 9
+    half = joint(parts[:1], 0.5 * ones[:1])
+    assert half == pytest.approx(0.5 * parts[0, 0] * parts[0, 1], rel=1e-15)
+    alone = [joint(parts[:, :, at : at + 1], ones[:, :1])[0] for at in range(9)]
+    assert alone == joint(parts, ones).tolist()
+    assert joint(np.empty((0, 2, 3)), np.empty((0, 3))).tolist() == [0.0] * 3
 
 
 def test_nothing_contributes_nothing_and_missing_stays_missing():

@@ -133,6 +133,60 @@ def test_a_known_end_takes_what_grows_with_depth_and_bridges_what_walks(shaft):
     assert "larger than three times" in best_estimate(down, calm)[1][1]
 
 
+def guides(east, north, expected=(3e-5, -1e-4)):
+    """Give the stations of two passes with residuals, a random part, and one cause that moves east and north."""
+    found = []
+    for one in passes(east, east):
+        at = DEPTHS.index(one.depth)
+        parts = (*one.parts[:2], tuple(p * one.depth / 100.0 for p in expected))
+        moved = one.expected_north + north[at]
+        together = {"correlations": (0.0, 0.0, 1.0), "covariance": parts[2][0] * parts[2][1]}
+        found.append(replace(one, measured_north=moved, parts=parts, **together))
+    return tuple(found)
+
+
+def test_the_covariance_of_what_both_passes_share_stays_and_an_end_takes_what_grows_with_depth(shaft):
+    """By hand: one cause of 30 µm east and -100 µm north at 100 m stays in the mean of two passes: -3000 µm² z²/Z².
+
+    A known end takes it whole, as it grows in proportion to depth; its own two coordinates are independent.
+    """
+    plain = replace(shaft(depth=100.0), instrument=Instrument(u_scale=0.0, u_azimuth=0.0))
+    best, _ = best_estimate(guides(GROWN, GROWN), plain)
+    assert [one.covariance for one in best] == pytest.approx(
+        [-3e-9 * (z / 100.0) ** 2 for z in DEPTHS], abs=1e-20
+    )
+    tied = replace(plain, guide=Guide(end_east=1e-3, end_north=0.0, u_end=5e-4))
+    best, _ = best_estimate(guides(GROWN, GROWN), tied)
+    assert [one.covariance for one in best] == pytest.approx([0.0] * 6, abs=1e-20)
+
+
+def test_the_azimuth_counts_in_a_tied_estimate_with_what_of_it_is_no_straight_line(shaft):
+    """A bow of 10 mm east and as much north between ends that are known: turned by u, east and north err oppositely."""
+    bow = [4e-6 * z * (100.0 - z) for z in DEPTHS]
+    tied = shaft(
+        depth=100.0,
+        instrument=Instrument(u_scale=0.0, u_azimuth=0.02),
+        guide=Guide(end_east=0.0, end_north=0.0, u_end=0.0),
+    )
+    best, _ = best_estimate(guides(bow, bow, (0.0, 0.0)), tied)
+    assert [one.covariance for one in best] == pytest.approx([-((0.02 * one) ** 2) for one in bow], abs=1e-20)
+
+
+def test_passes_that_disagree_leave_the_truth_along_what_parts_them(shaft):
+    """3 mm east and 4 mm north of fault in one pass: half of each to either side, as one cause."""
+    plain = replace(shaft(depth=100.0), instrument=Instrument(u_scale=0.0, u_azimuth=0.0))
+    stations = guides(GROWN, GROWN, (0.0, 0.0))
+    off = [
+        replace(one, measured_east=one.measured_east + 3e-3, measured_north=one.measured_north + 4e-3)
+        if one.passing == 1 and one.depth == 60.0
+        else one
+        for one in stations
+    ]
+    best, notes = best_estimate(tuple(off), plain)
+    assert "disagree" in notes[0]
+    assert best[3].covariance == pytest.approx(1.5e-3 * 2e-3)
+
+
 def test_closure_is_up_less_down_and_its_misclosure_what_the_line_does_not_explain():
     """1 mm more on the way up, with the same expected offset: a millimetre of misclosure."""
     found = closure(passes(GROWN, [one + 1e-3 for one in GROWN]))

@@ -210,11 +210,11 @@ def test_the_alike_of_slopes_is_the_variance_of_a_difference():
     )
 
 
-def test_other_parts_keep_what_a_line_to_the_end_leaves_without_a_sign(shaft):
-    """1 mm at 60 m and 5 at the end: 1 - 0.4·5 is a millimetre the other way, told as one."""
+def test_other_parts_keep_what_a_line_to_the_end_leaves_with_its_sign(shaft):
+    """1 mm at 60 m and 5 at the end: 1 - 0.4·5 is a millimetre the other way."""
     size = {20.0: 0.0, 60.0: 1e-3, 100.0: 4e-3, 120.0: 5e-3}
     best, _ = tied(shaft, (24.0, -12.0), parts=lambda z: {"latitude": (size[z], 0.0)})
-    assert parts_of(best[1])["latitude"] == (pytest.approx(1e-3), 0.0)
+    assert parts_of(best[1])["latitude"] == (pytest.approx(-1e-3), 0.0)
 
 
 def test_scale_acts_on_what_is_no_straight_line_to_the_end(shaft):
@@ -227,7 +227,7 @@ def test_scale_acts_on_what_is_no_straight_line_to_the_end(shaft):
     for one in best:
         parts = parts_of(one)
         assert parts[SCALE] == pytest.approx((1e-3 * arc[one.depth], 0.0), abs=1e-12)
-        assert parts["azimuth"] == pytest.approx((0.0, 2e-3 * arc[one.depth]), abs=1e-12)
+        assert parts["azimuth"] == pytest.approx((0.0, -2e-3 * arc[one.depth]), abs=1e-12)
 
 
 def faces(zero, u, suspect=0):

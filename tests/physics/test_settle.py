@@ -17,10 +17,11 @@ from eastfall.physics.verdict import horizontal, verdict
 NAMES = ("tilt, random", "tilt, zero", "azimuth")
 
 
-def station(east, north, parts, readings=100, action=0.025):
+def station(east, north, parts, readings=100, action=0.025, together=(0.0, 0.0, 0.0)):
     """Give a station with a residual and a budget."""
     u = [sum(one[row] ** 2 for one in parts) ** 0.5 for row in (0, 1)]
-    length, u_length = horizontal(east, north, *u)
+    shared = sum(one * part[0] * part[1] for one, part in zip(together, parts, strict=True))
+    length, u_length = horizontal(east, north, *u, shared)
     return Station(
         number=0,
         depth=50.0,
@@ -40,13 +41,15 @@ def station(east, north, parts, readings=100, action=0.025):
         still=False,
         inputs=NAMES,
         parts=tuple(parts),
+        correlations=tuple(together),
+        covariance=shared,
     )
 
 
 def with_part(one, row, factor):
     """Give the station with one input's part multiplied."""
     parts = [tuple(x * (factor if at == row else 1.0) for x in part) for at, part in enumerate(one.parts)]
-    return station(one.measured_east, one.measured_north, parts, one.readings)
+    return station(one.measured_east, one.measured_north, parts, one.readings, together=one.correlations)
 
 
 def test_a_decided_verdict_needs_nothing():
@@ -105,11 +108,12 @@ def test_on_the_limit_itself_nothing_will_do():
 @given(
     st.floats(0.015, 0.035),
     st.floats(-0.01, 0.01),
-    st.lists(st.tuples(st.floats(1e-5, 3e-3), st.floats(1e-5, 3e-3)), min_size=3, max_size=3),
+    st.lists(st.tuples(st.floats(1e-5, 3e-3), st.floats(-3e-3, 3e-3)), min_size=3, max_size=3),
+    st.tuples(st.just(0.0), st.floats(-1.0, 1.0), st.just(1.0)),
 )
-def test_doing_what_it_says_decides(east, north, parts):
+def test_doing_what_it_says_decides(east, north, parts, together):
     """Each remedy, applied alone, makes the verdict "within" or "over"; and so do the readings it asks for."""
-    one = station(east, north, parts)
+    one = station(east, north, parts, together=together)
     found = settle(one)
     assert (found is None) == (one.verdict != "undecided")
     if found is None:

@@ -71,7 +71,7 @@ def test_a_halt_after_bends_knows_what_they_left_in_the_sum(shaft):
     off = station.measured_east - true
     counted = station.parts[station.inputs.index("line over bends")][0]
     assert off == pytest.approx(-3.57e-3, abs=2e-5)
-    assert 0.5 < counted / abs(off) < 2.0
+    assert 0.5 < counted / off < 2.0
 
 
 def test_blocks_and_gaps_of_speed_change_nothing_to_the_last_bit():

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from survey_help import G, run, swinging
 
+from eastfall.physics.lineangle import line_angle
 from eastfall.physics.readings import Readings
 from eastfall.physics.settings import Air, Instrument, Limits, Line
 from eastfall.physics.survey import Survey
@@ -110,6 +111,50 @@ def test_readings_far_apart_of_a_line_that_runs_on_are_no_stations(shaft):
         assert {one.depth for one in stations} <= {10.0, 10.0 + speed * time[-1]}
         assert all(one.readings == 1 for one in stations)
         assert survey.unused["read once in passing"] == (10 if speed == 1.0 else 0)
+
+
+def test_a_swing_across_the_axes_leaves_what_it_leaves_open_along_its_plane(shaft):
+    """A swing toward 45° whose rest is not resolved may rest anywhere along its plane, and nowhere across it.
+
+    Read by hand twice a swing, 20 mm to either side: the scatter is √2 · 20 mm along, 0.5 mm of reading across.
+    """
+    sides = np.tile([1.0, -1.0], 6)
+    noise = 5e-4 * np.tile([1.0, 1.0, -1.0, -1.0], 3)
+    east, north = 0.02 * sides + noise, 0.02 * sides - noise
+    survey = Survey(shaft("hung", depth=90.0))
+    survey.feed(Readings.of(time=15.0 * np.arange(12), depth=np.full(12, 80.0), east=east, north=north))
+    now, station = survey.standing(), survey.close(nan).stations[-1]
+    assert station.inputs[0] == "swing not resolved"
+    (u_east, u_north), together = station.parts[0], station.correlations[0]
+    mean, shared = (u_east**2 + u_north**2) / 2.0, together * u_east * u_north
+    assert (mean + shared) ** 0.5 == pytest.approx(2**0.5 * 0.02 * (12 / 11) ** 0.5, rel=1e-6)
+    assert (mean - shared) ** 0.5 == pytest.approx(2**0.5 * 5e-4 * (12 / 11) ** 0.5, rel=1e-6)
+    assert now.covariance == station.covariance == pytest.approx(shared, rel=0.01)
+
+
+def test_the_covariance_of_a_rest_point_is_that_of_its_swing(shaft):
+    """Beside what is expected, which moves east and north by a micrometre here."""
+    survey, _ = run(shaft("hung", depth=90.0), SWINGING)
+    station = survey.result().stations[-1]
+    fitted = station.correlations[0] * station.parts[0][0] * station.parts[0][1]
+    assert fitted == pytest.approx(survey.result().rest_point.covariance_east_north, rel=1e-9)
+    assert station.covariance == pytest.approx(fitted, abs=1e-12)
+
+
+@pytest.mark.parametrize("by_angle", [False, True])
+def test_a_running_line_knows_that_air_moves_it_along_its_own_way(shaft, by_angle):
+    """Air toward 45°, known to a fifth: east and north of the newest reading err together."""
+    air = Air(cross_flow=((0.0, 90.0, 1.0, np.pi / 4),))
+    time, none = np.arange(0.0, 20.0, 0.5), np.zeros(40)
+    shown = {"tilt_a": none, "tilt_b": none} if by_angle else {"east": none, "north": none}
+    survey = Survey(shaft("hung", depth=90.0, line=Line(), air=air))
+    survey.feed(Readings.of(time=time, depth=30.0 + time, **shown))
+    now, curve = survey.standing(), survey.curve
+    at = [49.5]
+    blown = (line_angle(curve) if by_angle else curve).budget
+    moved = blown.at(at)[blown.names.index("cross-flow"), :, 0]
+    assert moved[0] == pytest.approx(moved[1], rel=0.02)
+    assert now.covariance == pytest.approx(moved[0] * moved[1], rel=0.02)
 
 
 def test_a_line_angle_times_its_length_is_the_offset(shaft):

@@ -9,7 +9,7 @@ from survey_help import journey, run
 from truth_help import DEPTH, capture
 
 from eastfall.physics.readings import Readings
-from eastfall.physics.settings import Depth, Guide, Limits
+from eastfall.physics.settings import Depth, Guide, Instrument, Limits
 from eastfall.physics.survey import Survey
 
 
@@ -26,6 +26,26 @@ def test_lean_between_stations_is_judged_with_its_own_uncertainty(shaft):
             assert one.lean == pytest.approx(1e-3, abs=4.0 * one.u_lean)
             # A zero carries every metre alike, and its 0.001° is the larger part of what is not known.
             assert 1.7e-5 < one.u_lean < 4e-5
+
+
+@pytest.mark.independent
+def test_the_azimuth_and_the_scales_count_in_a_lean_as_in_what_was_gone_between_two_stations(shaft):
+    """By hand: of a straight guide an azimuth known to 0.02 turns each metre of lean across it, and makes it no longer.
+
+    A scale of 2 % on both axes, A along the lean, makes it 2 % longer or shorter.
+    """
+    still = {"u_tilt": 0.0, "u_zero": 0.0, "u_depth_fraction": 0.0}
+    site = replace(shaft().site, u_latitude=0.0, u_elevation=0.0, u_gravity=0.0, u_deflection=0.0)
+    toward = np.arctan2(6e-3, 8e-3)
+    for stated, u in (
+        ({"u_azimuth": 0.02, "u_scale": 0.0}, 0.0),
+        ({"u_azimuth": 0.0, "u_scale": 0.02}, 2e-4),
+    ):
+        instrument = Instrument(a_azimuth=toward, **still, **stated)
+        readings = journey(depth=60.0, speed=1.0, lean=(6e-3, 8e-3), azimuth=toward)
+        survey, _ = run(shaft(depth=60.0, site=site, instrument=instrument), readings)
+        # From 20 to 40 m, where the winch neither speeds up nor slows down; the lean of the moving line is left.
+        assert survey.result().stations[2].u_lean == pytest.approx(u, abs=1e-6)
 
 
 def test_lean_is_none_of_the_verdict_where_no_limit_is_given(shaft):

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from eastfall.physics.verdict import horizontal, verdict, verdicts
+from eastfall.physics.verdict import direction, horizontal, verdict, verdicts
 
 published = pytest.mark.published
 
@@ -48,6 +48,45 @@ def test_uncertainty_of_a_length_agrees_with_gtc():
     length, u = horizontal(30.0, 40.0, 4.0, 3.0)
     assert length == pytest.approx(GTC.value(reference), rel=1e-14)
     assert u == pytest.approx(GTC.uncertainty(reference), rel=1e-12)
+
+
+@pytest.mark.independent
+@pytest.mark.parametrize("correlation", [-1.0, -0.6, 0.3, 1.0])
+def test_uncertainty_of_a_length_with_covariance_agrees_with_gtc(correlation):
+    """√(e² + n²) of (-30 ± 4, 40 ± 3) with correlated e and n, as the GTC library propagates it."""
+    GTC = pytest.importorskip("GTC")
+    east, north = GTC.ureal(-30.0, 4.0, independent=False), GTC.ureal(40.0, 3.0, independent=False)
+    GTC.set_correlation(correlation, east, north)
+    reference = GTC.sqrt(east * east + north * north)
+    _, u = horizontal(-30.0, 40.0, 4.0, 3.0, correlation * 12.0)
+    assert u == pytest.approx(GTC.uncertainty(reference), rel=1e-9, abs=1e-7)
+
+
+@pytest.mark.invariant
+@given(
+    st.floats(-10, 10),
+    st.floats(-10, 10),
+    st.floats(0.1, 3),
+    st.floats(0.1, 3),
+    st.floats(-1, 1),
+    st.floats(0, 6.3),
+)
+def test_the_uncertainty_of_a_length_does_not_depend_on_which_way_the_axes_point(
+    east, north, u_east, u_north, correlation, turn
+):
+    """Offset and covariance turned together give the same; near the edge to its own uncertainty either may stand in."""
+    matrix = np.array(
+        [[u_east**2, correlation * u_east * u_north], [correlation * u_east * u_north, u_north**2]]
+    )
+    if abs(math.hypot(east, north) - np.linalg.eigvalsh(matrix)[1] ** 0.5) < 1e-9:
+        return
+    about = np.array([[math.cos(turn), math.sin(turn)], [-math.sin(turn), math.cos(turn)]])
+    turned, offset = about @ matrix @ about.T, about @ [east, north]
+    there = np.array(horizontal(*offset, *np.sqrt(np.diag(turned)), turned[0, 1]))
+    here = np.array(horizontal(east, north, u_east, u_north, matrix[0, 1]))
+    assert there == pytest.approx(here, rel=1e-9, abs=2e-7)
+    toward = np.array(direction(east, north, u_east, u_north, float(matrix[0, 1])))
+    assert toward @ matrix @ toward == pytest.approx(float(here[1]) ** 2, rel=1e-9, abs=1e-12)
 
 
 def test_a_residual_smaller_than_its_uncertainty_takes_the_larger_axis():
