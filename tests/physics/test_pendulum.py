@@ -81,7 +81,7 @@ def test_the_fit_is_the_least_squares_of_scipy_with_all_eight_numbers_free(seed)
 @pytest.mark.parametrize("swings", [2.0, 7.0, 60.0])
 @pytest.mark.parametrize("toward", [1.0, 1j])
 def test_a_small_swing_far_off_is_found_whichever_way_it_goes(swings, toward, expected):
-    """Toward east alone or north alone, 5 mm about a rest 3 m away, in noise of 0.3 mm; what is expected of the line is far out."""
+    """Toward east alone or north alone, 5 mm about a rest 3 m away, in noise of 0.3 mm; what is expected is far out."""
     rng = np.random.default_rng(7)
     time = np.arange(0.0, swings * PERIOD, 1.0)
     value = (
