@@ -50,12 +50,13 @@ def rise(forces: Forces, first: Thrown) -> Thrown:
     """
     up = np.minimum(first.v_down, 0.0)
     flight = _Flight(forces, first, up, -up / forces.field.gravity)
-    for _ in range(ROUNDS):
-        last = flight.refine()
-        step = np.where(up < 0.0, last.v_down / flight.now_down[-1], 0.0)
-        flight.duration = flight.duration - step
-        if float(np.abs(step).max()) < SETTLED:
-            return last if np.all(up < 0.0) else _keep(last, first, up < 0.0)
+    with np.errstate(all="ignore"):  # numbers of an iteration that runs away; it is refused below
+        for _ in range(ROUNDS):
+            last = flight.refine()
+            step = np.where(up < 0.0, last.v_down / flight.now_down[-1], 0.0)
+            flight.duration = flight.duration - step
+            if float(np.abs(step).max()) < SETTLED:
+                return last if np.all(up < 0.0) else _keep(last, first, up < 0.0)
     raise ParameterError("speed_down", float(up.min()), "m/s", "a slower throw through this air")
 
 

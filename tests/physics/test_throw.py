@@ -6,8 +6,11 @@ import numpy as np
 import pytest
 
 from eastfall.physics.descent import State
+from eastfall.physics.errors import ParameterError
+from eastfall.physics.expected import expected_curve
 from eastfall.physics.motion import UNCHANGED, Forces, Release
 from eastfall.physics.published.model_fields import constant_field
+from eastfall.physics.settings import Assumptions, Body, Run, Shaft, Site
 from eastfall.physics.throw import Thrown, reach, rise
 
 FORCES = Forces(constant_field(pi / 4, 9.8), None, None, Release(), UNCHANGED)
@@ -51,3 +54,12 @@ def test_up_and_down_again_is_symmetric() -> None:
     back = reach(FORCES, top, 5.0)
     assert back.time == pytest.approx(2.0 * top.state.time, rel=1e-5)
     assert np.sqrt(2.0 * back.energy) == pytest.approx(-SPEEDS[:2], rel=1e-5)
+
+
+@pytest.mark.regression
+def test_a_throw_too_fast_for_the_air_is_refused_without_a_warning() -> None:
+    """A light body of 0.85 m thrown up at 99 m/s: the iteration runs away, and that is told as what cannot be used."""
+    site = Site(latitude=0.87)
+    body = Body(mass=0.5, diameter=0.854, release_speed_down=-99.4)
+    with pytest.raises(ParameterError, match="a slower throw through this air"):
+        expected_curve(Assumptions(site=site, shaft=Shaft(depth=300.0), run=Run(kind="drop"), body=body))
