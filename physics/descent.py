@@ -99,13 +99,14 @@ def _first_guess(forces: Forces, around: Surroundings, fallen: Array, first: Sta
     """Straight down under the drag of a constant coefficient, taken at the speed where it balances weight."""
     pull = around.gravity_down
     energy = first.energy + pull * fallen
-    if forces.air is not None and forces.body is not None:
+    if forces.air is not None and forces.body is not None and forces.body.drag_coefficient != 0.0:
         speed = np.sqrt(2.0 * energy)
         for _ in range(12):
             per_metre = forces.drag_rate(forces.body, around, speed) / speed
             speed = np.sqrt(speed * np.sqrt(pull / per_metre))
-        along = np.exp(-2.0 * per_metre * fallen)
-        energy = np.maximum(first.energy * along + 0.5 * speed**2 * (1.0 - along), 1e-12)
+        # expm1: under next to no drag the difference of 1 and what is left of the speed has no digits.
+        left = -2.0 * per_metre * fallen
+        energy = np.maximum(first.energy * np.exp(left) - 0.5 * speed**2 * np.expm1(left), 1e-12)
     still = np.zeros_like(energy)
     return State(*(still + one for one in first))._replace(energy=energy)
 

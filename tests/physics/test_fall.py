@@ -214,6 +214,20 @@ def test_no_air_is_the_same_as_air_of_zero_density() -> None:
 
 
 @pytest.mark.invariant
+@pytest.mark.parametrize("coefficient", [0.0, 1e-300, 1e-12])
+def test_a_body_without_drag_falls_in_air_as_one_of_less_weight(coefficient: float) -> None:
+    """With the coefficient at its least, buoyancy is what the air does: the limit of a vanishing one is met."""
+    air = air_column(Air(), FIELD)
+
+    def time(drag: float) -> float:
+        body = replace(STEEL, drag_coefficient=drag)
+        return float(fall(FIELD, to_depth=940.0, body=body, air=air).at(940.0).time)
+
+    assert time(coefficient) == pytest.approx(time(1e-9), rel=1e-8)
+    assert time(coefficient) > float(fall(FIELD, to_depth=940.0).at(940.0).time)
+
+
+@pytest.mark.invariant
 def test_light_body_falls_at_its_terminal_speed_against_the_air() -> None:
     """In a downcast a light body ends up faster by the speed of the air, buoyancy and drag in balance."""
     body = replace(LIGHT, drag_coefficient=0.45)
