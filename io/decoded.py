@@ -115,6 +115,12 @@ Table = NDArray[np.float64]
 Example = tuple[int, str, str, str]
 
 
+def believed(name: str, value: float) -> bool:
+    """Tell whether a value in SI units lies within the bounds of a quantity."""
+    quantity = QUANTITIES[name]
+    return quantity.lowest * quantity.factor <= value <= quantity.highest * quantity.factor
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Decoded:
     """What a block of lines said.

@@ -10,6 +10,7 @@ from math import inf, isfinite, nextafter
 import numpy as np
 
 from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
+from eastfall.io.decoded import believed
 from eastfall.io.errors import LogError
 from eastfall.io.forms import decoder_for
 from eastfall.io.join import NO_DEPTH, NO_PARTNER, Join, Joined
@@ -27,6 +28,8 @@ NOT_APPLIED = "event not applied"
 UNKNOWN_LINK = "line of an unknown link"
 _UNARMED = "read before the run was armed"
 _DEFAULT_LINK = LinkSettings(url="-")
+_MARKED = {"depth_m": "depth_m", "east_m": "east_mm", "north_m": "north_mm"}
+"""Fields of a mark, and the quantity of a line whose bounds hold for each."""
 
 
 class Pipeline:
@@ -155,7 +158,7 @@ class Pipeline:
 
     def _marked(self, event: RunEvent) -> Findings:
         """Take an offset that a person typed in, as a reading like any other."""
-        values = [_number(event, name) for name in ("depth_m", "east_m", "north_m")]
+        values = [_length(event, name, column) for name, column in _MARKED.items()]
         if not self.armed:
             self._set_aside(1)
             return merged(())
@@ -208,6 +211,13 @@ def _number(event: RunEvent, key: str) -> float:
     if isinstance(value, bool) or not isinstance(value, int | float):
         raise _not_ours(event, key, "a number")
     return float(value)
+
+
+def _length(event: RunEvent, key: str, column: str) -> float:
+    value = _number(event, key)
+    if not believed(column, value):
+        raise _not_ours(event, key, "a length in a shaft")
+    return value
 
 
 def _flag(event: RunEvent, key: str) -> bool:

@@ -2,6 +2,7 @@
 
 from math import isfinite, nan
 
+from eastfall.io.decoded import believed
 from eastfall.tui.units import FEET, METRIC, Units
 
 
@@ -96,13 +97,14 @@ def read_mark(text: str, deepest: float, units: Units = METRIC) -> tuple[float, 
         depth, east, north = (float(one) for one in plain.split())
     except ValueError:
         depth = east = north = nan
-    depth = depth * units.long_size
-    if not (isfinite(depth + east + north) and depth >= 0.0):
+    depth, east, north = depth * units.long_size, east * units.short_size, north * units.short_size
+    within = believed("depth_m", depth) and believed("east_mm", east) and believed("north_mm", north)
+    if not (within and depth >= 0.0):
         raise ValueError(
             f"three numbers: depth in {units.long_name}, east and north in {units.short_name}, "
             f"as {example_mark(deepest, units)}"
         )
-    return depth, east * units.short_size, north * units.short_size
+    return depth, east, north
 
 
 def _not_negative(value: float) -> float:

@@ -146,6 +146,8 @@ def test_a_mark_typed_in_is_a_reading_like_any_other_once_the_shaft_is_clear() -
     assert (pipeline.frames, pipeline.set_aside) == (1, 1)
     with pytest.raises(LogError, match="east_m is 'far'; expected a number"):
         pipeline.take(event(4.0, "mark", **{**mark, "east_m": "far"}))
+    with pytest.raises(LogError, match=r"north_m is 1e\+300; expected a length in a shaft"):
+        pipeline.take(event(4.0, "mark", **{**mark, "north_m": 1e300}))
 
 
 RUBBISH_OFTEN = GUIDED.replace("feed_silent_s = 2.0", "feed_silent_s = 2.0\nbad_lines_per_minute = 2")

@@ -54,6 +54,9 @@ def test_landings_are_typed_in_the_readers_units() -> None:
         read_mark("100 1", 210.0, FEET)
     with pytest.raises(ValueError, match="depth in metres, east and north in millimetres"):
         read_mark("-1 0 0", 210.0, METRIC)
+    for beyond in ("210 5e300 0", "210 0 -1000001", "20001 0 0", "210 nan 0"):
+        with pytest.raises(ValueError, match="three numbers"):
+            read_mark(beyond, 210.0)
 
 
 @pytest.mark.parametrize(("mode", "feed"), [("live", AskedLive), ("replay", AskedReplay)])
