@@ -82,8 +82,9 @@ def _facts(one: Reduction, units: Units) -> list[tuple[str, str]]:
     ]
     deepest = max(stations, key=lambda s: s.depth, default=None)
     facts += [
-        ("expected E, deepest", _of(deepest, lambda s: units.signed(s.expected_east))),
-        ("expected N, deepest", _of(deepest, lambda s: units.signed(s.expected_north))),
+        (f"expected E {units.short}", _of(deepest, lambda s: units.signed(s.expected_east))),
+        (f"expected N {units.short}", _of(deepest, lambda s: units.signed(s.expected_north))),
+        (f"  at {units.depth_head}", _of(deepest, lambda s: units.depth(s.depth))),
         ("alarms raised", str(sum(a.new == "active" for a in one.result.alarms))),
     ]
     return facts

@@ -67,7 +67,7 @@ class AlarmsScreen(FollowingScreen[None]):
         table.follows = False
         table.focus()
         self.show(self._snapshot)
-        pairs = keys.keymap_of(self.app).line("alarms", "page", replay=self._seen is None)
+        pairs = keys.keymap_of(self.app).line("alarms", "page", "all", replay=self._seen is None)
         self.query_one(KeyLine).show(*pairs)
 
     def show(self, snapshot: Snapshot) -> None:

@@ -69,7 +69,7 @@ class CompareScreen(PaintedScreen[None]):
             return
         one = self._all[self._at]
         idle = (*(("turn",) if self._both else ()), *(("other", "other-back") if len(self._all) < 2 else ()))
-        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("compare", "page", without=idle))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("compare", "page", "all", without=idle))
         which = f"{self._at + 1} of {len(self._all)}" if len(self._all) > 1 else ""
         self.query_one("#compared", TextLine).show(
             (safe(one.second), Role.STRONG),

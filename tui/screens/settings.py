@@ -122,7 +122,7 @@ class SettingsScreen(PaintedScreen[None]):
         table.follows = False
         table.focus()
         self._fill()
-        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("settings", "page"))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("settings", "page", "all"))
 
     def _fill(self) -> None:
         now = self._remembered.now

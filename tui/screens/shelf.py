@@ -71,7 +71,7 @@ class ShelfScreen(PaintedScreen[Path | None]):
         table = self.query_one(LongTable)
         table.follows = False
         table.focus()
-        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("shelf", "page"))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("shelf", "page", "all"))
         self.paint()
         self._in_a_thread(self._list)
 

@@ -94,7 +94,7 @@ class StationsScreen(FollowingScreen[int | None]):
         """Fill the table."""
         self.query_one(LongTable).focus()
         self.show(self._snapshot)
-        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("stations", "page"))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("stations", "page", "all"))
 
     def show(self, snapshot: Snapshot) -> None:
         """Show a newer snapshot."""

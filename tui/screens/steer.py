@@ -70,8 +70,8 @@ class SteerScreen(FollowingScreen[None]):
         self.query_one(BearingView).aspect = getattr(self.app, "cell_aspect", 2.0)
         self.show(self._snapshot)
         keymap = keys.keymap_of(self.app)
-        told = keymap.line(*self.PLACES, replay=self._snapshot.mode == "replay")
-        self.query_one(KeyLine).show((keymap["all.mute"], "sound"), *told)
+        told = keymap.line(*self.PLACES, "all", replay=self._snapshot.mode == "replay")
+        self.query_one(KeyLine).show(*told, (keymap["all.mute"], "sound"))
         self.set_interval(_TICK, self.beat)
 
     def show(self, snapshot: Snapshot) -> None:

@@ -121,7 +121,7 @@ class WhatIfScreen(InputScreen):
         if not self.is_mounted:
             return
         self.paint_inputs()
-        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("whatif", "page"))
+        self.query_one(KeyLine).show(*keys.keymap_of(self.app).line("whatif", "page", "all"))
         busy = "" if self.found is not None else "  working it out"
         self.query_one("#title", TextLine).show(
             ("what if  ", Role.STRONG),
