@@ -127,3 +127,12 @@ def _capture(path: Path, site: SiteFile | None, interval: float | None) -> Recor
     return Recording(
         path=path, site=replace(site, links=first), recorded=None, started_at=None, interval=interval
     )
+
+
+def passed_over(records: int) -> str:
+    """Say how many records of a log could not be read; empty if all could."""
+    if not records:
+        return ""
+    if records == 1:
+        return "1 record cannot be read and was passed over"
+    return f"{records} records cannot be read and were passed over"

@@ -51,6 +51,8 @@ class Reduction:
     faults: Mapping[str, int]
     unused: Mapping[str, int]
     """Readings that were read well and left aside, by reason."""
+    unreadable: int
+    """Records of the log that could not be read and were passed over; 0 for a capture, which has none."""
     result: Result
     standing: Standing | None
     """The answer as it stood at the end."""
@@ -157,6 +159,7 @@ def _reduction(recording: Recording, source: Source, pipeline: Pipeline, events:
         rejected=pipeline.rejected,
         faults=MappingProxyType(dict(pipeline.faults)),
         unused=MappingProxyType(dict(survey.unused)),
+        unreadable=source.bad_lines if isinstance(source, LogReader) else 0,
         result=survey.result(),
         standing=survey.standing(),
         events=tuple(events),

@@ -8,7 +8,7 @@ from numpy.typing import NDArray
 
 from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.logreader import LogReader
-from eastfall.io.recording import Recording, Source
+from eastfall.io.recording import Recording, Source, passed_over
 from eastfall.io.safetext import safe
 from eastfall.physics.findings import Findings, Rows
 
@@ -132,11 +132,16 @@ def build_index(recording: Recording) -> Index:
 
 
 def changed_in(source: Source) -> str:
-    """Return in what a log that was read to its end is not as it was written; empty if it is, and for a capture."""
+    """Return in what a log that was read to its end is not as it was written; empty if it is, and for a capture.
+
+    Records that could not be read are named with it.
+    """
     if not isinstance(source, LogReader):
         return ""
     found = source.verification()
-    return found.reason if found.state == "changed" else ""
+    if found.state != "changed":
+        return ""
+    return found.reason + (f"; {passed_over(source.bad_lines)}" if source.bad_lines else "")
 
 
 def _thinned(rows: Rows) -> Rows:

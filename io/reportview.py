@@ -313,6 +313,7 @@ def record(reduction: Reduction) -> list[tuple[str, str]]:
         rows += [
             ("State", state),
             ("Good lines", f"{found.good_lines}, up to {found.good_until_time:.1f} s"),
+            ("Records passed over, unreadable", str(reduction.unreadable)),
             ("Final seal" if found.sealed else "Last seal that holds", found.seal or "none"),
         ]
     faults = ", ".join(f"{safe(name, 60)} {count}" for name, count in sorted(reduction.faults.items()))

@@ -143,6 +143,7 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "site": reduction.site.assumptions.site.name,
         "frames": reduction.frames,
         "rejected": reduction.rejected,
+        "unreadable_records": reduction.unreadable,
         "stations": [station_row(one) for one in result.stations],
         "alarms": [alarm_row(one, on_host=reduction.is_log) for one in result.alarms],
         "closure": closure_row(result.closure),

@@ -107,6 +107,7 @@ def reduction(result: Result = RESULT, **changes: object) -> Reduction:
         kind="guided",
         frames=400,
         rejected=3,
+        unreadable=0,
         faults={"checksum wrong": 3},
         unused={},
         result=result,

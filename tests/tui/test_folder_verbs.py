@@ -1,6 +1,7 @@
 """`reduce` and `runs` over a folder, as the command line shows them: rows, list, exit status, one line of refusal."""
 
 import json
+import re
 import shutil
 from pathlib import Path
 
@@ -103,3 +104,26 @@ def test_a_changed_log_is_told_by_every_verb_that_makes_something_of_it(shelf: P
     exported = called("export", copy, shelf / "out.csv")
     assert "the record is changed: line" in exported.stderr
     assert called("export", log, shelf / "sound.csv").stderr == ""
+
+
+def test_records_that_cannot_be_read_are_told_by_reduce_replay_and_report(shelf: Path) -> None:
+    """Two lines of rubbish in the middle of a log: a line on standard error, a key, a row, and beside the replay."""
+    log = next(shelf.glob("sandrigg*"))
+    lines = log.read_bytes().splitlines(keepends=True)
+    at = len(lines) // 2
+    copy = log.with_name("rubbish.eastfall.jsonl")
+    copy.write_bytes(b"".join([*lines[:at], b"\xff\xfe{\n", b'{"t":1}\n', *lines[at:]]))
+    said = "2 records cannot be read and were passed over"
+    reduced = called("reduce", copy, "--format", "json")
+    assert reduced.stderr.splitlines() == [
+        f"eastfall: {copy}: {said} (line {at + 1} is not as it was written)"
+    ]
+    assert json.loads(reduced.stdout)["unreadable_records"] == 2
+    together = called("reduce", shelf, "--workers", 1, "--format", "json")
+    assert together.stderr.count(said) == together.stderr.count("cannot be read") == 1
+    assert f"; {said}" in called("replay", copy, "--plain").stdout
+    for words, count in ((copy, "2"), (log, "0")):
+        text = " ".join(called("report", words).stdout.split())
+        assert re.search(rf"Records passed over, unreadable:? +{count} ", text), text[-2000:]
+    sound = called("reduce", log, "--format", "json")
+    assert (sound.stderr, json.loads(sound.stdout)["unreadable_records"]) == ("", 0)

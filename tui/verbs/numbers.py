@@ -191,7 +191,9 @@ def reduce(
     a row for each is printed (with --format json, a list of all that each comes to). Exit status 1 if a limit is
     exceeded or a log was changed, 2 if something cannot be used.
     """
+    from eastfall.io.recording import passed_over  # noqa: PLC0415
     from eastfall.io.reduce import reduce_file  # noqa: PLC0415
+    from eastfall.io.safetext import safe  # noqa: PLC0415
     from eastfall.io.sitefile import load_site  # noqa: PLC0415
     from eastfall.io.tables import reduce_table  # noqa: PLC0415
 
@@ -202,6 +204,10 @@ def reduce(
         _many(log, settings, workers, scheduler, form)
         return
     found = reduce_file(log, site=settings, interval=interval)
+    if found.unreadable:
+        # On standard error, so that a table or a list of numbers stays one.
+        why = f" ({found.verification.reason})" if found.verification is not None else ""
+        say(f"eastfall: {safe(str(log))}: {passed_over(found.unreadable)}{why}", err=True)
     shape = reduce_table(found)
     if form == "json":
         print_json(shape)
@@ -219,6 +225,8 @@ def _many(
 ) -> None:
     """Print what every run log of a folder comes to."""
     from eastfall.io.folder import SUMMARY_KEYS, reduce_folder  # noqa: PLC0415
+    from eastfall.io.recording import passed_over  # noqa: PLC0415
+    from eastfall.io.safetext import safe  # noqa: PLC0415
 
     found = reduce_folder(folder, site=site, progress=counted(), workers=workers, scheduler=scheduler)
     if form == "json":
@@ -228,6 +236,9 @@ def _many(
     unusable = [one for one in found if one["error"]]
     for one in unusable:
         say(f"eastfall: {one['error']}", err=True)
+    for one in found:
+        if records := one.get("unreadable_records"):
+            say(f"eastfall: {safe(one['path'])}: {passed_over(records)}", err=True)
     bad = any(one["exceeded"] or one["state"] == "changed" for one in found)
     click.get_current_context().exit(2 if unusable else int(bad))
 
