@@ -7,7 +7,7 @@ import pytest
 from scipy.integrate import quad, solve_ivp
 
 from eastfall.physics import classical
-from eastfall.physics.earth import EARTH_ROTATION
+from eastfall.physics.earth import EARTH_ROTATION, normal_gravity, plumbline_curvature
 
 
 @pytest.mark.published
@@ -108,3 +108,35 @@ def test_equatorward_constants_are_the_printed_ones() -> None:
     assert classical.equatorward_coefficients(0.0)["straight"] == pytest.approx(2.0 / 3.0, rel=1e-15)
     assert classical.equatorward_coefficients(4.0)["hung-line"] == pytest.approx(4.0, rel=1e-15)
     assert classical.equatorward_coefficients(4.0)["field-line"] == pytest.approx(2.0, rel=1e-15)
+
+
+@pytest.mark.independent
+@pytest.mark.parametrize("latitude", [0.3, -0.9, 1.3])
+def test_the_equatorward_fall_in_a_constant_field_is_that_of_its_equation_of_motion(latitude: float) -> None:
+    """C = 2/3 at any latitude: r̈ = g - 2ω × ṙ integrated, without the centrifugal force, over 200 m."""
+    omega = EARTH_ROTATION * np.array([np.cos(latitude), 0.0, -np.sin(latitude)])  # north, east, down
+
+    def motion(_: float, y: np.ndarray) -> np.ndarray:
+        return np.concatenate([y[3:], np.array([0.0, 0.0, 9.8]) - 2.0 * np.cross(omega, y[3:])])
+
+    def down(_: float, y: np.ndarray) -> float:
+        return float(y[2]) - 200.0
+
+    down.terminal = True
+    found = solve_ivp(motion, (0.0, 10.0), np.zeros(6), "DOP853", events=down, rtol=1e-13, atol=1e-15)
+    # South is positive there, north here.
+    south = float(classical.equatorward(200.0, latitude, 9.8, 2.0 / 3.0))
+    assert -float(found.y[0, -1]) == pytest.approx(south, rel=1e-5)
+
+
+@pytest.mark.published
+@pytest.mark.parametrize("latitude", [0.3, 0.6, -0.9, 1.3])
+def test_the_plumb_line_bends_three_times_as_rotation_would_at_any_latitude(latitude: float) -> None:
+    """0.17″/km · sin 2φ (Heiskanen & Moritz 1967, from memory, unconfirmed) is K = 3.04 ± 0.09 by its digits."""
+    curvature = np.radians(0.17 / 3.6e6) * np.sin(2.0 * latitude)
+    ratio = classical.curvature_ratio(curvature, latitude, 9.8)
+    assert ratio == pytest.approx(3.04, abs=0.01)
+    exact = classical.curvature_ratio(
+        float(plumbline_curvature(latitude)), latitude, float(normal_gravity(latitude))
+    )
+    assert exact == pytest.approx(ratio, rel=0.005 / 0.17)
