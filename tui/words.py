@@ -102,7 +102,9 @@ def steering(one: Standing | None, kind: "Kind", units: Units = METRIC) -> str:
     if one is None:
         return "Wait for the first reading."
     if one.hold_still is not None:
-        return f"Hold still: {one.hold_still:.0f} s more closes this station."
+        seconds = round(one.hold_still)
+        more = f"{seconds} s more closes" if seconds else "the next reading closes"
+        return f"Hold still: {more} this station."
     if kind == "hung" and one.rest_point is not None and not one.rest_point.fits:
         why = reworded(one.rest_point.message, units) or "the swing does not fit a free pendulum yet"
         return f"Let it swing: {why}."

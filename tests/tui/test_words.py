@@ -77,6 +77,7 @@ def test_small_moves_are_told_to_a_tenth(standing: Make) -> None:
     ("changes", "kind", "begins"),
     [
         ({"hold_still": 4.2}, "guided", "Hold still: 4 s"),
+        ({"hold_still": 0.3}, "guided", "Hold still: the next reading closes this station."),
         ({"measured_east": nan}, "guided", "Nothing to steer by"),
         ({}, "drop", "Stand clear"),
     ],
