@@ -48,6 +48,24 @@ def test_each_constant_acts_as_its_name_says():
     assert shown(0.0, 0.1, 300.0, warm)[1] == pytest.approx(0.1 + 1e-4)
 
 
+def test_all_constants_together_make_the_worked_numbers():
+    """10 K above 290: A 0.01 + 10·1e-5 + 1.02·1.03·0.1 + 0.004·0.2; B -0.02 - 10·2e-5 + 0.97·1.03·0.2 - 0.005·0.1."""
+    probe = Instrument(
+        zero_a=0.01,
+        zero_b=-0.02,
+        zero_a_per_c=1e-5,
+        zero_b_per_c=-2e-5,
+        scale_a=1.02,
+        scale_b=0.97,
+        scale_per_c=3e-3,
+        cross_ab=0.004,
+        cross_ba=-0.005,
+        reference_temperature=290.0,
+    )
+    found = shown(0.1, 0.2, 300.0, probe)
+    assert found == (pytest.approx(0.11596, abs=1e-15), pytest.approx(0.17912, abs=1e-15))
+
+
 def test_a_missing_temperature_matters_only_to_an_instrument_that_needs_it():
     """NaN kelvin gives NaN with a temperature coefficient and is of no consequence without."""
     assert np.isnan(corrected(0.1, 0.1, np.nan, PROBE)).all()
