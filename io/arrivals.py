@@ -8,6 +8,9 @@ from numpy.typing import NDArray
 from eastfall.io.framing import count_lines
 from eastfall.physics.errors import ParameterError
 
+TOLD = "alarm"
+"""The event of an alarm that changed its state: told by the engine, so it tells the engine nothing."""
+
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class LineBlock:

@@ -21,6 +21,7 @@ from typing import Any
 import msgspec
 import numpy as np
 
+from eastfall.io.arrivals import TOLD
 from eastfall.io.errors import LogError
 
 SCHEMA = 1
@@ -28,6 +29,8 @@ SUFFIX = ".eastfall.jsonl"
 FIRST_SEAL = "0" * 64
 SEAL_MARK = b'{"seal":'
 EVENT_MARK = b',"event":"'
+TOLD_MARK = EVENT_MARK + TOLD.encode() + b'"'
+"""Of the change of an alarm, which the program tells; a replay finds it anew."""
 _CHECK = b',"crc":"%08x"}\n'
 CHECK_LENGTH = len(_CHECK % 0)
 LINE_LIMIT = 64 << 20

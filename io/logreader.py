@@ -18,6 +18,7 @@ from eastfall.io.logformat import (
     FIRST_SEAL,
     LINE_LIMIT,
     RECORDS,
+    TOLD_MARK,
     Header,
     Record,
     read_header,
@@ -39,7 +40,8 @@ class LogReader:
         Any part of the log.
     merge : bool
         Put the lines between events into large blocks, one for each link, though links then overtake one another: what
-        follows from the lines does not depend on it. Else one block for each record, in their order.
+        follows from the lines does not depend on it. What the program itself told of alarms, which changes nothing and
+        may be often, then stands behind the block. Else one block for each record, in their order.
 
     Raises
     ------
@@ -214,26 +216,28 @@ class LogReader:
 
     def _decoded(self, data: bytes) -> list[Arrival]:
         """Return the arrivals in record lines; stretches without events go through arrays, the rest through JSON."""
-        if data and self._merge and (found := plain_lines(data)) is not None:
-            return [self._block(*one) for one in found]
-        arrivals: list[Arrival] = []
-        begin = 0
-        while begin < len(data):
-            mark = data.find(EVENT_MARK, begin)
-            at = len(data) if mark < 0 else data.rfind(b"\n", begin, mark) + 1 or begin
-            if at > begin:
-                arrivals += self._raw(data[begin:at])
-            end = data.find(b"\n", at) + 1 or len(data)
-            if at < len(data):
-                arrivals += self._records(data[at:end])
-            begin = end
-        return arrivals
-
-    def _raw(self, data: bytes) -> list[Arrival]:
-        found = plain_lines(data) if self._merge else None
-        if found is None:
+        if not self._merge:
             return self._records(data)
-        return [self._block(*one) for one in found]
+        arrivals: list[Arrival] = []
+        lines: list[bytes] = []
+        told: list[bytes] = []
+        begin = 0
+        for at, end, is_state in _events_in(data):
+            lines.append(data[begin:at])
+            begin = end
+            told.append(data[at:end])
+            if is_state:
+                arrivals += self._stretch(lines, told)
+                lines, told = [], []
+        lines.append(data[begin:])
+        return arrivals + self._stretch(lines, told)
+
+    def _stretch(self, lines: list[bytes], told: list[bytes]) -> list[Arrival]:
+        """Return blocks of lines, and behind them the events told among them."""
+        data, events = b"".join(lines), b"".join(told)
+        found = plain_lines(data) if data else []
+        blocks = [self._block(*one) for one in found] if found is not None else self._records(data)
+        return blocks + self._records(events) if events else blocks
 
     def _records(self, data: bytes) -> list[Arrival]:
         try:
@@ -280,6 +284,15 @@ class LogReader:
         if times.size:
             self.last_time = max(self.last_time, float(times[-1]))
         return LineBlock(data=data, times=times, first_line=first, link=link)
+
+
+def _events_in(data: bytes) -> Iterator[tuple[int, int, bool]]:
+    """Yield where the lines of events begin and end, and whether no line may be moved across the event."""
+    end = 0
+    while (mark := data.find(EVENT_MARK, end)) >= 0:
+        at = data.rfind(b"\n", end, mark) + 1 or end
+        end = data.find(b"\n", mark) + 1 or len(data)
+        yield at, end, not data.startswith(TOLD_MARK, mark)
 
 
 def read_log(path: Path, *, merge: bool = True) -> LogReader:

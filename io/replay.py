@@ -11,7 +11,7 @@ from types import MappingProxyType
 
 import numpy as np
 
-from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
+from eastfall.io.arrivals import TOLD, Arrival, LineBlock, RunEvent
 from eastfall.io.logreader import LogReader, last_time
 from eastfall.io.recording import Recording, open_recording
 from eastfall.io.replayindex import Index, Mark, build_index, changed_in, split
@@ -240,7 +240,10 @@ class Replay:
         later: set[int] = set()
         for place, one in enumerate(self._waiting):
             if isinstance(one, RunEvent):
-                return self._waiting.popleft() if place == 0 and one.time <= until else None
+                if one.time > until or (place > 0 and one.name != TOLD):
+                    return None
+                del self._waiting[place]
+                return one
             if one.link in later:
                 continue
             late = np.flatnonzero(one.times > until)

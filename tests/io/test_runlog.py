@@ -1,6 +1,7 @@
 """The run log's writer and reader: what goes in comes out, to the byte, whatever the bytes."""
 
 import json
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -74,6 +75,27 @@ def test_usual_records_are_read_as_one_block_with_events_in_place(tmp_path: Path
     assert note == RunEvent(time=15.0, name="note", fields={"text": "water at 12 m", "who": "R. Vane"})
     assert (len(first), len(second), second.first_line) == (61, 59, 62)
     assert reader.ended
+
+
+def test_what_was_told_of_alarms_does_not_cut_blocks_and_stands_behind_them(tmp_path: Path) -> None:
+    """An alarm that chatters leaves one block of lines, its events behind it, and both before the note."""
+    log = writer(tmp_path)
+    told = RunEvent(time=0.0, name="alarm", fields={"name": "warning limit", "to": "active"})
+    for number in range(60):
+        log.raw(block(b"1,0,0", time=number / 4, first=number + 1))
+        log.event(replace(told, time=number / 4))
+        if number == 40:
+            log.event(RunEvent(time=10.0, name="note", fields={"text": "wet"}))
+    log.close(15.0)
+    with read_log(log.path) as reader:
+        found = list(reader)
+    blocks = [(place, len(one)) for place, one in enumerate(found) if isinstance(one, LineBlock)]
+    assert blocks == [(0, 41), (43, 19)]
+    events = [one for one in found if isinstance(one, RunEvent)]
+    assert [one.time for one in events if one.name == "alarm"] == [number / 4 for number in range(60)]
+    assert found[42] == RunEvent(time=10.0, name="note", fields={"text": "wet"})
+    with read_log(log.path, merge=False) as reader:
+        assert [type(one) for one in reader][:4] == [LineBlock, RunEvent, LineBlock, RunEvent]
 
 
 @pytest.mark.parametrize(
