@@ -236,8 +236,11 @@ class LogReader:
         """Return blocks of lines, and behind them the events told among them."""
         data, events = b"".join(lines), b"".join(told)
         found = plain_lines(data) if data else []
-        blocks = [self._block(*one) for one in found] if found is not None else self._records(data)
-        return blocks + self._records(events) if events else blocks
+        arrivals: list[Arrival] = []
+        arrivals += self._records(data) if found is None else [self._block(*one) for one in found]
+        if events:
+            arrivals += self._records(events)
+        return arrivals
 
     def _records(self, data: bytes) -> list[Arrival]:
         try:
