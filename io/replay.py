@@ -12,7 +12,8 @@ from types import MappingProxyType
 import numpy as np
 
 from eastfall.io.arrivals import TOLD, Arrival, LineBlock, RunEvent
-from eastfall.io.logreader import LogReader, last_time
+from eastfall.io.logreader import LogReader
+from eastfall.io.logtail import last_time
 from eastfall.io.recording import Recording, open_recording
 from eastfall.io.replayindex import Index, Mark, build_index, changed_in, split
 from eastfall.io.run import Health, LinkHealth, RunUpdate

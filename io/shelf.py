@@ -13,7 +13,7 @@ from typing import Any
 
 from eastfall.io.arrivals import RunEvent
 from eastfall.io.logformat import SUFFIX
-from eastfall.io.logreader import last_event
+from eastfall.io.logtail import last_event
 from eastfall.io.reduce import reduce_file
 from eastfall.io.safetext import safe
 from eastfall.io.seal import header_of, verify_log

@@ -7,7 +7,7 @@ import pytest
 from record_help import SITE_TEXT, STARTED, block, site, writer
 
 from eastfall.io.arrivals import LineBlock, RunEvent
-from eastfall.io.logreader import last_time
+from eastfall.io.logtail import last_time
 from eastfall.io.pipeline import merged
 from eastfall.io.reduce import reduce_file
 from eastfall.io.replay import Replay

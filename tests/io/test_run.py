@@ -8,7 +8,7 @@ from live_help import GUIDED, ONE_LINK, TWO_LINKS, FedLink, HandClock, Openers, 
 
 from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.errors import LinkError, OutputError
-from eastfall.io.logreader import last_time
+from eastfall.io.logtail import last_time
 from eastfall.io.pipeline import Pipeline
 from eastfall.io.reduce import reduce_file
 from eastfall.io.run import LINK_LOST, RECORD_FAILING, Run

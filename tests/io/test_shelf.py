@@ -5,7 +5,7 @@ from pathlib import Path
 
 from record_help import written
 
-from eastfall.io.logreader import last_event
+from eastfall.io.logtail import last_event
 from eastfall.io.reduce import reduce_file
 from eastfall.io.shelf import CARD_KEYS, card, card_row, list_runs, log_files
 
