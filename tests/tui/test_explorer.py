@@ -89,7 +89,7 @@ def test_every_input_changes_the_assumptions_as_the_site_file_would(one: Dial) -
     [
         ({"latitude_deg": "91"}, "latitude: 91; expected a number from -90 to 90 deg"),
         ({"latitude_deg": ""}, "latitude: nothing; expected a number from -90 to 90 deg"),
-        ({"depth_m": "0"}, "depth: 0; expected a number more than 0 to 12000 m"),
+        ({"depth_m": "0"}, "depth: 0; expected a number from 0.1 to 12000 m"),
         ({"depth_m": "-"}, "depth: -; expected a number"),
         ({"depth_m": "1.2.3"}, "depth: 1.2.3; expected a number"),
         ({"drag_coefficient": "9"}, "body drag: 9; expected a number from 0 to 5"),
