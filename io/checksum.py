@@ -134,8 +134,10 @@ def _many_bodies(kind: Checksum, data: bytes) -> tuple[bytes, NDArray[np.int8]]:
     stars = ends - WIDTH[kind] - 1
     usual = stars > starts
     usual &= codes[stars] == ord("*")
+    stated = _stated(kind, codes, stars[usual])
+    usual[usual] = stated >= 0
     right = usual.copy()
-    right[usual] = _stated(kind, codes, stars[usual]) == _summed(kind, codes, starts[usual], stars[usual])
+    right[usual] = stated[stated >= 0] == _summed(kind, codes, starts[usual], stars[usual])
     faults = np.where(right, 0, CHECKSUM_FAULTS.index("checksum wrong")).astype(np.int8)
     stops = np.where(right, stars, starts)
     kept = np.zeros(codes.size + 1, dtype=np.int8)
@@ -143,7 +145,7 @@ def _many_bodies(kind: Checksum, data: bytes) -> tuple[bytes, NDArray[np.int8]]:
     np.add.at(kept, stops, -1)
     keep = np.cumsum(kept[:-1], dtype=np.int8).astype(bool)
     keep[ends] = True
-    if not usual.all():  # blanks behind the checksum, or none: few lines, told one by one
+    if not usual.all():  # blanks behind the checksum, none, or no digits: few lines, told one by one
         return _with_unusual(kind, data, np.flatnonzero(~usual), codes[keep].tobytes(), faults)
     return codes[keep].tobytes(), faults
 

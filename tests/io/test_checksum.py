@@ -85,6 +85,15 @@ def test_what_is_written_verifies(kind: Checksum, body: bytes) -> None:
     assert verified(kind, wrong)[1] == "checksum wrong"
 
 
+@pytest.mark.parametrize("end", [b"**2", b"*2 ", b"*+2", b"*2*", b"* 2", b"**", b"*\t"])
+def test_a_star_or_a_blank_for_a_digit_is_no_checksum_among_many_lines_either(end: bytes) -> None:
+    """What ends like a checksum and is none has one fault, alone and in a block."""
+    for kind in KINDS:
+        line = b"1,2" + (end if kind == "xor" else end[:1] + b"00" + end[1:])
+        _, faults = bodies(kind, (line + b"\n") * 70)
+        assert {CHECKSUM_FAULTS[one] for one in faults.tolist()} == {verified(kind, line)[1]}
+
+
 @pytest.mark.invariant
 @pytest.mark.parametrize("kind", KINDS)
 @given(
