@@ -33,6 +33,8 @@ TOLD_MARK = EVENT_MARK + TOLD.encode() + b'"'
 """Of the change of an alarm, which the program tells; a replay finds it anew."""
 _CHECK = b',"crc":"%08x"}\n'
 CHECK_LENGTH = len(_CHECK % 0)
+LONGEST = 1e12
+"""Largest time that a record may state, either sign [s], as for an instrument's; beyond it the record is damaged."""
 LINE_LIMIT = 64 << 20
 """Longest record that a reader accepts [bytes]; a longer one is no run log."""
 

@@ -17,6 +17,7 @@ from eastfall.io.logformat import (
     EVENT_MARK,
     FIRST_SEAL,
     LINE_LIMIT,
+    LONGEST,
     RECORDS,
     TOLD_MARK,
     Header,
@@ -196,7 +197,7 @@ class LogReader:
 
     def _take_seal(self, record: Record | None) -> str | None:
         """Note a final seal; return the name of the next part if the log goes on there."""
-        if record is None:
+        if record is None or abs(record.t) > LONGEST:
             self.bad_lines += 1
             return None
         self.last_time = max(self.last_time, record.t)
@@ -261,6 +262,9 @@ class LogReader:
         arrivals: list[Arrival] = []
         waiting: dict[int, list[Record]] = {}
         for one in records:
+            if abs(one.t) > LONGEST:
+                self.bad_lines += 1
+                continue
             if waiting and (one.raw is None or not self._merge):
                 arrivals += [self._one_block(some) for some in waiting.values()]
                 waiting = {}

@@ -7,7 +7,7 @@ from pathlib import Path
 import msgspec
 
 from eastfall.io.arrivals import RunEvent
-from eastfall.io.logformat import RECORDS, Record
+from eastfall.io.logformat import LONGEST, RECORDS, Record
 from eastfall.io.seal import beside, first_part, opened
 
 _TAIL = 64 << 10
@@ -58,4 +58,4 @@ def _tail(path: Path) -> list[Record]:
     for line in lines:
         with contextlib.suppress(msgspec.DecodeError, UnicodeDecodeError):
             records.append(RECORDS.decode(line))
-    return records
+    return [one for one in records if abs(one.t) <= LONGEST]

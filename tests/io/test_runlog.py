@@ -13,7 +13,9 @@ from record_help import SITE_TEXT, STARTED, block, site, writer, written
 from eastfall.io.arrivals import Arrival, LineBlock, RunEvent
 from eastfall.io.errors import LogError, OutputError
 from eastfall.io.logformat import file_name
+from eastfall.io.logtail import last_time
 from eastfall.io.rawlines import plain_lines
+from eastfall.io.reduce import reduce_file
 from eastfall.io.runlog import RunLogWriter, read_log, verify_log
 
 SAMPLE = Path(__file__).parent / "samples" / "schema-1.eastfall.jsonl"
@@ -279,11 +281,19 @@ def test_unreadable_records_are_passed_over_and_counted(tmp_path: Path) -> None:
     """Rubbish lines in the middle cost themselves alone when reading; that they are there is the seals' to say."""
     path = written(tmp_path, seconds=3)
     lines = path.read_bytes().splitlines(keepends=True)
-    path.write_bytes(b"".join([*lines[:5], b"\xff\xfe{\n", b'{"t":1}\n', *lines[5:]]))
+    rubbish = [
+        b"\xff\xfe{\n",
+        b'{"t":1}\n',
+        b'{"t":1e308,"raw":["9,0,0"]}\n',
+        b'{"t":-1e300,"event":"end","fields":{}}\n',
+    ]
+    path.write_bytes(b"".join([*lines[:5], *rubbish, *lines[5:], b'{"seal":"","t":1e99,"lines":3}\n']))
     with read_log(path) as reader:
         assert sum(len(one) for one in reader if isinstance(one, LineBlock)) == 12
-    assert reader.bad_lines == 2
+    assert (reader.bad_lines, reader.last_time) == (5, 3.0)
     assert reader.verification().state == "changed"
+    assert last_time(path) == 3.0
+    assert reduce_file(path).duration == 3.0
 
 
 def test_a_closed_writer_takes_nothing_more(tmp_path: Path) -> None:
