@@ -25,6 +25,8 @@ __all__ = ["Falling", "Release", "Trajectory", "Variation", "fall", "fall_ensemb
 
 BLOCK = 2048
 """Members of an ensemble that are integrated together; their arrays fit in the processor's cache."""
+_AT_REST = 1e-9
+"""A throw up by no more is a release from rest: it ends 5e-20 m higher [m/s]."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -316,7 +318,7 @@ def _nominal(forces: Forces, start: Release, edges: list[float]) -> tuple[float,
     """Apex and stretches of the nominal fall; of a throw upwards, from its top."""
     first = rise(forces, _in_hand(start, UNCHANGED))
     top = float(first.depth[0])
-    if start.speed_down < 0.0:
+    if start.speed_down < -_AT_REST:
         state = first.state._replace(energy=np.zeros(1))
         return top, list(descend(forces, top, [top, *edges], state))
     apex = top - float(first.state.energy[0]) / forces.field.gravity

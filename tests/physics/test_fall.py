@@ -214,6 +214,16 @@ def test_no_air_is_the_same_as_air_of_zero_density() -> None:
 
 
 @pytest.mark.invariant
+@pytest.mark.parametrize("speed", [-9e-159, -1e-30, -1e-10, -2e-9])
+def test_the_least_of_throws_up_is_a_release_from_rest(speed: float) -> None:
+    """However slow a throw is, the body turns and falls."""
+    air = air_column(Air(), FIELD)
+    thrown = fall(FIELD, to_depth=300.0, body=STEEL, air=air, release=Release(speed_down=speed))
+    rest = fall(FIELD, to_depth=300.0, body=STEEL, air=air)
+    assert float(thrown.at(300.0).time) == pytest.approx(float(rest.at(300.0).time), rel=1e-9)
+
+
+@pytest.mark.invariant
 @pytest.mark.parametrize("coefficient", [0.0, 1e-300, 1e-12])
 def test_a_body_without_drag_falls_in_air_as_one_of_less_weight(coefficient: float) -> None:
     """With the coefficient at its least, buoyancy is what the air does: the limit of a vanishing one is met."""
