@@ -143,7 +143,6 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "site": reduction.site.assumptions.site.name,
         "frames": reduction.frames,
         "rejected": reduction.rejected,
-        "unreadable_records": reduction.unreadable,
         "stations": [station_row(one) for one in result.stations],
         "alarms": [alarm_row(one, on_host=reduction.is_log) for one in result.alarms],
         "closure": closure_row(result.closure),
@@ -154,4 +153,5 @@ def reduce_table(reduction: Reduction) -> dict[str, Any]:
         "notes": list(
             dict.fromkeys([*(reduction.standing.notes if reduction.standing else ()), *result.notes])
         ),
+        "unreadable_records": reduction.unreadable,
     }
