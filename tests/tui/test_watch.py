@@ -5,7 +5,7 @@ from dataclasses import replace
 from types import SimpleNamespace
 
 import pytest
-from screen_harness import AskedLive, AskedReplay, built, lines, shown, watch
+from screen_harness import AskedLive, AskedReplay, built, lines, settled, shown, watch
 
 from eastfall.physics.findings import AlarmView
 from eastfall.tui.glyphs import GLYPHS
@@ -378,7 +378,7 @@ async def test_resize_storm_ends_where_it_began(session: Make, snapshot: Snap) -
         for size in [(20, 5), (1, 1), (80, 24), (300, 100), (33, 9), (60, 12), (20, 5), (120, 40)]:
             await pilot.resize_terminal(*size)
             await pilot.pause()
-        assert lines(app) == before
+        assert (await settled(pilot)).split("\n") == before
 
 
 async def test_smallest_window_still_shows_the_verdict_first(session: Make, snapshot: Snap) -> None:
