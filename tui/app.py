@@ -11,6 +11,7 @@ from typing import Any, ClassVar
 
 from textual.app import App
 from textual.binding import BindingType
+from textual.css.query import NoMatches
 from textual.driver import Driver
 from textual.filter import LineFilter
 from textual.message import Message
@@ -109,6 +110,11 @@ class Dashboard(App[int]):
         """Have nothing beyond ASCII drawn, by whatever widget, where the terminal has plain letters only."""
         plain = (self._sieve,) if self.glyphs.name == "ascii" else ()
         return (*super().get_line_filters(), *plain)
+
+    def _handle_exception(self, error: Exception) -> None:
+        """Pass over a page that looks for its parts while the program ends: by then the library composes no more."""
+        if not (self._exit and isinstance(error, NoMatches)):
+            super()._handle_exception(error)
 
     def on_mount(self) -> None:
         """Leave cleanly on the signals that Textual does not catch, then show the first screen."""
