@@ -192,6 +192,7 @@ class DepthWatch:
     def close(self) -> list[Piece]:
         """End the run: rows that still wait are left aside, but for the first of a run, which count as they are."""
         waiting, self._waiting = self._waiting, Readings.none()
+        self._state.lost, self._state.waiting = 0, None
         if not self._state.settled and len(waiting):
             return [Piece(waiting)]
         if len(waiting):

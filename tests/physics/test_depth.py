@@ -89,6 +89,17 @@ def watched(readings, cuts=(), limits=None):
     return kept, [one.jump for one in found if one.jump], unused[SPIKE]
 
 
+def test_rows_after_an_end_are_taken_like_any_other():
+    """A log of someone's own making may go on behind its end, in the middle of rows that agreed with nothing."""
+    unused: Counter[str] = Counter()
+    watch = DepthWatch(Depth(), unused)
+    depth = np.array([0.0, 300.0, -300.0, 600.0, -600.0, 900.0])
+    rows = Readings.of(time=0.05 * np.arange(depth.size), depth=depth)
+    found = [*watch.pieces(rows[:4]), *watch.close(), *watch.pieces(rows[4:5]), *watch.pieces(rows[5:])]
+    found += watch.close()
+    assert sum(len(one.readings) for one in found) + unused[SPIKE] == depth.size
+
+
 @pytest.mark.parametrize("rows", [1, 2, 4])
 @pytest.mark.parametrize("size", [-60.0, 2.0, 500.0])
 def test_a_spike_is_left_aside_and_counted(rows, size):
