@@ -146,12 +146,12 @@ class _State:
 class DepthWatch:
     """Tell spikes and jumps of depth from the line's own movement; the same however rows are cut into blocks.
 
-    A step of more than `SLACK` is out of line if the line would have to be faster than `max_speed`, or more than twice
-    as fast as in the step before and `max_acceleration` on top; `EARLY` is granted to either. Rows out of line wait:
-    if the depth comes back they were a spike and are left aside; if `LASTS` of them agree with each other the depth
-    has jumped. Rows that share a time stamp are held against the last one before it. Rows without a time are not
-    judged, and none is where the first `LASTS` steps of a run are all out of line: then the times are not those of
-    the movement.
+    A step of more than `SLACK` is out of line if the line would have to be faster than `max_speed`, `EARLY` granted, or
+    more than twice as fast as in the step before and `max_acceleration` on top; in less time than that one it may be
+    twice as large. Rows out of line wait: if the depth comes back they were a spike and are left aside; if `LASTS` of
+    them agree with each other the depth has jumped. Rows that share a time stamp are held against the last one before
+    it. Rows without a time are not judged, and none is where the first `LASTS` steps of a run are all out of line: then
+    the times are not those of the movement.
 
     Parameters
     ----------
@@ -233,8 +233,10 @@ def _in_line(limits: Depth, track: _Track, time: float, depth: float) -> bool:
     step, lasted = abs(depth - track.depth), time - track.time
     if step <= SLACK:
         return True
-    likely = 2.0 * track.step * max(1.0, (lasted + EARLY) / (track.lasted + EARLY))
-    smooth = track.lasted <= 0.0 or step <= likely + limits.max_acceleration * lasted**2 + SLACK
+    smooth = True
+    if track.lasted > 0.0:
+        likely = 2.0 * track.step * max(1.0, lasted / track.lasted)
+        smooth = step <= likely + limits.max_acceleration * lasted**2 + SLACK
     if step <= limits.max_speed * (lasted + EARLY) + SLACK and smooth:
         return True
     away = abs(depth - track.earlier_depth)

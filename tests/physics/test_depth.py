@@ -136,6 +136,52 @@ def test_a_line_that_starts_stops_and_reverses_never_jumps(speed):
     assert (jumps, spikes, kept.size) == ([], 0, kept_rows.size)
 
 
+@pytest.mark.parametrize("rate", [10.0, 20.0, 50.0, 100.0])
+@pytest.mark.parametrize("speed", [0.5, 8.0, 18.0])
+@pytest.mark.parametrize("pause", [0.25, 0.5, 1.0, 4.0, 30.0])
+def test_a_steady_line_out_of_which_rows_are_lost_does_not_jump(rate, speed, pause):
+    """The depth goes on as fast as before, whatever is lost between and however closely rows stood."""
+    readings = ride(speed=speed, rate=rate, to=45.0 * speed)
+    left = readings[(readings.time < 10.0) | (readings.time >= 10.0 + pause)]
+    kept, jumps, spikes = watched(left)
+    assert (jumps, spikes, kept.size) == ([], 0, len(left))
+
+
+@pytest.mark.parametrize("cuts", [(), (300,), tuple(range(1, 310))])
+@pytest.mark.parametrize(
+    ("limits", "speed", "bound"),
+    [
+        # A second after a step of 0.75 m in 0.05 s: twice that speed, and 3 m/s² on top.
+        (Depth(max_speed=500.0, max_acceleration=3.0), 15.0, 2.0 * 15.0 + 3.0 + 0.5),
+        (Depth(max_speed=500.0, max_acceleration=3.0), 1.0, 2.0 * 1.0 + 3.0 + 0.5),
+        # As fast as a line may run, a tenth of a second granted.
+        (Depth(max_speed=10.0, max_acceleration=200.0), 8.0, 10.0 * 1.1 + 0.5),
+    ],
+)
+def test_a_step_is_out_of_line_beyond_speed_and_acceleration_in_it(limits, speed, bound, cuts):
+    """One row after a second without any: just short of the bound it counts, just beyond it waits for others."""
+    readings = ride(speed=speed, rate=20.0, to=15.0 * speed)[:300]
+    end = readings.time[-1], readings.depth[-1]
+    for factor, out in ((0.999, 0), (1.001, 1)):
+        for way in (1.0, -1.0):
+            step = Readings.of(time=[end[0] + 1.0], depth=[end[1] + way * factor * bound])
+            whole = Readings.joined([readings, step])
+            kept, jumps, spikes = watched(whole, cuts, limits)
+            assert (jumps, spikes, kept.size) == ([], out, 301 - out)
+
+
+@pytest.mark.parametrize("cuts", [(), (300,), (301,), tuple(range(1, 310))])
+@pytest.mark.parametrize(("before", "out"), [(0.0, 0), (0.02, 1)])
+def test_rows_of_one_stamp_are_held_against_the_last_one_before_it(before, out, cuts):
+    """Two rows of one stamp: from the row 0.05 s before, at 10 m/s and half a metre, 1 m is allowed, and 1.01 m is out."""
+    limits = Depth(max_speed=10.0, max_acceleration=0.1)
+    readings = ride(speed=1.0, rate=20.0, to=15.0)[:299]
+    last_time, last = readings.time[-1] + 0.05, readings.depth[-1]
+    burst = Readings.of(time=[last_time] * 2, depth=[last + 0.05, last + 0.99 + before])
+    kept, jumps, spikes = watched(Readings.joined([readings, burst]), cuts, limits)
+    assert (jumps, spikes, kept.size) == ([], out, 301 - out)
+
+
 @pytest.mark.parametrize("late", [0.03, 0.1])
 @pytest.mark.parametrize("speed", [2.0, 8.0, 12.0])
 def test_rows_stamped_as_they_arrive_over_an_uneven_link_are_in_line(speed, late):
