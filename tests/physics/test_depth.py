@@ -173,7 +173,7 @@ def test_a_step_is_out_of_line_beyond_speed_and_acceleration_in_it(limits, speed
 @pytest.mark.parametrize("cuts", [(), (300,), (301,), tuple(range(1, 310))])
 @pytest.mark.parametrize(("before", "out"), [(0.0, 0), (0.02, 1)])
 def test_rows_of_one_stamp_are_held_against_the_last_one_before_it(before, out, cuts):
-    """Two rows of one stamp: from the row 0.05 s before, at 10 m/s and half a metre, 1 m is allowed, and 1.01 m is out."""
+    """Two rows of one stamp: from the row 0.05 s before, at 10 m/s and half a metre, 1 m is in line, 1.01 m is out."""
     limits = Depth(max_speed=10.0, max_acceleration=0.1)
     readings = ride(speed=1.0, rate=20.0, to=15.0)[:299]
     last_time, last = readings.time[-1] + 0.05, readings.depth[-1]
