@@ -213,7 +213,14 @@ _PRESSED = sorted(
 
 
 @pytest.mark.parametrize("seed", [0, *(pytest.param(one, marks=pytest.mark.soak) for one in range(1, 40))])
-@pytest.mark.parametrize(("kind", "glyphs"), [("guided", "braille"), ("hung", "ascii"), ("drop", "half")])
+@pytest.mark.parametrize(
+    ("kind", "glyphs"),
+    [
+        ("guided", "braille"),
+        pytest.param("hung", "ascii", marks=pytest.mark.soak),
+        pytest.param("drop", "half", marks=pytest.mark.soak),
+    ],
+)
 async def test_hands_in_gloves_do_no_harm(
     session: Make, snapshot: Snap, alarm: Callable[..., AlarmView], seed: int, kind: str, glyphs: str
 ) -> None:
@@ -240,7 +247,13 @@ async def test_hands_in_gloves_do_no_harm(
 
 
 @pytest.mark.parametrize("seed", [0, *(pytest.param(one, marks=pytest.mark.soak) for one in range(1, 20))])
-@pytest.mark.parametrize("name", ["form", "trial", "shelf", "explorer", "planner"])
+@pytest.mark.parametrize(
+    "name",
+    [
+        "form",
+        *(pytest.param(one, marks=pytest.mark.soak) for one in ("trial", "shelf", "explorer", "planner")),
+    ],
+)
 async def test_hands_in_gloves_do_no_harm_before_a_run(name: str, seed: int, tmp_path: Path) -> None:
     """The same for what is done without a run: the screen stands, and what was changed in a form is asked about."""
     chance = random.Random(seed)  # noqa: S311 (no secret)
