@@ -11,7 +11,18 @@ from eastfall.physics.survey import Survey
 
 
 @pytest.mark.parametrize(
-    ("degrees", "side"), [(0.0, 0), (180.0, 1), (-180.0, 1), (360.0, 0), (540.0, 1), (5.0, 0), (175.0, 1)]
+    ("degrees", "side"),
+    [
+        (0.0, 0),
+        (180.0, 1),
+        (-180.0, 1),
+        (360.0, 0),
+        (540.0, 1),
+        (5.0, 0),
+        (175.0, 1),
+        (3600.0, 0),
+        (-7380.0, 1),
+    ],
 )
 def test_a_face_is_nought_or_half_a_turn(degrees, side):
     """Whole and half turns, a little off, in either sense."""
@@ -47,6 +58,25 @@ def test_sums_are_those_of_means_weighted_by_path():
     assert abs(sums.zero_a - 2e-4) <= 4.0 * sums.u_zero_a
     assert abs(sums.zero_b + 1e-4) <= 4.0 * sums.u_zero_b
     assert sums.suspect_depths == ()
+
+
+def test_the_deepest_station_has_a_bin_of_its_own():
+    """Every 10 m down to 100: readings at 90 and at 100 m are two depths, not one."""
+    depth = np.repeat([90.0, 100.0], 2)
+    bins = FaceBins(10.0, 100.0)
+    bins.add(depth, np.ones(4), np.zeros((2, 4)), np.tile([0.0, np.pi], 2))
+    assert bins.sums(1e-5).depth == (90.0, 100.0)
+
+
+def test_a_sum_is_suspect_beyond_what_its_own_readings_explain():
+    """Hundred readings of 10 µrad in a bin leave 1 of a mean and √2 of a sum: 3.5 of those are 4.95 µrad."""
+    depth, face = np.repeat(np.arange(0.0, 60.0, 10.0), 200), np.tile([0.0, np.pi], 600)
+    for off, told in ((4.9e-6, ()), (5.0e-6, (30.0,))):
+        tilts = np.zeros((2, depth.size))
+        tilts[0, (depth == 30.0) & (face == 0.0)] = off
+        bins = FaceBins(10.0, 60.0)
+        bins.add(depth, np.ones(depth.size), tilts, face)
+        assert bins.sums(1e-5).suspect_depths == told
 
 
 def surveyed(shaft, readings, **changes):

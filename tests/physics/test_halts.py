@@ -47,6 +47,17 @@ def test_rests_longer_than_the_hold_are_halts_and_shorter_ones_are_not():
         assert abs(rest.north.mean + 2e-3) <= 4.0 * rest.north.u
 
 
+@pytest.mark.invariant
+def test_a_probe_that_rises_from_a_halt_halts_again_as_one_that_sinks_does():
+    """The same stops upward: the next halt is found there too, at as many seconds."""
+    table = rows(stops(8.0, 8.0, 8.0))
+    upward = table.copy()
+    upward[1] = 50.0 - table[1]
+    downs, ups = found(table)[0], found(upward)[0]
+    assert [row for row, _ in ups] == [row for row, _ in downs]
+    assert [50.0 - rest.depth for _, rest in ups] == pytest.approx([rest.depth for _, rest in downs])
+
+
 @pytest.mark.parametrize("speed", [0.01, 0.05, 0.5, 5.0])
 def test_a_creeping_line_never_halts(speed):
     """Any speed that leaves the band within the hold is movement."""

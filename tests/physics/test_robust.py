@@ -2,8 +2,10 @@
 
 import numpy as np
 import pytest
+from scipy import stats
+from scipy.optimize import brentq
 
-from eastfall.physics.robust import huber_mean
+from eastfall.physics.robust import MAD_TO_SIGMA, huber_mean
 
 
 @pytest.mark.published
@@ -48,3 +50,25 @@ def test_few_or_equal_readings(values, mean, scatter):
     """Nothing gives nothing, one gives itself without a scatter, and equal ones fall back to the plain mean."""
     found = huber_mean(values)
     np.testing.assert_equal((found.mean, found.scatter), (mean, scatter))
+
+
+@pytest.mark.independent
+@pytest.mark.parametrize("seed", range(5))
+def test_the_mean_is_the_root_of_hubers_equation(seed):
+    """Σ ψ((x - m)/s) = 0, ψ cut at 1.345, s the scaled median deviation: by scipy's root finder, skewed readings."""
+    values = np.random.default_rng(seed).exponential(1.0, 41) ** 3
+    scale = stats.median_abs_deviation(values, scale="normal")
+    root = brentq(
+        lambda m: np.clip((values - m) / scale, -1.345, 1.345).sum(), values.min(), values.max(), xtol=1e-13
+    )
+    found = huber_mean(values)
+    assert found.scatter == pytest.approx(scale, rel=1e-12)
+    # The iteration ends when it moves by less than a part in 1e9 of its reach.
+    assert found.mean == pytest.approx(root, abs=1e-8 * scale)
+    assert found.u == pytest.approx(scale / np.sqrt(0.95 * 41), rel=1e-12)
+
+
+@pytest.mark.independent
+def test_the_scale_is_that_of_the_normal_distribution():
+    """1/Φ⁻¹(3/4), by scipy."""
+    assert 1.0 / stats.norm.ppf(0.75) == pytest.approx(MAD_TO_SIGMA, rel=1e-15)
