@@ -32,7 +32,7 @@ The C library of Linux gives the memory of each block of rows back to the system
 page, until a piece this large has been freed (M_MMAP_THRESHOLD of mallopt(3) is dynamic, up to 32 MiB). It saves a
 fifth of the time; smaller blocks, tried first, made it worse.
 """
-_KEPT = frozenset({"note", "acknowledge", "shelve", "mark", "armed", "condition", "start", "end"})
+_KEPT = frozenset({"note", "acknowledge", "shelve", "mark", "armed", "condition", "start", "end", "lost"})
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -77,6 +77,12 @@ class Reduction:
     def seal_state(self) -> str:
         """Intact, cut short or changed; empty for a capture, which has no seals."""
         return self.verification.state if self.verification is not None else ""
+
+    @property
+    def missing(self) -> int:
+        """Lines and events that the record says it lacks, since they could not be written."""
+        counts = [one.fields.get("count") for one in self.events if one.name == "lost"]
+        return sum(one for one in counts if isinstance(one, int) and one > 0)
 
     @property
     def verdict(self) -> Verdict | None:

@@ -326,6 +326,8 @@ def remarks(reduction: Reduction) -> list[str]:
     told = reduction.standing.notes if reduction.standing else ()
     # What the closed run adds may repeat what stood at its end.
     notes = [safe(one, 400) for one in dict.fromkeys([*told, *reduction.result.notes])]
+    if reduction.missing:
+        notes.insert(0, f"The record lacks {reduction.missing} lines or events: they could not be written.")
     found = reduction.verification
     if found is not None and found.state != "intact":
         notes.insert(0, f"The record is {found.state}: {found.reason}.")

@@ -17,6 +17,7 @@ import pytest
 
 from eastfall.io.arrivals import LineBlock, RunEvent
 from eastfall.io.errors import OutputError
+from eastfall.io.reduce import reduce_file
 from eastfall.io.runlog import LogPolicy, RunLogWriter, read_log, verify_log
 from eastfall.io.sitefile import parse_site
 
@@ -412,6 +413,7 @@ def test_the_program_on_a_disk_that_stays_full_ends_with_status_1_and_a_readable
     # The few bytes that are left may take the words, and even the seal: without the words it is cut short at least.
     assert told or verify_log(feed.log).state == "cut short"
     assert not told or told[0] >= feed.sent - len(numbers)
+    assert reduce_file(feed.log).missing == sum(told)
 
 
 @pytest.mark.parametrize("where", ["/proc/nowhere", "/dev/null/logs", "/sys"])

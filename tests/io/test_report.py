@@ -193,6 +193,14 @@ def test_a_changed_record_and_other_settings_stand_at_the_top() -> None:
     assert "site.latitude_deg 57.3 45" in page.text
 
 
+def test_what_a_record_lacks_stands_at_the_top() -> None:
+    """Lines that could not be written are told beside the answer, with their number; nonsense in their place is not."""
+    told = [RunEvent(time=1.0, name="lost", fields={"count": one}) for one in (500, 7, -3, "x", None)]
+    page = _Page(report_html(reduction(events=tuple(told)), made_at=MADE))
+    assert "The record lacks 507 lines or events" in page.text[: page.text.index("The run")]
+    assert "lacks" not in _Page(report_html(reduction(), made_at=MADE)).text
+
+
 def test_a_run_without_stations_is_still_a_report() -> None:
     """Nothing measured: the page says so, draws nothing, and fails nowhere; a capture says that it has no seals."""
     page = _Page(report_html(reduction(EMPTY, verification=None, started_at=None), made_at=MADE))

@@ -294,5 +294,6 @@ def _footing(found: "Reduction", shape: dict[str, Any]) -> list[str]:
     lines += [f"note: {one}" for one in (found.standing.notes if found.standing else ())]
     lines += [f"not as recorded: {one.key} {one.recorded} -> {one.used}" for one in found.differences]
     if found.verification is not None:
-        lines.append(f"log {found.seal_state}")
+        lacks = f"; {found.missing} lines or events are missing in it" if found.missing else ""
+        lines.append(f"log {found.seal_state}{lacks}")
     return lines
