@@ -56,7 +56,7 @@ def test_few_or_equal_readings(values, mean, scatter):
 @pytest.mark.parametrize("side", [1.0, -1.0])
 @pytest.mark.parametrize("seed", range(3))
 def test_the_mean_is_the_root_of_hubers_equation(seed, side):
-    """Σ ψ((x - m)/s) = 0, ψ cut at 1.345, s the scaled median deviation: by scipy's root finder, readings skewed either way."""
+    """Σ ψ((x - m)/s) = 0, ψ cut at 1.345, s the scaled median deviation: by scipy's root finder, skewed either way."""
     values = side * np.random.default_rng(seed).exponential(1.0, 41) ** 3
     scale = stats.median_abs_deviation(values, scale="normal")
     root = brentq(
